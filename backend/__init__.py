@@ -1,0 +1,1 @@
+"""From a figure job to pictures and triangle lists. Knows no language."""

@@ -1,0 +1,1 @@
+"""The visibility-buffer rasteriser and its shading."""

@@ -1,0 +1,1 @@
+"""Writers: each returns bytes."""

@@ -1,0 +1,1 @@
+"""From tree to scene graph, world-space triangles and figure jobs."""

@@ -1,0 +1,1 @@
+"""Command line, sessions and files: the only floor that touches disk, terminal and process."""

@@ -1,0 +1,1 @@
+"""Solids: recipes, tessellation, booleans."""

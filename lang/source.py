@@ -1,0 +1,23 @@
+"""Places in an author's text."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True, slots=True, order=True)
+class Span:
+    """A stretch of text.
+
+    1-based lines and columns in code points, the end exclusive. `file` is relative to the project.
+    """
+
+    file: str
+    line: int
+    column: int
+    end_line: int
+    end_column: int
+
+    def to(self, other: Span) -> Span:
+        """The stretch from this one's start to the other's end."""
+        return Span(self.file, self.line, self.column, other.end_line, other.end_column)
