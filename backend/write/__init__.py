@@ -1,1 +1,1 @@
-"""Writers: each returns bytes."""
+"""Writers: each is a pure function that returns the bytes of one file."""
