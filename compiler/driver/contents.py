@@ -1,0 +1,1 @@
+"""The list of what a scene holds, as text and as JSON."""

@@ -1,0 +1,133 @@
+"""The draw command: figures times variants, each written whole or not at all."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from platewright.lang.problems import is_error
+
+from . import files, names, session, warm
+from .crash import Trace
+from .report import Report
+from .session import Findings
+
+if TYPE_CHECKING:
+    from platewright.compiler.scene import Model, Project, Setting, Variant
+
+KINDS = ("png", "tiff")
+"""Kinds of file that a figure can be drawn to."""
+
+
+@dataclass(frozen=True, slots=True)
+class Wanted:
+    """What a draw is asked for. `out` None stands for the folder `figures` beside the scene."""
+
+    scene: Path
+    project: Path | None = None
+    figures: tuple[str, ...] = ()
+    variants: tuple[str, ...] = ()
+    all_variants: bool = False
+    settings: tuple[Setting, ...] = ()
+    kinds: tuple[str, ...] = ()
+    out: Path | None = None
+    resolution: float | None = None
+    record: bool = False
+
+
+@dataclass(slots=True)
+class _Run:
+    wanted: Wanted
+    out: Path
+    trace: Trace
+    report: Report
+    findings: Findings
+    texts: Mapping[str, str]
+    failed: list[str]
+    n_shown: int = 0
+
+    def show_news(self) -> None:
+        """Print the problems that have come since the last time."""
+        worded = self.findings.worded()
+        self.report.problems(worded[self.n_shown :], self.texts)
+        self.n_shown = len(worded)
+
+
+def draw(wanted: Wanted, trace: Trace, report: Report) -> int:
+    """Draw all figures wanted of all variants wanted. The exit code: 1 if any is not written, else 0.
+
+    Raises UsageError for names the scene does not have.
+    """
+    out = wanted.out if wanted.out is not None else wanted.scene.parent / "figures"
+    trace.beside, trace.overrides = out.absolute().parent, ("--out", "figures")
+    findings = Findings()
+    project = session.open_project(wanted.scene, wanted.project, trace, findings)
+    run = _Run(wanted, out, trace, report, findings, session.texts(project, trace), [])
+    run.show_news()
+    if project is None:
+        return 1
+    variants = session.chosen_variants(project, wanted.variants, wanted.all_variants)
+    findings.add(names.problems([variant for variant in variants if variant is not None], "variant"))
+    run.show_news()
+    if findings.has_errors:
+        return 1
+    with report.progress(max(1, len(wanted.figures)) * len(variants)) as begin:
+        for variant in variants:
+            _draw_variant(project, variant, run, begin)
+    if run.failed:
+        report.message(f"not written: {', '.join(run.failed)}")
+    return 1 if run.failed or findings.has_errors else 0
+
+
+def _draw_variant(project: Project, variant: Variant | None, run: _Run, begin: Callable[[str], None]) -> None:
+    """All figures of one variant. A problem that concerns all of it keeps every figure from being written."""
+    model, problems = session.build_model(project, variant, run.wanted.settings, run.trace)
+    if model is not None:
+        problems = (*problems, *names.problems(model.figures, "figure"))
+    run.findings.add(problems, variant)
+    run.show_news()
+    if model is None or any(is_error(problem) and not problem.within for problem in problems):
+        run.failed.append(session.title(variant))
+        return
+    bad = {problem.within for problem in problems if is_error(problem)}
+    for figure in session.chosen_figures(model, run.wanted.figures):
+        unit = figure if variant is None else f"{variant.name}/{figure}"
+        begin(unit)
+        run.trace.stage = f"drawing {unit}"
+        content = None if figure in bad else _unit(model, figure, variant, run)
+        run.show_news()
+        if content is None or not _write(content, run):
+            run.failed.append(unit)
+
+
+def _unit(model: Model, figure: str, variant: Variant | None, run: _Run) -> dict[Path, bytes] | None:
+    """The files of one figure of one variant, all in memory; None if a problem forbids them."""
+    from platewright.backend import sheet
+    from platewright.backend.write.record import record_bytes
+    from platewright.compiler.scene import plan
+
+    job, problems = plan(model, figure, resolution=run.wanted.resolution, measures=run.wanted.record)
+    run.findings.add(problems, variant)
+    if job is None or any(map(is_error, problems)):
+        return None
+    kinds = run.wanted.kinds or tuple(kind for kind in job.sheet.files if kind in KINDS) or KINDS[:1]
+    with warm.compiling_told(run.report):
+        drawing = sheet.draw(job, kinds)
+    content = {f"{figure}.{kind}": sheet.encode(drawing, job, kind) for kind in dict.fromkeys(kinds)}
+    if run.wanted.record:
+        content[f"{figure}.record.json"] = record_bytes(job, drawing.measures)
+    folder = run.out if variant is None else run.out / variant.name
+    return {folder / name: encoded for name, encoded in content.items()}
+
+
+def _write(content: Mapping[Path, bytes], run: _Run) -> bool:
+    try:
+        files.write_all(content)
+    except OSError as fault:
+        run.report.message(f"cannot write {fault.filename or run.out}: {fault.strerror or fault}")
+        return False
+    for path in content:
+        run.report.result(str(path))
+    return True

@@ -1,0 +1,91 @@
+"""The warm-up: every kernel compiled once and kept, so that the first real drawing does not wait."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from contextlib import contextmanager
+from typing import TYPE_CHECKING
+
+from .crash import Trace
+from .report import Report
+
+if TYPE_CHECKING:
+    from platewright.compiler.scene import Refusal
+
+_NAME = "warm-up.plate"
+_SCENE = """\
+platewright 1
+
+part post
+    add cylinder diameter 20 mm length 30 mm
+
+viewpoint near
+    eye (60 mm, -90 mm, 60 mm) toward (0, 0, 15 mm)
+
+figure near_tone
+    show post from near
+    drawn as tone
+    width 10 mm
+
+figure tone
+    show post
+    drawn as tone
+    width 10 mm
+
+figure part
+    show post
+    drawn as survey part
+    width 10 mm
+
+figure depth
+    show post
+    drawn as survey depth
+    width 10 mm
+
+figure facing
+    show post
+    drawn as survey facing
+    width 10 mm
+"""
+
+
+@contextmanager
+def compiling_told(report: Report) -> Iterator[None]:
+    """Within the block, say when kernels have to be compiled before something is drawn. Imports numba."""
+    from numba.core.event import Event, Listener, install_listener
+
+    class Notice(Listener):
+        """Kernels that are read from numba's cache cause no event."""
+
+        def on_start(self, event: Event) -> None:
+            report.message_once("compiling the drawing kernels for this machine, which happens once")
+
+        def on_end(self, event: Event) -> None:
+            pass
+
+    with install_listener("numba:compile", Notice()):
+        yield
+
+
+def warm_up(trace: Trace, report: Report) -> int:
+    """Draw a small scene of our own in every style and both projections; only the kernels are kept. Returns 0."""
+    from platewright.backend import sheet
+    from platewright.compiler.scene import Refusal, build, open_scene, plan
+
+    def load(name: str) -> bytes | Refusal:
+        return _SCENE.encode() if name == _NAME else Refusal("missing")
+
+    trace.stage = "warming up"
+    project, problems = open_scene(_NAME, load)
+    model = None if project is None else build(project)[0]
+    if model is None:
+        raise AssertionError(f"the warm-up scene does not build: {problems}")
+    with compiling_told(report), report.progress(len(model.figures)) as begin:
+        for figure in model.figures:
+            begin(figure.name)
+            job, problems = plan(model, figure.name, resolution=100.0, measures=True)
+            if job is None:
+                raise AssertionError(f"the warm-up scene does not draw: {problems}")
+            sheet.draw(job, ("png",))
+    report.message("the drawing kernels are ready")
+    return 0
