@@ -1,0 +1,171 @@
+"""Boxes of recipes without tessellation, for fitting views before anything is built."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from .outline import oriented, sweep
+from .polyhedra import regular_polygon
+from .recipe import (
+    Affine,
+    Block,
+    Cone,
+    Cylinder,
+    Ellipsoid,
+    Extrude,
+    Outline,
+    Point3,
+    Primitive,
+    Prism,
+    Pyramid,
+    Recipe,
+    Revolve,
+    Sphere,
+    Torus,
+    Wedge,
+)
+from .tessellate import rise
+
+F64 = NDArray[np.float64]
+_Box = tuple[F64, F64]
+
+
+def bounds(recipe: Recipe) -> tuple[Point3, Point3]:
+    """The corners (low, high), mm, of a box round the solid: the boxes of what is added, less what `keep` leaves out.
+
+    Exact for one primitive whose placement keeps the axes apart; for round ones however they are turned. Cuts do not
+    shrink it. An empty recipe gives a point at the origin.
+    """
+    box = _of_recipe(recipe, {})
+    if box is None:
+        return (0.0, 0.0, 0.0), (0.0, 0.0, 0.0)
+    (x0, y0, z0), (x1, y1, z1) = box[0].tolist(), box[1].tolist()
+    return (x0, y0, z0), (x1, y1, z1)
+
+
+def _of_recipe(recipe: Recipe, known: dict[int, _Box | None]) -> _Box | None:
+    if id(recipe) in known:
+        return known[id(recipe)]
+    box: _Box | None = None
+    for step in recipe.steps:
+        if step.operation == "cut":
+            continue
+        new: _Box | None = None
+        for placed in step.placed:
+            for placement in placed.placements:
+                new = _union(new, _of_placed(placed.shape, placement, placed.centred, known))
+        if step.operation == "add":
+            box = _union(box, new)
+        elif box is not None:
+            box = None if new is None else _common(box, new)
+    known[id(recipe)] = box
+    return box
+
+
+def _of_placed(
+    shape: Primitive | Recipe, placement: Affine, centred: bool, known: dict[int, _Box | None]
+) -> _Box | None:
+    linear, shift = np.array(placement)[:, :3], np.array(placement)[:, 3]
+    if isinstance(shape, Recipe):
+        inner = _of_recipe(shape, known)
+        return None if inner is None else _turned_box(inner, linear, shift)
+    balls, points = _hull(shape)
+    low, high = np.full(3, np.inf), np.full(3, -np.inf)
+    lift = np.array([0.0, 0.0, -rise(shape) / 2 if centred else 0.0])
+    for centre, axes in balls:
+        middle = linear @ (centre + lift) + shift
+        # The reach of an ellipsoid (or disc) with these axes along a direction d is |A^T d|; a sum of bodies adds.
+        reach = sum(np.sqrt(((linear * axis) ** 2).sum(axis=1)) for axis in axes)
+        low, high = np.minimum(low, middle - reach), np.maximum(high, middle + reach)
+    if len(points):
+        moved = (points + lift) @ linear.T + shift
+        low, high = np.minimum(low, moved.min(axis=0)), np.maximum(high, moved.max(axis=0))
+    return low + 0.0, high + 0.0
+
+
+def _hull(shape: Primitive) -> tuple[list[tuple[F64, F64]], F64]:
+    """Sums of ellipsoids (centre, half axes (k,3)) and points whose hull has the shape's box under affine maps."""
+    none = np.zeros((0, 3))
+    if isinstance(shape, Sphere):
+        return [(np.zeros(3), np.full((1, 3), shape.diameter / 2))], none
+    if isinstance(shape, Ellipsoid):
+        return [(np.zeros(3), np.array([shape.axes]) / 2)], none
+    if isinstance(shape, Cylinder | Cone):
+        top = shape.top if isinstance(shape, Cone) else shape.diameter
+        return [_disc(shape.diameter / 2, 0.0), _disc(top / 2, shape.length)], none
+    if isinstance(shape, Torus):
+        ring, r = shape.diameter / 2, shape.tube / 2
+        return [(np.zeros(3), np.array([[ring, ring, 0.0], [r, r, r]]))], none
+    if isinstance(shape, Revolve):
+        low, high = _outline_box(shape.outline)
+        return [_disc(high[0], low[1]), _disc(high[0], high[1])], none
+    return [], _corners(shape)
+
+
+def _corners(shape: Block | Wedge | Prism | Pyramid | Extrude) -> F64:
+    if isinstance(shape, Block):
+        x, y, z = shape.size
+        return _levels(np.array([[-x, -y], [x, -y], [x, y], [-x, y]]) / 2, z)
+    if isinstance(shape, Wedge):
+        x, y, z = shape.size
+        base = np.array([[-x, -y], [x, -y], [x, y], [-x, y]]) / 2
+        top = np.array([[-x / 2, -y / 2], [shape.top_length - x / 2, -y / 2]])
+        top = np.concatenate((top, top * (1.0, -1.0)))
+        return np.concatenate((_levels(base, 0.0), _levels(top, z)))
+    if isinstance(shape, Prism):
+        return _levels(regular_polygon(shape.sides, shape.across), shape.length)
+    if isinstance(shape, Pyramid):
+        top = regular_polygon(shape.sides, shape.top) if shape.top > 0.0 else np.zeros((1, 2))
+        base = regular_polygon(shape.sides, shape.across)
+        return np.concatenate((_at(base, 0.0), _at(top, shape.length)))
+    low, high = _outline_box(shape.outline)
+    return _levels(np.array([[low[0], low[1]], [high[0], low[1]], [high[0], high[1]], [low[0], high[1]]]), shape.length)
+
+
+def _outline_box(outline: Outline) -> tuple[list[float], list[float]]:
+    low, high = [math.inf, math.inf], [-math.inf, -math.inf]
+    for curve in oriented(outline.outer, True):
+        reached = [curve.start, curve.end]
+        if curve.radius:
+            (x, y), r = curve.centre, curve.radius
+            first = curve.start if curve.left else curve.end
+            begin = math.atan2(first[1] - y, first[0] - x)
+            for quarter, point in enumerate(((x + r, y), (x, y + r), (x - r, y), (x, y - r))):
+                if (quarter * math.pi / 2 - begin) % math.tau <= sweep(curve):
+                    reached.append(point)
+        for point in reached:
+            low = [min(low[0], point[0]), min(low[1], point[1])]
+            high = [max(high[0], point[0]), max(high[1], point[1])]
+    return low, high
+
+
+def _disc(radius: float, height: float) -> tuple[F64, F64]:
+    return np.array([0.0, 0.0, height]), np.array([[radius, radius, 0.0]])
+
+
+def _levels(points: F64, height: float) -> F64:
+    return np.concatenate((_at(points, 0.0), _at(points, height)))
+
+
+def _at(points: F64, height: float) -> F64:
+    return np.column_stack((points, np.full(len(points), height)))
+
+
+def _turned_box(box: _Box, linear: F64, shift: F64) -> _Box:
+    middle = linear @ ((box[0] + box[1]) / 2) + shift
+    reach = np.abs(linear) @ ((box[1] - box[0]) / 2)
+    return middle - reach, middle + reach
+
+
+def _union(one: _Box | None, other: _Box | None) -> _Box | None:
+    if one is None or other is None:
+        return one if other is None else other
+    return np.minimum(one[0], other[0]), np.maximum(one[1], other[1])
+
+
+def _common(one: _Box, other: _Box) -> _Box | None:
+    low, high = np.maximum(one[0], other[0]), np.minimum(one[1], other[1])
+    return (low, high) if (low <= high).all() else None

@@ -1,0 +1,353 @@
+"""A recipe to a mesh: the whole tree of steps in one boolean evaluation, every face knowing where it comes from.
+
+The boolean kernel keeps, for every triangle, which original it was cut from (run), the placement of that original,
+whether the solid lies behind it, and a face number of ours: the row of the original's surface. From these the
+analytic surface of every face follows, and from it patches and normals (`finish`).
+"""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass, field
+
+import manifold3d
+import numpy as np
+from manifold3d import Manifold, OpType
+from numpy.typing import NDArray
+from platewright.backend.contract import Mesh
+
+from . import transform
+from .finish import finish
+from .flaw import Flaw, SolidError
+from .ladder import MAX_COPIES, MAX_TRIANGLES
+from .levels import Levels, axis_planes
+from .recipe import Affine, Placed, Primitive, Recipe
+from .shell import Shell
+from .surfaces import Surfaces, concatenate, place
+from .tessellate import count_triangles, problems_of, rise, tessellate
+
+F64 = NDArray[np.float64]
+
+BUILD_VERSION = 1
+"""Part of every mesh's key; changes when the same recipe gives other triangles."""
+VOLUME_SLACK = 1e-9
+"""Volumes may leave the bounds of set algebra by this part of what was added: rounding, nothing more."""
+
+
+def build(recipe: Recipe, rung: float) -> tuple[Mesh | None, tuple[Flaw, ...]]:
+    """Build one part at a chord error of `rung` mm, in the part's frame.
+
+    Returns None with at least one error among the flaws, or a mesh with warnings at most. Flaws: `too large`,
+    `nothing to cut`, `empty part`, `several pieces` (warning), `boolean failed`, and those of outlines
+    (`no area`, `outline crosses itself`, `hole outside`, `negative radius`) and `torus meets itself`.
+    SolidError means that the recipe should have been refused before. The same recipe and rung give the same bytes.
+    """
+    flaws = _before(recipe, rung)
+    if flaws:
+        return None, flaws
+    only = _only_shape(recipe)
+    if only is not None:
+        return _from_shell(key_of(recipe, rung), only, rung), ()
+    workshop = _Workshop(rung)
+    whole = workshop.make(recipe, 1.0)
+    workshop.flaws.extend(_after(whole, recipe))
+    if any(flaw.is_error for flaw in workshop.flaws):
+        return None, tuple(workshop.flaws)
+    return _from_manifold(key_of(recipe, rung), whole.manifold, workshop.leaves), tuple(workshop.flaws)
+
+
+def key_of(recipe: Recipe, rung: float) -> str:
+    """The content hash that names the mesh: sha256 of build version, rung and recipe, 64 hexadecimal digits."""
+    return hashlib.sha256(f"{BUILD_VERSION} {rung!r} {recipe!r}".encode()).hexdigest()
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class _Leaf:
+    """An original of the boolean kernel: run `number` is a placed copy of it."""
+
+    number: int
+    source: int
+    surfaces: Surfaces
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class _Body:
+    """A solid in some frame: its manifold, the planes whose heights may have to agree with others', and bounds on
+    its volume by set algebra.
+    """
+
+    manifold: Manifold
+    planes: F64
+    volume: tuple[float, float]
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class _Group:
+    """A body at several placements (n,3,4)."""
+
+    body: _Body
+    placements: F64
+
+    def manifolds(self, to_correct: NDArray[np.bool_], correct: Callable[[F64], F64]) -> Iterator[Manifold]:
+        for placement, is_off in zip(self.placements, to_correct, strict=True):
+            moved = self.body.manifold.transform(placement)
+            yield moved.warp_batch(correct) if is_off else moved
+
+    def volumes(self) -> tuple[float, float]:
+        """Bounds on what the copies fill together: at least the largest of them, at most their sum."""
+        size = np.abs(np.linalg.det(self.placements[:, :, :3]))
+        return self.body.volume[0] * float(size.max()), self.body.volume[1] * float(size.sum())
+
+
+@dataclass(slots=True)
+class _Workshop:
+    """One evaluation: shells by shape and scale, bodies by recipe and scale, leaves in the order made."""
+
+    rung: float
+    leaves: list[_Leaf] = field(default_factory=list)
+    flaws: list[Flaw] = field(default_factory=list)
+    _shells: dict[tuple[Primitive, float], tuple[Shell, float]] = field(default_factory=dict)
+    _bodies: dict[tuple[int, float], _Body] = field(default_factory=dict)
+
+    def make(self, recipe: Recipe, grown: float) -> _Body:
+        """The solid of a recipe that will be scaled by `grown` at most when it reaches the part."""
+        if (id(recipe), grown) not in self._bodies:
+            self._bodies[id(recipe), grown] = self._made(recipe, grown)
+        return self._bodies[id(recipe), grown]
+
+    def _made(self, recipe: Recipe, grown: float) -> _Body:
+        steps = [
+            (s.operation, [group for placed in s.placed for group in self._groups(placed, grown)]) for s in recipe.steps
+        ]
+        levels = Levels([(group.body.planes, group.placements) for _, groups in steps for group in groups])
+        solid, low, high, n = Manifold(), 0.0, 0.0, 0
+        for operation, groups in steps:
+            operands: list[Manifold] = []
+            for group in groups:
+                operands.extend(group.manifolds(levels.to_correct(n), levels.correct))
+                n += 1
+            solid = _combined(solid, operation, operands)
+            low, high = _volume_bounds(low, high, operation, groups)
+        return _Body(solid, levels.planes(), (low, high))
+
+    def _groups(self, placed: Placed, grown: float) -> Iterator[_Group]:
+        """The shape at its placements, one group for each scale: what grows needs a finer division."""
+        if not placed.placements:
+            return
+        lift = -rise(placed.shape) / 2 if placed.centred and not isinstance(placed.shape, Recipe) else 0.0
+        placements = np.array([settled(placement, lift) for placement in placed.placements])
+        scales = transform.largest_scales(placements)
+        for scale in np.unique(scales):
+            yield _Group(self._body(placed, grown * float(scale)), placements[scales == scale])
+
+    def _body(self, placed: Placed, grown: float) -> _Body:
+        shape = placed.shape
+        if isinstance(shape, Recipe):
+            body = self.make(shape, grown)
+            if any(step.operation != "add" for step in shape.steps) and body.manifold.is_empty():
+                sentence = "Nothing is left of the part that is used here."
+                self.flaws.append(Flaw("empty part", placed.source, sentence, "Look at its cuts."))
+            return body
+        if (shape, grown) not in self._shells:
+            shell = tessellate(shape, self.rung / grown)
+            self._shells[shape, grown] = shell, _volume(shell)
+        shell, volume = self._shells[shape, grown]
+        number = Manifold.reserve_ids(1)
+        self.leaves.append(_Leaf(number, placed.source, shell.surfaces))
+        return _Body(_import(shell, number), axis_planes(shell.surfaces), (volume, volume))
+
+
+def settled(placement: Affine, lift: float = 0.0) -> Affine:
+    """A placement with `lift` along the shape's own z before it, and shifts that are a rounding error away from a
+    decimal of six places set to it, so that 0.1 + 0.2 stands where 0.3 does.
+    """
+    if lift:
+        placement = transform.compose(placement, transform.translate((0.0, 0.0, lift)))
+    size = max(1.0, max(abs(row[3]) for row in placement))
+    rows = []
+    for a, b, c, shift in placement:
+        decimal = round(shift, 6)
+        rows.append((a, b, c, decimal if abs(shift - decimal) <= 1e-14 * size else shift))
+    return (rows[0], rows[1], rows[2])
+
+
+def _before(recipe: Recipe, rung: float) -> tuple[Flaw, ...]:
+    """Budgets and the mistakes of single shapes; nothing is tessellated."""
+    copies, triangles = _totals(recipe, rung, {})
+    hint = "Use fewer copies or a coarser chord error."
+    if copies > MAX_COPIES:
+        return (
+            Flaw(
+                "too large", -1, f"The part is made of more than {MAX_COPIES} shapes, the limit named `copies`.", hint
+            ),
+        )
+    if triangles > MAX_TRIANGLES:
+        sentence = f"The part would take more than {MAX_TRIANGLES} triangles, the limit named `triangles`."
+        return (Flaw("too large", -1, sentence, hint),)
+    found: dict[Flaw, None] = {}
+    judged: dict[Primitive, tuple[tuple[str, str, str], ...]] = {}
+    for placed in _all_placed(recipe, set()):
+        if isinstance(placed.shape, Recipe):
+            continue
+        if placed.shape not in judged:
+            judged[placed.shape] = tuple((p.code, p.sentence, p.hint) for p in problems_of(placed.shape))
+        for code, sentence, hint in judged[placed.shape]:
+            found[Flaw(code, placed.source, sentence, hint)] = None
+    first = next((step for step in recipe.steps if step.placed), None)
+    if first is not None and first.operation != "add":
+        sentence = f"The part begins with a {first.operation}, but there is nothing to {first.operation} yet."
+        found[Flaw("nothing to cut", first.placed[0].source, sentence, "Add a shape first.")] = None
+    return tuple(found)
+
+
+def _totals(recipe: Recipe, rung: float, known: dict[int, tuple[int, int]]) -> tuple[int, int]:
+    """Shapes and triangles with all copies; a recipe used twice is counted twice but walked once."""
+    if id(recipe) not in known:
+        copies = triangles = 1
+        for step in recipe.steps:
+            for placed in step.placed:
+                n = max(1, len(placed.placements))
+                if n > MAX_COPIES:
+                    return n, 0
+                if isinstance(placed.shape, Recipe):
+                    inner = _totals(placed.shape, rung, known)
+                else:
+                    grown = max((transform.largest_scale(p) for p in placed.placements), default=1.0)
+                    inner = 1, count_triangles(placed.shape, rung / max(grown, 1e-300))
+                copies += n * inner[0]
+                triangles += n * inner[1]
+        known[id(recipe)] = copies - 1, triangles - 1
+    return known[id(recipe)]
+
+
+def _all_placed(recipe: Recipe, seen: set[int]) -> Iterator[Placed]:
+    if id(recipe) in seen:
+        return
+    seen.add(id(recipe))
+    for step in recipe.steps:
+        for placed in step.placed:
+            yield placed
+            if isinstance(placed.shape, Recipe):
+                yield from _all_placed(placed.shape, seen)
+
+
+def _only_shape(recipe: Recipe) -> Placed | None:
+    """The one shape that the recipe adds, if that is all it does: no boolean is needed."""
+    placed = [placed for step in recipe.steps for placed in step.placed]
+    alone = len(placed) == 1 and len(placed[0].placements) == 1 and not isinstance(placed[0].shape, Recipe)
+    return placed[0] if alone else None
+
+
+def _from_shell(key: str, placed: Placed, rung: float) -> Mesh:
+    assert not isinstance(placed.shape, Recipe)
+    placement = placed.placements[0]
+    lift = -rise(placed.shape) / 2 if placed.centred else 0.0
+    shell = tessellate(placed.shape, rung / transform.largest_scale(placement))
+    placement = settled(placement, lift)
+    faces = shell.faces if transform.determinant(placement) > 0.0 else np.ascontiguousarray(shell.faces[:, ::-1])
+    vertices = shell.vertices if placement == transform.IDENTITY else transform.apply(placement, shell.vertices) + 0.0
+    source = np.full(len(faces), placed.source, np.int32)
+    return finish(key, vertices, faces, shell.face_surface, source, place(shell.surfaces, np.array(placement)))
+
+
+def _import(shell: Shell, number: int) -> Manifold:
+    faces = shell.faces.astype(np.uint64)
+    mesh = manifold3d.Mesh64(
+        vert_properties=shell.vertices,
+        tri_verts=faces,
+        run_index=np.array([0, faces.size], np.uint64),
+        run_original_id=np.array([number], np.uint32),
+        face_id=shell.face_surface.astype(np.uint64),
+    )
+    solid = Manifold(mesh)
+    if solid.status() != manifold3d.Error.NoError:
+        raise SolidError(f"a shell is not closed: {solid.status()}")
+    return solid
+
+
+def _combined(solid: Manifold, operation: str, operands: list[Manifold]) -> Manifold:
+    if operation == "add":
+        return Manifold.batch_boolean([solid, *operands], OpType.Add)
+    if operation == "cut":
+        return Manifold.batch_boolean([solid, *operands], OpType.Subtract)
+    return solid ^ Manifold.batch_boolean(operands, OpType.Add)
+
+
+def _volume_bounds(low: float, high: float, operation: str, groups: list[_Group]) -> tuple[float, float]:
+    volumes = [group.volumes() for group in groups]
+    total = sum(most for _, most in volumes)
+    if operation == "add":
+        return max([low, *(least for least, _ in volumes)]), high + total
+    if operation == "cut":
+        return max(0.0, low - total), high
+    return 0.0, min(high, total)
+
+
+def _volume(shell: Shell) -> float:
+    a, b, c = (shell.vertices[shell.faces[:, k]] for k in range(3))
+    return float((a * np.cross(b, c)).sum() / 6.0)
+
+
+def _after(body: _Body, recipe: Recipe) -> Iterator[Flaw]:
+    """What can only be said of the finished solid."""
+    solid = body.manifold
+    if solid.status() != manifold3d.Error.NoError:
+        yield Flaw(
+            "boolean failed", -1, f"The shapes could not be combined: {solid.status().name}.", "Please report it."
+        )
+        return
+    if solid.is_empty():
+        yield _empty(recipe)
+        return
+    low, high = body.volume
+    volume, slack = solid.volume(), VOLUME_SLACK * high
+    if not low - slack <= volume <= high + slack:
+        sentence = (
+            f"The shapes could not be combined: {volume:.6g} mm3 is left, between {low:.6g} and {high:.6g} expected."
+        )
+        yield Flaw("boolean failed", -1, sentence, "Please report it.")
+    # A cavity is a surface of its own with a negative volume; only what has a positive one is a piece.
+    pieces = sum(1 for piece in solid.decompose() if piece.volume() > 0.0)
+    if pieces > 1:
+        hint = "Let its shapes overlap, or make a part of each."
+        yield Flaw("several pieces", -1, f"The part falls into {pieces} pieces.", hint, is_error=False)
+
+
+def _empty(recipe: Recipe) -> Flaw:
+    last = next((s for s in reversed(recipe.steps) if s.operation != "add" and s.placed), None)
+    if last is None:
+        return Flaw("empty part", -1, "The part has no shape.", "Add one.")
+    verb = "cutting" if last.operation == "cut" else "keeping"
+    sentence = f"Nothing is left of the part after {verb} this."
+    return Flaw("empty part", last.placed[0].source, sentence, "Check where it stands and how large it is.")
+
+
+def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf]) -> Mesh:
+    mesh = solid.to_mesh64()
+    faces = np.asarray(mesh.tri_verts).astype(np.int32)
+    run_index = np.array(mesh.run_index, np.int64) // 3
+    lengths = np.diff(run_index)
+    numbers = np.array([leaf.number for leaf in leaves], np.int64)
+    leaf_of_run = np.searchsorted(numbers, np.array(mesh.run_original_id, np.int64))
+    sizes = np.array([len(leaf.surfaces) for leaf in leaves], np.int64)
+    first_of_leaf = np.cumsum(sizes) - sizes
+    size_of_run = sizes[leaf_of_run]
+    first_of_run = np.cumsum(size_of_run) - size_of_run
+    # One row of surfaces for every run and every surface of its original.
+    run_of_row = np.repeat(np.arange(len(lengths)), size_of_run)
+    within = np.arange(len(run_of_row)) - first_of_run[run_of_row]
+    local = concatenate([leaf.surfaces for leaf in leaves]).take(first_of_leaf[leaf_of_run[run_of_row]] + within)
+    placements = np.asarray(mesh.run_transform).transpose(0, 2, 1)[run_of_row]
+    placed = place(local, placements)
+    behind = (np.array(mesh.run_flags, np.uint8) & 1).astype(np.bool_)[run_of_row]
+    rows = np.repeat(first_of_run, lengths) + np.array(mesh.face_id, np.int64)
+    sources = np.array([leaf.source for leaf in leaves], np.int32)[leaf_of_run]
+    return finish(
+        key,
+        np.ascontiguousarray(mesh.vert_properties[:, :3]) + 0.0,
+        faces,
+        rows.astype(np.int32),
+        np.repeat(sources, lengths),
+        Surfaces(placed.kind, placed.affine, placed.ratio, placed.flipped ^ behind),
+    )

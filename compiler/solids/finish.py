@@ -1,0 +1,177 @@
+"""From triangles that know their surfaces to the contract's mesh: patches, edge kinds, exact normals."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+from platewright.backend.contract import EdgeKind, FaceOrigin, Mesh, PatchKind
+
+from .surfaces import SAME_SURFACE, Surfaces, describe, normals, plane_normals
+
+F64 = NDArray[np.float64]
+I32 = NDArray[np.int32]
+
+TANGENT_WITHIN = 0.1
+"""Two patches whose normals differ by at most this many degrees along an edge are tangent: an author who rounds a
+tangent point to a thousandth of the radius stays within it."""
+
+
+def finish(key: str, vertices: F64, faces: I32, face_surface: I32, face_source: I32, surfaces: Surfaces) -> Mesh:
+    """Assemble a mesh.
+
+    vertices (n,3); faces (m,3); face_surface (m,) row of `surfaces`, which are outward; face_source (m,). Neighbouring
+    patches on one surface become one patch, numbered in the order of their first triangles. Cost: one sort of the
+    3m sides.
+    """
+    row, surfaces = _in_use(face_surface, surfaces)
+    mate, closed = mates(faces, len(vertices))
+    row, surfaces = _merge(row, surfaces, mate, float(np.abs(vertices).max(initial=0.0)))
+    corner = _corner_normals(vertices, faces, row, surfaces)
+    return Mesh(
+        key=key,
+        vertices=vertices,
+        faces=faces,
+        corner_normals=corner.astype(np.float32),
+        face_patch=row,
+        face_origin=np.full(len(faces), FaceOrigin.SURFACE, np.uint8),
+        face_source=face_source,
+        edge_kind=_edge_kinds(row, mate, corner),
+        patches=describe(surfaces),
+        closed=closed,
+    )
+
+
+def mates(faces: I32, n_vertices: int) -> tuple[NDArray[np.int64], bool]:
+    """The side on the other face of every side, (m,3) as 3·face + corner, -1 for none; and whether the faces close:
+    every directed side occurs once and its reverse once.
+    """
+    start = faces.astype(np.int64)
+    end = start[:, [1, 2, 0]]
+    undirected = (np.minimum(start, end) * n_vertices + np.maximum(start, end)).ravel()
+    order = np.argsort(undirected)
+    ordered = undirected[order]
+    forward = (start < end).ravel()[order]
+    first = np.flatnonzero(ordered[1:] == ordered[:-1])
+    # A pair is good if it stands alone and runs both ways.
+    alone = np.ones(len(first), np.bool_)
+    alone[1:] &= first[1:] != first[:-1] + 1
+    alone[:-1] &= first[1:] != first[:-1] + 1
+    first = first[alone & (forward[first] != forward[first + 1])]
+    mate = np.full(3 * len(faces), -1, np.int64)
+    mate[order[first]], mate[order[first + 1]] = order[first + 1], order[first]
+    return mate.reshape(-1, 3), bool(len(faces) > 0 and 2 * len(first) == 3 * len(faces))
+
+
+def _in_use(face_surface: I32, surfaces: Surfaces) -> tuple[I32, Surfaces]:
+    used = np.zeros(len(surfaces), np.bool_)
+    used[face_surface] = True
+    number = np.cumsum(used, dtype=np.int32) - np.int32(1)
+    return number[face_surface], surfaces.take(np.flatnonzero(used))
+
+
+def _merge(row: I32, surfaces: Surfaces, mate: NDArray[np.int64], size: float) -> tuple[I32, Surfaces]:
+    """Join neighbouring patches on one surface; renumber by first triangle."""
+    sides = np.flatnonzero(mate >= 0)
+    one, other = row[sides // 3], row[mate.ravel()[sides] // 3]
+    met = one < other
+    n = len(surfaces)
+    pairs = np.unique(one[met].astype(np.int64) * n + other[met])
+    low, high = pairs // n, pairs % n
+    same = _same(surfaces, low, high, size)
+    root = np.arange(n)
+    for a, b in zip(low[same].tolist(), high[same].tolist(), strict=True):
+        a, b = _root(root, a), _root(root, b)
+        root[max(a, b)] = min(a, b)
+    for k in range(n):
+        root[k] = root[root[k]]
+    row = root[row].astype(np.int32)
+    first = np.full(n, len(row))
+    np.minimum.at(first, row, np.arange(len(row)))
+    kept = np.argsort(first, kind="stable")[: np.count_nonzero(first < len(row))]
+    number = np.empty(n, np.int32)
+    number[kept] = np.arange(len(kept), dtype=np.int32)
+    return number[row], surfaces.take(kept)
+
+
+def _root(root: NDArray[np.intp], k: int) -> int:
+    while root[k] != k:
+        root[k] = root[root[k]]
+        k = int(root[k])
+    return k
+
+
+def _same(surfaces: Surfaces, one: NDArray[np.int64], other: NDArray[np.int64], size: float) -> NDArray[np.bool_]:
+    """Whether two rows are the same surface with the solid on the same side. Skew (free) surfaces never are."""
+    same = surfaces.kind[one] == surfaces.kind[other]
+    near = SAME_SURFACE * max(size, 1e-12)
+    flat = np.flatnonzero(same & (surfaces.kind[one] == PatchKind.PLANE))
+    curved = np.flatnonzero(same & (surfaces.kind[one] != PatchKind.PLANE))
+    if len(flat):
+        a, b = surfaces.take(one[flat]), surfaces.take(other[flat])
+        z = plane_normals(a)
+        apart = b.affine[:, :, 3] - a.affine[:, :, 3]
+        turned = np.abs(z - plane_normals(b)).max(axis=1)
+        same[flat] = (turned <= SAME_SURFACE) & (np.abs((apart * z).sum(axis=1)) <= near)
+    if len(curved):
+        same[curved] = _same_curved(surfaces, one[curved], other[curved], near)
+    return np.asarray(same)
+
+
+def _same_curved(
+    surfaces: Surfaces, one: NDArray[np.int64], other: NDArray[np.int64], near: float
+) -> NDArray[np.bool_]:
+    a, b = describe(surfaces.take(one)), describe(surfaces.take(other))
+    z, apart = a.frame[:, 3], b.frame[:, 0] - a.frame[:, 0]
+    along = (apart * z).sum(axis=1)[:, None]
+    # A cylinder's origin may slide along its axis; the other kinds have one origin. A sphere has no axis.
+    apart = np.where((a.kind == PatchKind.CYLINDER)[:, None], apart - along * z, apart)
+    turned = np.abs(z - b.frame[:, 3]).max(axis=1)
+    reversed_axis = np.abs(z + b.frame[:, 3]).max(axis=1)
+    turned = np.where(a.kind == PatchKind.CONE, turned, np.minimum(turned, reversed_axis))
+    parallel = (turned <= SAME_SURFACE) | (a.kind == PatchKind.SPHERE)
+    same = (a.kind == b.kind) & (a.kind != PatchKind.FREE) & (a.inward == b.inward) & parallel
+    same &= (np.abs(apart).max(axis=1) <= near) & (np.abs(a.size - b.size).max(axis=1) <= near)
+    return np.asarray(same)
+
+
+def _corner_normals(vertices: F64, faces: I32, row: I32, surfaces: Surfaces) -> F64:
+    """Exact normals (m,3,3). Where a surface has none, the normal at the middle of the triangle, else its own."""
+    corner = np.empty((len(faces), 3, 3))
+    flat_rows = surfaces.kind == PatchKind.PLANE
+    flat = flat_rows[row]
+    every = np.zeros((len(surfaces), 3))
+    every[flat_rows] = plane_normals(surfaces.take(np.flatnonzero(flat_rows)))
+    corner[flat] = every[row[flat]][:, None, :]
+    curved = np.flatnonzero(~flat)
+    if len(curved):
+        points = vertices[faces[curved]].reshape(-1, 3)
+        some = normals(surfaces, np.repeat(row[curved], 3), points).reshape(-1, 3, 3)
+        face, k = np.nonzero((some == 0.0).all(axis=2))
+        some[face, k] = _middle_normals(vertices[faces[curved[face]]], row[curved[face]], surfaces)
+        corner[curved] = some
+    return corner
+
+
+def _middle_normals(triangles: F64, row: I32, surfaces: Surfaces) -> F64:
+    normal = normals(surfaces, row, triangles.mean(axis=1))
+    own = np.cross(triangles[:, 1] - triangles[:, 0], triangles[:, 2] - triangles[:, 0])
+    length = np.sqrt((own**2).sum(axis=1))[:, None]
+    own = np.where(length > 0.0, own / np.where(length > 0.0, length, 1.0), (0.0, 0.0, 1.0))
+    return np.where((normal == 0.0).all(axis=1)[:, None], own, normal)
+
+
+def _edge_kinds(row: I32, mate: NDArray[np.int64], corner: F64) -> NDArray[np.uint8]:
+    mate = mate.ravel()
+    kind = np.full(len(mate), EdgeKind.BORDER, np.uint8)
+    paired = np.flatnonzero(mate >= 0)
+    inside = row[paired // 3] == row[mate[paired] // 3]
+    kind[paired[inside]] = EdgeKind.INSIDE
+    met = paired[~inside]
+    face, k = met // 3, met % 3
+    face2, k2 = mate[met] // 3, mate[met] % 3
+    # A side's far end is the near end of its mate.
+    near = (corner[face, k] * corner[face2, (k2 + 1) % 3]).sum(axis=1)
+    far = (corner[face, (k + 1) % 3] * corner[face2, k2]).sum(axis=1)
+    tangent = np.minimum(near, far) >= np.cos(np.radians(TANGENT_WITHIN))
+    kind[met] = np.where(tangent, EdgeKind.TANGENT, EdgeKind.SHARP)
+    return kind.reshape(-1, 3)

@@ -1,0 +1,32 @@
+"""The closed surface of one primitive in its own frame, before any placement or boolean."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from .surfaces import Surfaces
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class Shell:
+    """vertices (n,3) float64 mm; faces (m,3) int32, counter-clockwise from outside; face_surface (m,) int32 row of
+    `surfaces`. Closed: every directed edge once and its reverse once.
+    """
+
+    vertices: NDArray[np.float64]
+    faces: NDArray[np.int32]
+    face_surface: NDArray[np.int32]
+    surfaces: Surfaces
+
+
+def shell(
+    vertices: NDArray[np.float64], pieces: Sequence[tuple[NDArray[np.integer], int]], surfaces: Surfaces
+) -> Shell:
+    """From vertices and pieces, each the triangles (k,3) of one surface."""
+    faces = np.concatenate([triangles for triangles, _ in pieces]).astype(np.int32)
+    rows = np.repeat([row for _, row in pieces], [len(triangles) for triangles, _ in pieces]).astype(np.int32)
+    return Shell(np.ascontiguousarray(vertices, np.float64) + 0.0, faces, rows, surfaces)

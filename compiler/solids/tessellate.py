@@ -1,0 +1,153 @@
+"""Every primitive of a recipe to its shell: one place to add a solid.
+
+Triangles, n = divisions(radius, rung): cylinder 4n - 4; cone 2n - 2, truncated 2n - 4 + n + m; sphere and ellipsoid
+n(n - 2); torus 2nm.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from .flaw import SolidError
+from .ladder import divisions
+from .outline import Curve, OutlineFlaw, Polyline, faults, flatten, polyline
+from .polyhedra import block, extrude, prism, pyramid, wedge
+from .recipe import (
+    Block,
+    Cone,
+    Cylinder,
+    Ellipsoid,
+    Extrude,
+    Point2,
+    Primitive,
+    Prism,
+    Pyramid,
+    Revolve,
+    Sphere,
+    Torus,
+    Wedge,
+)
+from .revolve import revolve
+from .shell import Shell
+from .surfaces import place
+
+F64 = NDArray[np.float64]
+
+
+def tessellate(shape: Primitive, rung: float) -> Shell:
+    """The closed shell of a primitive at a chord error in mm, in its own frame.
+
+    SolidError for sizes that are not positive or outlines that `problems_of` would have refused.
+    """
+    require_positive(shape)
+    if isinstance(shape, Block):
+        return block(shape)
+    if isinstance(shape, Wedge):
+        return wedge(shape)
+    if isinstance(shape, Prism):
+        return prism(shape)
+    if isinstance(shape, Pyramid):
+        return pyramid(shape)
+    if isinstance(shape, Extrude):
+        return extrude(flatten(shape.outline, rung), shape.length)
+    if isinstance(shape, Ellipsoid):
+        return _ellipsoid(shape, rung)
+    return revolve(_profile(shape, rung), rung)
+
+
+def problems_of(shape: Primitive) -> tuple[OutlineFlaw, ...]:
+    """Mistakes an author can make in one shape, whatever the rung."""
+    if isinstance(shape, Extrude | Revolve):
+        return faults(shape.outline, isinstance(shape, Revolve))
+    if isinstance(shape, Torus) and shape.tube >= shape.diameter:
+        sentence = (
+            f"The tube of the torus, {shape.tube:.6g} mm, must be thinner than its diameter, {shape.diameter:.6g} mm."
+        )
+        return (OutlineFlaw("torus meets itself", sentence, "Make the tube thinner or the diameter larger."),)
+    return ()
+
+
+def count_triangles(shape: Primitive, rung: float) -> int:
+    """Triangles to expect, for the budget: exact for primitives, an upper bound for outlines. No tessellation."""
+    if isinstance(shape, Block | Wedge):
+        return 8 if isinstance(shape, Wedge) and shape.top_length == 0.0 else 12
+    if isinstance(shape, Prism | Pyramid):
+        return (2 if isinstance(shape, Pyramid) and shape.top == 0.0 else 4) * (shape.sides - 1)
+    if isinstance(shape, Cylinder | Cone):
+        return sum(2 * divisions(d / 2, rung) - 2 for d in (shape.diameter, _top(shape)) if d > 0.0)
+    if isinstance(shape, Sphere | Ellipsoid):
+        n = divisions((max(shape.axes) if isinstance(shape, Ellipsoid) else shape.diameter) / 2, rung)
+        return n * (n - 2)
+    if isinstance(shape, Torus):
+        return 2 * divisions((shape.diameter + shape.tube) / 2, rung) * divisions(shape.tube / 2, rung)
+    chords, reach = _chord_bound(shape, rung)
+    return 4 * chords if isinstance(shape, Extrude) else 2 * chords * divisions(reach, rung)
+
+
+def rise(shape: Primitive) -> float:
+    """The length of a shape that stands on z = 0; 0 for those that are centred or revolved."""
+    if isinstance(shape, Block | Wedge):
+        return shape.size[2]
+    if isinstance(shape, Cylinder | Cone | Prism | Pyramid | Extrude):
+        return shape.length
+    return 0.0
+
+
+def require_positive(shape: Primitive) -> None:
+    """SolidError unless every size is a positive finite number; `top` and `top_length` may be 0."""
+    may_be_zero = {"top", "top_length"}
+    for name in type(shape).__dataclass_fields__:
+        value = getattr(shape, name)
+        for each in value if isinstance(value, tuple) else (value,):
+            if isinstance(each, int | float) and not (
+                math.isfinite(each) and (each > 0.0 or (each == 0.0 and name in may_be_zero))
+            ):
+                raise SolidError(f"{type(shape).__name__}: {name} is {each}")
+
+
+def _top(shape: Cylinder | Cone) -> float:
+    return shape.top if isinstance(shape, Cone) else shape.diameter
+
+
+def _chord_bound(shape: Extrude | Revolve, rung: float) -> tuple[int, float]:
+    chords, reach = 0, rung
+    for loop in (shape.outline.outer, *shape.outline.holes):
+        at = loop.start
+        reach = max(reach, abs(at[0]))
+        for stretch in loop.stretches:
+            centre = getattr(stretch, "centre", None)
+            radius = 0.0 if centre is None else math.dist(at, centre)
+            chords += 1 if centre is None else 2 + divisions(max(radius, 1e-12), rung)
+            reach = max(reach, abs(stretch.end[0]), 0.0 if centre is None else abs(centre[0]) + radius)
+            at = stretch.end
+        chords += 1
+    return chords, reach
+
+
+def _ellipsoid(shape: Ellipsoid, rung: float) -> Shell:
+    widest = max(shape.axes)
+    ball = revolve(_profile(Sphere(widest), rung), rung)
+    x, y, z = (axis / widest for axis in shape.axes)
+    affine = np.array([[x, 0.0, 0.0, 0.0], [0.0, y, 0.0, 0.0], [0.0, 0.0, z, 0.0]])
+    return Shell(ball.vertices * (x, y, z), ball.faces, ball.face_surface, place(ball.surfaces, affine))
+
+
+def _profile(shape: Cylinder | Cone | Sphere | Torus | Revolve, rung: float) -> list[Polyline]:
+    if isinstance(shape, Revolve):
+        return flatten(shape.outline, rung)
+    if isinstance(shape, Sphere):
+        r = shape.diameter / 2
+        arc = Curve((0.0, -r), (0.0, r), (0.0, 0.0), r)
+        return [polyline((arc, Curve((0.0, r), (0.0, -r))), rung)]
+    if isinstance(shape, Torus):
+        r, far = shape.tube / 2, (shape.diameter + shape.tube) / 2
+        return [polyline((Curve((far, 0.0), (far, 0.0), (shape.diameter / 2, 0.0), r),), rung)]
+    r, top = shape.diameter / 2, _top(shape) / 2
+    corners: list[Point2] = [(0.0, 0.0), (r, 0.0), (top, shape.length), (0.0, shape.length)]
+    if top == 0.0:
+        corners.pop()
+    curves = tuple(Curve(a, b) for a, b in zip(corners, corners[1:] + corners[:1], strict=True))
+    return [polyline(curves, rung)]
