@@ -266,3 +266,10 @@ def test_bytes_do_not_depend_on_hash_seed_zone_locale_or_folder(tmp_path: Path) 
             [sys.executable, "-c", code], env=surroundings, cwd=tmp_path, capture_output=True, text=True, check=True
         )
         assert run.stdout.strip() == all_digest()
+
+
+def test_the_documentation_names_every_kind_and_column() -> None:
+    readme = (Path(__file__).parents[1] / "backend" / "write" / "README.md").read_text(encoding="utf-8")
+    assert all(f"`{column}`" in readme for column in COLUMNS)
+    assert all(f"## {kind.upper()}" in readme for kind in KINDS)
+    assert "not manufacturing drawings. Check dimensions before making anything, and follow\n> local codes" in readme
