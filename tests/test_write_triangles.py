@@ -227,6 +227,15 @@ def test_a_subset_of_all_is_the_whole(geometry: Geometry) -> None:
         assert export(geometry, MATERIALS, kind, range(len(geometry.nodes))) == export(geometry, MATERIALS, kind)
 
 
+def test_nothing_chosen_gives_files_without_triangles() -> None:
+    files = {kind: export(geometries.one_cube(), MATERIALS, kind, ()) for kind in KINDS}
+    assert files["csv"]["csv"].decode() == ",".join(COLUMNS) + "\n"
+    assert len(files["stl"]["stl"]) == 84
+    assert b"element face 0\n" in files["ply"]["ply"] and files["ply"]["ply"].endswith(b"end_header\n")
+    assert b"\nf " not in files["obj"]["obj"] and b"newmtl" not in files["obj"]["mtl"]
+    assert set(json.loads(files["glb"]["glb"][20:])) == {"asset"}
+
+
 def test_exports_by_kind(geometry: Geometry) -> None:
     files = {kind: export(geometry, MATERIALS, kind, name="teil") for kind in KINDS}
     assert {kind: sorted(made) for kind, made in files.items()} == {
