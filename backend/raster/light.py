@@ -1,0 +1,118 @@
+"""Shading of blocks of 16 jobs, one job being a pixel of one face. `reflectance` names the formulas.
+
+A block holds jobs of one material, field after field, each 16 float32 long: normal 3, toward the eye 3, world place 3,
+then scratch and the result. The loops over 16 compile to vector code.
+"""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+import numpy as np
+
+from .compiled import fast_kernel
+from .reflectance import CONTRAST, DEGREE
+
+WIDTH = 16
+NORMAL, VIEW, PLACE, COSINE, MASK, RESULT, DIFFUSE = 0, 3, 6, 9, 10, 11, 14
+FIELDS = 17
+BLOCK = FIELDS * WIDTH
+
+_ZERO, _ONE, _TWO, _HALF = np.float32(0), np.float32(1), np.float32(2), np.float32(0.5)
+_TINY, _LEAST_COSINE, _AWAY = np.float32(1e-20), np.float32(1e-3), np.float32(-0.2)
+_CONTRAST = np.float32(CONTRAST)
+_SQUARE_METRE = np.float32(1e6)
+_B = 8 + DEGREE + 1
+
+
+@fast_kernel
+def _begin(jobs: Any, o: int, m: Any, ambient: Any, axis: Any) -> None:
+    """Unit normals and directions; start the result with what the surround gives."""
+    r0, r1, r2, f0, f1, f2, a2, width = m[0], m[1], m[2], m[3], m[4], m[5], m[6], m[7]
+    p0, p1, p2, p3, p4, p5, p6 = m[8], m[9], m[10], m[11], m[12], m[13], m[14]
+    q0, q1, q2, q3, q4, q5, q6 = m[_B], m[_B + 1], m[_B + 2], m[_B + 3], m[_B + 4], m[_B + 5], m[_B + 6]
+    e0, e1, e2, ax, ay, az = ambient[0], ambient[1], ambient[2], axis[0], axis[1], axis[2]
+    rest, spread = _ONE - a2, width * width
+    for i in range(o, o + WIDTH):
+        x, y, z = jobs[i], jobs[i + 16], jobs[i + 32]
+        vx, vy, vz = jobs[i + 48], jobs[i + 64], jobs[i + 80]
+        s = _ONE / math.sqrt(vx * vx + vy * vy + vz * vz + _TINY)
+        vx, vy, vz = vx * s, vy * s, vz * s
+        s = _ONE / math.sqrt(x * x + y * y + z * z + _TINY)
+        cosine = (x * vx + y * vy + z * vz) * s
+        s = s if cosine > _AWAY else -s
+        x, y, z = x * s, y * s, z * s
+        cosine = abs(cosine) if cosine <= _AWAY else cosine
+        c = cosine if cosine > _LEAST_COSINE else _LEAST_COSINE
+        c = c if c < _ONE else _ONE
+        jobs[i], jobs[i + 16], jobs[i + 32] = x, y, z
+        jobs[i + 48], jobs[i + 64], jobs[i + 80] = vx, vy, vz
+        jobs[i + 144] = c
+        jobs[i + 160] = math.sqrt(c * c * rest + a2)
+        scale = p0 + c * (p1 + c * (p2 + c * (p3 + c * (p4 + c * (p5 + c * p6)))))
+        bias = q0 + c * (q1 + c * (q2 + c * (q3 + c * (q4 + c * (q5 + c * q6)))))
+        t = _TWO * cosine * (x * ax + y * ay + z * az) - (vx * ax + vy * ay + vz * az)
+        seen = _ONE + _CONTRAST * t / math.sqrt(t * t + spread)
+        g0, g1, g2 = f0 * scale + bias, f1 * scale + bias, f2 * scale + bias
+        d0, d1, d2 = r0 * (_ONE - g0), r1 * (_ONE - g1), r2 * (_ONE - g2)
+        jobs[i + 224], jobs[i + 240], jobs[i + 256] = d0, d1, d2
+        jobs[i + 176] = e0 * (d0 + g0 * seen)
+        jobs[i + 192] = e1 * (d1 + g1 * seen)
+        jobs[i + 208] = e2 * (d2 + g2 * seen)
+
+
+@fast_kernel
+def _add(jobs: Any, o: int, i: int, lx: Any, ly: Any, lz: Any, m: Any, k0: Any, k1: Any, k2: Any) -> None:
+    """Add one light of irradiance k from the unit direction l to job i."""
+    a2 = m[6]
+    x, y, z = jobs[i], jobs[i + 16], jobs[i + 32]
+    vx, vy, vz = jobs[i + 48], jobs[i + 64], jobs[i + 80]
+    cosine, mask = jobs[i + 144], jobs[i + 160]
+    n = x * lx + y * ly + z * lz
+    n = n if n > _ZERO else _ZERO
+    facing = vx * lx + vy * ly + vz * lz
+    # The half vector h = (l + v) / |l + v| has |l + v|^2 = 2 + 2 l.v, n.h = (n.l + n.v) / |l + v|, v.h = |l + v| / 2.
+    square = _TWO + _TWO * facing
+    square = square if square > _TINY else _TINY
+    total = n + cosine
+    lobe = square - total * total * (_ONE - a2)
+    least = a2 * square
+    lobe = lobe if lobe > least else least
+    masks = n * mask + cosine * math.sqrt(n * n * (_ONE - a2) + a2)
+    shine = _HALF * a2 * square * square * n / (lobe * lobe * masks + _TINY)
+    miss = _ONE - _HALF * math.sqrt(square)
+    miss = miss if miss > _ZERO else _ZERO
+    fresnel = miss * miss
+    fresnel = fresnel * fresnel * miss
+    grazing = shine * fresnel
+    shine = shine - grazing
+    jobs[i + 176] += k0 * (jobs[i + 224] * n + m[3] * shine + grazing)
+    jobs[i + 192] += k1 * (jobs[i + 240] * n + m[4] * shine + grazing)
+    jobs[i + 208] += k2 * (jobs[i + 256] * n + m[5] * shine + grazing)
+
+
+@fast_kernel
+def light_blocks(
+    jobs: Any, block_material: Any, n_blocks: int, materials: Any, far: Any, near: Any, ambient: Any, axis: Any
+) -> None:
+    """Shade blocks 0 .. n_blocks: the fields from RESULT on become linear RGB, not yet clamped.
+
+    A lamp gives its power at 1 m and falls with the square of the distance.
+    """
+    for block in range(n_blocks):
+        o = block * BLOCK
+        m = materials[block_material[block]]
+        _begin(jobs, o, m, ambient, axis)
+        for k in range(len(far)):
+            lx, ly, lz, k0, k1, k2 = far[k, 0], far[k, 1], far[k, 2], far[k, 3], far[k, 4], far[k, 5]
+            for i in range(o, o + WIDTH):
+                _add(jobs, o, i, lx, ly, lz, m, k0, k1, k2)
+        for k in range(len(near)):
+            for i in range(o, o + WIDTH):
+                lx, ly, lz = near[k, 0] - jobs[i + 96], near[k, 1] - jobs[i + 112], near[k, 2] - jobs[i + 128]
+                square = lx * lx + ly * ly + lz * lz + _TINY
+                s = _ONE / math.sqrt(square)
+                power = _SQUARE_METRE / square
+                k0, k1, k2 = near[k, 3] * power, near[k, 4] * power, near[k, 5] * power
+                _add(jobs, o, i, lx * s, ly * s, lz * s, m, k0, k1, k2)
