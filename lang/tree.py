@@ -178,7 +178,9 @@ Value: TypeAlias = (
 class Reading:
     """A word and the values of its slots: `turn 12 deg about y` is `turn` with `by` and `axis`.
 
-    `row` names the vocabulary row it was read by (`words.Row.key`); absent optional slots are left out.
+    `row` names the vocabulary row it was read by (`words.Row.key`); absent optional slots are left out. A slot of kind
+    `signature` gives its name, and under `parameters` a tuple where the name has parentheses. Where a row starts with a
+    value, `word` is empty.
     """
 
     row: str
@@ -220,9 +222,14 @@ class Line:
 
 @dataclass(frozen=True, slots=True)
 class Scene:
-    """One file: its language version (0 if it states none) and its declarations in the order written."""
+    """One file: its language version (0 if it states none) and its declarations in the order written.
+
+    `broken` are names that lines left out for a problem would have declared: a path that uses one of them needs no
+    problem of its own.
+    """
 
     file: str
     version: int
     lines: tuple[Line, ...]
     span: Span
+    broken: tuple[str, ...] = ()

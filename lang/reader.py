@@ -1,0 +1,283 @@
+"""Raw lines against the vocabulary: readings, lines and the scene, with a problem for whatever does not fit.
+
+A row's pattern is matched item by item. Matching a correct line keeps no account of what else could have stood; only
+when a line does not match is it matched again with that account, from which the message is made (mismatch.py).
+"""
+
+from __future__ import annotations
+
+import functools
+import gc
+import re
+from collections.abc import Callable
+from typing import TypeVar
+
+from lark import Lark
+
+from .layout import Layout, RawLine, lay_out, slip_problem
+from .matcher import NO_STARTS, Matcher
+from .mismatch import explain, explain_clauses
+from .nearest import nearest
+from .patterns import Pattern, Starts, Vocabulary, vocabulary
+from .problems import Problem, Related, Severity
+from .scanner import Slip
+from .source import Span
+from .tree import Expression, Line, Name, Number, Reading, Scene, Text
+from .values import Item, Place, expression_of, read_items, value_parser
+
+VERSION = 1
+_Result = TypeVar("_Result")
+
+
+def read_scene(file: str, text: str) -> tuple[Scene, tuple[Problem, ...]]:
+    """The tree of one file and all that is wrong with its text, in the order of the text.
+
+    `file` is the name that spans carry. A line that is broken is left out of the tree with a problem, and the lines
+    under it are still checked; the names it would have declared stand in `Scene.broken`. Never raises on any text;
+    cost is linear in it.
+    """
+    return _without_collector(lambda: _Scene(value_parser(), vocabulary(), file).read(text))
+
+
+def read_layout(file: str, text: str) -> Layout:
+    """The lines of a file before their words are read, for the printer."""
+    return _without_collector(lambda: lay_out(value_parser(), file, text))
+
+
+def read_value(file: str, text: str) -> tuple[Expression | None, tuple[Problem, ...]]:
+    """One value on its own, as after `--set NAME=` or in a cell of a table; None with problems where it is none."""
+    place = Place(file, 1)
+    if "\n" in text or "\t" in text or len(text) > 10_000:
+        sentence = "expected one value on one line, without tabs"
+        return None, (Problem("broken-value", Severity.ERROR, place.span(0, 0), sentence),)
+    start = len(text) - len(text.lstrip(" "))
+    try:
+        items, _ = read_items(value_parser(), place, text, start)
+    except Slip as slip:
+        return None, (slip_problem(place, slip),)
+    node = expression_of(place, items[0]) if len(items) == 1 else None
+    if node is None:
+        at = items[1].start if len(items) > 1 else start
+        problem = Problem("broken-value", Severity.ERROR, place.span(at, len(text)), "expected one value and no more")
+        return None, (problem,)
+    return node, ()
+
+
+def _without_collector(work: Callable[[], _Result]) -> _Result:
+    """Runs with the garbage collector off: trees have no cycles, and looking for them costs half of the reading."""
+    was_on = gc.isenabled()
+    gc.disable()
+    try:
+        return work()
+    finally:
+        if was_on:
+            gc.enable()
+
+
+class _Scene:
+    """The state of reading one file: its problems, and where in it the reading stands."""
+
+    def __init__(self, parser: Lark, words: Vocabulary, file: str) -> None:
+        self.parser = parser
+        self.words = words
+        self.file = file
+        self.problems: list[Problem] = []
+        self.broken: list[str] = []
+        self.version: Span | None = None
+        self.figure = ""
+        self.is_later = False
+
+    def read(self, text: str) -> tuple[Scene, tuple[Problem, ...]]:
+        layout = lay_out(self.parser, self.file, text)
+        self.problems.extend(layout.problems)
+        lines = self.lines(layout.lines, "scene")
+        version = VERSION if self.version else 0
+        span = Span(self.file, 1, 1, layout.end.end_line, layout.end.end_column)
+        scene = Scene(self.file, version, lines, span, tuple(dict.fromkeys(self.broken)))
+        return scene, tuple(sorted(self.problems, key=lambda problem: problem.span))
+
+    def lines(self, raws: list[RawLine], context: str) -> tuple[Line, ...]:
+        """The lines that may stand in a context; broken ones are left out."""
+        starts = self.words.places.get(context, NO_STARTS)
+        read = []
+        for raw in raws:
+            line = self.line(raw, starts, context)
+            if line is not None:
+                read.append(line)
+        return tuple(read)
+
+    def line(self, raw: RawLine, starts: Starts, context: str) -> Line | None:
+        if raw.lines:
+            join_texts(raw)
+        if raw.is_broken:
+            self.give_up(raw, starts)
+            return None
+        clauses: list[Reading] = []
+        matcher = Matcher(raw, self.words)
+        try:
+            found = matcher.start(starts, 0)
+            if found is not None and matcher.clauses(found[2], found[1], clauses) < 0:
+                found = None
+            if found is None:
+                self.problems.append(explain(raw, starts, context, self.words))
+        except Slip as slip:
+            self.problems.append(slip_problem(raw.place, slip))
+            found = None
+        if found is None:
+            self.give_up(raw, starts)
+            return None
+        return self.whole(raw, found[0], found[2], clauses, context)
+
+    def whole(self, raw: RawLine, head: Reading, pattern: Pattern, clauses: list[Reading], context: str) -> Line:
+        """A line whose own words have been read, with the lines under it."""
+        before = self.is_later, self.figure
+        if context == "scene":
+            self.declaration(head)
+        self.report_later(pattern.row.later, head)
+        self.is_later = self.is_later or pattern.row.later
+        for clause in clauses:
+            self.report_later(False, clause)
+        lines: tuple[Line, ...] = ()
+        if raw.lines:
+            rest = self.fold(raw.lines, pattern, clauses)
+            if pattern.row.lines:
+                lines = self.lines(rest, pattern.row.lines)
+            elif rest:
+                self.refuse(rest[0], pattern)
+        self.is_later, self.figure = before
+        ends = [clause.span for clause in clauses[-1:]] + [line.span for line in lines[-1:]]
+        span = functools.reduce(_wider, ends, head.span)
+        return Line(head, tuple(clauses), lines, raw.note, span)
+
+    def declaration(self, head: Reading) -> None:
+        name = head.get("name")
+        self.figure = name.text if head.row == "figure" and isinstance(name, Name) else ""
+        if head.row == "platewright":
+            self.check_version(head)
+
+    def check_version(self, head: Reading) -> None:
+        stated = head.get("version")
+        if self.version is not None:
+            sentence = "the version of the language is stated twice"
+            related = (Related(self.version, "stated here"),)
+            self.problems.append(Problem("version", Severity.ERROR, head.span, sentence, "", related))
+        elif not isinstance(stated, Number) or stated.text != str(VERSION):
+            sentence = f"expected `platewright {VERSION}`, the version of the language that is known here"
+            self.problems.append(Problem("version", Severity.ERROR, head.span, sentence))
+        self.version = self.version or head.span
+
+    def report_later(self, is_later: bool, reading: Reading) -> None:
+        """Reports the first word in a reading whose work is not built yet, unless what holds it was reported."""
+        if self.is_later:
+            return
+        if not is_later:
+            later = self.first_later(reading)
+            if later is None:
+                return
+            reading = later
+        sentence = f"`{reading.word}` is a word of the language that is not drawn yet"
+        self.problems.append(Problem("not-drawn-yet", Severity.ERROR, reading.word_span, sentence, within=self.figure))
+
+    def first_later(self, reading: Reading) -> Reading | None:
+        if reading.row in self.words.later:
+            return reading
+        for _, value in reading.values:
+            if isinstance(value, Reading):
+                return self.first_later(value)
+        return None
+
+    def fold(self, raws: list[RawLine], pattern: Pattern, clauses: list[Reading]) -> list[RawLine]:
+        """Reads the lines that are clauses of the line above into `clauses`; the other lines are returned."""
+        if not pattern.row.clauses:
+            return raws
+        starts = self.words.clauses[pattern.row.clauses]
+        rest = []
+        for raw in raws:
+            if raw.is_broken or (pattern.row.lines and raw.items[0].word not in starts.by_word):
+                rest.append(raw)
+                continue
+            self.clause_line(raw, pattern, clauses)
+        return rest
+
+    def clause_line(self, raw: RawLine, pattern: Pattern, clauses: list[Reading]) -> None:
+        read: list[Reading] = []
+        try:
+            if Matcher(raw, self.words).clauses(pattern, 0, read) < 0:
+                self.problems.append(explain_clauses(raw, pattern, self.words))
+                return
+        except Slip as slip:
+            self.problems.append(slip_problem(raw.place, slip))
+            return
+        for clause in read:
+            self.report_later(False, clause)
+        clauses.extend(read)
+        if raw.lines:
+            self.refuse(raw.lines[0], None)
+
+    def refuse(self, raw: RawLine, pattern: Pattern | None) -> None:
+        """Reports the first of the lines indented under a line that takes none."""
+        if raw.is_broken:
+            return
+        above = f"`{pattern.word}`" if pattern is not None and pattern.word else "the line above"
+        sentence = f"{above} takes no lines under it"
+        span = raw.place.span(raw.column, raw.end)
+        hint = "start this line in the column of the line above"
+        self.problems.append(Problem("no-lines-here", Severity.ERROR, span, sentence, hint))
+
+    def give_up(self, raw: RawLine, starts: Starts) -> None:
+        """Leaves a broken line out, but keeps the name it would have declared and checks the lines under it."""
+        written = _DECLARES.match(raw.text, raw.column)
+        if written is None:
+            return
+        word = written["word"]
+        rows = starts.by_word.get(word) or starts.by_word.get(nearest(word, starts.by_word), ())
+        if written["name"]:
+            self.broken.append(written["name"])
+        elif not rows:
+            self.broken.append(word)
+        context = next((pattern.row.lines for pattern in rows if pattern.row.lines), "")
+        if context:
+            pattern = rows[0]
+            rest = self.fold(raw.lines, pattern, [])
+            self.lines(rest, context)
+
+
+_DECLARES = re.compile(r"(?P<word>[A-Za-z_]\w*)(?: +(?P<name>[A-Za-z_]\w*))?", re.ASCII)
+
+
+def _wider(span: Span, other: Span) -> Span:
+    if (other.end_line, other.end_column) > (span.end_line, span.end_column):
+        return span.to(other)
+    return span
+
+
+def join_texts(raw: RawLine) -> None:
+    """Joins the texts on lines of their own under a line to its last text, or makes them its last text.
+
+    Two texts are joined by one space, or by nothing where the first ends in a space or a line break.
+    """
+    texts = [line for line in raw.lines if len(line.items) == 1 and isinstance(line.items[0].node, Text)]
+    if not texts or raw.is_broken:
+        return
+    last = raw.items[-1]
+    joined = last.node if isinstance(last.node, Text) else None
+    for line in texts:
+        further = line.items[0].node
+        assert isinstance(further, Text)
+        joined = further if joined is None else _joined(joined, further)
+    items = raw.items[:-1] if isinstance(last.node, Text) else raw.items
+    start = last.start if isinstance(last.node, Text) else raw.end
+    raw.items = [*items, Item("", joined, start, raw.end, "TEXT")]
+    raw.lines = [line for line in raw.lines if line not in texts]
+
+
+def _joined(first: Text, further: Text) -> Text:
+    last = first.parts[-1] if first.parts else ""
+    gap = "" if isinstance(last, str) and last[-1:] in ("", " ", "\n") else " "
+    parts: list[str | Expression] = []
+    for part in (*first.parts, gap, *further.parts):
+        if isinstance(part, str) and parts and isinstance(parts[-1], str):
+            parts[-1] += part
+        elif part:
+            parts.append(part)
+    return Text(tuple(parts), first.span.to(further.span))
