@@ -54,19 +54,23 @@ def circle_table(n: int) -> NDArray[np.float64]:
     One octant is computed and the rest mirrored from it, so the table is exactly symmetric about both axes and
     both diagonals, and its quarter points are exact. ValueError if n is not a positive multiple of 4.
     """
+    return circle_points(n, np.arange(n))
+
+
+def circle_points(n: int, marks: NDArray[np.integer]) -> NDArray[np.float64]:
+    """The rows (k,2) of `circle_table` at `marks`, any whole numbers, without the rest of the table."""
     if n < 4 or n % 4:
         raise ValueError(f"a circle is divided into a multiple of 4, not {n}")
-    quarter = n // 4
-    first = np.empty((quarter, 2))
-    for k in range(quarter // 2 + 1):
-        cosine, sine = cos_deg(360.0 * k / n), sin_deg(360.0 * k / n)
-        first[k] = cosine, sine
-        if k:
-            first[quarter - k] = sine, cosine
-    if quarter % 2 == 0:
-        first[quarter // 2] = _HALF_ROOT_2, _HALF_ROOT_2
-    second = np.column_stack((-first[:, 1], first[:, 0]))
-    return np.concatenate((first, second, -first, -second)) + 0.0
+    quarter, within = np.divmod(np.asarray(marks, np.int64) % n, n // 4)
+    above = 2 * within > n // 4
+    octant, place = np.unique(np.where(above, n // 4 - within, within), return_inverse=True)
+    angles = [360.0 * k / n for k in octant.tolist()]
+    # The half quarter is 45 degrees, where cosine and sine are one number.
+    short = np.array([(cos_deg(a), sin_deg(a)) for a in angles]).reshape(-1, 2)[place]
+    x, y = np.where(above, short[:, 1], short[:, 0]), np.where(above, short[:, 0], short[:, 1])
+    across = np.select([quarter == 0, quarter == 1, quarter == 2], [x, -y, -x], y)
+    up = np.select([quarter == 0, quarter == 1, quarter == 2], [y, x, -y], -x)
+    return np.column_stack((across, up)) + 0.0
 
 
 def _cos_first_quadrant(angle: float) -> float:

@@ -1,0 +1,184 @@
+"""A scene with everything it sees: files are asked of a loader, parsed, and their tables read."""
+
+from __future__ import annotations
+
+import posixpath
+from collections.abc import Callable, Iterator, Mapping
+from dataclasses import dataclass
+
+from platewright.lang import tree
+from platewright.lang.problems import Problem
+from platewright.lang.reader import read_scene
+from platewright.lang.source import Span
+
+from . import limits
+from .mistakes import Problems
+from .tables import Table, read_table
+
+
+@dataclass(frozen=True, slots=True)
+class Refusal:
+    """What a loader answers instead of bytes."""
+
+    reason: str
+
+
+Loader = Callable[[str], "bytes | Refusal"]
+
+
+@dataclass(frozen=True, slots=True)
+class Files:
+    """Parsed scenes and tables by file name, the texts they came from, and where each `see` leads."""
+
+    main: str
+    scenes: Mapping[str, tree.Scene]
+    tables: Mapping[str, Table]
+    texts: Mapping[str, str]
+    sees: Mapping[str, tuple[tuple[str, str, Span], ...]]
+
+
+_REASONS = {
+    "missing": "there is no file `{name}`",
+    "outside": "`{name}` lies outside the project's folder",
+    "too large": f"`{{name}}` is larger than {limits.FILE_BYTES:,} bytes, the limit",
+    "not a file": "`{name}` is not a file",
+    "unreadable": "`{name}` cannot be read",
+}
+
+
+def load(main: str, loader: Loader) -> tuple[Files | None, tuple[Problem, ...]]:
+    """Read `main` and, from file to file, all that it sees. Names are POSIX paths relative to the project's folder.
+
+    None only where `main` itself gives no text. Cost: linear in the texts.
+    """
+    reading = _Reading(loader)
+    start = Span(main, 1, 1, 1, 1)
+    if not reading.scene(main, start):
+        return None, reading.problems.all()
+    return Files(main, reading.scenes, reading.tables, reading.texts, reading.sees), reading.problems.all()
+
+
+class _Reading:
+    def __init__(self, loader: Loader) -> None:
+        self.loader = loader
+        self.problems = Problems()
+        self.scenes: dict[str, tree.Scene] = {}
+        self.tables: dict[str, Table] = {}
+        self.texts: dict[str, str] = {}
+        self.sees: dict[str, tuple[tuple[str, str, Span], ...]] = {}
+
+    def scene(self, main: str, start: Span) -> bool:
+        """Read a scene and what it sees, nearest first; False if the main file gives no text."""
+        pending: list[tuple[str, Span, tuple[str, ...]]] = [(main, start, ())]
+        while pending:
+            name, span, trail = pending.pop()
+            if name in trail:
+                circle = " sees ".join(f"`{step}`" for step in (*trail[trail.index(name) :], name))
+                self.problems.error("circular see", span, f"files see each other in a circle: {circle}")
+                continue
+            if name in self.scenes:
+                pending.extend((seen, at, (*trail, name)) for _, seen, at in self.sees[name])
+                if len(trail) > limits.NESTING:
+                    self.problems.error(
+                        "too deep", span, f"files see each other more than {limits.NESTING} deep, the limit"
+                    )
+                    pending.clear()
+                continue
+            text = self.text(name, span)
+            if text is None:
+                if name == main:
+                    return False
+                continue
+            parsed, problems = read_scene(name, text)
+            self.scenes[name] = parsed
+            self.problems.extend(problems)
+            self.sees[name] = tuple(self._sees(parsed))
+            pending.extend((seen, at, (*trail, name)) for _, seen, at in reversed(self.sees[name]))
+            self._read_tables(parsed)
+        return True
+
+    def text(self, name: str, span: Span) -> str | None:
+        """The text of a file, decoded; None with a problem if there is none."""
+        if len(self.texts) >= limits.FILES:
+            self.problems.error("too much", span, f"the scene sees more than {limits.FILES} files, the limit")
+            return None
+        answer = self.loader(name)
+        if isinstance(answer, Refusal):
+            self.problems.error(
+                "no such file", span, _REASONS.get(answer.reason, "`{name}` cannot be read").format(name=name)
+            )
+            return None
+        try:
+            text = answer.decode("utf-8")
+        except UnicodeDecodeError as error:
+            line = answer.count(b"\n", 0, error.start) + 1
+            sentence = f"this file is not UTF-8: byte {answer[error.start]:#04x} at offset {error.start}"
+            at = Span(name, line, 1, line, 1)
+            self.texts.setdefault(name, answer.decode("utf-8", "replace"))
+            self.problems.error("not UTF-8", at, sentence, "save the file as UTF-8")
+            return None
+        self.texts[name] = text
+        return text
+
+    def _sees(self, scene: tree.Scene) -> Iterator[tuple[str, str, Span]]:
+        for line in scene.lines:
+            if line.word == "see":
+                prefix, wanted = line.head.get("prefix"), self._constant(line.head.get("file"))
+                if isinstance(prefix, tree.Name) and wanted is not None:
+                    target = self._within(scene.file, *wanted)
+                    if target:
+                        yield prefix.text, target, wanted[1]
+
+    def _read_tables(self, scene: tree.Scene) -> None:
+        for reading in readings(scene.lines):
+            wanted = self._constant(reading.get("table"))
+            if wanted is None:
+                continue
+            target = self._within(scene.file, *wanted)
+            if target and target not in self.texts:
+                text = self.text(target, wanted[1])
+                if text is not None:
+                    table, problems = read_table(target, text)
+                    self.problems.extend(problems)
+                    if table is not None:
+                        self.tables[target] = table
+
+    def _constant(self, value: tree.Value | None) -> tuple[str, Span] | None:
+        """A text written out, not computed: files are known before anything is evaluated."""
+        if not isinstance(value, tree.Text):
+            return None
+        if not all(isinstance(part, str) for part in value.parts):
+            self.problems.error(
+                "computed file name", value.span, "a file name is written out, without values in braces"
+            )
+            return None
+        return "".join(part for part in value.parts if isinstance(part, str)), value.span
+
+    def _within(self, file: str, wanted: str, span: Span) -> str | None:
+        """The project-relative name of a file named from another; None with a problem if it leaves the project."""
+        target = beside(file, wanted)
+        if target is None:
+            self.problems.error("no such file", span, f"`{wanted}` lies outside the project's folder")
+        return target
+
+
+def beside(file: str, wanted: str) -> str | None:
+    """The project-relative POSIX name of `wanted` as named from `file`; None if it leaves the project's folder."""
+    if not wanted or wanted.startswith("/") or "\\" in wanted or "\0" in wanted or ":" in wanted:
+        return None
+    target = posixpath.normpath(posixpath.join(posixpath.dirname(file), wanted))
+    return None if target.startswith("..") else target
+
+
+def readings(lines: tuple[tree.Line, ...]) -> Iterator[tree.Reading]:
+    """Every word read, with the words nested in its values, in the order of the text."""
+    pending: list[tree.Line | tree.Reading] = list(reversed(lines))
+    while pending:
+        node = pending.pop()
+        if isinstance(node, tree.Reading):
+            yield node
+            pending.extend(value for _, value in reversed(node.values) if isinstance(value, tree.Reading))
+        else:
+            pending.extend(reversed(node.lines))
+            pending.extend(reversed(node.clauses))
+            pending.append(node.head)

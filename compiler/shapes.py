@@ -1,0 +1,131 @@
+"""Shapes: from the words of a shape to a primitive of a recipe, with its sizes checked."""
+
+from __future__ import annotations
+
+from platewright.lang import tree
+from platewright.lang.units import LENGTH
+
+from . import limits
+from .expressions import Scope, count, vector
+from .mistakes import mistake
+from .placement import positive_length
+from .readings import expression, optional
+from .solids.recipe import (
+    Block,
+    Cone,
+    Cylinder,
+    Ellipsoid,
+    Extrude,
+    Outline,
+    Primitive,
+    Prism,
+    Pyramid,
+    Revolve,
+    Sphere,
+    Torus,
+    Wedge,
+)
+
+OUTLINED = ("extrude", "revolve")
+"""Shapes made from an outline, which the caller resolves."""
+
+
+def read_shape(reading: tree.Reading, scope: Scope, outline: Outline | None) -> Primitive:
+    """The primitive that a shape's words describe; `outline` is that of `extrude` and `revolve`. Raises Mistake."""
+
+    def size(slot: str, zero: bool = False) -> float:
+        return positive_length(expression(reading, slot), scope, slot, zero)
+
+    match reading.word:
+        case "block":
+            return Block(_sizes(reading, "size", scope))
+        case "wedge":
+            return _wedge(reading, scope)
+        case "cylinder":
+            return Cylinder(size("diameter"), size("length"))
+        case "cone":
+            return _cone(reading, size("diameter"), _top(reading, scope), size("length"))
+        case "sphere":
+            return Sphere(size("diameter"))
+        case "ellipsoid":
+            return Ellipsoid(_sizes(reading, "axes", scope))
+        case "torus":
+            return _torus(reading, size("diameter"), size("tube"))
+        case "prism":
+            return Prism(_sides(reading, scope), size("across"), size("length"))
+        case "pyramid":
+            return Pyramid(_sides(reading, scope), size("across"), _top(reading, scope), size("length"))
+        case "extrude":
+            assert outline is not None
+            return Extrude(outline, size("length"))
+        case "revolve":
+            assert outline is not None
+            return Revolve(outline)
+    raise AssertionError(f"no shape {reading.word}")
+
+
+def height(shape: Primitive) -> float:
+    """The length a shape rises along its z axis from z = 0; 0 for shapes centred on the origin."""
+    match shape:
+        case Block() | Wedge():
+            return shape.size[2]
+        case Cylinder() | Cone() | Prism() | Pyramid() | Extrude():
+            return shape.length
+        case Revolve():
+            return max(point[1] for point in _corners(shape.outline))
+        case _:
+            return 0.0
+
+
+def diameter(shape: Primitive) -> float | None:
+    """The diameter of a round shape at its base, None for others."""
+    return shape.diameter if isinstance(shape, (Cylinder, Cone, Sphere, Torus)) else None
+
+
+def _corners(outline: Outline) -> list[tuple[float, float]]:
+    return [outline.outer.start, *(stretch.end for stretch in outline.outer.stretches)]
+
+
+def _sizes(reading: tree.Reading, slot: str, scope: Scope) -> tuple[float, float, float]:
+    written = expression(reading, slot)
+    x, y, z = vector(written, scope, 3, LENGTH).components
+    for axis, value in zip("xyz", (x, y, z), strict=True):
+        if not 0 < value <= limits.LARGEST_MM:
+            sentence = f"size along {axis}: expected more than 0, found {value:g} mm"
+            if value > 0:
+                sentence = f"size along {axis}: more than {limits.LARGEST_MM:g} mm, the limit"
+            raise mistake("out of range", written.span, sentence)
+    return (x, y, z)
+
+
+def _wedge(reading: tree.Reading, scope: Scope) -> Wedge:
+    size = _sizes(reading, "size", scope)
+    top = _top(reading, scope)
+    written = optional(reading, "top")
+    if written is not None and top >= size[0]:
+        raise mistake("out of range", written.span, f"top: expected less than {size[0]:g} mm, found {top:g} mm")
+    return Wedge(size, top)
+
+
+def _top(reading: tree.Reading, scope: Scope) -> float:
+    written = optional(reading, "top")
+    return positive_length(written, scope, "top", zero=True) if written is not None else 0.0
+
+
+def _cone(reading: tree.Reading, diameter: float, top: float, length: float) -> Cone | Cylinder:
+    if diameter == top:
+        return Cylinder(diameter, length)
+    return Cone(diameter, top, length)
+
+
+def _torus(reading: tree.Reading, diameter: float, tube: float) -> Torus:
+    if tube >= diameter:
+        sentence = (
+            f"tube: expected less than the diameter {diameter:g} mm, found {tube:g} mm; the ring would cut itself"
+        )
+        raise mistake("out of range", expression(reading, "tube").span, sentence)
+    return Torus(diameter, tube)
+
+
+def _sides(reading: tree.Reading, scope: Scope) -> int:
+    return count(expression(reading, "sides"), scope, least=3, most=10_000)
