@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import math
+from itertools import pairwise
 
 import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 from platewright.compiler.solids import ladder, transform
-from platewright.compiler.trigonometry import circle_table, cos_deg, sin_deg, tan_deg
+from platewright.compiler.trigonometry import circle_points, circle_table, cos_deg, sin_deg, tan_deg
 
 angles = st.floats(-1e4, 1e4)
 directions = st.tuples(*[st.floats(-1, 1)] * 3).filter(lambda v: math.hypot(*v) > 1e-3)
@@ -52,6 +53,13 @@ def test_circle_table_is_symmetric_to_the_bit(n: int) -> None:
     assert np.abs(table - np.column_stack((np.cos(math.tau * k / n), np.sin(math.tau * k / n)))).max() < 1e-15
     if n % 12 == 0:
         assert table[n // 12, 1] == 0.5
+
+
+@given(st.integers(1, 10_000), st.lists(st.integers(-50_000, 50_000), max_size=20))
+def test_marks_alone_are_those_of_the_table(quarter: int, marks: list[int]) -> None:
+    table = circle_table(4 * quarter)
+    rows = np.array(marks, int)
+    assert np.array_equal(circle_points(4 * quarter, rows), table[rows % (4 * quarter)])
 
 
 @pytest.mark.parametrize("n", [0, 2, 6, 10])
@@ -124,7 +132,7 @@ def test_rungs_are_a_series_of_1_2_5() -> None:
     assert rungs[-1] == ladder.FINEST
     assert len(rungs) == 25
     assert {0.1, 0.05, 0.02, 0.01, 0.005, ladder.FACTS} <= set(rungs)
-    ratios = {round(a / b, 9) for a, b in zip(rungs, rungs[1:], strict=False)}
+    ratios = {round(a / b, 9) for a, b in pairwise(rungs)}
     assert ratios == {2.0, 2.5}
 
 

@@ -2,12 +2,10 @@
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 from numpy.typing import NDArray
 
-from .outline import oriented, sweep
+from .outline import extent, oriented
 from .polyhedra import regular_polygon
 from .recipe import (
     Affine,
@@ -16,7 +14,6 @@ from .recipe import (
     Cylinder,
     Ellipsoid,
     Extrude,
-    Outline,
     Point3,
     Primitive,
     Prism,
@@ -100,7 +97,7 @@ def _hull(shape: Primitive) -> tuple[list[tuple[F64, F64]], F64]:
         ring, r = shape.diameter / 2, shape.tube / 2
         return [(np.zeros(3), np.array([[ring, ring, 0.0], [r, r, r]]))], none
     if isinstance(shape, Revolve):
-        low, high = _outline_box(shape.outline)
+        low, high = extent(oriented(shape.outline.outer, True))
         return [_disc(high[0], low[1]), _disc(high[0], high[1])], none
     return [], _corners(shape)
 
@@ -114,32 +111,15 @@ def _corners(shape: Block | Wedge | Prism | Pyramid | Extrude) -> F64:
         base = np.array([[-x, -y], [x, -y], [x, y], [-x, y]]) / 2
         top = np.array([[-x / 2, -y / 2], [shape.top_length - x / 2, -y / 2]])
         top = np.concatenate((top, top * (1.0, -1.0)))
-        return np.concatenate((_levels(base, 0.0), _levels(top, z)))
+        return np.concatenate((_at(base, 0.0), _at(top, z)))
     if isinstance(shape, Prism):
         return _levels(regular_polygon(shape.sides, shape.across), shape.length)
     if isinstance(shape, Pyramid):
         top = regular_polygon(shape.sides, shape.top) if shape.top > 0.0 else np.zeros((1, 2))
         base = regular_polygon(shape.sides, shape.across)
         return np.concatenate((_at(base, 0.0), _at(top, shape.length)))
-    low, high = _outline_box(shape.outline)
+    low, high = extent(oriented(shape.outline.outer, True))
     return _levels(np.array([[low[0], low[1]], [high[0], low[1]], [high[0], high[1]], [low[0], high[1]]]), shape.length)
-
-
-def _outline_box(outline: Outline) -> tuple[list[float], list[float]]:
-    low, high = [math.inf, math.inf], [-math.inf, -math.inf]
-    for curve in oriented(outline.outer, True):
-        reached = [curve.start, curve.end]
-        if curve.radius:
-            (x, y), r = curve.centre, curve.radius
-            first = curve.start if curve.left else curve.end
-            begin = math.atan2(first[1] - y, first[0] - x)
-            for quarter, point in enumerate(((x + r, y), (x, y + r), (x - r, y), (x, y - r))):
-                if (quarter * math.pi / 2 - begin) % math.tau <= sweep(curve):
-                    reached.append(point)
-        for point in reached:
-            low = [min(low[0], point[0]), min(low[1], point[1])]
-            high = [max(high[0], point[0]), max(high[1], point[1])]
-    return low, high
 
 
 def _disc(radius: float, height: float) -> tuple[F64, F64]:

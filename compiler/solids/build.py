@@ -20,7 +20,7 @@ from platewright.backend.contract import Mesh
 from . import transform
 from .finish import finish
 from .flaw import Flaw, SolidError
-from .ladder import MAX_COPIES, MAX_TRIANGLES
+from .ladder import MAX_COPIES, MAX_DEPTH, MAX_TRIANGLES
 from .levels import Levels, axis_planes
 from .recipe import Affine, Placed, Primitive, Recipe
 from .shell import Shell
@@ -123,6 +123,8 @@ class _Workshop:
         levels = Levels([(group.body.planes, group.placements) for _, groups in steps for group in groups])
         solid, low, high, n = Manifold(), 0.0, 0.0, 0
         for operation, groups in steps:
+            if not groups:
+                continue
             operands: list[Manifold] = []
             for group in groups:
                 operands.extend(group.manifolds(levels.to_correct(n), levels.correct))
@@ -201,24 +203,35 @@ def _before(recipe: Recipe, rung: float) -> tuple[Flaw, ...]:
     return tuple(found)
 
 
-def _totals(recipe: Recipe, rung: float, known: dict[int, tuple[int, int]]) -> tuple[int, int]:
+def _totals(recipe: Recipe, rung: float, known: dict[int, tuple[int, int]], depth: int = 1) -> tuple[int, int]:
     """Shapes and triangles with all copies; a recipe used twice is counted twice but walked once."""
+    if depth > MAX_DEPTH:
+        return MAX_COPIES + 1, 0
     if id(recipe) not in known:
-        copies = triangles = 1
+        copies = triangles = 0
         for step in recipe.steps:
             for placed in step.placed:
                 n = max(1, len(placed.placements))
                 if n > MAX_COPIES:
                     return n, 0
                 if isinstance(placed.shape, Recipe):
-                    inner = _totals(placed.shape, rung, known)
+                    inner = _totals(placed.shape, rung, known, depth + 1)
                 else:
-                    grown = max((transform.largest_scale(p) for p in placed.placements), default=1.0)
-                    inner = 1, count_triangles(placed.shape, rung / max(grown, 1e-300))
+                    inner = 1, count_triangles(placed.shape, rung / _largest_scale(placed))
                 copies += n * inner[0]
                 triangles += n * inner[1]
-        known[id(recipe)] = copies - 1, triangles - 1
+        # An empty recipe counts as one, so that no nest of them is larger than the budget.
+        known[id(recipe)] = max(1, copies), triangles
     return known[id(recipe)]
+
+
+def _largest_scale(placed: Placed) -> float:
+    if not placed.placements:
+        return 1.0
+    placements = np.array(placed.placements)
+    if not np.isfinite(placements).all() or not np.linalg.det(placements[:, :, :3]).all():
+        raise SolidError("a placement is not finite, or flattens")
+    return float(transform.largest_scales(placements).max())
 
 
 def _all_placed(recipe: Recipe, seen: set[int]) -> Iterator[Placed]:

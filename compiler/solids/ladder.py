@@ -19,6 +19,8 @@ MAX_TRIANGLES = 5_000_000
 """Limit named `triangles`: of one part at one rung, before cutting."""
 MAX_COPIES = 100_000
 """Limit named `copies`: shapes of one part, with all copies of patterns and of parts within it."""
+MAX_DEPTH = 64
+"""Parts within parts; a deeper nest counts as too many copies."""
 
 
 def rungs() -> tuple[float, ...]:

@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from ..trigonometry import circle_table
+from ..trigonometry import circle_points, circle_table
 from .flaw import SolidError
 from .ladder import divisions
 from .recipe import ArcTo, Loop, Outline, Point2
@@ -58,11 +58,10 @@ class OutlineFlaw:
 def flatten(outline: Outline, rung: float) -> list[Polyline]:
     """Outer loop first, then the holes, at a chord error; finer where coarse chords would touch each other."""
     loops = [oriented(loop, k == 0) for k, loop in enumerate((outline.outer, *outline.holes))]
-    for _ in range(12):
-        lines = [polyline(curves, rung) for curves in loops]
-        if all(len(curves) < 2 and not outline.holes for curves in loops) or contact(lines) is None:
+    for chord_error in (rung, rung / 4.0, rung / 16.0, rung / 64.0, 0.0):
+        lines = [polyline(curves, chord_error) for curves in loops]
+        if (len(loops) == 1 and len(loops[0]) == 1) or contact(lines) is None:
             return lines
-        rung /= 4.0
     raise SolidError("an outline that touches itself was not refused")
 
 
@@ -92,8 +91,27 @@ def sweep(arc: Curve) -> float:
     return math.tau if turn * arc.radius <= _NEAR * arc.radius or math.dist(arc.start, arc.end) == 0.0 else turn
 
 
+def extent(curves: tuple[Curve, ...]) -> tuple[Point2, Point2]:
+    """The exact box (low, high) of a closed loop; two points at the origin for an empty one."""
+    reached = [c.start for c in curves] or [(0.0, 0.0)]
+    for c in curves:
+        if c.radius:
+            (x, y), r = c.centre, c.radius
+            begin, turn = _angle(c, c.start if c.left else c.end), sweep(c)
+            for quarter, point in enumerate(((x + r, y), (x, y + r), (x - r, y), (x, y - r))):
+                if (quarter * math.pi / 2 - begin) % math.tau <= turn:
+                    reached.append(point)
+    across, up = [p[0] for p in reached], [p[1] for p in reached]
+    return (min(across), min(up)), (max(across), max(up))
+
+
+def count_chords(curves: tuple[Curve, ...], rung: float) -> int:
+    """Points of `polyline` at most."""
+    return sum(math.ceil(_chords(c, rung) * sweep(c) / math.tau) + 2 if c.radius else 1 for c in curves)
+
+
 def polyline(curves: tuple[Curve, ...], rung: float) -> Polyline:
-    """Chords of at most `rung` of error; a circle alone starts at its own zero mark."""
+    """Chords of at most `rung` of error, 0 for 1/100 000 of each radius; a circle alone starts at its own zero mark."""
     if len(curves) == 1:
         points = _circle(curves[0], rung)
         return Polyline(points, np.zeros(len(points), np.int32), curves)
@@ -115,7 +133,7 @@ def faults(outline: Outline, turned: bool) -> tuple[OutlineFlaw, ...]:
         sentence = f"The outline has more than {MAX_STRETCHES} stretches, the limit named `stretches`."
         return (OutlineFlaw("too large", sentence, "Draw it with fewer lines and arcs."),)
     curves = [oriented(loop, k == 0) for k, loop in enumerate(loops)]
-    size = max(1e-12, max((max(map(abs, c.start)) + c.radius for loop in curves for c in loop), default=0.0))
+    size = max(1e-12, max(abs(x) for loop in curves for corner in extent(loop) for x in corner))
     for loop in curves:
         if abs(area(loop)) <= _NEAR * size * size:
             return (OutlineFlaw("no area", "The outline encloses no area.", "Give it points that go round something."),)
@@ -288,5 +306,5 @@ def _marks(arc: Curve, rung: float) -> F64:
     # A mark that all but coincides with an end would leave a sliver.
     low, high = first / step + 1e-6, (first + turn) / step - 1e-6
     marks = np.arange(math.ceil(low), math.floor(high) + 1)
-    points = np.array(arc.centre) + arc.radius * circle_table(n)[marks % n]
+    points = np.array(arc.centre) + arc.radius * circle_points(n, marks)
     return points if arc.left else points[::-1]

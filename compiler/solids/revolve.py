@@ -56,8 +56,9 @@ def revolve(loops: list[Polyline], rung: float) -> Shell:
 def ring_divisions(loops: list[Polyline], rung: float) -> list[NDArray[np.int64]]:
     """Vertices in the ring of every point of every loop; 1 on the axis.
 
-    Points within an arc take the division of the arc's largest radius. Rings closer to each other than two chord
-    errors share the division of the larger, so that chords of a thin wall cannot cut through it.
+    Each follows from the ring's radius, but an arc whose ends take the division of its largest radius, or lie on the
+    axis, keeps that division throughout: spheres, tori and domes are grids. Rings whose radii differ by less than two
+    chord errors share the division of the larger, so that the chords of a thin wall cannot cut through it.
     """
     wanted = []
     for loop in loops:
@@ -67,9 +68,10 @@ def ring_divisions(loops: list[Polyline], rung: float) -> list[NDArray[np.int64]
         for row in np.unique(loop.curve[within]):
             on_curve = loop.curve == row
             on_curve |= np.roll(on_curve, 1)
-            reach[within & (loop.curve == row)] = rho[on_curve].max()
-        if len(loop.curves) == 1:
-            reach[:] = rho.max()
+            largest = float(rho[on_curve].max())
+            ends = rho[on_curve & ~(within & (loop.curve == row))]
+            if all(divisions(float(r), rung) == divisions(largest, rung) for r in ends if r > 0.0):
+                reach[within & (loop.curve == row)] = largest
         wanted.append(np.where(rho == 0.0, 0.0, reach))
     every = np.unique(np.concatenate(wanted))
     every = every[every > 0.0]

@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from .flaw import SolidError
 from .ladder import divisions
-from .outline import Curve, OutlineFlaw, Polyline, faults, flatten, polyline
+from .outline import Curve, OutlineFlaw, Polyline, count_chords, extent, faults, flatten, oriented, polyline
 from .polyhedra import block, extrude, prism, pyramid, wedge
 from .recipe import (
     Block,
@@ -83,8 +83,11 @@ def count_triangles(shape: Primitive, rung: float) -> int:
         return n * (n - 2)
     if isinstance(shape, Torus):
         return 2 * divisions((shape.diameter + shape.tube) / 2, rung) * divisions(shape.tube / 2, rung)
-    chords, reach = _chord_bound(shape, rung)
-    return 4 * chords if isinstance(shape, Extrude) else 2 * chords * divisions(reach, rung)
+    loops = [oriented(loop, k == 0) for k, loop in enumerate((shape.outline.outer, *shape.outline.holes))]
+    chords = sum(count_chords(curves, rung) for curves in loops)
+    if isinstance(shape, Extrude):
+        return 4 * chords
+    return 2 * chords * divisions(max(extent(loops[0])[1][0], rung), rung)
 
 
 def rise(shape: Primitive) -> float:
@@ -110,21 +113,6 @@ def require_positive(shape: Primitive) -> None:
 
 def _top(shape: Cylinder | Cone) -> float:
     return shape.top if isinstance(shape, Cone) else shape.diameter
-
-
-def _chord_bound(shape: Extrude | Revolve, rung: float) -> tuple[int, float]:
-    chords, reach = 0, rung
-    for loop in (shape.outline.outer, *shape.outline.holes):
-        at = loop.start
-        reach = max(reach, abs(at[0]))
-        for stretch in loop.stretches:
-            centre = getattr(stretch, "centre", None)
-            radius = 0.0 if centre is None else math.dist(at, centre)
-            chords += 1 if centre is None else 2 + divisions(max(radius, 1e-12), rung)
-            reach = max(reach, abs(stretch.end[0]), 0.0 if centre is None else abs(centre[0]) + radius)
-            at = stretch.end
-        chords += 1
-    return chords, reach
 
 
 def _ellipsoid(shape: Ellipsoid, rung: float) -> Shell:

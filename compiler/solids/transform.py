@@ -59,7 +59,7 @@ def scale(factors: float | Point3, through: Point3 = (0.0, 0.0, 0.0)) -> Affine:
 def facing(direction: Point3) -> Affine:
     """The smallest turn that takes +z to `direction`; about x for a half turn. ValueError for a zero direction."""
     x, y, z = _unit(direction)
-    if x == 0.0 and y == 0.0:
+    if x * x + y * y == 0.0:
         return IDENTITY if z > 0.0 else turn(180.0, (1.0, 0.0, 0.0))
     # Rodrigues' formula with axis (-y, x, 0)/|.| written without the angle, so nothing is lost near 0 and 180.
     k = (1.0 - z) / (x * x + y * y) if z < 0.0 else 1.0 / (1.0 + z)
