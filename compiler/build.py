@@ -105,16 +105,16 @@ class _RowPaths:
         if len(path.steps) != 2:
             columns = ", ".join(f"`{self.variable}.{column}`" for column in self.table.columns)
             raise mistake(
-                "wrong kind", path.span, f"`{self.variable}` is a row of the table", f"its values are {columns}"
+                "wrong-kind", path.span, f"`{self.variable}` is a row of the table", f"its values are {columns}"
             )
         column = path.steps[1].name
         if column not in self.table.columns:
             columns = ", ".join(self.table.columns)
-            raise mistake("unknown name", path.steps[1].span, f"the table has no column `{column}`; it has {columns}")
+            raise mistake("unknown-name", path.steps[1].span, f"the table has no column `{column}`; it has {columns}")
         value = self.table.rows[self.row][self.table.columns.index(column)]
         if value is None:
             related = (Related(self.table.row_spans[self.row], "this row"),)
-            raise mistake("bad table", path.span, f"the cell `{column}` is empty", "", related)
+            raise mistake("bad-table", path.span, f"the cell `{column}` is empty", "", related)
         return value
 
     def call(self, call: tree.Call) -> Value | None:
@@ -182,7 +182,7 @@ class _Builder:
                 (Related(declaration.span, "declared here"),),
             )
         if len(self.under_way) >= limits.NESTING:
-            raise mistake("too deep", span, f"things hold each other more than {limits.NESTING} deep, the limit")
+            raise mistake("too-deep", span, f"things hold each other more than {limits.NESTING} deep, the limit")
         named = arguments(declaration, call, scope, self.scopes[module.file], span)
         key = (module.file, declaration.name, tuple(named.items()))
         if key not in self.made:
@@ -234,11 +234,11 @@ class _Builder:
     def _begins_with_add(self, declaration: Declaration, steps: list[Step], said: dict[str, Span]) -> None:
         if not steps:
             hint = "begin with an `add` line, such as `add block (10 mm, 10 mm, 10 mm)`"
-            self.problems.error("empty part", declaration.span, f"the part `{declaration.name}` adds nothing", hint)
+            self.problems.error("empty-part", declaration.span, f"the part `{declaration.name}` adds nothing", hint)
         elif steps[0].operation != "add":
             span = self.sources[steps[0].placed[0].source]
             sentence = f"there is nothing to {steps[0].operation} yet: a part begins with `add`"
-            self.problems.error("empty part", span, sentence, "move an `add` line before it")
+            self.problems.error("empty-part", span, sentence, "move an `add` line before it")
 
     def _step(self, module: Module, line: tree.Line, scope: Scope, axes: Marks) -> tuple[Step, Feature | None]:
         operation: Literal["add", "cut", "keep"] = "add"
@@ -261,12 +261,12 @@ class _Builder:
         reading = line.head.get("shape")
         if isinstance(reading, tree.Reading):
             if line.lines:
-                raise mistake("wrong form", line.lines[0].span, "shapes stand on this line or under it, not both")
+                raise mistake("wrong-form", line.lines[0].span, "shapes stand on this line or under it, not both")
             yield self._shape(module, line, reading, scope, axes, ())
             return
         if not line.lines:
             raise mistake(
-                "missing value",
+                "missing-value",
                 line.head.word_span,
                 f"expected a shape after `{line.word}`",
                 f"such as `{line.word} cylinder diameter 10 mm length 5 mm`",
@@ -293,10 +293,10 @@ class _Builder:
         if outer:
             if len(outer) * len(placements) > limits.COPIES:
                 made = len(outer) * len(placements)
-                raise mistake("too much", line.span, f"{made:,} copies are more than {limits.COPIES:,}, the limit")
+                raise mistake("too-much", line.span, f"{made:,} copies are more than {limits.COPIES:,}, the limit")
             placements = tuple(compose(a, b) for a in outer for b in placements)
         if len(set(placements)) < len(placements):
-            raise mistake("coincident copies", line.span, "two copies of this shape lie in one place")
+            raise mistake("coincident-copies", line.span, "two copies of this shape lie in one place")
         centred = any(clause.word == "centred" for clause in line.clauses)
         return Placed(shape, placements, self._source(line.span), centred)
 
@@ -349,11 +349,11 @@ class _Builder:
                         occurrences.append(occurrence)
         if not any(line.word == "place" for line in declaration.line.lines):
             sentence = f"the assembly `{declaration.name}` places nothing"
-            self.problems.error("empty assembly", declaration.span, sentence, "give it a `place` line")
+            self.problems.error("empty-assembly", declaration.span, sentence, "give it a `place` line")
         n_nodes = 1 + sum(count_nodes(copy.thing) for each in occurrences for copy in each.copies)
         if n_nodes > limits.COPIES:
             sentence = f"`{declaration.name}` holds {n_nodes:,} things, more than {limits.COPIES:,}, the limit"
-            self.problems.error("too much", declaration.span, sentence)
+            self.problems.error("too-much", declaration.span, sentence)
         return Assembly(declaration.name, tuple(occurrences), marks, declaration.span, n_nodes)
 
     def _occurrence(self, module: Module, line: tree.Line, scope: Scope, axes: Marks) -> Occurrence:
@@ -371,14 +371,14 @@ class _Builder:
             thing = self.resolve(module, written, turn.scope)
             placements = self._placements(line, turn.scope, axes, _axes(thing.marks))
             if len(copies) + len(placements) > limits.COPIES:
-                raise mistake("too much", line.span, f"this line makes more than {limits.COPIES:,} copies, the limit")
+                raise mistake("too-much", line.span, f"this line makes more than {limits.COPIES:,} copies, the limit")
             labelled = len(placements) == 1 and turn.label
             for placement in placements:
                 label = turn.label if labelled else str(len(copies) + 1)
                 copies.append(Copy(label, thing, placement))
                 explodes.append(self._explodes(line, turn.scope, placement))
         if len({(id(copy.thing), copy.placement) for copy in copies}) < len(copies):
-            raise mistake("coincident copies", line.span, "two copies of this thing lie in one place")
+            raise mistake("coincident-copies", line.span, "two copies of this thing lie in one place")
         if len(copies) == 1 and not _repeats(line):
             copies = [replace(copies[0], label="")]
         return Occurrence(called, tuple(copies), tuple(explodes), span)
@@ -397,7 +397,7 @@ class _Builder:
             return (x, y, z)
         if isinstance(value, Vector) and len(value.components) == 3:
             return point(written, scope)
-        raise mistake("wrong kind", written.span, f"expected a length or a vector of lengths, found {kind_of(value)}")
+        raise mistake("wrong-kind", written.span, f"expected a length or a vector of lengths, found {kind_of(value)}")
 
     def _note_placed(self, module: Module, path: tree.Path) -> None:
         with self.problems.collecting():
@@ -409,7 +409,7 @@ class _Builder:
     def _placements(self, line: tree.Line, scope: Scope, axes: Marks, own: Marks) -> tuple[Affine, ...]:
         base = place(line.clauses, scope, own)
         if abs(determinant(base)) < 1e-12:
-            raise mistake("out of range", line.span, "this placement flattens the thing to nothing")
+            raise mistake("out-of-range", line.span, "this placement flattens the thing to nothing")
         return tuple(compose(each, base) for each in repeat(line.clauses, scope, axes))
 
     def _turns(self, line: tree.Line, scope: Scope, module: Module) -> list[_Copies]:
@@ -420,7 +420,7 @@ class _Builder:
                 turns = [inner for outer in turns for inner in self._turn(clause, outer, module)]
                 if len(turns) > limits.COPIES:
                     raise mistake(
-                        "too much", clause.span, f"this line makes more than {limits.COPIES:,} copies, the limit"
+                        "too-much", clause.span, f"this line makes more than {limits.COPIES:,} copies, the limit"
                     )
         conditions = [expression(clause, "condition") for clause in line.clauses if clause.word == "when"]
         return [turn for turn in turns if all(truth(condition, turn.scope) for condition in conditions)]
@@ -429,7 +429,7 @@ class _Builder:
         variable = name(clause, "variable").text
         if outer.scope.find(variable) is not None:
             sentence = f"`{variable}` is declared outside already; inside it would mean something else"
-            raise mistake("duplicate name", name(clause, "variable").span, sentence, "rename it")
+            raise mistake("duplicate-name", name(clause, "variable").span, sentence, "rename it")
         table_name = clause.get("table")
         if table_name is not None:
             table = self._table(table_name, module)
@@ -440,7 +440,7 @@ class _Builder:
         last = count(expression(clause, "last"), outer.scope, least=-limits.COPIES)
         if last - first + 1 > limits.COPIES:
             raise mistake(
-                "too much", clause.span, f"{last - first + 1:,} turns are more than {limits.COPIES:,}, the limit"
+                "too-much", clause.span, f"{last - first + 1:,} turns are more than {limits.COPIES:,}, the limit"
             )
         for number in range(first, last + 1):
             inner = outer.scope.inside({variable: Quantity(float(number), NUMBER)})
@@ -472,7 +472,7 @@ class _Builder:
         if text in names:
             related = (Related(names[text], "the first of them"),)
             hint = "give one of them another name with `as`"
-            self.problems.error("duplicate name", span, f"two things here are called `{text}`", hint, related)
+            self.problems.error("duplicate-name", span, f"two things here are called `{text}`", hint, related)
         names.setdefault(text, span)
 
     def _source(self, span: Span) -> int:

@@ -61,7 +61,7 @@ def _subject(model: Model, subject: tree.Path, scope: Scope) -> Thing:
     root = model.instantiate(tree.Path(subject.steps[:1], subject.steps[0].span))
     target = follow(root, subject.steps[1:], scope)
     if not isinstance(target, Placed):
-        raise mistake("wrong kind", subject.span, f"`{subject.dotted}` is no part or assembly")
+        raise mistake("wrong-kind", subject.span, f"`{subject.dotted}` is no part or assembly")
     return target.thing
 
 
@@ -83,7 +83,7 @@ class _Measures:
         if isinstance(found, Placed):
             sentence = f"`{path.dotted}` is a thing, not a value"
             hint = f"a measure makes it one, such as `height({path.dotted})`"
-            raise mistake("wrong kind", path.span, sentence, hint)
+            raise mistake("wrong-kind", path.span, sentence, hint)
         return found
 
     def call(self, call: tree.Call) -> Value | None:
@@ -91,10 +91,12 @@ class _Measures:
         if name not in MEASURES:
             return None
         if name in LATER:
-            raise mistake("not drawn yet", call.span, f"the measure `{name}` is not drawn yet")
+            raise mistake(
+                "not-drawn-yet", call.span, f"the measure `{name}` is a word of the language that is not drawn yet"
+            )
         what = {"distance": "two points", "clearance": "two parts or assemblies"}.get(name, "a part or assembly")
         if len(call.positional) != (2 if name in ("distance", "clearance") else 1) or call.named:
-            raise mistake("wrong parameters", call.span, f"`{name}` takes {what}")
+            raise mistake("wrong-parameters", call.span, f"`{name}` takes {what}")
         if name == "distance":
             return self._distance(call)
         if name == "clearance":
@@ -122,21 +124,21 @@ class _Measures:
         for each in call.positional:
             value = evaluate(each, self.scope.inside({}, self))
             if not isinstance(value, Vector) or len(value.components) != 3 or value.dimension != LENGTH:
-                raise mistake("wrong kind", each.span, f"`distance` takes two points, found {kind_of(value)}")
+                raise mistake("wrong-kind", each.span, f"`distance` takes two points, found {kind_of(value)}")
             ends.append(value.components)
         return Quantity(math.dist(*ends), LENGTH)
 
     def _placed(self, name: str, written: tree.Expression) -> Placed:
         if not isinstance(written, tree.Path):
-            raise mistake("wrong kind", written.span, f"`{name}` takes the path of a part or assembly")
+            raise mistake("wrong-kind", written.span, f"`{name}` takes the path of a part or assembly")
         steps = self._steps(written)
         if steps is None:
             near = nearest(written.steps[0].name, list(self.names()))
             hint = f"did you mean `{near}`?" if near else ""
-            raise mistake("unknown name", written.span, f"`{self.name}` has nothing called `{written.dotted}`", hint)
+            raise mistake("unknown-name", written.span, f"`{self.name}` has nothing called `{written.dotted}`", hint)
         placed = follow(self.thing, steps, self.scope)
         if not isinstance(placed, Placed):
-            raise mistake("wrong kind", written.span, f"`{name}` takes a part or assembly, found {kind_of(placed)}")
+            raise mistake("wrong-kind", written.span, f"`{name}` takes a part or assembly, found {kind_of(placed)}")
         return placed
 
     def _rows(self, placed: Placed) -> list[int]:
@@ -163,7 +165,7 @@ class _Measures:
                 material = flattened.materials[node.material]
                 if not material.density:
                     hint = "give its material a `density`"
-                    raise mistake("no density", span, f"`{node.path}` has no density, so no mass", hint)
+                    raise mistake("no-density", span, f"`{node.path}` has no density, so no mass", hint)
                 each *= material.density / 1000.0  # g/cm3 to g/mm3
             total += each
         return Quantity(total, _DIMENSIONS[name])
@@ -171,9 +173,9 @@ class _Measures:
     def _clearance(self, call: tree.Call) -> Quantity:
         one, other = (self._rows(self._placed("clearance", each)) for each in call.positional)
         if set(one) & set(other):
-            raise mistake("wrong parameters", call.span, "one of these is part of the other, so there is no gap")
+            raise mistake("wrong-parameters", call.span, "one of these is part of the other, so there is no gap")
         if len(one) * len(other) > MAX_PAIRS:
-            raise mistake("too much", call.span, f"more than {MAX_PAIRS} pairs of parts lie between these, the limit")
+            raise mistake("too-much", call.span, f"more than {MAX_PAIRS} pairs of parts lie between these, the limit")
         geometry = self._geometry().geometry
         gaps = [clearance(*_solid_of(geometry, a), *_solid_of(geometry, b)) for a in one for b in other]
         return Quantity(min(gaps), LENGTH)
@@ -212,32 +214,32 @@ def _judge(fact: tree.Line, scope: Scope, model: Model) -> None:
         left, right = evaluate(written.left, scope), evaluate(written.right, scope)
         words = _source_text(model, written.left.span)
         sentence = f"`{words}` is {spell(left)}, expected {written.operator} {spell(right)}"
-        raise mistake("broken fact", fact.span, sentence)
+        raise mistake("broken-fact", fact.span, sentence)
     value = evaluate(written, scope)
     if not isinstance(value, bool):
         hint = f"compare it: `{words} = …`, or with `<=` or `>=`"
         raise mistake(
-            "wrong kind", written.span, f"a fact compares; this is only {kind_of(value)}, {spell(value)}", hint
+            "wrong-kind", written.span, f"a fact compares; this is only {kind_of(value)}, {spell(value)}", hint
         )
     if not value:
-        raise mistake("broken fact", fact.span, f"`{words}` does not hold")
+        raise mistake("broken-fact", fact.span, f"`{words}` does not hold")
 
 
 def _judge_equal(fact: tree.Line, written: tree.Expression, wanted: tree.Expression, scope: Scope, words: str) -> None:
     left, right = evaluate(written, scope), evaluate(wanted, scope)
     if not isinstance(left, Quantity) or not isinstance(right, Quantity):
         if left != right:
-            raise mistake("broken fact", fact.span, f"`{words}` is {spell(left)}, expected {spell(right)}")
+            raise mistake("broken-fact", fact.span, f"`{words}` is {spell(left)}, expected {spell(right)}")
         return
     if left.dimension != right.dimension and not right.bare_zero:
-        raise mistake("wrong kind", wanted.span, f"`{words}` is {kind_of(left)}, expected {kind_of(right)}")
+        raise mistake("wrong-kind", wanted.span, f"`{words}` is {kind_of(left)}, expected {kind_of(right)}")
     tolerance, spelt = EQUAL * max(abs(left.value), abs(right.value)), ""
     within = optional(fact.head, "tolerance")
     if within is not None:
         tolerance, spelt = _tolerance(within, left, right, scope)
     if not abs(left.value - right.value) <= tolerance + 1e-12 * abs(right.value):
         expected = spell(Quantity(right.value, left.dimension))
-        raise mistake("broken fact", fact.span, f"`{words}` is {spell(left)}, expected {expected}{spelt}")
+        raise mistake("broken-fact", fact.span, f"`{words}` is {spell(left)}, expected {expected}{spelt}")
 
 
 def _tolerance(within: tree.Expression, left: Quantity, right: Quantity, scope: Scope) -> tuple[float, str]:
@@ -248,7 +250,7 @@ def _tolerance(within: tree.Expression, left: Quantity, right: Quantity, scope: 
         if value.dimension == NUMBER:
             return value.value * abs(right.value), f" within {100 * value.value:g} %"
     raise mistake(
-        "wrong kind", within.span, f"expected a tolerance: {kind_of(left)} or a percentage, found {kind_of(value)}"
+        "wrong-kind", within.span, f"expected a tolerance: {kind_of(left)} or a percentage, found {kind_of(value)}"
     )
 
 

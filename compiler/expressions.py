@@ -111,7 +111,7 @@ def evaluate(expression: tree.Expression, scope: Scope, depth: int = 0) -> Value
     """The value of an expression. Raises Mistake. Cost: linear in the expression and the functions it calls."""
     scope.budget.left -= 1
     if scope.budget.left < 0:
-        raise mistake("too much", expression.span, f"this scene computes more than {limits.STEPS:,} values, the limit")
+        raise mistake("too-much", expression.span, f"this scene computes more than {limits.STEPS:,} values, the limit")
     match expression:
         case tree.Number():
             value, dimension = units.quantity(expression.text, expression.unit)
@@ -145,7 +145,7 @@ def truth(expression: tree.Expression, scope: Scope, depth: int = 0) -> bool:
     """A yes or no. Raises Mistake."""
     value = evaluate(expression, scope, depth)
     if not isinstance(value, bool):
-        raise mistake("wrong kind", expression.span, f"expected yes or no, found {kind_of(value)}")
+        raise mistake("wrong-kind", expression.span, f"expected yes or no, found {kind_of(value)}")
     return value
 
 
@@ -159,7 +159,7 @@ def quantity(expression: tree.Expression, scope: Scope, dimension: Dimension, wh
     if isinstance(value, Quantity) and value.dimension == NUMBER and isinstance(expression, tree.Number):
         hint = f"give it a unit, such as `{expression.text} {usual_unit(dimension)[0]}`"
     raise mistake(
-        "wrong kind", expression.span, f"{what + ': ' if what else ''}expected {wanted}, found {kind_of(value)}", hint
+        "wrong-kind", expression.span, f"{what + ': ' if what else ''}expected {wanted}, found {kind_of(value)}", hint
     )
 
 
@@ -168,13 +168,13 @@ def vector(expression: tree.Expression, scope: Scope, size: int, dimension: Dime
     value = evaluate(expression, scope)
     if not isinstance(value, Vector) or len(value.components) != size:
         wanted = {LENGTH: "a point"}.get(dimension or NUMBER, "a vector") + f" of {size} values"
-        raise mistake("wrong kind", expression.span, f"expected {wanted}, found {kind_of(value)}")
+        raise mistake("wrong-kind", expression.span, f"expected {wanted}, found {kind_of(value)}")
     if dimension is not None and value.dimension != dimension:
         if not any(value.components):
             return Vector(value.components, dimension)
         found = dimension_name(value.dimension)
         raise mistake(
-            "wrong kind", expression.span, f"expected {dimension_name(dimension)}s in the parentheses, found {found}s"
+            "wrong-kind", expression.span, f"expected {dimension_name(dimension)}s in the parentheses, found {found}s"
         )
     return value
 
@@ -183,11 +183,11 @@ def count(expression: tree.Expression, scope: Scope, least: int = 0, most: int =
     """A whole number within bounds. Raises Mistake."""
     number = quantity(expression, scope, NUMBER)
     if number != math.floor(number):
-        raise mistake("not whole", expression.span, f"expected a whole number, found {spell_number(number)}")
+        raise mistake("not-whole", expression.span, f"expected a whole number, found {spell_number(number)}")
     if number < least:
-        raise mistake("out of range", expression.span, f"expected {least} or more, found {spell_number(number)}")
+        raise mistake("out-of-range", expression.span, f"expected {least} or more, found {spell_number(number)}")
     if number > most:
-        raise mistake("too much", expression.span, f"{spell_number(number)} is more than {most:,}, the limit")
+        raise mistake("too-much", expression.span, f"{spell_number(number)} is more than {most:,}, the limit")
     return int(number)
 
 
@@ -195,19 +195,19 @@ def text(expression: tree.Expression, scope: Scope) -> str:
     """A text. Raises Mistake."""
     value = evaluate(expression, scope)
     if not isinstance(value, str):
-        raise mistake("wrong kind", expression.span, f"expected a text, found {kind_of(value)}")
+        raise mistake("wrong-kind", expression.span, f"expected a text, found {kind_of(value)}")
     return value
 
 
 def unknown_name(name: str, span: Span, scope: Scope) -> Mistake:
     """The mistake of using a name that nothing declares, with the nearest name in reach."""
     near = nearest(name, [*scope.known(), *FUNCTIONS])
-    return mistake("unknown name", span, f"nothing here is called `{name}`", f"did you mean `{near}`?" if near else "")
+    return mistake("unknown-name", span, f"nothing here is called `{name}`", f"did you mean `{near}`?" if near else "")
 
 
 def _finite(value: float, span: Span) -> float:
     if not math.isfinite(value):
-        raise mistake("out of range", span, "the result is too large to be a number")
+        raise mistake("out-of-range", span, "the result is too large to be a number")
     return value
 
 
@@ -221,7 +221,7 @@ def _text(expression: tree.Text, scope: Scope, depth: int) -> str:
             parts.append(value if isinstance(value, str) else spell(value))
     joined = "".join(parts)
     if len(joined) > limits.TEXT:
-        raise mistake("too much", expression.span, f"this text is longer than {limits.TEXT:,} characters, the limit")
+        raise mistake("too-much", expression.span, f"this text is longer than {limits.TEXT:,} characters, the limit")
     return joined
 
 
@@ -241,7 +241,7 @@ def _path(path: tree.Path, scope: Scope) -> Value:
         if scope.find(first.name) is None:
             raise unknown_name(first.name, first.span, scope)
         raise mistake(
-            "unknown name", path.steps[1].span, f"`{first.name}` is a value; it has no `{path.steps[1].name}`"
+            "unknown-name", path.steps[1].span, f"`{first.name}` is a value; it has no `{path.steps[1].name}`"
         )
     found = scope.find(first.name)
     if found is None:
@@ -249,9 +249,9 @@ def _path(path: tree.Path, scope: Scope) -> Value:
     if isinstance(found, Failed):
         raise Mistake(None)
     if isinstance(found, Formula):
-        raise mistake("wrong kind", path.span, f"`{first.name}` is a function", f"call it: `{first.name}(…)`")
+        raise mistake("wrong-kind", path.span, f"`{first.name}` is a function", f"call it: `{first.name}(…)`")
     if first.index is not None:
-        raise mistake("wrong kind", first.span, f"`{first.name}` is a single value; brackets count copies")
+        raise mistake("wrong-kind", first.span, f"`{first.name}` is a single value; brackets count copies")
     return found
 
 
@@ -273,17 +273,17 @@ def _call(call: tree.Call, scope: Scope, depth: int) -> Value:
     function = FUNCTIONS.get(name)
     if function is None:
         if found is not None:
-            raise mistake("wrong kind", call.path.span, f"`{name}` is {kind_of(found)}, not a function")
+            raise mistake("wrong-kind", call.path.span, f"`{name}` is {kind_of(found)}, not a function")
         raise unknown_name(name, call.path.span, scope)
     if call.named:
-        raise mistake("wrong kind", call.named[0].span, f"`{name}` takes values in order, without names")
+        raise mistake("wrong-kind", call.named[0].span, f"`{name}` takes values in order, without names")
     arguments = tuple(evaluate(argument, scope, depth) for argument in call.positional)
     try:
         value = function(arguments)
     except Unfit as unfit:
-        raise mistake("wrong kind", call.span, f"`{name}` {unfit}") from None
+        raise mistake("wrong-kind", call.span, f"`{name}` {unfit}") from None
     except (OverflowError, ValueError):
-        raise mistake("out of range", call.span, "the result is too large to be a number") from None
+        raise mistake("out-of-range", call.span, "the result is too large to be a number") from None
     if isinstance(value, Quantity):
         _finite(value.value, call.span)
     return value
@@ -299,10 +299,10 @@ def _holder(path: tree.Path, scope: Scope) -> tuple[Scope | None, str]:
 
 def _apply(formula: Formula, call: tree.Call, scope: Scope, depth: int) -> Value:
     if depth >= limits.NESTING:
-        raise mistake("too deep", call.span, f"functions call each other more than {limits.NESTING} deep, the limit")
+        raise mistake("too-deep", call.span, f"functions call each other more than {limits.NESTING} deep, the limit")
     if len(call.positional) > len(formula.parameters):
         raise mistake(
-            "wrong parameters",
+            "wrong-parameters",
             call.span,
             f"`{formula.name}` takes {len(formula.parameters)}, found {len(call.positional)}",
         )
@@ -314,14 +314,14 @@ def _apply(formula: Formula, call: tree.Call, scope: Scope, depth: int) -> Value
             near = nearest(setting.name, list(formula.parameters))
             hint = f"did you mean `{near}`?" if near else ""
             raise mistake(
-                "unknown name", setting.name_span, f"`{formula.name}` has no parameter `{setting.name}`", hint
+                "unknown-name", setting.name_span, f"`{formula.name}` has no parameter `{setting.name}`", hint
             )
         if setting.name in given:
-            raise mistake("wrong parameters", setting.span, f"`{setting.name}` is given twice")
+            raise mistake("wrong-parameters", setting.span, f"`{setting.name}` is given twice")
         given[setting.name] = evaluate(setting.value, scope, depth)
     missing = [name for name in formula.parameters if name not in given]
     if missing:
-        raise mistake("wrong parameters", call.span, f"`{formula.name}` needs `{missing[0]}`")
+        raise mistake("wrong-parameters", call.span, f"`{formula.name}` needs `{missing[0]}`")
     return evaluate(formula.body, formula.scope.inside(given), depth + 1)
 
 
@@ -330,13 +330,13 @@ def _vector(expression: tree.Tuple, scope: Scope, depth: int) -> Vector:
     for item in expression.items:
         value = evaluate(item, scope, depth)
         if not isinstance(value, Quantity):
-            raise mistake("wrong kind", item.span, f"expected a value of a point, found {kind_of(value)}")
+            raise mistake("wrong-kind", item.span, f"expected a value of a point, found {kind_of(value)}")
         components.append(value)
     dimension = next((c.dimension for c in components if not c.bare_zero), NUMBER)
     for item, component in zip(expression.items, components, strict=True):
         if component.dimension != dimension and not component.bare_zero:
             raise mistake(
-                "wrong kind",
+                "wrong-kind",
                 item.span,
                 f"the values of a point are of one kind: expected {with_article(dimension_name(dimension))}, "
                 f"found {kind_of(component)}",
@@ -348,11 +348,11 @@ def _interval(expression: tree.Range, scope: Scope, depth: int) -> Interval:
     low, high = evaluate(expression.low, scope, depth), evaluate(expression.high, scope, depth)
     if not isinstance(low, Quantity) or not isinstance(high, Quantity):
         wrong = low if not isinstance(low, Quantity) else high
-        raise mistake("wrong kind", expression.span, f"a range runs between two values, found {kind_of(wrong)}")
+        raise mistake("wrong-kind", expression.span, f"a range runs between two values, found {kind_of(wrong)}")
     low, high = _matched(low, high, expression.span, "a range runs between values of one kind")
     if low.value > high.value:
         raise mistake(
-            "out of range", expression.span, f"the range ends before it starts: {spell(low)} .. {spell(high)}"
+            "out-of-range", expression.span, f"the range ends before it starts: {spell(low)} .. {spell(high)}"
         )
     return Interval(low, high)
 
@@ -365,7 +365,7 @@ def _matched(left: Quantity, right: Quantity, span: Span, what: str) -> tuple[Qu
         return Quantity(0.0, right.dimension), right
     if right.bare_zero:
         return left, Quantity(0.0, left.dimension)
-    raise mistake("wrong kind", span, f"{what}, found {kind_of(left)} and {kind_of(right)}")
+    raise mistake("wrong-kind", span, f"{what}, found {kind_of(left)} and {kind_of(right)}")
 
 
 def _unary(expression: tree.Unary, scope: Scope, depth: int) -> Value:
@@ -378,7 +378,7 @@ def _unary(expression: tree.Unary, scope: Scope, depth: int) -> Value:
         case Vector():
             return Vector(tuple(0.0 - c if c else 0.0 for c in value.components), value.dimension)
         case _:
-            raise mistake("wrong kind", expression.span, f"a sign needs a number, found {kind_of(value)}")
+            raise mistake("wrong-kind", expression.span, f"a sign needs a number, found {kind_of(value)}")
 
 
 def _binary(expression: tree.Binary, scope: Scope, depth: int) -> Value:
@@ -401,7 +401,7 @@ def _same(left: Value, right: Value, span: Span) -> bool:
         return left.value == right.value
     if type(left) is not type(right):
         raise mistake(
-            "wrong kind", span, f"only values of one kind can be compared, found {kind_of(left)} and {kind_of(right)}"
+            "wrong-kind", span, f"only values of one kind can be compared, found {kind_of(left)} and {kind_of(right)}"
         )
     return left == right
 
@@ -417,7 +417,7 @@ _ORDER: dict[str, Callable[[float, float], bool]] = {
 def _ordered(operator: str, left: Value, right: Value, span: Span) -> bool:
     if not isinstance(left, Quantity) or not isinstance(right, Quantity):
         wrong = left if not isinstance(left, Quantity) else right
-        raise mistake("wrong kind", span, f"`{operator}` compares two values, found {kind_of(wrong)}")
+        raise mistake("wrong-kind", span, f"`{operator}` compares two values, found {kind_of(wrong)}")
     left, right = _matched(left, right, span, "only values of one kind can be compared")
     return _ORDER[operator](left.value, right.value)
 
@@ -426,7 +426,7 @@ def arithmetic(operator: str, left: Value, right: Value, at: tree.Binary) -> Val
     """Sums, differences, products, quotients and powers of quantities and vectors. Raises Mistake."""
     for value in (left, right):
         if isinstance(value, Quantity) and value.dimension.place:
-            raise mistake("wrong kind", at.span, f"a {value.dimension.place} takes no part in arithmetic")
+            raise mistake("wrong-kind", at.span, f"a {value.dimension.place} takes no part in arithmetic")
     match operator, left, right:
         case ("+" | "-", Quantity(), Quantity()):
             left, right = _matched(left, right, at.span, f"`{operator}` joins values of one kind")
@@ -445,16 +445,16 @@ def arithmetic(operator: str, left: Value, right: Value, at: tree.Binary) -> Val
             return _quotient(left, right, at)
         case ("^", Quantity(), Quantity()):
             return _power(left, right, at)
-    raise mistake("wrong kind", at.span, f"`{operator}` cannot join {kind_of(left)} and {kind_of(right)}")
+    raise mistake("wrong-kind", at.span, f"`{operator}` cannot join {kind_of(left)} and {kind_of(right)}")
 
 
 def _vector_sum(operator: str, left: Vector, right: Vector, span: Span) -> Vector:
     sign = 1 if operator == "+" else -1
     if len(left.components) != len(right.components):
-        raise mistake("wrong kind", span, "one of these has two values, the other three")
+        raise mistake("wrong-kind", span, "one of these has two values, the other three")
     if left.dimension != right.dimension and any(left.components) and any(right.components):
         raise mistake(
-            "wrong kind", span, f"`{operator}` joins values of one kind, found {kind_of(left)} and {kind_of(right)}"
+            "wrong-kind", span, f"`{operator}` joins values of one kind, found {kind_of(left)} and {kind_of(right)}"
         )
     dimension = left.dimension if any(left.components) else right.dimension
     pairs = zip(left.components, right.components, strict=True)
@@ -463,7 +463,7 @@ def _vector_sum(operator: str, left: Vector, right: Vector, span: Span) -> Vecto
 
 def _quotient(left: Value, right: Quantity, at: tree.Binary) -> Value:
     if right.value == 0:
-        raise mistake("division by zero", at.right.span, "this divides by 0")
+        raise mistake("division-by-zero", at.right.span, "this divides by 0")
     if isinstance(left, Vector):
         components = tuple(_finite(c / right.value, at.span) for c in left.components)
         return Vector(components, left.dimension / right.dimension)
@@ -473,13 +473,13 @@ def _quotient(left: Value, right: Quantity, at: tree.Binary) -> Value:
 
 def _power(left: Quantity, right: Quantity, at: tree.Binary) -> Quantity:
     if right.dimension != NUMBER:
-        raise mistake("wrong kind", at.right.span, f"expected a number as the power, found {kind_of(right)}")
+        raise mistake("wrong-kind", at.right.span, f"expected a number as the power, found {kind_of(right)}")
     if left.dimension != NUMBER and (right.value != math.floor(right.value) or abs(right.value) > 9):
-        raise mistake("wrong kind", at.right.span, f"{kind_of(left)} can only be raised to a whole power up to 9")
+        raise mistake("wrong-kind", at.right.span, f"{kind_of(left)} can only be raised to a whole power up to 9")
     if left.value == 0 and right.value < 0:
-        raise mistake("division by zero", at.span, "0 cannot be raised to a negative power")
+        raise mistake("division-by-zero", at.span, "0 cannot be raised to a negative power")
     if left.value < 0 and right.value != math.floor(right.value):
-        raise mistake("out of range", at.span, "a negative number can only be raised to a whole power")
+        raise mistake("out-of-range", at.span, "a negative number can only be raised to a whole power")
     try:
         value = _raised(left.value, right.value)
     except OverflowError:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Literal
 
@@ -11,7 +10,7 @@ from platewright.backend import camera, contract
 from platewright.backend.contract import F64, Projection
 from platewright.lang import tree
 from platewright.lang.nearest import nearest
-from platewright.lang.problems import Problem, Severity
+from platewright.lang.problems import Problem, is_error
 from platewright.lang.source import Span
 
 from . import limits
@@ -43,6 +42,21 @@ STANDARD_SCALES = tuple(
     ratio for power in (1e3, 1e2, 1e1, 1.0, 1e-1, 1e-2, 1e-3, 1e-4) for ratio in (5 * power, 2 * power, power)
 )
 """Scales of ISO 5455 (1, 2 and 5 times the powers of ten), largest first."""
+
+ONCE = (
+    "show",
+    "width",
+    "size",
+    "scale",
+    "true projection",
+    "margin",
+    "drawn as",
+    "files",
+    "title",
+    "alt",
+    "description",
+)
+"""Words that may stand once in a figure."""
 
 Style = Literal["tone", "survey part", "survey depth", "survey facing"]
 
@@ -107,10 +121,10 @@ def only_root(model: Model, span: Span) -> tuple[str, Thing]:
     if len(candidates) == 1:
         return candidates[0], model.things[candidates[0]]
     if not candidates:
-        raise mistake("nothing to show", span, "there is no part or assembly to show")
+        raise mistake("nothing-to-show", span, "there is no part or assembly to show")
     names = ", ".join(f"`{name}`" for name in candidates)
     sentence = f"nothing says which of these to show: {names}"
-    raise mistake("nothing to show", span, sentence, f"write a figure that says `show {candidates[0]}`")
+    raise mistake("nothing-to-show", span, sentence, f"write a figure that says `show {candidates[0]}`")
 
 
 def plan_figure(
@@ -143,11 +157,11 @@ class _Reading:
         said: dict[str, Span] = {}
         lines: dict[str, tree.Line] = {}
         for line in self.line.lines:
-            if line.word != "with":
+            if line.word in ONCE:
                 said_twice(line, said, self.problems)
             lines.setdefault(line.word, line)
         if "size" in lines and "width" in lines:
-            self.problems.error("said twice", lines["width"].head.word_span, "`size` states the width already")
+            self.problems.error("said-twice", lines["width"].head.word_span, "`size` states the width already")
         found: Spec | None = None
         with self.problems.collecting():
             found = self._subject(lines.get("show"))
@@ -188,7 +202,7 @@ class _Reading:
         root = self.model.instantiate(tree.Path((first,), first.span))
         target = follow(root, written.steps[1:], self.scope)
         if not isinstance(target, Placed):
-            raise mistake("wrong kind", written.span, f"`{written.dotted}` is a mark or feature; a figure shows things")
+            raise mistake("wrong-kind", written.span, f"`{written.dotted}` is a mark or feature; a figure shows things")
         return target.thing, f"{first.name}.{target.path}"
 
     def _viewpoint(self, path: tree.Path) -> Viewpoint:
@@ -203,11 +217,11 @@ class _Reading:
             ]
             near = nearest(path.dotted, known)
             hint = f"did you mean `{near}`?" if near else "declare it with `viewpoint`, or take front, top, isometric …"
-            raise mistake("unknown name", path.span, f"there is no viewpoint `{path.dotted}`", hint)
+            raise mistake("unknown-name", path.span, f"there is no viewpoint `{path.dotted}`", hint)
         here, declaration = find_kind(self.model.modules, self.module, path, ("viewpoint",))
         viewpoint = read_viewpoint(declaration.line, self.model.scopes[here.file], self.problems)
         if viewpoint is None:
-            raise mistake("no projection", declaration.span, f"the viewpoint `{path.dotted}` states no projection")
+            raise mistake("no-projection", declaration.span, f"the viewpoint `{path.dotted}` states no projection")
         return viewpoint
 
     def _read(self, each: str, head: tree.Reading) -> dict[str, object]:
@@ -238,7 +252,7 @@ class _Reading:
     def _paper(self, written: tree.Expression, what: str) -> float:
         value = positive_length(written, self.scope, what)
         if value > limits.PAPER_MM:
-            raise mistake("out of range", written.span, f"{what}: more than {limits.PAPER_MM:g} mm of paper, the limit")
+            raise mistake("out-of-range", written.span, f"{what}: more than {limits.PAPER_MM:g} mm of paper, the limit")
         return value
 
     def _scale(self, written: tree.Expression | None) -> float | Literal["standard"]:
@@ -246,9 +260,9 @@ class _Reading:
             return "standard"
         value = evaluate(written, self.scope)
         if not isinstance(value, Proportion):
-            raise mistake("wrong kind", written.span, f"expected a scale such as `1:2`, found {kind_of(value)}")
+            raise mistake("wrong-kind", written.span, f"expected a scale such as `1:2`, found {kind_of(value)}")
         if value.first <= 0 or value.second <= 0:
-            raise mistake("out of range", written.span, "the numbers of a scale are above 0")
+            raise mistake("out-of-range", written.span, "the numbers of a scale are above 0")
         return value.first / value.second
 
     def _files(self, head: tree.Reading) -> tuple[Literal["png", "tiff"], ...]:
@@ -260,12 +274,12 @@ class _Reading:
             kind = each.dotted
             if kind in NOT_YET:
                 self.problems.error(
-                    "not drawn yet", each.span, f"files of kind `{kind}` are not drawn yet", "png or tiff"
+                    "not-drawn-yet", each.span, f"files of kind `{kind}` are not drawn yet", "png or tiff"
                 )
             elif kind not in DRAWABLE:
                 near = nearest(kind, [*DRAWABLE, *NOT_YET])
                 hint = f"did you mean `{near}`?" if near else "png or tiff"
-                self.problems.error("unknown name", each.span, f"there is no kind of file called `{kind}`", hint)
+                self.problems.error("unknown-name", each.span, f"there is no kind of file called `{kind}`", hint)
             else:
                 found += [drawable for drawable in DRAWABLE if drawable == kind]
         return tuple(dict.fromkeys(found))
@@ -301,7 +315,8 @@ class _Planner:
     def _flatten(self, rung: float) -> Flattened | None:
         spec = self.spec
         flattened, problems = flatten(spec.subject, spec.path, rung, self.model.sources, self.mesher)
-        self.problems.extend(problems)
+        # Warnings about parts are the scene's, and `prove` has given them.
+        self.problems.extend(tuple(problem for problem in problems if is_error(problem)))
         return flattened
 
     def _frame(self, points: F64) -> Frame:
@@ -316,7 +331,7 @@ class _Planner:
         columns, rows = page.pixels
         if columns * rows > limits.PIXELS:
             sentence = f"{columns:,} x {rows:,} pixels are more than {limits.PIXELS:,}, the limit"
-            raise mistake("too much", spec.span, sentence, "a smaller size or a lower resolution")
+            raise mistake("too-much", spec.span, sentence, "a smaller size or a lower resolution")
         self._seen(frame, geometry.vertices)
         middle = (geometry.vertices.min(axis=0) + geometry.vertices.max(axis=0)) / 2
         target = (float(middle[0]), float(middle[1]), float(middle[2]))
@@ -339,7 +354,7 @@ class _Planner:
         spans = np.nanmin(points, axis=0), np.nanmax(points, axis=0)
         misses = not inside.any() and ((spans[0] > (frame.width, frame.height)).any() or (spans[1] < 0).any())
         if misses:
-            raise mistake("nothing in view", self.spec.span, "nothing of the subject lies within this view")
+            raise mistake("nothing-in-view", self.spec.span, "nothing of the subject lies within this view")
         over = 1e-6 + max(0.0, float(-spans[0].min()), float((spans[1] - (frame.width, frame.height)).max()))
         if over > 0.01 or not np.isfinite(points).all():
             sentence = "the subject reaches past the edge of the page"
@@ -409,7 +424,7 @@ def _scaled(spec: Spec, wide: float, tall: float, ratio: float) -> tuple[float, 
             each for each in STANDARD_SCALES if wide * each * ratio <= free_wide and tall * each * ratio <= free_tall
         ]
         if not fitting:
-            raise mistake("out of range", spec.span, "no standard scale is small enough for this page")
+            raise mistake("out-of-range", spec.span, "no standard scale is small enough for this page")
         scale = fitting[0]
     assert isinstance(scale, float)
     magnification = scale * ratio
@@ -419,21 +434,21 @@ def _scaled(spec: Spec, wide: float, tall: float, ratio: float) -> tuple[float, 
     slack = 1e-6
     if needs_wide > width + slack or needs_tall > (room if room is not None else needs_tall) + slack:
         sentence = f"at this scale the figure needs {needs_wide:.1f} mm by {needs_tall:.1f} mm of paper with its margin"
-        raise mistake("does not fit", spec.span, sentence, "a smaller scale or a larger page")
+        raise mistake("does-not-fit", spec.span, sentence, "a smaller scale or a larger page")
     return max(width, 0.1), max(height, 0.1), magnification
 
 
 def _free(spec: Spec, side: float) -> float:
     free = side - 2 * spec.margin
     if free <= 0:
-        raise mistake("does not fit", spec.span, f"margins of {spec.margin:g} mm leave no paper of {side:g} mm")
+        raise mistake("does-not-fit", spec.span, f"margins of {spec.margin:g} mm leave no paper of {side:g} mm")
     return free
 
 
 def _check_page(spec: Spec, width: float, height: float) -> None:
     if max(width, height) > limits.PAPER_MM:
         sentence = f"the page would be {width:.0f} mm by {height:.0f} mm; {limits.PAPER_MM:g} mm is the limit"
-        raise mistake("out of range", spec.span, sentence, "state a `size`, or a height with `at most`")
+        raise mistake("out-of-range", spec.span, sentence, "state a `size`, or a height with `at most`")
 
 
 def central_frame(spec: Spec, viewpoint: Central, points: F64) -> Frame:
@@ -442,7 +457,7 @@ def central_frame(spec: Spec, viewpoint: Central, points: F64) -> Frame:
     on_page, depth = camera.to_page(unit, points)
     ahead = np.isfinite(depth)
     if not ahead.any():
-        raise mistake("nothing in view", spec.span, "the subject lies behind the eye")
+        raise mistake("nothing-in-view", spec.span, "the subject lies behind the eye")
     width = spec.width if spec.width is not None else WIDTH_MM
     distance = float(np.linalg.norm(np.subtract(viewpoint.toward, viewpoint.eye)))
     low, high = on_page[ahead].min(axis=0), on_page[ahead].max(axis=0)
@@ -450,7 +465,7 @@ def central_frame(spec: Spec, viewpoint: Central, points: F64) -> Frame:
     if held is None and not ahead.all():
         hint = "move the eye off, or state a `lens` or an `angle of view`"
         raise mistake(
-            "nothing in view", spec.span, "part of the subject lies behind the eye, so it cannot be fitted", hint
+            "nothing-in-view", spec.span, "part of the subject lies behind the eye, so it cannot be fitted", hint
         )
     wide, tall = float(high[0] - low[0]), float(high[1] - low[1])
     if held is None:
@@ -481,8 +496,3 @@ def _held_distance(spec: Spec, viewpoint: Central, width: float, distance: float
     if viewpoint.lens is not None:
         return camera.principal_distance_of_lens(viewpoint.lens, viewpoint.film, width)
     return None
-
-
-def stops(problems: Sequence[Problem]) -> bool:
-    """Whether any of the problems is an error."""
-    return any(problem.severity is Severity.ERROR for problem in problems)

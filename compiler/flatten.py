@@ -14,8 +14,9 @@ from platewright.backend.contract import F64, I32, Geometry, Material, Mesh, Pat
 from platewright.lang.problems import Problem, Severity
 from platewright.lang.source import Span
 
-from .graph import Entry, Solid, Thing, bracketed, walk
+from .graph import Assembly, Entry, Solid, Thing, bracketed, walk
 from .materials import Surface, linear
+from .solids.bounds import bounds
 from .solids.flaw import Flaw
 from .solids.ladder import first_at_most
 from .solids.recipe import Affine, Recipe
@@ -25,6 +26,9 @@ _T = TypeVar("_T", bound=np.generic)
 
 Mesher = Callable[[Recipe, float], "tuple[Mesh | None, tuple[Flaw, ...]]"]
 """Builds the mesh of a recipe at a rung; a session puts its cache here."""
+
+PROOF_PARTS = 200.0
+"""A part is proved at a chord error of its largest side over this."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -335,3 +339,32 @@ def _key(nodes: Sequence[contract.Node], placements: F64, meshes: Sequence[Mesh]
         content.update(f"{node.path} {node.mesh} {node.material}\n".encode())
     content.update(placements.tobytes())
     return content.hexdigest()
+
+
+def prove(things: Sequence[Thing], sources: Sequence[Span], mesher: Mesher) -> tuple[Problem, ...]:
+    """Problems of every solid below `things`, found by meshing each once at a coarse rung of its own size.
+
+    Cost: a coarse mesh for each solid; nothing is placed.
+    """
+    problems: dict[Problem, None] = {}
+    for solid in _solids(things):
+        low, high = bounds(solid.recipe)
+        reach = max(b - a for a, b in zip(low, high, strict=True))
+        rung = first_at_most(max(reach, 1e-3) / PROOF_PARTS)
+        _, flaws = mesher(solid.recipe, rung)
+        problems.update((problem_of(flaw, solid, sources), None) for flaw in flaws)
+    return tuple(problems)
+
+
+def _solids(things: Sequence[Thing]) -> list[Solid]:
+    """Every solid that can be reached, each once, in the order met."""
+    seen: dict[int, Thing] = {}
+    pending = list(reversed(things))
+    while pending:
+        thing = pending.pop()
+        if id(thing) in seen:
+            continue
+        seen[id(thing)] = thing
+        if isinstance(thing, Assembly):
+            pending.extend(copy.thing for each in reversed(thing.occurrences) for copy in reversed(each.copies))
+    return [thing for thing in seen.values() if isinstance(thing, Solid)]

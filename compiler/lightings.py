@@ -73,7 +73,7 @@ def read_lighting(line: tree.Line, scope: Scope, problems: Problems) -> Sources:
                 sources.append(_source(each.head, scope))
     if not sources and not problems.has_errors:
         hint = "such as `light from upper left`"
-        problems.error("no light", line.span, "this lighting has no source of light", hint)
+        problems.error("no-light", line.span, "this lighting has no source of light", hint)
     return Sources(tuple(sources), exposure)
 
 
@@ -140,7 +140,7 @@ def _source(reading: tree.Reading, scope: Scope) -> Source:
             flux = expression(reading, "flux")
             lumens = quantity(flux, scope, LUMINOUS_FLUX)
             if lumens <= 0:
-                raise mistake("out of range", flux.span, f"expected a flux above 0, found {lumens:g} lm")
+                raise mistake("out-of-range", flux.span, f"expected a flux above 0, found {lumens:g} lm")
             # An even source spreads its flux over 4 pi steradians; the lux it gives at 1 m equal its candela.
             return Source("lamp", point(expression(reading, "point"), scope), lumens / (4 * pi))
     return Source("ambient", (0.0, 0.0, 0.0), _lux(reading, scope, AMBIENT_LUX))
@@ -151,7 +151,7 @@ def _sun(reading: tree.Reading, scope: Scope) -> Source:
     elevation = quantity(written, scope, ANGLE)
     if not 0 < elevation <= 90:
         sentence = f"expected the sun between 0 and 90 deg above the horizon, found {elevation:g} deg"
-        raise mistake("out of range", written.span, sentence)
+        raise mistake("out-of-range", written.span, sentence)
     azimuth = quantity(expression(reading, "azimuth"), scope, ANGLE)
     level = cos_deg(elevation)
     toward = (level * sin_deg(azimuth), level * cos_deg(azimuth), sin_deg(elevation))
@@ -164,12 +164,12 @@ def _lux(reading: tree.Reading, scope: Scope, default: float) -> float:
         return default
     lux = quantity(written, scope, ILLUMINANCE) * 1e6  # the base unit is lm/mm2
     if lux <= 0:
-        raise mistake("out of range", written.span, f"expected an illuminance above 0, found {lux:g} lx")
+        raise mistake("out-of-range", written.span, f"expected an illuminance above 0, found {lux:g} lx")
     return lux
 
 
 def _positive(written: tree.Expression, scope: Scope) -> float:
     value = quantity(written, scope, NUMBER)
     if value <= 0:
-        raise mistake("out of range", written.span, f"expected a number above 0, found {value:g}")
+        raise mistake("out-of-range", written.span, f"expected a number above 0, found {value:g}")
     return value

@@ -66,7 +66,7 @@ def read_material(line: tree.Line, scope: Scope, problems: Problems) -> Surface:
         return Surface(name.text, colour or PLAIN.colour, DIELECTRIC, gloss, False, density)
     if colour is not None:
         sentence = "a metal takes its colour from its measured reflectance; `colour` has no effect beside `metal`"
-        problems.warn("no effect", said["colour"], sentence, "leave one of the two out")
+        problems.warn("no-effect", said["colour"], sentence, "leave one of the two out")
     reflectance = METALS[metal]
     return Surface(name.text, _encoded(reflectance), reflectance, gloss, True, density)
 
@@ -74,7 +74,7 @@ def read_material(line: tree.Line, scope: Scope, problems: Problems) -> Surface:
 def said_twice(line: tree.Line, said: dict[str, Span], problems: Problems) -> None:
     """Report a line whose word may stand once in its block and has stood before; note it otherwise."""
     if line.word in said:
-        problems.error("said twice", line.head.word_span, f"`{line.word}` stands here twice", "leave one of them out")
+        problems.error("said-twice", line.head.word_span, f"`{line.word}` stands here twice", "leave one of them out")
     said.setdefault(line.word, line.head.word_span)
 
 
@@ -94,7 +94,7 @@ def _colour(expression: tree.Expression, scope: Scope) -> tuple[int, int, int]:
     written = text(expression, scope)
     if not re.fullmatch(r"#[0-9a-fA-F]{6}", written):
         hint = 'write it as `"#rrggbb"`, two hexadecimal digits each for red, green and blue'
-        raise mistake("wrong kind", expression.span, f'expected a colour, found "{written}"', hint)
+        raise mistake("wrong-kind", expression.span, f'expected a colour, found "{written}"', hint)
     red, green, blue = (int(written[k : k + 2], 16) for k in (1, 3, 5))
     return red, green, blue
 
@@ -102,14 +102,14 @@ def _colour(expression: tree.Expression, scope: Scope) -> tuple[int, int, int]:
 def _share(expression: tree.Expression, scope: Scope) -> float:
     share = quantity(expression, scope, NUMBER)
     if not 0 <= share <= 1:
-        raise mistake("out of range", expression.span, f"expected 0 % to 100 %, found {100 * share:g} %")
+        raise mistake("out-of-range", expression.span, f"expected 0 % to 100 %, found {100 * share:g} %")
     return share
 
 
 def _density(expression: tree.Expression, scope: Scope) -> float:
     density = quantity(expression, scope, DENSITY) * 1000.0  # the base unit is g/mm3
     if density <= 0:
-        raise mistake("out of range", expression.span, "a density is more than 0")
+        raise mistake("out-of-range", expression.span, "a density is more than 0")
     return density
 
 

@@ -77,7 +77,7 @@ def find(modules: Modules, module: Module, path: tree.Path) -> tuple[Module, Dec
         if declaration is None:
             raise _unknown(step, here, "")
         if declaration.kind != "see":
-            raise mistake("unknown name", step.span, f"`{step.name}` is no prefix of a file seen")
+            raise mistake("unknown-name", step.span, f"`{step.name}` is no prefix of a file seen")
         file = here.prefixes.get(step.name)
         if file is None or file not in modules:
             raise Mistake(None)
@@ -99,7 +99,7 @@ def find_kind(modules: Modules, module: Module, path: tree.Path, kinds: tuple[st
         names = [name for name, each in here.names.items() if each.kind in kinds]
         near = nearest(path.steps[-1].name, names)
         related = (Related(found.span, "declared here"),)
-        raise mistake("wrong kind", path.span, sentence, f"did you mean `{near}`?" if near else "", related)
+        raise mistake("wrong-kind", path.span, sentence, f"did you mean `{near}`?" if near else "", related)
     return here, found
 
 
@@ -117,7 +117,7 @@ def _described(kind: str) -> str:
 def _unknown(step: tree.Step, module: Module, wanted: str) -> Mistake:
     near = nearest(step.name, list(module.names))
     return mistake(
-        "unknown name",
+        "unknown-name",
         step.span,
         f"nothing here is called `{step.name}`",
         f"did you mean `{near}`?" if near else wanted,
@@ -156,13 +156,13 @@ def declare(declaration: Declaration, space: dict[str, Declaration], problems: P
     if known is not None:
         related = (Related(known.span, "declared here first"),)
         problems.error(
-            "duplicate name", declaration.span, f"`{declaration.name}` is declared twice", "rename one", related
+            "duplicate-name", declaration.span, f"`{declaration.name}` is declared twice", "rename one", related
         )
         return
     if declaration.name in FUNCTIONS or declaration.name in CONSTANTS:
         what = "a function" if declaration.name in FUNCTIONS else "a constant"
         problems.error(
-            "duplicate name", declaration.span, f"`{declaration.name}` is {what} of the language", "rename it"
+            "duplicate-name", declaration.span, f"`{declaration.name}` is {what} of the language", "rename it"
         )
     space[declaration.name] = declaration
 
@@ -190,7 +190,7 @@ def _declare_inside(
     if outer is not None:
         related = (Related(outer.span, "declared here first"),)
         sentence = f"`{declaration.name}` is declared outside already; inside it would mean something else"
-        problems.error("duplicate name", declaration.span, sentence, "rename one", related)
+        problems.error("duplicate-name", declaration.span, sentence, "rename one", related)
     else:
         declare(declaration, inner, problems)
 
@@ -306,9 +306,9 @@ def _unused(module: Module, used: Mapping[str, Mapping[str, None]], problems: Pr
         users = [user for user in used.get(declaration.name, ()) if user != declaration.name]
         if declaration.kind == "given" and not users:
             sentence = f"the parameter `{declaration.name}` is never used"
-            problems.warn("unused parameter", declaration.span, sentence, "use it or take it out")
+            problems.warn("unused-parameter", declaration.span, sentence, "use it or take it out")
         if declaration.kind == "part" and shows and not users:
             sentence = f"the part `{declaration.name}` is never placed"
             problems.warn(
-                "never placed", declaration.span, sentence, "place it in an assembly, show it, or take it out"
+                "never-placed", declaration.span, sentence, "place it in an assembly, show it, or take it out"
             )

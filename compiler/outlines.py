@@ -27,29 +27,29 @@ def read_outline(line: tree.Line, scope: Scope) -> Outline:
 
 def _loop(lines: tuple[tree.Line, ...], span: Span, scope: Scope) -> Loop:
     if not lines:
-        raise mistake("open outline", span, "this outline has no lines", "begin with `from (0, 0)` or with a `circle`")
+        raise mistake("open-outline", span, "this outline has no lines", "begin with `from (0, 0)` or with a `circle`")
     first = lines[0]
     if first.word == "circle":
         if len(lines) > 1:
-            raise mistake("open outline", lines[1].span, "a circle is a whole loop; nothing can follow it")
+            raise mistake("open-outline", lines[1].span, "a circle is a whole loop; nothing can follow it")
         return _circle(first.head, scope)
     if first.word != "from":
-        raise mistake("open outline", first.head.word_span, f"expected `from` or `circle` first, found `{first.word}`")
+        raise mistake("open-outline", first.head.word_span, f"expected `from` or `circle` first, found `{first.word}`")
     start = here = point2(expression(first.head, "point"), scope)
     stretches: list[LineTo | ArcTo] = []
     for line in lines[1:]:
         if line.word in ("from", "circle"):
             hint = "a further loop is a `hole`, its lines indented under it"
             raise mistake(
-                "open outline", line.head.word_span, f"`{line.word}` begins a loop and this one has begun", hint
+                "open-outline", line.head.word_span, f"`{line.word}` begins a loop and this one has begun", hint
             )
         end = point2(expression(line.head, "point"), scope)
         if end == here:
-            raise mistake("no length", line.span, "this stretch has no length: it ends where it starts")
+            raise mistake("no-length", line.span, "this stretch has no length: it ends where it starts")
         stretches.append(LineTo(end) if line.word == "to" else _arc(line.head, here, end, scope))
         here = end
     if len(stretches) < 2 and all(isinstance(stretch, LineTo) for stretch in stretches):
-        raise mistake("open outline", span, "this outline encloses nothing", "it needs two stretches or more")
+        raise mistake("open-outline", span, "this outline encloses nothing", "it needs two stretches or more")
     return Loop(start, tuple(stretches))
 
 
@@ -57,7 +57,7 @@ def point2(written: tree.Expression, scope: Scope) -> Point2:
     """A point of the outline's plane in mm. Raises Mistake."""
     x, y = vector(written, scope, 2, LENGTH).components
     if max(abs(x), abs(y)) > limits.LARGEST_MM:
-        raise mistake("out of range", written.span, f"this lies further than {limits.LARGEST_MM:g} mm, the limit")
+        raise mistake("out-of-range", written.span, f"this lies further than {limits.LARGEST_MM:g} mm, the limit")
     return (x, y)
 
 
@@ -79,14 +79,14 @@ def _arc(reading: tree.Reading, start: Point2, end: Point2, scope: Scope) -> Arc
     half = math.hypot(chord_x, chord_y) / 2
     if radius < half * (1 - 1e-9):
         sentence = f"a radius of {radius:g} mm cannot reach: the ends lie {2 * half:g} mm apart"
-        raise mistake("out of range", written.span, sentence, f"a radius of {half:g} mm or more")
+        raise mistake("out-of-range", written.span, sentence, f"a radius of {half:g} mm or more")
     rise = math.sqrt(max(radius * radius - half * half, 0.0))
-    left = word(reading, "side") == "left"
-    # The centre lies to the left of the way for a left turn; the shorter of the two arcs is meant.
-    sign = 1.0 if left else -1.0
+    # The arc bows to the side named, seen along the way, so its centre lies to the other; the shorter arc is meant.
+    turns_left = word(reading, "side") == "right"
+    sign = 1.0 if turns_left else -1.0
     x = (start[0] + end[0]) / 2 - sign * rise * chord_y / (2 * half)
     y = (start[1] + end[1]) / 2 + sign * rise * chord_x / (2 * half)
-    return ArcTo(end, (x, y), left)
+    return ArcTo(end, (x, y), turns_left)
 
 
 def _arc_through(start: Point2, middle: Point2, end: Point2, span: Span) -> ArcTo:
@@ -94,7 +94,7 @@ def _arc_through(start: Point2, middle: Point2, end: Point2, span: Span) -> ArcT
     bx, by = end[0] - start[0], end[1] - start[1]
     cross = ax * by - ay * bx
     if abs(cross) <= 1e-12 * (math.hypot(ax, ay) * math.hypot(bx, by)):
-        raise mistake("no arc", span, "the three points lie on one line, so no arc passes through them", "write `to`")
+        raise mistake("no-arc", span, "the three points lie on one line, so no arc passes through them", "write `to`")
     a2, b2 = ax * ax + ay * ay, bx * bx + by * by
     x = start[0] + (by * a2 - ay * b2) / (2 * cross)
     y = start[1] + (ax * b2 - bx * a2) / (2 * cross)

@@ -65,7 +65,7 @@ def in_order(declarations: Iterable[Declaration], named: Named, problems: Proble
         way = " needs ".join(f"`{name}`" for name in circle)
         related = tuple(Related(valued[name].span, "part of the circle") for name in circle[1:-1])
         sentence = f"this value needs itself: {way}" if len(circle) > 2 else f"`{circle[0]}` needs itself"
-        problems.error("circular value", valued[circle[0]].span, sentence, "", related)
+        problems.error("circular-value", valued[circle[0]].span, sentence, "", related)
     left_out = [name for name in valued if name not in set(sequence)]
     named.update((name, Failed()) for name in left_out)
     return [valued[name] for name in sequence]
@@ -119,7 +119,7 @@ def arguments(declaration: Declaration, call: tree.Call | None, scope: Scope, ho
             related = (Related(parameter.span, "declared here, without a default"),)
             sentence = f"`{declaration.name}` needs `{parameter.name}`"
             hint = f"write `{declaration.name}({parameter.name} = …)`"
-            raise mistake("wrong parameters", span, sentence, hint, related)
+            raise mistake("wrong-parameters", span, sentence, hint, related)
         named[parameter.name] = value
     return named
 
@@ -133,7 +133,7 @@ def _given_arguments(
     if len(call.positional) > len(names):
         count = {0: "no parameters", 1: "one parameter"}.get(len(names), f"{len(names)} parameters")
         raise mistake(
-            "wrong parameters", call.span, f"`{declaration.name}` has {count}, found {len(call.positional)} values"
+            "wrong-parameters", call.span, f"`{declaration.name}` has {count}, found {len(call.positional)} values"
         )
     given = {name: evaluate(each, scope) for name, each in zip(names, call.positional, strict=False)}
     for setting in call.named:
@@ -141,9 +141,9 @@ def _given_arguments(
             near = nearest(setting.name, names)
             hint = f"did you mean `{near}`?" if near else ""
             sentence = f"`{declaration.name}` has no parameter `{setting.name}`"
-            raise mistake("unknown name", setting.name_span, sentence, hint)
+            raise mistake("unknown-name", setting.name_span, sentence, hint)
         if setting.name in given:
-            raise mistake("wrong parameters", setting.span, f"`{setting.name}` is given twice")
+            raise mistake("wrong-parameters", setting.span, f"`{setting.name}` is given twice")
         given[setting.name] = evaluate(setting.value, scope)
     return given
 
@@ -163,7 +163,7 @@ def _accept(settings: tuple[Setting, ...], valued: Mapping[str, Declaration], pr
             sentence = f"there is no parameter `{setting.name}` to set"
             if declaration is not None:
                 sentence = f"`{setting.name}` is derived; only parameters under `given` can be set"
-            problems.error("unknown name", setting.span, sentence, f"did you mean `{near}`?" if near else "")
+            problems.error("unknown-name", setting.span, sentence, f"did you mean `{near}`?" if near else "")
         else:
             chosen[setting.name] = setting
     return chosen
@@ -190,7 +190,7 @@ def _same_kind(name: str, value: Value, default: Value, span: Span) -> Value:
             return Quantity(0.0, default.dimension)
     elif type(value) is type(default):
         return value
-    raise mistake("wrong kind", span, f"`{name}` is {kind_of(default)}, found {kind_of(value)}")
+    raise mistake("wrong-kind", span, f"`{name}` is {kind_of(default)}, found {kind_of(value)}")
 
 
 def _within_limits(declaration: Declaration, value: Value, span: Span, scope: Scope) -> None:
@@ -205,15 +205,15 @@ def _within_limits(declaration: Declaration, value: Value, span: Span, scope: Sc
         allowed = evaluate(written, scope)
         if not isinstance(allowed, Interval):
             raise mistake(
-                "wrong kind", written.span, f"expected a range such as `1 mm .. 5 mm`, found {kind_of(allowed)}"
+                "wrong-kind", written.span, f"expected a range such as `1 mm .. 5 mm`, found {kind_of(allowed)}"
             )
         if not isinstance(value, Quantity) or (value.dimension != allowed.low.dimension and not value.bare_zero):
             raise mistake(
-                "wrong kind", written.span, f"the range does not fit: `{declaration.name}` is {kind_of(value)}"
+                "wrong-kind", written.span, f"the range does not fit: `{declaration.name}` is {kind_of(value)}"
             )
         if not allowed.low.value <= value.value <= allowed.high.value:
             sentence = f"`{declaration.name}` is {spell(value)}, outside its range {spell(allowed)}"
-            raise mistake("out of range", span, sentence, "", related)
+            raise mistake("out-of-range", span, sentence, "", related)
     choices = head.get("choices")
     if isinstance(choices, tuple):
         allowed_values = [
@@ -227,4 +227,4 @@ def _within_limits(declaration: Declaration, value: Value, span: Span, scope: Sc
                 else None
             )
             sentence = f"`{declaration.name}` is {spell(value)}, expected one of {options}"
-            raise mistake("out of range", span, sentence, f'did you mean "{near}"?' if near else "", related)
+            raise mistake("out-of-range", span, sentence, f'did you mean "{near}"?' if near else "", related)

@@ -60,7 +60,7 @@ def _below(thing: Thing, step: tree.Step) -> Occurrence | Mark | Feature:
         return inside[step.name]
     near = nearest(step.name, list(inside))
     hint = f"did you mean `{near}`?" if near else _listed(list(inside))
-    raise mistake("unknown name", step.span, f"`{thing.name}` has nothing called `{step.name}`", hint)
+    raise mistake("unknown-name", step.span, f"`{thing.name}` has nothing called `{step.name}`", hint)
 
 
 def _listed(names: list[str]) -> str:
@@ -76,16 +76,16 @@ def _copy(occurrence: Occurrence, step: tree.Step, scope: Scope) -> Copy:
             return occurrence.copies[0]
         sentence = f"there are {len(occurrence.copies)} of `{occurrence.name}`; brackets say which"
         hint = f"such as `{occurrence.name}[{occurrence.copies[0].label}]`"
-        raise mistake("which copy", step.span, sentence, hint)
+        raise mistake("which-copy", step.span, sentence, hint)
     label = _label(step.index, scope)
     for copy in occurrence.copies:
         if copy.label == label:
             return copy
     if len(occurrence.copies) == 1:
-        raise mistake("which copy", step.span, f"there is one `{occurrence.name}`, so it takes no brackets")
+        raise mistake("which-copy", step.span, f"there is one `{occurrence.name}`, so it takes no brackets")
     last = occurrence.copies[-1].label
     sentence = f"there is no `{occurrence.name}[{label}]`; the {len(occurrence.copies)} copies run from "
-    raise mistake("which copy", step.span, f"{sentence}[{occurrence.copies[0].label}] to [{last}]")
+    raise mistake("which-copy", step.span, f"{sentence}[{occurrence.copies[0].label}] to [{last}]")
 
 
 def _label(index: tree.Expression, scope: Scope) -> str:
@@ -97,27 +97,27 @@ def _label(index: tree.Expression, scope: Scope) -> str:
 
 def _mark_value(mark: Mark, placement: Affine, steps: Sequence[tree.Step]) -> Value:
     if steps[0].index is not None:
-        raise mistake("which copy", steps[0].span, f"`{mark.name}` is a mark; brackets count copies")
+        raise mistake("which-copy", steps[0].span, f"`{mark.name}` is a mark; brackets count copies")
     if len(steps) == 1 or steps[1].name == "point":
         return _point(mark.point, placement)
     if steps[1].name == "axis" and mark.axis is not None:
         return _direction(mark.axis, placement)
     hint = "a mark has a `point`, and an `axis` if it is set `along` one"
-    raise mistake("unknown name", steps[1].span, f"the mark `{mark.name}` has no `{steps[1].name}`", hint)
+    raise mistake("unknown-name", steps[1].span, f"the mark `{mark.name}` has no `{steps[1].name}`", hint)
 
 
 def _feature_value(feature: Feature, placement: Affine, steps: Sequence[tree.Step], scope: Scope) -> Value:
     first = steps[0]
     if first.index is None and len(feature.copies) > 1:
         sentence = f"there are {len(feature.copies)} of `{feature.name}`; brackets say which"
-        raise mistake("which copy", first.span, sentence, f"such as `{feature.name}[1]`")
+        raise mistake("which-copy", first.span, sentence, f"such as `{feature.name}[1]`")
     number = 1 if first.index is None else count(first.index, scope, least=1)
     if number > len(feature.copies):
-        raise mistake("which copy", first.span, f"there are {len(feature.copies)} of `{feature.name}`, found {number}")
+        raise mistake("which-copy", first.span, f"there are {len(feature.copies)} of `{feature.name}`, found {number}")
     copy = feature.copies[number - 1]
     wanted = steps[1] if len(steps) > 1 else None
     if len(steps) > 2:
-        raise mistake("unknown name", steps[2].span, f"nothing can follow `{steps[1].name}`")
+        raise mistake("unknown-name", steps[2].span, f"nothing can follow `{steps[1].name}`")
     match wanted.name if wanted else "centre":
         case "centre":
             return _point(copy.centre, placement)
@@ -131,7 +131,7 @@ def _feature_value(feature: Feature, placement: Affine, steps: Sequence[tree.Ste
     hint = "a feature has " + ", ".join(f"`{each}`" for each in FEATURE_VALUES)
     if wanted.name == "diameter":
         hint = "only round features have one"
-    raise mistake("unknown name", wanted.span, f"the feature `{feature.name}` has no `{wanted.name}`", hint)
+    raise mistake("unknown-name", wanted.span, f"the feature `{feature.name}` has no `{wanted.name}`", hint)
 
 
 def _point(point: tuple[float, float, float], placement: Affine) -> Vector:

@@ -45,7 +45,7 @@ def place(clauses: tuple[tree.Reading, ...], scope: Scope, marks: Marks) -> Affi
             case "at":
                 if at is not None:
                     raise mistake(
-                        "said twice",
+                        "said-twice",
                         clause.word_span,
                         "`at` stands here twice",
                         "a thing has one place",
@@ -81,7 +81,7 @@ def repeat(clauses: tuple[tree.Reading, ...], scope: Scope, marks: Marks) -> tup
             continue
         if len(copies) * len(more) > limits.COPIES:
             made = len(copies) * len(more)
-            raise mistake("too much", clause.span, f"{made:,} copies are more than {limits.COPIES:,}, the limit")
+            raise mistake("too-much", clause.span, f"{made:,} copies are more than {limits.COPIES:,}, the limit")
         copies = tuple(compose(outer, inner) for outer in more for inner in copies)
     return copies
 
@@ -109,11 +109,11 @@ def direction(written: tree.Expression, scope: Scope) -> Point:
     value = evaluate(written, scope)
     if not isinstance(value, Vector) or len(value.components) != 3:
         hint = "write x, y, z, -x, -y, -z or three values such as (1, 0, 1)"
-        raise mistake("wrong kind", written.span, f"expected a direction, found {kind_of(value)}", hint)
+        raise mistake("wrong-kind", written.span, f"expected a direction, found {kind_of(value)}", hint)
     x, y, z = value.components
     found = unit_vector((x, y, z))
     if found is None:
-        raise mistake("out of range", written.span, "a direction needs a length")
+        raise mistake("out-of-range", written.span, "a direction needs a length")
     return found
 
 
@@ -121,7 +121,7 @@ def point(written: tree.Expression, scope: Scope) -> Point:
     """A point of space in mm, within the largest length. Raises Mistake."""
     x, y, z = vector(written, scope, 3, LENGTH).components
     if max(abs(x), abs(y), abs(z)) > limits.LARGEST_MM:
-        raise mistake("out of range", written.span, f"this lies further than {limits.LARGEST_MM:g} mm, the limit")
+        raise mistake("out-of-range", written.span, f"this lies further than {limits.LARGEST_MM:g} mm, the limit")
     return (x, y, z)
 
 
@@ -130,9 +130,9 @@ def positive_length(written: tree.Expression, scope: Scope, what: str, zero: boo
     value = quantity(written, scope, LENGTH, what)
     if value < 0 or (value == 0 and not zero):
         least = "0 or more" if zero else "more than 0"
-        raise mistake("out of range", written.span, f"{what}: expected {least}, found {value:g} mm")
+        raise mistake("out-of-range", written.span, f"{what}: expected {least}, found {value:g} mm")
     if value > limits.LARGEST_MM:
-        raise mistake("out of range", written.span, f"{what}: more than {limits.LARGEST_MM:g} mm, the limit")
+        raise mistake("out-of-range", written.span, f"{what}: more than {limits.LARGEST_MM:g} mm, the limit")
     return value
 
 
@@ -141,7 +141,7 @@ def _factor(clause: tree.Reading, scope: Scope) -> float:
     factor = quantity(written, scope, NUMBER)
     if not 0 < factor <= limits.LARGEST_MM:
         hint = "to mirror a thing, write `mirrored across x`" if factor < 0 else ""
-        raise mistake("out of range", written.span, f"expected a factor above 0, found {factor:g}", hint)
+        raise mistake("out-of-range", written.span, f"expected a factor above 0, found {factor:g}", hint)
     return factor
 
 
@@ -155,7 +155,7 @@ def _ring(clause: tree.Reading, scope: Scope, marks: Marks) -> tuple[Affine, ...
         if not 0 < abs(whole) < 360:
             hint = "leave `over` out for a full ring"
             sentence = f"expected an angle between 0 and 360 deg, found {whole:g} deg"
-            raise mistake("out of range", over.span, sentence, hint)
+            raise mistake("out-of-range", over.span, sentence, hint)
     return tuple(turn(whole * k / steps, axis.along, axis.through) for k in range(number))
 
 
@@ -164,5 +164,5 @@ def _row(clause: tree.Reading, scope: Scope) -> tuple[Affine, ...]:
     written = expression(clause, "step")
     x, y, z = point(written, scope)
     if number > 1 and not any((x, y, z)):
-        raise mistake("coincident copies", written.span, "the copies of this row would lie in one place")
+        raise mistake("coincident-copies", written.span, "the copies of this row would lie in one place")
     return tuple(translate((x * k, y * k, z * k)) for k in range(number))

@@ -74,13 +74,13 @@ class _Reading:
             name, span, trail = pending.pop()
             if name in trail:
                 circle = " sees ".join(f"`{step}`" for step in (*trail[trail.index(name) :], name))
-                self.problems.error("circular see", span, f"files see each other in a circle: {circle}")
+                self.problems.error("circular-see", span, f"files see each other in a circle: {circle}")
                 continue
             if name in self.scenes:
                 pending.extend((seen, at, (*trail, name)) for _, seen, at in self.sees[name])
                 if len(trail) > limits.NESTING:
                     self.problems.error(
-                        "too deep", span, f"files see each other more than {limits.NESTING} deep, the limit"
+                        "too-deep", span, f"files see each other more than {limits.NESTING} deep, the limit"
                     )
                     pending.clear()
                 continue
@@ -100,12 +100,12 @@ class _Reading:
     def text(self, name: str, span: Span) -> str | None:
         """The text of a file, decoded; None with a problem if there is none."""
         if len(self.texts) >= limits.FILES:
-            self.problems.error("too much", span, f"the scene sees more than {limits.FILES} files, the limit")
+            self.problems.error("too-much", span, f"the scene sees more than {limits.FILES} files, the limit")
             return None
         answer = self.loader(name)
         if isinstance(answer, Refusal):
             self.problems.error(
-                "no such file", span, _REASONS.get(answer.reason, "`{name}` cannot be read").format(name=name)
+                "no-such-file", span, _REASONS.get(answer.reason, "`{name}` cannot be read").format(name=name)
             )
             return None
         try:
@@ -115,7 +115,7 @@ class _Reading:
             sentence = f"this file is not UTF-8: byte {answer[error.start]:#04x} at offset {error.start}"
             at = Span(name, line, 1, line, 1)
             self.texts.setdefault(name, answer.decode("utf-8", "replace"))
-            self.problems.error("not UTF-8", at, sentence, "save the file as UTF-8")
+            self.problems.error("not-utf-8", at, sentence, "save the file as UTF-8")
             return None
         self.texts[name] = text
         return text
@@ -149,7 +149,7 @@ class _Reading:
             return None
         if not all(isinstance(part, str) for part in value.parts):
             self.problems.error(
-                "computed file name", value.span, "a file name is written out, without values in braces"
+                "computed-file-name", value.span, "a file name is written out, without values in braces"
             )
             return None
         return "".join(part for part in value.parts if isinstance(part, str)), value.span
@@ -158,7 +158,7 @@ class _Reading:
         """The project-relative name of a file named from another; None with a problem if it leaves the project."""
         target = beside(file, wanted)
         if target is None:
-            self.problems.error("no such file", span, f"`{wanted}` lies outside the project's folder")
+            self.problems.error("no-such-file", span, f"`{wanted}` lies outside the project's folder")
         return target
 
 

@@ -22,6 +22,7 @@ from .expect import judge_facts
 from .expressions import evaluate
 from .figures import Spec, default_figure, plan_figure, read_figure
 from .flatten import Mesher, flatten
+from .flatten import prove as prove_things
 from .listing import Listing, list_scene
 from .mistakes import Problems, mistake
 from .modules import Modules, gather
@@ -55,6 +56,7 @@ __all__ = [
     "listing",
     "open_scene",
     "plan",
+    "prove",
 ]
 
 
@@ -162,6 +164,18 @@ def figure_names(project: Project) -> tuple[str, ...]:
     return tuple(project.modules[project.main].figures)
 
 
+def prove(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
+    """Problems that only meshing shows: outlines that cross themselves, parts that are empty or fall into pieces.
+
+    Covers every part of the model and of those of its figures.
+    """
+    problems = Problems()
+    models = {id(model.built): model.built, **{id(built): built for built, _ in model.specs.values()}}
+    for built in models.values():
+        problems.extend(prove_things(tuple(built.things.values()), built.sources, mesher))
+    return problems.all()
+
+
 def judge(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
     """Errors for facts that do not hold."""
     return judge_facts(model.built, mesher)
@@ -224,15 +238,15 @@ def _export(
 ) -> Exported | None:
     start = Span("--of", 1, 1, 1, len(path) + 1)
     if not isinstance(written, tree.Path):
-        raise mistake("wrong form", start, "expected the path of a part or assembly, such as `gauge.funnel`")
+        raise mistake("wrong-form", start, "expected the path of a part or assembly, such as `gauge.funnel`")
     first = written.steps[0]
     if first.name not in built.things:
         near = nearest(first.name, list(built.things))
         hint = f"did you mean `{near}`?" if near else ""
-        raise mistake("unknown name", first.span, f"there is no part or assembly `{first.name}`", hint)
+        raise mistake("unknown-name", first.span, f"there is no part or assembly `{first.name}`", hint)
     target = follow(built.things[first.name], written.steps[1:], built.scopes[built.files.main])
     if not isinstance(target, Placed):
-        raise mistake("wrong kind", written.span, f"`{path}` is a mark or feature; only things have triangles")
+        raise mistake("wrong-kind", written.span, f"`{path}` is a mark or feature; only things have triangles")
     rung = FACTS if tolerance_mm is None else first_at_most(tolerance_mm)
     flattened, found = flatten(built.things[first.name], first.name, rung, built.sources, mesher)
     problems.extend(found)
@@ -301,7 +315,7 @@ def _variants(files: Files, modules: Modules, problems: Problems) -> tuple[Varia
     for variant in variants:
         if variant.name in seen:
             sentence = f"two variants are called `{variant.name}`"
-            problems.error("duplicate name", variant.span, sentence, "rename one")
+            problems.error("duplicate-name", variant.span, sentence, "rename one")
         seen.setdefault(variant.name, variant)
     return tuple(variants)
 

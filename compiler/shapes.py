@@ -94,7 +94,7 @@ def _sizes(reading: tree.Reading, slot: str, scope: Scope) -> tuple[float, float
             sentence = f"size along {axis}: expected more than 0, found {value:g} mm"
             if value > 0:
                 sentence = f"size along {axis}: more than {limits.LARGEST_MM:g} mm, the limit"
-            raise mistake("out of range", written.span, sentence)
+            raise mistake("out-of-range", written.span, sentence)
     return (x, y, z)
 
 
@@ -103,7 +103,7 @@ def _wedge(reading: tree.Reading, scope: Scope) -> Wedge:
     top = _top(reading, scope)
     written = optional(reading, "top")
     if written is not None and top >= size[0]:
-        raise mistake("out of range", written.span, f"top: expected less than {size[0]:g} mm, found {top:g} mm")
+        raise mistake("out-of-range", written.span, f"top: expected less than {size[0]:g} mm, found {top:g} mm")
     return Wedge(size, top)
 
 
@@ -123,7 +123,7 @@ def _torus(reading: tree.Reading, diameter: float, tube: float) -> Torus:
         sentence = (
             f"tube: expected less than the diameter {diameter:g} mm, found {tube:g} mm; the ring would cut itself"
         )
-        raise mistake("out of range", expression(reading, "tube").span, sentence)
+        raise mistake("out-of-range", expression(reading, "tube").span, sentence)
     return Torus(diameter, tube)
 
 

@@ -40,14 +40,14 @@ def read_table(file: str, text: str) -> tuple[Table | None, tuple[Problem, ...]]
     try:
         lines = _lines(text)
     except csv.Error as error:
-        problems.error("bad table", Span(file, 1, 1, 1, 1), f"this is no CSV table: {error}")
+        problems.error("bad-table", Span(file, 1, 1, 1, 1), f"this is no CSV table: {error}")
         return None, problems.all()
     if not lines:
-        problems.error("bad table", Span(file, 1, 1, 1, 1), "the table is empty; its first line names the columns")
+        problems.error("bad-table", Span(file, 1, 1, 1, 1), "the table is empty; its first line names the columns")
         return None, problems.all()
     if len(lines) > limits.TABLE_ROWS:
         sentence = f"the table has more than {limits.TABLE_ROWS:,} rows, the limit"
-        problems.error("too much", Span(file, limits.TABLE_ROWS, 1, limits.TABLE_ROWS, 1), sentence)
+        problems.error("too-much", Span(file, limits.TABLE_ROWS, 1, limits.TABLE_ROWS, 1), sentence)
         return None, problems.all()
     number, header = lines[0]
     columns = _header(file, number, header, problems)
@@ -55,7 +55,7 @@ def read_table(file: str, text: str) -> tuple[Table | None, tuple[Problem, ...]]
     for number, cells in lines[1:]:
         span = Span(file, number, 1, number, 1 + sum(map(len, cells)) + len(cells) - 1)
         if len(cells) != len(columns):
-            problems.error("bad table", span, f"expected {len(columns)} values in this row, found {len(cells)}")
+            problems.error("bad-table", span, f"expected {len(columns)} values in this row, found {len(cells)}")
             continue
         row: list[Value | None] = []
         for (name, unit), cell in zip(columns, cells, strict=True):
@@ -89,13 +89,13 @@ def _header(file: str, number: int, cells: list[str], problems: Problems) -> lis
         name, _, unit = cell.strip().partition(" ")
         unit = unit.strip()
         if not name.isidentifier() or not name.isascii():
-            problems.error("bad table", span, f"expected a column name in the header, found `{cell.strip()}`")
+            problems.error("bad-table", span, f"expected a column name in the header, found `{cell.strip()}`")
         if unit and unit not in units.UNITS:
             near = nearest(unit, list(units.UNITS))
-            problems.error("unknown unit", span, f"`{unit}` is no unit", f"did you mean `{near}`?" if near else "")
+            problems.error("unknown-unit", span, f"`{unit}` is no unit", f"did you mean `{near}`?" if near else "")
             unit = ""
         if name in [known for known, _ in columns]:
-            problems.error("duplicate name", span, f"two columns are called `{name}`")
+            problems.error("duplicate-name", span, f"two columns are called `{name}`")
         columns.append((name, unit))
     return columns
 
@@ -108,7 +108,7 @@ def _cell(cell: str, name: str, unit: str, span: Span) -> Value | None:
         return Quantity(value + 0.0, dimension, value == 0 and not unit)
     if unit:
         hint = "the header states the unit; the cell holds the number alone"
-        raise mistake("bad table", span, f"expected a number in column `{name}`, found `{cell}`", hint)
+        raise mistake("bad-table", span, f"expected a number in column `{name}`, found `{cell}`", hint)
     if cell in ("yes", "no"):
         return cell == "yes"
     return cell
@@ -119,5 +119,5 @@ def _unlike(labels: list[str], spans: list[Span], problems: Problems) -> None:
     for label, span in zip(labels, spans, strict=True):
         if label in first:
             related = (Related(first[label], "the first of them"),)
-            problems.error("duplicate name", span, f"two rows are called `{label}`", related=related)
+            problems.error("duplicate-name", span, f"two rows are called `{label}`", related=related)
         first.setdefault(label, span)

@@ -56,12 +56,12 @@ def read_viewpoint(line: tree.Line, scope: Scope, problems: Problems) -> Viewpoi
     projections = [each for each in line.lines if each.word not in ("lens", "angle of view")]
     if not projections:
         hint = "such as `isometric from front right above` or `eye (900 mm, -1200 mm, 700 mm) toward (0, 0, 0)`"
-        problems.error("no projection", line.span, "this viewpoint states no projection", hint)
+        problems.error("no-projection", line.span, "this viewpoint states no projection", hint)
         return None
     first = projections[0]
     for other in projections[1:]:
         related = (Related(first.head.word_span, "the first of them"),)
-        problems.error("said twice", other.head.word_span, "a viewpoint has one projection", "leave one out", related)
+        problems.error("said-twice", other.head.word_span, "a viewpoint has one projection", "leave one out", related)
     viewpoint: Viewpoint | None = None
     with problems.collecting():
         viewpoint = _projection(first.head, scope)
@@ -69,7 +69,7 @@ def read_viewpoint(line: tree.Line, scope: Scope, problems: Problems) -> Viewpoi
         return _field_of_view(viewpoint, line, scope, problems)
     for each in line.lines:
         if each.word in ("lens", "angle of view") and viewpoint is not None:
-            problems.error("wrong form", each.span, f"`{each.word}` belongs to a central projection", "state an `eye`")
+            problems.error("wrong-form", each.span, f"`{each.word}` belongs to a central projection", "state an `eye`")
     return viewpoint
 
 
@@ -78,7 +78,7 @@ def _projection(reading: tree.Reading, scope: Scope) -> Viewpoint | None:
         case "eye":
             eye, toward = point(expression(reading, "eye"), scope), point(expression(reading, "toward"), scope)
             if max(abs(a - b) for a, b in zip(eye, toward, strict=True)) < 1e-6:
-                raise mistake("eye on target", reading.span, "the eye stands on the point it looks toward")
+                raise mistake("eye-on-target", reading.span, "the eye stands on the point it looks toward")
             return Central(eye, toward)
         case "orthographic from":
             return Parallel(camera.orthographic(_side(word(reading, "side"))))
@@ -112,7 +112,7 @@ def _field_of_view(central: Central, line: tree.Line, scope: Scope, problems: Pr
         if said is not None:
             related = (Related(said, "the first of them"),)
             problems.error(
-                "said twice", each.head.word_span, "the field of view is stated twice", "leave one out", related
+                "said-twice", each.head.word_span, "the field of view is stated twice", "leave one out", related
             )
         said = each.head.word_span
         with problems.collecting():
@@ -125,5 +125,5 @@ def _field_of_view(central: Central, line: tree.Line, scope: Scope, problems: Pr
                 angle = quantity(written, scope, ANGLE)
                 if not 0 < angle < 170:
                     sentence = f"expected an angle of view between 0 and 170 deg, found {angle:g} deg"
-                    raise mistake("out of range", written.span, sentence)
+                    raise mistake("out-of-range", written.span, sentence)
     return Central(central.eye, central.toward, lens, film, angle)
