@@ -8,6 +8,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from types import MappingProxyType
 
+from .items import Equation, Item, Place, Series, expression_of, path_of, setting_of
 from .scanner import RESERVED, Slip
 from .tree import (
     Call,
@@ -26,7 +27,6 @@ from .tree import (
     Value,
 )
 from .units import UNITS
-from .values import Equation, Item, Place, Series, expression_of, path_of, setting_of
 from .words import CONSTANTS, SHAPE_WORDS
 
 _NEVER_QUANTITY = (Text, Truth, Date, Range, Ratio, Tuple)

@@ -6,10 +6,11 @@ from dataclasses import dataclass, field
 
 from lark import Lark
 
+from .items import Item, Place
 from .problems import Problem, Related, Severity
 from .scanner import Slip
 from .source import Span
-from .values import Item, Place, read_items
+from .values import read_items
 
 FILE_LIMIT = 4_000_000
 LINE_LIMIT = 10_000

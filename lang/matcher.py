@@ -5,11 +5,11 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 from .forms import signature_of, value_of
+from .items import Equation, Item, Place, Series
 from .layout import RawLine
 from .patterns import Either, Element, Equals, Literal, Optional, Pattern, Slot, Starts, Vocabulary
 from .source import Span
 from .tree import Path, Reading, Value, Word
-from .values import Equation, Item, Place, Series
 
 NO_STARTS = Starts({}, ())
 

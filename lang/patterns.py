@@ -151,8 +151,8 @@ def prepare(row: Row) -> Pattern:
 def vocabulary() -> Vocabulary:
     """The tables of words.py, prepared once a process: a pure function of that table."""
     patterns = [prepare(row) for row in ROWS]
-    places = {place: _starts(patterns, (place,)) for row in ROWS for place in row.stands}
-    clauses = {row.clauses: _starts(patterns, row.clauses) for row in ROWS}
+    places = {place: _starts(patterns, (place,)) for place in {place: 0 for row in ROWS for place in row.stands}}
+    clauses = {joined: _starts(patterns, joined) for joined in {row.clauses: 0 for row in ROWS}}
     homes: dict[str, tuple[str, ...]] = {}
     for pattern in patterns:
         if pattern.words:

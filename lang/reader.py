@@ -14,16 +14,18 @@ from typing import TypeVar
 
 from lark import Lark
 
+from .items import Item, Place, expression_of
 from .layout import Layout, RawLine, lay_out, slip_problem
 from .matcher import NO_STARTS, Matcher
 from .mismatch import explain, explain_clauses
 from .nearest import nearest
+from .parser import value_parser
 from .patterns import Pattern, Starts, Vocabulary, vocabulary
 from .problems import Problem, Related, Severity
 from .scanner import Slip
 from .source import Span
 from .tree import Expression, Line, Name, Number, Reading, Scene, Text
-from .values import Item, Place, expression_of, read_items, value_parser
+from .values import read_items
 
 VERSION = 1
 _Result = TypeVar("_Result")

@@ -27,7 +27,6 @@ from .rows_model import (
 )
 from .rows_page import PAGE_ROWS
 
-
 ROWS: tuple[Row, ...] = (
     *DECLARATION_ROWS,
     *MATERIAL_ROWS,
