@@ -257,6 +257,7 @@ sizes = st.floats(0.05, 500.0)
 def test_any_size_is_closed_and_sane(shape: Primitive, rung: float) -> None:
     mesh = made(add(shape), rung=rung)
     check_mesh(mesh, rung)
+    assert len(np.unique(mesh.faces)) == len(mesh.vertices)
     assert len(mesh.faces) == count_triangles(shape, rung)
 
 

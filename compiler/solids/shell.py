@@ -26,7 +26,12 @@ class Shell:
 def shell(
     vertices: NDArray[np.float64], pieces: Sequence[tuple[NDArray[np.integer], int]], surfaces: Surfaces
 ) -> Shell:
-    """From vertices and pieces, each the triangles (k,3) of one surface."""
+    """From vertices and pieces, each the triangles (k,3) of one surface; vertices without triangles are left out."""
     faces = np.concatenate([triangles for triangles, _ in pieces]).astype(np.int32)
+    used = np.zeros(len(vertices), np.bool_)
+    used[faces] = True
+    if not used.all():
+        faces = (np.cumsum(used, dtype=np.int32) - np.int32(1))[faces]
+        vertices = vertices[used]
     rows = np.repeat([row for _, row in pieces], [len(triangles) for triangles, _ in pieces]).astype(np.int32)
     return Shell(np.ascontiguousarray(vertices, np.float64) + 0.0, faces, rows, surfaces)
