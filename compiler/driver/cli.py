@@ -272,7 +272,7 @@ def _length(text: str) -> float:
     from platewright.lang.reader import read_value
     from platewright.lang.units import LENGTH, quantity
 
-    value, _ = read_value(text)
+    value, _ = read_value("--tolerance", text)
     if isinstance(value, tree.Number) and value.unit:
         length, dimension = quantity(value.text, value.unit)
         if dimension == LENGTH and length > 0:

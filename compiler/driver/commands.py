@@ -11,6 +11,7 @@ from platewright.lang.problems import Problem, is_error
 
 from . import files, names, session
 from .crash import Trace
+from .meshes import KeptMeshes
 from .report import Report
 from .session import Findings, OutputError, UsageError
 
@@ -45,15 +46,15 @@ def check(
     Writes problems as text to the messages, in another form to the results; a dump goes to the results. The exit
     code: 1 with any error, else 0.
     """
-    findings = Findings()
+    findings, mesher = Findings(), KeptMeshes()
     project = session.open_project(scene, project_folder, trace, findings)
     dumped = ""
     if project is not None:
         findings.add(names.problems(project.variants, "variant"))
         for variant in (None, *project.variants):
-            model = _check_variant(project, variant, figures, trace, findings)
+            model = _check_variant(project, variant, figures, mesher, trace, findings)
             if variant is None and model is not None and stage is not None:
-                dumped = _dump(project, model, stage, trace)
+                dumped = _dump(project, model, stage, mesher, trace, findings)
     problems = findings.worded()
     texts = session.texts(project, trace)
     if form == "text":
@@ -66,7 +67,7 @@ def check(
 
 
 def _check_variant(
-    project: Project, variant: Variant | None, figures: bool, trace: Trace, findings: Findings
+    project: Project, variant: Variant | None, figures: bool, mesher: KeptMeshes, trace: Trace, findings: Findings
 ) -> Model | None:
     from platewright.compiler.scene import judge, plan
 
@@ -76,20 +77,21 @@ def _check_variant(
         return None
     findings.add(names.problems(model.figures, "figure"), variant)
     trace.stage = f"judging {session.title(variant)}"
-    findings.add(judge(model), variant)
+    findings.add(judge(model, mesher), variant)
     bad = {problem.within for problem in problems if is_error(problem)}
     for figure in model.figures if figures else ():
         if figure.name not in bad:
             trace.stage = f"laying out figure {figure.name} of {session.title(variant)}"
-            findings.add(plan(model, figure.name, resolution=None, measures=False)[1], variant)
+            findings.add(plan(model, figure.name, mesher)[1], variant)
     return model
 
 
-def _dump(project: Project, model: Model, stage: Stage, trace: Trace) -> str:
+def _dump(project: Project, model: Model, stage: Stage, mesher: KeptMeshes, trace: Trace, findings: Findings) -> str:
     from platewright.compiler.scene import dump
 
     trace.stage = f"dumping the {stage}"
-    dumped: str = dump(project, model, stage)
+    dumped, problems = dump(project, model, stage, mesher)
+    findings.add(problems)
     return dumped
 
 
@@ -181,7 +183,7 @@ def _exported(
     from platewright.compiler.scene import geometry
 
     trace.stage = f"exporting {wanted.path}"
-    exported, problems = geometry(model, wanted.path, wanted.tolerance)
+    exported, problems = geometry(model, wanted.path, KeptMeshes(), wanted.tolerance)
     findings.add(problems)
     if exported is None or any(map(is_error, problems)):
         return None
@@ -204,7 +206,8 @@ def show_list(scene: Path, project_folder: Path | None, is_json: bool, trace: Tr
             from platewright.compiler.scene import listing
 
             trace.stage = "listing the scene"
-            listed = listing(model, project)
+            listed, problems = listing(model, project, KeptMeshes())
+            findings.add(problems)
     report.problems(findings.worded(), session.texts(project, trace))
     if listed is not None:
         report.document(contents.as_json(listed) if is_json else contents.as_text(listed))

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -11,6 +11,7 @@ from platewright.lang.problems import is_error
 
 from . import files, names, session, warm
 from .crash import Trace
+from .meshes import KeptMeshes
 from .report import Report
 from .session import Findings
 
@@ -45,7 +46,8 @@ class _Run:
     report: Report
     findings: Findings
     texts: Mapping[str, str]
-    failed: list[str]
+    mesher: KeptMeshes = field(default_factory=KeptMeshes)
+    failed: list[str] = field(default_factory=list)
     n_shown: int = 0
 
     def show_news(self) -> None:
@@ -64,24 +66,27 @@ def draw(wanted: Wanted, trace: Trace, report: Report) -> int:
     trace.beside, trace.overrides = out.absolute().parent, ("--out", "figures")
     findings = Findings()
     project = session.open_project(wanted.scene, wanted.project, trace, findings)
-    run = _Run(wanted, out, trace, report, findings, session.texts(project, trace), [])
+    run = _Run(wanted, out, trace, report, findings, session.texts(project, trace))
     run.show_news()
     if project is None:
         return 1
+    figures = session.chosen_figures(project, wanted.figures)
     variants = session.chosen_variants(project, wanted.variants, wanted.all_variants)
     findings.add(names.problems([variant for variant in variants if variant is not None], "variant"))
     run.show_news()
     if findings.has_errors:
         return 1
-    with report.progress(max(1, len(wanted.figures)) * len(variants)) as begin:
+    with report.progress(max(1, len(figures)) * len(variants)) as begin:
         for variant in variants:
-            _draw_variant(project, variant, run, begin)
+            _draw_variant(project, variant, figures, run, begin)
     if run.failed:
         report.message(f"not written: {', '.join(run.failed)}")
     return 1 if run.failed or findings.has_errors else 0
 
 
-def _draw_variant(project: Project, variant: Variant | None, run: _Run, begin: Callable[[str], None]) -> None:
+def _draw_variant(
+    project: Project, variant: Variant | None, figures: tuple[str, ...], run: _Run, begin: Callable[[str], None]
+) -> None:
     """All figures of one variant. A problem that concerns all of it keeps every figure from being written."""
     model, problems = session.build_model(project, variant, run.wanted.settings, run.trace)
     if model is not None:
@@ -92,7 +97,7 @@ def _draw_variant(project: Project, variant: Variant | None, run: _Run, begin: C
         run.failed.append(session.title(variant))
         return
     bad = {problem.within for problem in problems if is_error(problem)}
-    for figure in session.chosen_figures(model, run.wanted.figures):
+    for figure in figures or [figure.name for figure in model.figures]:
         unit = figure if variant is None else f"{variant.name}/{figure}"
         begin(unit)
         run.trace.stage = f"drawing {unit}"
@@ -108,7 +113,7 @@ def _unit(model: Model, figure: str, variant: Variant | None, run: _Run) -> dict
     from platewright.backend.write.record import record_bytes
     from platewright.compiler.scene import plan
 
-    job, problems = plan(model, figure, resolution=run.wanted.resolution, measures=run.wanted.record)
+    job, problems = plan(model, figure, run.mesher, resolution=run.wanted.resolution, measures=run.wanted.record)
     run.findings.add(problems, variant)
     if job is None or any(map(is_error, problems)):
         return None

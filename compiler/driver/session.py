@@ -141,9 +141,14 @@ def chosen_variants(project: Project, names: Sequence[str], everyone: bool) -> t
     return tuple(known[name] for name in _checked(names, known, "variant"))
 
 
-def chosen_figures(model: Model, names: Sequence[str]) -> tuple[str, ...]:
-    """The figures to make: those named, else all, in the order of the source. Raises UsageError."""
-    known = [figure.name for figure in model.figures]
+def chosen_figures(project: Project, names: Sequence[str]) -> tuple[str, ...]:
+    """The declared figures to make: those named, else all, in the order of the source. Raises UsageError.
+
+    Empty for a scene that declares none, whose one figure is that of its unplaced thing.
+    """
+    from platewright.compiler.scene import figure_names
+
+    known = figure_names(project)
     wanted = set(_checked(names, known, "figure")) or set(known)
     return tuple(name for name in known if name in wanted)
 

@@ -7,6 +7,7 @@ from contextlib import contextmanager
 from typing import TYPE_CHECKING
 
 from .crash import Trace
+from .meshes import KeptMeshes
 from .report import Report
 
 if TYPE_CHECKING:
@@ -83,7 +84,7 @@ def warm_up(trace: Trace, report: Report) -> int:
     with compiling_told(report), report.progress(len(model.figures)) as begin:
         for figure in model.figures:
             begin(figure.name)
-            job, problems = plan(model, figure.name, resolution=100.0, measures=True)
+            job, problems = plan(model, figure.name, KeptMeshes(), resolution=100.0, measures=True)
             if job is None:
                 raise AssertionError(f"the warm-up scene does not draw: {problems}")
             sheet.draw(job, ("png",))
