@@ -31,7 +31,6 @@ CODES: Mapping[str, str] = MappingProxyType(
         "foreign-operator": "an operator of another notation",
         "chained-comparison": "a comparison is compared again",
         "broken-value": "a value is not complete, or has something in it that does not fit",
-        "lonely-text": "a text stands on a line of its own under a line that takes none",
         # --- words
         "unknown-word": "a word that the vocabulary does not know at this place",
         "misplaced-word": "a word of the vocabulary that may not stand at this place",
@@ -40,6 +39,7 @@ CODES: Mapping[str, str] = MappingProxyType(
         "wrong-form": "a value is not of the form that its place takes",
         "no-lines-here": "lines are indented under a line that takes none",
         "reserved-name": "a declared name that the language keeps for itself",
+        "said-twice": "what may be said once of a thing is said again",
         "version": "the version of the language is stated twice, late, or is unknown",
         "not-drawn-yet": "a word of the language whose work is not built yet",
     }

@@ -8,7 +8,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from types import MappingProxyType
 
-from .items import Equation, Item, Place, Series, expression_of, path_of, setting_of
+from .items import Equation, Item, Place, Series, expression_of, path_of, plain_name, setting_of
 from .scanner import RESERVED, Slip
 from .tree import (
     Call,
@@ -77,7 +77,25 @@ def value_of(place: Place, kind: str, item: Item) -> Value | None:
     node = expression_of(place, item)
     if node is None:
         return None
+    if kind == "thing":
+        _check_thing(node)
     return node if fits(kind, node) else None
+
+
+def _check_thing(node: Expression) -> None:
+    """Raises Slip for a shape's word where a part is named: its parenthesis touches, or it is out of place."""
+    path = node.path if isinstance(node, Call) else node
+    name = plain_name(path)
+    if name not in SHAPE_WORDS:
+        return
+    start = path.span.column - 1
+    end = path.span.end_column - 1
+    if isinstance(node, Call):
+        sentence = f"the parenthesis behind the word `{name}` does not touch it"
+        raise Slip("call-space", start, end + 1, sentence, f"write `{name} (`")
+    raise Slip(
+        "misplaced-word", start, end, f"`{name}` is a shape, and here the name of a part is expected", "make it a part"
+    )
 
 
 def fits(kind: str, node: Expression) -> bool:
@@ -117,7 +135,7 @@ def check_name(name: str, start: int, end: int) -> None:
 
 
 def signature_of(place: Place, item: Item) -> tuple[Name, tuple[Parameter, ...] | None] | None:
-    """The name an item declares, and its parameters where it has parentheses. Raises Slip for a parameter that is none."""
+    """The name an item declares, and its parameters where it has parentheses. Raises Slip for one that is none."""
     if item.node is None:
         name = new_name(place, item)
         return None if name is None else (name, None)

@@ -119,6 +119,7 @@ class Matcher:
         return at
 
     def compound(self, element: Element, at: int, values: list[tuple[str, Value]]) -> int:
+        """What may be left out, alternatives, equations."""
         if isinstance(element, Optional):
             first = element.elements[0]
             if at >= self.n_items or not self.may_start(first, self.items[at]):
@@ -145,6 +146,7 @@ class Matcher:
         return item.word not in self.words.clauses[self.pattern.row.clauses].by_word
 
     def slot(self, slot: Slot, at: int, values: list[tuple[str, Value]]) -> int:
+        """One value by the kind of its slot."""
         if at >= self.n_items:
             return self.miss(at, slot)
         item = self.items[at]
@@ -186,6 +188,7 @@ class Matcher:
         return self.miss(at, slot)
 
     def equals(self, element: Equals, at: int, values: list[tuple[str, Value]]) -> int:
+        """An equation, or its left side alone where that will do."""
         if at >= self.n_items:
             return self.miss(at, element)
         item = self.items[at]
@@ -210,6 +213,7 @@ class Matcher:
         return at + 1
 
     def miss(self, at: int, element: Element) -> int:
+        """Notes what was wanted at an item that did not fit; always -1."""
         if self.account is not None and self.account.move(at, self.pattern):
             self.account.elements.append(element)
         return -1

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 
+from .items import Equation, Item, Series, plain_name
 from .layout import RawLine, slip_problem
 from .matcher import Account, Matcher
 from .nearest import nearest
@@ -11,37 +12,36 @@ from .patterns import Element, Equals, Literal, Pattern, Slot, Starts, Vocabular
 from .problems import Problem, Severity
 from .scanner import Piece, Slip
 from .source import Span
-from .tree import Binary, Call, Expression, Path
-from .values import Item, sign_slip, unit_slip
+from .tree import Binary, Call, Path
+from .values import sign_slip, unit_slip
 from .words import KINDS, PLACES, SHAPE_WORDS
 
 
-def explain(raw: RawLine, starts: Starts, context: str, words: Vocabulary) -> Problem:
+def explain(raw: RawLine, starts: Starts, words: Vocabulary) -> Problem:
     """The problem of a line that no row which may start there can read to its end."""
     account = Account()
     matcher = Matcher(raw, words, account)
     found = matcher.start(starts, 0)
     if found is not None:
         matcher.clauses(found[2], found[1], [])
-    return _Explanation(raw, account, words, context).problem()
+    return _Explanation(raw, account, words).problem()
 
 
 def explain_clauses(raw: RawLine, pattern: Pattern, words: Vocabulary) -> Problem:
     """The problem of an indented line that is not made of clauses of the line above."""
     account = Account()
     Matcher(raw, words, account).clauses(pattern, 0, [])
-    return _Explanation(raw, account, words, "").problem()
+    return _Explanation(raw, account, words).problem()
 
 
 class _Explanation:
     """What is known about one mismatch: the furthest item that did not fit, and what could have stood there."""
 
-    def __init__(self, raw: RawLine, account: Account, words: Vocabulary, context: str) -> None:
+    def __init__(self, raw: RawLine, account: Account, words: Vocabulary) -> None:
         self.raw = raw
         self.words = words
-        self.context = context
-        self.at = max(account.at, 0)
         self.account = account
+        self.at = max(account.at, 0)
         self.item = raw.items[self.at] if self.at < len(raw.items) else None
         self.before = raw.items[self.at - 1] if self.at else None
         self.known = self.expected_words()
@@ -54,147 +54,182 @@ class _Explanation:
                 known.append(element.text)
             elif isinstance(element, Slot):
                 known.extend(option[0] for option in element.options)
-                if element.kind == "shape":
-                    known.extend(SHAPE_WORDS)
         for starts in self.account.starts:
             known.extend(starts.by_word)
+        if any(isinstance(element, Slot) and element.kind == "shape" for element in self.account.elements):
+            known.extend(sorted(SHAPE_WORDS))
         return list(dict.fromkeys(known))
 
     def problem(self) -> Problem:
-        slip = self.slip()
+        """The one problem that says it best."""
+        slip = self.touching() or self.swallowed_word() or self.misspelt_shape()
         if slip is not None:
             return slip_problem(self.raw.place, slip)
         if self.item is None:
             return self.missing()
-        if self.item.word:
-            return self.wrong_word(self.item)
-        return self.wrong_value(self.item)
+        return self.wrong_word(self.item) if self.item.word else self.wrong_value(self.item)
 
-    def make(self, code: str, span: Span, sentence: str, hint: str = "") -> Problem:
-        return Problem(code, Severity.ERROR, span, sentence, hint)
+    # --- mistakes that the neighbours show
 
-    # --- mistakes of touching, which the items show
-
-    def slip(self) -> Slip | None:
-        item = self.item
+    def touching(self) -> Slip | None:
+        """A parenthesis, a sign or a unit that touches what it should not, or does not touch what it should."""
+        item, before, text = self.item, self.before, self.raw.text
         if item is None:
             return None
-        text = self.raw.text
         if isinstance(item.node, Call) and item.node.path.dotted in self.known:
             word = item.node.path.dotted
-            return Slip(
-                "call-space",
-                item.start,
-                item.start + len(word) + 1,
-                f"the parenthesis behind the word `{word}` does not touch it",
-                f"write `{word} (`",
-            )
+            sentence = f"the parenthesis behind the word `{word}` does not touch it"
+            return Slip("call-space", item.start, item.start + len(word) + 1, sentence, f"write `{word} (`")
+        behind = self.raw.items[self.at + 1] if self.at + 1 < len(self.raw.items) else None
+        if self.wants_setting() and item.word and behind is not None and behind.kind == "OPEN":
+            sentence = "the parenthesis of a function's parameters touches its name"
+            return Slip("call-space", item.end, behind.start + 1, sentence, f"write `{item.word}(`")
         leftmost = _leftmost(item.node)
-        if isinstance(item.node, Binary) and isinstance(leftmost, Path) and leftmost.dotted in self.known:
-            start = leftmost.span.end_column
-            if item.node.operator == "-":
-                return Slip("sign-space", start, start + 1, "a sign touches its value", "write `-` close to the value")
-        if self.before is None:
+        if isinstance(item.node, Binary) and leftmost is not None and leftmost.dotted in self.known:
+            start = text.find(item.node.operator, leftmost.span.end_column - 1)
+            sentence = f"`{leftmost.dotted}` is a word here, and a sign touches its value"
+            hint = f"write `{item.node.operator}` close to the value behind it"
+            return Slip("sign-space", start, start + 1, sentence, hint)
+        if before is None:
             return None
-        is_sign = text[item.start : item.start + 1] == "-"
-        if is_sign and (self.account.is_leftover or not self.before.word):
+        wants_words = all(isinstance(element, Literal) for element in self.account.elements)
+        if text[item.start : item.start + 1] == "-" and (wants_words or not before.word):
             return sign_slip(item.start)
-        if item.kind == "OPEN" and item.start == self.before.end + 1 and self.account.is_leftover and self.before.word:
-            if self.before.word not in self.known:
-                return Slip(
-                    "call-space",
-                    self.before.end,
-                    item.start + 1,
-                    "the parenthesis of a call touches its name",
-                    f"write `{self.before.word}(`",
-                )
-        if item.word and self.before.kind == "NUMBER" and not nearest(item.word, self.known):
-            if item.word not in self.words.homes:
-                return unit_slip(text, Piece("NUMBER", self.before.start, self.before.end), item.start, item.end)
+        is_open = item.kind == "OPEN" and item.start > before.end
+        if is_open and before.word and before.word not in self.known and self.account.is_leftover:
+            sentence = "the parenthesis of a call touches its name"
+            return Slip("call-space", before.end, item.start + 1, sentence, f"write `{before.word}(`")
+        is_word = bool(item.word) and item.word not in self.words.homes and not nearest(item.word, self.known)
+        if is_word and before.kind == "NUMBER":
+            return unit_slip(text, Piece("NUMBER", before.start, before.end), item.start, item.end)
         return None
+
+    def swallowed_word(self) -> Slip | None:
+        """A word taken for a value, because the value before it was left out: `diameter length 4 mm`."""
+        before = self.before
+        if before is None or not before.word or self.at < 2 or (self.item is not None and self.item.word):
+            return None
+        if before.word not in self.known:
+            return None
+        behind = self.raw.items[self.at - 2]
+        shown = self.raw.text[behind.start : behind.end]
+        if not behind.word:
+            return None
+        sentence = f"expected a value behind `{shown}`, found the word `{before.word}`"
+        return Slip("missing-value", behind.end, behind.end, sentence, self.example())
+
+    def misspelt_shape(self) -> Slip | None:
+        """A shape with a slip in it is read as a part, and what follows does not fit a part."""
+        before, item = self.before, self.item
+        if before is None or not before.word or item is None or not self.account.is_leftover:
+            return None
+        near = nearest(before.word, SHAPE_WORDS)
+        first = self.raw.items[self.at - 2].word if self.at >= 2 else ""
+        if not near or first not in ("add", "cut", "keep", ""):
+            return None
+        sentence = f"`{before.word}` is no shape, and a part takes nothing like what follows it"
+        return Slip("unknown-word", before.start, before.end, sentence, f"did you mean `{near}`?")
 
     # --- words and values
 
     def missing(self) -> Problem:
         """The line ends where more is needed."""
-        wanted = _listed(self.wanted())
         span = self.raw.place.span(self.raw.end, self.raw.end)
-        return self.make("missing-value", span, f"expected {wanted} behind {self.shown_before()}", self.example())
-
-    def shown_before(self) -> str:
-        if self.before is None:
-            return "this"
-        return f"`{self.raw.text[self.before.start : self.before.end]}`"
-
-    def wanted(self) -> list[str]:
-        """What could have stood there, for people."""
-        wanted = [_describe(element) for element in self.account.elements]
-        if not wanted and self.account.starts:
-            wanted = ["a word of the language"]
-        return list(dict.fromkeys(wanted))
-
-    def example(self) -> str:
-        pattern = self.account.pattern
-        return f"for example `{pattern.row.example}`" if pattern is not None and pattern.row.example else ""
+        return self.make(
+            "missing-value", span, f"expected {self.wanted()} behind {self.shown_before()}", self.example()
+        )
 
     def wrong_word(self, item: Item) -> Problem:
+        """A word that the place does not know, or does not take."""
         span = self.raw.place.span(item.start, item.end)
+        if self.wants_setting():
+            place = self.raw.place.span(item.end, item.end)
+            return self.make("missing-value", place, f"expected `=` and a value behind `{item.word}`", self.example())
         near = nearest(item.word, self.known)
         if near and near != item.word:
-            return self.make(
-                "unknown-word", span, f"`{item.word}` is not a word that stands here", f"did you mean `{near}`?"
-            )
-        shape = self.misspelt_shape()
-        if shape is not None:
-            return shape
-        homes = self.words.homes.get(item.word)
+            sentence = f"`{item.word}` is not a word that stands here"
+            return self.make("unknown-word", span, sentence, f"did you mean `{near}`?")
         if self.account.elements and not self.account.is_leftover:
-            where = self.raw.place.span(self.before.end, self.before.end) if self.before else span
-            sentence = f"expected {_listed(self.wanted())} behind {self.shown_before()}, found `{item.word}`"
-            return self.make("missing-value", where, sentence, self.example())
+            sentence = f"expected {self.wanted()} behind {self.shown_before()}, found `{item.word}`"
+            return self.make("missing-value", self.gap(span), sentence, self.example())
+        homes = [PLACES[home] for home in self.words.homes.get(item.word, ())]
         if homes:
-            places = _listed([PLACES[home] for home in homes if home in PLACES], "and")
-            return self.make(
-                "misplaced-word", span, f"`{item.word}` may not stand here", f"it stands {places}" if places else ""
-            )
-        hint = f"here may stand: {', '.join(self.known[:12])}" if self.known else self.example()
-        sentence = f"`{item.word}` is not a word that stands here"
-        return self.make("unknown-word", span, sentence, hint)
-
-    def misspelt_shape(self) -> Problem | None:
-        """A part that nobody declared may be a shape with a slip in it: what follows does not fit a part."""
-        before = self.before
-        if before is None or not before.word or not self.account.is_leftover or self.at < 2:
-            return None
-        near = nearest(before.word, SHAPE_WORDS)
-        if not near or self.raw.items[self.at - 2].word not in ("add", "cut", "keep"):
-            return None
-        span = self.raw.place.span(before.start, before.end)
-        return self.make("unknown-word", span, f"`{before.word}` is not a shape", f"did you mean `{near}`?")
+            hint = f"it stands {_listed(dict.fromkeys(homes))}"
+            return self.make("misplaced-word", span, f"`{item.word}` may not stand here", hint)
+        everywhere = nearest(item.word, self.words.homes) if len(item.word) > 3 else ""
+        if everywhere:
+            homes = [PLACES[home] for home in self.words.homes[everywhere]]
+            hint = f"`{everywhere}` stands {_listed(dict.fromkeys(homes))}"
+        elif self.known:
+            hint = f"here may stand {_listed([f'`{word}`' for word in self.known[:12]])}"
+        else:
+            hint = self.example()
+        return self.make("unknown-word", span, f"`{item.word}` is not a word that stands here", hint)
 
     def wrong_value(self, item: Item) -> Problem:
-        assert item.node is not None
+        """A value where a word is wanted, of the wrong form, or one too many."""
         span = self.raw.place.span(item.start, item.end)
-        if item.node.span.line != self.raw.place.line:
+        if item.node is not None and item.node.span.line != self.raw.place.line:
             span = item.node.span
         shown = f"`{self.raw.text[item.start : item.end]}`" if item.end > item.start else "this text"
         if self.account.elements and not self.account.is_leftover:
-            wanted = _listed(self.wanted())
+            sentence = f"expected {self.wanted()}{self.behind()}, found {shown}"
             if all(isinstance(element, Literal) for element in self.account.elements):
-                where = self.raw.place.span(self.before.end, self.before.end) if self.before else span
-                return self.make(
-                    "missing-value",
-                    where,
-                    f"expected {wanted} behind {self.shown_before()}, found {shown}",
-                    self.example(),
-                )
-            return self.make("wrong-form", span, f"expected {wanted}, found {shown}", self.example())
+                return self.make("missing-value", self.gap(span), sentence, self.example())
+            return self.make("wrong-form", span, sentence, self.form_hint(item) or self.example())
         if self.before is None:
             return self.make("wrong-form", span, f"expected a word that starts a line, found {shown}")
         return self.make("value-too-many", span, f"nothing takes {shown} here", self.example())
 
+    def form_hint(self, item: Item) -> str:
+        """How to write a value whose form betrays what was meant."""
+        if isinstance(item.node, Equation):
+            return "equality is written `is`"
+        if not isinstance(item.node, Series):
+            return ""
+        last = plain_name(item.node.entries[-1])
+        if last in self.words.homes:
+            return f"no comma stands before the word `{last}`"
+        kinds = {element.kind for element in self.account.elements if isinstance(element, Slot)}
+        return "put the values in parentheses" if kinds & {"point", "point2", "vector", "direction"} else ""
 
-def _leftmost(node: object) -> Expression | None:
+    # --- parts of messages
+
+    def wants_setting(self) -> bool:
+        """Whether a setting is expected and nothing else."""
+        elements = self.account.elements
+        return bool(elements) and all(isinstance(element, Equals) for element in elements)
+
+    def make(self, code: str, span: Span, sentence: str, hint: str = "") -> Problem:
+        """An error."""
+        return Problem(code, Severity.ERROR, span, sentence, hint)
+
+    def gap(self, otherwise: Span) -> Span:
+        """The end of what stands before, where something is missing."""
+        return otherwise if self.before is None else self.raw.place.span(self.before.end, self.before.end)
+
+    def behind(self) -> str:
+        """Where the mistake is, for a sentence."""
+        return f" behind {self.shown_before()}" if self.before is not None else ""
+
+    def shown_before(self) -> str:
+        """What stands before, in quotes."""
+        if self.before is None:
+            return "this"
+        return f"`{self.raw.text[self.before.start : self.before.end]}`"
+
+    def wanted(self) -> str:
+        """What could have stood there, for people."""
+        wanted = [_describe(element) for element in self.account.elements]
+        return _listed(dict.fromkeys(wanted)) or "a word of the language"
+
+    def example(self) -> str:
+        """An example of the row that was being read."""
+        pattern = self.account.pattern
+        return f"for example `{pattern.row.example}`" if pattern is not None and pattern.row.example else ""
+
+
+def _leftmost(node: object) -> Path | None:
     while isinstance(node, Binary):
         node = node.left
     return node if isinstance(node, Path) else None
@@ -208,11 +243,11 @@ def _describe(element: Element) -> str:
             return _listed([f"`{' '.join(option)}`" for option in element.options])
         return KINDS[element.kind]
     assert isinstance(element, Equals)
-    return "`name = value`" if element.left.kind in ("new", "signature") else "a measure"
+    return "a setting, `name = value`" if element.left.kind in ("new", "signature") else "a measure and its value"
 
 
-def _listed(names: Iterable[str], word: str = "or") -> str:
+def _listed(names: Iterable[str]) -> str:
     known = list(names)
     if len(known) < 2:
         return "".join(known)
-    return f"{', '.join(known[:-1])} {word} {known[-1]}"
+    return f"{', '.join(known[:-1])} or {known[-1]}"

@@ -77,13 +77,15 @@ class Starts:
 class Vocabulary:
     """All rows by place. `clauses` joins the places of each set of clause contexts that some row names.
 
-    `homes` gives the places of each first word, `later` the keys of rows that are not drawn yet.
+    `homes` gives the places of each first word, `later` the keys of rows that are
+    not drawn yet, `once` of those that may be said once in one thing.
     """
 
     places: Mapping[str, Starts]
     clauses: Mapping[tuple[str, ...], Starts]
     homes: Mapping[str, tuple[str, ...]]
     later: frozenset[str]
+    once: frozenset[str]
 
 
 def parse_pattern(text: str) -> tuple[Element, ...]:
@@ -158,7 +160,9 @@ def vocabulary() -> Vocabulary:
         if pattern.words:
             first = pattern.words[0]
             homes[first] = tuple(dict.fromkeys((*homes.get(first, ()), *pattern.row.stands)))
-    return Vocabulary(places, clauses, homes, frozenset(row.key for row in ROWS if row.later))
+    later = frozenset(row.key for row in ROWS if row.later)
+    once = frozenset(row.key for row in ROWS if row.is_once)
+    return Vocabulary(places, clauses, homes, later, once)
 
 
 def _starts(patterns: list[Pattern], places: tuple[str, ...]) -> Starts:

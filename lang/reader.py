@@ -106,7 +106,21 @@ class _Scene:
             line = self.line(raw, starts, context)
             if line is not None:
                 read.append(line)
+        self.check_once([line.head for line in read])
         return tuple(read)
+
+    def check_once(self, readings: list[Reading]) -> None:
+        """Reports what is said again among the lines or clauses of one thing, though it may be said once."""
+        if len(readings) < 2:
+            return
+        said: dict[str, Reading] = {}
+        for reading in readings:
+            first = said.setdefault(reading.row, reading)
+            if first is not reading and reading.row in self.words.once:
+                sentence = f"`{reading.word}` is said twice"
+                related = (Related(first.word_span, "said here first"),)
+                hint = "keep one of the two"
+                self.problems.append(Problem("said-twice", Severity.ERROR, reading.word_span, sentence, hint, related))
 
     def line(self, raw: RawLine, starts: Starts, context: str) -> Line | None:
         if raw.lines:
@@ -121,7 +135,7 @@ class _Scene:
             if found is not None and matcher.clauses(found[2], found[1], clauses) < 0:
                 found = None
             if found is None:
-                self.problems.append(explain(raw, starts, context, self.words))
+                self.problems.append(explain(raw, starts, self.words))
         except Slip as slip:
             self.problems.append(slip_problem(raw.place, slip))
             found = None
@@ -146,10 +160,26 @@ class _Scene:
                 lines = self.lines(rest, pattern.row.lines)
             elif rest:
                 self.refuse(rest[0], pattern)
+        if pattern.row.key in ("add", "cut", "keep"):
+            self.check_shapes(raw, head, lines)
         self.is_later, self.figure = before
+        self.check_once(clauses)
         ends = [clause.span for clause in clauses[-1:]] + [line.span for line in lines[-1:]]
         span = functools.reduce(_wider, ends, head.span)
         return Line(head, tuple(clauses), lines, raw.note, span)
+
+    def check_shapes(self, raw: RawLine, head: Reading, lines: tuple[Line, ...]) -> None:
+        """A line of a part takes one shape, or shapes on the lines below; only an envelope takes both."""
+        shape = head.get("shape")
+        takes_lines = shape is None or (isinstance(shape, Reading) and shape.row == "envelope of")
+        if lines and not takes_lines:
+            sentence = f"`{head.word}` takes the shape on its own line or shapes on the lines below, not both"
+            self.problems.append(Problem("no-lines-here", Severity.ERROR, lines[0].span, sentence))
+        elif takes_lines and not raw.lines:
+            span = raw.place.span(head.span.end_column - 1, head.span.end_column - 1)
+            sentence = f"expected a shape behind `{head.word}`, or shapes on the lines below"
+            hint = f"for example `{head.word} cylinder diameter 20 mm length 8 mm`"
+            self.problems.append(Problem("missing-value", Severity.ERROR, span, sentence, hint))
 
     def declaration(self, head: Reading) -> None:
         name = head.get("name")

@@ -21,7 +21,7 @@ OPERATIONS_LIMIT = 100
 NUMBER_LENGTH_LIMIT = 40
 
 
-class Slip(Exception):  # noqa: N818 - never leaves this package: it carries a mistake from where it is seen to its line
+class Slip(Exception):
     """A mistake inside a line, with its place as 0-based columns of that line."""
 
     def __init__(self, code: str, start: int, end: int, sentence: str, hint: str = "", opened: int = -1) -> None:
@@ -112,6 +112,7 @@ _MEANT: Mapping[str, str] = MappingProxyType(
         "\u00a0": "a plain space",
         "µ": "um, for micrometres",
         "μ": "um, for micrometres",
+        ":": "=",
         ";": "a line of its own",
         "{": "braces only inside a text",
         "}": "braces only inside a text",
@@ -120,7 +121,6 @@ _MEANT: Mapping[str, str] = MappingProxyType(
 _OPERATORS_MEANT: Mapping[str, str] = MappingProxyType(
     {
         "**": "^",
-        "==": "is",
         "!=": "is not",
         "<>": "is not",
         "=>": ">=",
@@ -160,11 +160,10 @@ def split_items(text: str, start: int = 0) -> tuple[list[list[Piece]], int]:
             return items, begin
         elif kind not in _PLAIN:
             kind = _settle(text, kind, begin, end, previous, previous_end, opened)
-        if kind in _STARTS:
-            if not opened and previous in _ENDS:
-                item = []
-                items.append(item)
-                operations = 0
+        if kind in _STARTS and not opened and previous in _ENDS:
+            item = []
+            items.append(item)
+            operations = 0
         if kind in _OPERATIONS:
             operations += 1
         elif kind == "COMMA" and not opened:
@@ -325,8 +324,8 @@ def _check_dot(text: str, begin: int, end: int, previous: str, previous_end: int
 
 
 def _foreign(written: str, begin: int, end: int) -> Slip:
-    meant = _OPERATORS_MEANT[written]
-    return Slip("foreign-operator", begin, end, f"`{written}` is no operator here", f"write `{meant}`")
+    hint = "equality is `is`; one `=` sets or defines" if written == "==" else f"write `{_OPERATORS_MEANT[written]}`"
+    return Slip("foreign-operator", begin, end, f"`{written}` is no operator of this language", hint)
 
 
 def _junk(text: str, begin: int, end: int) -> Slip:
@@ -360,13 +359,15 @@ def _glued(text: str, begin: int, end: int, number: Piece) -> Slip:
         begin,
         end,
         f"`{written}` behind the number `{text[number.start : number.end]}` is no unit",
-        _unit_hint(written),
+        unit_hint(written),
     )
 
 
-def _unit_hint(written: str) -> str:
-    near = nearest(written, UNITS)
-    return f"did you mean the unit `{near}`?" if near else "a word stands apart from a number"
+def unit_hint(written: str) -> str:
+    """The unit that was meant, by its symbol or by its name."""
+    names = {unit.name: symbol for symbol, unit in UNITS.items()} | {"degree": "deg", "micron": "um", "feet": "ft"}
+    near = nearest(written, UNITS) or names.get(nearest(written, names), "")
+    return f"did you mean the unit `{near}`?" if near else ""
 
 
 def _count(text: str, kind: str, begin: int, end: int, opened: list[tuple[str, int]]) -> None:

@@ -1,18 +1,14 @@
-"""Items into tree nodes: literals and names at once, everything else through the grammar; and what is wrong with them."""
+"""Items into tree nodes: literals and names at once, everything else through the grammar, and what is wrong there."""
 
 from __future__ import annotations
-
-from typing import Any
 
 from lark import Lark, UnexpectedToken
 
 from .items import Item, Node, Place, expression_of, path_of
-from .nearest import nearest
 from .parser import Token
-from .scanner import LITERALS, QUANTITY_PARTS, Piece, Slip, split_items
+from .scanner import LITERALS, QUANTITY_PARTS, Piece, Slip, split_items, unit_hint
 from .source import Span
 from .tree import Date, Expression, Number, Ratio, Text, Truth
-from .units import UNITS
 
 
 def read_items(parser: Lark, place: Place, text: str, start: int) -> tuple[list[Item], int]:
@@ -210,11 +206,10 @@ def sign_slip(start: int) -> Slip:
 def unit_slip(text: str, number: Piece, start: int, end: int) -> Slip:
     """A word behind a bare number where a unit was meant."""
     written = text[start:end]
-    near = nearest(written, UNITS)
     return Slip(
         "unknown-unit",
         start,
         end,
         f"`{written}` behind the number `{text[number.start : number.end]}` is no unit",
-        f"did you mean `{near}`?" if near else "",
+        unit_hint(written),
     )
