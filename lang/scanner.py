@@ -54,7 +54,7 @@ TOKENS = re.compile(
     r"(?P<NAME>[A-Za-z_]\w*(?:\.[A-Za-z_]\w*)*)"
     r"|(?P<DATE>\d{4}-\d\d-\d\d(?!\w))"
     r"|(?P<RATIO>\d+(?:\.\d+)?:\d+(?:\.\d+)?(?!\w))"
-    rf"|(?P<QUANTITY>(?:\d+/\d+|{_DIGITS})(?: ?{_UNIT}|in(?![\w(])))"
+    rf"|(?P<QUANTITY>(?:\d+/\d+|{_DIGITS})(?: *{_UNIT}|in(?![\w(])))"
     rf"|(?P<NUMBER>{_DIGITS})"
     r'|(?P<TEXT>"(?:[^"\\]|\\.)*")'
     r"|(?P<COMMA>,)"
@@ -73,7 +73,7 @@ TOKENS = re.compile(
     r")",
     re.ASCII,
 )
-QUANTITY_PARTS = re.compile(rf"(\d+/\d+|{_DIGITS}) ?(.+)", re.ASCII)
+QUANTITY_PARTS = re.compile(rf"(\d+/\d+|{_DIGITS}) *(.+)", re.ASCII)
 
 RESERVED: Mapping[str, str] = MappingProxyType(
     {
