@@ -98,7 +98,8 @@ class _Explanation:
         is_open = item.kind == "OPEN" and item.start > before.end
         if is_open and before.word and before.word not in self.known and self.account.is_leftover:
             sentence = "the parenthesis of a call touches its name"
-            return Slip("call-space", before.end, item.start + 1, sentence, f"write `{before.word}(`")
+            place = f", or `{before.word} at (` for a place" if "at" in self.known else ""
+            return Slip("call-space", before.end, item.start + 1, sentence, f"write `{before.word}(`{place}")
         is_word = bool(item.word) and item.word not in self.words.homes and not nearest(item.word, self.known)
         if is_word and before.kind == "NUMBER":
             return unit_slip(text, Piece("NUMBER", before.start, before.end), item.start, item.end)
