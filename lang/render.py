@@ -23,10 +23,11 @@ def render_text(problems: Iterable[Problem], sources: Mapping[str, str]) -> str:
 
     `sources` maps the files that spans name to their texts; a file that is not there is named without an excerpt.
     """
-    return "\n".join(_one(problem, sources) for problem in problems)
+    lines = {file: text.removeprefix("\ufeff").split("\n") for file, text in sources.items()}
+    return "\n".join(_one(problem, lines) for problem in problems)
 
 
-def _one(problem: Problem, sources: Mapping[str, str]) -> str:
+def _one(problem: Problem, sources: Mapping[str, list[str]]) -> str:
     lines = [f"{_where(problem.span)}: {problem.severity}: {problem.sentence} [{problem.code}]"]
     lines += _excerpt(problem.span, sources)
     if problem.within:
@@ -43,13 +44,11 @@ def _where(span: Span) -> str:
     return f"{span.file}:{span.line}:{span.column}"
 
 
-def _excerpt(span: Span, sources: Mapping[str, str]) -> list[str]:
-    text = sources.get(span.file)
-    if text is None:
+def _excerpt(span: Span, sources: Mapping[str, list[str]]) -> list[str]:
+    text = sources.get(span.file, [])
+    if span.line > len(text):
         return []
-    line = _line(text.removeprefix("\ufeff"), span.line)
-    if line is None:
-        return []
+    line = text[span.line - 1].removesuffix("\r")
     end = span.end_column if span.end_line == span.line else len(line) + 1
     start = span.column - 1
     n_carets = max(1, min(end, len(line) + 1) - span.column)
@@ -61,20 +60,10 @@ def _excerpt(span: Span, sources: Mapping[str, str]) -> list[str]:
     return [f" {number} | {shown}", f" {gutter} | {' ' * (start - left)}{carets}"]
 
 
-def _line(text: str, number: int) -> str | None:
-    start = 0
-    for _ in range(number - 1):
-        start = text.find("\n", start) + 1
-        if start == 0:
-            return None
-    end = text.find("\n", start)
-    return text[start : len(text) if end < 0 else end].removesuffix("\r")
-
-
 def render_json(problems: Iterable[Problem]) -> str:
     """Problems as a JSON document: `{"schema": 1, "problems": [...]}`, lines and columns from 1, ends exclusive."""
     document = {"schema": JSON_SCHEMA_NUMBER, "problems": [_json(problem) for problem in problems]}
-    return json.dumps(document, indent=2, ensure_ascii=False) + "\n"
+    return json.dumps(document, indent=2) + "\n"
 
 
 def _json(problem: Problem) -> dict[str, Any]:
@@ -99,28 +88,31 @@ def _json_span(span: Span) -> dict[str, Any]:
     }
 
 
-def render_sarif(problems: Iterable[Problem], version: str, codes: Mapping[str, str] = CODES) -> str:
+def render_sarif(problems: Iterable[Problem], version: str = "", codes: Mapping[str, str] = CODES) -> str:
     """Problems as a SARIF 2.1.0 log (OASIS standard, 2020): one run, one result a problem, rules from the codes.
 
-    `version` is the version of platewright; `codes` gives each code its sentence. Columns count code points from 1.
+    `version` is the version of platewright, left out if empty; `codes` gives each code its sentence. Columns count code points from 1.
     """
     results = [_result(problem) for problem in problems]
     used = sorted({result["ruleId"] for result in results})
     for result in results:
         result["ruleIndex"] = used.index(result["ruleId"])
     rules = [{"id": code, "shortDescription": {"text": codes.get(code, code)}} for code in used]
+    driver: dict[str, Any] = {"name": "platewright", "rules": rules}
+    if version:
+        driver["version"] = version
     log = {
         "$schema": "https://docs.oasis-open.org/sarif/sarif/v2.1.0/errata01/os/schemas/sarif-schema-2.1.0.json",
         "version": "2.1.0",
         "runs": [
             {
-                "tool": {"driver": {"name": "platewright", "version": version, "rules": rules}},
+                "tool": {"driver": driver},
                 "columnKind": "unicodeCodePoints",
                 "results": results,
             }
         ],
     }
-    return json.dumps(log, indent=2, ensure_ascii=False) + "\n"
+    return json.dumps(log, indent=2) + "\n"
 
 
 def _result(problem: Problem) -> dict[str, Any]:
@@ -156,4 +148,6 @@ def _location(span: Span) -> dict[str, Any]:
 def _uri(file: str) -> str:
     """A relative path as a URI reference (RFC 3986): what is not unreserved or a slash is percent-encoded."""
     safe = frozenset(b"ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz0123456789-._~/")
-    return "".join(chr(byte) if byte in safe else f"%{byte:02X}" for byte in file.replace("\\", "/").encode())
+    return "".join(
+        chr(byte) if byte in safe else f"%{byte:02X}" for byte in file.replace("\\", "/").encode(errors="replace")
+    )
