@@ -10,14 +10,13 @@ import shlex
 import signal
 import subprocess
 import sys
-import time
 from pathlib import Path
 
 import pytest
 from platewright.compiler import scene
-from platewright.compiler.driver import files
 from platewright.compiler.driver.cli import main
 from platewright.compiler.driver.report import Report, wants_colour
+from platewright.compiler.limits import FILE_BYTES
 
 DRUM = """\
 platewright 1
@@ -121,7 +120,8 @@ def test_set_reaches_the_model_as_a_variant_does(drum: Path, tmp_path: Path) -> 
 
 def test_a_setting_out_of_range_writes_nothing(drum: Path, capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["draw", str(drum), "--set", "flange=300 mm"]) == 1
-    assert "120 mm" in capsys.readouterr().err
+    err = capsys.readouterr().err
+    assert "120 mm" in err and " 1 | 300 mm\n" in err
     assert files_below(drum.parent) == ["drum.plate"]
 
 
@@ -319,8 +319,9 @@ def test_export_writes_the_kind_of_the_suffix(
 
 
 def test_export_of_an_unknown_path_writes_nothing(drum: Path, capsys: pytest.CaptureFixture[str]) -> None:
-    assert main(["export", str(drum), "--of", "drum.ild", "--to", str(drum.with_name("a.stl"))]) in (1, 2)
-    assert "drum.lid" in capsys.readouterr().err
+    assert main(["export", str(drum), "--of", "drum.ild", "--to", str(drum.with_name("a.stl"))]) == 1
+    err = capsys.readouterr().err
+    assert "did you mean `lid`?" in err and " 1 | drum.ild\n   |      ^^^\n" in err
     assert files_below(drum.parent) == ["drum.plate"]
 
 
@@ -343,23 +344,27 @@ def test_a_see_may_not_follow_a_link_out_of_the_project(tmp_path: Path, capsys: 
     assert main(["check", str(path), "--project", str(tmp_path)]) == 0
 
 
-@pytest.mark.parametrize("n_nested", [50, 10_000])
-@pytest.mark.parametrize("closed", [True, False])
-def test_nested_parentheses(tmp_path: Path, n_nested: int, closed: bool, capsys: pytest.CaptureFixture[str]) -> None:
-    value = "(" * n_nested + "4 mm" + ")" * (n_nested if closed else 0)
+@pytest.mark.parametrize(
+    ("n_open", "n_closed", "wanted"), [(10, 10, 0), (10_000, 10_000, 1), (10_000, 0, 1), (0, 10_000, 1)]
+)
+def test_nested_parentheses(
+    tmp_path: Path, n_open: int, n_closed: int, wanted: int, capsys: pytest.CaptureFixture[str]
+) -> None:
     path = tmp_path / "deep.plate"
+    value = f"{'(' * n_open}4 mm{')' * n_closed}"
     path.write_text(f"platewright 1\n\npart knob\n    add sphere diameter {value}\n", encoding="utf-8")
-    code = main(["check", str(path)])
+    assert main(["check", str(path)]) == wanted
     err = capsys.readouterr().err
-    assert code == 1 and "deep.plate:4:" in err and "Traceback" not in err
+    assert err.count("error") == wanted
+    assert ("deep.plate:4:" in err) == bool(wanted)
 
 
 def test_a_scene_over_the_limit_and_an_endless_device(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     path = tmp_path / "large.plate"
     with open(path, "wb") as file:
-        file.truncate(files.FILE_BYTES + 1)
+        file.truncate(FILE_BYTES + 1)
     assert main(["check", str(path)]) == 1
-    assert f"{files.FILE_BYTES:,}" in capsys.readouterr().err
+    assert f"{FILE_BYTES:,}" in capsys.readouterr().err
     assert main(["check", "/dev/zero"]) == 1
     assert "not a file" in capsys.readouterr().err
 

@@ -7,7 +7,9 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Literal
 
-from platewright.lang.problems import Problem, is_error
+from platewright.compiler.limits import FILE_BYTES
+from platewright.lang.problems import Problem, Severity, is_error
+from platewright.lang.source import Span
 
 from . import files, names, session
 from .crash import Trace
@@ -26,7 +28,7 @@ EXPORTS = ("csv", "stl", "ply", "obj", "glb")
 _NOT_READ = {
     "missing": "there is no such file",
     "not a file": "it is not a regular file",
-    "too large": f"it is over the limit of {files.FILE_BYTES} bytes",
+    "too large": f"it is over the limit of {FILE_BYTES:,} bytes",
     "unreadable": "it cannot be read",
     "outside": "it lies outside the project folder",
 }
@@ -96,9 +98,11 @@ def _dump(project: Project, model: Model, stage: Stage, mesher: KeptMeshes, trac
 
 
 def _for_machines(problems: Sequence[Problem], form: Literal["json", "sarif"]) -> str:
+    from importlib.metadata import version
+
     from platewright.lang.render import render_json, render_sarif
 
-    return render_json(problems) if form == "json" else render_sarif(problems)
+    return render_json(problems) if form == "json" else render_sarif(problems, version("platewright"))
 
 
 def reformat(scenes: Iterable[Path], is_check: bool, trace: Trace, report: Report) -> int:
@@ -122,8 +126,10 @@ def _reformat_one(scene: Path, is_check: bool, trace: Trace, report: Report) -> 
     trace.sources[scene.name] = content
     trace.copies[str(scene)] = scene.name
     trace.stage = f"formatting {scene}"
-    text = content.decode("utf-8", "surrogateescape")
-    formatted, problems = format_text(str(scene), text)
+    text = content.decode("utf-8", "replace")
+    formatted, problems = (
+        format_text(str(scene), text) if text.encode() == content else (None, (_not_utf8(scene, content),))
+    )
     report.problems(problems, {str(scene): text})
     if formatted is None:
         return True
@@ -133,6 +139,12 @@ def _reformat_one(scene: Path, is_check: bool, trace: Trace, report: Report) -> 
         _write({real: formatted.encode()})
     report.result(str(scene))
     return is_check
+
+
+def _not_utf8(scene: Path, content: bytes) -> Problem:
+    line = len(content.decode("utf-8", "replace").partition("\ufffd")[0].split("\n"))
+    span = Span(str(scene), line, 1, line, 1)
+    return Problem("not-utf-8", Severity.ERROR, span, "this file is not UTF-8", "save the file as UTF-8")
 
 
 @dataclass(frozen=True, slots=True)
@@ -167,7 +179,7 @@ def export(wanted: ExportWanted, trace: Trace, report: Report) -> int:
         findings.add(problems, variant)
         if model is not None:
             content = _exported(model, wanted, kind, trace, findings)
-    report.problems(findings.worded(), session.texts(project, trace))
+    report.problems(findings.worded(), session.texts(project, trace, wanted.settings) | {"--of": wanted.path})
     if content is None:
         return 1
     _write(content)

@@ -66,7 +66,7 @@ def draw(wanted: Wanted, trace: Trace, report: Report) -> int:
     trace.beside, trace.overrides = out.absolute().parent, ("--out", "figures")
     findings = Findings()
     project = session.open_project(wanted.scene, wanted.project, trace, findings)
-    run = _Run(wanted, out, trace, report, findings, session.texts(project, trace))
+    run = _Run(wanted, out, trace, report, findings, session.texts(project, trace, wanted.settings))
     run.show_news()
     if project is None:
         return 1

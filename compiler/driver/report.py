@@ -40,6 +40,7 @@ class Report:
         self._is_coloured, self._is_watched = is_coloured, is_watched
         self._bar: _Bar | None = None
         self._said: set[str] = set()
+        self._has_problems = False
 
     def result(self, line: str) -> None:
         """One line of result."""
@@ -60,11 +61,12 @@ class Report:
             self.message(line)
 
     def problems(self, problems: Sequence[Problem], texts: Mapping[str, str]) -> None:
-        """Problems as text with the lines they are in."""
+        """Problems as text with the lines they are in, an empty line between any two."""
         if problems:
             from platewright.lang.render import render_text
 
-            text = render_text(problems, texts)
+            text = ("\n" if self._has_problems else "") + render_text(problems, texts)
+            self._has_problems = True
             self._write(self._err, _coloured(text) if self._is_coloured else text)
 
     def _write(self, stream: TextIO, text: str) -> None:

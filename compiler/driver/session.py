@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
-from collections.abc import Iterable, Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -94,10 +94,11 @@ def loader(place: Place, trace: crash.Trace) -> Loader:
     return load
 
 
-def texts(project: Project | None, trace: crash.Trace) -> Mapping[str, str]:
-    """The text of every file read, for showing lines; a file that is not UTF-8 with marks where it is not."""
+def texts(project: Project | None, trace: crash.Trace, settings: Iterable[Setting] = ()) -> dict[str, str]:
+    """Every text that a problem may point into: files, with marks where one is not UTF-8, and values of `--set`."""
     read = {name: content.decode("utf-8", "replace") for name, content in trace.sources.items()}
-    return read if project is None else read | dict(project.texts)
+    given = {f"--set {name}": value for name, value in settings}
+    return read | (dict(project.texts) if project is not None else {}) | given
 
 
 def open_project(arguments_scene: Path, folder: Path | None, trace: crash.Trace, findings: Findings) -> Project | None:
