@@ -11,14 +11,13 @@ from platewright.compiler.limits import FILE_BYTES
 from platewright.lang.problems import Problem, Severity, is_error
 from platewright.lang.source import Span
 
-from . import files, names, session
+from . import files
 from .crash import Trace
-from .meshes import KeptMeshes
 from .report import Report
-from .session import Findings, OutputError, UsageError
+from .session import OutputError, Session, UsageError, chosen_variants, open_session, title
 
 if TYPE_CHECKING:
-    from platewright.compiler.scene import Model, Project, Setting, Variant
+    from platewright.compiler.scene import Model, Setting, Variant
 
 Stage = Literal["tree", "graph", "triangles"]
 STAGES: tuple[Stage, ...] = ("tree", "graph", "triangles")
@@ -48,52 +47,45 @@ def check(
     Writes problems as text to the messages, in another form to the results; a dump goes to the results. The exit
     code: 1 with any error, else 0.
     """
-    findings, mesher = Findings(), KeptMeshes()
-    project = session.open_project(scene, project_folder, trace, findings)
-    dumped = ""
-    if project is not None:
-        findings.add(names.problems(project.variants, "variant"))
-        for variant in (None, *project.variants):
-            model = _check_variant(project, variant, figures, mesher, trace, findings)
-            if variant is None and model is not None and stage is not None:
-                dumped = _dump(project, model, stage, mesher, trace, findings)
-    problems = findings.worded()
-    texts = session.texts(project, trace)
+    session = open_session(scene, project_folder, trace)
+    model = _check_variant(session, None, figures)
+    for variant in session.project.variants if session.project is not None and model is not None else ():
+        _check_variant(session, variant, figures)
+    dumped = _dump(session, model, stage) if model is not None and stage is not None else ""
+    problems = session.findings.worded()
     if form == "text":
-        report.problems(problems, texts)
+        report.problems(problems, session.texts())
     else:
         report.document(_for_machines(problems, form))
     if dumped:
         report.document(dumped)
-    return 1 if findings.has_errors else 0
+    return 1 if session.findings.has_errors else 0
 
 
-def _check_variant(
-    project: Project, variant: Variant | None, figures: bool, mesher: KeptMeshes, trace: Trace, findings: Findings
-) -> Model | None:
+def _check_variant(session: Session, variant: Variant | None, figures: bool) -> Model | None:
     from platewright.compiler.scene import judge, plan
 
-    model, problems = session.build_model(project, variant, (), trace)
-    findings.add(problems, variant)
+    model = session.build(variant)
     if model is None:
         return None
-    findings.add(names.problems(model.figures, "figure"), variant)
-    trace.stage = f"judging {session.title(variant)}"
-    findings.add(judge(model, mesher), variant)
-    bad = {problem.within for problem in problems if is_error(problem)}
+    session.trace.stage = f"judging {title(variant)}"
+    session.findings.add(judge(model, session.mesher), variant)
+    bad = session.bad_figures(model)
     for figure in model.figures if figures else ():
         if figure.name not in bad:
-            trace.stage = f"laying out figure {figure.name} of {session.title(variant)}"
-            findings.add(plan(model, figure.name, mesher)[1], variant)
+            session.trace.stage = f"laying out figure {figure.name} of {title(variant)}"
+            session.findings.add(plan(model, figure.name, session.mesher)[1], variant)
     return model
 
 
-def _dump(project: Project, model: Model, stage: Stage, mesher: KeptMeshes, trace: Trace, findings: Findings) -> str:
+def _dump(session: Session, model: Model, stage: Stage) -> str:
     from platewright.compiler.scene import dump
 
-    trace.stage = f"dumping the {stage}"
-    dumped, problems = dump(project, model, stage, mesher)
-    findings.add(problems)
+    if session.project is None:
+        return ""
+    session.trace.stage = f"dumping the {stage}"
+    dumped, problems = dump(session.project, model, stage, session.mesher)
+    session.findings.add(problems)
     return dumped
 
 
@@ -169,17 +161,13 @@ def export(wanted: ExportWanted, trace: Trace, report: Report) -> int:
     if kind not in EXPORTS:
         raise UsageError(f"cannot tell what kind of file {wanted.to} is to be; give it one of .{', .'.join(EXPORTS)}")
     trace.beside, trace.overrides = wanted.to.absolute().parent, ("--to", wanted.to.name)
-    findings = Findings()
+    session = open_session(wanted.scene, wanted.project, trace)
     content: dict[Path, bytes] | None = None
-    project = session.open_project(wanted.scene, wanted.project, trace, findings)
-    if project is not None:
-        names_given = () if wanted.variant is None else (wanted.variant,)
-        (variant,) = session.chosen_variants(project, names_given, False)
-        model, problems = session.build_model(project, variant, wanted.settings, trace)
-        findings.add(problems, variant)
-        if model is not None:
-            content = _exported(model, wanted, kind, trace, findings)
-    report.problems(findings.worded(), session.texts(project, trace, wanted.settings) | {"--of": wanted.path})
+    if session.project is not None:
+        (variant,) = chosen_variants(session.project, () if wanted.variant is None else (wanted.variant,), False)
+        model = session.build(variant, wanted.settings)
+        content = None if model is None else _exported(model, wanted, kind, session)
+    report.problems(session.findings.worded(), session.texts(wanted.settings) | {"--of": wanted.path})
     if content is None:
         return 1
     _write(content)
@@ -188,15 +176,13 @@ def export(wanted: ExportWanted, trace: Trace, report: Report) -> int:
     return 0
 
 
-def _exported(
-    model: Model, wanted: ExportWanted, kind: str, trace: Trace, findings: Findings
-) -> dict[Path, bytes] | None:
+def _exported(model: Model, wanted: ExportWanted, kind: str, session: Session) -> dict[Path, bytes] | None:
     from platewright.backend.write import exports
     from platewright.compiler.scene import geometry
 
-    trace.stage = f"exporting {wanted.path}"
-    exported, problems = geometry(model, wanted.path, KeptMeshes(), wanted.tolerance)
-    findings.add(problems)
+    session.trace.stage = f"exporting {wanted.path}"
+    exported, problems = geometry(model, wanted.path, session.mesher, wanted.tolerance)
+    session.findings.add(problems)
     if exported is None or any(map(is_error, problems)):
         return None
     written = exports.export(exported.geometry, exported.materials, kind, exported.nodes, wanted.to.stem)
@@ -208,22 +194,18 @@ def show_list(scene: Path, project_folder: Path | None, is_json: bool, trace: Tr
     """List what a scene holds: parameters, parts with sizes, figures, variants. The exit code, 1 on errors."""
     from . import contents
 
-    findings = Findings()
-    project = session.open_project(scene, project_folder, trace, findings)
-    listed = None
-    if project is not None:
-        model, problems = session.build_model(project, None, (), trace)
-        findings.add(problems)
-        if model is not None:
-            from platewright.compiler.scene import listing
+    session = open_session(scene, project_folder, trace)
+    model, listed = session.build(), None
+    if model is not None and session.project is not None:
+        from platewright.compiler.scene import listing
 
-            trace.stage = "listing the scene"
-            listed, problems = listing(model, project, KeptMeshes())
-            findings.add(problems)
-    report.problems(findings.worded(), session.texts(project, trace))
+        trace.stage = "listing the scene"
+        listed, problems = listing(model, session.project, session.mesher)
+        session.findings.add(problems)
+    report.problems(session.findings.worded(), session.texts())
     if listed is not None:
         report.document(contents.as_json(listed) if is_json else contents.as_text(listed))
-    return 1 if findings.has_errors else 0
+    return 1 if session.findings.has_errors else 0
 
 
 def _write(content: dict[Path, bytes]) -> None:

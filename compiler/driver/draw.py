@@ -9,14 +9,13 @@ from typing import TYPE_CHECKING
 
 from platewright.lang.problems import is_error
 
-from . import files, names, session, warm
+from . import files, warm
 from .crash import Trace
-from .meshes import KeptMeshes
 from .report import Report
-from .session import Findings
+from .session import Session, chosen_figures, chosen_variants, open_session, title
 
 if TYPE_CHECKING:
-    from platewright.compiler.scene import Model, Project, Setting, Variant
+    from platewright.compiler.scene import Model, Setting, Variant
 
 KINDS = ("png", "tiff")
 """Kinds of file that a figure can be drawn to."""
@@ -42,19 +41,16 @@ class Wanted:
 class _Run:
     wanted: Wanted
     out: Path
-    trace: Trace
+    session: Session
     report: Report
-    findings: Findings
-    texts: Mapping[str, str]
-    mesher: KeptMeshes = field(default_factory=KeptMeshes)
     failed: list[str] = field(default_factory=list)
     n_shown: int = 0
 
     def show_news(self) -> None:
         """Print the problems that have come since the last time."""
-        worded = self.findings.worded()
-        self.report.problems(worded[self.n_shown :], self.texts)
-        self.n_shown = len(worded)
+        findings = self.session.findings
+        self.report.problems(findings.worded(self.n_shown), self.session.texts(self.wanted.settings))
+        self.n_shown = len(findings.found)
 
 
 def draw(wanted: Wanted, trace: Trace, report: Report) -> int:
@@ -64,43 +60,33 @@ def draw(wanted: Wanted, trace: Trace, report: Report) -> int:
     """
     out = wanted.out if wanted.out is not None else wanted.scene.parent / "figures"
     trace.beside, trace.overrides = out.absolute().parent, ("--out", "figures")
-    findings = Findings()
-    project = session.open_project(wanted.scene, wanted.project, trace, findings)
-    run = _Run(wanted, out, trace, report, findings, session.texts(project, trace, wanted.settings))
-    run.show_news()
-    if project is None:
+    session = open_session(wanted.scene, wanted.project, trace)
+    run = _Run(wanted, out, session, report)
+    if session.project is None:
+        run.show_news()
         return 1
-    figures = session.chosen_figures(project, wanted.figures)
-    variants = session.chosen_variants(project, wanted.variants, wanted.all_variants)
-    findings.add(names.problems([variant for variant in variants if variant is not None], "variant"))
-    run.show_news()
-    if findings.has_errors:
-        return 1
+    figures = chosen_figures(session.project, wanted.figures)
+    variants = chosen_variants(session.project, wanted.variants, wanted.all_variants)
     with report.progress(max(1, len(figures)) * len(variants)) as begin:
         for variant in variants:
-            _draw_variant(project, variant, figures, run, begin)
+            _draw_variant(variant, figures, run, begin)
     if run.failed:
         report.message(f"not written: {', '.join(run.failed)}")
-    return 1 if run.failed or findings.has_errors else 0
+    return 1 if run.failed or session.findings.has_errors else 0
 
 
-def _draw_variant(
-    project: Project, variant: Variant | None, figures: tuple[str, ...], run: _Run, begin: Callable[[str], None]
-) -> None:
+def _draw_variant(variant: Variant | None, figures: tuple[str, ...], run: _Run, begin: Callable[[str], None]) -> None:
     """All figures of one variant. A problem that concerns all of it keeps every figure from being written."""
-    model, problems = session.build_model(project, variant, run.wanted.settings, run.trace)
-    if model is not None:
-        problems = (*problems, *names.problems(model.figures, "figure"))
-    run.findings.add(problems, variant)
+    model = run.session.build(variant, run.wanted.settings)
     run.show_news()
-    if model is None or any(is_error(problem) and not problem.within for problem in problems):
-        run.failed.append(session.title(variant))
+    if model is None:
+        run.failed.append(title(variant))
         return
-    bad = {problem.within for problem in problems if is_error(problem)}
+    bad = run.session.bad_figures(model)
     for figure in figures or [figure.name for figure in model.figures]:
         unit = figure if variant is None else f"{variant.name}/{figure}"
         begin(unit)
-        run.trace.stage = f"drawing {unit}"
+        run.session.trace.stage = f"drawing {unit}"
         content = None if figure in bad else _unit(model, figure, variant, run)
         run.show_news()
         if content is None or not _write(content, run):
@@ -113,8 +99,10 @@ def _unit(model: Model, figure: str, variant: Variant | None, run: _Run) -> dict
     from platewright.backend.write.record import record_bytes
     from platewright.compiler.scene import plan
 
-    job, problems = plan(model, figure, run.mesher, resolution=run.wanted.resolution, measures=run.wanted.record)
-    run.findings.add(problems, variant)
+    job, problems = plan(
+        model, figure, run.session.mesher, resolution=run.wanted.resolution, measures=run.wanted.record
+    )
+    run.session.findings.add(problems, variant)
     if job is None or any(map(is_error, problems)):
         return None
     kinds = run.wanted.kinds or tuple(kind for kind in job.sheet.files if kind in KINDS) or KINDS[:1]

@@ -10,7 +10,8 @@ from typing import TYPE_CHECKING
 
 from platewright.lang.problems import Problem, Related, is_error
 
-from . import crash, files
+from . import crash, files, names
+from .meshes import KeptMeshes
 
 if TYPE_CHECKING:
     from platewright.compiler.scene import Loader, Model, Project, Refusal, Setting, Variant
@@ -45,9 +46,14 @@ class Findings:
         for problem in problems:
             self.found.setdefault(problem, []).append(variant)
 
-    def worded(self) -> tuple[Problem, ...]:
-        """The problems; one that the defaults do not have points to the variants that do."""
-        return tuple(_with_variants(problem, variants) for problem, variants in self.found.items())
+    def worded(self, after: int = 0) -> tuple[Problem, ...]:
+        """The problems but for the first `after` found, in the order of the text.
+
+        One that the defaults do not have points to the variants that do.
+        """
+        news = [_with_variants(problem, variants) for problem, variants in list(self.found.items())[after:]]
+        files = list(dict.fromkeys(problem.span.file for problem in self.found))
+        return tuple(sorted(news, key=lambda problem: (files.index(problem.span.file), problem.span)))
 
     @property
     def has_errors(self) -> bool:
@@ -57,12 +63,16 @@ class Findings:
 
 def _with_variants(problem: Problem, variants: Sequence[Variant | None]) -> Problem:
     named = [variant for variant in variants if variant is not None]
-    if len(named) < len(variants):
+    if len(named) < len(variants) or any(_is_on_line(problem, variant) for variant in named):
         return problem
     notes = [Related(variant.span, f"in variant {variant.name}") for variant in named[:_MOST_NAMED_VARIANTS]]
     if len(named) > _MOST_NAMED_VARIANTS:
         notes[-1] = Related(notes[-1].span, f"and in {len(named) - len(notes) + 1} variants more")
     return dataclasses.replace(problem, related=(*problem.related, *notes))
+
+
+def _is_on_line(problem: Problem, variant: Variant) -> bool:
+    return (problem.span.file, problem.span.line) == (variant.span.file, variant.span.line)
 
 
 def locate(scene: Path, project: Path | None) -> Place:
@@ -94,35 +104,58 @@ def loader(place: Place, trace: crash.Trace) -> Loader:
     return load
 
 
-def texts(project: Project | None, trace: crash.Trace, settings: Iterable[Setting] = ()) -> dict[str, str]:
-    """Every text that a problem may point into: files, with marks where one is not UTF-8, and values of `--set`."""
-    read = {name: content.decode("utf-8", "replace") for name, content in trace.sources.items()}
-    given = {f"--set {name}": value for name, value in settings}
-    return read | (dict(project.texts) if project is not None else {}) | given
+@dataclass(slots=True)
+class Session:
+    """A scene that has been opened; `project` is None if it gives no text. Problems gather in `findings`."""
+
+    project: Project | None
+    opening: tuple[Problem, ...]
+    trace: crash.Trace
+    findings: Findings
+    mesher: KeptMeshes = field(default_factory=KeptMeshes)
+
+    def build(self, variant: Variant | None = None, settings: tuple[Setting, ...] = ()) -> Model | None:
+        """The model of one variant; None where an error of the opening or of the building concerns all of it."""
+        from platewright.compiler.scene import build
+
+        if self.project is None:
+            return None
+        self.trace.stage = f"building {title(variant)}"
+        model, problems = build(self.project, variant, settings)
+        if model is not None:
+            problems = (*problems, *names.problems(model.figures, "figure"))
+        self.findings.add(problems, variant)
+        return None if any(map(_concerns_all, (*self.opening, *problems))) else model
+
+    def bad_figures(self, model: Model) -> frozenset[str]:
+        """Figures that a problem found so far keeps from being made."""
+        return frozenset(problem.within for problem in (*self.opening, *model.problems) if is_error(problem))
+
+    def texts(self, settings: Iterable[Setting] = ()) -> dict[str, str]:
+        """Every text that a problem may point into: files, with marks where one is not UTF-8, and values of `--set`."""
+        read = {name: content.decode("utf-8", "replace") for name, content in self.trace.sources.items()}
+        given = {f"--set {name}": value for name, value in settings}
+        return read | (dict(self.project.texts) if self.project is not None else {}) | given
 
 
-def open_project(arguments_scene: Path, folder: Path | None, trace: crash.Trace, findings: Findings) -> Project | None:
-    """Read and parse a scene and all it sees. Raises UsageError; problems go to `findings`."""
-    place = locate(arguments_scene, folder)
+def _concerns_all(problem: Problem) -> bool:
+    return is_error(problem) and not problem.within
+
+
+def open_session(scene: Path, folder: Path | None, trace: crash.Trace) -> Session:
+    """Read and parse a scene and all it sees, in the project folder given or else the scene's. Raises UsageError."""
+    place = locate(scene, folder)
     from platewright.compiler.scene import open_scene
 
-    trace.copies[str(arguments_scene)] = place.name
+    trace.copies[str(scene)] = place.name
     trace.overrides = ("--project", crash.SOURCES, *trace.overrides)
     trace.stage = "reading the scene"
     project, problems = open_scene(place.name, loader(place, trace))
+    if project is not None:
+        problems = (*problems, *names.problems(project.variants, "variant"))
+    findings = Findings()
     findings.add(problems)
-    return None if any(map(is_error, problems)) else project
-
-
-def build_model(
-    project: Project, variant: Variant | None, settings: tuple[Setting, ...], trace: crash.Trace
-) -> tuple[Model | None, tuple[Problem, ...]]:
-    """The scene with all parameters fixed, as `scene.build`, with no model where an error concerns all of it."""
-    from platewright.compiler.scene import build
-
-    trace.stage = f"building {title(variant)}"
-    model, problems = build(project, variant, settings)
-    return (None if any(is_error(problem) and not problem.within for problem in problems) else model), problems
+    return Session(project, problems, trace, findings)
 
 
 def title(variant: Variant | None) -> str:
@@ -130,19 +163,19 @@ def title(variant: Variant | None) -> str:
     return "the scene" if variant is None else f"variant {variant.name}"
 
 
-def chosen_variants(project: Project, names: Sequence[str], everyone: bool) -> tuple[Variant | None, ...]:
+def chosen_variants(project: Project, wanted: Sequence[str], everyone: bool) -> tuple[Variant | None, ...]:
     """The variants to cover: those named, all of them, or the defaults alone (None). Raises UsageError."""
     if everyone:
         if not project.variants:
             raise UsageError("the scene declares no variants")
         return tuple(project.variants)
-    if not names:
+    if not wanted:
         return (None,)
     known = {variant.name: variant for variant in project.variants}
-    return tuple(known[name] for name in _checked(names, known, "variant"))
+    return tuple(known[name] for name in _checked(wanted, known, "variant"))
 
 
-def chosen_figures(project: Project, names: Sequence[str]) -> tuple[str, ...]:
+def chosen_figures(project: Project, wanted: Sequence[str]) -> tuple[str, ...]:
     """The declared figures to make: those named, else all, in the order of the source. Raises UsageError.
 
     Empty for a scene that declares none, whose one figure is that of its unplaced thing.
@@ -150,13 +183,13 @@ def chosen_figures(project: Project, names: Sequence[str]) -> tuple[str, ...]:
     from platewright.compiler.scene import figure_names
 
     known = figure_names(project)
-    wanted = set(_checked(names, known, "figure")) or set(known)
-    return tuple(name for name in known if name in wanted)
+    chosen = set(_checked(wanted, known, "figure")) or set(known)
+    return tuple(name for name in known if name in chosen)
 
 
-def _checked(names: Sequence[str], known: Iterable[str], what: str) -> Iterator[str]:
+def _checked(wanted: Sequence[str], known: Iterable[str], what: str) -> Iterator[str]:
     choices = list(known)
-    for name in dict.fromkeys(names):
+    for name in dict.fromkeys(wanted):
         if name not in choices:
             raise UsageError(unknown(name, choices, what))
         yield name
