@@ -69,7 +69,7 @@ def isometric(
     side: Literal["left", "right"] = "right",
     height: Literal["above", "below"] = "above",
 ) -> Axes:
-    """Return the isometric view from one of eight corners: the sight makes equal angles with the three axes (ISO 5456-3)."""
+    """Return the isometric view from one of eight corners: equal angles between the sight and all axes (ISO 5456-3)."""
     x = -1.0 if side == "right" else 1.0
     y = 1.0 if depth == "front" else -1.0
     z = -1.0 if height == "above" else 1.0

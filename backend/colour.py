@@ -50,12 +50,12 @@ def thresholds() -> F32:
 
     A level found by them equals `to_bytes` of the same float32 value.
     """
-    edges = decode((np.arange(257) - 0.5) / 255.0).astype(np.float32)
-    for k in range(1, 256):
-        while to_bytes(edges[k]) < k:
-            edges[k] = np.nextafter(edges[k], np.float32(2))
-        while to_bytes(np.nextafter(edges[k], np.float32(0))) >= k:
-            edges[k] = np.nextafter(edges[k], np.float32(0))
+    levels = np.arange(257)
+    edges = decode((levels - 0.5) / 255.0).astype(np.float32)
+    while (low := to_bytes(edges[1:256]) < levels[1:256]).any():
+        edges[1:256][low] = np.nextafter(edges[1:256][low], np.float32(2))
+    while (high := to_bytes(np.nextafter(edges[1:256], np.float32(0))) >= levels[1:256]).any():
+        edges[1:256][high] = np.nextafter(edges[1:256][high], np.float32(0))
     edges[0], edges[256] = 0.0, np.inf
     return edges
 

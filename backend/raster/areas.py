@@ -6,6 +6,7 @@ from collections.abc import Iterable
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ..contract import Emphasis, Geometry, Measure, Page, Panel
 from .picture import Visibility, see
@@ -44,7 +45,7 @@ def _measure(
     return Measure(row, node, visible, unoccluded, _box(seen, shown))
 
 
-def below(geometry: Geometry, node: int) -> np.ndarray[tuple[int, ...], np.dtype[np.bool_]]:
+def below(geometry: Geometry, node: int) -> NDArray[np.bool_]:
     """Mark `node` and all nodes below it: (n_nodes,) bool."""
     inside = np.zeros(len(geometry.nodes), bool)
     inside[node] = True
@@ -54,11 +55,9 @@ def below(geometry: Geometry, node: int) -> np.ndarray[tuple[int, ...], np.dtype
     return inside
 
 
-def _box(
-    seen: Visibility, shown: np.ndarray[tuple[int, ...], np.dtype[np.bool_]]
-) -> tuple[float, float, float, float] | None:
-    pixels = shown.any(axis=2)
-    columns, rows = np.flatnonzero(pixels.any(axis=0)), np.flatnonzero(pixels.any(axis=1))
+def _box(seen: Visibility, shown: NDArray[np.bool_]) -> tuple[float, float, float, float] | None:
+    pixels: NDArray[np.bool_] = np.any(shown, axis=2)
+    columns, rows = np.flatnonzero(np.any(pixels, axis=0)), np.flatnonzero(np.any(pixels, axis=1))
     if not len(columns):
         return None
     mm = 1.0 / seen.window.pixels_per_mm

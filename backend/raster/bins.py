@@ -73,7 +73,7 @@ def box_pieces(pieces: Any, x: Any, y: Any, columns: int, rows: int, samples: in
 
 @kernel
 def _visit(
-    box: Any, tag: int, a: int, b: int, c: int, x: Any, y: Any, columns: int, rows: int, samples: int,
+    box: Any, tag: Any, a: Any, b: Any, c: Any, x: Any, y: Any, columns: int, rows: int, samples: int,
     top: int, bottom: int, n_columns: int, at: Any, entries: Any,
 ) -> None:  # fmt: skip
     """Count, or once `entries` has room store, one triangle in its tiles of tile rows top .. bottom."""
@@ -81,7 +81,7 @@ def _visit(
         x0, x1, y0, y1 = _pixel_box(x, y, a, b, c, columns, rows, samples)
         left, right, first, last = x0 >> 5, x1 >> 5, y0 >> 5, y1 >> 5
     else:
-        bits = np.int64(box)
+        bits: Any = np.int64(box)
         left, first = bits & 1023, (bits >> 10) & 1023
         right, last = left + ((bits >> 20) & 63), first + (bits >> 26)
     for tile_row in range(max(first, top), min(last, bottom - 1) + 1):
@@ -102,7 +102,7 @@ def sort_into_tiles(
     With empty `entries`: add to at[tile] the number of triangles. Else write each into entries[at[tile]] and step
     on. A face is entered by its row, a clipped piece by len(faces) + its row.
     """
-    k = np.searchsorted(piece_position, begin)
+    k: Any = np.searchsorted(piece_position, begin)
     for s in range(len(spans)):
         low, high = max(begin, first[s]), min(end, first[s + 1])
         for position in range(low, high):

@@ -12,6 +12,7 @@ from typing import Any
 import numpy as np
 from llvmlite import ir
 from numba import types
+from numba.core import cgutils
 from numba.extending import intrinsic
 
 from .compiled import kernel
@@ -66,8 +67,13 @@ def _vector_block(samples: int) -> Callable[..., Any]:
         depth_at, face_at = pointer(0, depths, reals), pointer(1, faces, words)
         old_depth, old_face = builder.load(depth_at, align=4), builder.load(face_at, align=4)
         is_inside = builder.icmp_signed(">=", outside, zeros)
-        wins = builder.and_(is_inside, builder.fcmp_ordered("<", new_depth, old_depth))
-        builder.store(builder.select(wins, new_depth, old_depth), depth_at, align=4)
+        # The lesser depth, rather than a choice by mask, keeps the compiler from masked stores: they are slow on some
+        # processors. Depths are never NaN: areas are not zero and planes are finite.
+        new_depth = builder.select(is_inside, new_depth, ir.Constant(reals, [float("inf")] * LANES))
+        wins = builder.fcmp_ordered("<", new_depth, old_depth)
+        lesser_type = ir.FunctionType(reals, [reals, reals])
+        lesser = cgutils.get_or_insert_function(builder.module, lesser_type, f"llvm.minnum.v{LANES}f32")
+        builder.store(builder.call(lesser, [new_depth, old_depth], fastmath=("nnan",)), depth_at, align=4)
         builder.store(builder.select(wins, splat(tag, words), old_face), face_at, align=4)
         return context.get_dummy_value()
 

@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+import hashlib
 from collections.abc import Callable
-from typing import TypeVar, cast
+from functools import cache
+from pathlib import Path
+from typing import Any, TypeVar, cast
 
 import numba
 
@@ -15,9 +18,26 @@ _FAST = {"contract", "arcp", "nsz"}
 
 def kernel(function: _F) -> _F:
     """Compile exactly: for coverage and depth, where equal inputs must give equal bits."""
-    return cast(_F, numba.njit(nogil=True, cache=True, error_model="numpy")(function))
+    return _compiled(function, False)
 
 
 def fast_kernel(function: _F) -> _F:
     """Compile with contraction: for shading, where the last bit does not matter."""
-    return cast(_F, numba.njit(nogil=True, cache=True, error_model="numpy", fastmath=_FAST)(function))
+    return _compiled(function, _FAST)
+
+
+def _compiled(function: _F, fastmath: Any) -> _F:
+    made = numba.njit(nogil=True, cache=True, error_model="numpy", fastmath=fastmath)(function)
+    # numba's stored code knows only its own file's time, yet other kernels' code is built into it. With this stamp it
+    # is used only while no file beside this one has changed.
+    made._cache._cache_file._source_stamp = sources_digest()
+    return cast(_F, made)
+
+
+@cache
+def sources_digest() -> str:
+    """Digest of the source text of every module in this folder."""
+    digest = hashlib.sha256()
+    for path in sorted(Path(__file__).parent.glob("*.py")):
+        digest.update(path.name.encode() + b"\0" + path.read_bytes())
+    return digest.hexdigest()

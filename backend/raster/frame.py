@@ -36,7 +36,7 @@ def paint_tiles(
     raster: Any, surface: Any, lighting: Any, encoding: Any, size: Any, begin: int, end: int, top_row: int,
     image: Any, first_row: int, first_column: int,
 ) -> None:  # fmt: skip
-    """Draw, shade and write tiles begin .. end of a band into image (rows, columns, 3) uint8 from the given corner on."""
+    """Draw, shade and write tiles begin .. end of a band into image (rows, columns, 3) uint8, from that corner on."""
     n_columns, columns, rows, samples = size
     tile_depth = np.empty(TILE * TILE * samples, np.float32)
     tile_face = np.empty(TILE * TILE * samples, np.int32)

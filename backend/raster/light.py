@@ -27,14 +27,14 @@ _B = 8 + DEGREE + 1
 
 
 @fast_kernel
-def _begin(jobs: Any, o: int, m: Any, ambient: Any, axis: Any) -> None:
+def _begin(jobs: Any, m: Any, ambient: Any, axis: Any) -> None:
     """Unit normals and directions; start the result with what the surround gives."""
     r0, r1, r2, f0, f1, f2, a2, width = m[0], m[1], m[2], m[3], m[4], m[5], m[6], m[7]
     p0, p1, p2, p3, p4, p5, p6 = m[8], m[9], m[10], m[11], m[12], m[13], m[14]
     q0, q1, q2, q3, q4, q5, q6 = m[_B], m[_B + 1], m[_B + 2], m[_B + 3], m[_B + 4], m[_B + 5], m[_B + 6]
     e0, e1, e2, ax, ay, az = ambient[0], ambient[1], ambient[2], axis[0], axis[1], axis[2]
     rest, spread = _ONE - a2, width * width
-    for i in range(o, o + WIDTH):
+    for i in range(WIDTH):
         x, y, z = jobs[i], jobs[i + 16], jobs[i + 32]
         vx, vy, vz = jobs[i + 48], jobs[i + 64], jobs[i + 80]
         s = _ONE / math.sqrt(vx * vx + vy * vy + vz * vz + _TINY)
@@ -63,17 +63,14 @@ def _begin(jobs: Any, o: int, m: Any, ambient: Any, axis: Any) -> None:
 
 
 @fast_kernel
-def _add(jobs: Any, o: int, i: int, lx: Any, ly: Any, lz: Any, m: Any, k0: Any, k1: Any, k2: Any) -> None:
-    """Add one light of irradiance k from the unit direction l to job i."""
-    a2 = m[6]
-    x, y, z = jobs[i], jobs[i + 16], jobs[i + 32]
-    vx, vy, vz = jobs[i + 48], jobs[i + 64], jobs[i + 80]
-    cosine, mask = jobs[i + 144], jobs[i + 160]
+def _reflected(
+    x: Any, y: Any, z: Any, vx: Any, vy: Any, vz: Any, cosine: Any, mask: Any, lx: Any, ly: Any, lz: Any, a2: Any
+) -> Any:
+    """Of a light from the unit direction l: n.l, and pi times the microfacets' answer, its Schlick share apart."""
     n = x * lx + y * ly + z * lz
     n = n if n > _ZERO else _ZERO
-    facing = vx * lx + vy * ly + vz * lz
     # The half vector h = (l + v) / |l + v| has |l + v|^2 = 2 + 2 l.v, n.h = (n.l + n.v) / |l + v|, v.h = |l + v| / 2.
-    square = _TWO + _TWO * facing
+    square = _TWO + _TWO * (vx * lx + vy * ly + vz * lz)
     square = square if square > _TINY else _TINY
     total = n + cosine
     lobe = square - total * total * (_ONE - a2)
@@ -84,35 +81,54 @@ def _add(jobs: Any, o: int, i: int, lx: Any, ly: Any, lz: Any, m: Any, k0: Any, 
     miss = _ONE - _HALF * math.sqrt(square)
     miss = miss if miss > _ZERO else _ZERO
     fresnel = miss * miss
-    fresnel = fresnel * fresnel * miss
-    grazing = shine * fresnel
-    shine = shine - grazing
-    jobs[i + 176] += k0 * (jobs[i + 224] * n + m[3] * shine + grazing)
-    jobs[i + 192] += k1 * (jobs[i + 240] * n + m[4] * shine + grazing)
-    jobs[i + 208] += k2 * (jobs[i + 256] * n + m[5] * shine + grazing)
+    grazing = shine * fresnel * fresnel * miss
+    return n, shine - grazing, grazing
+
+
+@fast_kernel
+def _add_far(jobs: Any, m: Any, light: Any) -> None:
+    """Add a directional light, a row of vector and power."""
+    f0, f1, f2, a2 = m[3], m[4], m[5], m[6]
+    lx, ly, lz, k0, k1, k2 = light[0], light[1], light[2], light[3], light[4], light[5]
+    for i in range(WIDTH):
+        n, shine, grazing = _reflected(
+            jobs[i], jobs[i + 16], jobs[i + 32], jobs[i + 48], jobs[i + 64], jobs[i + 80], jobs[i + 144], jobs[i + 160],
+            lx, ly, lz, a2,
+        )  # fmt: skip
+        jobs[i + 176] += k0 * (jobs[i + 224] * n + f0 * shine + grazing)
+        jobs[i + 192] += k1 * (jobs[i + 240] * n + f1 * shine + grazing)
+        jobs[i + 208] += k2 * (jobs[i + 256] * n + f2 * shine + grazing)
+
+
+@fast_kernel
+def _add_near(jobs: Any, m: Any, light: Any) -> None:
+    """Add a lamp, a row of place in mm and power at 1 m, which falls with the square of the distance."""
+    f0, f1, f2, a2 = m[3], m[4], m[5], m[6]
+    px, py, pz, k0, k1, k2 = light[0], light[1], light[2], light[3], light[4], light[5]
+    for i in range(WIDTH):
+        lx, ly, lz = px - jobs[i + 96], py - jobs[i + 112], pz - jobs[i + 128]
+        square = lx * lx + ly * ly + lz * lz + _TINY
+        s = _ONE / math.sqrt(square)
+        power = _SQUARE_METRE / square
+        n, shine, grazing = _reflected(
+            jobs[i], jobs[i + 16], jobs[i + 32], jobs[i + 48], jobs[i + 64], jobs[i + 80], jobs[i + 144], jobs[i + 160],
+            lx * s, ly * s, lz * s, a2,
+        )  # fmt: skip
+        jobs[i + 176] += k0 * power * (jobs[i + 224] * n + f0 * shine + grazing)
+        jobs[i + 192] += k1 * power * (jobs[i + 240] * n + f1 * shine + grazing)
+        jobs[i + 208] += k2 * power * (jobs[i + 256] * n + f2 * shine + grazing)
 
 
 @fast_kernel
 def light_blocks(
     jobs: Any, block_material: Any, n_blocks: int, materials: Any, far: Any, near: Any, ambient: Any, axis: Any
 ) -> None:
-    """Shade blocks 0 .. n_blocks: the fields from RESULT on become linear RGB, not yet clamped.
-
-    A lamp gives its power at 1 m and falls with the square of the distance.
-    """
+    """Shade blocks 0 .. n_blocks: the fields from RESULT on become linear RGB, not yet clamped."""
     for block in range(n_blocks):
-        o = block * BLOCK
-        m = materials[block_material[block]]
-        _begin(jobs, o, m, ambient, axis)
+        block_jobs = jobs[block * BLOCK : (block + 1) * BLOCK]
+        material = materials[block_material[block]]
+        _begin(block_jobs, material, ambient, axis)
         for k in range(len(far)):
-            lx, ly, lz, k0, k1, k2 = far[k, 0], far[k, 1], far[k, 2], far[k, 3], far[k, 4], far[k, 5]
-            for i in range(o, o + WIDTH):
-                _add(jobs, o, i, lx, ly, lz, m, k0, k1, k2)
+            _add_far(block_jobs, material, far[k])
         for k in range(len(near)):
-            for i in range(o, o + WIDTH):
-                lx, ly, lz = near[k, 0] - jobs[i + 96], near[k, 1] - jobs[i + 112], near[k, 2] - jobs[i + 128]
-                square = lx * lx + ly * ly + lz * lz + _TINY
-                s = _ONE / math.sqrt(square)
-                power = _SQUARE_METRE / square
-                k0, k1, k2 = near[k, 3] * power, near[k, 4] * power, near[k, 5] * power
-                _add(jobs, o, i, lx * s, ly * s, lz * s, m, k0, k1, k2)
+            _add_near(block_jobs, material, near[k])

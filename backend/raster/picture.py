@@ -234,7 +234,7 @@ def _project(scene: Scene, pool: ThreadPoolExecutor) -> tuple[tuple[Any, ...], t
     return (*vertices, outside), tuple(pieces)
 
 
-def _tones(scene: Scene, materials: Sequence[Material]) -> tuple[tuple[Any, ...], ...]:
+def _tones(scene: Scene, materials: Sequence[Material]) -> tuple[Any, Any, Any]:
     """What the shading kernels take: surface, lighting, encoding."""
     geometry, panel = scene.geometry, scene.panel
     n_nodes = len(geometry.nodes)

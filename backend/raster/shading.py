@@ -69,15 +69,19 @@ def shade_tile(
             o = p * samples
             v0 = np.float32(x) + _HALF
             done, empty = 0, 0
-            for s in range(samples):
+            is_uniform = samples == 1 or (face[o] == face[o + 1] and face[o] == face[o + 2] and face[o] == face[o + 3])
+            for s in range(1 if is_uniform else samples):
                 if (done >> s) & 1:
                     continue
                 t = face[o + s]
                 count = 1
-                for other in range(s + 1, samples):
-                    if face[o + other] == t:
-                        count += 1
-                        done |= 1 << other
+                if is_uniform:
+                    count = samples
+                else:
+                    for other in range(s + 1, samples):
+                        if face[o + other] == t:
+                            count += 1
+                            done |= 1 << other
                 if t < 0:
                     empty += count
                     continue

@@ -5,9 +5,10 @@ from __future__ import annotations
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from .. import camera
-from ..contract import F64, U8, Emphasis, Geometry, Page, Panel, Projection
+from ..contract import F64, I32, U8, Emphasis, Geometry, Page, Panel, Projection
 from .picture import Progress, Visibility, see
 
 NEAREST_LEVEL, FARTHEST_LEVEL = 235, 40
@@ -78,7 +79,7 @@ def _depth_range(geometry: Geometry, panel: Panel) -> tuple[float, float]:
 
 
 def _depth_levels(
-    seen: Visibility, projection: Projection, rows: slice, is_seen: np.ndarray[tuple[int, ...], np.dtype[np.bool_]],
+    seen: Visibility, projection: Projection, rows: slice, is_seen: NDArray[np.bool_],
     depths: tuple[float, float],
 ) -> U8:  # fmt: skip
     depth = seen.depth[rows, :, 0][is_seen].astype(np.float64) + seen.depth_shift
@@ -88,7 +89,7 @@ def _depth_levels(
     return np.repeat(np.floor(grey + 0.5).astype(np.uint8)[:, None], 3, axis=1)
 
 
-def _facing_levels(geometry: Geometry, panel: Panel, face: np.ndarray[tuple[int, ...], np.dtype[np.int32]]) -> U8:
+def _facing_levels(geometry: Geometry, panel: Panel, face: I32) -> U8:
     shown, inverse = np.unique(face, return_inverse=True)
     corners = geometry.vertices[geometry.faces[shown]]
     if panel.displacement is not None:

@@ -43,8 +43,8 @@ def _cover(
 @kernel
 def raster_tile(
     faces: Any, pieces: Any, piece_face: Any, x: Any, y: Any, z: Any, face_patch: Any, patch_plane: Any, planes: Any,
-    entries: Any, begin: int, end: int, left: int, top: int, columns: int, rows: int, corner: Any,
-    samples: int, depth: Any, face: Any, farthest: Any,
+    entries: Any, begin: int, end: int, left: Any, top: Any, columns: Any, rows: Any, corner: Any,
+    samples: Any, depth: Any, face: Any, farthest: Any,
 ) -> None:  # fmt: skip
     """Draw entries begin .. end into the tile whose first pixel is (left, top) of the window.
 
@@ -84,20 +84,20 @@ def raster_tile(
         a1, b1, c1 = _edge(bx, by, cx, cy)
         a2, b2, c2 = _edge(cx, cy, ax, ay)
         # Pass over a triangle outside this tile's share of its box; drop edges that hold all over it.
-        l, r, u, d = x0 * 16, x1 * 16 + 16, y0 * 16, y1 * 16 + 16
+        west, east, north, south = x0 * 16, x1 * 16 + 16, y0 * 16, y1 * 16 + 16
         if (
-            c0 + max(a0 * l, a0 * r) + max(b0 * u, b0 * d) < 0
-            or c1 + max(a1 * l, a1 * r) + max(b1 * u, b1 * d) < 0
-            or c2 + max(a2 * l, a2 * r) + max(b2 * u, b2 * d) < 0
+            c0 + max(a0 * west, a0 * east) + max(b0 * north, b0 * south) < 0
+            or c1 + max(a1 * west, a1 * east) + max(b1 * north, b1 * south) < 0
+            or c2 + max(a2 * west, a2 * east) + max(b2 * north, b2 * south) < 0
         ):
             continue
         # Blocks reach beyond the box to the next multiple of 8 px.
-        l, r, u, d = (x0 & ~7) * 16, ((x1 | 7) + 1) * 16, (y0 & ~7) * 16, ((y1 | 7) + 1) * 16
-        if c0 + min(a0 * l, a0 * r) + min(b0 * u, b0 * d) >= 0:
+        west, east, north, south = (x0 & ~7) * 16, ((x1 | 7) + 1) * 16, (y0 & ~7) * 16, ((y1 | 7) + 1) * 16
+        if c0 + min(a0 * west, a0 * east) + min(b0 * north, b0 * south) >= 0:
             a0, b0, c0 = 0, 0, 0
-        if c1 + min(a1 * l, a1 * r) + min(b1 * u, b1 * d) >= 0:
+        if c1 + min(a1 * west, a1 * east) + min(b1 * north, b1 * south) >= 0:
             a1, b1, c1 = 0, 0, 0
-        if c2 + min(a2 * l, a2 * r) + min(b2 * u, b2 * d) >= 0:
+        if c2 + min(a2 * west, a2 * east) + min(b2 * north, b2 * south) >= 0:
             a2, b2, c2 = 0, 0, 0
         plane = patch_plane[face_patch[t]] if len(planes) else -1
         if plane >= 0:
@@ -117,25 +117,25 @@ def raster_tile(
             first, last = x0 // step, x1 // step
             for row in range(y0, y1 + 1):
                 for block in range(first, last + 1):
-                    l, u = block * step * 16, row * 16
-                    e = (c0 + a0 * l + b0 * u, c1 + a1 * l + b1 * u, c2 + a2 * l + b2 * u)
+                    west, north = block * step * 16, row * 16
+                    e = (c0 + a0 * west + b0 * north, c1 + a1 * west + b1 * north, c2 + a2 * west + b2 * north)
                     o = row * (TILE * samples) + block * LANES
-                    _cover(samples, depth, face, o, e, a, b, z0 + gx * l + gy * u, zx, zy, tag)
+                    _cover(samples, depth, face, o, e, a, b, z0 + gx * west + gy * north, zx, zy, tag)
             continue
         for block_y in range(y0 >> 3, (y1 >> 3) + 1):
             for block_x in range(x0 >> 3, (x1 >> 3) + 1):
                 behind = farthest[block_y * 4 + block_x]
                 if nearest >= behind:
                     continue
-                l, u = block_x * 128, block_y * 128
-                k0, k1, k2 = c0 + a0 * l + b0 * u, c1 + a1 * l + b1 * u, c2 + a2 * l + b2 * u
+                west, north = block_x * 128, block_y * 128
+                k0, k1, k2 = c0 + a0 * west + b0 * north, c1 + a1 * west + b1 * north, c2 + a2 * west + b2 * north
                 if (
                     k0 + max(a0 * 128, 0) + max(b0 * 128, 0) < 0
                     or k1 + max(a1 * 128, 0) + max(b1 * 128, 0) < 0
                     or k2 + max(a2 * 128, 0) + max(b2 * 128, 0) < 0
                 ):
                     continue
-                kz = z0 + gx * l + gy * u
+                kz = z0 + gx * west + gy * north
                 if np.float32(kz + min(gx * 128.0, 0.0) + min(gy * 128.0, 0.0)) >= behind:
                     continue
                 # An edge that holds all over the block is dropped: what is left crosses it and fits 32 bits.
@@ -156,5 +156,5 @@ def raster_tile(
                     for block in range(8 // step):
                         sl, su = block * step * 16, row * 16
                         e = (k0 + p0 * sl + q0 * su, k1 + p1 * sl + q1 * su, k2 + p2 * sl + q2 * su)
-                        zz = z0 + gx * (l + sl) + gy * (u + su)
+                        zz = z0 + gx * (west + sl) + gy * (north + su)
                         _cover(samples, depth, face, o + block * LANES, e, ba, bb, zz, zx, zy, tag)

@@ -6,7 +6,6 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-
 from platewright.backend import camera
 from platewright.backend.contract import (
     F64,
