@@ -94,9 +94,7 @@ class _Reader:
             return Layout(self.file, [], [], end, self.problems)
         for number, line in enumerate(lines, 1):
             self.line(Place(self.file, number), line)
-            if len(self.problems) >= PROBLEMS_LIMIT:
-                sentence = f"reading stopped after {PROBLEMS_LIMIT} problems"
-                self.add("too-many-problems", Span(self.file, number, 1, number, 1), sentence)
+            if len(self.problems) > PROBLEMS_LIMIT:
                 break
         below = self.asides(self.columns)
         return Layout(self.file, self.top, below, end, self.problems)

@@ -123,12 +123,14 @@ class _Builder:
 
     @staticmethod
     def call_empty(children: list[Any]) -> Call:
-        path, _, closing = children
+        name, _, closing = children
+        path = name.value
         return Call(path, (), (), _to(path.span, closing.value))
 
     @staticmethod
     def call(children: list[Any]) -> Call:
-        path, _, given, closing = children
+        name, _, given, closing = children
+        path = name.value
         entries: tuple[Node, ...] = given.entries if isinstance(given, Series) else (given,)
         positional = tuple(entry for entry in entries if not isinstance(entry, Equation | Series))
         named = tuple(setting_of(entry) for entry in entries if isinstance(entry, Equation))

@@ -120,6 +120,8 @@ def _elements(parts: list[re.Match[str]], at: int, closing: frozenset[str]) -> t
                 branch, at = _elements(parts, at + 1, frozenset("/}"))
                 branches.append(branch)
             found.append(Either(tuple(branches)))
+        else:
+            raise ValueError(f"`{part['mark']}` closes nothing in a pattern")
         at += 1
     return tuple(found), at
 

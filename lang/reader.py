@@ -15,12 +15,12 @@ from typing import TypeVar
 from lark import Lark
 
 from .items import Item, Place, expression_of
-from .layout import Layout, RawLine, lay_out, slip_problem
+from .layout import PROBLEMS_LIMIT, Layout, RawLine, lay_out, slip_problem
 from .matcher import NO_STARTS, Matcher
 from .mismatch import explain, explain_clauses
 from .nearest import nearest
 from .parser import value_parser
-from .patterns import Pattern, Starts, Vocabulary, vocabulary
+from .patterns import Equals, Pattern, Slot, Starts, Vocabulary, vocabulary
 from .problems import Problem, Related, Severity
 from .scanner import Slip
 from .source import Span
@@ -96,7 +96,7 @@ class _Scene:
         version = VERSION if self.version else 0
         span = Span(self.file, 1, 1, layout.end.end_line, layout.end.end_column)
         scene = Scene(self.file, version, lines, span, tuple(dict.fromkeys(self.broken)))
-        return scene, tuple(sorted(self.problems, key=lambda problem: problem.span))
+        return scene, limited(self.problems)
 
     def lines(self, raws: list[RawLine], context: str) -> tuple[Line, ...]:
         """The lines that may stand in a context; broken ones are left out."""
@@ -263,9 +263,9 @@ class _Scene:
             return
         word = written["word"]
         rows = starts.by_word.get(word) or starts.by_word.get(nearest(word, starts.by_word), ())
-        if written["name"]:
+        if rows and written["name"] and _is_declared_behind(rows[0]):
             self.broken.append(written["name"])
-        elif not rows:
+        elif not rows and any(_is_declared_first(pattern) for pattern in starts.wordless):
             self.broken.append(word)
         context = next((pattern.row.lines for pattern in rows if pattern.row.lines), "")
         if context:
@@ -275,6 +275,30 @@ class _Scene:
 
 
 _DECLARES = re.compile(r"(?P<word>[A-Za-z_]\w*)(?: +(?P<name>[A-Za-z_]\w*))?", re.ASCII)
+
+
+def _is_declared_behind(pattern: Pattern) -> bool:
+    """Whether a row declares the name behind its words."""
+    behind = pattern.elements[len(pattern.words) :]
+    return bool(behind) and isinstance(behind[0], Slot) and behind[0].kind in ("new", "signature")
+
+
+def _is_declared_first(pattern: Pattern) -> bool:
+    """Whether a row that starts with a value declares a name by it."""
+    first = pattern.elements[0]
+    slot = first.left if isinstance(first, Equals) else first
+    return isinstance(slot, Slot) and slot.kind in ("new", "signature")
+
+
+def limited(problems: list[Problem]) -> tuple[Problem, ...]:
+    """Problems in the order of the text, and where there are too many of them, the first and a word on the rest."""
+    ordered = sorted(problems, key=lambda problem: problem.span)
+    if len(ordered) > PROBLEMS_LIMIT:
+        sentence = f"reading stopped after {PROBLEMS_LIMIT} problems"
+        ordered[PROBLEMS_LIMIT:] = [
+            Problem("too-many-problems", Severity.ERROR, ordered[PROBLEMS_LIMIT].span, sentence)
+        ]
+    return tuple(ordered)
 
 
 def _wider(span: Span, other: Span) -> Span:

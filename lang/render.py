@@ -91,7 +91,8 @@ def _json_span(span: Span) -> dict[str, Any]:
 def render_sarif(problems: Iterable[Problem], version: str = "", codes: Mapping[str, str] = CODES) -> str:
     """Problems as a SARIF 2.1.0 log (OASIS standard, 2020): one run, one result a problem, rules from the codes.
 
-    `version` is the version of platewright, left out if empty; `codes` gives each code its sentence. Columns count code points from 1.
+    `version` is the version of platewright, left out if empty; `codes` gives each code its sentence. Columns count code
+    points from 1.
     """
     results = [_result(problem) for problem in problems]
     used = sorted({result["ruleId"] for result in results})

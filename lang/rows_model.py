@@ -480,7 +480,7 @@ SHAPE_ROWS: tuple[Row, ...] = (
         "relief {over <table:text> / <variable:new> = <height:any> over <size:point2>}",
         ("shape",),
         "a surface raised over a rectangle, by a function of x and y or over a table",
-        "relief z = 2 mm + x / 20 over (40 mm, 30 mm)",
+        "relief z = 2 mm + x/20 over (40 mm, 30 mm)",
         later=True,
     ),
     Row(
@@ -488,7 +488,7 @@ SHAPE_ROWS: tuple[Row, ...] = (
         "surface <point:point> u <u:range> v <v:range> [thickness <thickness:length>]",
         ("shape",),
         "a surface by its point as a function of u and v",
-        "surface (u, v, u * v / 50 mm) u 0 mm .. 40 mm v 0 mm .. 30 mm thickness 1 mm",
+        "surface (u, v, u*v / 50 mm) u 0 mm .. 40 mm v 0 mm .. 30 mm thickness 1 mm",
         later=True,
     ),
     Row(

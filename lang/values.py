@@ -10,6 +10,9 @@ from .scanner import LITERALS, QUANTITY_PARTS, Piece, Slip, split_items, unit_hi
 from .source import Span
 from .tree import Date, Expression, Number, Ratio, Text, Truth
 
+NUMBER_LENGTH_LIMIT = 40
+EXPONENT_LIMIT = 300
+
 
 def read_items(parser: Lark, place: Place, text: str, start: int) -> tuple[list[Item], int]:
     """The items of one line from column `start`, and the column of its comment, or -1. Raises Slip."""
@@ -38,6 +41,7 @@ def _literal(parser: Lark, place: Place, text: str, kind: str, start: int, end: 
         case "QUANTITY":
             return _quantity(written, start, span)
         case "NUMBER":
+            _check_number(written, start)
             return Number(written, "", span)
         case "TEXT":
             return _text(parser, place, written, start, span)
@@ -53,9 +57,21 @@ def _quantity(written: str, start: int, span: Span) -> Number:
     parts = QUANTITY_PARTS.fullmatch(written)
     assert parts is not None
     number, unit = parts.groups()
-    if "/" in number and not int(number.partition("/")[2][:40]):
-        raise Slip("bad-number", start, start + len(number), "a fraction cannot have 0 below the line")
+    _check_number(number, start)
     return Number(number, "inch" if unit == "in" else unit, span)
+
+
+def _check_number(written: str, start: int) -> None:
+    """Raises Slip for a number that is none, or that would take long to make exact."""
+    end = start + len(written)
+    if len(written) > NUMBER_LENGTH_LIMIT:
+        sentence = f"a number may have {NUMBER_LENGTH_LIMIT} characters, and this one has {len(written)}"
+        raise Slip("bad-number", start, end, sentence)
+    mantissa, _, exponent = written.lower().partition("e")
+    if exponent and abs(int(exponent)) > EXPONENT_LIMIT:
+        raise Slip("bad-number", start, end, f"a power of ten may go from -{EXPONENT_LIMIT} to {EXPONENT_LIMIT}")
+    if "/" in mantissa and not int(mantissa.partition("/")[2]):
+        raise Slip("bad-number", start, end, "a fraction cannot have 0 below its line")
 
 
 _ESCAPES = {'"': '"', "\\": "\\", "n": "\n", "{": "{", "}": "}"}
