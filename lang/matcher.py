@@ -216,6 +216,7 @@ class Matcher:
         """Notes what was wanted at an item that did not fit; always -1."""
         if self.account is not None and self.account.move(at, self.pattern):
             self.account.elements.append(element)
+            self.account.pattern = self.account.pattern or self.pattern
         return -1
 
 
