@@ -14,7 +14,7 @@ from platewright.lang.source import Span
 from platewright.lang.units import AREA, LENGTH, MASS, NUMBER, VOLUME, Dimension
 
 from .build import Model
-from .expressions import Scope, evaluate
+from .expressions import evaluate
 from .flatten import Flattened, Mesher, flatten
 from .graph import Solid, Thing
 from .measure import area, clearance, volume
@@ -22,7 +22,7 @@ from .mistakes import Mistake, Problems, mistake
 from .modules import THINGS, find_kind
 from .paths import Placed, follow
 from .readings import expression, optional
-from .solids.ladder import FACTS
+from .scope import Scope
 from .values import Quantity, Value, Vector, kind_of, spell
 
 SIZES = {"width": 0, "depth": 1, "height": 2}
@@ -35,7 +35,7 @@ EQUAL = 1e-6
 
 
 def judge_facts(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
-    """One error for each fact that does not hold. Cost: a mesh at the rung `FACTS` for each part measured by volume,
+    """One error for each fact that does not hold. Cost: a mesh at its rung of facts for each part measured by volume,
     area, mass or size; distances between marks need none."""
     problems = Problems()
     module = model.modules[model.files.main]
@@ -182,7 +182,7 @@ class _Measures:
 
     def _geometry(self) -> Flattened:
         if self.flattened is None:
-            found, problems = flatten(self.thing, self.name, FACTS, self.model.sources, self.mesher)
+            found, problems = flatten(self.thing, self.name, None, self.model.sources, self.mesher)
             self.problems.extend(problems)
             if found is None:
                 raise Mistake(None)

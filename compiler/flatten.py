@@ -16,7 +16,7 @@ from platewright.lang.source import Span
 
 from .graph import Assembly, Entry, Solid, Thing, bracketed, walk
 from .materials import Surface, linear
-from .solids.bounds import bounds
+from .solids.bounds import bounds, facts_rung
 from .solids.flaw import Flaw
 from .solids.ladder import first_at_most
 from .solids.recipe import Affine, Recipe
@@ -40,9 +40,11 @@ class Flattened:
 
 
 def flatten(
-    thing: Thing, name: str, rung: float, sources: Sequence[Span], mesher: Mesher
+    thing: Thing, name: str, rung: float | None, sources: Sequence[Span], mesher: Mesher
 ) -> tuple[Flattened | None, tuple[Problem, ...]]:
     """Flatten a thing and all below it, root path `name`, with a chord error of at most `rung` mm in the world.
+
+    Without a rung each part is taken at its own rung of facts, which no figure changes.
 
     None where a part has no mesh; the problems say why. Cost: one mesh for each part and rung, one pass over the
     placed triangles.
@@ -97,26 +99,21 @@ def _placements(entries: Sequence[Entry]) -> F64:
 
 
 def _meshes(
-    entries: Sequence[Entry], rung: float, sources: Sequence[Span], mesher: Mesher
+    entries: Sequence[Entry], rung: float | None, sources: Sequence[Span], mesher: Mesher
 ) -> tuple[list[Mesh], dict[int, int], tuple[Problem, ...]]:
     """Each solid's mesh once; rows of meshes by entry; problems, each once. A scaled copy takes a finer rung."""
     meshes: list[Mesh] = []
     rows: dict[tuple[int, float], int | None] = {}
-    scales: dict[Affine, float] = {}
+    own_rung = _own_rungs(rung)
     of_entry: dict[int, int] = {}
     problems: dict[Problem, None] = {}
     for number, entry in enumerate(entries):
         solid = entry.thing
         if not isinstance(solid, Solid):
             continue
-        linear_part = tuple((*row[:3], 0.0) for row in entry.placement)
-        if linear_part not in scales:
-            scales[linear_part] = largest_scale(entry.placement)  # type: ignore[index]
-        scale = scales[linear_part]  # type: ignore[index]
-        own_rung = rung if scale == 1.0 else first_at_most(rung / scale)
-        key = (id(solid), own_rung)
+        key = (id(solid), own_rung(solid, entry.placement))
         if key not in rows:
-            mesh, flaws = mesher(solid.recipe, own_rung)
+            mesh, flaws = mesher(solid.recipe, key[1])
             problems.update((problem_of(flaw, solid, sources), None) for flaw in flaws)
             rows[key] = None if mesh is None else len(meshes)
             if mesh is not None:
@@ -125,6 +122,25 @@ def _meshes(
         if row is not None:
             of_entry[number] = row
     return meshes, of_entry, tuple(problems)
+
+
+def _own_rungs(rung: float | None) -> Callable[[Solid, Affine], float]:
+    """The rung of one placed copy: that of facts, or the one asked for, finer where the placement enlarges."""
+    scales: dict[tuple[tuple[float, ...], ...], float] = {}
+    facts: dict[int, float] = {}
+
+    def own(solid: Solid, placement: Affine) -> float:
+        if rung is None:
+            if id(solid) not in facts:
+                facts[id(solid)] = facts_rung(solid.recipe)
+            return facts[id(solid)]
+        linear_part = tuple(row[:3] for row in placement)
+        if linear_part not in scales:
+            scales[linear_part] = largest_scale(placement)
+        scale = scales[linear_part]
+        return rung if scale == 1.0 else first_at_most(rung / scale)
+
+    return own
 
 
 def _nodes(

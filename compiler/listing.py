@@ -8,12 +8,12 @@ from platewright.lang import tree
 from platewright.lang.problems import Problem
 
 from .build import Model
-from .expressions import Failed, Formula, evaluate
+from .expressions import evaluate
 from .flatten import Flattened, Mesher, flatten
 from .measure import volume
 from .mistakes import Problems
 from .readings import optional
-from .solids.ladder import FACTS
+from .scope import Failed, Formula
 from .values import Value, spell
 
 
@@ -53,7 +53,7 @@ def list_scene(model: Model, variants: tuple[str, ...], mesher: Mesher) -> tuple
     problems = Problems()
     rows: list[PartRow] = []
     for root in model.roots:
-        flattened, found = flatten(model.things[root], root, FACTS, model.sources, mesher)
+        flattened, found = flatten(model.things[root], root, None, model.sources, mesher)
         problems.extend(found)
         if flattened is not None:
             rows += _parts(flattened)

@@ -32,7 +32,7 @@ from .paths import Placed, follow
 from .project import Files, Loader, Refusal, beside, load
 from .readings import name as declared_name
 from .readings import optional, settings
-from .solids.ladder import FACTS, first_at_most
+from .solids.ladder import first_at_most
 from .tables import Table
 from .values import Value
 
@@ -222,7 +222,7 @@ def dump(project: Project, model: Model | None, stage: str, mesher: Mesher) -> t
     texts: list[str] = []
     problems = Problems()
     for root in model.built.roots:
-        flattened, found = flatten(model.built.things[root], root, FACTS, model.built.sources, mesher)
+        flattened, found = flatten(model.built.things[root], root, None, model.built.sources, mesher)
         problems.extend(found)
         texts += [dump_triangles(flattened)] if flattened is not None else []
     return "".join(texts), problems.all()
@@ -247,7 +247,7 @@ def _export(
     target = follow(built.things[first.name], written.steps[1:], built.scopes[built.files.main])
     if not isinstance(target, Placed):
         raise mistake("wrong-kind", written.span, f"`{path}` is a mark or feature; only things have triangles")
-    rung = FACTS if tolerance_mm is None else first_at_most(tolerance_mm)
+    rung = None if tolerance_mm is None else first_at_most(tolerance_mm)
     flattened, found = flatten(built.things[first.name], first.name, rung, built.sources, mesher)
     problems.extend(found)
     if flattened is None:
