@@ -6,6 +6,7 @@ import functools
 import re
 from collections.abc import Mapping
 from dataclasses import dataclass
+from types import MappingProxyType
 from typing import TypeAlias
 
 from .words import ROWS, Row
@@ -128,8 +129,7 @@ def _elements(parts: list[re.Match[str]], at: int, closing: frozenset[str]) -> t
 
 def _slot(name: str, kind: str) -> Slot:
     if "|" in kind:
-        options = sorted((tuple(option.split()) for option in kind.split("|")), key=len, reverse=True)
-        return Slot(name, "words", tuple(options))
+        return Slot(name, "words", tuple(tuple(option.split()) for option in kind.split("|")))
     return Slot(name, kind)
 
 
@@ -181,3 +181,43 @@ def _starts(patterns: list[Pattern], places: tuple[str, ...]) -> Starts:
         word: tuple(sorted(rows, key=lambda p: (-len(p.words), -len(p.elements)))) for word, rows in by_word.items()
     }
     return Starts(ordered, tuple(wordless))
+
+
+def written(row: Row) -> str:
+    """A row as people read it: `turn ANGLE [about AXIS]`. Options stand as `left/right`, alternatives in braces."""
+    return _written(parse_pattern(row.pattern))
+
+
+def _written(elements: tuple[Element, ...]) -> str:
+    return " ".join(_written_one(element) for element in elements)
+
+
+def _written_one(element: Element) -> str:
+    match element:
+        case Literal(text):
+            return text
+        case Slot(name, kind, options):
+            if options:
+                return "/".join(" ".join(option) for option in options)
+            return _BLANKS.get(kind, name if kind == "any" else kind).upper()
+        case Equals(left, right, is_optional):
+            behind = f"= {_written_one(right)}"
+            return f"{_written_one(left)} {f'[{behind}]' if is_optional else behind}"
+        case Optional(inner):
+            return f"[{_written(inner)}]"
+        case Either(branches):
+            return f"{{{' / '.join(_written(branch) for branch in branches)}}}"
+
+
+_BLANKS: Mapping[str, str] = MappingProxyType(
+    {
+        "clock": "time",
+        "list": "values",
+        "new": "name",
+        "point2": "point",
+        "ratio": "scale",
+        "settings": "name = value",
+        "signature": "name",
+        "truth": "condition",
+    }
+)
