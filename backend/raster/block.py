@@ -72,7 +72,8 @@ def _vector_block(samples: int) -> Callable[..., Any]:
         new_depth = builder.select(is_inside, new_depth, ir.Constant(reals, [float("inf")] * LANES))
         wins = builder.fcmp_ordered("<", new_depth, old_depth)
         lesser_type = ir.FunctionType(reals, [reals, reals])
-        lesser = cgutils.get_or_insert_function(builder.module, lesser_type, f"llvm.minnum.v{LANES}f32")
+        insert: Any = cgutils.get_or_insert_function
+        lesser = insert(builder.module, lesser_type, f"llvm.minnum.v{LANES}f32")
         builder.store(builder.call(lesser, [new_depth, old_depth], fastmath=("nnan",)), depth_at, align=4)
         builder.store(builder.select(wins, splat(tag, words), old_face), face_at, align=4)
         return context.get_dummy_value()

@@ -27,7 +27,7 @@ def fast_kernel(function: _F) -> _F:
 
 
 def _compiled(function: _F, fastmath: Any) -> _F:
-    made = numba.njit(nogil=True, cache=True, error_model="numpy", fastmath=fastmath)(function)
+    made: Any = numba.njit(nogil=True, cache=True, error_model="numpy", fastmath=fastmath)(function)
     # numba's stored code knows only its own file's time, yet other kernels' code is built into it. With this stamp it
     # is used only while no file beside this one has changed.
     made._cache._cache_file._source_stamp = sources_digest()

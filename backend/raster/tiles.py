@@ -72,8 +72,10 @@ def raster_tile(
         area = (bx - ax) * (cy - ay) - (cx - ax) * (by - ay)
         if area < 0:
             bx, cx, by, cy, zb, zc, area = cx, bx, cy, by, zc, zb, -area
-        x0, x1 = min(ax, min(bx, cx)), max(ax, max(bx, cx))
-        y0, y1 = min(ay, min(by, cy)), max(ay, max(by, cy))
+        x0: Any = min(ax, min(bx, cx))
+        x1: Any = max(ax, max(bx, cx))
+        y0: Any = min(ay, min(by, cy))
+        y1: Any = max(ay, max(by, cy))
         is_long = (x1 - x0) + (y1 - y0) >= _LONG
         if samples == 4:
             x0, x1, y0, y1 = (x0 + 31) >> 8, (x1 - 32) >> 8, (y0 + 31) >> 8, (y1 - 32) >> 8

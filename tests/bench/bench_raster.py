@@ -41,7 +41,8 @@ def objects(n_triangles: int, seed: int = 1):
         make = torus("", 10.5, 5.2, n=n) if (column + row + layer) % 2 else sphere("", 15.0, n=n)
         turn = np.linalg.qr(random.normal(size=(3, 3)))[0]
         turn *= np.sign(np.linalg.det(turn))
-        at = ((column - 1.5) * 27.5 + 6 * layer, 30.0 * layer, (row - 1) * 27.5 - 5 * layer) + random.normal(size=3)
+        at = np.array(((column - 1.5) * 27.5 + 6 * layer, 30.0 * layer, (row - 1) * 27.5 - 5 * layer))
+        at += random.normal(size=3)
         corners, first = np.unique(make.faces.ravel(), return_index=True)
         normals = np.zeros_like(make.vertices)
         normals[corners] = make.normals.reshape(-1, 3)[first]
@@ -134,7 +135,8 @@ def threads(name: str = "100k") -> None:
     times = np.array([[frame(geometry, view, materials, image, n) for n in (1, 2)] for _ in range(11)])
     one, two = np.median(times, axis=0)
     print(
-        f"two threads / one thread, {name}, 4 samples: {two / one:.2f} (must 0.62)   {two * 1e3:.0f} / {one * 1e3:.0f} ms"
+        f"two threads / one thread, {name}, 4 samples: {two / one:.2f} (must 0.62)"
+        f"   {two * 1e3:.0f} / {one * 1e3:.0f} ms"
     )
 
 
