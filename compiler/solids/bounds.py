@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from .ladder import COARSEST, FACTS_SHARE, first_at_most
 from .outline import extent, oriented
 from .polyhedra import regular_polygon
 from .recipe import (
@@ -41,6 +42,13 @@ def bounds(recipe: Recipe) -> tuple[Point3, Point3]:
         return (0.0, 0.0, 0.0), (0.0, 0.0, 0.0)
     (x0, y0, z0), (x1, y1, z1) = box[0].tolist(), box[1].tolist()
     return (x0, y0, z0), (x1, y1, z1)
+
+
+def facts_rung(recipe: Recipe) -> float:
+    """The rung at which every fact about the part is measured: it follows from the size of the part alone."""
+    low, high = bounds(recipe)
+    size = max(b - a for a, b in zip(low, high, strict=True))
+    return first_at_most(size / FACTS_SHARE) if size > 0.0 else COARSEST
 
 
 def _of_recipe(recipe: Recipe, known: dict[int, _Box | None]) -> _Box | None:

@@ -8,7 +8,7 @@ analytic surface of every face follows, and from it patches and normals (`finish
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
 
 import manifold3d
@@ -73,13 +73,14 @@ class _Leaf:
 
 @dataclass(frozen=True, eq=False, slots=True)
 class _Body:
-    """A solid in some frame: its manifold, the planes whose heights may have to agree with others', and bounds on
-    its volume by set algebra.
+    """A solid in some frame: its manifold, the planes whose heights may have to agree with others', bounds on its
+    volume by set algebra, and a box (2,3) round all shapes it is made of.
     """
 
     manifold: Manifold
     planes: F64
     volume: tuple[float, float]
+    box: F64
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -93,6 +94,13 @@ class _Group:
         for placement, is_off in zip(self.placements, to_correct, strict=True):
             moved = self.body.manifold.transform(placement)
             yield moved.warp_batch(correct) if is_off else moved
+
+    def box(self) -> F64:
+        """A box (2,3) round all copies."""
+        middle, half = self.body.box.mean(axis=0), np.ptp(self.body.box, axis=0) / 2.0
+        centre = self.placements[:, :, :3] @ middle + self.placements[:, :, 3]
+        reach = np.abs(self.placements[:, :, :3]) @ half
+        return np.array(((centre - reach).min(axis=0), (centre + reach).max(axis=0)))
 
     def volumes(self) -> tuple[float, float]:
         """Bounds on what the copies fill together: at least the largest of them, at most their sum."""
@@ -121,6 +129,7 @@ class _Workshop:
             (s.operation, [group for placed in s.placed for group in self._groups(placed, grown)]) for s in recipe.steps
         ]
         levels = Levels([(group.body.planes, group.placements) for _, groups in steps for group in groups])
+        box = _common_box([group.box() for _, groups in steps for group in groups])
         solid, low, high, n = Manifold(), 0.0, 0.0, 0
         for operation, groups in steps:
             if not groups:
@@ -129,16 +138,16 @@ class _Workshop:
             for group in groups:
                 operands.extend(group.manifolds(levels.to_correct(n), levels.correct))
                 n += 1
-            solid = _combined(solid, operation, operands)
+            solid = _combined(solid, operation, operands, box)
             low, high = _volume_bounds(low, high, operation, groups)
-        return _Body(solid, levels.planes(), (low, high))
+        return _Body(solid, levels.planes(), (low, high), box)
 
     def _groups(self, placed: Placed, grown: float) -> Iterator[_Group]:
         """The shape at its placements, one group for each scale: what grows needs a finer division."""
         if not placed.placements:
             return
         lift = -rise(placed.shape) / 2 if placed.centred and not isinstance(placed.shape, Recipe) else 0.0
-        placements = np.array([settled(placement, lift) for placement in placed.placements])
+        placements = settled(placed.placements, lift)
         scales = transform.largest_scales(placements)
         for scale in np.unique(scales):
             yield _Group(self._body(placed, grown * float(scale)), placements[scales == scale])
@@ -157,21 +166,22 @@ class _Workshop:
         shell, volume = self._shells[shape, grown]
         number = Manifold.reserve_ids(1)
         self.leaves.append(_Leaf(number, placed.source, shell.surfaces))
-        return _Body(_import(shell, number), axis_planes(shell.surfaces), (volume, volume))
+        box = np.array((shell.vertices.min(axis=0), shell.vertices.max(axis=0)))
+        return _Body(_import(shell, number), axis_planes(shell.surfaces), (volume, volume), box)
 
 
-def settled(placement: Affine, lift: float = 0.0) -> Affine:
-    """A placement with `lift` along the shape's own z before it, and shifts that are a rounding error away from a
-    decimal of six places set to it, so that 0.1 + 0.2 stands where 0.3 does.
+def settled(placements: Sequence[Affine], lift: float = 0.0) -> F64:
+    """Placements (n,3,4) with `lift` along the shape's own z before them, and shifts that are a rounding error away
+    from a decimal of six places set to it, so that 0.1 + 0.2 stands where 0.3 does.
     """
+    settled = np.array(placements, np.float64).reshape(-1, 3, 4)
+    shift = settled[:, :, 3]
     if lift:
-        placement = transform.compose(placement, transform.translate((0.0, 0.0, lift)))
-    size = max(1.0, max(abs(row[3]) for row in placement))
-    rows = []
-    for a, b, c, shift in placement:
-        decimal = round(shift, 6)
-        rows.append((a, b, c, decimal if abs(shift - decimal) <= 1e-14 * size else shift))
-    return (rows[0], rows[1], rows[2])
+        shift += settled[:, :, 2] * lift
+    decimal = np.round(shift, 6)
+    near = np.abs(shift - decimal) <= 1e-14 * np.maximum(1.0, np.abs(shift).max(axis=1, initial=0.0))[:, None]
+    shift[near] = decimal[near]
+    return settled
 
 
 def _before(recipe: Recipe, rung: float) -> tuple[Flaw, ...]:
@@ -257,11 +267,12 @@ def _from_shell(key: str, placed: Placed, rung: float) -> Mesh:
     placement = placed.placements[0]
     lift = -rise(placed.shape) / 2 if placed.centred else 0.0
     shell = tessellate(placed.shape, rung / transform.largest_scale(placement))
-    placement = settled(placement, lift)
+    (array,) = settled((placement,), lift)
+    placement = transform.from_matrix(array)
     faces = shell.faces if transform.determinant(placement) > 0.0 else np.ascontiguousarray(shell.faces[:, ::-1])
     vertices = shell.vertices if placement == transform.IDENTITY else transform.apply(placement, shell.vertices) + 0.0
     source = np.full(len(faces), placed.source, np.int32)
-    return finish(key, vertices, faces, shell.face_surface, source, place(shell.surfaces, np.array(placement)))
+    return finish(key, vertices, faces, shell.face_surface, source, place(shell.surfaces, array))
 
 
 def _import(shell: Shell, number: int) -> Manifold:
@@ -279,12 +290,23 @@ def _import(shell: Shell, number: int) -> Manifold:
     return solid
 
 
-def _combined(solid: Manifold, operation: str, operands: list[Manifold]) -> Manifold:
+def _combined(solid: Manifold, operation: str, operands: list[Manifold], box: F64) -> Manifold:
+    """One step. What is kept is what remains when the rest of a box round everything is cut away: the kernel's
+    intersection leaves sheets of no thickness where solids touch, its difference does not.
+    """
     if operation == "add":
         return Manifold.batch_boolean([solid, *operands], OpType.Add)
     if operation == "cut":
         return Manifold.batch_boolean([solid, *operands], OpType.Subtract)
-    return solid ^ Manifold.batch_boolean(operands, OpType.Add)
+    margin = np.ptp(box, axis=0).max() / 4.0
+    around = Manifold.cube((np.ptp(box, axis=0) + 2.0 * margin).tolist()).translate((box[0] - margin).tolist())
+    return solid - Manifold.batch_boolean([around, *operands], OpType.Subtract)
+
+
+def _common_box(boxes: list[F64]) -> F64:
+    if not boxes:
+        return np.zeros((2, 3))
+    return np.array((np.min(boxes, axis=0)[0], np.max(boxes, axis=0)[1]))
 
 
 def _volume_bounds(low: float, high: float, operation: str, groups: list[_Group]) -> tuple[float, float]:
@@ -339,10 +361,13 @@ def _empty(recipe: Recipe) -> Flaw:
 def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf]) -> Mesh:
     mesh = solid.to_mesh64()
     faces = np.asarray(mesh.tri_verts).astype(np.int32)
-    run_index = np.array(mesh.run_index, np.int64) // 3
-    lengths = np.diff(run_index)
+    lengths = np.diff(np.array(mesh.run_index, np.int64)) // 3
     numbers = np.array([leaf.number for leaf in leaves], np.int64)
-    leaf_of_run = np.searchsorted(numbers, np.array(mesh.run_original_id, np.int64))
+    originals = np.array(mesh.run_original_id, np.int64)
+    leaf_of_run = np.searchsorted(numbers, originals).clip(max=len(numbers) - 1)
+    # A run without triangles may be that of the box round what is kept.
+    if (lengths[numbers[leaf_of_run] != originals] > 0).any():
+        raise SolidError("a face of no shape of the recipe")
     sizes = np.array([len(leaf.surfaces) for leaf in leaves], np.int64)
     first_of_leaf = np.cumsum(sizes) - sizes
     size_of_run = sizes[leaf_of_run]

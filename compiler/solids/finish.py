@@ -10,6 +10,8 @@ from .surfaces import SAME_SURFACE, Surfaces, describe, normals, plane_normals
 
 F64 = NDArray[np.float64]
 I32 = NDArray[np.int32]
+F32 = NDArray[np.float32]
+I64 = NDArray[np.int64]
 
 TANGENT_WITHIN = 0.1
 """Two patches whose normals differ by at most this many degrees along an edge are tangent: an author who rounds a
@@ -24,26 +26,28 @@ def finish(key: str, vertices: F64, faces: I32, face_surface: I32, face_source: 
     3m sides.
     """
     row, surfaces = _in_use(face_surface, surfaces)
-    mate, closed = mates(faces, len(vertices))
-    row, surfaces = _merge(row, surfaces, mate, float(np.abs(vertices).max(initial=0.0)))
+    one, other, closed = paired_sides(faces, len(vertices))
+    met = np.flatnonzero(row[one // 3] != row[other // 3])
+    one_met, other_met = one[met], other[met]
+    row, surfaces = _merge(row, surfaces, one_met // 3, other_met // 3, float(np.abs(vertices).max(initial=0.0)))
     corner = _corner_normals(vertices, faces, row, surfaces)
     return Mesh(
         key=key,
         vertices=vertices,
         faces=faces,
-        corner_normals=corner.astype(np.float32),
+        corner_normals=corner,
         face_patch=row,
         face_origin=np.full(len(faces), FaceOrigin.SURFACE, np.uint8),
         face_source=face_source,
-        edge_kind=_edge_kinds(row, mate, corner),
+        edge_kind=_edge_kinds(row, (one, other), closed, (one_met, other_met), corner),
         patches=describe(surfaces),
         closed=closed,
     )
 
 
-def mates(faces: I32, n_vertices: int) -> tuple[NDArray[np.int64], bool]:
-    """The side on the other face of every side, (m,3) as 3·face + corner, -1 for none; and whether the faces close:
-    every directed side occurs once and its reverse once.
+def paired_sides(faces: I32, n_vertices: int) -> tuple[I64, I64, bool]:
+    """Sides that meet, as 3·face + corner: (k,) and (k,), each pair once; and whether the faces close, every
+    directed side occurring once and its reverse once. A side with no mate, or with several, is in no pair.
     """
     start = faces.astype(np.int64)
     end = start[:, [1, 2, 0]]
@@ -52,14 +56,11 @@ def mates(faces: I32, n_vertices: int) -> tuple[NDArray[np.int64], bool]:
     ordered = undirected[order]
     forward = (start < end).ravel()[order]
     first = np.flatnonzero(ordered[1:] == ordered[:-1])
-    # A pair is good if it stands alone and runs both ways.
     alone = np.ones(len(first), np.bool_)
     alone[1:] &= first[1:] != first[:-1] + 1
     alone[:-1] &= first[1:] != first[:-1] + 1
     first = first[alone & (forward[first] != forward[first + 1])]
-    mate = np.full(3 * len(faces), -1, np.int64)
-    mate[order[first]], mate[order[first + 1]] = order[first + 1], order[first]
-    return mate.reshape(-1, 3), bool(len(faces) > 0 and 2 * len(first) == 3 * len(faces))
+    return order[first], order[first + 1], bool(len(faces) > 0 and 2 * len(first) == 3 * len(faces))
 
 
 def _in_use(face_surface: I32, surfaces: Surfaces) -> tuple[I32, Surfaces]:
@@ -69,13 +70,11 @@ def _in_use(face_surface: I32, surfaces: Surfaces) -> tuple[I32, Surfaces]:
     return number[face_surface], surfaces.take(np.flatnonzero(used))
 
 
-def _merge(row: I32, surfaces: Surfaces, mate: NDArray[np.int64], size: float) -> tuple[I32, Surfaces]:
+def _merge(row: I32, surfaces: Surfaces, face: I64, neighbour: I64, size: float) -> tuple[I32, Surfaces]:
     """Join neighbouring patches on one surface; renumber by first triangle."""
-    sides = np.flatnonzero(mate >= 0)
-    one, other = row[sides // 3], row[mate.ravel()[sides] // 3]
-    met = one < other
     n = len(surfaces)
-    pairs = np.unique(one[met].astype(np.int64) * n + other[met])
+    one, other = row[face].astype(np.int64), row[neighbour].astype(np.int64)
+    pairs = np.unique(np.minimum(one, other) * n + np.maximum(one, other))
     low, high = pairs // n, pairs % n
     same = _same(surfaces, low, high, size)
     root = np.arange(n)
@@ -134,21 +133,32 @@ def _same_curved(
     return np.asarray(same)
 
 
-def _corner_normals(vertices: F64, faces: I32, row: I32, surfaces: Surfaces) -> F64:
+def _corner_normals(vertices: F64, faces: I32, row: I32, surfaces: Surfaces) -> F32:
     """Exact normals (m,3,3). Where a surface has none, the normal at the middle of the triangle, else its own."""
-    corner = np.empty((len(faces), 3, 3))
     flat_rows = surfaces.kind == PatchKind.PLANE
     flat = flat_rows[row]
-    every = np.zeros((len(surfaces), 3))
-    every[flat_rows] = plane_normals(surfaces.take(np.flatnonzero(flat_rows)))
-    corner[flat] = every[row[flat]][:, None, :]
+    corner = np.empty((len(faces), 3, 3), np.float32)
+    if flat.any():
+        every = np.zeros((len(surfaces), 3), np.float32)
+        every[flat_rows] = plane_normals(surfaces.take(np.flatnonzero(flat_rows)))
+        corner[:] = every[row][:, None]
     curved = np.flatnonzero(~flat)
-    if len(curved):
-        points = vertices[faces[curved]].reshape(-1, 3)
-        some = normals(surfaces, np.repeat(row[curved], 3), points).reshape(-1, 3, 3)
+    if not len(curved):
+        return corner
+    # Most vertices lie on one curved patch and are worked out once; those on several, again for each corner.
+    used, of_row = faces[curved], row[curved]
+    vertex_row = np.full(len(vertices), -1, np.int32)
+    vertex_row[used] = of_row[:, None]
+    known = np.flatnonzero(vertex_row >= 0)
+    at_vertex = np.empty((len(vertices), 3), np.float32)
+    at_vertex[known] = normals(surfaces, vertex_row[known], vertices[known])
+    some = at_vertex[used]
+    face, k = np.nonzero(vertex_row[used] != of_row[:, None])
+    some[face, k] = normals(surfaces, of_row[face], vertices[used[face, k]])
+    if np.isin(surfaces.kind, (PatchKind.CONE, PatchKind.TORUS)).any():
         face, k = np.nonzero((some == 0.0).all(axis=2))
-        some[face, k] = _middle_normals(vertices[faces[curved[face]]], row[curved[face]], surfaces)
-        corner[curved] = some
+        some[face, k] = _middle_normals(vertices[used[face]], of_row[face], surfaces)
+    corner[curved] = some
     return corner
 
 
@@ -160,18 +170,19 @@ def _middle_normals(triangles: F64, row: I32, surfaces: Surfaces) -> F64:
     return np.where((normal == 0.0).all(axis=1)[:, None], own, normal)
 
 
-def _edge_kinds(row: I32, mate: NDArray[np.int64], corner: F64) -> NDArray[np.uint8]:
-    mate = mate.ravel()
-    kind = np.full(len(mate), EdgeKind.BORDER, np.uint8)
-    paired = np.flatnonzero(mate >= 0)
-    inside = row[paired // 3] == row[mate[paired] // 3]
-    kind[paired[inside]] = EdgeKind.INSIDE
-    met = paired[~inside]
-    face, k = met // 3, met % 3
-    face2, k2 = mate[met] // 3, mate[met] % 3
+def _edge_kinds(
+    row: I32, paired: tuple[I64, I64], closed: bool, met: tuple[I64, I64], corner: F32
+) -> NDArray[np.uint8]:
+    """Kinds (m,3): `paired` are all sides that have a mate, `met` those where two patches met before merging."""
+    kind = np.full(3 * len(row), EdgeKind.INSIDE if closed else EdgeKind.BORDER, np.uint8)
+    if not closed:
+        kind[np.concatenate(paired)] = EdgeKind.INSIDE
+    apart = row[met[0] // 3] != row[met[1] // 3]
+    one, other = met[0][apart], met[1][apart]
+    face, k, face2, k2 = one // 3, one % 3, other // 3, other % 3
     # A side's far end is the near end of its mate.
-    near = (corner[face, k] * corner[face2, (k2 + 1) % 3]).sum(axis=1)
-    far = (corner[face, (k + 1) % 3] * corner[face2, k2]).sum(axis=1)
+    near = (corner[face, k].astype(np.float64) * corner[face2, (k2 + 1) % 3]).sum(axis=1)
+    far = (corner[face, (k + 1) % 3].astype(np.float64) * corner[face2, k2]).sum(axis=1)
     tangent = np.minimum(near, far) >= np.cos(np.radians(TANGENT_WITHIN))
-    kind[met] = np.where(tangent, EdgeKind.TANGENT, EdgeKind.SHARP)
+    kind[one] = kind[other] = np.where(tangent, EdgeKind.TANGENT, EdgeKind.SHARP)
     return kind.reshape(-1, 3)

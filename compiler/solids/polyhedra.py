@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from itertools import pairwise
 
@@ -12,10 +13,10 @@ from platewright.backend.contract import PatchKind
 
 from ..trigonometry import cos_deg, sin_deg
 from .outline import Curve, Polyline
-from .recipe import Block, Point3, Prism, Pyramid, Wedge
+from .recipe import Block, Prism, Pyramid, Wedge
 from .revolve import disc
 from .shell import Shell, shell
-from .surfaces import plane, surfaces
+from .surfaces import cross, plane, surfaces
 
 F64 = NDArray[np.float64]
 
@@ -126,13 +127,17 @@ def _lifted(points: F64, height: float) -> F64:
 
 
 def _plane(corners: F64) -> F64:
-    """By Newell's sum, which holds for corners that are not quite in one plane."""
-    following = np.roll(corners, -1, axis=0)
-    normal = np.cross(corners, following).sum(axis=0)
-    normal /= np.sqrt((normal**2).sum())
-    # The first side that is long enough to give a direction.
-    sides = following - corners
-    along = sides[int((sides**2).sum(axis=1).argmax())]
-    along = along - (along @ normal) * normal
-    x_axis: Point3 = tuple((along / np.sqrt((along**2).sum())).tolist())
-    return plane(corners[0].tolist(), normal.tolist(), x_axis)
+    """By Newell's sum, which holds for corners that are not quite in one plane; x along the longest side."""
+    points: list[list[float]] = corners.tolist()
+    total = [0.0, 0.0, 0.0]
+    longest, along = -1.0, [1.0, 0.0, 0.0]
+    for a, b in zip(points, points[1:] + points[:1], strict=True):
+        total = [t + c for t, c in zip(total, cross(a, b), strict=True)]
+        side = [q - p for p, q in zip(a, b, strict=True)]
+        # A margin, so that rounding does not choose between equal sides.
+        if math.hypot(*side) > longest * (1.0 + 1e-9):
+            longest, along = math.hypot(*side), side
+    normal = [t / math.hypot(*total) for t in total]
+    slope = sum(a * n for a, n in zip(along, normal, strict=True))
+    along = [a - slope * n for a, n in zip(along, normal, strict=True)]
+    return plane(points[0], normal, [a / math.hypot(*along) for a in along])

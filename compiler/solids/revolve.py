@@ -31,13 +31,17 @@ def revolve(loops: list[Polyline], rung: float) -> Shell:
     pieces: list[tuple[I64, int]] = []
     rows: list[tuple[PatchKind, F64, float, bool]] = []
     bands: dict[tuple[int, int], I64] = {}
+    tables: dict[int, F64] = {1: np.zeros((1, 2))}
     n_vertices = 0
     for loop, rho, count in zip(loops, radius, division, strict=True):
         first = n_vertices + np.concatenate(([0], np.cumsum(count)))
         n_vertices = int(first[-1])
         for r, z, n in zip(rho, loop.points[:, 1], count, strict=True):
-            ring = circle_table(n) * r if n > 1 else np.zeros((1, 2))
-            vertices.append(np.column_stack((ring, np.full(len(ring), z))))
+            if n not in tables:
+                tables[int(n)] = circle_table(int(n))
+            ring = np.empty((n, 3))
+            ring[:, :2], ring[:, 2] = tables[int(n)] * r, z
+            vertices.append(ring)
         row_of = {}
         for k, curve_row in enumerate(loop.curve):
             following = (k + 1) % len(count)

@@ -21,7 +21,7 @@ I32 = NDArray[np.int32]
 
 SAME_SURFACE = 1e-9
 """Two surfaces within this angle (radians) and this part of the size of the solid are one."""
-_BLOCK = 1 << 15
+_WEIGHTS = {int(PatchKind.CYLINDER): (1.0, 1.0, 0.0), int(PatchKind.SPHERE): (1.0, 1.0, 1.0)}
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -68,8 +68,14 @@ def surfaces(rows: Sequence[tuple[PatchKind, F64, float, bool]]) -> Surfaces:
 
 def plane(origin: Sequence[float], normal: Sequence[float], x_axis: Sequence[float]) -> F64:
     """The (3,4) affine of a plane from its outward unit normal and a unit vector in it."""
-    z, x = np.array(normal, np.float64), np.array(x_axis, np.float64)
-    return np.column_stack((x, np.cross(z, x), z, np.array(origin, np.float64)))
+    # Plain numbers: for single vectors they are many times faster than arrays.
+    y_axis = cross(normal, x_axis)
+    return np.array([(x_axis[k], y_axis[k], normal[k], origin[k]) for k in range(3)], np.float64)
+
+
+def cross(a: Sequence[float], b: Sequence[float]) -> tuple[float, float, float]:
+    """The vector product of two vectors."""
+    return (a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0])
 
 
 def upright(radius: float, height: float, origin: Sequence[float]) -> F64:
@@ -103,18 +109,22 @@ def normals(all_surfaces: Surfaces, row: I32, points: F64) -> F64:
     Zero where the surface has none (the apex of a cone, the axis of a torus that reaches it).
     """
     linear = np.linalg.inv(all_surfaces.affine[:, :, :3])
-    shift = -(linear @ all_surfaces.affine[:, :, 3:])
-    inverse = np.concatenate((linear, shift), axis=2)
-    result = np.empty((len(points), 3))
-    # In blocks, because every point takes its own twelve numbers of the inverse.
-    for low in range(0, len(points), _BLOCK):
-        block = slice(low, low + _BLOCK)
-        back = inverse[row[block]]
-        q = _apply(back, points[block])
-        gradient = _gradients(all_surfaces.kind[row[block]], q, all_surfaces.ratio[row[block]])
-        result[block] = _unit(_transposed(back, gradient))
-    result[all_surfaces.flipped[row]] *= -1.0
-    return result
+    inverse = np.concatenate((linear, -(linear @ all_surfaces.affine[:, :, 3:])), axis=2)
+    side = np.where(all_surfaces.flipped, -1.0, 1.0)[:, None, None]
+    # The gradient of a quadric is linear: back, weights of x, y, z, and forward make one matrix.
+    weights = np.array([_WEIGHTS.get(int(kind), (0.0, 0.0, 0.0)) for kind in all_surfaces.kind]).reshape(-1, 3, 1)
+    quadric = side * (linear.transpose(0, 2, 1) @ (weights * inverse))
+    xyz = tuple(np.ascontiguousarray(points[:, k]) for k in range(3))
+    result = np.stack(_mapped(quadric, row, xyz), axis=1)
+    kind = all_surfaces.kind[row]
+    rest = np.flatnonzero((kind != PatchKind.CYLINDER) & (kind != PatchKind.SPHERE))
+    if len(rest):
+        some = row[rest]
+        q = np.stack(_mapped(inverse, some, tuple(x[rest] for x in xyz)), axis=1)
+        gradient = _gradients(kind[rest], q, all_surfaces.ratio[some])
+        forward = np.concatenate((side * linear.transpose(0, 2, 1), np.zeros((len(linear), 3, 1))), axis=2)
+        result[rest] = np.stack(_mapped(forward, some, tuple(gradient[:, k] for k in range(3))), axis=1)
+    return _unit(result)
 
 
 def describe(all_surfaces: Surfaces) -> Patches:
@@ -191,14 +201,16 @@ def _gradients(kind: NDArray[np.uint8], q: F64, ratio: F64) -> F64:
     return gradient
 
 
-def _apply(affine: F64, points: F64) -> F64:
-    moved: F64 = np.einsum("kij,kj->ki", affine[:, :, :3], points) + affine[:, :, 3]
-    return moved
-
-
-def _transposed(affine: F64, vectors: F64) -> F64:
-    turned: F64 = np.einsum("kji,kj->ki", affine[:, :, :3], vectors)
-    return turned
+def _mapped(affines: F64, row: I32, xyz: tuple[F64, ...]) -> tuple[F64, ...]:
+    """Each point under the affine (3,4) of its row, component by component: small tables, long sums."""
+    x, y, z = xyz
+    return tuple(
+        affines[:, k, 0].take(row) * x
+        + affines[:, k, 1].take(row) * y
+        + affines[:, k, 2].take(row) * z
+        + affines[:, k, 3].take(row)
+        for k in range(3)
+    )
 
 
 def _dot(a: F64, b: F64) -> F64:
@@ -207,6 +219,8 @@ def _dot(a: F64, b: F64) -> F64:
 
 
 def _unit(vectors: F64) -> F64:
-    length = np.sqrt(_dot(vectors, vectors))[..., None]
-    unit: F64 = vectors / np.where(length == 0.0, 1.0, length)
+    x, y, z = vectors[..., 0], vectors[..., 1], vectors[..., 2]
+    length = np.sqrt(x * x + y * y + z * z)
+    length[length == 0.0] = 1.0
+    unit: F64 = vectors / length[..., None]
     return unit
