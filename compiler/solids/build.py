@@ -361,7 +361,8 @@ def _empty(recipe: Recipe) -> Flaw:
 def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf]) -> Mesh:
     mesh = solid.to_mesh64()
     faces = np.asarray(mesh.tri_verts).astype(np.int32)
-    lengths = np.diff(np.array(mesh.run_index, np.int64)) // 3
+    run_index = np.array(mesh.run_index, np.int64) // 3
+    lengths = run_index[1:] - run_index[:-1]
     numbers = np.array([leaf.number for leaf in leaves], np.int64)
     originals = np.array(mesh.run_original_id, np.int64)
     leaf_of_run = np.searchsorted(numbers, originals).clip(max=len(numbers) - 1)

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 from platewright.backend.contract import EdgeKind, Mesh, PatchKind
+from platewright.compiler import measure
 from platewright.compiler.solids.build import build
 from platewright.compiler.solids.recipe import Affine, Placed, Primitive, Recipe, Step
 from platewright.compiler.solids.transform import IDENTITY
@@ -53,10 +54,12 @@ def surface_distance(mesh: Mesh, patch: int, points: NDArray[np.float64]) -> NDA
 def check_mesh(mesh: Mesh, rung: float, tolerance: float = 1e-9) -> None:
     """The promises of the contract that hold for every mesh built at a rung.
 
-    Closed, finite, sides paired; frames right-handed and orthonormal; every vertex of a patch within the rung of its
-    surface (twice where it is curved both ways) on the inner side of the chord; normals unit and to the face's side.
+    Closed, finite, sides paired, no sheet without thickness; frames right-handed and orthonormal; every vertex of a
+    patch within the rung of its surface (twice where it is curved both ways); normals unit and to the face's side.
     """
     assert mesh.closed
+    volumes = component_volumes(mesh)
+    assert (np.abs(volumes) > 1e-9 * np.abs(volumes).max()).all()
     assert np.isfinite(mesh.vertices).all()
     assert np.isfinite(mesh.corner_normals).all()
     assert not (mesh.edge_kind == EdgeKind.BORDER).any()
@@ -80,6 +83,13 @@ def check_mesh(mesh: Mesh, rung: float, tolerance: float = 1e-9) -> None:
             both = 2.0 if kind in (PatchKind.SPHERE, PatchKind.TORUS) else 1.0
             assert np.abs(off).max() <= both * rung * (1.0 + 1e-4) + tolerance * size
     check_normals(mesh)
+
+
+def component_volumes(mesh: Mesh) -> NDArray[np.float64]:
+    """Of every connected surface: negative for a cavity, zero for a sheet that no regularised solid has."""
+    a, b, c = (mesh.vertices[mesh.faces[:, k]] - mesh.vertices.mean(axis=0) for k in range(3))
+    six = np.einsum("ij,ij->i", a, np.cross(b, c))
+    return np.bincount(measure.components(mesh.faces, len(mesh.vertices)), six) / 6.0
 
 
 def check_normals(mesh: Mesh) -> None:
