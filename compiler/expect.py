@@ -13,17 +13,18 @@ from platewright.lang.problems import Problem
 from platewright.lang.source import Span
 from platewright.lang.units import AREA, LENGTH, MASS, NUMBER, VOLUME, Dimension
 
+from .arithmetic import COMPARISONS, compare, matched, same
 from .build import Model
 from .expressions import evaluate
 from .flatten import Flattened, Mesher, flatten
-from .graph import Solid, Thing
+from .graph import Solid
 from .measure import area, clearance, volume
 from .mistakes import Mistake, Problems, mistake
-from .modules import THINGS, find_kind
 from .paths import Placed, follow
 from .readings import expression, optional
-from .scope import Scope
-from .values import Quantity, Value, Vector, kind_of, spell
+from .scope import Scope, did_you_mean
+from .subjects import Subject, find_subject
+from .values import Quantity, Value, Vector, kind_of, shown, spell
 
 SIZES = {"width": 0, "depth": 1, "height": 2}
 LATER = ("visible",)
@@ -38,48 +39,31 @@ def judge_facts(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
     """One error for each fact that does not hold. Cost: a mesh at its rung of facts for each part measured by volume,
     area, mass or size; distances between marks need none."""
     problems = Problems()
-    module = model.modules[model.files.main]
-    scope = model.scopes[model.files.main]
-    for line in module.expectations:
+    for line in model.module.expectations:
         with problems.collecting():
-            subject = expression(line.head, "subject")
-            assert isinstance(subject, tree.Path)
-            find_kind(model.modules, module, tree.Path(subject.steps[:1], subject.span), (*THINGS, "see"))
-            measures = _Measures(subject, _subject(model, subject, scope), model, mesher, scope, problems)
-            inner = scope.inside({}, measures)
+            written = expression(line.head, "subject")
+            assert isinstance(written, tree.Path)
+            measures = _Measures(find_subject(model, written, problems), model, mesher, problems)
+            inner = model.scope.inside({}, measures)
             for fact in line.lines:
                 with problems.collecting():
                     _judge(fact, inner, model)
     return problems.all()
 
 
-def _subject(model: Model, subject: tree.Path, scope: Scope) -> Thing:
-    module = model.modules[model.files.main]
-    declared = module.names.get(subject.steps[0].name)
-    if len(subject.steps) == 1 or (declared is not None and declared.kind == "see"):
-        return model.instantiate(subject)
-    root = model.instantiate(tree.Path(subject.steps[:1], subject.steps[0].span))
-    target = follow(root, subject.steps[1:], scope)
-    if not isinstance(target, Placed):
-        raise mistake("wrong-kind", subject.span, f"`{subject.dotted}` is no part or assembly")
-    return target.thing
-
-
 class _Measures:
     """Marks, features and measures of one subject, for the expressions of its facts."""
 
-    def __init__(
-        self, subject: tree.Path, thing: Thing, model: Model, mesher: Mesher, scope: Scope, problems: Problems
-    ) -> None:
-        self.name, self.thing, self.model, self.mesher = subject.steps[-1].name, thing, model, mesher
-        self.scope, self.problems = scope, problems
+    def __init__(self, subject: Subject, model: Model, mesher: Mesher, problems: Problems) -> None:
+        self.name, self.thing = subject.name, subject.thing
+        self.model, self.mesher, self.problems = model, mesher, problems
         self.flattened: Flattened | None = None
 
     def value(self, path: tree.Path) -> Value | None:
         steps = self._steps(path)
         if steps is None:
             return None
-        found = follow(self.thing, steps, self.scope)
+        found = follow(self.thing, steps, self.model.scope)
         if isinstance(found, Placed):
             sentence = f"`{path.dotted}` is a thing, not a value"
             hint = f"a measure makes it one, such as `height({path.dotted})`"
@@ -101,8 +85,8 @@ class _Measures:
             return self._distance(call)
         if name == "clearance":
             return self._clearance(call)
-        placed = self._placed(name, call.positional[0])
-        return self._size(name, placed) if name in SIZES else self._sum(name, placed, call.span)
+        rows = self._rows(self._placed(name, call.positional[0]), call.positional[0])
+        return self._size(name, rows) if name in SIZES else self._sum(name, rows, call.span)
 
     def names(self) -> tuple[str, ...]:
         return (*self._inside(), self.name, *MEASURES)
@@ -122,7 +106,7 @@ class _Measures:
     def _distance(self, call: tree.Call) -> Quantity:
         ends = []
         for each in call.positional:
-            value = evaluate(each, self.scope.inside({}, self))
+            value = evaluate(each, self.model.scope.inside({}, self))
             if not isinstance(value, Vector) or len(value.components) != 3 or value.dimension != LENGTH:
                 raise mistake("wrong-kind", each.span, f"`distance` takes two points, found {kind_of(value)}")
             ends.append(value.components)
@@ -133,31 +117,34 @@ class _Measures:
             raise mistake("wrong-kind", written.span, f"`{name}` takes the path of a part or assembly")
         steps = self._steps(written)
         if steps is None:
-            near = nearest(written.steps[0].name, list(self.names()))
-            hint = f"did you mean `{near}`?" if near else ""
-            raise mistake("unknown-name", written.span, f"`{self.name}` has nothing called `{written.dotted}`", hint)
-        placed = follow(self.thing, steps, self.scope)
+            first = written.steps[0]
+            hint = did_you_mean(nearest(first.name, [self.name, *self._inside()]))
+            raise mistake("unknown-name", first.span, f"`{self.name}` has nothing called `{first.name}`", hint)
+        placed = follow(self.thing, steps, self.model.scope)
         if not isinstance(placed, Placed):
             raise mistake("wrong-kind", written.span, f"`{name}` takes a part or assembly, found {kind_of(placed)}")
         return placed
 
-    def _rows(self, placed: Placed) -> list[int]:
-        """Rows of the solids at a path and below it."""
+    def _rows(self, placed: Placed, written: tree.Expression) -> list[int]:
+        """Rows of the solids at a path and below it. Raises Mistake if there are none."""
         path = f"{self.name}.{placed.path}" if placed.path else self.name
         nodes = self._geometry().geometry.nodes
-        return [k for k, node in enumerate(nodes) if node.mesh >= 0 and f"{node.path}.".startswith(f"{path}.")]
+        rows = [k for k, node in enumerate(nodes) if node.mesh >= 0 and f"{node.path}.".startswith(f"{path}.")]
+        if not rows:
+            raise mistake("nothing-to-measure", written.span, f"`{path}` holds no parts to measure")
+        return rows
 
-    def _size(self, name: str, placed: Placed) -> Quantity:
+    def _size(self, name: str, rows: list[int]) -> Quantity:
         geometry, axis = self._geometry().geometry, SIZES[name]
-        ranges = [geometry.nodes[row].vertex_range for row in self._rows(placed)]
+        ranges = [geometry.nodes[row].vertex_range for row in rows]
         low = min(float(geometry.vertices[a:b, axis].min()) for a, b in ranges)
         high = max(float(geometry.vertices[a:b, axis].max()) for a, b in ranges)
         return Quantity(high - low, LENGTH)
 
-    def _sum(self, name: str, placed: Placed, span: Span) -> Quantity:
+    def _sum(self, name: str, rows: list[int], span: Span) -> Quantity:
         flattened = self._geometry()
         total = 0.0
-        for row in self._rows(placed):
+        for row in rows:
             node = flattened.geometry.nodes[row]
             faces = flattened.geometry.faces[slice(*node.face_range)]
             each = (area if name == "area" else volume)(flattened.geometry.vertices, faces)
@@ -171,7 +158,7 @@ class _Measures:
         return Quantity(total, _DIMENSIONS[name])
 
     def _clearance(self, call: tree.Call) -> Quantity:
-        one, other = (self._rows(self._placed("clearance", each)) for each in call.positional)
+        one, other = (self._rows(self._placed("clearance", each), each) for each in call.positional)
         if set(one) & set(other):
             raise mistake("wrong-parameters", call.span, "one of these is part of the other, so there is no gap")
         if len(one) * len(other) > MAX_PAIRS:
@@ -203,49 +190,64 @@ def _solid_of(geometry: Geometry, row: int) -> tuple[F64, I32]:
 def _judge(fact: tree.Line, scope: Scope, model: Model) -> None:
     """Raise the mistake that the fact does not hold, with what was measured."""
     written = expression(fact.head, "measure")
-    wanted = optional(fact.head, "value")
-    words = _source_text(model, written.span)
+    wanted, within = optional(fact.head, "value"), optional(fact.head, "tolerance")
     if wanted is not None:
-        _judge_equal(fact, written, wanted, scope, words)
+        _judge_equal(fact, written, wanted, scope, model)
         return
-    if isinstance(written, tree.Binary) and written.operator in ("<", "<=", ">", ">=", "is", "is not"):
-        if evaluate(written, scope) is True:
-            return
+    if within is not None:
+        hint = f"write `{_source_text(model, written.span)} = … within …`"
+        raise mistake("wrong-form", within.span, "`within` belongs to a fact with `=`", hint)
+    if isinstance(written, tree.Binary) and written.operator in (*COMPARISONS, "is", "is not"):
         left, right = evaluate(written.left, scope), evaluate(written.right, scope)
-        words = _source_text(model, written.left.span)
-        sentence = f"`{words}` is {spell(left)}, expected {written.operator} {spell(right)}"
-        raise mistake("broken-fact", fact.span, sentence)
+        if not compare(written.operator, left, right, written.span):
+            words = _source_text(model, written.left.span)
+            sentence = f"`{words}` is {shown(left)}, expected {written.operator} {shown(_like(right, left))}"
+            raise mistake("broken-fact", fact.span, sentence)
+        return
     value = evaluate(written, scope)
+    words = _source_text(model, written.span)
     if not isinstance(value, bool):
         hint = f"compare it: `{words} = …`, or with `<=` or `>=`"
-        raise mistake(
-            "wrong-kind", written.span, f"a fact compares; this is only {kind_of(value)}, {spell(value)}", hint
-        )
+        raise mistake("wrong-kind", written.span, f"a fact compares; this is only {kind_of(value)}", hint)
     if not value:
         raise mistake("broken-fact", fact.span, f"`{words}` does not hold")
 
 
-def _judge_equal(fact: tree.Line, written: tree.Expression, wanted: tree.Expression, scope: Scope, words: str) -> None:
+def _like(value: Value, other: Value) -> Value:
+    """The value; a bare 0 with the other's dimension."""
+    if isinstance(value, Quantity) and value.bare_zero and isinstance(other, Quantity):
+        return Quantity(0.0, other.dimension)
+    return value
+
+
+def _judge_equal(
+    fact: tree.Line, written: tree.Expression, wanted: tree.Expression, scope: Scope, model: Model
+) -> None:
     left, right = evaluate(written, scope), evaluate(wanted, scope)
-    if not isinstance(left, Quantity) or not isinstance(right, Quantity):
-        if left != right:
-            raise mistake("broken-fact", fact.span, f"`{words}` is {spell(left)}, expected {spell(right)}")
-        return
-    if left.dimension != right.dimension and not right.bare_zero:
-        raise mistake("wrong-kind", wanted.span, f"`{words}` is {kind_of(left)}, expected {kind_of(right)}")
-    tolerance, spelt = EQUAL * max(abs(left.value), abs(right.value)), ""
     within = optional(fact.head, "tolerance")
-    if within is not None:
-        tolerance, spelt = _tolerance(within, left, right, scope)
-    if not abs(left.value - right.value) <= tolerance + 1e-12 * abs(right.value):
-        expected = spell(Quantity(right.value, left.dimension))
-        raise mistake("broken-fact", fact.span, f"`{words}` is {spell(left)}, expected {expected}{spelt}")
+    if not isinstance(left, Quantity) or not isinstance(right, Quantity):
+        if within is not None:
+            raise mistake("wrong-form", within.span, f"`within` goes with quantities, not with {kind_of(left)}")
+        is_met, expected = same(left, right, fact.span), shown(right)
+    else:
+        left, right = matched(left, right, fact.span, "the two sides of a fact are of one kind")
+        tolerance, spelt = EQUAL * max(abs(left.value), abs(right.value)), ""
+        if within is not None:
+            tolerance, spelt = _tolerance(within, left, right, scope)
+        # The last few bits of a sum are no difference.
+        is_met = abs(left.value - right.value) <= tolerance + 1e-12 * abs(right.value)
+        expected = spell(right) + spelt
+    if not is_met:
+        words = _source_text(model, written.span)
+        raise mistake("broken-fact", fact.span, f"`{words}` is {shown(left)}, expected {expected}")
 
 
 def _tolerance(within: tree.Expression, left: Quantity, right: Quantity, scope: Scope) -> tuple[float, str]:
     value = evaluate(within, scope)
-    if isinstance(value, Quantity) and value.value >= 0:
-        if value.dimension == left.dimension:
+    if isinstance(value, Quantity) and value.value < 0:
+        raise mistake("out-of-range", within.span, f"a tolerance is 0 or more, found {spell(value)}")
+    if isinstance(value, Quantity):
+        if value.dimension == left.dimension or value.bare_zero:
             return value.value, f" within {spell(value)}"
         if value.dimension == NUMBER:
             return value.value * abs(right.value), f" within {100 * value.value:g} %"
@@ -255,7 +257,7 @@ def _tolerance(within: tree.Expression, left: Quantity, right: Quantity, scope: 
 
 
 def _source_text(model: Model, span: Span) -> str:
-    lines = model.files.texts.get(span.file, "").splitlines()
+    lines = model.files.texts.get(span.file, "").split("\n")
     if span.line != span.end_line or span.line > len(lines):
         return "the fact"
     return lines[span.line - 1][span.column - 1 : span.end_column - 1]

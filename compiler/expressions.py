@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping
-from dataclasses import dataclass, field
-from typing import Protocol
+import re
+from collections.abc import Callable
+from typing import Any
 
 from platewright.lang import tree, units
 from platewright.lang.nearest import nearest
@@ -13,8 +13,10 @@ from platewright.lang.source import Span
 from platewright.lang.units import LENGTH, NUMBER, Dimension
 
 from . import limits
+from .arithmetic import arithmetic, compare, finite, matched, negative
 from .functions import FUNCTIONS, Unfit
 from .mistakes import Mistake, mistake
+from .scope import Failed, Formula, Named, Scope, did_you_mean, unknown_name
 from .values import (
     Day,
     Interval,
@@ -31,114 +33,13 @@ from .values import (
 )
 
 
-@dataclass(frozen=True, slots=True)
-class Formula:
-    """A function an author has defined: its parameters and body, and the scope it sees."""
-
-    name: str
-    parameters: tuple[str, ...]
-    body: tree.Expression
-    scope: Scope
-
-
-class Failed:
-    """Stands for a name whose value has been reported as wrong already."""
-
-
-class Paths(Protocol):
-    """Values that stand behind a path of several names: marks, features, measures."""
-
-    def value(self, path: tree.Path) -> Value | None:
-        """The value at the path; None if its first name means nothing here. Raises Mistake."""
-
-    def call(self, call: tree.Call) -> Value | None:
-        """The value of a measure; None if there is none of that name. Raises Mistake."""
-
-    def names(self) -> tuple[str, ...]:
-        """The names a path may start with."""
-
-
-@dataclass(slots=True)
-class Budget:
-    """Counts values computed, against `limits.STEPS`."""
-
-    left: int = limits.STEPS
-
-
-@dataclass(frozen=True, slots=True)
-class Scope:
-    """Names and what they stand for, inside an enclosing scope. `prefixes` leads to the scopes of files seen."""
-
-    names: Mapping[str, Value | Formula | Failed]
-    outer: Scope | None = None
-    prefixes: Mapping[str, Scope] = field(default_factory=dict)
-    paths: Paths | None = None
-    budget: Budget = field(default_factory=Budget)
-
-    def inside(self, names: Mapping[str, Value | Formula | Failed], paths: Paths | None = None) -> Scope:
-        """A scope within this one."""
-        return Scope(names, self, {}, paths, self.budget)
-
-    def find(self, name: str) -> Value | Formula | Failed | None:
-        """What a name stands for, here or outside."""
-        scope: Scope | None = self
-        while scope is not None:
-            if name in scope.names:
-                return scope.names[name]
-            scope = scope.outer
-        return None
-
-    def prefix(self, name: str) -> Scope | None:
-        """The scope of a file seen under that prefix."""
-        scope: Scope | None = self
-        while scope is not None:
-            if name in scope.prefixes:
-                return scope.prefixes[name]
-            scope = scope.outer
-        return None
-
-    def known(self) -> list[str]:
-        """All names in reach, nearest scope first."""
-        found: list[str] = []
-        scope: Scope | None = self
-        while scope is not None:
-            found += [*scope.names, *scope.prefixes, *(scope.paths.names() if scope.paths else ())]
-            scope = scope.outer
-        return found
-
-
 def evaluate(expression: tree.Expression, scope: Scope, depth: int = 0) -> Value:
     """The value of an expression. Raises Mistake. Cost: linear in the expression and the functions it calls."""
-    scope.budget.left -= 1
-    if scope.budget.left < 0:
-        raise mistake("too-much", expression.span, f"this scene computes more than {limits.STEPS:,} values, the limit")
-    match expression:
-        case tree.Number():
-            value, dimension = units.quantity(expression.text, expression.unit)
-            return Quantity(value, dimension, value == 0 and not expression.unit)
-        case tree.Truth():
-            return expression.value
-        case tree.Text():
-            return _text(expression, scope, depth)
-        case tree.Path():
-            return _path(expression, scope)
-        case tree.Call():
-            return _call(expression, scope, depth)
-        case tree.Tuple():
-            return _vector(expression, scope, depth)
-        case tree.Unary():
-            return _unary(expression, scope, depth)
-        case tree.Binary():
-            return _binary(expression, scope, depth)
-        case tree.Choice():
-            chosen = expression.then if truth(expression.condition, scope, depth) else expression.otherwise
-            return evaluate(chosen, scope, depth)
-        case tree.Range():
-            return _interval(expression, scope, depth)
-        case tree.Ratio():
-            return Proportion(float(expression.first), float(expression.second))
-        case tree.Date():
-            return Day(expression.text)
+    scope.budget.spend(1, expression.span)
+    if depth >= limits.LEVELS:
+        sentence = f"operations and functions stand within each other more than {limits.LEVELS} deep, the limit"
+        raise mistake("too-deep", expression.span, sentence)
+    return _EVALUATORS[type(expression)](expression, scope, depth + 1)
 
 
 def truth(expression: tree.Expression, scope: Scope, depth: int = 0) -> bool:
@@ -157,7 +58,8 @@ def quantity(expression: tree.Expression, scope: Scope, dimension: Dimension, wh
     wanted = with_article(dimension_name(dimension))
     hint = ""
     if isinstance(value, Quantity) and value.dimension == NUMBER and isinstance(expression, tree.Number):
-        hint = f"give it a unit, such as `{expression.text} {usual_unit(dimension)[0]}`"
+        unit = usual_unit(dimension)[0]
+        hint = f"give it a unit, such as `{expression.text} {unit}`" if not expression.unit else ""
     raise mistake(
         "wrong-kind", expression.span, f"{what + ': ' if what else ''}expected {wanted}, found {kind_of(value)}", hint
     )
@@ -167,8 +69,9 @@ def vector(expression: tree.Expression, scope: Scope, size: int, dimension: Dime
     """A point or vector of so many components, of `dimension` where given (bare zeros fit). Raises Mistake."""
     value = evaluate(expression, scope)
     if not isinstance(value, Vector) or len(value.components) != size:
-        wanted = {LENGTH: "a point"}.get(dimension or NUMBER, "a vector") + f" of {size} values"
-        raise mistake("wrong-kind", expression.span, f"expected {wanted}, found {kind_of(value)}")
+        wanted = ("a point" if dimension == LENGTH else "a vector") + f" of {size} values"
+        found = kind_of(value) if not isinstance(value, Vector) else f"one of {len(value.components)}"
+        raise mistake("wrong-kind", expression.span, f"expected {wanted}, found {found}")
     if dimension is not None and value.dimension != dimension:
         if not any(value.components):
             return Vector(value.components, dimension)
@@ -199,55 +102,57 @@ def text(expression: tree.Expression, scope: Scope) -> str:
     return value
 
 
-def unknown_name(name: str, span: Span, scope: Scope) -> Mistake:
-    """The mistake of using a name that nothing declares, with the nearest name in reach."""
-    near = nearest(name, [*scope.known(), *FUNCTIONS])
-    return mistake("unknown-name", span, f"nothing here is called `{name}`", f"did you mean `{near}`?" if near else "")
+_EXPONENT = re.compile(r"[eE]([+-]?)0*(\d+)$")
 
 
-def _finite(value: float, span: Span) -> float:
+def literal(written: str, unit: str, span: Span) -> Quantity:
+    """A number as written in the text or in a table; the 0 without a unit fits any dimension. Raises Mistake.
+
+    A number too large, or too small and not 0, to be held is refused before it is computed.
+    """
+    power = _EXPONENT.search(written)
+    if power is not None and (len(power[2]) > 3 or int(power[2]) > limits.EXPONENT):
+        too = "small" if power[1] == "-" else "large"
+        raise mistake("out-of-range", span, f"this number is too {too}: its power of ten passes {limits.EXPONENT}")
+    value, dimension = units.quantity(written, unit)
     if not math.isfinite(value):
-        raise mistake("out-of-range", span, "the result is too large to be a number")
-    return value
+        raise mistake("out-of-range", span, "this number is too large to be held")
+    if value == 0 and re.search("[1-9]", written.split("e")[0]):
+        raise mistake("out-of-range", span, "this number is too small to be held")
+    return Quantity(value + 0.0, dimension, value == 0 and not unit)
+
+
+def _number(expression: tree.Number, scope: Scope, depth: int) -> Value:
+    key = (expression.text, expression.unit)
+    known = scope.budget.literals.get(key)
+    if known is None:
+        known = scope.budget.literals[key] = literal(*key, expression.span)
+    return known
 
 
 def _text(expression: tree.Text, scope: Scope, depth: int) -> str:
-    parts = []
+    parts: list[str] = []
     for part in expression.parts:
-        if isinstance(part, str):
-            parts.append(part)
-        else:
-            value = evaluate(part, scope, depth)
-            parts.append(value if isinstance(value, str) else spell(value))
+        value = part if isinstance(part, str) else evaluate(part, scope, depth)
+        parts.append(value if isinstance(value, str) else spell(value))
     joined = "".join(parts)
     if len(joined) > limits.TEXT:
         raise mistake("too-much", expression.span, f"this text is longer than {limits.TEXT:,} characters, the limit")
     return joined
 
 
-def _path(path: tree.Path, scope: Scope) -> Value:
-    inner: Scope | None = scope
-    while inner is not None:
-        if inner.paths is not None:
-            value = inner.paths.value(path)
-            if value is not None:
-                return value
-        inner = inner.outer
+def _path(path: tree.Path, scope: Scope, depth: int) -> Value:
+    value = scope.path_value(path)
+    if value is not None:
+        return value
     first = path.steps[0]
+    seen = scope.prefix(first.name) if len(path.steps) > 1 else None
+    if seen is not None:
+        return _path(tree.Path(path.steps[1:], path.span), seen, depth)
+    found = _meant(first, scope)
     if len(path.steps) > 1:
-        seen = scope.prefix(first.name)
-        if seen is not None:
-            return _path(tree.Path(path.steps[1:], path.span), seen)
-        if scope.find(first.name) is None:
-            raise unknown_name(first.name, first.span, scope)
-        raise mistake(
-            "unknown-name", path.steps[1].span, f"`{first.name}` is a value; it has no `{path.steps[1].name}`"
-        )
-    found = scope.find(first.name)
-    if found is None:
-        raise unknown_name(first.name, path.span, scope)
-    if isinstance(found, Failed):
-        raise Mistake(None)
+        sentence = f"`{first.name}` is a value; it has no `{path.steps[1].name}`"
+        raise mistake("unknown-name", path.steps[1].span, sentence)
     if isinstance(found, Formula):
         raise mistake("wrong-kind", path.span, f"`{first.name}` is a function", f"call it: `{first.name}(…)`")
     if first.index is not None:
@@ -255,130 +160,119 @@ def _path(path: tree.Path, scope: Scope) -> Value:
     return found
 
 
-def _call(call: tree.Call, scope: Scope, depth: int) -> Value:
-    inner: Scope | None = scope
-    while inner is not None:
-        if inner.paths is not None:
-            measured = inner.paths.call(call)
-            if measured is not None:
-                return measured
-        inner = inner.outer
-    name = call.path.dotted
-    holder, local = _holder(call.path, scope)
-    found = holder.find(local) if holder else None
+def _meant(step: tree.Step, scope: Scope) -> Value | Formula:
+    """What a name stands for. Raises Mistake, without a problem where its value has been reported already."""
+    found = scope.find(step.name)
+    if found is None:
+        if scope.prefix(step.name) is not None:
+            hint = f"name what it declares, such as `{step.name}.size`"
+            raise mistake("wrong-kind", step.span, f"`{step.name}` is the prefix of a file seen, not a value", hint)
+        if step.name in FUNCTIONS:
+            hint = f"call it: `{step.name}(…)`"
+            raise mistake("wrong-kind", step.span, f"`{step.name}` is a function of the language", hint)
+        raise unknown_name(step.name, step.span, scope)
     if isinstance(found, Failed):
         raise Mistake(None)
-    if isinstance(found, Formula):
-        return _apply(found, call, scope, depth)
-    function = FUNCTIONS.get(name)
-    if function is None:
-        if found is not None:
-            raise mistake("wrong-kind", call.path.span, f"`{name}` is {kind_of(found)}, not a function")
-        raise unknown_name(name, call.path.span, scope)
+    return found
+
+
+def _call(call: tree.Call, scope: Scope, depth: int) -> Value:
+    measured = scope.measured(call)
+    if measured is not None:
+        return measured
+    name = call.path.dotted
+    if name in FUNCTIONS:
+        return _built_in(name, call, scope, depth)
+    holder = scope
+    for step in call.path.steps[:-1]:
+        inner = holder.prefix(step.name)
+        if inner is None:
+            _meant(step, holder)
+            raise mistake("wrong-kind", step.span, f"`{step.name}` is a value; it has no functions")
+        holder = inner
+    last = call.path.steps[-1]
+    found = holder.find(last.name)
+    if found is None:
+        raise unknown_name(name, call.path.span, holder)
+    if isinstance(found, Failed):
+        raise Mistake(None)
+    if not isinstance(found, Formula):
+        raise mistake("wrong-kind", call.path.span, f"`{name}` is {kind_of(found)}, not a function")
+    given = _given(found, call, scope, depth)
+    return evaluate(found.body, found.scope.inside(given), depth)
+
+
+def _built_in(name: str, call: tree.Call, scope: Scope, depth: int) -> Value:
     if call.named:
-        raise mistake("wrong-kind", call.named[0].span, f"`{name}` takes values in order, without names")
-    arguments = tuple(evaluate(argument, scope, depth) for argument in call.positional)
+        raise mistake("wrong-parameters", call.named[0].span, f"`{name}` takes values in order, without names")
+    arguments = [evaluate(argument, scope, depth) for argument in call.positional]
     try:
-        value = function(arguments)
+        value = FUNCTIONS[name](tuple(arguments))
     except Unfit as unfit:
-        raise mistake("wrong-kind", call.span, f"`{name}` {unfit}") from None
+        raise mistake("wrong-parameters", call.span, f"`{name}` {unfit}") from None
     except (OverflowError, ValueError):
         raise mistake("out-of-range", call.span, "the result is too large to be a number") from None
     if isinstance(value, Quantity):
-        _finite(value.value, call.span)
+        return Quantity(finite(value.value, call.span), value.dimension, value.bare_zero)
     return value
 
 
-def _holder(path: tree.Path, scope: Scope) -> tuple[Scope | None, str]:
-    """The scope that a dotted function name leads to, and the name in it."""
-    holder: Scope | None = scope
-    for step in path.steps[:-1]:
-        holder = holder.prefix(step.name) if holder else None
-    return holder, path.steps[-1].name
-
-
-def _apply(formula: Formula, call: tree.Call, scope: Scope, depth: int) -> Value:
-    if depth >= limits.NESTING:
-        raise mistake("too-deep", call.span, f"functions call each other more than {limits.NESTING} deep, the limit")
-    if len(call.positional) > len(formula.parameters):
-        raise mistake(
-            "wrong-parameters",
-            call.span,
-            f"`{formula.name}` takes {len(formula.parameters)}, found {len(call.positional)}",
-        )
-    given: dict[str, Value | Formula | Failed] = dict(
-        zip(formula.parameters, (evaluate(p, scope, depth) for p in call.positional), strict=False)
-    )
+def _given(formula: Formula, call: tree.Call, scope: Scope, depth: int) -> dict[str, Named]:
+    """The parameters of a function as called. Raises Mistake."""
+    wanted = formula.parameters
+    if len(call.positional) > len(wanted):
+        takes = {0: "no values", 1: "one value"}.get(len(wanted), f"{len(wanted)} values")
+        sentence = f"`{formula.name}` takes {takes}, found {len(call.positional)}"
+        raise mistake("wrong-parameters", call.span, sentence)
+    given: dict[str, Named] = {}
+    for name, argument in zip(wanted, call.positional, strict=False):
+        given[name] = evaluate(argument, scope, depth)
     for setting in call.named:
-        if setting.name not in formula.parameters:
-            near = nearest(setting.name, list(formula.parameters))
-            hint = f"did you mean `{near}`?" if near else ""
-            raise mistake(
-                "unknown-name", setting.name_span, f"`{formula.name}` has no parameter `{setting.name}`", hint
-            )
+        if setting.name not in wanted:
+            near = nearest(setting.name, wanted)
+            sentence = f"`{formula.name}` has no parameter `{setting.name}`"
+            raise mistake("unknown-name", setting.name_span, sentence, did_you_mean(near))
         if setting.name in given:
             raise mistake("wrong-parameters", setting.span, f"`{setting.name}` is given twice")
         given[setting.name] = evaluate(setting.value, scope, depth)
-    missing = [name for name in formula.parameters if name not in given]
+    missing = [name for name in wanted if name not in given]
     if missing:
         raise mistake("wrong-parameters", call.span, f"`{formula.name}` needs `{missing[0]}`")
-    return evaluate(formula.body, formula.scope.inside(given), depth + 1)
+    return given
 
 
-def _vector(expression: tree.Tuple, scope: Scope, depth: int) -> Vector:
+def _tuple(expression: tree.Tuple, scope: Scope, depth: int) -> Vector:
     components: list[Quantity] = []
     for item in expression.items:
         value = evaluate(item, scope, depth)
         if not isinstance(value, Quantity):
             raise mistake("wrong-kind", item.span, f"expected a value of a point, found {kind_of(value)}")
         components.append(value)
-    dimension = next((c.dimension for c in components if not c.bare_zero), NUMBER)
+    dimension = next((each.dimension for each in components if not each.bare_zero), NUMBER)
     for item, component in zip(expression.items, components, strict=True):
         if component.dimension != dimension and not component.bare_zero:
-            raise mistake(
-                "wrong-kind",
-                item.span,
-                f"the values of a point are of one kind: expected {with_article(dimension_name(dimension))}, "
-                f"found {kind_of(component)}",
-            )
-    return Vector(tuple(c.value for c in components), dimension)
+            wanted = with_article(dimension_name(dimension))
+            sentence = f"the values of a point are of one kind: expected {wanted}, found {kind_of(component)}"
+            raise mistake("wrong-kind", item.span, sentence)
+    return Vector(tuple([each.value for each in components]), dimension)
 
 
-def _interval(expression: tree.Range, scope: Scope, depth: int) -> Interval:
+def _range(expression: tree.Range, scope: Scope, depth: int) -> Interval:
     low, high = evaluate(expression.low, scope, depth), evaluate(expression.high, scope, depth)
     if not isinstance(low, Quantity) or not isinstance(high, Quantity):
         wrong = low if not isinstance(low, Quantity) else high
-        raise mistake("wrong-kind", expression.span, f"a range runs between two values, found {kind_of(wrong)}")
-    low, high = _matched(low, high, expression.span, "a range runs between values of one kind")
+        raise mistake("wrong-kind", expression.span, f"a range runs between two quantities, found {kind_of(wrong)}")
+    low, high = matched(low, high, expression.span, "a range runs between values of one kind")
     if low.value > high.value:
-        raise mistake(
-            "out-of-range", expression.span, f"the range ends before it starts: {spell(low)} .. {spell(high)}"
-        )
+        sentence = f"the range ends before it starts: {spell(low)} .. {spell(high)}"
+        raise mistake("out-of-range", expression.span, sentence, "write the smaller value first")
     return Interval(low, high)
-
-
-def _matched(left: Quantity, right: Quantity, span: Span, what: str) -> tuple[Quantity, Quantity]:
-    """Both with one dimension; a bare 0 takes the other's."""
-    if left.dimension == right.dimension:
-        return left, right
-    if left.bare_zero:
-        return Quantity(0.0, right.dimension), right
-    if right.bare_zero:
-        return left, Quantity(0.0, left.dimension)
-    raise mistake("wrong-kind", span, f"{what}, found {kind_of(left)} and {kind_of(right)}")
 
 
 def _unary(expression: tree.Unary, scope: Scope, depth: int) -> Value:
     if expression.operator == "not":
         return not truth(expression.operand, scope, depth)
-    value = evaluate(expression.operand, scope, depth)
-    match value:
-        case Quantity():
-            return Quantity(0.0 - value.value if value.value else 0.0, value.dimension, value.bare_zero)
-        case Vector():
-            return Vector(tuple(0.0 - c if c else 0.0 for c in value.components), value.dimension)
-        case _:
-            raise mistake("wrong-kind", expression.span, f"a sign needs a number, found {kind_of(value)}")
+    return negative(evaluate(expression.operand, scope, depth), expression.span)
 
 
 def _binary(expression: tree.Binary, scope: Scope, depth: int) -> Value:
@@ -388,114 +282,38 @@ def _binary(expression: tree.Binary, scope: Scope, depth: int) -> Value:
     if operator == "or":
         return truth(expression.left, scope, depth) or truth(expression.right, scope, depth)
     left, right = evaluate(expression.left, scope, depth), evaluate(expression.right, scope, depth)
-    if operator in ("is", "is not"):
-        return _same(left, right, expression.span) == (operator == "is")
-    if operator in ("<", "<=", ">", ">="):
-        return _ordered(operator, left, right, expression.span)
-    return arithmetic(operator, left, right, expression)
+    if operator in ("+", "-", "*", "/", "^"):
+        return arithmetic(operator, left, right, expression)
+    return compare(operator, left, right, expression.span)
 
 
-def _same(left: Value, right: Value, span: Span) -> bool:
-    if isinstance(left, Quantity) and isinstance(right, Quantity):
-        left, right = _matched(left, right, span, "only values of one kind can be compared")
-        return left.value == right.value
-    if type(left) is not type(right):
-        raise mistake(
-            "wrong-kind", span, f"only values of one kind can be compared, found {kind_of(left)} and {kind_of(right)}"
-        )
-    return left == right
+def _choice(expression: tree.Choice, scope: Scope, depth: int) -> Value:
+    chosen = expression.then if truth(expression.condition, scope, depth) else expression.otherwise
+    return evaluate(chosen, scope, depth)
 
 
-_ORDER: dict[str, Callable[[float, float], bool]] = {
-    "<": lambda a, b: a < b,
-    "<=": lambda a, b: a <= b,
-    ">": lambda a, b: a > b,
-    ">=": lambda a, b: a >= b,
+def _constant(expression: tree.Truth | tree.Ratio | tree.Date, scope: Scope, depth: int) -> Value:
+    match expression:
+        case tree.Truth():
+            return expression.value
+        case tree.Ratio():
+            first, second = (literal(each, "", expression.span).value for each in (expression.first, expression.second))
+            return Proportion(first, second)
+        case tree.Date():
+            return Day(expression.text)
+
+
+_EVALUATORS: dict[type, Callable[[Any, Scope, int], Value]] = {
+    tree.Number: _number,
+    tree.Path: _path,
+    tree.Binary: _binary,
+    tree.Tuple: _tuple,
+    tree.Unary: _unary,
+    tree.Call: _call,
+    tree.Choice: _choice,
+    tree.Text: _text,
+    tree.Truth: _constant,
+    tree.Range: _range,
+    tree.Ratio: _constant,
+    tree.Date: _constant,
 }
-
-
-def _ordered(operator: str, left: Value, right: Value, span: Span) -> bool:
-    if not isinstance(left, Quantity) or not isinstance(right, Quantity):
-        wrong = left if not isinstance(left, Quantity) else right
-        raise mistake("wrong-kind", span, f"`{operator}` compares two values, found {kind_of(wrong)}")
-    left, right = _matched(left, right, span, "only values of one kind can be compared")
-    return _ORDER[operator](left.value, right.value)
-
-
-def arithmetic(operator: str, left: Value, right: Value, at: tree.Binary) -> Value:
-    """Sums, differences, products, quotients and powers of quantities and vectors. Raises Mistake."""
-    for value in (left, right):
-        if isinstance(value, Quantity) and value.dimension.place:
-            raise mistake("wrong-kind", at.span, f"a {value.dimension.place} takes no part in arithmetic")
-    match operator, left, right:
-        case ("+" | "-", Quantity(), Quantity()):
-            left, right = _matched(left, right, at.span, f"`{operator}` joins values of one kind")
-            total = left.value + right.value if operator == "+" else left.value - right.value
-            return Quantity(_finite(total, at.span), left.dimension, left.bare_zero and right.bare_zero)
-        case ("+" | "-", Vector(), Vector()):
-            return _vector_sum(operator, left, right, at.span)
-        case ("*", Quantity(), Quantity()):
-            return Quantity(_finite(left.value * right.value, at.span), left.dimension * right.dimension)
-        case ("*", Quantity(), Vector()) | ("*", Vector(), Quantity()):
-            factor, moved = (left, right) if isinstance(left, Quantity) else (right, left)
-            assert isinstance(factor, Quantity) and isinstance(moved, Vector)
-            components = tuple(_finite(c * factor.value, at.span) for c in moved.components)
-            return Vector(components, moved.dimension * factor.dimension)
-        case ("/", Quantity() | Vector(), Quantity()):
-            return _quotient(left, right, at)
-        case ("^", Quantity(), Quantity()):
-            return _power(left, right, at)
-    raise mistake("wrong-kind", at.span, f"`{operator}` cannot join {kind_of(left)} and {kind_of(right)}")
-
-
-def _vector_sum(operator: str, left: Vector, right: Vector, span: Span) -> Vector:
-    sign = 1 if operator == "+" else -1
-    if len(left.components) != len(right.components):
-        raise mistake("wrong-kind", span, "one of these has two values, the other three")
-    if left.dimension != right.dimension and any(left.components) and any(right.components):
-        raise mistake(
-            "wrong-kind", span, f"`{operator}` joins values of one kind, found {kind_of(left)} and {kind_of(right)}"
-        )
-    dimension = left.dimension if any(left.components) else right.dimension
-    pairs = zip(left.components, right.components, strict=True)
-    return Vector(tuple(_finite(a + sign * b, span) for a, b in pairs), dimension)
-
-
-def _quotient(left: Value, right: Quantity, at: tree.Binary) -> Value:
-    if right.value == 0:
-        raise mistake("division-by-zero", at.right.span, "this divides by 0")
-    if isinstance(left, Vector):
-        components = tuple(_finite(c / right.value, at.span) for c in left.components)
-        return Vector(components, left.dimension / right.dimension)
-    assert isinstance(left, Quantity)
-    return Quantity(_finite(left.value / right.value, at.span), left.dimension / right.dimension)
-
-
-def _power(left: Quantity, right: Quantity, at: tree.Binary) -> Quantity:
-    if right.dimension != NUMBER:
-        raise mistake("wrong-kind", at.right.span, f"expected a number as the power, found {kind_of(right)}")
-    if left.dimension != NUMBER and (right.value != math.floor(right.value) or abs(right.value) > 9):
-        raise mistake("wrong-kind", at.right.span, f"{kind_of(left)} can only be raised to a whole power up to 9")
-    if left.value == 0 and right.value < 0:
-        raise mistake("division-by-zero", at.span, "0 cannot be raised to a negative power")
-    if left.value < 0 and right.value != math.floor(right.value):
-        raise mistake("out-of-range", at.span, "a negative number can only be raised to a whole power")
-    try:
-        value = _raised(left.value, right.value)
-    except OverflowError:
-        value = math.inf
-    dimension = NUMBER if left.dimension == NUMBER else left.dimension ** int(right.value)
-    return Quantity(_finite(value, at.span), dimension)
-
-
-def _raised(base: float, power: float) -> float:
-    """Whole powers by multiplication, the same on every processor; others by the platform's `pow`."""
-    if power != math.floor(power) or abs(power) > 1024:
-        return float(base**power)
-    result, factor, left = 1.0, base, int(abs(power))
-    while left:
-        if left & 1:
-            result *= factor
-        factor *= factor
-        left >>= 1
-    return result if power >= 0 else 1.0 / result

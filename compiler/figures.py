@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import replace
 from typing import Literal
 
 import numpy as np
 from platewright.backend import camera, contract
-from platewright.backend.contract import F64, Projection
+from platewright.backend.contract import F64
 from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Problem, is_error
@@ -15,84 +15,28 @@ from platewright.lang.source import Span
 
 from . import limits
 from .build import Model
-from .expressions import Scope, evaluate, text
+from .expressions import evaluate, text
 from .flatten import Flattened, Mesher, flatten
+from .frames import RESOLUTION_DPI, Frame, Spec, central_frame, parallel_frame
 from .graph import Solid, Thing, walk
-from .lightings import DEFAULT, Sources, lights_for, read_lighting
-from .materials import said_twice
-from .mistakes import Problems, mistake
+from .lightings import DEFAULT, Sources, lights_for
+from .mistakes import Mistake, Problems, mistake
 from .modules import find_kind
-from .paths import Placed, follow
 from .placement import positive_length
-from .readings import expression, optional, word
+from .readings import LATER, expression, optional, word
+from .scope import Scope, did_you_mean
 from .solids.bounds import bounds
 from .solids.ladder import first_at_most
 from .solids.transform import matrix
+from .subjects import find_subject
 from .values import Proportion, kind_of
-from .viewpoints import STANDARD_SIDES, Central, Parallel, Viewpoint, read_viewpoint, standard
+from .viewpoints import STANDARD_SIDES, Parallel, Viewpoint, standard
 
 ERROR_ON_PAPER_MM = 0.02
 """The chord error on paper that a figure's rung keeps to, at its nearest point."""
 
-WIDTH_MM, MARGIN_MM, RESOLUTION_DPI = 84.0, 2.0, 600.0
 DRAWABLE: tuple[Literal["png", "tiff"], ...] = ("png", "tiff")
 NOT_YET = ("svg", "pdf", "eps")
-
-STANDARD_SCALES = tuple(
-    ratio for power in (1e3, 1e2, 1e1, 1.0, 1e-1, 1e-2, 1e-3, 1e-4) for ratio in (5 * power, 2 * power, power)
-)
-"""Scales of ISO 5455 (1, 2 and 5 times the powers of ten), largest first."""
-
-ONCE = (
-    "show",
-    "width",
-    "size",
-    "scale",
-    "true projection",
-    "margin",
-    "drawn as",
-    "files",
-    "title",
-    "alt",
-    "description",
-)
-"""Words that may stand once in a figure."""
-
-Style = Literal["tone", "survey part", "survey depth", "survey facing"]
-
-
-@dataclass(frozen=True, slots=True)
-class Spec:
-    """What a figure says, with its values fixed and its defaults filled in. Lengths are mm on paper."""
-
-    name: str
-    subject: Thing
-    path: str
-    viewpoint: Viewpoint
-    sources: Sources
-    span: Span
-    width: float | None = None
-    at_most: float | None = None
-    height: float | None = None
-    scale: float | Literal["standard"] | None = None
-    true_projection: bool = False
-    margin: float = MARGIN_MM
-    style: Style = "tone"
-    says_style: bool = True
-    files: tuple[Literal["png", "tiff"], ...] = ("png",)
-    title: str = ""
-    alt: str = ""
-    description: str = ""
-
-
-@dataclass(frozen=True, slots=True)
-class Frame:
-    """A page and the projection onto it. `magnification` is mm on paper a model mm at the nearest point."""
-
-    width: float
-    height: float
-    projection: Projection
-    magnification: float
 
 
 def read_figure(model: Model, line: tree.Line, name: str) -> tuple[Spec | None, tuple[Problem, ...]]:
@@ -110,7 +54,7 @@ def default_figure(model: Model, span: Span) -> tuple[Spec | None, tuple[Problem
         root, thing = only_root(model, span)
         viewpoint = standard("isometric")
         assert viewpoint is not None
-        return Spec(root, thing, root, viewpoint, DEFAULT, thing.span, says_style=False), problems.all()
+        return Spec(root, thing, root, viewpoint, DEFAULT, thing.span), problems.all()
     return None, problems.all()
 
 
@@ -118,6 +62,8 @@ def only_root(model: Model, span: Span) -> tuple[str, Thing]:
     """The one thing that nothing else places: the one assembly, else the one part. Raises Mistake."""
     assemblies = [name for name in model.roots if not isinstance(model.things[name], Solid)]
     candidates = assemblies or list(model.roots)
+    if not model.is_whole:
+        raise Mistake(None)
     if len(candidates) == 1:
         return candidates[0], model.things[candidates[0]]
     if not candidates:
@@ -150,79 +96,66 @@ class _Reading:
     def __init__(self, model: Model, line: tree.Line, name: str) -> None:
         self.model, self.line, self.name = model, line, name
         self.problems = Problems()
-        self.scope: Scope = model.scopes[model.files.main]
-        self.module = model.modules[model.files.main]
+        self.scope: Scope = model.scope
 
     def spec(self) -> Spec | None:
-        said: dict[str, Span] = {}
         lines: dict[str, tree.Line] = {}
         for line in self.line.lines:
-            if line.word in ONCE:
-                said_twice(line, said, self.problems)
-            lines.setdefault(line.word, line)
+            if line.head.row not in LATER:
+                lines.setdefault(line.word, line)
         if "size" in lines and "width" in lines:
             self.problems.error("said-twice", lines["width"].head.word_span, "`size` states the width already")
         found: Spec | None = None
         with self.problems.collecting():
             found = self._subject(lines.get("show"))
-        if found is None:
-            return None
-        changes: dict[str, object] = {"says_style": "drawn as" in lines}
+        changes: dict[str, object] = {}
         for each, line in lines.items():
             with self.problems.collecting():
                 changes.update(self._read(each, line.head))
-        return _replaced(found, changes)
+        return replace(found, **changes) if found is not None else None  # type: ignore[arg-type]
 
     def _subject(self, line: tree.Line | None) -> Spec:
         viewpoint, sources = standard("isometric"), DEFAULT
         assert viewpoint is not None
         if line is None:
             root, thing = only_root(self.model, self.line.head.span)
-            return Spec(self.name, thing, root, viewpoint, sources, self.line.span)
+            return Spec(self.name, thing, root, viewpoint, sources, self.line.head.span)
+        view, lighting = optional(line.head, "viewpoint"), optional(line.head, "lighting")
+        with self.problems.collecting():
+            if isinstance(view, tree.Path):
+                viewpoint = self._viewpoint(view)
+        with self.problems.collecting():
+            if isinstance(lighting, tree.Path):
+                sources = self._lighting(lighting)
         written = expression(line.head, "subject")
         assert isinstance(written, (tree.Path, tree.Call))
-        thing, path = self._thing(written)
-        view = optional(line.head, "viewpoint")
-        if isinstance(view, tree.Path):
-            viewpoint = self._viewpoint(view)
-        lighting = optional(line.head, "lighting")
-        if isinstance(lighting, tree.Path):
-            here, declaration = find_kind(self.model.modules, self.module, lighting, ("lighting",))
-            sources = read_lighting(declaration.line, self.model.scopes[here.file], self.problems)
-        return Spec(self.name, thing, path, viewpoint, sources, self.line.span)
-
-    def _thing(self, written: tree.Path | tree.Call) -> tuple[Thing, str]:
-        """The thing shown and its path: a part or assembly by name, or something placed in one."""
-        if isinstance(written, tree.Call):
-            return self.model.instantiate(written), written.path.dotted
-        first = written.steps[0]
-        declared = self.module.names.get(first.name)
-        if len(written.steps) == 1 or (declared is not None and declared.kind == "see"):
-            return self.model.instantiate(written), written.dotted
-        root = self.model.instantiate(tree.Path((first,), first.span))
-        target = follow(root, written.steps[1:], self.scope)
-        if not isinstance(target, Placed):
-            raise mistake("wrong-kind", written.span, f"`{written.dotted}` is a mark or feature; a figure shows things")
-        return target.thing, f"{first.name}.{target.path}"
+        subject = find_subject(self.model, written, self.problems)
+        return Spec(self.name, subject.thing, subject.path, viewpoint, sources, self.line.head.span)
 
     def _viewpoint(self, path: tree.Path) -> Viewpoint:
-        if len(path.steps) == 1 and path.dotted not in self.module.names:
+        module = self.model.module
+        if len(path.steps) == 1 and path.dotted not in module.names:
             found = standard(path.dotted)
             if found is not None:
                 return found
-            known = [
-                *(n for n, each in self.module.names.items() if each.kind == "viewpoint"),
-                *STANDARD_SIDES,
-                "isometric",
-            ]
-            near = nearest(path.dotted, known)
-            hint = f"did you mean `{near}`?" if near else "declare it with `viewpoint`, or take front, top, isometric …"
+            if path.dotted in module.broken:
+                raise Mistake(None)
+            declared = (name for name, each in module.names.items() if each.kind == "viewpoint")
+            near = nearest(path.dotted, [*declared, *STANDARD_SIDES, "isometric"])
+            hint = did_you_mean(near) or "declare it with `viewpoint`, or take front, top, isometric …"
             raise mistake("unknown-name", path.span, f"there is no viewpoint `{path.dotted}`", hint)
-        here, declaration = find_kind(self.model.modules, self.module, path, ("viewpoint",))
-        viewpoint = read_viewpoint(declaration.line, self.model.scopes[here.file], self.problems)
+        here, declaration = find_kind(self.model.modules, module, path, ("viewpoint",))
+        viewpoint = self.model.viewpoints[here.file, declaration.name]
         if viewpoint is None:
-            raise mistake("no-projection", declaration.span, f"the viewpoint `{path.dotted}` states no projection")
+            raise Mistake(None)
         return viewpoint
+
+    def _lighting(self, path: tree.Path) -> Sources:
+        here, declaration = find_kind(self.model.modules, self.model.module, path, ("lighting",))
+        sources = self.model.lightings[here.file, declaration.name]
+        if sources is None:
+            raise Mistake(None)
+        return sources
 
     def _read(self, each: str, head: tree.Reading) -> dict[str, object]:
         match each:
@@ -277,17 +210,11 @@ class _Reading:
                     "not-drawn-yet", each.span, f"files of kind `{kind}` are not drawn yet", "png or tiff"
                 )
             elif kind not in DRAWABLE:
-                near = nearest(kind, [*DRAWABLE, *NOT_YET])
-                hint = f"did you mean `{near}`?" if near else "png or tiff"
+                hint = did_you_mean(nearest(kind, [*DRAWABLE, *NOT_YET])) or "png or tiff"
                 self.problems.error("unknown-name", each.span, f"there is no kind of file called `{kind}`", hint)
             else:
                 found += [drawable for drawable in DRAWABLE if drawable == kind]
         return tuple(dict.fromkeys(found))
-
-
-def _replaced(spec: Spec, changes: dict[str, object]) -> Spec:
-    values = {name: getattr(spec, name) for name in Spec.__dataclass_fields__}
-    return Spec(**(values | changes))
 
 
 class _Planner:
@@ -380,119 +307,3 @@ def _box_corners(thing: Thing, name: str) -> F64:
                 )
             corners.append((boxes[id(entry.thing)] @ matrix(entry.placement).T)[:, :3])
     return np.concatenate(corners)
-
-
-def parallel_frame(spec: Spec, viewpoint: Parallel, points: F64) -> Frame:
-    """The page of a parallel projection of world points (n,3). Raises Mistake where the content does not fit."""
-    low, high = camera.extents(viewpoint.axes, points)
-    wide, tall = float(high[0] - low[0]), float(high[1] - low[1])
-    ratio = 1.0 if spec.true_projection else camera.along_axes(viewpoint.axes)
-    if spec.scale is None:
-        width, height, magnification = _fitted(spec, wide, tall)
-    else:
-        width, height, magnification = _scaled(spec, wide, tall, ratio)
-    _check_page(spec, width, height)
-    right, up, _ = (np.array(each) for each in (viewpoint.axes.right, viewpoint.axes.up, viewpoint.axes.sight))
-    middle = right * (low[0] + high[0]) / 2 + up * (low[1] + high[1]) / 2
-    projection = camera.parallel(viewpoint.axes, magnification, (width / 2, height / 2), middle, magnification / ratio)
-    return Frame(width, height, projection, magnification)
-
-
-def _fitted(spec: Spec, wide: float, tall: float) -> tuple[float, float, float]:
-    """Width, height and magnification of a page that content of a size in model mm is fitted to."""
-    width = spec.width if spec.width is not None else WIDTH_MM
-    free = _free(spec, width)
-    room = spec.height if spec.height is not None else spec.at_most
-    choices = [free / wide] if wide > 0 else []
-    if room is not None and tall > 0:
-        choices.append(_free(spec, room) / tall)
-    if not choices:
-        choices = [free / tall] if tall > 0 else [1.0]
-    magnification = min(choices)
-    height = spec.height if spec.height is not None else tall * magnification + 2 * spec.margin
-    return width, max(height, 0.1), magnification
-
-
-def _scaled(spec: Spec, wide: float, tall: float, ratio: float) -> tuple[float, float, float]:
-    """As `_fitted`, at the scale stated, or at the largest standard one that fits."""
-    room = spec.height if spec.height is not None else spec.at_most
-    scale = spec.scale
-    if scale == "standard":
-        width = spec.width if spec.width is not None else WIDTH_MM
-        free_wide, free_tall = _free(spec, width), _free(spec, room) if room is not None else np.inf
-        fitting = [
-            each for each in STANDARD_SCALES if wide * each * ratio <= free_wide and tall * each * ratio <= free_tall
-        ]
-        if not fitting:
-            raise mistake("out-of-range", spec.span, "no standard scale is small enough for this page")
-        scale = fitting[0]
-    assert isinstance(scale, float)
-    magnification = scale * ratio
-    needs_wide, needs_tall = (side * magnification + 2 * spec.margin for side in (wide, tall))
-    width = spec.width if spec.width is not None else needs_wide
-    height = spec.height if spec.height is not None else needs_tall
-    slack = 1e-6
-    if needs_wide > width + slack or needs_tall > (room if room is not None else needs_tall) + slack:
-        sentence = f"at this scale the figure needs {needs_wide:.1f} mm by {needs_tall:.1f} mm of paper with its margin"
-        raise mistake("does-not-fit", spec.span, sentence, "a smaller scale or a larger page")
-    return max(width, 0.1), max(height, 0.1), magnification
-
-
-def _free(spec: Spec, side: float) -> float:
-    free = side - 2 * spec.margin
-    if free <= 0:
-        raise mistake("does-not-fit", spec.span, f"margins of {spec.margin:g} mm leave no paper of {side:g} mm")
-    return free
-
-
-def _check_page(spec: Spec, width: float, height: float) -> None:
-    if max(width, height) > limits.PAPER_MM:
-        sentence = f"the page would be {width:.0f} mm by {height:.0f} mm; {limits.PAPER_MM:g} mm is the limit"
-        raise mistake("out-of-range", spec.span, sentence, "state a `size`, or a height with `at most`")
-
-
-def central_frame(spec: Spec, viewpoint: Central, points: F64) -> Frame:
-    """The page of a central projection of world points (n,3). The eye is never moved. Raises Mistake."""
-    unit = camera.central(viewpoint.eye, viewpoint.toward, 1.0, (0.0, 0.0))
-    on_page, depth = camera.to_page(unit, points)
-    ahead = np.isfinite(depth)
-    if not ahead.any():
-        raise mistake("nothing-in-view", spec.span, "the subject lies behind the eye")
-    width = spec.width if spec.width is not None else WIDTH_MM
-    distance = float(np.linalg.norm(np.subtract(viewpoint.toward, viewpoint.eye)))
-    low, high = on_page[ahead].min(axis=0), on_page[ahead].max(axis=0)
-    held = _held_distance(spec, viewpoint, width, distance)
-    if held is None and not ahead.all():
-        hint = "move the eye off, or state a `lens` or an `angle of view`"
-        raise mistake(
-            "nothing-in-view", spec.span, "part of the subject lies behind the eye, so it cannot be fitted", hint
-        )
-    wide, tall = float(high[0] - low[0]), float(high[1] - low[1])
-    if held is None:
-        width, height, principal = _fitted(spec, wide, tall)
-        origin = (width / 2 - principal * (low[0] + high[0]) / 2, height / 2 - principal * (low[1] + high[1]) / 2)
-    else:
-        principal = held
-        room = spec.height if spec.height is not None else spec.at_most
-        height = spec.height if spec.height is not None else min(tall * principal + 2 * spec.margin, room or np.inf)
-        middle = 0.0 if spec.height is not None else principal * float(low[1] + high[1]) / 2
-        origin = (width / 2, height / 2 - middle)
-    _check_page(spec, width, height)
-    projection = camera.central(viewpoint.eye, viewpoint.toward, principal, (float(origin[0]), float(origin[1])))
-    # Points nearer than a twentieth of the way to the target do not drive the chord error: it would grow without bound.
-    nearest_mm = max(float((-1.0 / depth[ahead]).min()), distance / 20)
-    return Frame(width, float(height), projection, principal / nearest_mm)
-
-
-def _held_distance(spec: Spec, viewpoint: Central, width: float, distance: float) -> float | None:
-    """The principal distance on paper that a lens, an angle of view or a scale fixes.
-
-    None where the figure is fitted.
-    """
-    if isinstance(spec.scale, float):
-        return spec.scale * distance
-    if viewpoint.angle is not None:
-        return camera.principal_distance_of_angle(viewpoint.angle, width)
-    if viewpoint.lens is not None:
-        return camera.principal_distance_of_lens(viewpoint.lens, viewpoint.film, width)
-    return None

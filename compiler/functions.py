@@ -142,7 +142,7 @@ def _ceiling(arguments: tuple[Value, ...]) -> Value:
 
 
 def _round(arguments: tuple[Value, ...]) -> Value:
-    return _stepped(arguments, lambda number: math.floor(number + 0.5))
+    return _stepped(arguments, round)
 
 
 def _length(arguments: tuple[Value, ...]) -> Value:

@@ -32,9 +32,10 @@ class Mark:
 @dataclass(frozen=True, slots=True)
 class FeatureCopy:
     """What one `add` or `cut` line made, in the part's frame: middle, axis, end of the axis, diameter if it is
-    round.
+    round, and what stands in brackets behind its name.
     """
 
+    label: str
     centre: Point
     axis: Point
     top: Point
@@ -43,7 +44,7 @@ class FeatureCopy:
 
 @dataclass(frozen=True, slots=True)
 class Feature:
-    """A named feature of a part and its copies, counted from 1."""
+    """A named feature of a part and its copies; none where its `when` held for no copy."""
 
     name: str
     copies: tuple[FeatureCopy, ...]
@@ -52,7 +53,7 @@ class Feature:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Solid:
-    """A part with its parameters fixed."""
+    """A part with its parameters fixed. `n_shapes` counts the shapes it is made of, with all copies."""
 
     name: str
     recipe: Recipe
@@ -60,6 +61,7 @@ class Solid:
     marks: tuple[Mark, ...]
     features: tuple[Feature, ...]
     span: Span
+    n_shapes: int = field(default=1)
 
 
 @dataclass(frozen=True, slots=True)
@@ -73,7 +75,10 @@ class Copy:
 
 @dataclass(frozen=True, slots=True)
 class Occurrence:
-    """One `place` line: a name and its copies. `explodes` is a vector in the assembly's frame, one for each copy."""
+    """One `place` line: a name and its copies; none where its `when` held for no copy.
+
+    `explodes` is a vector in the assembly's frame, one for each copy.
+    """
 
     name: str
     copies: tuple[Copy, ...]

@@ -10,10 +10,11 @@ from platewright.backend.contract import Light
 from platewright.lang import tree
 from platewright.lang.units import ANGLE, ILLUMINANCE, LUMINOUS_FLUX, NUMBER
 
-from .expressions import Scope, quantity
+from .expressions import quantity
 from .mistakes import Problems, mistake
 from .placement import point
-from .readings import expression, optional, word
+from .readings import LATER, expression, optional, word
+from .scope import Scope
 from .trigonometry import cos_deg, sin_deg
 
 Point = tuple[float, float, float]
@@ -65,13 +66,16 @@ def read_lighting(line: tree.Line, scope: Scope, problems: Problems) -> Sources:
     """The sources that a `lighting` declaration states."""
     sources: list[Source] = []
     exposure = 1.0
+    before = problems.n_mistakes
     for each in line.lines:
+        if each.head.row in LATER:
+            continue
         with problems.collecting():
             if each.word == "exposure":
                 exposure = _positive(expression(each.head, "exposure"), scope)
             else:
                 sources.append(_source(each.head, scope))
-    if not sources and not problems.has_errors:
+    if not sources and problems.n_mistakes == before:
         hint = "such as `light from upper left`"
         problems.error("no-light", line.span, "this lighting has no source of light", hint)
     return Sources(tuple(sources), exposure)

@@ -5,11 +5,17 @@ Each is named in the message that enforces it.
 
 from __future__ import annotations
 
-COPIES = 1_000_000
-"""Copies that one line may make, and placed things in one model."""
+COPIES = 100_000
+"""Copies that one line may make, things placed in one model, shapes in one part."""
 
-NESTING = 60
-"""Assemblies within assemblies, parts within parts, functions within functions."""
+NESTING = 32
+"""Assemblies within assemblies, parts within parts."""
+
+LEVELS = 160
+"""Operations within operations, with those of the functions called."""
+
+STEPS = 1_000_000
+"""Values computed and copies made for one variant of a scene."""
 
 FILES = 500
 """Files that one scene may see."""
@@ -17,17 +23,26 @@ FILES = 500
 FILE_BYTES = 16_000_000
 """Size of one file."""
 
-STEPS = 5_000_000
-"""Values computed for one variant of a scene."""
-
 TEXT = 100_000
 """Characters of one text."""
 
 TABLE_ROWS = 200_000
 """Rows of one table."""
 
+EXPONENT = 400
+"""Power of ten of a written number; floats end before it."""
+
+POWERS = 99
+"""Exponent of a base dimension in the dimension of a value."""
+
 LARGEST_MM = 1e9
 """Largest length that geometry may reach."""
+
+SMALLEST_MM = 1e-6
+"""Smallest size of a shape: a nanometre, far below the finest chord error."""
+
+SCALE = 1e6
+"""Largest factor of `scaled`; its inverse is the smallest."""
 
 PAPER_MM = 5_000.0
 """Largest side of a page."""

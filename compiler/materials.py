@@ -10,11 +10,13 @@ import re
 from dataclasses import dataclass
 
 from platewright.lang import tree
-from platewright.lang.source import Span
 from platewright.lang.units import DENSITY, NUMBER
 
-from .expressions import Scope, quantity, text
+from .expressions import quantity, text
 from .mistakes import Problems, mistake
+from .readings import expression, name, word
+from .scope import Scope
+from .values import shortened
 
 RGB = tuple[float, float, float]
 
@@ -43,39 +45,28 @@ PLAIN = Surface("", (255, 255, 255), DIELECTRIC, 0.4, False, 0.0)
 
 def read_material(line: tree.Line, scope: Scope, problems: Problems) -> Surface:
     """The surface a `material` declaration describes; what is wrong in it is reported and left at its default."""
-    name = line.head.get("name")
-    assert isinstance(name, tree.Name)
     colour: tuple[int, int, int] | None = None
-    metal: str | None = None
+    metal = ""
     gloss, density = PLAIN.gloss, 0.0
-    said: dict[str, Span] = {}
     for below in line.lines:
-        said_twice(below, said, problems)
         with problems.collecting():
             match below.word:
                 case "colour":
-                    colour = _colour(_expression(below, "colour"), scope)
+                    colour = _colour(expression(below.head, "colour"), scope)
                 case "metal":
-                    word = below.head.get("metal")
-                    metal = word.text if isinstance(word, tree.Word) else None
+                    metal = word(below.head, "metal")
                 case "gloss":
-                    gloss = _share(_expression(below, "gloss"), scope)
+                    gloss = _share(expression(below.head, "gloss"), scope)
                 case "density":
-                    density = _density(_expression(below, "density"), scope)
-    if metal is None:
-        return Surface(name.text, colour or PLAIN.colour, DIELECTRIC, gloss, False, density)
-    if colour is not None:
-        sentence = "a metal takes its colour from its measured reflectance; `colour` has no effect beside `metal`"
-        problems.warn("no-effect", said["colour"], sentence, "leave one of the two out")
-    reflectance = METALS[metal]
-    return Surface(name.text, _encoded(reflectance), reflectance, gloss, True, density)
-
-
-def said_twice(line: tree.Line, said: dict[str, Span], problems: Problems) -> None:
-    """Report a line whose word may stand once in its block and has stood before; note it otherwise."""
-    if line.word in said:
-        problems.error("said-twice", line.head.word_span, f"`{line.word}` stands here twice", "leave one of them out")
-    said.setdefault(line.word, line.head.word_span)
+                    density = _density(expression(below.head, "density"), scope)
+    named = name(line.head).text
+    if not metal:
+        return Surface(named, colour or PLAIN.colour, DIELECTRIC, gloss, False, density)
+    for below in line.lines:
+        if below.word == "colour":
+            sentence = "a metal takes its colour from its measured reflectance; `colour` has no effect beside `metal`"
+            problems.warn("no-effect", below.span, sentence, "leave one of the two out")
+    return Surface(named, _encoded(METALS[metal]), METALS[metal], gloss, True, density)
 
 
 def linear(colour: tuple[int, int, int]) -> RGB:
@@ -84,32 +75,26 @@ def linear(colour: tuple[int, int, int]) -> RGB:
     return red, green, blue
 
 
-def _expression(line: tree.Line, slot: str) -> tree.Expression:
-    value = line.head.get(slot)
-    assert value is not None and not isinstance(value, (tree.Name, tree.Word, tree.Reading, tuple))
-    return value
-
-
-def _colour(expression: tree.Expression, scope: Scope) -> tuple[int, int, int]:
-    written = text(expression, scope)
-    if not re.fullmatch(r"#[0-9a-fA-F]{6}", written):
+def _colour(written: tree.Expression, scope: Scope) -> tuple[int, int, int]:
+    colour = text(written, scope)
+    if not re.fullmatch(r"#[0-9a-fA-F]{6}", colour):
         hint = 'write it as `"#rrggbb"`, two hexadecimal digits each for red, green and blue'
-        raise mistake("wrong-kind", expression.span, f'expected a colour, found "{written}"', hint)
-    red, green, blue = (int(written[k : k + 2], 16) for k in (1, 3, 5))
+        raise mistake("wrong-kind", written.span, f'expected a colour, found "{shortened(colour)}"', hint)
+    red, green, blue = (int(colour[k : k + 2], 16) for k in (1, 3, 5))
     return red, green, blue
 
 
-def _share(expression: tree.Expression, scope: Scope) -> float:
-    share = quantity(expression, scope, NUMBER)
+def _share(written: tree.Expression, scope: Scope) -> float:
+    share = quantity(written, scope, NUMBER)
     if not 0 <= share <= 1:
-        raise mistake("out-of-range", expression.span, f"expected 0 % to 100 %, found {100 * share:g} %")
+        raise mistake("out-of-range", written.span, f"expected 0 % to 100 %, found {100 * share:g} %")
     return share
 
 
-def _density(expression: tree.Expression, scope: Scope) -> float:
-    density = quantity(expression, scope, DENSITY) * 1000.0  # the base unit is g/mm3
+def _density(written: tree.Expression, scope: Scope) -> float:
+    density = quantity(written, scope, DENSITY) * 1000.0  # the base unit is g/mm3
     if density <= 0:
-        raise mistake("out-of-range", expression.span, "a density is more than 0")
+        raise mistake("out-of-range", written.span, "a density is more than 0")
     return density
 
 

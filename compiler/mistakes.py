@@ -28,10 +28,16 @@ class Problems:
 
     def __init__(self) -> None:
         self._found: dict[tuple[str, Span, str, str], Problem] = {}
+        self._n_mistakes = 0
 
     def add(self, problem: Problem) -> None:
         """Take in one problem."""
+        self._n_mistakes += problem.severity is Severity.ERROR
         self._found.setdefault((problem.code, problem.span, problem.sentence, problem.within), problem)
+
+    def note_known(self) -> None:
+        """Count a mistake whose problem has been taken in before."""
+        self._n_mistakes += 1
 
     def extend(self, problems: tuple[Problem, ...]) -> None:
         """Take in several."""
@@ -55,6 +61,11 @@ class Problems:
         return tuple(self._found.values())
 
     @property
+    def n_mistakes(self) -> int:
+        """How many errors were found, and how many mistakes whose error had been found before."""
+        return self._n_mistakes
+
+    @property
     def has_errors(self) -> bool:
         """Whether anything found stops output."""
         return any(problem.severity is Severity.ERROR for problem in self._found.values())
@@ -74,4 +85,6 @@ class _Collecting:
             return False
         if found.problem is not None:
             self._problems.add(found.problem)
+        else:
+            self._problems.note_known()
         return True

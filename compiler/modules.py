@@ -1,7 +1,8 @@
-"""Names of a file: what it declares, what it uses, and in which order its values can be computed."""
+"""Names of a file: what it declares, and the way from a path to a declaration."""
 
 from __future__ import annotations
 
+from bisect import bisect_left
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
@@ -14,7 +15,7 @@ from .functions import CONSTANTS, FUNCTIONS
 from .mistakes import Mistake, Problems, mistake
 from .project import Files
 from .readings import name as declared_name
-from .readings import parameters
+from .scope import did_you_mean
 
 DECLARED = (
     "material",
@@ -35,17 +36,24 @@ THINGS = ("part", "assembly")
 
 @dataclass(frozen=True, slots=True)
 class Declaration:
-    """One declared name. `kind` is the word that declares it: `given`, `derived`, `see`, `part` ..."""
+    """One declared name. `kind` is the word that declares it: `given`, `derived`, `see`, `part` ...
+
+    `is_faulty` if lines of it could not be read: what is left may be checked, but is not what was meant.
+    """
 
     kind: str
     name: str
     span: Span
     line: tree.Line
+    is_faulty: bool = False
 
 
 @dataclass(frozen=True, slots=True)
 class Module:
-    """The names one file declares. Figures and variants name files and folders, so each has a space of its own."""
+    """The names one file declares. Figures and variants name files and folders, so each has a space of its own.
+
+    `broken` are names that lines which could not be read would have declared; `has_faults` says there are such lines.
+    """
 
     file: str
     names: Mapping[str, Declaration]
@@ -53,20 +61,22 @@ class Module:
     variants: Mapping[str, Declaration]
     prefixes: Mapping[str, str]
     expectations: tuple[tree.Line, ...]
+    broken: frozenset[str]
+    has_faults: bool
+
+    @property
+    def declarations(self) -> Iterator[Declaration]:
+        """All that the file declares: names, figures, variants."""
+        yield from (*self.names.values(), *self.figures.values(), *self.variants.values())
 
 
 Modules = Mapping[str, Module]
 
 
 def gather(files: Files) -> tuple[Modules, tuple[Problem, ...]]:
-    """The modules of all files, with problems for names declared twice and for parameters and parts never used."""
+    """The modules of all files, with problems for names declared twice in one space."""
     problems = Problems()
-    modules = {file: _module(files, scene, problems) for file, scene in files.scenes.items()}
-    used = _used(modules)
-    for module in modules.values():
-        _nested_names(module, problems)
-    _unused(modules[files.main], used[files.main], problems)
-    return modules, problems.all()
+    return {file: _module(files, scene, problems) for file, scene in files.scenes.items()}, problems.all()
 
 
 def find(modules: Modules, module: Module, path: tree.Path) -> tuple[Module, Declaration]:
@@ -75,7 +85,7 @@ def find(modules: Modules, module: Module, path: tree.Path) -> tuple[Module, Dec
     for step in path.steps[:-1]:
         declaration = here.names.get(step.name)
         if declaration is None:
-            raise _unknown(step, here, "")
+            raise _unknown(step, here)
         if declaration.kind != "see":
             raise mistake("unknown-name", step.span, f"`{step.name}` is no prefix of a file seen")
         file = here.prefixes.get(step.name)
@@ -85,7 +95,7 @@ def find(modules: Modules, module: Module, path: tree.Path) -> tuple[Module, Dec
     last = path.steps[-1]
     found = here.names.get(last.name)
     if found is None:
-        raise _unknown(last, here, "")
+        raise _unknown(last, here)
     return here, found
 
 
@@ -99,7 +109,7 @@ def find_kind(modules: Modules, module: Module, path: tree.Path, kinds: tuple[st
         names = [name for name, each in here.names.items() if each.kind in kinds]
         near = nearest(path.steps[-1].name, names)
         related = (Related(found.span, "declared here"),)
-        raise mistake("wrong-kind", path.span, sentence, f"did you mean `{near}`?" if near else "", related)
+        raise mistake("wrong-kind", path.span, sentence, did_you_mean(near), related)
     return here, found
 
 
@@ -114,30 +124,31 @@ def _described(kind: str) -> str:
     }.get(kind, f"a {kind}")
 
 
-def _unknown(step: tree.Step, module: Module, wanted: str) -> Mistake:
-    near = nearest(step.name, list(module.names))
-    return mistake(
-        "unknown-name",
-        step.span,
-        f"nothing here is called `{step.name}`",
-        f"did you mean `{near}`?" if near else wanted,
-    )
+def _unknown(step: tree.Step, module: Module) -> Mistake:
+    if step.name in module.broken:
+        return Mistake(None)
+    near = nearest(step.name, module.names)
+    return mistake("unknown-name", step.span, f"nothing here is called `{step.name}`", did_you_mean(near))
 
 
 def _module(files: Files, scene: tree.Scene, problems: Problems) -> Module:
     names: dict[str, Declaration] = {}
     figures: dict[str, Declaration] = {}
     variants: dict[str, Declaration] = {}
-    for declaration in _declarations(scene):
+    for declaration in _declarations(scene, sorted(files.faults.get(scene.file, ()))):
         space = {"figure": figures, "variants": variants}.get(declaration.kind, names)
         declare(declaration, space, problems)
     prefixes = {prefix: target for prefix, target, _ in files.sees.get(scene.file, ())}
     expectations = tuple(line for line in scene.lines if line.word == "expect")
-    return Module(scene.file, names, figures, variants, prefixes, expectations)
+    broken, has_faults = frozenset(scene.broken), bool(files.faults.get(scene.file))
+    return Module(scene.file, names, figures, variants, prefixes, expectations, broken, has_faults)
 
 
-def _declarations(scene: tree.Scene) -> Iterator[Declaration]:
-    for line in scene.lines:
+def _declarations(scene: tree.Scene, faults: Sequence[int]) -> Iterator[Declaration]:
+    ends = [*(line.span.line for line in scene.lines[1:]), scene.span.end_line + 1]
+    for line, end in zip(scene.lines, ends, strict=False):
+        # A line that could not be read belongs to the declaration above it.
+        is_faulty = bisect_left(faults, line.span.line) < bisect_left(faults, end)
         if line.word in ("given", "derived"):
             for below in line.lines:
                 name = declared_name(below.head)
@@ -147,7 +158,7 @@ def _declarations(scene: tree.Scene) -> Iterator[Declaration]:
             yield Declaration("see", name.text, name.span, line)
         elif line.word in (*DECLARED, "figure", "variants"):
             name = declared_name(line.head)
-            yield Declaration(line.word, name.text, name.span, line)
+            yield Declaration(line.word, name.text, name.span, line, is_faulty)
 
 
 def declare(declaration: Declaration, space: dict[str, Declaration], problems: Problems) -> None:
@@ -167,81 +178,18 @@ def declare(declaration: Declaration, space: dict[str, Declaration], problems: P
     space[declaration.name] = declaration
 
 
-def _nested_names(module: Module, problems: Problems) -> None:
-    """No name is declared twice in nested scopes."""
-    for declaration in module.names.values():
-        inner: dict[str, Declaration] = {}
-        for parameter in parameters(declaration.line):
-            _declare_inside(
-                Declaration("given", parameter.name, parameter.span, declaration.line), module, inner, problems
-            )
-        if declaration.kind not in ("given", "derived"):
-            for line in declaration.line.lines:
-                if line.word == "derived":
-                    for below in line.lines:
-                        name = declared_name(below.head)
-                        _declare_inside(Declaration("derived", name.text, name.span, below), module, inner, problems)
+def names_in(node: object, into_brackets: bool = True) -> Iterator[tree.Path]:
+    """Every path in an expression, a reading or a line, however deep, in the order of the text.
 
-
-def _declare_inside(
-    declaration: Declaration, module: Module, inner: dict[str, Declaration], problems: Problems
-) -> None:
-    outer = module.names.get(declaration.name)
-    if outer is not None:
-        related = (Related(outer.span, "declared here first"),)
-        sentence = f"`{declaration.name}` is declared outside already; inside it would mean something else"
-        problems.error("duplicate-name", declaration.span, sentence, "rename one", related)
-    else:
-        declare(declaration, inner, problems)
-
-
-def order(depends: Mapping[str, Sequence[str]]) -> tuple[list[str], list[list[str]]]:
-    """Names so that each stands after those it depends on, and the circles that make that impossible.
-
-    Names in a circle, and names that depend on one, are left out of the order. Cost: linear.
+    Those in the brackets of others are left out where asked: they may be names of copies.
     """
-    done: dict[str, bool] = {}
-    sequence: list[str] = []
-    circles: list[list[str]] = []
-    for start in depends:
-        if start in done:
-            continue
-        trail: list[str] = [start]
-        pending = [iter(depends[start])]
-        inside = {start: 0}
-        sound = [True]
-        while pending:
-            following = next(pending[-1], None)
-            if following is None:
-                finished = trail.pop()
-                pending.pop()
-                del inside[finished]
-                is_sound = sound.pop()
-                done[finished] = is_sound
-                if is_sound:
-                    sequence.append(finished)
-                elif sound:
-                    sound[-1] = False
-            elif following in inside:
-                circles.append([*trail[inside[following] :], following])
-                sound[-1] = False
-            elif following in done:
-                sound[-1] = sound[-1] and done[following]
-            elif following in depends:
-                inside[following] = len(trail)
-                trail.append(following)
-                pending.append(iter(depends[following]))
-                sound.append(True)
-    return sequence, circles
-
-
-def names_in(node: object) -> Iterator[tree.Path]:
-    """Every path in an expression, a reading or a line, however deep, in the order of the text."""
     pending: list[object] = [node]
     while pending:
         found = pending.pop()
         if isinstance(found, tree.Path):
             yield found
+            if not into_brackets:
+                continue
         pending.extend(reversed(_parts(found)))
 
 
@@ -274,41 +222,3 @@ def _parts(node: object) -> list[object]:
         case tuple():
             return list(node)
     return []
-
-
-def _used(modules: Modules) -> dict[str, dict[str, dict[str, None]]]:
-    """For each file, the names used anywhere and the names of the declarations that use them."""
-    used: dict[str, dict[str, dict[str, None]]] = {file: {} for file in modules}
-
-    def note(module: Module, path: tree.Path, user: str) -> None:
-        here = module
-        for step in path.steps:
-            used[here.file].setdefault(step.name, {})[user] = None
-            target = here.prefixes.get(step.name)
-            if target is None or target not in modules:
-                return
-            here = modules[target]
-
-    for module in modules.values():
-        spaces = (*module.names.values(), *module.figures.values(), *module.variants.values())
-        for declaration in spaces:
-            for path in names_in(declaration.line):
-                note(module, path, declaration.name)
-        for line in module.expectations:
-            for path in names_in(line):
-                note(module, path, "")
-    return used
-
-
-def _unused(module: Module, used: Mapping[str, Mapping[str, None]], problems: Problems) -> None:
-    shows = bool(module.figures) or any(each.kind == "assembly" for each in module.names.values())
-    for declaration in module.names.values():
-        users = [user for user in used.get(declaration.name, ()) if user != declaration.name]
-        if declaration.kind == "given" and not users:
-            sentence = f"the parameter `{declaration.name}` is never used"
-            problems.warn("unused-parameter", declaration.span, sentence, "use it or take it out")
-        if declaration.kind == "part" and shows and not users:
-            sentence = f"the part `{declaration.name}` is never placed"
-            problems.warn(
-                "never-placed", declaration.span, sentence, "place it in an assembly, show it, or take it out"
-            )

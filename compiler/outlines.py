@@ -9,10 +9,11 @@ from platewright.lang.source import Span
 from platewright.lang.units import LENGTH
 
 from . import limits
-from .expressions import Scope, vector
+from .expressions import vector
 from .mistakes import mistake
 from .placement import positive_length
 from .readings import expression, optional, word
+from .scope import Scope
 from .solids.recipe import ArcTo, LineTo, Loop, Outline
 
 Point2 = tuple[float, float]

@@ -9,16 +9,20 @@ from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Related
 from platewright.lang.source import Span
+from platewright.lang.units import NUMBER
 
-from .expressions import Failed, Formula, Scope, evaluate
+from .arithmetic import same
+from .expressions import evaluate
 from .functions import CONSTANTS
 from .mistakes import Problems, mistake
-from .modules import Declaration, Module, names_in, order
+from .modules import Declaration, Module, names_in
+from .ordering import order
 from .readings import expression, optional, parameters
 from .readings import name as declared_name
-from .values import Interval, Quantity, Value, kind_of, spell
+from .scope import Failed, Formula, Named, Scope, did_you_mean
+from .values import Interval, Quantity, Value, Vector, dimension_name, kind_of, shown, spell, usual_unit
 
-Named = dict[str, "Value | Formula | Failed"]
+Names = dict[str, Named]
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,11 +42,16 @@ def outermost() -> Scope:
 def module_scope(
     module: Module, prefixes: Mapping[str, Scope], settings: tuple[Setting, ...], problems: Problems, outer: Scope
 ) -> Scope:
-    """The parameters and derived values of one file, each computed after those it depends on."""
-    named: Named = {}
+    """The parameters and derived values of one file, each computed after those it depends on.
+
+    Names that stand on lines which could not be read, and prefixes of files that could not, are marked failed.
+    """
+    named: Names = {name: Failed() for name in module.broken if name not in module.names}
+    lost = (name for name, each in module.names.items() if each.kind == "see" and name not in prefixes)
+    named.update((name, Failed()) for name in lost)
     scope = Scope(named, outer, prefixes, None, outer.budget)
     valued = {name: each for name, each in module.names.items() if each.kind in ("given", "derived")}
-    chosen = _accept(settings, valued, problems)
+    chosen = _accept(settings, module, problems)
     for declaration in in_order(valued.values(), named, problems):
         named[declaration.name] = Failed()
         with problems.collecting():
@@ -53,7 +62,7 @@ def module_scope(
     return scope
 
 
-def in_order(declarations: Iterable[Declaration], named: Named, problems: Problems) -> list[Declaration]:
+def in_order(declarations: Iterable[Declaration], named: Names, problems: Problems) -> list[Declaration]:
     """Values in an order in which each can be computed.
 
     Those that depend on themselves are reported and marked failed.
@@ -62,12 +71,12 @@ def in_order(declarations: Iterable[Declaration], named: Named, problems: Proble
     depends = {name: _depends(declaration, valued) for name, declaration in valued.items()}
     sequence, circles = order(depends)
     for circle in circles:
-        way = " needs ".join(f"`{name}`" for name in circle)
-        related = tuple(Related(valued[name].span, "part of the circle") for name in circle[1:-1])
+        way = " needs ".join(f"`{name}`" for name in (circle if len(circle) <= 8 else [*circle[:4], "…", circle[-1]]))
+        related = tuple(Related(valued[name].span, "part of the circle") for name in circle[1:-1][:8])
         sentence = f"this value needs itself: {way}" if len(circle) > 2 else f"`{circle[0]}` needs itself"
         problems.error("circular-value", valued[circle[0]].span, sentence, "", related)
-    left_out = [name for name in valued if name not in set(sequence)]
-    named.update((name, Failed()) for name in left_out)
+    sound = set(sequence)
+    named.update((name, Failed()) for name in valued if name not in sound)
     return [valued[name] for name in sequence]
 
 
@@ -90,7 +99,7 @@ def local_scope(lines: tuple[tree.Line, ...], scope: Scope, problems: Problems) 
                 declarations.append(Declaration("derived", name.text, name.span, below))
     if not declarations:
         return scope
-    named: Named = {}
+    named: Names = {}
     inner = scope.inside(named)
     for declaration in in_order(declarations, named, problems):
         named[declaration.name] = Failed()
@@ -99,20 +108,20 @@ def local_scope(lines: tuple[tree.Line, ...], scope: Scope, problems: Problems) 
     return inner
 
 
-def arguments(declaration: Declaration, call: tree.Call | None, scope: Scope, home: Scope, span: Span) -> Named:
+def arguments(declaration: Declaration, call: tree.Call | None, scope: Scope, home: Scope, span: Span) -> Names:
     """The parameters of a thing: those given in a call, evaluated in `scope`, else its defaults, evaluated at `home`.
 
     A default may use the parameters before it. Raises Mistake.
     """
     wanted = parameters(declaration.line)
     given = _given_arguments(declaration, wanted, call, scope)
-    named: Named = {}
+    named: Names = {}
     inner = home.inside(named)
     for parameter in wanted:
         if parameter.name in given:
             value = given[parameter.name]
             if parameter.default is not None and call is not None:
-                _same_kind(parameter.name, value, evaluate(parameter.default, inner), call.span)
+                value = _same_kind(parameter.name, value, evaluate(parameter.default, inner), call.span)
         elif parameter.default is not None:
             value = evaluate(parameter.default, inner)
         else:
@@ -131,17 +140,14 @@ def _given_arguments(
         return {}
     names = [parameter.name for parameter in wanted]
     if len(call.positional) > len(names):
-        count = {0: "no parameters", 1: "one parameter"}.get(len(names), f"{len(names)} parameters")
-        raise mistake(
-            "wrong-parameters", call.span, f"`{declaration.name}` has {count}, found {len(call.positional)} values"
-        )
+        has = {0: "no parameters", 1: "one parameter"}.get(len(names), f"{len(names)} parameters")
+        found = "one value" if len(call.positional) == 1 else f"{len(call.positional)} values"
+        raise mistake("wrong-parameters", call.span, f"`{declaration.name}` has {has}, found {found}")
     given = {name: evaluate(each, scope) for name, each in zip(names, call.positional, strict=False)}
     for setting in call.named:
         if setting.name not in names:
-            near = nearest(setting.name, names)
-            hint = f"did you mean `{near}`?" if near else ""
             sentence = f"`{declaration.name}` has no parameter `{setting.name}`"
-            raise mistake("unknown-name", setting.name_span, sentence, hint)
+            raise mistake("unknown-name", setting.name_span, sentence, did_you_mean(nearest(setting.name, names)))
         if setting.name in given:
             raise mistake("wrong-parameters", setting.span, f"`{setting.name}` is given twice")
         given[setting.name] = evaluate(setting.value, scope)
@@ -154,30 +160,38 @@ def _depends(declaration: Declaration, valued: Mapping[str, Declaration]) -> lis
     return [name for name in dict.fromkeys(first) if name in valued and name not in own]
 
 
-def _accept(settings: tuple[Setting, ...], valued: Mapping[str, Declaration], problems: Problems) -> dict[str, Setting]:
-    chosen: dict[str, Setting] = {}
-    for setting in settings:
-        declaration = valued.get(setting.name)
-        if declaration is None or declaration.kind != "given":
-            near = nearest(setting.name, [name for name, each in valued.items() if each.kind == "given"])
-            sentence = f"there is no parameter `{setting.name}` to set"
-            if declaration is not None:
-                sentence = f"`{setting.name}` is derived; only parameters under `given` can be set"
-            problems.error("unknown-name", setting.span, sentence, f"did you mean `{near}`?" if near else "")
-        else:
-            chosen[setting.name] = setting
-    return chosen
+def is_given(setting: str, module: Module, span: Span, problems: Problems) -> bool:
+    """Whether a parameter of that name can be set; if not, that is reported at `span`."""
+    declaration = module.names.get(setting)
+    if declaration is not None and declaration.kind == "given":
+        return True
+    if setting not in module.broken:
+        sentence = f"there is no parameter `{setting}` to set"
+        if declaration is not None and declaration.kind == "derived":
+            sentence = f"`{setting}` is derived; only parameters under `given` can be set"
+        near = nearest(setting, [name for name, each in module.names.items() if each.kind == "given"])
+        problems.error("unknown-name", span, sentence, did_you_mean(near))
+    return False
+
+
+def _accept(settings: tuple[Setting, ...], module: Module, problems: Problems) -> dict[str, Setting]:
+    return {each.name: each for each in settings if is_given(each.name, module, each.span, problems)}
 
 
 def _given(declaration: Declaration, setting: Setting | None, scope: Scope) -> Value:
+    """The value of a parameter, within what it may be. Raises Mistake."""
     head = declaration.line.head
     written = expression(head, "default")
     default = evaluate(written, scope)
-    _within_limits(declaration, default, written.span, scope)
+    allowed, choices = _range(declaration, scope), _choices(declaration, scope)
+    kind = allowed.low if allowed is not None else next(iter(choices), default)
+    if isinstance(default, Quantity) and default.bare_zero:
+        default = _same_kind(declaration.name, default, kind, written.span)
+    _within_limits(declaration, default, allowed, choices, written.span)
     if setting is None:
         return default
     value = _same_kind(declaration.name, setting.value, default, setting.span)
-    _within_limits(declaration, value, setting.span, scope)
+    _within_limits(declaration, value, allowed, choices, setting.span)
     return value
 
 
@@ -188,43 +202,63 @@ def _same_kind(name: str, value: Value, default: Value, span: Span) -> Value:
             return value
         if value.bare_zero:
             return Quantity(0.0, default.dimension)
+    elif isinstance(value, Vector) and isinstance(default, Vector):
+        if len(value.components) == len(default.components) and value.dimension == default.dimension:
+            return value
+        if len(value.components) == len(default.components) and not any(value.components):
+            return Vector(value.components, default.dimension)
     elif type(value) is type(default):
         return value
-    raise mistake("wrong-kind", span, f"`{name}` is {kind_of(default)}, found {kind_of(value)}")
+    hint = ""
+    if isinstance(value, Quantity) and isinstance(default, Quantity) and value.dimension == NUMBER:
+        hint = f"give it a unit, such as `{spell(value)} {usual_unit(default.dimension)[0]}`"
+    raise mistake("wrong-kind", span, f"`{name}` is {kind_of(default)}, found {kind_of(value)}", hint)
 
 
-def _within_limits(declaration: Declaration, value: Value, span: Span, scope: Scope) -> None:
-    head = declaration.line.head
-    written = optional(head, "range")
-    related = (
-        (Related(declaration.span, "declared here"),)
-        if span.file != declaration.span.file or span.line != declaration.span.line
-        else ()
-    )
-    if written is not None:
-        allowed = evaluate(written, scope)
-        if not isinstance(allowed, Interval):
+def _range(declaration: Declaration, scope: Scope) -> Interval | None:
+    """What `range` allows. Raises Mistake."""
+    written = optional(declaration.line.head, "range")
+    allowed = evaluate(written, scope) if written is not None else None
+    if written is None or isinstance(allowed, Interval):
+        return allowed if isinstance(allowed, Interval) else None
+    assert allowed is not None
+    raise mistake("wrong-kind", written.span, f"expected a range such as `1 mm .. 5 mm`, found {kind_of(allowed)}")
+
+
+def _choices(declaration: Declaration, scope: Scope) -> list[Value]:
+    """What `one of` offers, of one kind. Raises Mistake."""
+    written = declaration.line.head.get("choices")
+    if not isinstance(written, tuple):
+        return []
+    choices: list[Value] = []
+    for each in written:
+        if not isinstance(each, (tree.Setting, tree.Parameter)):
+            value = evaluate(each, scope)
+            choices.append(value if not choices else _same_kind(declaration.name, value, choices[0], each.span))
+    return choices
+
+
+def _within_limits(
+    declaration: Declaration, value: Value, allowed: Interval | None, choices: list[Value], span: Span
+) -> None:
+    """Raise Mistake for a value that the parameter may not have."""
+    is_elsewhere = (span.file, span.line) != (declaration.span.file, declaration.span.line)
+    related = (Related(declaration.span, "declared here"),) if is_elsewhere else ()
+    if allowed is not None:
+        if not isinstance(value, Quantity) or value.dimension != allowed.low.dimension:
+            sentence = f"the range does not fit: `{declaration.name}` is {kind_of(value)}"
             raise mistake(
-                "wrong-kind", written.span, f"expected a range such as `1 mm .. 5 mm`, found {kind_of(allowed)}"
-            )
-        if not isinstance(value, Quantity) or (value.dimension != allowed.low.dimension and not value.bare_zero):
-            raise mistake(
-                "wrong-kind", written.span, f"the range does not fit: `{declaration.name}` is {kind_of(value)}"
+                "wrong-kind",
+                span,
+                f"{sentence}, its range runs over {dimension_name(allowed.low.dimension)}s",
+                "",
+                related,
             )
         if not allowed.low.value <= value.value <= allowed.high.value:
             sentence = f"`{declaration.name}` is {spell(value)}, outside its range {spell(allowed)}"
             raise mistake("out-of-range", span, sentence, "", related)
-    choices = head.get("choices")
-    if isinstance(choices, tuple):
-        allowed_values = [
-            evaluate(each, scope) for each in choices if not isinstance(each, (tree.Setting, tree.Parameter))
-        ]
-        if value not in allowed_values:
-            options = ", ".join(spell(each) for each in allowed_values)
-            near = (
-                nearest(value, [each for each in allowed_values if isinstance(each, str)])
-                if isinstance(value, str)
-                else None
-            )
-            sentence = f"`{declaration.name}` is {spell(value)}, expected one of {options}"
-            raise mistake("out-of-range", span, sentence, f'did you mean "{near}"?' if near else "", related)
+    if choices and not any(same(value, _same_kind(declaration.name, each, value, span), span) for each in choices):
+        texts = [each for each in choices if isinstance(each, str)]
+        near = nearest(value, texts) if isinstance(value, str) else ""
+        sentence = f"`{declaration.name}` is {shown(value)}, expected one of {', '.join(map(shown, choices))}"
+        raise mistake("out-of-range", span, sentence, f'did you mean "{near}"?' if near else "", related)

@@ -9,12 +9,13 @@ from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.units import LENGTH, NUMBER
 
-from .expressions import Scope, count, evaluate
+from .expressions import evaluate
 from .graph import Assembly, Copy, Feature, Mark, Occurrence, Solid, Thing, bracketed
 from .mistakes import mistake
+from .scope import Scope, did_you_mean
 from .solids.recipe import Affine
 from .solids.transform import IDENTITY, compose, largest_scale
-from .values import Quantity, Value, Vector
+from .values import Quantity, Value, Vector, kind_of, shortened, spell_number
 
 FEATURE_VALUES = ("centre", "axis", "top", "diameter")
 
@@ -58,8 +59,7 @@ def _below(thing: Thing, step: tree.Step) -> Occurrence | Mark | Feature:
         inside.update((feature.name, feature) for feature in thing.features)
     if step.name in inside:
         return inside[step.name]
-    near = nearest(step.name, list(inside))
-    hint = f"did you mean `{near}`?" if near else _listed(list(inside))
+    hint = did_you_mean(nearest(step.name, inside)) or _listed(list(inside))
     raise mistake("unknown-name", step.span, f"`{thing.name}` has nothing called `{step.name}`", hint)
 
 
@@ -71,33 +71,47 @@ def _listed(names: list[str]) -> str:
 
 
 def _copy(occurrence: Occurrence, step: tree.Step, scope: Scope) -> Copy:
+    known = [copy.label for copy in occurrence.copies]
+    return occurrence.copies[_which(occurrence.name, known, step, scope)]
+
+
+def _which(name: str, labels: Sequence[str], step: tree.Step, scope: Scope) -> int:
+    """The row of the copy that a step's brackets name, or of the only one. Raises Mistake."""
+    if not labels:
+        sentence = f"no copy of `{name}` is there: its `when` or `for` leaves none"
+        raise mistake("which-copy", step.span, sentence)
     if step.index is None:
-        if len(occurrence.copies) == 1:
-            return occurrence.copies[0]
-        sentence = f"there are {len(occurrence.copies)} of `{occurrence.name}`; brackets say which"
-        hint = f"such as `{occurrence.name}[{occurrence.copies[0].label}]`"
-        raise mistake("which-copy", step.span, sentence, hint)
-    label = _label(step.index, scope)
-    for copy in occurrence.copies:
-        if copy.label == label:
-            return copy
-    if len(occurrence.copies) == 1:
-        raise mistake("which-copy", step.span, f"there is one `{occurrence.name}`, so it takes no brackets")
-    last = occurrence.copies[-1].label
-    sentence = f"there is no `{occurrence.name}[{label}]`; the {len(occurrence.copies)} copies run from "
-    raise mistake("which-copy", step.span, f"{sentence}[{occurrence.copies[0].label}] to [{last}]")
+        if len(labels) == 1:
+            return 0
+        hint = f"such as `{bracketed(name, labels[0])}`"
+        raise mistake("which-copy", step.span, f"there are {len(labels)} of `{name}`; brackets say which", hint)
+    label = _label(step.index, labels, scope)
+    if label in labels:
+        return labels.index(label)
+    if labels == [""]:
+        raise mistake("which-copy", step.span, f"there is one `{name}`, so it takes no brackets")
+    sentence = f"there is no `{name}[{shortened(label)}]`; the {len(labels)} copies run from [{labels[0]}] to "
+    near = nearest(label, labels)
+    raise mistake("which-copy", step.span, f"{sentence}[{labels[-1]}]", did_you_mean(f"{name}[{near}]" if near else ""))
 
 
-def _label(index: tree.Expression, scope: Scope) -> str:
-    if isinstance(index, tree.Path) and scope.find(index.dotted) is None:
+def _label(index: tree.Expression, labels: Sequence[str], scope: Scope) -> str:
+    """What the brackets say: the name of a table row as it stands, or a value."""
+    if isinstance(index, tree.Path) and (index.dotted in labels or scope.find(index.dotted) is None):
         return index.dotted
     value = evaluate(index, scope)
-    return value if isinstance(value, str) else str(count(index, scope, least=1))
+    if isinstance(value, str):
+        return value
+    if isinstance(value, Quantity) and value.dimension == NUMBER:
+        return spell_number(value.value)
+    raise mistake("wrong-kind", index.span, f"brackets take a count or the name of a row, found {kind_of(value)}")
 
 
 def _mark_value(mark: Mark, placement: Affine, steps: Sequence[tree.Step]) -> Value:
     if steps[0].index is not None:
         raise mistake("which-copy", steps[0].span, f"`{mark.name}` is a mark; brackets count copies")
+    if len(steps) > 2:
+        raise mistake("unknown-name", steps[2].span, f"nothing can follow `{steps[1].name}`")
     if len(steps) == 1 or steps[1].name == "point":
         return _point(mark.point, placement)
     if steps[1].name == "axis" and mark.axis is not None:
@@ -107,14 +121,7 @@ def _mark_value(mark: Mark, placement: Affine, steps: Sequence[tree.Step]) -> Va
 
 
 def _feature_value(feature: Feature, placement: Affine, steps: Sequence[tree.Step], scope: Scope) -> Value:
-    first = steps[0]
-    if first.index is None and len(feature.copies) > 1:
-        sentence = f"there are {len(feature.copies)} of `{feature.name}`; brackets say which"
-        raise mistake("which-copy", first.span, sentence, f"such as `{feature.name}[1]`")
-    number = 1 if first.index is None else count(first.index, scope, least=1)
-    if number > len(feature.copies):
-        raise mistake("which-copy", first.span, f"there are {len(feature.copies)} of `{feature.name}`, found {number}")
-    copy = feature.copies[number - 1]
+    copy = feature.copies[_which(feature.name, [each.label for each in feature.copies], steps[0], scope)]
     wanted = steps[1] if len(steps) > 1 else None
     if len(steps) > 2:
         raise mistake("unknown-name", steps[2].span, f"nothing can follow `{steps[1].name}`")

@@ -10,9 +10,10 @@ from platewright.lang.problems import Related
 from platewright.lang.units import ANGLE, LENGTH, NUMBER
 
 from . import limits
-from .expressions import Scope, count, evaluate, quantity, vector
+from .expressions import count, evaluate, quantity, vector
 from .mistakes import mistake
 from .readings import expression, optional, word
+from .scope import Scope
 from .solids.recipe import Affine
 from .solids.transform import IDENTITY, compose, facing, mirror, scale, translate, turn
 from .values import Vector, kind_of, unit_vector

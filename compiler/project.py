@@ -7,12 +7,14 @@ from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
 
 from platewright.lang import tree
-from platewright.lang.problems import Problem
+from platewright.lang.problems import Problem, is_error
 from platewright.lang.reader import read_scene
 from platewright.lang.source import Span
 
 from . import limits
 from .mistakes import Problems
+from .ordering import order
+from .readings import LATER
 from .tables import Table, read_table
 
 
@@ -28,12 +30,16 @@ Loader = Callable[[str], "bytes | Refusal"]
 
 @dataclass(frozen=True, slots=True)
 class Files:
-    """Parsed scenes and tables by file name, the texts they came from, and where each `see` leads."""
+    """Parsed scenes and tables by file name, the texts they came from, and where each `see` leads.
+
+    `faults` are the lines of each scene that could not be read and have their problem already.
+    """
 
     main: str
     scenes: Mapping[str, tree.Scene]
     tables: Mapping[str, Table]
     texts: Mapping[str, str]
+    faults: Mapping[str, frozenset[int]]
     sees: Mapping[str, tuple[tuple[str, str, Span], ...]]
 
 
@@ -43,6 +49,7 @@ _REASONS = {
     "too large": f"`{{name}}` is larger than {limits.FILE_BYTES:,} bytes, the limit",
     "not a file": "`{name}` is not a file",
     "unreadable": "`{name}` cannot be read",
+    "too many": f"the scene sees more than {limits.FILES} files, the limit",
 }
 
 
@@ -52,10 +59,10 @@ def load(main: str, loader: Loader) -> tuple[Files | None, tuple[Problem, ...]]:
     None only where `main` itself gives no text. Cost: linear in the texts.
     """
     reading = _Reading(loader)
-    start = Span(main, 1, 1, 1, 1)
-    if not reading.scene(main, start):
+    if not reading.read(main):
         return None, reading.problems.all()
-    return Files(main, reading.scenes, reading.tables, reading.texts, reading.sees), reading.problems.all()
+    files = Files(main, reading.scenes, reading.tables, reading.texts, reading.faults, reading.sees)
+    return files, reading.problems.all()
 
 
 class _Reading:
@@ -65,24 +72,16 @@ class _Reading:
         self.scenes: dict[str, tree.Scene] = {}
         self.tables: dict[str, Table] = {}
         self.texts: dict[str, str] = {}
+        self.faults: dict[str, frozenset[int]] = {}
         self.sees: dict[str, tuple[tuple[str, str, Span], ...]] = {}
+        self.refused: set[str] = set()
 
-    def scene(self, main: str, start: Span) -> bool:
-        """Read a scene and what it sees, nearest first; False if the main file gives no text."""
-        pending: list[tuple[str, Span, tuple[str, ...]]] = [(main, start, ())]
+    def read(self, main: str) -> bool:
+        """Read a scene and what it sees, each file once; False if the main file gives no text."""
+        pending: list[tuple[str, Span]] = [(main, Span(main, 1, 1, 1, 1))]
         while pending:
-            name, span, trail = pending.pop()
-            if name in trail:
-                circle = " sees ".join(f"`{step}`" for step in (*trail[trail.index(name) :], name))
-                self.problems.error("circular-see", span, f"files see each other in a circle: {circle}")
-                continue
+            name, span = pending.pop()
             if name in self.scenes:
-                pending.extend((seen, at, (*trail, name)) for _, seen, at in self.sees[name])
-                if len(trail) > limits.NESTING:
-                    self.problems.error(
-                        "too-deep", span, f"files see each other more than {limits.NESTING} deep, the limit"
-                    )
-                    pending.clear()
                 continue
             text = self.text(name, span)
             if text is None:
@@ -92,30 +91,42 @@ class _Reading:
             parsed, problems = read_scene(name, text)
             self.scenes[name] = parsed
             self.problems.extend(problems)
+            self.faults[name] = frozenset(problem.span.line for problem in problems if is_error(problem))
             self.sees[name] = tuple(self._sees(parsed))
-            pending.extend((seen, at, (*trail, name)) for _, seen, at in reversed(self.sees[name]))
+            pending.extend((seen, at) for _, seen, at in reversed(self.sees[name]))
             self._read_tables(parsed)
+        self._report_circles()
         return True
 
+    def _report_circles(self) -> None:
+        """Files that see each other in a circle, each circle once, at the line that closes it."""
+        _, circles = order({file: [seen for _, seen, _ in sees] for file, sees in self.sees.items()})
+        for circle in circles:
+            last, first = circle[-2], circle[-1]
+            at = next(span for _, seen, span in self.sees[last] if seen == first)
+            way = " sees ".join(f"`{step}`" for step in circle)
+            sentence = f"files see each other in a circle: {way}" if len(circle) > 2 else "this file sees itself"
+            self.problems.error("circular-see", at, sentence, "move what both need into a third file")
+
     def text(self, name: str, span: Span) -> str | None:
-        """The text of a file, decoded; None with a problem if there is none."""
-        if len(self.texts) >= limits.FILES:
-            self.problems.error("too-much", span, f"the scene sees more than {limits.FILES} files, the limit")
+        """The text of a file, decoded; None with a problem, given once, if there is none."""
+        if name in self.refused:
             return None
-        answer = self.loader(name)
+        answer = Refusal("too many") if len(self.texts) >= limits.FILES else self.loader(name)
         if isinstance(answer, Refusal):
-            self.problems.error(
-                "no-such-file", span, _REASONS.get(answer.reason, "`{name}` cannot be read").format(name=name)
-            )
+            self.refused.add(name)
+            sentence = _REASONS.get(answer.reason, _REASONS["unreadable"]).format(name=name)
+            self.problems.error("too-much" if answer.reason == "too many" else "no-such-file", span, sentence)
             return None
         try:
             text = answer.decode("utf-8")
         except UnicodeDecodeError as error:
-            line = answer.count(b"\n", 0, error.start) + 1
+            self.refused.add(name)
+            self.texts[name] = answer.decode("utf-8", "replace")
+            before = answer[: error.start].decode("utf-8")
+            line, column = before.count("\n") + 1, len(before) - (before.rfind("\n") + 1) + 1
             sentence = f"this file is not UTF-8: byte {answer[error.start]:#04x} at offset {error.start}"
-            at = Span(name, line, 1, line, 1)
-            self.texts.setdefault(name, answer.decode("utf-8", "replace"))
-            self.problems.error("not-utf-8", at, sentence, "save the file as UTF-8")
+            self.problems.error("not-utf-8", Span(name, line, column, line, column + 1), sentence, "save it as UTF-8")
             return None
         self.texts[name] = text
         return text
@@ -131,7 +142,7 @@ class _Reading:
 
     def _read_tables(self, scene: tree.Scene) -> None:
         for reading in readings(scene.lines):
-            wanted = self._constant(reading.get("table"))
+            wanted = self._constant(reading.get("table")) if reading.row not in LATER else None
             if wanted is None:
                 continue
             target = self._within(scene.file, *wanted)
@@ -167,7 +178,7 @@ def beside(file: str, wanted: str) -> str | None:
     if not wanted or wanted.startswith("/") or "\\" in wanted or "\0" in wanted or ":" in wanted:
         return None
     target = posixpath.normpath(posixpath.join(posixpath.dirname(file), wanted))
-    return None if target.startswith("..") else target
+    return None if target == ".." or target.startswith("../") else target
 
 
 def readings(lines: tuple[tree.Line, ...]) -> Iterator[tree.Reading]:

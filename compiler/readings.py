@@ -3,6 +3,10 @@
 from __future__ import annotations
 
 from platewright.lang import tree
+from platewright.lang.words import ROWS
+
+LATER = frozenset(row.key for row in ROWS if row.later)
+"""Rows of the vocabulary whose work is not built yet; each reading of one has its problem already."""
 
 
 def expression(reading: tree.Reading, slot: str) -> tree.Expression:

@@ -5,13 +5,12 @@ All of it is pure: files come from a loader, meshes from a mesher that may keep 
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from platewright.backend import contract
 from platewright.lang import tree
-from platewright.lang.nearest import nearest
-from platewright.lang.problems import Problem, Severity
+from platewright.lang.problems import Problem, Related, Severity, is_error
 from platewright.lang.reader import read_value
 from platewright.lang.source import Span
 
@@ -20,21 +19,21 @@ from .build import build_model
 from .dump import dump_graph, dump_tree, dump_triangles
 from .expect import judge_facts
 from .expressions import evaluate
-from .figures import Spec, default_figure, plan_figure, read_figure
+from .figures import default_figure, plan_figure, read_figure
 from .flatten import Mesher, flatten
 from .flatten import prove as prove_things
+from .frames import Spec
 from .listing import Listing, list_scene
 from .mistakes import Problems, mistake
-from .modules import Modules, gather
+from .modules import Declaration, Modules, gather
 from .parameters import Setting as Assigned
 from .parameters import outermost
-from .paths import Placed, follow
-from .project import Files, Loader, Refusal, beside, load
-from .readings import name as declared_name
-from .readings import optional, settings
+from .project import Files, Loader, Refusal, load
+from .readings import settings
 from .solids.ladder import first_at_most
-from .tables import Table
-from .values import Value
+from .subjects import find_subject
+from .usage import check_names
+from .variants import Variant, read_variants
 
 Setting = tuple[str, str]
 """A parameter's name and its value as source text."""
@@ -60,24 +59,15 @@ __all__ = [
 ]
 
 
-@dataclass(frozen=True, slots=True)
-class Variant:
-    """One named group of settings, and the `variants` declaration it stands in."""
-
-    name: str
-    set_name: str
-    span: Span
-    settings: tuple[Assigned, ...]
-
-
 @dataclass(frozen=True, slots=True, eq=False)
 class Project:
-    """A scene with all it sees, names checked, variants read."""
+    """A scene with all it sees, names checked, variants read. `known` are the places of what has been reported."""
 
     main: str
     files: Files
     modules: Modules
     variants: tuple[Variant, ...]
+    known: frozenset[tuple[str, Span]]
 
     @property
     def texts(self) -> Mapping[str, str]:
@@ -119,7 +109,11 @@ class Exported:
 
 
 def open_scene(name: str, loader: Loader) -> tuple[Project | None, tuple[Problem, ...]]:
-    """Read a scene and all it sees; check names; read its variants. None where the scene itself cannot be read."""
+    """Read a scene and all it sees; check names; read its variants. None where the scene itself cannot be read.
+
+    What could be read can be built even where there are errors, for more problems in one run: `build` and what follows
+    give none that come of those given here.
+    """
     files, found = load(name, loader)
     if files is None:
         return None, found
@@ -127,8 +121,10 @@ def open_scene(name: str, loader: Loader) -> tuple[Project | None, tuple[Problem
     problems.extend(found)
     modules, named = gather(files)
     problems.extend(named)
-    variants = _variants(files, modules, problems)
-    return Project(name, files, modules, variants), problems.all()
+    problems.extend(check_names(modules, name))
+    variants = read_variants(files, modules, problems)
+    known = frozenset((each.code, each.span) for each in problems.all() if is_error(each))
+    return Project(name, files, modules, variants, known), problems.all()
 
 
 def build(
@@ -139,24 +135,32 @@ def build(
     None where the scene has errors; errors within a figure leave that figure out and the rest whole.
     """
     problems = Problems()
-    given = (*(variant.settings if variant else ()), *_from_texts(settings, problems))
+    given = _chosen(variant.settings if variant else (), _from_texts(settings, problems), problems)
     built, found = build_model(project.files, project.modules, given)
     problems.extend(found)
-    if problems.has_errors:
-        return None, problems.all()
     specs: dict[str, tuple[Built, Spec]] = {}
     names: list[FigureName] = []
     for declaration in project.modules[project.main].figures.values():
-        spec = _figure(project, built, given, declaration.line, declaration.name, problems)
+        spec = _figure(project, built, given, declaration, problems)
         names.append(FigureName(declaration.name, declaration.span, spec[1].files if spec else ("png",)))
         if spec is not None:
             specs[declaration.name] = spec
-    if not names and built.roots:
-        spec_or_none, found = default_figure(built, built.files.scenes[project.main].span)
+    if not names and built.roots and built.is_whole:
+        spec_or_none, _ = default_figure(built, project.files.scenes[project.main].span)
         if spec_or_none is not None:
             specs[spec_or_none.name] = (built, spec_or_none)
             names.append(FigureName(spec_or_none.name, spec_or_none.span, spec_or_none.files))
-    return Model(built, specs, tuple(names), problems.all()), problems.all()
+    news = tuple(each for each in problems.all() if _is_news(each, project))
+    if not built.is_whole or any(is_error(each) and not each.within for each in news):
+        return None, news
+    return Model(built, specs, tuple(names), news), news
+
+
+def _is_news(problem: Problem, project: Project) -> bool:
+    """Whether a problem says more than what was reported when the scene was opened."""
+    if (problem.code, problem.span) in project.known:
+        return False
+    return problem.span.line not in project.files.faults.get(problem.span.file, ())
 
 
 def figure_names(project: Project) -> tuple[str, ...]:
@@ -236,51 +240,58 @@ def _export(
     mesher: Mesher,
     problems: Problems,
 ) -> Exported | None:
-    start = Span("--of", 1, 1, 1, len(path) + 1)
-    if not isinstance(written, tree.Path):
+    if not isinstance(written, (tree.Path, tree.Call)):
+        start = Span("--of", 1, 1, 1, len(path) + 1)
         raise mistake("wrong-form", start, "expected the path of a part or assembly, such as `gauge.funnel`")
-    first = written.steps[0]
-    if first.name not in built.things:
-        near = nearest(first.name, list(built.things))
-        hint = f"did you mean `{near}`?" if near else ""
-        raise mistake("unknown-name", first.span, f"there is no part or assembly `{first.name}`", hint)
-    target = follow(built.things[first.name], written.steps[1:], built.scopes[built.files.main])
-    if not isinstance(target, Placed):
-        raise mistake("wrong-kind", written.span, f"`{path}` is a mark or feature; only things have triangles")
+    subject = find_subject(built, written, problems)
     rung = None if tolerance_mm is None else first_at_most(tolerance_mm)
-    flattened, found = flatten(built.things[first.name], first.name, rung, built.sources, mesher)
+    flattened, found = flatten(subject.thing, subject.path, rung, built.sources, mesher)
     problems.extend(found)
     if flattened is None:
         return None
-    wanted = f"{first.name}.{target.path}" if target.path else first.name
-    nodes = flattened.geometry.nodes
-    rows = tuple(row for row, node in enumerate(nodes) if f"{node.path}.".startswith(f"{wanted}."))
-    return Exported(flattened.geometry, flattened.materials, rows)
+    if not len(flattened.geometry.faces):
+        raise mistake("nothing-to-show", written.span, f"`{subject.path}` holds no parts, so it has no triangles")
+    return Exported(flattened.geometry, flattened.materials, tuple(range(len(flattened.geometry.nodes))))
 
 
 def _figure(
-    project: Project, built: Built, given: tuple[Assigned, ...], line: tree.Line, name: str, problems: Problems
+    project: Project, built: Built, given: tuple[Assigned, ...], declaration: Declaration, problems: Problems
 ) -> tuple[Built, Spec] | None:
     """A figure's spec and the model it shows: its own where it sets parameters."""
     own = Problems()
     more: list[Assigned] = []
-    for each in line.lines:
+    for each in declaration.line.lines:
         if each.word == "with":
             for setting in settings(each.head):
                 with own.collecting():
-                    value = evaluate(setting.value, built.scopes[project.main])
+                    value = evaluate(setting.value, built.scope)
                     more.append(Assigned(setting.name, value, setting.span))
-    if more and not own.has_errors:
-        built, found = build_model(project.files, project.modules, (*given, *more))
-        own.extend(found)
-    spec: Spec | None = None
-    if not own.has_errors:
-        spec, found = read_figure(built, line, name)
-        own.extend(found)
+    chosen = _chosen((), more, own)
+    if chosen and not own.n_mistakes:
+        names = {each.name for each in chosen}
+        kept = tuple(each for each in given if each.name not in names)
+        before = {(each.code, each.span) for each in problems.all()}
+        built, found = build_model(project.files, project.modules, (*kept, *chosen))
+        own.extend(tuple(each for each in found if (each.code, each.span) not in before))
+    spec, found = read_figure(built, declaration.line, declaration.name)
+    own.extend(found)
     for problem in own.all():
-        problems.add(_within(problem, name))
-    parsed = any(each.within == name and each.severity is Severity.ERROR for each in problems.all())
-    return None if spec is None or parsed else (built, spec)
+        if problem.severity is Severity.ERROR or not chosen or problem.within:
+            problems.add(_within(problem, declaration.name))
+    is_sound = built.is_whole and not own.n_mistakes and not declaration.is_faulty
+    return (built, spec) if is_sound and spec is not None else None
+
+
+def _chosen(base: Sequence[Assigned], more: Sequence[Assigned], problems: Problems) -> tuple[Assigned, ...]:
+    """Settings of which each parameter has one, those of `more` before those of `base`."""
+    named: dict[str, Assigned] = {each.name: each for each in base}
+    said: dict[str, Assigned] = {}
+    for each in more:
+        if each.name in said:
+            related = (Related(said[each.name].span, "set here first"),)
+            problems.error("said-twice", each.span, f"`{each.name}` is set twice", "leave one out", related)
+        said.setdefault(each.name, each)
+    return tuple((named | said).values())
 
 
 def _within(problem: Problem, figure: str) -> Problem:
@@ -299,47 +310,4 @@ def _from_texts(given: tuple[Setting, ...], problems: Problems) -> list[Assigned
         if written is not None and not wrong:
             with problems.collecting():
                 found.append(Assigned(name, evaluate(written, outermost()), Span(file, 1, 1, 1, len(text) + 1)))
-    return found
-
-
-def _variants(files: Files, modules: Modules, problems: Problems) -> tuple[Variant, ...]:
-    variants: list[Variant] = []
-    for declaration in modules[files.main].variants.values():
-        table = _table(declaration.line, files)
-        if table is not None:
-            variants += _from_table(table, declaration.name)
-        for line in declaration.line.lines:
-            name = declared_name(line.head)
-            variants.append(Variant(name.text, declaration.name, name.span, tuple(_settings(line, problems))))
-    seen: dict[str, Variant] = {}
-    for variant in variants:
-        if variant.name in seen:
-            sentence = f"two variants are called `{variant.name}`"
-            problems.error("duplicate-name", variant.span, sentence, "rename one")
-        seen.setdefault(variant.name, variant)
-    return tuple(variants)
-
-
-def _table(line: tree.Line, files: Files) -> Table | None:
-    written = optional(line.head, "table")
-    if not isinstance(written, tree.Text):
-        return None
-    target = beside(files.main, "".join(part for part in written.parts if isinstance(part, str)))
-    return files.tables.get(target) if target else None
-
-
-def _from_table(table: Table, set_name: str) -> list[Variant]:
-    variants = []
-    for label, span, row in zip(table.labels, table.row_spans, table.rows, strict=True):
-        cells: list[tuple[str, Value | None]] = list(zip(table.columns[1:], row[1:], strict=True))
-        chosen = tuple(Assigned(column, value, span) for column, value in cells if value is not None)
-        variants.append(Variant(label, set_name, span, chosen))
-    return variants
-
-
-def _settings(line: tree.Line, problems: Problems) -> list[Assigned]:
-    found: list[Assigned] = []
-    for setting in settings(line.head):
-        with problems.collecting():
-            found.append(Assigned(setting.name, evaluate(setting.value, outermost()), setting.span))
     return found

@@ -6,10 +6,11 @@ from platewright.lang import tree
 from platewright.lang.units import LENGTH
 
 from . import limits
-from .expressions import Scope, count, vector
+from .expressions import count, vector
 from .mistakes import mistake
 from .placement import positive_length
 from .readings import expression, optional
+from .scope import Scope
 from .solids.recipe import (
     Block,
     Cone,

@@ -5,6 +5,7 @@ from __future__ import annotations
 import csv
 import io
 import re
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from platewright.lang import units
@@ -13,111 +14,165 @@ from platewright.lang.problems import Problem, Related
 from platewright.lang.source import Span
 
 from . import limits
+from .expressions import literal
 from .mistakes import Problems, mistake
-from .values import Quantity, Value
+from .scope import did_you_mean
+from .values import Value, shortened
 
 
 @dataclass(frozen=True, slots=True)
 class Table:
-    """Columns by name in order, and rows of values; None where a cell is empty. The first column names the row."""
+    """Columns by name in order, and rows of values; None where a cell is empty.
+
+    `labels` are the first cells as written, which name the rows; `cell_spans` has a span for each cell, `header` one
+    for each column.
+    """
 
     file: str
     columns: tuple[str, ...]
     rows: tuple[tuple[Value | None, ...], ...]
     labels: tuple[str, ...]
-    row_spans: tuple[Span, ...]
+    header: tuple[Span, ...]
+    cell_spans: tuple[tuple[Span, ...], ...]
 
 
-_NUMBER = re.compile(r"-?\d{1,40}(\.\d{1,40})?(e[+-]?\d{1,3})?")
+@dataclass(frozen=True, slots=True)
+class _Record:
+    cells: list[str]
+    spans: list[Span]
+
+
+_NUMBER = re.compile(r"[+-]?\d{1,40}(\.\d{1,40})?([eE][+-]?\d{1,9})?")
+_UNFIT = re.compile(r'[\[\]"]')
 
 
 def read_table(file: str, text: str) -> tuple[Table | None, tuple[Problem, ...]]:
     """Read a CSV text (RFC 4180) whose header gives each column a name and, after a space, its unit: `length mm`.
 
-    A column without unit holds numbers, yes and no, or texts. Cost: linear in the text.
+    A column without unit holds numbers throughout, or yes and no throughout, or else texts. Cost: linear in the text.
     """
     problems = Problems()
-    try:
-        lines = _lines(text)
-    except csv.Error as error:
-        problems.error("bad-table", Span(file, 1, 1, 1, 1), f"this is no CSV table: {error}")
+    records: list[_Record] = []
+    with problems.collecting():
+        records = list(_records(file, text))
+        if not records:
+            raise mistake("bad-table", Span(file, 1, 1, 1, 1), "the table is empty; its first line names the columns")
+    if not records:
         return None, problems.all()
-    if not lines:
-        problems.error("bad-table", Span(file, 1, 1, 1, 1), "the table is empty; its first line names the columns")
-        return None, problems.all()
-    if len(lines) > limits.TABLE_ROWS:
-        sentence = f"the table has more than {limits.TABLE_ROWS:,} rows, the limit"
-        problems.error("too-much", Span(file, limits.TABLE_ROWS, 1, limits.TABLE_ROWS, 1), sentence)
-        return None, problems.all()
-    number, header = lines[0]
-    columns = _header(file, number, header, problems)
-    rows, labels, spans = [], [], []
-    for number, cells in lines[1:]:
-        span = Span(file, number, 1, number, 1 + sum(map(len, cells)) + len(cells) - 1)
-        if len(cells) != len(columns):
-            problems.error("bad-table", span, f"expected {len(columns)} values in this row, found {len(cells)}")
-            continue
-        row: list[Value | None] = []
-        for (name, unit), cell in zip(columns, cells, strict=True):
-            with problems.collecting():
-                row.append(_cell(cell.strip(), name, unit, span))
-        if len(row) == len(columns):
-            rows.append(tuple(row))
-            labels.append(cells[0].strip())
-            spans.append(span)
-    _unlike(labels, spans, problems)
+    header, body = records[0], records[1:]
+    columns = _header(header, problems)
+    whole: list[_Record] = []
+    for record in body:
+        if len(record.cells) != len(columns):
+            span = record.spans[0].to(record.spans[-1])
+            sentence = f"expected {len(columns)} values in this row, found {len(record.cells)}"
+            problems.error("bad-table", span, sentence)
+        else:
+            whole.append(record)
+    values = [_column(name, unit, number, whole, problems) for number, (name, unit) in enumerate(columns)]
+    _label(whole, problems)
     if problems.has_errors:
         return None, problems.all()
-    return Table(file, tuple(name for name, _ in columns), tuple(rows), tuple(labels), tuple(spans)), problems.all()
+    names, labels = tuple(name for name, _ in columns), tuple(record.cells[0] for record in whole)
+    spans = tuple(tuple(record.spans) for record in whole)
+    return Table(file, names, tuple(zip(*values, strict=True)), labels, tuple(header.spans), spans), problems.all()
 
 
-def _lines(text: str) -> list[tuple[int, list[str]]]:
+def _records(file: str, text: str) -> Iterator[_Record]:
+    """Rows that hold anything, their cells stripped. Raises Mistake."""
     reader = csv.reader(io.StringIO(text.removeprefix("\ufeff"), newline=""), strict=True)
-    found: list[tuple[int, list[str]]] = []
-    for cells in reader:
-        if any(cell.strip() for cell in cells):
-            found.append((reader.line_num, cells))
-        if len(found) > limits.TABLE_ROWS:
-            break
-    return found
+    lines = text.split("\n")
+    before, n_rows = 0, 0
+    while True:
+        try:
+            cells = next(reader, None)
+        except csv.Error:
+            at = Span(file, before + 1, 1, before + 1, 2)
+            hint = "a value with commas or quotes in it stands in quotes, and a quote in it is doubled"
+            raise mistake("bad-table", at, "the quotes of this row do not pair up", hint) from None
+        if cells is None:
+            return
+        line, before = before + 1, reader.line_num
+        if not any(cell.strip() for cell in cells):
+            continue
+        n_rows += 1
+        if n_rows > limits.TABLE_ROWS + 1:
+            sentence = f"the table has more than {limits.TABLE_ROWS:,} rows, the limit"
+            raise mistake("too-much", Span(file, line, 1, line, 2), sentence)
+        yield _Record([cell.strip() for cell in cells], _cell_spans(file, line, cells, '"' in lines[line - 1]))
 
 
-def _header(file: str, number: int, cells: list[str], problems: Problems) -> list[tuple[str, str]]:
-    columns: list[tuple[str, str]] = []
-    span = Span(file, number, 1, number, 1 + sum(map(len, cells)) + len(cells) - 1)
+def _cell_spans(file: str, line: int, cells: Sequence[str], is_quoted: bool) -> list[Span]:
+    """Where each cell stands; in a row with quotes, its start has to do."""
+    if is_quoted:
+        return [Span(file, line, 1, line, 2)] * len(cells)
+    spans, start = [], 1
     for cell in cells:
-        name, _, unit = cell.strip().partition(" ")
-        unit = unit.strip()
+        indent = len(cell) - len(cell.lstrip()) if cell.strip() else 0
+        end = start + max(1, len(cell.rstrip()))
+        spans.append(Span(file, line, start + indent, line, end))
+        start += len(cell) + 1
+    return spans
+
+
+def _header(header: _Record, problems: Problems) -> list[tuple[str, str]]:
+    """Names and units of the columns, `""` where a column has none."""
+    columns: list[tuple[str, str]] = []
+    for cell, span in zip(header.cells, header.spans, strict=True):
+        name, _, unit = (part.strip() for part in cell.partition(" "))
         if not name.isidentifier() or not name.isascii():
-            problems.error("bad-table", span, f"expected a column name in the header, found `{cell.strip()}`")
-        if unit and unit not in units.UNITS:
-            near = nearest(unit, list(units.UNITS))
-            problems.error("unknown-unit", span, f"`{unit}` is no unit", f"did you mean `{near}`?" if near else "")
-            unit = ""
-        if name in [known for known, _ in columns]:
-            problems.error("duplicate-name", span, f"two columns are called `{name}`")
-        columns.append((name, unit))
+            sentence = f"expected the name of a column and perhaps a unit, found `{shortened(cell)}`"
+            problems.error("bad-table", span, sentence, _header_hint(header.cells, cell))
+        elif unit and unit not in units.UNITS:
+            problems.error("unknown-unit", span, f"`{unit}` is no unit", did_you_mean(nearest(unit, units.UNITS)))
+        if name and name in [known for known, _ in columns]:
+            problems.error("duplicate-name", span, f"two columns are called `{name}`", "rename one")
+        columns.append((name, unit if unit in units.UNITS else ""))
     return columns
 
 
-def _cell(cell: str, name: str, unit: str, span: Span) -> Value | None:
-    if not cell:
-        return None
-    if _NUMBER.fullmatch(cell):
-        value, dimension = units.quantity(cell, unit)
-        return Quantity(value + 0.0, dimension, value == 0 and not unit)
-    if unit:
-        hint = "the header states the unit; the cell holds the number alone"
-        raise mistake("bad-table", span, f"expected a number in column `{name}`, found `{cell}`", hint)
-    if cell in ("yes", "no"):
-        return cell == "yes"
-    return cell
+def _header_hint(cells: Sequence[str], cell: str) -> str:
+    if len(cells) == 1 and (";" in cell or "\t" in cell):
+        return "columns are separated by commas, and decimals are written with a point"
+    return "write letters, digits and `_`, then a space and the unit: `length mm`"
 
 
-def _unlike(labels: list[str], spans: list[Span], problems: Problems) -> None:
+def _column(name: str, unit: str, number: int, records: Sequence[_Record], problems: Problems) -> list[Value | None]:
+    """The values of one column, None where a cell is empty."""
+    cells = [record.cells[number] for record in records]
+    filled = [cell for cell in cells if cell]
+    if not unit and not all(map(_NUMBER.fullmatch, filled)):
+        is_truths = all(cell in ("yes", "no") for cell in filled)
+        return [None if not cell else (cell == "yes") if is_truths else cell for cell in cells]
+    values: list[Value | None] = []
+    for cell, record in zip(cells, records, strict=True):
+        value: Value | None = None
+        with problems.collecting():
+            value = _number(cell, name, unit, record.spans[number]) if cell else None
+        values.append(value)
+    return values
+
+
+def _number(cell: str, name: str, unit: str, span: Span) -> Value:
+    if not _NUMBER.fullmatch(cell):
+        hint = "the header states the unit; the cell holds the number alone, with a decimal point"
+        raise mistake("bad-table", span, f"expected a number in column `{name}`, found `{shortened(cell)}`", hint)
+    return literal(cell, unit, span)
+
+
+def _label(records: Sequence[_Record], problems: Problems) -> None:
+    """The first cell names its row: it is there, fits into brackets, and stands once."""
     first: dict[str, Span] = {}
-    for label, span in zip(labels, spans, strict=True):
-        if label in first:
+    for record in records:
+        label, span = record.cells[0], record.spans[0]
+        if not label:
+            hint = "the first column names the rows"
+            problems.error("bad-table", span, "this row has no value in the first column", hint)
+        elif _UNFIT.search(label) or not label.isprintable():
+            sentence = "the first column names the rows, and a name has no brackets, quotes or line breaks"
+            problems.error("bad-table", span, sentence)
+        elif label in first:
+            hint = "the first column names the rows; put a column of different names first"
             related = (Related(first[label], "the first of them"),)
-            problems.error("duplicate-name", span, f"two rows are called `{label}`", related=related)
+            problems.error("duplicate-name", span, f"two rows are called `{shortened(label)}`", hint, related)
         first.setdefault(label, span)

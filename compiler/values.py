@@ -107,6 +107,17 @@ def spell(value: Value) -> str:
             return text
 
 
+def shortened(text: str) -> str:
+    """A text fit to stand in a sentence: on one line, at most 40 characters of it."""
+    line = " ".join(text.split())
+    return line if len(line) <= 40 else line[:39] + "…"
+
+
+def shown(value: Value) -> str:
+    """A value as `spell` gives it, but a long text shortened, for sentences."""
+    return f'"{shortened(value)}"' if isinstance(value, str) else spell(value)
+
+
 def usual_unit(dimension: Dimension) -> tuple[str, float]:
     """The unit that results are spelt in, and its size in base units.
 

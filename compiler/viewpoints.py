@@ -8,13 +8,13 @@ from typing import Literal, TypeAlias
 from platewright.backend import camera
 from platewright.lang import tree
 from platewright.lang.problems import Related
-from platewright.lang.source import Span
 from platewright.lang.units import ANGLE
 
-from .expressions import Scope, quantity
+from .expressions import quantity
 from .mistakes import Problems, mistake
 from .placement import direction, point, positive_length
-from .readings import expression, optional, word
+from .readings import LATER, expression, optional, word
+from .scope import Scope
 
 FILM_MM = 36.0
 """Width of the film when none is stated."""
@@ -53,13 +53,16 @@ def standard(name: str) -> Viewpoint | None:
 
 def read_viewpoint(line: tree.Line, scope: Scope, problems: Problems) -> Viewpoint | None:
     """The viewpoint that a declaration describes; None where it describes none and the problems say why."""
-    projections = [each for each in line.lines if each.word not in ("lens", "angle of view")]
+    known = [each for each in line.lines if each.head.row not in LATER]
+    projections = [each for each in known if each.word not in ("lens", "angle of view")]
     if not projections:
         hint = "such as `isometric from front right above` or `eye (900 mm, -1200 mm, 700 mm) toward (0, 0, 0)`"
         problems.error("no-projection", line.span, "this viewpoint states no projection", hint)
         return None
     first = projections[0]
     for other in projections[1:]:
+        if other.head.row == first.head.row:
+            continue  # said twice, which reading has reported
         related = (Related(first.head.word_span, "the first of them"),)
         problems.error("said-twice", other.head.word_span, "a viewpoint has one projection", "leave one out", related)
     viewpoint: Viewpoint | None = None
@@ -67,7 +70,7 @@ def read_viewpoint(line: tree.Line, scope: Scope, problems: Problems) -> Viewpoi
         viewpoint = _projection(first.head, scope)
     if isinstance(viewpoint, Central):
         return _field_of_view(viewpoint, line, scope, problems)
-    for each in line.lines:
+    for each in known:
         if each.word in ("lens", "angle of view") and viewpoint is not None:
             problems.error("wrong-form", each.span, f"`{each.word}` belongs to a central projection", "state an `eye`")
     return viewpoint
@@ -105,16 +108,16 @@ def _side(name: str) -> Literal["front", "rear", "left", "right", "top", "bottom
 
 def _field_of_view(central: Central, line: tree.Line, scope: Scope, problems: Problems) -> Viewpoint:
     lens, film, angle = None, FILM_MM, None
-    said: Span | None = None
+    said: tree.Reading | None = None
     for each in line.lines:
         if each.word not in ("lens", "angle of view"):
             continue
-        if said is not None:
-            related = (Related(said, "the first of them"),)
+        if said is not None and said.row != each.head.row:
+            related = (Related(said.word_span, "the first of them"),)
             problems.error(
                 "said-twice", each.head.word_span, "the field of view is stated twice", "leave one out", related
             )
-        said = each.head.word_span
+        said = each.head
         with problems.collecting():
             if each.word == "lens":
                 lens = positive_length(expression(each.head, "lens"), scope, "lens")

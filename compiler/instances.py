@@ -1,0 +1,146 @@
+"""Parts, assemblies, outlines and materials with their parameters fixed, each made once for each set of values."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field
+from typing import TypeVar
+
+from platewright.lang import tree
+from platewright.lang.problems import Related
+from platewright.lang.source import Span
+
+from . import limits
+from .assemblies import make_assembly
+from .graph import Thing
+from .materials import Surface, read_material
+from .mistakes import Mistake, Problems, mistake
+from .modules import THINGS, Declaration, Module, Modules, find_kind
+from .outlines import read_outline
+from .parameters import arguments, local_scope
+from .parts import make_part
+from .scope import Scope
+from .solids.recipe import Outline
+from .tables import Table
+
+_Key = tuple[str, str, object]
+_Made = TypeVar("_Made")
+
+
+@dataclass(slots=True)
+class Instances:
+    """Makes things on demand and keeps them for one evaluation; problems are collected on the way.
+
+    `placed` are the things that another holds, by file and name; `sources` the lines that recipes refer to by row.
+    """
+
+    modules: Modules
+    tables: Mapping[str, Table]
+    scopes: Mapping[str, Scope]
+    problems: Problems
+    placed: set[tuple[str, str]] = field(default_factory=set)
+    sources: list[Span] = field(default_factory=list)
+    _source_rows: dict[Span, int] = field(default_factory=dict)
+    _things: dict[_Key, Thing | None] = field(default_factory=dict)
+    _outlines: dict[_Key, Outline | None] = field(default_factory=dict)
+    _surfaces: dict[tuple[str, str], Surface] = field(default_factory=dict)
+    _under_way: list[Declaration] = field(default_factory=list)
+
+    def surface(self, module: Module, declaration: Declaration) -> Surface:
+        """The surface of a material."""
+        key = (module.file, declaration.name)
+        if key not in self._surfaces:
+            self._surfaces[key] = read_material(declaration.line, self.scopes[module.file], self.problems)
+        return self._surfaces[key]
+
+    def resolve(self, module: Module, written: tree.Path | tree.Call, scope: Scope) -> Thing:
+        """The part or assembly that a path or call names. Raises Mistake."""
+        here, declaration = find_kind(self.modules, module, path_of(written), THINGS)
+        return self.thing(here, declaration, call_of(written), scope, written.span)
+
+    def thing(
+        self, module: Module, declaration: Declaration, call: tree.Call | None, scope: Scope, span: Span
+    ) -> Thing:
+        """A part or assembly with its parameters. Raises Mistake."""
+        if declaration in self._under_way:
+            start = self._under_way.index(declaration)
+            circle = " holds ".join(f"`{each.name}`" for each in (*self._under_way[start:], declaration))
+            related = (Related(declaration.span, "declared here"),)
+            raise mistake("recursion", span, f"a thing cannot hold itself: {circle}", "", related)
+        if len(self._under_way) >= limits.NESTING:
+            raise mistake("too-deep", span, f"things hold each other more than {limits.NESTING} deep, the limit")
+
+        def make(inner: Scope) -> Thing:
+            self._under_way.append(declaration)
+            try:
+                local = local_scope(declaration.line.lines, inner, self.problems)
+                if declaration.kind == "part":
+                    return make_part(self, module, declaration, local)
+                return make_assembly(self, module, declaration, local)
+            finally:
+                self._under_way.pop()
+
+        return self._once(self._things, module, declaration, call, scope, span, make)
+
+    def outline(self, module: Module, written: tree.Path | tree.Call, scope: Scope) -> Outline:
+        """The outline that a path or call names, with its parameters. Raises Mistake."""
+        here, declaration = find_kind(self.modules, module, path_of(written), ("outline",))
+        return self.declared_outline(here, declaration, call_of(written), scope, written.span)
+
+    def declared_outline(
+        self, module: Module, declaration: Declaration, call: tree.Call | None, scope: Scope, span: Span
+    ) -> Outline:
+        """An outline with its parameters. Raises Mistake."""
+
+        def make(inner: Scope) -> Outline:
+            return read_outline(declaration.line, local_scope(declaration.line.lines, inner, self.problems))
+
+        return self._once(self._outlines, module, declaration, call, scope, span, make)
+
+    def _once(
+        self,
+        made: dict[_Key, _Made | None],
+        module: Module,
+        declaration: Declaration,
+        call: tree.Call | None,
+        scope: Scope,
+        span: Span,
+        make: Callable[[Scope], _Made],
+    ) -> _Made:
+        """What `make` gives for this set of values. Raises Mistake, once with a problem and then without."""
+        home = self.scopes[module.file]
+        named = arguments(declaration, call, scope, home, span)
+        key = (module.file, declaration.name, tuple(named.items()))
+        if key not in made:
+            made[key] = None
+            before = self.problems.n_mistakes
+            with self.problems.collecting():
+                found = make(home.inside(named) if named else home)
+                if self.problems.n_mistakes == before and not declaration.is_faulty:
+                    made[key] = found
+        kept = made[key]
+        if kept is None:
+            raise Mistake(None)
+        return kept
+
+    def note_placed(self, module: Module, written: tree.Path | tree.Call) -> None:
+        """Remember that something holds the thing named, so that it is no root. Raises Mistake."""
+        here, declaration = find_kind(self.modules, module, path_of(written), THINGS)
+        self.placed.add((here.file, declaration.name))
+
+    def source(self, span: Span) -> int:
+        """The row of a line in the table of sources."""
+        if span not in self._source_rows:
+            self._source_rows[span] = len(self.sources)
+            self.sources.append(span)
+        return self._source_rows[span]
+
+
+def path_of(written: tree.Path | tree.Call) -> tree.Path:
+    """The path of a thing named with or without values for its parameters."""
+    return written.path if isinstance(written, tree.Call) else written
+
+
+def call_of(written: tree.Path | tree.Call) -> tree.Call | None:
+    """The call, where a thing is named with values for its parameters."""
+    return written if isinstance(written, tree.Call) else None

@@ -1,0 +1,174 @@
+"""Parts: from the lines of a `part` to the recipe of one solid, with its material, marks and features."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, Literal
+
+from platewright.lang import tree
+
+from . import limits
+from .graph import Feature, FeatureCopy, Solid
+from .marks import OwnNames, axes_of, read_marks
+from .materials import PLAIN
+from .mistakes import Mistake, mistake
+from .modules import Declaration, Module, find_kind
+from .placement import Marks
+from .readings import LATER, expression, name
+from .scope import Scope
+from .shapes import OUTLINED, diameter, height, read_shape
+from .solids.recipe import Affine, Placed, Primitive, Recipe, Step
+from .solids.transform import IDENTITY, compose, determinant
+from .turns import labels, placements, turns
+
+if TYPE_CHECKING:
+    from .instances import Instances
+
+Point = tuple[float, float, float]
+
+
+def make_part(things: Instances, module: Module, declaration: Declaration, scope: Scope) -> Solid:
+    """The solid that a part's lines describe; what is wrong in them goes to the problems of `things`."""
+    return _Part(things, module, declaration, scope).solid()
+
+
+@dataclass(slots=True)
+class _Part:
+    """A part while its lines are read."""
+
+    things: Instances
+    module: Module
+    declaration: Declaration
+    scope: Scope
+    names: OwnNames = field(init=False)
+    steps: list[Step] = field(default_factory=list)
+    features: list[Feature] = field(default_factory=list)
+    axes: Marks = field(default_factory=dict)
+    n_shapes: int = 0
+
+    def __post_init__(self) -> None:
+        self.names = OwnNames(self.things.problems)
+
+    def solid(self) -> Solid:
+        lines, problems = self.declaration.line.lines, self.things.problems
+        marks = read_marks(lines, self.scope, self.names, problems)
+        self.axes = axes_of(marks)
+        before = problems.n_mistakes
+        for line in lines:
+            if line.word in ("add", "cut", "keep"):
+                with problems.collecting():
+                    self._step(line)
+        if problems.n_mistakes == before and not self.declaration.is_faulty:
+            self._begins_with_add()
+        surface = PLAIN
+        for line in lines:
+            if line.word == "made of":
+                with problems.collecting():
+                    path = expression(line.head, "material")
+                    assert isinstance(path, tree.Path)
+                    material = find_kind(self.things.modules, self.module, path, ("material",))
+                    surface = self.things.surface(*material)
+        recipe, span = Recipe(tuple(self.steps)), self.declaration.span
+        return Solid(self.declaration.name, recipe, surface, marks, tuple(self.features), span, max(1, self.n_shapes))
+
+    def _begins_with_add(self) -> None:
+        declaration, problems = self.declaration, self.things.problems
+        if not self.steps:
+            hint = "begin with an `add` line, such as `add block (10 mm, 10 mm, 10 mm)`"
+            problems.error("empty-part", declaration.span, f"the part `{declaration.name}` adds nothing", hint)
+        elif self.steps[0].operation != "add":
+            span = self.things.sources[self.steps[0].placed[0].source]
+            sentence = f"there is nothing to {self.steps[0].operation} yet: a part begins with `add`"
+            problems.error("empty-part", span, sentence, "move an `add` line before it")
+
+    def _step(self, line: tree.Line) -> None:
+        """Read one line of the process sheet and what it names."""
+        operation: Literal["add", "cut", "keep"] = "add"
+        if line.word == "cut" or line.word == "keep":
+            operation = "cut" if line.word == "cut" else "keep"
+        placed: list[Placed] = []
+        copies: list[FeatureCopy] = []
+        for turn in turns(line, self.scope, self.things.tables, self.module.file):
+            for each in self._placed(line, turn.scope):
+                placed.append(each)
+                named = labels(line, turn.label, len(each.placements), len(copies))
+                copies.extend(_feature_copies(each, named))
+        if placed:
+            self.steps.append(Step(operation, tuple(placed)))
+        for clause in line.clauses:
+            if clause.word == "as":
+                own = name(clause)
+                self.names.take(own.text, own.span)
+                self.features.append(Feature(own.text, tuple(copies), own.span))
+
+    def _placed(self, line: tree.Line, scope: Scope) -> Iterator[Placed]:
+        """The shapes of one line, or of the lines indented under it, placed and repeated."""
+        reading = line.head.get("shape")
+        if isinstance(reading, tree.Reading):
+            yield self._shape(line, reading, scope, (IDENTITY,))
+            return
+        outer = placements(line, scope, self.axes, {})
+        for below in line.lines:
+            with self.things.problems.collecting():
+                for turn in turns(below, scope, self.things.tables, self.module.file):
+                    inner = below.head.get("shape")
+                    assert isinstance(inner, tree.Reading)
+                    yield self._shape(below, inner, turn.scope, outer)
+
+    def _shape(self, line: tree.Line, reading: tree.Reading, scope: Scope, outer: tuple[Affine, ...]) -> Placed:
+        if reading.row in LATER:
+            raise Mistake(None)
+        shape, own, n_shapes = self._made(reading, scope)
+        places = placements(line, scope, self.axes, own)
+        self._count(len(outer) * len(places) * n_shapes, line)
+        if outer != (IDENTITY,):
+            places = tuple([compose(a, b) for a in outer for b in places])
+        if len(places) > 1 and len(set(places)) < len(places):
+            raise mistake("coincident-copies", line.span, "two copies of this shape lie in one place")
+        centred = any(clause.word == "centred" for clause in line.clauses)
+        if centred and isinstance(shape, Recipe):
+            clause = next(each for each in line.clauses if each.word == "centred")
+            raise mistake("wrong-form", clause.span, "`centred` goes with shapes; a part stands where its lines put it")
+        return Placed(shape, places, self.things.source(line.span), centred)
+
+    def _count(self, n_shapes: int, line: tree.Line) -> None:
+        self.n_shapes += n_shapes
+        if self.n_shapes > limits.COPIES:
+            sentence = f"the part `{self.declaration.name}` is made of more than {limits.COPIES:,} shapes, the limit"
+            raise mistake("too-much", line.span, sentence)
+
+    def _made(self, reading: tree.Reading, scope: Scope) -> tuple[Primitive | Recipe, Marks, int]:
+        """The primitive or part that a shape's words name, the axes of its marks, how many shapes it is."""
+        if reading.row == "solid":
+            written = expression(reading, "part")
+            assert isinstance(written, (tree.Path, tree.Call))
+            path = written.path if isinstance(written, tree.Call) else written
+            find_kind(self.things.modules, self.module, path, ("part",))
+            self.things.note_placed(self.module, written)
+            thing = self.things.resolve(self.module, written, scope)
+            assert isinstance(thing, Solid)
+            return thing.recipe, axes_of(thing.marks), thing.n_shapes
+        outline = None
+        if reading.word in OUTLINED:
+            written = expression(reading, "outline")
+            assert isinstance(written, (tree.Path, tree.Call))
+            outline = self.things.outline(self.module, written, scope)
+        return read_shape(reading, scope, outline), {}, 1
+
+
+def _feature_copies(placed: Placed, named: list[str]) -> Iterator[FeatureCopy]:
+    shape = placed.shape
+    rise = 0.0 if isinstance(shape, Recipe) else height(shape)
+    low = -rise / 2 if placed.centred else 0.0
+    across = None if isinstance(shape, Recipe) else diameter(shape)
+    for label, placement in zip(named, placed.placements, strict=True):
+        size = sum(row[2] * row[2] for row in placement) ** 0.5
+        x, y, z = (row[2] / size for row in placement)
+        scaled = across * abs(determinant(placement)) ** (1 / 3) if across is not None else None
+        yield FeatureCopy(label, _moved(placement, low + rise / 2), (x, y, z), _moved(placement, low + rise), scaled)
+
+
+def _moved(placement: Affine, up: float) -> Point:
+    x, y, z = (row[2] * up + row[3] for row in placement)
+    return (x, y, z)

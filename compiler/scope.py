@@ -1,0 +1,134 @@
+"""Scopes: what names stand for while expressions are evaluated, and the budget of one evaluation."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from typing import Protocol, TypeAlias
+
+from platewright.lang import tree
+from platewright.lang.nearest import nearest
+from platewright.lang.source import Span
+
+from . import limits
+from .functions import FUNCTIONS
+from .mistakes import Mistake, mistake
+from .values import Quantity, Value
+
+
+@dataclass(frozen=True, slots=True)
+class Formula:
+    """A function an author has defined: its parameters and body, and the scope it sees."""
+
+    name: str
+    parameters: tuple[str, ...]
+    body: tree.Expression
+    scope: Scope
+
+
+class Failed:
+    """Stands for a name whose value has been reported as wrong already."""
+
+
+Named: TypeAlias = "Value | Formula | Failed"
+
+
+class Paths(Protocol):
+    """Values that stand behind a path of several names: marks, features, measures."""
+
+    def value(self, path: tree.Path) -> Value | None:
+        """The value at the path; None if its first name means nothing here. Raises Mistake."""
+
+    def call(self, call: tree.Call) -> Value | None:
+        """The value of a measure; None if there is none of that name. Raises Mistake."""
+
+    def names(self) -> tuple[str, ...]:
+        """The names a path may start with."""
+
+
+@dataclass(slots=True)
+class Budget:
+    """What one evaluation may still compute, against `limits.STEPS`, and the literals it has read."""
+
+    left: int = limits.STEPS
+    literals: dict[tuple[str, str], Quantity] = field(default_factory=dict)
+
+    def spend(self, steps: int, span: Span) -> None:
+        """Take values or copies off the budget. Raises Mistake where it is used up."""
+        self.left -= steps
+        if self.left < 0:
+            sentence = f"this scene computes more than {limits.STEPS:,} values and copies, the limit"
+            raise mistake("too-much", span, sentence)
+
+
+@dataclass(frozen=True, slots=True)
+class Scope:
+    """Names and what they stand for, inside an enclosing scope. `prefixes` leads to the scopes of files seen."""
+
+    names: Mapping[str, Named]
+    outer: Scope | None = None
+    prefixes: Mapping[str, Scope] = field(default_factory=dict)
+    paths: Paths | None = None
+    budget: Budget = field(default_factory=Budget)
+
+    def inside(self, names: Mapping[str, Named], paths: Paths | None = None) -> Scope:
+        """A scope within this one."""
+        return Scope(names, self, {}, paths, self.budget)
+
+    def find(self, name: str) -> Named | None:
+        """What a name stands for, here or outside."""
+        scope: Scope | None = self
+        while scope is not None:
+            if name in scope.names:
+                return scope.names[name]
+            scope = scope.outer
+        return None
+
+    def prefix(self, name: str) -> Scope | None:
+        """The scope of a file seen under that prefix."""
+        scope: Scope | None = self
+        while scope is not None:
+            if name in scope.prefixes:
+                return scope.prefixes[name]
+            scope = scope.outer
+        return None
+
+    def path_value(self, path: tree.Path) -> Value | None:
+        """What stands behind a path in the nearest scope that has paths and knows its first name. Raises Mistake."""
+        scope: Scope | None = self
+        while scope is not None:
+            found = scope.paths.value(path) if scope.paths is not None else None
+            if found is not None:
+                return found
+            scope = scope.outer
+        return None
+
+    def measured(self, call: tree.Call) -> Value | None:
+        """The value of a measure in the nearest scope that has one of that name. Raises Mistake."""
+        scope: Scope | None = self
+        while scope is not None:
+            found = scope.paths.call(call) if scope.paths is not None else None
+            if found is not None:
+                return found
+            scope = scope.outer
+        return None
+
+    def known(self) -> list[str]:
+        """All names in reach, nearest scope first."""
+        found: list[str] = []
+        scope: Scope | None = self
+        while scope is not None:
+            found += [*scope.names, *scope.prefixes, *(scope.paths.names() if scope.paths else ())]
+            scope = scope.outer
+        return found
+
+
+def unknown_name(name: str, span: Span, scope: Scope) -> Mistake:
+    """The mistake of using a name that nothing declares, with the nearest name in reach."""
+    near = nearest(name, [*scope.known(), *FUNCTIONS])
+    return mistake("unknown-name", span, f"nothing here is called `{name}`", did_you_mean(near))
+
+
+def did_you_mean(near: str) -> str:
+    """The hint that names the nearest known word; empty if none is near."""
+    return f"did you mean `{near}`?" if near else ""
