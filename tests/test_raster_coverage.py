@@ -190,7 +190,7 @@ def test_hidden_and_displaced_nodes() -> None:
 
 
 def central_panel(eye: tuple[float, float, float], samples: int = 4) -> Panel:
-    view = camera.central(eye, np.array(eye) + (0, 10, 0), 20.0, (PAGE.width / 2, PAGE.height / 2))
+    view = camera.central(eye, (eye[0], eye[1] + 10.0, eye[2]), 20.0, (PAGE.width / 2, PAGE.height / 2))
     return panel(view, PAGE, samples)
 
 

@@ -64,8 +64,8 @@ def test_a_sphere_is_brightest_at_135_degrees(material: Material, view: tuple[fl
 
 def test_painting_equals_seeing_and_shading_for_any_number_of_threads() -> None:
     geometry = assemble([
-        sphere("a", 5, (-3, 0, 2), 24), torus("b", 5, 2, (3, 1, 0), 24, material=1), block("c", (-8, 3, -4), (2, 8, 3), 2),
-        cylinder("d", 2, -6, 9, 24, material=3),
+        sphere("a", 5, (-3, 0, 2), 24), torus("b", 5, 2, (3, 1, 0), 24, material=1),
+        block("c", (-8, 3, -4), (2, 8, 3), 2), cylinder("d", 2, -6, 9, 24, material=3),
     ])  # fmt: skip
     materials = (PAINT, GLOSS, MATT, STEEL)
     for samples in (1, 4):

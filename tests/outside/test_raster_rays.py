@@ -11,7 +11,8 @@ from platewright.backend import camera, raster
 from platewright.backend.contract import F64, Geometry, Page, Projection
 from support.raster_models import assemble, block, cylinder, panel, sphere, torus, triangles
 
-PAGE = Page(30.0, 24.0, 127.0)  # 150 x 120 px
+PAGE = Page(30.0, 24.0, 84.66666666666667)  # 100 x 80 px
+MM = 0.3
 MIDDLE = (15.0, 12.0)
 
 
@@ -19,10 +20,10 @@ def scene(seed: int = 4) -> Geometry:
     random = np.random.default_rng(seed)
     soup = random.normal(size=(40, 1, 3)) * 14 + random.normal(size=(40, 3, 3)) * 4
     return assemble([
-        sphere("ball", 6, (3, 2, 4), 16),
-        torus("ring", 9, 2, (-4, 0, 1), 16),
+        sphere("ball", 6, (3, 2, 4), 12),
+        torus("ring", 9, 2, (-4, 0, 1), 12),
         block("block", (-6, -13, -3), (9, -7, 3)),
-        cylinder("pin", 2.5, -9, 14, 24),
+        cylinder("pin", 2.5, -9, 14, 20),
         triangles("soup", soup.reshape(-1, 3), np.arange(120).reshape(-1, 3)),
     ])  # fmt: skip
 
@@ -38,7 +39,7 @@ VIEWS = {
 
 def pixel_rays(projection: Projection) -> tuple[F64, F64]:
     columns, rows = PAGE.pixels
-    x, y = np.meshgrid((np.arange(columns) + 0.5) * 0.2, (np.arange(rows) + 0.5) * 0.2)
+    x, y = np.meshgrid((np.arange(columns) + 0.5) * MM, (np.arange(rows) + 0.5) * MM)
     origins, directions = camera.rays(projection, np.column_stack([x.ravel(), y.ravel()]))
     if projection.eye is None:
         origins = origins - 200.0 * directions
@@ -80,10 +81,10 @@ def away_from_edges(face: np.ndarray) -> np.ndarray:
 def assert_shown_within_a_pixel(
     geometry: Geometry, projection: Projection, pixels: np.ndarray, shown: np.ndarray
 ) -> None:
-    """Of the few pixels (k,2) of row and column, what is shown (k,) must be met by a ray within one pixel of the centre."""
+    """What pixels (k,2) of row and column show (k,) must be met by a ray within one pixel of the centre."""
     offsets = np.stack(np.meshgrid(*[np.linspace(-1, 1, 41)] * 2), -1).reshape(-1, 2)
     for (row, column), part in zip(pixels, shown, strict=True):
-        origins, directions = camera.rays(projection, (np.array([column, row]) + 0.5 + offsets) * 0.2)
+        origins, directions = camera.rays(projection, (np.array([column, row]) + 0.5 + offsets) * MM)
         back = 0.0 if projection.kind == "central" else 200.0
         near = np.append(geometry.face_node, -1)[first_hits(geometry, origins - back * directions, directions)]
         assert part in near
