@@ -86,6 +86,7 @@ CODES: Mapping[str, str] = MappingProxyType(
         "nothing-to-show": "a figure has no subject",
         "nothing-in-view": "nothing of a figure's subject is in view",
         "broken-fact": "a fact that must hold does not",
+        "nothing-to-measure": "a measure is asked of something that has none",
         "no-density": "a mass is asked of a material without density",
         "never-placed": "a part is placed nowhere",
         "unused-parameter": "a parameter is used nowhere",

@@ -39,6 +39,8 @@ def fold(flat: list[Any]) -> Expression:
 
     Precedence climbing (Richards and Whitby-Strevens 1979); its depth is bounded by the scanner's limit of operations.
     """
+    if len(flat) == 1:
+        return flat[0]  # type: ignore[no-any-return]
     flat.reverse()
     node = _climb(flat, 0)
     if flat:

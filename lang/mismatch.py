@@ -10,7 +10,7 @@ from .matcher import Account, Matcher
 from .nearest import nearest
 from .patterns import Element, Equals, Literal, Pattern, Slot, Starts, Vocabulary
 from .problems import Problem, Severity
-from .scanner import Piece, Slip
+from .scanner import Slip
 from .source import Span
 from .tree import Binary, Call, Path
 from .values import sign_slip, unit_slip
@@ -102,7 +102,7 @@ class _Explanation:
             return Slip("call-space", before.end, item.start + 1, sentence, f"write `{before.word}(`{place}")
         is_word = bool(item.word) and item.word not in self.words.homes and not nearest(item.word, self.known)
         if is_word and before.kind == "NUMBER":
-            return unit_slip(text, Piece("NUMBER", before.start, before.end), item.start, item.end)
+            return unit_slip(text, ("NUMBER", before.start, before.end), item.start, item.end)
         return None
 
     def swallowed_word(self) -> Slip | None:

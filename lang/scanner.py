@@ -11,7 +11,7 @@ import re
 from collections.abc import Mapping
 from datetime import date
 from types import MappingProxyType
-from typing import NamedTuple
+from typing import TypeAlias
 
 from .nearest import nearest
 from .units import UNITS
@@ -33,12 +33,8 @@ class Slip(Exception):
         self.opened = opened
 
 
-class Piece(NamedTuple):
-    """A token: its kind, which is a terminal of the grammar, and its place as 0-based columns."""
-
-    kind: str
-    start: int
-    end: int
+Piece: TypeAlias = tuple[str, int, int]
+"""A token: its kind, which is a terminal of the grammar, and its place as 0-based columns. A plain tuple, for speed."""
 
 
 def _longest_first(symbols: list[str]) -> str:
@@ -87,7 +83,9 @@ RESERVED: Mapping[str, str] = MappingProxyType(
     }
 )
 LITERALS = frozenset({"DATE", "RATIO", "QUANTITY", "NUMBER", "TEXT", "TRUTH"})
-_STARTS = frozenset({"NAME", "OPEN", "PREFIX"}) | LITERALS
+_KINDS = ("", *TOKENS.groupindex)
+_OPERANDS = LITERALS | {"NAME"}
+_STARTS = _OPERANDS | {"OPEN", "PREFIX"}
 _ENDS = frozenset({"NAME", "CLOSE", "UNINDEX"}) | LITERALS
 _NUMBERS = frozenset({"QUANTITY", "NUMBER", "RATIO", "DATE"})
 
@@ -147,44 +145,52 @@ def split_items(text: str, start: int = 0) -> tuple[list[list[Piece]], int]:
     previous_end = start
     operations = 0
     for match in TOKENS.finditer(text, start):
-        kind: str = match.lastgroup  # type: ignore[assignment]  # every alternative is a named group
-        begin, end = match.span(kind)
+        index = match.lastindex
+        begin, end = match.span(index)  # type: ignore[arg-type]  # every alternative is a group
+        kind = _KINDS[index]  # type: ignore[index]
         if kind == "NAME":
             kind = RESERVED.get(text[begin:end], "NAME")
             if previous in _NUMBERS and begin == previous_end:
                 raise _glued(text, begin, end, item[-1])
-        elif kind == "COMMENT":
-            if opened:
-                raise _unclosed(opened, previous_end)
-            return items, begin
         elif kind not in _PLAIN:
+            if kind == "COMMENT":
+                if opened:
+                    raise _unclosed(opened, previous_end)
+                return items, begin
             kind = _settle(text, kind, begin, end, previous, previous_end, opened)
         if kind in _STARTS and not opened and previous in _ENDS:
             item = []
             items.append(item)
             operations = 0
-        if kind in _OPERATIONS:
-            operations += 1
-        elif kind == "COMMA" and not opened:
-            operations = 0
-        if operations > OPERATIONS_LIMIT:
-            raise Slip(
-                "too-many-operations",
-                begin,
-                end,
-                f"one value may hold {OPERATIONS_LIMIT} operations, and this one has more",
-                "give names to parts of it under `derived`",
-            )
-        if kind in _BRACKETS:
-            _count(text, kind, begin, end, opened)
-        if not items:
+        elif not items:
             items.append(item)
-        item.append(Piece(kind, begin, end))
+        if kind not in _OPERANDS:
+            operations = _operations(kind, begin, end, operations, bool(opened))
+            if kind in _BRACKETS:
+                _count(text, kind, begin, end, opened)
+        item.append((kind, begin, end))
         previous = kind
         previous_end = end
     if opened:
         raise _unclosed(opened, previous_end)
     return items, -1
+
+
+def _operations(kind: str, begin: int, end: int, operations: int, is_inside: bool) -> int:
+    """The number of operations in the value so far. Raises Slip beyond the limit."""
+    if kind in _OPERATIONS:
+        operations += 1
+    elif kind == "COMMA" and not is_inside:
+        operations = 0
+    if operations > OPERATIONS_LIMIT:
+        raise Slip(
+            "too-many-operations",
+            begin,
+            end,
+            f"one value may hold {OPERATIONS_LIMIT} operations, and this one has more",
+            "give names to parts of it under `derived`",
+        )
+    return operations
 
 
 _OPERATIONS = frozenset({"OPERATOR", "PREFIX", "IF"})
@@ -355,7 +361,7 @@ def _glued(text: str, begin: int, end: int, number: Piece) -> Slip:
         "unknown-unit",
         begin,
         end,
-        f"`{written}` behind the number `{text[number.start : number.end]}` is no unit",
+        f"`{written}` behind the number `{text[number[1] : number[2]]}` is no unit",
         unit_hint(written),
     )
 

@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 from lark import Lark, UnexpectedToken
 
-from .items import Item, Node, Place, expression_of, path_of
+from .fold import fold
+from .items import Equation, Item, Node, Place, expression_of, path_of
 from .parser import Token
 from .scanner import LITERALS, QUANTITY_PARTS, Piece, Slip, split_items, unit_hint
 from .source import Span
-from .tree import Date, Expression, Number, Ratio, Text, Truth
+from .tree import Date, Expression, Number, Ratio, Text, Truth, Tuple
 
 NUMBER_LENGTH_LIMIT = 40
 EXPONENT_LIMIT = 300
@@ -21,8 +24,8 @@ def read_items(parser: Lark, place: Place, text: str, start: int) -> tuple[list[
 
 
 def _item(parser: Lark, place: Place, text: str, pieces: list[Piece]) -> Item:
+    kind, start, end = pieces[0]
     if len(pieces) == 1:
-        kind, start, end = pieces[0]
         if kind == "NAME":
             written = text[start:end]
             if "." not in written:
@@ -30,8 +33,53 @@ def _item(parser: Lark, place: Place, text: str, pieces: list[Piece]) -> Item:
             return Item("", path_of(place, written, start), start, end, kind)
         if kind in LITERALS:
             return Item("", _literal(parser, place, text, kind, start, end), start, end, kind)
-    node = _parse(parser, place, text, pieces)
-    return Item("", node, pieces[0].start, pieces[-1].end, pieces[0].kind)
+    node = _flat_node(parser, place, text, pieces) or _parse(parser, place, text, pieces)
+    return Item("", node, start, pieces[-1][2], kind)
+
+
+def _flat_node(parser: Lark, place: Place, text: str, pieces: list[Piece]) -> Node | None:
+    """The node of the most frequent items, just as the grammar builds it but sooner; None for all others.
+
+    These are `a + b`, `name = a + b` and `(a, b + c, d)` without brackets inside. Mistakes are left to the grammar.
+    """
+    run: list[Any] = []
+    done: list[Any] = []
+    wants_operand = True
+    separator = ""
+    for i, (kind, start, end) in enumerate(pieces):
+        if kind == "NAME" or kind in LITERALS:
+            if not wants_operand:
+                return None
+            is_name = kind == "NAME"
+            run.append(
+                path_of(place, text[start:end], start) if is_name else _literal(parser, place, text, kind, start, end)
+            )
+            wants_operand = False
+        elif kind in _FOLDED:
+            if wants_operand != (kind == "PREFIX"):
+                return None
+            run.append((text[start:end], start, end))
+            wants_operand = True
+        elif kind == "OPEN" and i == 0:
+            separator = "COMMA"
+        elif kind == (separator or "EQUALS") and not wants_operand:
+            separator = kind
+            done.append(fold(run))
+            run = []
+            wants_operand = True
+        elif kind == "CLOSE" and i == len(pieces) - 1:
+            break
+        else:
+            return None
+    if wants_operand:
+        return None
+    done.append(fold(run))
+    if separator == "COMMA":
+        span = place.span(pieces[0][1], pieces[-1][2])
+        return Tuple(tuple(done), span) if len(done) > 1 else None
+    if separator:
+        return Equation(done[0], done[1], done[0].span.to(done[1].span)) if len(done) == 2 else None
+    return done[0]  # type: ignore[no-any-return]
 
 
 def _literal(parser: Lark, place: Place, text: str, kind: str, start: int, end: int) -> Expression:
@@ -54,15 +102,21 @@ def _literal(parser: Lark, place: Place, text: str, kind: str, start: int, end: 
 
 
 def _quantity(written: str, start: int, span: Span) -> Number:
-    parts = QUANTITY_PARTS.fullmatch(written)
-    assert parts is not None
-    number, unit = parts.groups()
+    number, _, unit = written.rpartition(" ")
+    if number:
+        number = number.rstrip(" ")
+    else:
+        parts = QUANTITY_PARTS.fullmatch(written)
+        assert parts is not None
+        number, unit = parts.groups()
     _check_number(number, start)
     return Number(number, "inch" if unit == "in" else unit, span)
 
 
 def _check_number(written: str, start: int) -> None:
     """Raises Slip for a number that is none, or that would take long to make exact."""
+    if len(written) <= NUMBER_LENGTH_LIMIT and written.replace(".", "", 1).isdigit():
+        return
     end = start + len(written)
     if len(written) > NUMBER_LENGTH_LIMIT:
         sentence = f"a number may have {NUMBER_LENGTH_LIMIT} characters, and this one has {len(written)}"
@@ -161,7 +215,7 @@ def _tokens(parser: Lark, place: Place, text: str, pieces: list[Piece]) -> list[
     last = len(pieces) - 1
     for i, (kind, start, end) in enumerate(pieces):
         if kind == "NAME":
-            terminal = "NAME" if i < last and pieces[i + 1].kind in _NAME_GOES_ON else "OPERAND"
+            terminal = "NAME" if i < last and pieces[i + 1][0] in _NAME_GOES_ON else "OPERAND"
             tokens.append(Token(terminal, path_of(place, text[start:end], start)))
         elif kind in LITERALS:
             tokens.append(Token("OPERAND", _literal(parser, place, text, kind, start, end)))
@@ -178,33 +232,33 @@ def _broken(text: str, pieces: list[Piece], tokens: list[Token], unexpected: Une
     at = next((i for i, token in enumerate(tokens) if token is unexpected.token), len(tokens))
     before = pieces[at - 1] if at else None
     found = pieces[at] if at < len(pieces) else None
-    shown = f"`{text[found.start : found.end]}`" if found else "the end of the line"
-    ends_value = before is not None and (before.kind in LITERALS or before.kind in ("NAME", "CLOSE", "UNINDEX"))
+    shown = f"`{text[found[1] : found[2]]}`" if found else "the end of the line"
+    ends_value = before is not None and (before[0] in LITERALS or before[0] in ("NAME", "CLOSE", "UNINDEX"))
     if before is None:
         assert found is not None
-        return Slip("broken-value", found.start, found.end, f"a value cannot start with {shown}")
+        return Slip("broken-value", found[1], found[2], f"a value cannot start with {shown}")
     if not ends_value:
-        behind = text[before.start : before.end]
-        if found and found.kind == "CLOSE" and before.kind == "OPEN":
-            return Slip("broken-value", before.end, before.end, "expected a value between the parentheses")
-        return Slip("broken-value", before.end, before.end, f"expected a value behind `{behind}`, found {shown}")
+        behind = text[before[1] : before[2]]
+        if found and found[0] == "CLOSE" and before[0] == "OPEN":
+            return Slip("broken-value", before[2], before[2], "expected a value between the parentheses")
+        return Slip("broken-value", before[2], before[2], f"expected a value behind `{behind}`, found {shown}")
     assert found is not None
-    if found.kind == "PREFIX" and text[found.start] == "-":
-        return sign_slip(found.start)
-    if found.kind == "NAME" and before.kind == "NUMBER":
-        return unit_slip(text, before, found.start, found.end)
-    if found.kind == "EQUALS":
-        return Slip("broken-value", found.start, found.end, "`=` defines or sets; equality is `is`", "write `is`")
-    if found.kind == "OPEN" and before.kind == "NAME":
+    if found[0] == "PREFIX" and text[found[1]] == "-":
+        return sign_slip(found[1])
+    if found[0] == "NAME" and before[0] == "NUMBER":
+        return unit_slip(text, before, found[1], found[2])
+    if found[0] == "EQUALS":
+        return Slip("broken-value", found[1], found[2], "`=` defines or sets; equality is `is`", "write `is`")
+    if found[0] == "OPEN" and before[0] == "NAME":
         return Slip(
             "call-space",
-            before.end,
-            found.end,
+            before[2],
+            found[2],
             "the parenthesis of a call touches its name",
-            f"write `{text[before.start : before.end]}(`",
+            f"write `{text[before[1] : before[2]]}(`",
         )
     return Slip(
-        "broken-value", before.end, before.end, f"expected a comma, an operator or the end of the value before {shown}"
+        "broken-value", before[2], before[2], f"expected a comma, an operator or the end of the value before {shown}"
     )
 
 
@@ -226,6 +280,6 @@ def unit_slip(text: str, number: Piece, start: int, end: int) -> Slip:
         "unknown-unit",
         start,
         end,
-        f"`{written}` behind the number `{text[number.start : number.end]}` is no unit",
+        f"`{written}` behind the number `{text[number[1] : number[2]]}` is no unit",
         unit_hint(written),
     )
