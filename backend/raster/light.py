@@ -57,9 +57,10 @@ def _begin(jobs: Any, m: Any, ambient: Any, axis: Any) -> None:
         g0, g1, g2 = f0 * scale + bias, f1 * scale + bias, f2 * scale + bias
         d0, d1, d2 = r0 * (_ONE - g0), r1 * (_ONE - g1), r2 * (_ONE - g2)
         jobs[i + 224], jobs[i + 240], jobs[i + 256] = d0, d1, d2
-        jobs[i + 176] = e0 * (d0 + g0 * seen)
-        jobs[i + 192] = e1 * (d1 + g1 * seen)
-        jobs[i + 208] = e2 * (d2 + g2 * seen)
+        even = _ONE + _CONTRAST * (x * ax + y * ay + z * az)
+        jobs[i + 176] = e0 * (d0 * even + g0 * seen)
+        jobs[i + 192] = e1 * (d1 * even + g1 * seen)
+        jobs[i + 208] = e2 * (d2 * even + g2 * seen)
 
 
 @fast_kernel

@@ -19,7 +19,8 @@ ROW = 8 + 2 * (DEGREE + 1)
 LEAST_ALPHA = 0.01  # a smoother surface would show the point that a directional light is
 
 # The surround that ambient light stands for: radiance 1 + CONTRAST * s(d . axis), s(t) = t / sqrt(t^2 + width^2), whose
-# mean over all directions is 1. The width grows with the roughness that blurs it.
+# mean over all directions is 1. The width grows with the roughness that blurs it. A matt surface receives
+# 1 + CONTRAST * (n . axis) from it: the half that is brighter fills (1 + n . axis) / 2 of its view.
 CONTRAST, SHARPEST = 0.65, 0.12
 
 
