@@ -6,7 +6,6 @@ import argparse
 import io
 import os
 import sys
-import tempfile
 from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Literal, TypeAlias
@@ -70,6 +69,8 @@ def _leave_quietly() -> int:
 
 
 def _own_up(fault: Exception, arguments: Sequence[str], trace: Trace, report: Report) -> int:
+    import tempfile
+
     folder = keep_fault(trace, fault, arguments, Path(tempfile.gettempdir()))
     report.message(f"a fault of platewright while {trace.stage}: {type(fault).__name__}: {fault}")
     if folder is None:

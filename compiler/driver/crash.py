@@ -2,10 +2,7 @@
 
 from __future__ import annotations
 
-import platform
-import shlex
 import sys
-import traceback
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path, PurePosixPath
@@ -54,6 +51,10 @@ def keep_fault(trace: Trace, fault: BaseException, arguments: Sequence[str], tem
 
 
 def _describe(trace: Trace, fault: BaseException, arguments: Sequence[str]) -> dict[str, bytes]:
+    import platform
+    import shlex
+    import traceback
+
     repeat = ["platewright", *_on_the_copies(trace, arguments)]
     versions = f"python {platform.python_version()} {sys.platform} {platform.machine()}"
     command = f"{shlex.join(repeat)}\n\n# as it was given: {shlex.join(['platewright', *arguments])}\n# {versions}\n"

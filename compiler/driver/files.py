@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import errno
 import os
-import shutil
 import stat
 from collections.abc import Mapping
 from dataclasses import dataclass
@@ -129,7 +128,7 @@ def _stage(target: Path, content: bytes, replacements: list[_Replacement]) -> No
     replacements.append(replacement)
     with open(descriptor, "wb") as file:
         if target.is_file():
-            shutil.copymode(target, replacement.fresh)
+            os.chmod(replacement.fresh, stat.S_IMODE(target.stat().st_mode))
         file.write(content)
         file.flush()
         os.fsync(descriptor)
@@ -151,6 +150,8 @@ def _keep(target: Path, replacement: _Replacement) -> None:
     try:
         os.link(target, replacement.kept)
     except OSError:
+        import shutil
+
         shutil.copy2(target, replacement.kept)
     replacement.had_earlier = True
 

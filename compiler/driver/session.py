@@ -116,14 +116,15 @@ class Session:
 
     def build(self, variant: Variant | None = None, settings: tuple[Setting, ...] = ()) -> Model | None:
         """The model of one variant; None where an error of the opening or of the building concerns all of it."""
-        from platewright.compiler.scene import build
+        from platewright.compiler.scene import build, prove
 
         if self.project is None:
             return None
         self.trace.stage = f"building {title(variant)}"
         model, problems = build(self.project, variant, settings)
         if model is not None:
-            problems = (*problems, *names.problems(model.figures, "figure"))
+            self.trace.stage = f"proving the parts of {title(variant)}"
+            problems = (*problems, *names.problems(model.figures, "figure"), *prove(model, self.mesher))
         self.findings.add(problems, variant)
         return None if any(map(_concerns_all, (*self.opening, *problems))) else model
 
