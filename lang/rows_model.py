@@ -229,7 +229,7 @@ CURVE_ROWS: tuple[Row, ...] = (
         "round to",
         "round to <point:point2> {radius <radius:length> <side:left|right> / through <through:point2>}",
         ("outline", "hole"),
-        "a circular stretch: turning left or right, or through a point",
+        "a circular stretch: bowing to the left or right of the way, or through a point",
         "round to (0, 20 mm) radius 10 mm left",
         clauses=("corner",),
     ),

@@ -8,10 +8,13 @@ import re
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from platewright.lang import printer
+from platewright.lang import printer, values
+from platewright.lang.items import Place
+from platewright.lang.parser import value_parser
 from platewright.lang.printer import format_text, print_expression
 from platewright.lang.reader import read_scene, read_value
 from platewright.lang.row import Row
+from platewright.lang.scanner import split_items
 from platewright.lang.source import Span
 from platewright.lang.tree import (
     Binary,
@@ -104,6 +107,25 @@ def test_printing_an_expression_and_reading_it_gives_the_same_tree(node: Express
     read, problems = read_value("set", printed)
     assert not problems, (printed, [problem.sentence for problem in problems])
     assert without_places(read) == without_places(node), printed
+
+
+@given(EXPRESSIONS | st.lists(LEAVES, min_size=2, max_size=4).map(lambda leaves: Tuple(tuple(leaves), S)))
+@settings(derandomize=True, deadline=None, max_examples=150)
+def test_values_read_early_are_what_the_grammar_makes_of_them(node: Expression) -> None:
+    printed = print_expression(node)
+    place = Place("set", 1)
+    for text in (printed, f"a = {printed}", f"({printed}, 0)"):
+        pieces, _ = split_items(text)
+        for item in pieces:
+            early = values._flat_node(value_parser(), place, text, item)
+            if early is not None:
+                assert early == values._parse(value_parser(), place, text, item)
+
+
+def test_frequent_values_are_read_early() -> None:
+    for text in ("a + b * 2 mm", "a = -b", "(0, a/2 + 3 mm, -1)", "(a, b)", "not a and b", "1 .. 2", "a if b else c"):
+        pieces, _ = split_items(text)
+        assert values._flat_node(value_parser(), Place("a", 1), text, pieces[0]) is not None, text
 
 
 @pytest.mark.parametrize(

@@ -22,7 +22,7 @@ README = (Path(__file__).parents[1] / "lang" / "README.md").read_text(encoding="
 EXAMPLES = re.findall(r"^```plate( later)?\n(.*?)^```$", README, re.MULTILINE | re.DOTALL)
 BESIDE = {
     "fasteners.plate": "platewright 1\n\npart screw(d = 5 mm)\n    add cylinder diameter d length 3 * d\n",
-    "sizes.csv": "name,rim (mm),opened\nsmall,120,no\nlarge,300,yes\n",
+    "sizes.csv": "name,rim mm,opened\nsmall,120,no\nlarge,300,yes\n",
 }
 
 
