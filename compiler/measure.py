@@ -13,7 +13,7 @@ import manifold3d
 import numpy as np
 from numpy.typing import NDArray
 
-from .solids.finish import mates
+from .solids.topology import components, paired_sides
 
 F64 = NDArray[np.float64]
 Faces = NDArray[np.integer]
@@ -66,30 +66,7 @@ def bounds(vertices: F64) -> tuple[tuple[float, float, float], tuple[float, floa
 
 def is_closed(faces: Faces, n_vertices: int) -> bool:
     """Whether every directed side occurs once and its reverse once."""
-    return mates(faces.astype(np.int32), n_vertices)[1]
-
-
-def components(faces: Faces, n_vertices: int) -> NDArray[np.int64]:
-    """Label (m,) of the connected surface that each face belongs to, numbered by first face.
-
-    Labels sink along sides to the least vertex, with pointer jumping: O(m log n).
-    """
-    label = np.arange(n_vertices)
-    start = faces.ravel().astype(np.int64)
-    end = faces[:, [1, 2, 0]].ravel().astype(np.int64)
-    while True:
-        low = np.minimum(label[start], label[end])
-        before = label.copy()
-        np.minimum.at(label, label[start], low)
-        np.minimum.at(label, label[end], low)
-        while not np.array_equal(label, label[label]):
-            label = label[label]
-        if np.array_equal(label, before):
-            break
-    _, first, inverse = np.unique(label[faces[:, 0]], return_index=True, return_inverse=True)
-    rank = np.empty(len(first), np.int64)
-    rank[np.argsort(first)] = np.arange(len(first))
-    return rank[inverse]
+    return paired_sides(faces.astype(np.int32), n_vertices)[2]
 
 
 def count_pieces(vertices: F64, faces: Faces) -> int:

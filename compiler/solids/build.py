@@ -26,6 +26,7 @@ from .recipe import Affine, Placed, Primitive, Recipe
 from .shell import Shell
 from .surfaces import Surfaces, concatenate, place
 from .tessellate import count_triangles, problems_of, rise, tessellate
+from .topology import SPECK, in_use, without_specks
 
 F64 = NDArray[np.float64]
 
@@ -51,10 +52,13 @@ def build(recipe: Recipe, rung: float) -> tuple[Mesh | None, tuple[Flaw, ...]]:
         return _from_shell(key_of(recipe, rung), only, rung), ()
     workshop = _Workshop(rung)
     whole = workshop.make(recipe, 1.0)
-    workshop.flaws.extend(_after(whole, recipe))
-    if any(flaw.is_error for flaw in workshop.flaws):
-        return None, tuple(workshop.flaws)
-    return _from_manifold(key_of(recipe, rung), whole.manifold, workshop.leaves), tuple(workshop.flaws)
+    surfaces = [] if whole.manifold.is_empty() else whole.manifold.decompose()
+    pieces = [piece for piece in surfaces if not _is_speck(piece, whole.manifold)]
+    flaws = (*workshop.flaws, *_after(whole, pieces, recipe))
+    if any(flaw.is_error for flaw in flaws):
+        return None, flaws
+    has_specks = len(pieces) < len(surfaces)
+    return _from_manifold(key_of(recipe, rung), whole.manifold, workshop.leaves, has_specks), flaws
 
 
 def key_of(recipe: Recipe, rung: float) -> str:
@@ -324,29 +328,32 @@ def _volume(shell: Shell) -> float:
     return float((a * np.cross(b, c)).sum() / 6.0)
 
 
-def _after(body: _Body, recipe: Recipe) -> Iterator[Flaw]:
-    """What can only be said of the finished solid."""
+def _after(body: _Body, pieces: list[Manifold], recipe: Recipe) -> Iterator[Flaw]:
+    """What can only be said of the finished solid and its connected surfaces."""
     solid = body.manifold
     if solid.status() != manifold3d.Error.NoError:
-        yield Flaw(
-            "boolean failed", -1, f"The shapes could not be combined: {solid.status().name}.", "Please report it."
-        )
+        name = solid.status().name
+        yield Flaw("boolean failed", -1, f"The shapes could not be combined: {name}.", "Please report it.")
         return
-    if solid.is_empty():
+    if not pieces:
         yield _empty(recipe)
         return
     low, high = body.volume
     volume, slack = solid.volume(), VOLUME_SLACK * high
     if not low - slack <= volume <= high + slack:
-        sentence = (
-            f"The shapes could not be combined: {volume:.6g} mm3 is left, between {low:.6g} and {high:.6g} expected."
-        )
-        yield Flaw("boolean failed", -1, sentence, "Please report it.")
+        found = f"{volume:.6g} mm3 is left, between {low:.6g} and {high:.6g} expected"
+        yield Flaw("boolean failed", -1, f"The shapes could not be combined: {found}.", "Please report it.")
     # A cavity is a surface of its own with a negative volume; only what has a positive one is a piece.
-    pieces = sum(1 for piece in solid.decompose() if piece.volume() > 0.0)
-    if pieces > 1:
+    n = sum(1 for piece in pieces if piece.volume() > 0.0)
+    if n > 1:
         hint = "Let its shapes overlap, or make a part of each."
-        yield Flaw("several pieces", -1, f"The part falls into {pieces} pieces.", hint, is_error=False)
+        yield Flaw("several pieces", -1, f"The part falls into {n} pieces.", hint, is_error=False)
+
+
+def _is_speck(piece: Manifold, solid: Manifold) -> bool:
+    """Whether a connected surface is what rounding leaves between faces that should have met."""
+    box = np.array(solid.bounding_box()).reshape(2, 3)
+    return bool(abs(piece.volume()) <= SPECK * np.ptp(box, axis=0).max() * piece.surface_area())
 
 
 def _empty(recipe: Recipe) -> Flaw:
@@ -358,7 +365,7 @@ def _empty(recipe: Recipe) -> Flaw:
     return Flaw("empty part", last.placed[0].source, sentence, "Check where it stands and how large it is.")
 
 
-def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf]) -> Mesh:
+def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf], has_specks: bool) -> Mesh:
     mesh = solid.to_mesh64()
     faces = np.asarray(mesh.tri_verts).astype(np.int32)
     run_index = np.array(mesh.run_index, np.int64) // 3
@@ -382,11 +389,16 @@ def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf]) -> Mesh:
     behind = (np.array(mesh.run_flags, np.uint8) & 1).astype(np.bool_)[run_of_row]
     rows = np.repeat(first_of_run, lengths) + np.array(mesh.face_id, np.int64)
     sources = np.array([leaf.source for leaf in leaves], np.int32)[leaf_of_run]
+    vertices = np.ascontiguousarray(mesh.vert_properties[:, :3]) + 0.0
+    rows, sources = rows.astype(np.int32), np.repeat(sources, lengths)
+    if has_specks:
+        kept = without_specks(vertices, faces)
+        vertices, faces, rows, sources = *in_use(vertices, faces[kept]), rows[kept], sources[kept]
     return finish(
         key,
-        np.ascontiguousarray(mesh.vert_properties[:, :3]) + 0.0,
+        vertices,
         faces,
-        rows.astype(np.int32),
-        np.repeat(sources, lengths),
+        rows,
+        sources,
         Surfaces(placed.kind, placed.affine, placed.ratio, placed.flipped ^ behind),
     )

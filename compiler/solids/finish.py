@@ -7,6 +7,7 @@ from numpy.typing import NDArray
 from platewright.backend.contract import EdgeKind, FaceOrigin, Mesh, PatchKind
 
 from .surfaces import SAME_SURFACE, Surfaces, describe, normals, plane_normals
+from .topology import paired_sides
 
 F64 = NDArray[np.float64]
 I32 = NDArray[np.int32]
@@ -43,24 +44,6 @@ def finish(key: str, vertices: F64, faces: I32, face_surface: I32, face_source: 
         patches=describe(surfaces),
         closed=closed,
     )
-
-
-def paired_sides(faces: I32, n_vertices: int) -> tuple[I64, I64, bool]:
-    """Sides that meet, as 3·face + corner: (k,) and (k,), each pair once; and whether the faces close, every
-    directed side occurring once and its reverse once. A side with no mate, or with several, is in no pair.
-    """
-    start = faces.astype(np.int64)
-    end = start[:, [1, 2, 0]]
-    undirected = (np.minimum(start, end) * n_vertices + np.maximum(start, end)).ravel()
-    order = np.argsort(undirected)
-    ordered = undirected[order]
-    forward = (start < end).ravel()[order]
-    first = np.flatnonzero(ordered[1:] == ordered[:-1])
-    alone = np.ones(len(first), np.bool_)
-    alone[1:] &= first[1:] != first[:-1] + 1
-    alone[:-1] &= first[1:] != first[:-1] + 1
-    first = first[alone & (forward[first] != forward[first + 1])]
-    return order[first], order[first + 1], bool(len(faces) > 0 and 2 * len(first) == 3 * len(faces))
 
 
 def _in_use(face_surface: I32, surfaces: Surfaces) -> tuple[I32, Surfaces]:

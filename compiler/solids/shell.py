@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from .surfaces import Surfaces
+from .topology import in_use
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -28,10 +29,6 @@ def shell(
 ) -> Shell:
     """From vertices and pieces, each the triangles (k,3) of one surface; vertices without triangles are left out."""
     faces = np.concatenate([triangles for triangles, _ in pieces]).astype(np.int32)
-    used = np.zeros(len(vertices), np.bool_)
-    used[faces] = True
-    if not used.all():
-        faces = (np.cumsum(used, dtype=np.int32) - np.int32(1))[faces]
-        vertices = vertices[used]
+    vertices, faces = in_use(vertices, faces)
     rows = np.repeat([row for _, row in pieces], [len(triangles) for triangles, _ in pieces]).astype(np.int32)
     return Shell(np.ascontiguousarray(vertices, np.float64) + 0.0, faces, rows, surfaces)

@@ -121,7 +121,7 @@ def largest_scales(affines: F64) -> F64:
 
 def _about(rows: Sequence[Sequence[float]], through: Point3) -> Affine:
     shift = [through[i] - sum(rows[i][j] * through[j] for j in range(3)) for i in range(3)]
-    return from_matrix(np.array([[*rows[i], shift[i]] for i in range(3)]))
+    return (_row((*rows[0], shift[0])), _row((*rows[1], shift[1])), _row((*rows[2], shift[2])))
 
 
 def _product(outer: Affine, inner: Affine) -> Affine:
@@ -134,7 +134,7 @@ def _product(outer: Affine, inner: Affine) -> Affine:
 
 def _row(values: Sequence[float]) -> tuple[float, float, float, float]:
     a, b, c, d = values
-    return (a, b, c, d)
+    return (a + 0.0, b + 0.0, c + 0.0, d + 0.0)
 
 
 def _unit(vector: Point3) -> Point3:
