@@ -157,17 +157,21 @@ def split_items(text: str, start: int = 0) -> tuple[list[list[Piece]], int]:
                 if opened:
                     raise _unclosed(opened, previous_end)
                 return items, begin
-            kind = _settle(text, kind, begin, end, previous, previous_end, opened)
+            kind = _settle(text, kind, begin, end, previous, previous_end)
         if kind in _STARTS and not opened and previous in _ENDS:
             item = []
             items.append(item)
             operations = 0
         elif not items:
             items.append(item)
-        if kind not in _OPERANDS:
-            operations = _operations(kind, begin, end, operations, bool(opened))
-            if kind in _BRACKETS:
-                _count(text, kind, begin, end, opened)
+        if kind in _OPERATIONS:
+            operations += 1
+            if operations > OPERATIONS_LIMIT:
+                raise _too_many(begin, end)
+        elif kind in _BRACKETS:
+            _count(text, kind, begin, end, opened)
+        elif kind == "COMMA" and not opened:
+            operations = 0
         item.append((kind, begin, end))
         previous = kind
         previous_end = end
@@ -176,33 +180,26 @@ def split_items(text: str, start: int = 0) -> tuple[list[list[Piece]], int]:
     return items, -1
 
 
-def _operations(kind: str, begin: int, end: int, operations: int, is_inside: bool) -> int:
-    """The number of operations in the value so far. Raises Slip beyond the limit."""
-    if kind in _OPERATIONS:
-        operations += 1
-    elif kind == "COMMA" and not is_inside:
-        operations = 0
-    if operations > OPERATIONS_LIMIT:
-        raise Slip(
-            "too-many-operations",
-            begin,
-            end,
-            f"one value may hold {OPERATIONS_LIMIT} operations, and this one has more",
-            "give names to parts of it under `derived`",
-        )
-    return operations
+def _too_many(begin: int, end: int) -> Slip:
+    return Slip(
+        "too-many-operations",
+        begin,
+        end,
+        f"one value may hold {OPERATIONS_LIMIT} operations, and this one has more",
+        "give names to parts of it under `derived`",
+    )
 
 
 _OPERATIONS = frozenset({"OPERATOR", "PREFIX", "IF"})
-_PLAIN = frozenset({"QUANTITY", "TEXT", "RATIO", "CLOSE", "EQUALS", "UNINDEX", "RANGE"})
+_PLAIN = frozenset({"QUANTITY", "TEXT", "RATIO", "CLOSE", "EQUALS", "UNINDEX", "RANGE", "OPERATOR"})
 _BRACKETS = frozenset({"OPEN", "CALL", "CLOSE", "INDEX", "UNINDEX"})
 
 
-def _settle(
-    text: str, kind: str, begin: int, end: int, previous: str, previous_end: int, opened: list[tuple[str, int]]
-) -> str:
+def _settle(text: str, kind: str, begin: int, end: int, previous: str, previous_end: int) -> str:
     """The terminal for a token whose kind depends on its neighbours; raises Slip where none fits."""
     match kind:
+        case "COMMA":
+            _check_comma(text, begin, end)
         case "NUMBER":
             _check_number(text, begin, end)
         case "DATE":
@@ -211,8 +208,6 @@ def _settle(
             return _settle_sign(text, begin, previous, previous_end)
         case "OPEN":
             return "CALL" if previous == "NAME" and begin == previous_end else "OPEN"
-        case "COMMA":
-            _check_comma(text, begin, end, bool(opened))
         case "INDEX":
             if previous not in ("NAME", "UNINDEX") or begin != previous_end:
                 raise Slip(
@@ -231,8 +226,14 @@ def _settle(
     return kind
 
 
+_SUSPECT = frozenset({".", " "})
+"""What may stand behind a number and be the start of a mistake: a point without digits, ` in`."""
+
+
 def _check_number(text: str, begin: int, end: int) -> None:
     following = text[end : end + 1]
+    if following not in _SUSPECT:
+        return
     if following == "." and text[end + 1 : end + 2] != ".":
         raise Slip(
             "bad-number",
@@ -298,7 +299,7 @@ def _of_sign(sign: str) -> str:
     return "difference" if sign == "-" else "sum"
 
 
-def _check_comma(text: str, begin: int, end: int, inside: bool) -> None:
+def _check_comma(text: str, begin: int, end: int) -> None:
     following = text[end : end + 1]
     if following in ("", " "):
         return

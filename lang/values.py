@@ -83,7 +83,8 @@ def _flat_node(parser: Lark, place: Place, text: str, pieces: list[Piece]) -> No
 
 
 def _literal(parser: Lark, place: Place, text: str, kind: str, start: int, end: int) -> Expression:
-    span = place.span(start, end)
+    file, line = place
+    span = Span(file, line, start + 1, line, end + 1)
     written = text[start:end]
     match kind:
         case "QUANTITY":
