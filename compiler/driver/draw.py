@@ -82,6 +82,11 @@ def _draw_variant(variant: Variant | None, figures: tuple[str, ...], run: _Run, 
     if model is None:
         run.failed.append(title(variant))
         return
+    if not model.figures:
+        run.report.message(
+            "there is nothing to draw: the scene has no figure, and no one thing that nothing else places"
+        )
+        run.failed.append(title(variant))
     bad = run.session.bad_figures(model)
     for figure in figures or [figure.name for figure in model.figures]:
         unit = figure if variant is None else f"{variant.name}/{figure}"
