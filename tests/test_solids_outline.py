@@ -63,19 +63,19 @@ def test_points_on_a_straight_stretch_leave_no_wall_of_their_own() -> None:
     [
         (Outline(SQUARE), ""),
         (Outline(SQUARE, (circle(5.0, 5.0, 4.999),)), ""),
-        (Outline(SQUARE, (circle(5.0, 5.0, 5.0),)), "outline crosses itself"),
-        (Outline(SQUARE, (circle(5.0, 5.0, 5.1),)), "outline crosses itself"),
-        (Outline(SQUARE, (circle(15.0, 5.0, 2.0),)), "hole outside"),
-        (Outline(SQUARE, (circle(5.0, 5.0, 20.0),)), "hole outside"),
-        (Outline(SQUARE, (circle(5.0, 5.0, 4.0), circle(5.0, 5.0, 2.0))), "hole outside"),
-        (Outline(SQUARE, (circle(3.0, 5.0, 1.0), circle(5.0, 5.0, 1.001))), "outline crosses itself"),
+        (Outline(SQUARE, (circle(5.0, 5.0, 5.0),)), "outline-crosses-itself"),
+        (Outline(SQUARE, (circle(5.0, 5.0, 5.1),)), "outline-crosses-itself"),
+        (Outline(SQUARE, (circle(15.0, 5.0, 2.0),)), "hole-outside"),
+        (Outline(SQUARE, (circle(5.0, 5.0, 20.0),)), "hole-outside"),
+        (Outline(SQUARE, (circle(5.0, 5.0, 4.0), circle(5.0, 5.0, 2.0))), "hole-outside"),
+        (Outline(SQUARE, (circle(3.0, 5.0, 1.0), circle(5.0, 5.0, 1.001))), "outline-crosses-itself"),
         (Outline(SQUARE, (circle(3.0, 5.0, 1.0), circle(5.0, 5.0, 0.999))), ""),
-        (Outline(through((0.0, 0.0), (10.0, 10.0), (10.0, 0.0), (0.0, 5.0))), "outline crosses itself"),
-        (Outline(through((0.0, 0.0), (10.0, 0.0), (10.0, 10.0), (5.0, 0.0), (0.0, 10.0))), "outline crosses itself"),
-        (Outline(through((0.0, 0.0), (10.0, 0.0), (10.0, 5.0), (10.0, -5.0), (0.0, 9.0))), "outline crosses itself"),
-        (Outline(through((0.0, 0.0), (10.0, 0.0))), "no area"),
-        (Outline(through((0.0, 0.0), (0.0, 0.0))), "no area"),
-        (Outline(Loop((0.0, 0.0), ())), "no area"),
+        (Outline(through((0.0, 0.0), (10.0, 10.0), (10.0, 0.0), (0.0, 5.0))), "outline-crosses-itself"),
+        (Outline(through((0.0, 0.0), (10.0, 0.0), (10.0, 10.0), (5.0, 0.0), (0.0, 10.0))), "outline-crosses-itself"),
+        (Outline(through((0.0, 0.0), (10.0, 0.0), (10.0, 5.0), (10.0, -5.0), (0.0, 9.0))), "outline-crosses-itself"),
+        (Outline(through((0.0, 0.0), (10.0, 0.0))), "no-area"),
+        (Outline(through((0.0, 0.0), (0.0, 0.0))), "no-area"),
+        (Outline(Loop((0.0, 0.0), ())), "no-area"),
         (Outline(Loop((0.0, 0.0), (ArcTo((10.0, 0.0), (5.0, 0.0), True),))), ""),
     ],
 )
@@ -95,12 +95,12 @@ def test_crossing_is_named_by_its_place() -> None:
 def test_radius_below_zero_matters_only_when_revolved() -> None:
     left = Outline(through((-1.0, 0.0), (10.0, 0.0), (10.0, 10.0)))
     assert code_of(left) == ""
-    assert code_of(left, turned=True) == "negative radius"
+    assert code_of(left, turned=True) == "negative-radius"
     bulge = Outline(Loop((1.0, 0.0), (LineTo((5.0, 0.0)), LineTo((5.0, 8.0)), LineTo((1.0, 8.0)), bulge_left())))
-    assert code_of(bulge, turned=True) == "negative radius"
+    assert code_of(bulge, turned=True) == "negative-radius"
     mesh, flaws = build(Recipe((add(Revolve(bulge), source=4),)), 0.05)
     assert mesh is None
-    assert [(f.code, f.source) for f in flaws] == [("negative radius", 4)]
+    assert [(f.code, f.source) for f in flaws] == [("negative-radius", 4)]
 
 
 def bulge_left() -> ArcTo:
@@ -110,7 +110,7 @@ def bulge_left() -> ArcTo:
 def test_too_many_stretches_are_refused_before_any_work() -> None:
     n = outlines.MAX_STRETCHES + 1
     ring = through(*[(math.cos(math.tau * k / n), math.sin(math.tau * k / n)) for k in range(n + 1)])
-    assert code_of(Outline(ring)) == "too large"
+    assert code_of(Outline(ring)) == "too-large"
 
 
 def test_arc_whose_ends_differ_in_radius_is_our_bug() -> None:

@@ -39,9 +39,9 @@ VOLUME_SLACK = 1e-9
 def build(recipe: Recipe, rung: float) -> tuple[Mesh | None, tuple[Flaw, ...]]:
     """Build one part at a chord error of `rung` mm, in the part's frame.
 
-    Returns None with at least one error among the flaws, or a mesh with warnings at most. Flaws: `too large`,
-    `nothing to cut`, `empty part`, `several pieces` (warning), `boolean failed`, and those of outlines
-    (`no area`, `outline crosses itself`, `hole outside`, `negative radius`) and `torus meets itself`.
+    Returns None with at least one error among the flaws, or a mesh with warnings at most. Flaws: `too-large`,
+    `nothing-to-cut`, `empty-part`, `several-pieces` (warning), `boolean-failed`, and those of outlines
+    (`no-area`, `outline-crosses-itself`, `hole-outside`, `negative-radius`) and `torus-meets-itself`.
     SolidError means that the recipe should have been refused before. The same recipe and rung give the same bytes.
     """
     flaws = _before(recipe, rung)
@@ -162,7 +162,7 @@ class _Workshop:
             body = self.make(shape, grown)
             if any(step.operation != "add" for step in shape.steps) and body.manifold.is_empty():
                 sentence = "Nothing is left of the part that is used here."
-                self.flaws.append(Flaw("empty part", placed.source, sentence, "Look at its cuts."))
+                self.flaws.append(Flaw("empty-part", placed.source, sentence, "Look at its cuts."))
             return body
         if (shape, grown) not in self._shells:
             shell = tessellate(shape, self.rung / grown)
@@ -195,12 +195,12 @@ def _before(recipe: Recipe, rung: float) -> tuple[Flaw, ...]:
     if copies > MAX_COPIES:
         return (
             Flaw(
-                "too large", -1, f"The part is made of more than {MAX_COPIES} shapes, the limit named `copies`.", hint
+                "too-large", -1, f"The part is made of more than {MAX_COPIES} shapes, the limit named `copies`.", hint
             ),
         )
     if triangles > MAX_TRIANGLES:
         sentence = f"The part would take more than {MAX_TRIANGLES} triangles, the limit named `triangles`."
-        return (Flaw("too large", -1, sentence, hint),)
+        return (Flaw("too-large", -1, sentence, hint),)
     found: dict[Flaw, None] = {}
     judged: dict[Primitive, tuple[tuple[str, str, str], ...]] = {}
     for placed in _all_placed(recipe, set()):
@@ -213,7 +213,7 @@ def _before(recipe: Recipe, rung: float) -> tuple[Flaw, ...]:
     first = next((step for step in recipe.steps if step.placed), None)
     if first is not None and first.operation != "add":
         sentence = f"The part begins with a {first.operation}, but there is nothing to {first.operation} yet."
-        found[Flaw("nothing to cut", first.placed[0].source, sentence, "Add a shape first.")] = None
+        found[Flaw("nothing-to-cut", first.placed[0].source, sentence, "Add a shape first.")] = None
     return tuple(found)
 
 
@@ -333,7 +333,7 @@ def _after(body: _Body, pieces: list[Manifold], recipe: Recipe) -> Iterator[Flaw
     solid = body.manifold
     if solid.status() != manifold3d.Error.NoError:
         name = solid.status().name
-        yield Flaw("boolean failed", -1, f"The shapes could not be combined: {name}.", "Please report it.")
+        yield Flaw("boolean-failed", -1, f"The shapes could not be combined: {name}.", "Please report it.")
         return
     if not pieces:
         yield _empty(recipe)
@@ -342,12 +342,12 @@ def _after(body: _Body, pieces: list[Manifold], recipe: Recipe) -> Iterator[Flaw
     volume, slack = solid.volume(), VOLUME_SLACK * high
     if not low - slack <= volume <= high + slack:
         found = f"{volume:.6g} mm3 is left, between {low:.6g} and {high:.6g} expected"
-        yield Flaw("boolean failed", -1, f"The shapes could not be combined: {found}.", "Please report it.")
+        yield Flaw("boolean-failed", -1, f"The shapes could not be combined: {found}.", "Please report it.")
     # A cavity is a surface of its own with a negative volume; only what has a positive one is a piece.
     n = sum(1 for piece in pieces if piece.volume() > 0.0)
     if n > 1:
         hint = "Let its shapes overlap, or make a part of each."
-        yield Flaw("several pieces", -1, f"The part falls into {n} pieces.", hint, is_error=False)
+        yield Flaw("several-pieces", -1, f"The part falls into {n} pieces.", hint, is_error=False)
 
 
 def _is_speck(piece: Manifold, solid: Manifold) -> bool:
@@ -359,10 +359,10 @@ def _is_speck(piece: Manifold, solid: Manifold) -> bool:
 def _empty(recipe: Recipe) -> Flaw:
     last = next((s for s in reversed(recipe.steps) if s.operation != "add" and s.placed), None)
     if last is None:
-        return Flaw("empty part", -1, "The part has no shape.", "Add one.")
+        return Flaw("empty-part", -1, "The part has no shape.", "Add one.")
     verb = "cutting" if last.operation == "cut" else "keeping"
     sentence = f"Nothing is left of the part after {verb} this."
-    return Flaw("empty part", last.placed[0].source, sentence, "Check where it stands and how large it is.")
+    return Flaw("empty-part", last.placed[0].source, sentence, "Check where it stands and how large it is.")
 
 
 def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf], has_specks: bool) -> Mesh:

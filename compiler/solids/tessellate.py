@@ -66,7 +66,7 @@ def problems_of(shape: Primitive) -> tuple[OutlineFlaw, ...]:
         sentence = (
             f"The tube of the torus, {shape.tube:.6g} mm, must be thinner than its diameter, {shape.diameter:.6g} mm."
         )
-        return (OutlineFlaw("torus meets itself", sentence, "Make the tube thinner or the diameter larger."),)
+        return (OutlineFlaw("torus-meets-itself", sentence, "Make the tube thinner or the diameter larger."),)
     return ()
 
 
