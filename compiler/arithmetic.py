@@ -30,7 +30,7 @@ def finite(value: float, span: Span) -> float:
 
 def matched(left: Quantity, right: Quantity, span: Span, what: str) -> tuple[Quantity, Quantity]:
     """Both with one dimension; a bare 0 takes the other's. Raises Mistake, which begins with `what`."""
-    if left.dimension == right.dimension:
+    if left.dimension is right.dimension or left.dimension == right.dimension:
         return left, right
     if left.bare_zero:
         return Quantity(0.0, right.dimension), right
@@ -92,8 +92,7 @@ def arithmetic(operator: str, left: Value, right: Value, at: tree.Binary) -> Val
         case ("+" | "-", Vector(), Vector()):
             return _vector_sum(operator, left, right, at.span)
         case ("*", Quantity(), Quantity()):
-            dimension = _limited(left.dimension * right.dimension, at.span)
-            return Quantity(finite(left.value * right.value, at.span), dimension)
+            return Quantity(finite(left.value * right.value, at.span), _product(left, right, at.span))
         case ("*", Quantity(), Vector()):
             return _multiplied(right, left, at.span)
         case ("*", Vector(), Quantity()):
@@ -112,6 +111,12 @@ def _one_kind(left: Vector, right: Vector) -> bool:
     return left.dimension == right.dimension or not any(left.components) or not any(right.components)
 
 
+def _product(left: Quantity | Vector, right: Quantity, span: Span) -> Dimension:
+    if right.dimension is NUMBER:
+        return left.dimension
+    return right.dimension if left.dimension is NUMBER else _limited(left.dimension * right.dimension, span)
+
+
 def _limited(dimension: Dimension, span: Span) -> Dimension:
     if max(map(abs, dimension.exponents)) > limits.POWERS:
         sentence = f"the powers in the dimension of this value pass {limits.POWERS}, the limit"
@@ -121,7 +126,7 @@ def _limited(dimension: Dimension, span: Span) -> Dimension:
 
 def _multiplied(moved: Vector, factor: Quantity, span: Span) -> Vector:
     components = tuple(finite(each * factor.value, span) for each in moved.components)
-    return Vector(components, _limited(moved.dimension * factor.dimension, span))
+    return Vector(components, _product(moved, factor, span))
 
 
 def _vector_sum(operator: str, left: Vector, right: Vector, span: Span) -> Vector:
@@ -139,7 +144,8 @@ def _vector_sum(operator: str, left: Vector, right: Vector, span: Span) -> Vecto
 def _quotient(left: Quantity | Vector, right: Quantity, at: tree.Binary) -> Value:
     if right.value == 0:
         raise mistake("division-by-zero", at.right.span, "this divides by 0")
-    dimension = _limited(left.dimension / right.dimension, at.span)
+    is_number = right.dimension is NUMBER
+    dimension = left.dimension if is_number else _limited(left.dimension / right.dimension, at.span)
     if isinstance(left, Vector):
         return Vector(tuple(finite(each / right.value, at.span) for each in left.components), dimension)
     return Quantity(finite(left.value / right.value, at.span), dimension)

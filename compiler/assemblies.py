@@ -9,6 +9,7 @@ from platewright.lang import tree
 from platewright.lang.units import LENGTH
 
 from . import limits
+from .coincidence import coincide, of_thing
 from .expressions import evaluate
 from .graph import Assembly, Copy, Occurrence, count_nodes
 from .marks import OwnNames, axes_of, read_marks
@@ -34,21 +35,25 @@ def make_assembly(things: Instances, module: Module, declaration: Declaration, s
     marks = read_marks(lines, scope, names, problems)
     axes = axes_of(marks)
     occurrences: list[Occurrence] = []
-    n_nodes = 1
+    n_nodes, n_levels = 1, 1
     for line in lines:
-        if line.word == "place":
+        if line.word == "place" and n_nodes <= limits.COPIES:
             with problems.collecting():
                 occurrence = _Placing(things, module, line, axes).occurrence(scope)
                 names.take(occurrence.name, occurrence.span)
                 occurrences.append(occurrence)
                 n_nodes += sum(count_nodes(copy.thing) for copy in occurrence.copies)
+                n_levels = max([n_levels, *(copy.thing.n_levels + 1 for copy in occurrence.copies)])
+                if n_levels > limits.NESTING:
+                    sentence = f"things hold each other more than {limits.NESTING} deep, the limit"
+                    raise mistake("too-deep", line.span, sentence)
                 if n_nodes > limits.COPIES:
                     sentence = f"`{declaration.name}` holds more than {limits.COPIES:,} things, the limit"
                     raise mistake("too-much", line.span, sentence)
     if not any(line.word == "place" for line in lines) and not declaration.is_faulty:
         sentence = f"the assembly `{declaration.name}` places nothing"
         problems.error("empty-assembly", declaration.span, sentence, "give it a `place` line")
-    return Assembly(declaration.name, tuple(occurrences), marks, declaration.span, n_nodes)
+    return Assembly(declaration.name, tuple(occurrences), marks, declaration.span, n_nodes, n_levels)
 
 
 @dataclass(slots=True)
@@ -72,7 +77,11 @@ class _Placing:
         last = (written.path if isinstance(written, tree.Call) else written).steps[-1]
         for turn in turns(line, scope, self.things.tables, self.module.file):
             self._turn(written, turn.scope, turn.label)
-        if len(self.copies) > 1 and len({(id(copy.thing), copy.placement) for copy in self.copies}) < len(self.copies):
+        places: dict[int, list[Affine]] = {}
+        for copy in self.copies:
+            places.setdefault(id(copy.thing), []).append(copy.placement)
+        things = {id(copy.thing): copy.thing for copy in self.copies}
+        if any(coincide(places[key], of_thing(thing)) for key, thing in things.items()):
             raise mistake("coincident-copies", line.span, "two copies of this thing lie in one place")
         called, span = (own.text, own.span) if own else (last.name, last.span)
         return Occurrence(called, tuple(self.copies), tuple(self.explodes), span)

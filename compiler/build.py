@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
+from typing import Generic, TypeVar
 
 from platewright.lang import tree
 from platewright.lang.problems import Problem
@@ -20,14 +21,25 @@ from .readings import parameters
 from .scope import Scope
 from .viewpoints import Viewpoint, read_viewpoint
 
+_Read = TypeVar("_Read")
+
+
+@dataclass(frozen=True, slots=True)
+class Described(Generic[_Read]):
+    """What a viewpoint or lighting says, None where its problems forbid its use."""
+
+    value: _Read | None
+    problems: tuple[Problem, ...]
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Model:
     """One variant of a scene, evaluated.
 
     `things` are the parts and assemblies of the main file that have all parameters, `roots` the names of those that
-    nothing else places. `viewpoints` and `lightings` stand by file and name, None where their problems have been
-    reported; `is_whole` says that nothing has been. `sources` are the lines that recipes refer to by row.
+    nothing else places. `viewpoints` and `lightings` stand by file and name, with problems that are not yet reported:
+    they concern the figures that use them. `is_whole` says that nothing has been reported. `sources` are the lines that
+    recipes refer to by row.
     `instantiate` gives the thing that a path or call of the main file names, raises Mistake, and adds what is wrong in
     its lines; it may add to `sources`.
     """
@@ -37,8 +49,8 @@ class Model:
     scopes: Mapping[str, Scope]
     things: Mapping[str, Thing]
     roots: tuple[str, ...]
-    viewpoints: Mapping[tuple[str, str], Viewpoint | None]
-    lightings: Mapping[tuple[str, str], Sources | None]
+    viewpoints: Mapping[tuple[str, str], Described[Viewpoint]]
+    lightings: Mapping[tuple[str, str], Described[Sources]]
     is_whole: bool
     sources: Sequence[Span]
     instantiate: Callable[[tree.Path | tree.Call, Problems], Thing]
@@ -63,8 +75,8 @@ def build_model(files: Files, modules: Modules, settings: tuple[Setting, ...]) -
     scopes = _scopes(files.main, modules, settings, problems)
     instances = Instances(modules, files.tables, scopes, problems)
     things: dict[str, Thing] = {}
-    viewpoints: dict[tuple[str, str], Viewpoint | None] = {}
-    lightings: dict[tuple[str, str], Sources | None] = {}
+    viewpoints: dict[tuple[str, str], Described[Viewpoint]] = {}
+    lightings: dict[tuple[str, str], Described[Sources]] = {}
     for module in modules.values():
         scope = scopes[module.file]
         for declaration in module.names.values():
@@ -72,9 +84,9 @@ def build_model(files: Files, modules: Modules, settings: tuple[Setting, ...]) -
             if declaration.kind == "material":
                 instances.surface(module, declaration)
             elif declaration.kind == "viewpoint":
-                viewpoints[key] = _viewpoint(declaration, scope, problems)
+                viewpoints[key] = _described(read_viewpoint, declaration, scope)
             elif declaration.kind == "lighting":
-                lightings[key] = _lighting(declaration, scope, problems)
+                lightings[key] = _described(read_lighting, declaration, scope)
             elif _has_defaults(declaration):
                 with problems.collecting():
                     if declaration.kind == "outline":
@@ -98,28 +110,16 @@ def build_model(files: Files, modules: Modules, settings: tuple[Setting, ...]) -
     return model, problems.all()
 
 
-def _viewpoint(declaration: Declaration, scope: Scope, problems: Problems) -> Viewpoint | None:
+def _described(
+    read: Callable[[tree.Line, Scope, Problems], _Read | None], declaration: Declaration, scope: Scope
+) -> Described[_Read]:
+    """What a declaration says. That it says too little is no problem where a line of it could not be read."""
     own = Problems()
-    found = read_viewpoint(declaration.line, scope, own)
-    return found if _is_sound(declaration, own, problems) else None
-
-
-def _lighting(declaration: Declaration, scope: Scope, problems: Problems) -> Sources | None:
-    own = Problems()
-    found = read_lighting(declaration.line, scope, own)
-    return found if _is_sound(declaration, own, problems) else None
-
-
-def _is_sound(declaration: Declaration, own: Problems, problems: Problems) -> bool:
-    """Whether a declaration can be used; if not, its problems are passed on.
-
-    That it says too little is no problem where a line of it could not be read.
-    """
-    said = tuple(
-        each for each in own.all() if not (declaration.is_faulty and each.code in ("no-projection", "no-light"))
-    )
-    problems.extend(said)
-    return not own.n_mistakes and not declaration.is_faulty
+    found = read(declaration.line, scope, own)
+    problems = own.all()
+    if declaration.is_faulty:
+        problems = tuple(each for each in problems if each.code not in ("no-projection", "no-light"))
+    return Described(None if own.n_mistakes or declaration.is_faulty else found, problems)
 
 
 def _has_defaults(declaration: Declaration) -> bool:

@@ -35,7 +35,7 @@ from .values import (
 
 def evaluate(expression: tree.Expression, scope: Scope, depth: int = 0) -> Value:
     """The value of an expression. Raises Mistake. Cost: linear in the expression and the functions it calls."""
-    scope.budget.spend(1, expression.span)
+    scope.budget.step(expression.span)
     if depth >= limits.LEVELS:
         sentence = f"operations and functions stand within each other more than {limits.LEVELS} deep, the limit"
         raise mistake("too-deep", expression.span, sentence)

@@ -16,9 +16,9 @@ from platewright.lang.source import Span
 from . import limits
 from .build import Model
 from .expressions import evaluate, text
-from .flatten import Flattened, Mesher, flatten
+from .flatten import Flattened, Mesher, flatten, walked
 from .frames import RESOLUTION_DPI, Frame, Spec, central_frame, parallel_frame
-from .graph import Solid, Thing, walk
+from .graph import Solid, Thing
 from .lightings import DEFAULT, Sources, lights_for
 from .mistakes import Mistake, Problems, mistake
 from .modules import find_kind
@@ -27,7 +27,6 @@ from .readings import LATER, expression, optional, word
 from .scope import Scope, did_you_mean
 from .solids.bounds import bounds
 from .solids.ladder import first_at_most
-from .solids.transform import matrix
 from .subjects import find_subject
 from .values import Proportion, kind_of
 from .viewpoints import STANDARD_SIDES, Parallel, Viewpoint, standard
@@ -145,17 +144,19 @@ class _Reading:
             hint = did_you_mean(near) or "declare it with `viewpoint`, or take front, top, isometric …"
             raise mistake("unknown-name", path.span, f"there is no viewpoint `{path.dotted}`", hint)
         here, declaration = find_kind(self.model.modules, module, path, ("viewpoint",))
-        viewpoint = self.model.viewpoints[here.file, declaration.name]
-        if viewpoint is None:
+        described = self.model.viewpoints[here.file, declaration.name]
+        self.problems.extend(described.problems)
+        if described.value is None:
             raise Mistake(None)
-        return viewpoint
+        return described.value
 
     def _lighting(self, path: tree.Path) -> Sources:
         here, declaration = find_kind(self.model.modules, self.model.module, path, ("lighting",))
-        sources = self.model.lightings[here.file, declaration.name]
-        if sources is None:
+        described = self.model.lightings[here.file, declaration.name]
+        self.problems.extend(described.problems)
+        if described.value is None:
             raise Mistake(None)
-        return sources
+        return described.value
 
     def _read(self, each: str, head: tree.Reading) -> dict[str, object]:
         match each:
@@ -295,15 +296,18 @@ def _measured(geometry: contract.Geometry) -> tuple[contract.MeasureWanted, ...]
 
 
 def _box_corners(thing: Thing, name: str) -> F64:
-    """World corners of the boxes of all solids below a thing, (8n,3)."""
-    boxes: dict[int, F64] = {}
-    corners: list[F64] = []
-    for entry in walk(thing, name):
+    """World corners of the boxes of all solids below a thing, (8n,3). Raises Mistake if there are none."""
+    rows: dict[int, tuple[Solid, list[int]]] = {}
+    entries, placements = walked(thing, name)
+    for row, entry in enumerate(entries):
         if isinstance(entry.thing, Solid):
-            if id(entry.thing) not in boxes:
-                (x0, y0, z0), (x1, y1, z1) = bounds(entry.thing.recipe)
-                boxes[id(entry.thing)] = np.array(
-                    [(x, y, z, 1.0) for x in (x0, x1) for y in (y0, y1) for z in (z0, z1)]
-                )
-            corners.append((boxes[id(entry.thing)] @ matrix(entry.placement).T)[:, :3])
+            rows.setdefault(id(entry.thing), (entry.thing, []))[1].append(row)
+    if not rows:
+        raise mistake("nothing-to-show", thing.span, f"`{name}` holds no parts, so there is nothing to show")
+    corners: list[F64] = []
+    for solid, copies in rows.values():
+        (x0, y0, z0), (x1, y1, z1) = bounds(solid.recipe)
+        box = np.array([(x, y, z) for x in (x0, x1) for y in (y0, y1) for z in (z0, z1)])
+        placed = placements[copies]
+        corners.append((box @ placed[:, :3, :3].transpose(0, 2, 1) + placed[:, None, :3, 3]).reshape(-1, 3))
     return np.concatenate(corners)

@@ -14,8 +14,10 @@ from platewright.backend.contract import F64, I32, Geometry, Material, Mesh, Pat
 from platewright.lang.problems import Problem, Severity
 from platewright.lang.source import Span
 
+from . import limits
 from .graph import Assembly, Entry, Solid, Thing, bracketed, walk
 from .materials import Surface, linear
+from .mistakes import Problems, mistake
 from .solids.bounds import bounds, facts_rung
 from .solids.flaw import Flaw
 from .solids.ladder import first_at_most
@@ -49,8 +51,11 @@ def flatten(
     None where a part has no mesh; the problems say why. Cost: one mesh for each part and rung, one pass over the
     placed triangles.
     """
-    entries = tuple(walk(thing, name))
-    placements = _placements(entries)
+    found = Problems()
+    with found.collecting():
+        entries, placements = walked(thing, name)
+    if found.has_errors:
+        return None, found.all()
     meshes, of_entry, problems = _meshes(entries, rung, sources, mesher)
     if any(problem.severity is Severity.ERROR for problem in problems):
         return None, problems
@@ -86,8 +91,12 @@ def problem_of(flaw: Flaw, solid: Solid, sources: Sequence[Span]) -> Problem:
     return Problem(flaw.code, severity, span, f"part `{solid.name}`: {flaw.sentence}", flaw.hint)
 
 
-def _placements(entries: Sequence[Entry]) -> F64:
-    """World placements of all entries, (n,4,4) float64."""
+def walked(thing: Thing, name: str) -> tuple[tuple[Entry, ...], F64]:
+    """All entries below a thing and their world placements, (n,4,4) float64.
+
+    Raises Mistake where one stands too far off, or is scaled too much, to be held.
+    """
+    entries = tuple(walk(thing, name))
     known: dict[int, F64] = {}
     placements = np.empty((len(entries), 4, 4))
     for row, entry in enumerate(entries):
@@ -95,7 +104,18 @@ def _placements(entries: Sequence[Entry]) -> F64:
         if key not in known:
             known[key] = matrix(entry.placement)
         placements[row] = known[key]
-    return placements
+    scales = np.abs(_determinants(placements))
+    is_far = np.abs(placements[:, :3, 3]).max(axis=1) > limits.LARGEST_MM
+    is_odd = (scales > limits.SCALE**3 * 1.001) | (scales < limits.SCALE**-3 / 1.001)
+    if is_far.any():
+        first = entries[int(np.argmax(is_far))]
+        sentence = f"`{first.path}` stands further than {limits.LARGEST_MM:g} mm from the origin, the limit"
+        raise mistake("out-of-range", first.span, sentence)
+    if is_odd.any():
+        first = entries[int(np.argmax(is_odd))]
+        sentence = f"`{first.path}` is scaled by more than {limits.SCALE:g} in all, or by less than its inverse"
+        raise mistake("out-of-range", first.span, f"{sentence}, the limit")
+    return entries, placements
 
 
 def _meshes(

@@ -53,7 +53,10 @@ class Feature:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Solid:
-    """A part with its parameters fixed. `n_shapes` counts the shapes it is made of, with all copies."""
+    """A part with its parameters fixed.
+
+    `n_shapes` counts the shapes it is made of, with all copies; `n_levels` the parts within parts, itself among them.
+    """
 
     name: str
     recipe: Recipe
@@ -62,6 +65,7 @@ class Solid:
     features: tuple[Feature, ...]
     span: Span
     n_shapes: int = field(default=1)
+    n_levels: int = field(default=1)
 
 
 @dataclass(frozen=True, slots=True)
@@ -88,13 +92,17 @@ class Occurrence:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Assembly:
-    """An assembly with its parameters fixed. `n_nodes` counts everything below it and itself."""
+    """An assembly with its parameters fixed.
+
+    `n_nodes` counts everything below it and itself, `n_levels` the things within things.
+    """
 
     name: str
     occurrences: tuple[Occurrence, ...]
     marks: tuple[Mark, ...]
     span: Span
     n_nodes: int = field(default=1)
+    n_levels: int = field(default=1)
 
 
 Thing: TypeAlias = Solid | Assembly

@@ -91,6 +91,8 @@ class Instances:
         self, module: Module, declaration: Declaration, call: tree.Call | None, scope: Scope, span: Span
     ) -> Outline:
         """An outline with its parameters. Raises Mistake."""
+        if declaration.is_faulty:
+            raise Mistake(None)
 
         def make(inner: Scope) -> Outline:
             return read_outline(declaration.line, local_scope(declaration.line.lines, inner, self.problems))

@@ -14,8 +14,11 @@ NESTING = 32
 LEVELS = 160
 """Operations within operations, with those of the functions called."""
 
+ALL_COPIES = 200_000
+"""Copies that all lines of one variant make together."""
+
 STEPS = 1_000_000
-"""Values computed and copies made for one variant of a scene."""
+"""Values computed for one variant of a scene."""
 
 FILES = 500
 """Files that one scene may see."""

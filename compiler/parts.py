@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Literal
 from platewright.lang import tree
 
 from . import limits
+from .coincidence import coincide, symmetry
 from .graph import Feature, FeatureCopy, Solid
 from .marks import OwnNames, axes_of, read_marks
 from .materials import PLAIN
@@ -46,6 +47,7 @@ class _Part:
     features: list[Feature] = field(default_factory=list)
     axes: Marks = field(default_factory=dict)
     n_shapes: int = 0
+    n_levels: int = 1
 
     def __post_init__(self) -> None:
         self.names = OwnNames(self.things.problems)
@@ -70,7 +72,8 @@ class _Part:
                     material = find_kind(self.things.modules, self.module, path, ("material",))
                     surface = self.things.surface(*material)
         recipe, span = Recipe(tuple(self.steps)), self.declaration.span
-        return Solid(self.declaration.name, recipe, surface, marks, tuple(self.features), span, max(1, self.n_shapes))
+        features = tuple(self.features)
+        return Solid(self.declaration.name, recipe, surface, marks, features, span, self.n_shapes, self.n_levels)
 
     def _begins_with_add(self) -> None:
         declaration, problems = self.declaration, self.things.problems
@@ -119,12 +122,12 @@ class _Part:
     def _shape(self, line: tree.Line, reading: tree.Reading, scope: Scope, outer: tuple[Affine, ...]) -> Placed:
         if reading.row in LATER:
             raise Mistake(None)
-        shape, own, n_shapes = self._made(reading, scope)
+        shape, own, n_shapes, n_levels = self._made(reading, scope)
         places = placements(line, scope, self.axes, own)
-        self._count(len(outer) * len(places) * n_shapes, line)
+        self._count(len(outer) * len(places) * n_shapes, n_levels, line)
         if outer != (IDENTITY,):
             places = tuple([compose(a, b) for a in outer for b in places])
-        if len(places) > 1 and len(set(places)) < len(places):
+        if coincide(places, symmetry(shape)):
             raise mistake("coincident-copies", line.span, "two copies of this shape lie in one place")
         centred = any(clause.word == "centred" for clause in line.clauses)
         if centred and isinstance(shape, Recipe):
@@ -132,14 +135,18 @@ class _Part:
             raise mistake("wrong-form", clause.span, "`centred` goes with shapes; a part stands where its lines put it")
         return Placed(shape, places, self.things.source(line.span), centred)
 
-    def _count(self, n_shapes: int, line: tree.Line) -> None:
+    def _count(self, n_shapes: int, n_levels: int, line: tree.Line) -> None:
         self.n_shapes += n_shapes
+        self.n_levels = max(self.n_levels, n_levels + 1)
         if self.n_shapes > limits.COPIES:
             sentence = f"the part `{self.declaration.name}` is made of more than {limits.COPIES:,} shapes, the limit"
             raise mistake("too-much", line.span, sentence)
+        if self.n_levels > limits.NESTING:
+            sentence = f"parts hold each other more than {limits.NESTING} deep, the limit"
+            raise mistake("too-deep", line.span, sentence)
 
-    def _made(self, reading: tree.Reading, scope: Scope) -> tuple[Primitive | Recipe, Marks, int]:
-        """The primitive or part that a shape's words name, the axes of its marks, how many shapes it is."""
+    def _made(self, reading: tree.Reading, scope: Scope) -> tuple[Primitive | Recipe, Marks, int, int]:
+        """The primitive or part that a shape's words name, the axes of its marks, how many shapes and levels it is."""
         if reading.row == "solid":
             written = expression(reading, "part")
             assert isinstance(written, (tree.Path, tree.Call))
@@ -148,13 +155,13 @@ class _Part:
             self.things.note_placed(self.module, written)
             thing = self.things.resolve(self.module, written, scope)
             assert isinstance(thing, Solid)
-            return thing.recipe, axes_of(thing.marks), thing.n_shapes
+            return thing.recipe, axes_of(thing.marks), thing.n_shapes, thing.n_levels
         outline = None
         if reading.word in OUTLINED:
             written = expression(reading, "outline")
             assert isinstance(written, (tree.Path, tree.Call))
             outline = self.things.outline(self.module, written, scope)
-        return read_shape(reading, scope, outline), {}, 1
+        return read_shape(reading, scope, outline), {}, 1, 0
 
 
 def _feature_copies(placed: Placed, named: list[str]) -> Iterator[FeatureCopy]:

@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 
 from platewright.lang import tree
-from platewright.lang.problems import Related
+from platewright.lang.source import Span
 from platewright.lang.units import ANGLE, LENGTH, NUMBER
 
 from . import limits
@@ -40,19 +40,9 @@ def place(clauses: tuple[tree.Reading, ...], scope: Scope, marks: Marks) -> Affi
     `marks` are the axes of the thing itself, in its own frame.
     """
     placed, shift = IDENTITY, IDENTITY
-    at: tree.Reading | None = None
     for clause in clauses:
         match clause.word:
             case "at":
-                if at is not None:
-                    raise mistake(
-                        "said-twice",
-                        clause.word_span,
-                        "`at` stands here twice",
-                        "a thing has one place",
-                        (Related(at.word_span, "the first of them"),),
-                    )
-                at = clause
                 shift = translate(point(expression(clause, "point"), scope))
             case "turn":
                 angle = quantity(expression(clause, "by"), scope, ANGLE)
@@ -74,15 +64,14 @@ def repeat(clauses: tuple[tree.Reading, ...], scope: Scope, marks: Marks) -> tup
     """
     copies: tuple[Affine, ...] = (IDENTITY,)
     for clause in clauses:
-        if clause.word == "ring":
-            more = _ring(clause, scope, marks)
-        elif clause.word == "row":
-            more = _row(clause, scope)
-        else:
+        if clause.word not in ("ring", "row"):
             continue
-        if len(copies) * len(more) > limits.COPIES:
-            made = len(copies) * len(more)
+        number = count(expression(clause, "count"), scope, least=1)
+        made = len(copies) * number
+        if made > limits.COPIES:
             raise mistake("too-much", clause.span, f"{made:,} copies are more than {limits.COPIES:,}, the limit")
+        scope.budget.copy(made - len(copies), clause.span)
+        more = _ring(clause, number, scope, marks) if clause.word == "ring" else _row(clause, number, scope)
         copies = tuple(compose(outer, inner) for outer in more for inner in copies)
     return copies
 
@@ -127,27 +116,36 @@ def point(written: tree.Expression, scope: Scope) -> Point:
 
 
 def positive_length(written: tree.Expression, scope: Scope, what: str, zero: bool = False) -> float:
-    """A length above 0 (or from 0) in mm. Raises Mistake."""
+    """A length above 0 (or from 0) in mm, within what geometry can hold. Raises Mistake."""
     value = quantity(written, scope, LENGTH, what)
     if value < 0 or (value == 0 and not zero):
         least = "0 or more" if zero else "more than 0"
         raise mistake("out-of-range", written.span, f"{what}: expected {least}, found {value:g} mm")
-    if value > limits.LARGEST_MM:
-        raise mistake("out-of-range", written.span, f"{what}: more than {limits.LARGEST_MM:g} mm, the limit")
+    within_size(value, written.span, what)
     return value
+
+
+def within_size(value: float, span: Span, what: str) -> None:
+    """Raise Mistake for a size that is too large or too small, and not 0, to be built."""
+    if value > limits.LARGEST_MM:
+        raise mistake("out-of-range", span, f"{what}: {value:g} mm is more than {limits.LARGEST_MM:g} mm, the limit")
+    if 0 < value < limits.SMALLEST_MM:
+        raise mistake("out-of-range", span, f"{what}: {value:g} mm is less than {limits.SMALLEST_MM:g} mm, the limit")
 
 
 def _factor(clause: tree.Reading, scope: Scope) -> float:
     written = expression(clause, "by")
     factor = quantity(written, scope, NUMBER)
-    if not 0 < factor <= limits.LARGEST_MM:
+    if factor <= 0:
         hint = "to mirror a thing, write `mirrored across x`" if factor < 0 else ""
         raise mistake("out-of-range", written.span, f"expected a factor above 0, found {factor:g}", hint)
+    if not 1 / limits.SCALE <= factor <= limits.SCALE:
+        sentence = f"expected a factor from {1 / limits.SCALE:g} to {limits.SCALE:g}, found {factor:g}"
+        raise mistake("out-of-range", written.span, sentence)
     return factor
 
 
-def _ring(clause: tree.Reading, scope: Scope, marks: Marks) -> tuple[Affine, ...]:
-    number = count(expression(clause, "count"), scope, least=1)
+def _ring(clause: tree.Reading, number: int, scope: Scope, marks: Marks) -> tuple[Affine, ...]:
     axis = axis_of(optional(clause, "axis"), scope, marks)
     over = optional(clause, "over")
     whole, steps = 360.0, number
@@ -160,8 +158,7 @@ def _ring(clause: tree.Reading, scope: Scope, marks: Marks) -> tuple[Affine, ...
     return tuple(turn(whole * k / steps, axis.along, axis.through) for k in range(number))
 
 
-def _row(clause: tree.Reading, scope: Scope) -> tuple[Affine, ...]:
-    number = count(expression(clause, "count"), scope, least=1)
+def _row(clause: tree.Reading, number: int, scope: Scope) -> tuple[Affine, ...]:
     written = expression(clause, "step")
     x, y, z = point(written, scope)
     if number > 1 and not any((x, y, z)):

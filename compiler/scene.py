@@ -145,6 +145,10 @@ def build(
         names.append(FigureName(declaration.name, declaration.span, spec[1].files if spec else ("png",)))
         if spec is not None:
             specs[declaration.name] = spec
+    reported = {(each.code, each.span) for each in problems.all()}
+    unused = [each for described in built.viewpoints.values() for each in described.problems]
+    unused += [each for described in built.lightings.values() for each in described.problems]
+    problems.extend(tuple(each for each in unused if (each.code, each.span) not in reported))
     if not names and built.roots and built.is_whole:
         spec_or_none, _ = default_figure(built, project.files.scenes[project.main].span)
         if spec_or_none is not None:

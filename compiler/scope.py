@@ -48,17 +48,29 @@ class Paths(Protocol):
 
 @dataclass(slots=True)
 class Budget:
-    """What one evaluation may still compute, against `limits.STEPS`, and the literals it has read."""
+    """What one evaluation may still compute and place, and the literals it has read."""
 
-    left: int = limits.STEPS
+    steps: int = limits.STEPS
+    copies: int = limits.ALL_COPIES
+    is_used_up: bool = False
     literals: dict[tuple[str, str], Quantity] = field(default_factory=dict)
 
-    def spend(self, steps: int, span: Span) -> None:
-        """Take values or copies off the budget. Raises Mistake where it is used up."""
-        self.left -= steps
-        if self.left < 0:
-            sentence = f"this scene computes more than {limits.STEPS:,} values and copies, the limit"
-            raise mistake("too-much", span, sentence)
+    def step(self, span: Span) -> None:
+        """Take one value off the budget. Raises Mistake where it is used up."""
+        self.steps -= 1
+        if self.steps < 0:
+            self._used_up(span, f"this scene computes more than {limits.STEPS:,} values, the limit")
+
+    def copy(self, number: int, span: Span) -> None:
+        """Take copies off the budget. Raises Mistake where it is used up."""
+        self.copies -= number
+        if self.copies < 0:
+            self._used_up(span, f"this scene makes more than {limits.ALL_COPIES:,} copies, the limit")
+
+    def _used_up(self, span: Span, sentence: str) -> None:
+        """Raise Mistake, the first time with the problem."""
+        was_used_up, self.is_used_up = self.is_used_up, True
+        raise Mistake(None) if was_used_up else mistake("too-much", span, sentence)
 
 
 @dataclass(frozen=True, slots=True)

@@ -5,10 +5,9 @@ from __future__ import annotations
 from platewright.lang import tree
 from platewright.lang.units import LENGTH
 
-from . import limits
 from .expressions import count, vector
 from .mistakes import mistake
-from .placement import positive_length
+from .placement import positive_length, within_size
 from .readings import expression, optional
 from .scope import Scope
 from .solids.recipe import (
@@ -91,11 +90,10 @@ def _sizes(reading: tree.Reading, slot: str, scope: Scope) -> tuple[float, float
     written = expression(reading, slot)
     x, y, z = vector(written, scope, 3, LENGTH).components
     for axis, value in zip("xyz", (x, y, z), strict=True):
-        if not 0 < value <= limits.LARGEST_MM:
+        if value <= 0:
             sentence = f"size along {axis}: expected more than 0, found {value:g} mm"
-            if value > 0:
-                sentence = f"size along {axis}: more than {limits.LARGEST_MM:g} mm, the limit"
             raise mistake("out-of-range", written.span, sentence)
+        within_size(value, written.span, f"size along {axis}")
     return (x, y, z)
 
 

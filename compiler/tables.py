@@ -52,15 +52,15 @@ def read_table(file: str, text: str) -> tuple[Table | None, tuple[Problem, ...]]
     A column without unit holds numbers throughout, or yes and no throughout, or else texts. Cost: linear in the text.
     """
     problems = Problems()
-    records: list[_Record] = []
+    records: tuple[_Record, ...] = ()
     with problems.collecting():
-        records = list(_records(file, text))
-        if not records:
-            raise mistake("bad-table", Span(file, 1, 1, 1, 1), "the table is empty; its first line names the columns")
-    if not records:
+        records = _read(file, text)
+    if problems.has_errors:
         return None, problems.all()
     header, body = records[0], records[1:]
     columns = _header(header, problems)
+    if problems.has_errors:
+        return None, problems.all()
     whole: list[_Record] = []
     for record in body:
         if len(record.cells) != len(columns):
@@ -76,6 +76,13 @@ def read_table(file: str, text: str) -> tuple[Table | None, tuple[Problem, ...]]
     names, labels = tuple(name for name, _ in columns), tuple(record.cells[0] for record in whole)
     spans = tuple(tuple(record.spans) for record in whole)
     return Table(file, names, tuple(zip(*values, strict=True)), labels, tuple(header.spans), spans), problems.all()
+
+
+def _read(file: str, text: str) -> tuple[_Record, ...]:
+    records = tuple(_records(file, text))
+    if not records:
+        raise mistake("bad-table", Span(file, 1, 1, 1, 1), "the table is empty; its first line names the columns")
+    return records
 
 
 def _records(file: str, text: str) -> Iterator[_Record]:

@@ -58,7 +58,7 @@ def placements(line: tree.Line, scope: Scope, around: Marks, own: Marks) -> tupl
     """
     base = place(line.clauses, scope, own)
     copies = repeat(line.clauses, scope, around)
-    scope.budget.spend(len(copies), line.span)
+    scope.budget.copy(1, line.span)
     return copies if base is IDENTITY else tuple([compose(each, base) for each in copies])
 
 
@@ -84,7 +84,7 @@ def _turns(clause: tree.Reading, scope: Scope, tables: Tables, file: str, n_oute
         raise mistake("duplicate-name", written.span, sentence, "rename it")
     if clause.get("table") is not None:
         table = _table(clause, tables, file)
-        _affordable(len(table.rows), n_outer, clause, scope)
+        _affordable(len(table.rows), n_outer, clause)
         for row, label in enumerate(table.labels):
             yield Turn(label, scope.inside({}, RowPaths(variable, table, row)))
         return
@@ -93,17 +93,16 @@ def _turns(clause: tree.Reading, scope: Scope, tables: Tables, file: str, n_oute
     if last < first:
         sentence = f"`for` counts upward, and {last} comes before {first}"
         raise mistake("out-of-range", expression(clause, "last").span, sentence, "add a `when` to leave the line out")
-    _affordable(last - first + 1, n_outer, clause, scope)
+    _affordable(last - first + 1, n_outer, clause)
     for number in range(first, last + 1):
         inner = scope.inside({variable: Quantity(float(number), NUMBER)})
         yield Turn(str(number - first + 1), inner)
 
 
-def _affordable(n_turns: int, n_outer: int, clause: tree.Reading, scope: Scope) -> None:
+def _affordable(n_turns: int, n_outer: int, clause: tree.Reading) -> None:
     if n_turns * n_outer > limits.COPIES:
         sentence = f"{n_turns * n_outer:,} copies are more than {limits.COPIES:,}, the limit"
         raise mistake("too-much", clause.span, sentence)
-    scope.budget.spend(n_turns, clause.span)
 
 
 def _table(clause: tree.Reading, tables: Tables, file: str) -> Table:

@@ -34,7 +34,9 @@ def check_names(modules: Modules, main: str) -> tuple[Problem, ...]:
             inner = _inner_names(declaration, module, problems)
             if declaration.kind in BODIES:
                 _unknown_names(declaration, module, inner, problems)
-    _unused(modules[main], _users(modules)[main], problems)
+    # A name that nothing declares may be meant for one that then looks unused.
+    if not modules[main].has_faults and not problems.has_errors:
+        _unused(modules[main], _users(modules)[main], problems)
     return problems.all()
 
 
@@ -126,9 +128,7 @@ def _users(modules: Modules) -> dict[str, dict[str, dict[str, None]]]:
 
 
 def _unused(module: Module, users: Users, problems: Problems) -> None:
-    """Warn of what is never used, unless a line that could not be read may be what uses it."""
-    if module.has_faults:
-        return
+    """Warn of what is never used."""
     shows = bool(module.figures) or any(each.kind == "assembly" for each in module.names.values())
     for declaration in module.names.values():
         used_by = [user for user in users.get(declaration.name, ()) if user != declaration.name]

@@ -59,7 +59,8 @@ CODES: Mapping[str, str] = MappingProxyType(
         "not-whole": "a number must be whole and is not",
         "division-by-zero": "a value is divided by zero",
         "circular-value": "values depend on each other in a circle",
-        "too-deep": "things are nested deeper than the limit, as in a recursion",
+        "too-deep": "things are nested deeper than the limit",
+        "recursion": "a thing holds itself",
         "too-much": "a scene asks for more than a limit allows",
         # --- solids
         "empty-part": "nothing is left of a part",
@@ -85,6 +86,7 @@ CODES: Mapping[str, str] = MappingProxyType(
         "does-not-fit": "a figure's content does not fit its page",
         "nothing-to-show": "a figure has no subject",
         "nothing-in-view": "nothing of a figure's subject is in view",
+        "cropped": "a figure's subject reaches past the edge of its page",
         "broken-fact": "a fact that must hold does not",
         "nothing-to-measure": "a measure is asked of something that has none",
         "no-density": "a mass is asked of a material without density",

@@ -1,0 +1,62 @@
+"""Copies that lie on each other: the same thing at the same place, counting that round shapes may turn in place."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Literal
+
+import numpy as np
+
+from .graph import Solid, Thing
+from .solids.recipe import Affine, Cone, Cylinder, Primitive, Recipe, Revolve, Sphere, Torus
+
+Symmetry = Literal["ball", "round", "none"]
+"""What leaves a shape as it is: any turn about its origin, turns about its z axis, nothing."""
+
+
+def symmetry(shape: Primitive | Recipe) -> Symmetry:
+    """How a shape may turn and stay as it is. Regular prisms count as what has to stand still."""
+    match shape:
+        case Sphere():
+            return "ball"
+        case Cylinder() | Cone() | Torus() | Revolve():
+            return "round"
+        case Recipe():
+            placed = [each for step in shape.steps for each in step.placed]
+            kinds = {symmetry(each.shape) for each in placed}
+            places = [place for each in placed for place in each.placements]
+            if kinds == {"ball"} and all(_shift(place) == (0.0, 0.0, 0.0) for place in places):
+                return "ball"
+            return "round" if "none" not in kinds and all(map(_keeps_z, places)) else "none"
+        case _:
+            return "none"
+
+
+def of_thing(thing: Thing) -> Symmetry:
+    """How a part may turn and stay as it is; assemblies are not looked into."""
+    return symmetry(thing.recipe) if isinstance(thing, Solid) else "none"
+
+
+def coincide(placements: Sequence[Affine], kind: Symmetry) -> bool:
+    """Whether any two of the placements put a thing of this symmetry in one place, to a millionth of a millimetre."""
+    if len(placements) < 2:
+        return False
+    places = np.array(placements)
+    linear, shifts = np.round(places[:, :, :3], 9), np.round(places[:, :, 3], 6)
+    if kind == "ball":
+        linear = np.round((places[:, :, :3] ** 2).sum(axis=1), 9)[:, None, :]
+    elif kind == "round":
+        linear = linear[:, :, 2:]
+    keys = np.concatenate((linear.reshape(len(places), -1), shifts), axis=1) + 0.0
+    return len(np.unique(keys, axis=0)) < len(keys)
+
+
+def _shift(placement: Affine) -> tuple[float, float, float]:
+    x, y, z = (row[3] for row in placement)
+    return (x, y, z)
+
+
+def _keeps_z(placement: Affine) -> bool:
+    """Whether a placement leaves the z axis on itself."""
+    (_, _, x, shift_x), (_, _, y, shift_y), _ = placement
+    return x == 0.0 and y == 0.0 and shift_x == 0.0 and shift_y == 0.0
