@@ -53,7 +53,7 @@ def _climb(flat: list[Any], strength: int) -> Expression:
     """The expression at the end of a reversed run, as far as its operators are stronger than `strength`."""
     node: Any = flat.pop()
     if isinstance(node, tuple):
-        node = _prefixed(flat, node)
+        node = _prefixed(flat, node, strength)
     before = ""
     while flat:
         operator, start, end = flat[-1]
@@ -83,8 +83,11 @@ def _check_chain(before: str, operator: str, start: int, end: int) -> None:
         raise Slip("broken-value", start, end, "a range has one `..` between its two ends")
 
 
-def _prefixed(flat: list[Any], prefix: Operator) -> Expression:
-    word, start, _ = prefix
+def _prefixed(flat: list[Any], prefix: Operator, strength: int) -> Expression:
+    word, start, end_column = prefix
+    if word == "not" and strength > STRENGTH["not"]:
+        sentence = "`not` binds looser than the operator before it"
+        raise Slip("broken-value", start, end_column, sentence, "put `not` and its value in parentheses")
     operand = _climb(flat, STRENGTH["not" if word == "not" else "sign"] - 1)
     end = operand.span
     whole = Span(end.file, end.line, start + 1, end.end_line, end.end_column)

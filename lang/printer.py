@@ -12,9 +12,10 @@ from typing import Any
 
 from .fold import STRENGTH
 from .items import Equation, Item, Node, Series
-from .layout import INDENT, Aside, Layout, RawLine
-from .problems import Problem, is_error
+from .layout import FILE_LIMIT, INDENT, LINE_LIMIT, Aside, Layout, RawLine
+from .problems import Problem, Severity, is_error
 from .reader import read_layout, read_scene
+from .source import Span
 from .tree import Binary, Call, Choice, Date, Expression, Number, Path, Range, Ratio, Setting, Text, Truth, Tuple, Unary
 
 _MENDED = frozenset({"tab"})
@@ -34,12 +35,29 @@ def format_text(file: str, text: str) -> tuple[str | None, tuple[Problem, ...]]:
     if any(is_error(problem) for problem in problems):
         return None, problems
     formatted = print_layout(layout)
+    problems = _too_long(layout, formatted)
+    if problems:
+        return None, problems
     if _essence(read_scene(file, text)[0]) != _essence(read_scene(file, formatted)[0]):
         raise RuntimeError("formatting would have changed the meaning of a file")
     again = read_layout(file, formatted)
     if again.problems or _lines_essence(layout) != _lines_essence(again):
         raise RuntimeError("formatting would have changed a line or a comment of a file")
     return formatted, ()
+
+
+def _too_long(layout: Layout, formatted: str) -> tuple[Problem, ...]:
+    """Problems where the canonical layout would go beyond the limits of size that reading keeps."""
+    start = Span(layout.file, 1, 1, 1, 1)
+    if len(formatted) > FILE_LIMIT:
+        sentence = f"in canonical layout this file has {len(formatted)} characters, and a file may have {FILE_LIMIT}"
+        return (Problem("file-too-long", Severity.ERROR, start, sentence, "split it, and join the files by `see`"),)
+    longest = max(formatted.split("\n"), key=len)
+    if len(longest) <= LINE_LIMIT:
+        return ()
+    sentence = f"in canonical layout the line `{longest.strip()[:40]}…` has {len(longest)} characters"
+    hint = f"a line may have {LINE_LIMIT}; put long lists into a table"
+    return (Problem("line-too-long", Severity.ERROR, start, sentence, hint),)
 
 
 def print_layout(layout: Layout) -> str:
@@ -182,7 +200,7 @@ def _print_binary(node: Binary, own: int, is_close: bool) -> str:
     inner = is_close or not is_product
     is_comparison = own == STRENGTH["is"]
     left = _print(node.left, own + (is_comparison or operator == "^"), inner)
-    right = _print(node.right, own + (operator != "^"), inner)
+    right = _print(node.right, STRENGTH["sign"] if operator == "^" else own + 1, inner)
     return f"{left}{operator}{right}" if is_closed_up else f"{left} {operator} {right}"
 
 

@@ -209,6 +209,33 @@ def test_formatting_mends_tabs_and_refuses_broken_lines() -> None:
     assert format_text("a", "")[0] == "" and format_text("a", "\n\n")[0] == ""
 
 
+@pytest.mark.parametrize(
+    "value",
+    [
+        "1 ^ " * 99 + "1",
+        "-" * 99 + "f(" * 49 + "1" + ")" * 49,
+        "1 if yes else " * 49 + "a[" * 49 + "1" + "]" * 49,
+        "(" * 40 + "1 ^ " * 99 + "f(a = " * 9 + "1" + ")" * 49,
+        "f(1, 1 ^ -1 ^ " * 33 + "1" + ")" * 33,
+        "f(not (1 < " * 24 + "1" + "))" * 24,
+    ],
+)
+def test_what_is_nested_to_the_limits_is_formatted_all_the_same(value: str) -> None:
+    text = "derived\n" + "    b = " + value + "\n"
+    formatted, problems = format_text("a", text)
+    assert not problems and formatted is not None and format_text("a", formatted) == (formatted, ())
+
+
+def test_what_would_grow_beyond_the_limits_of_size_is_a_problem(monkeypatch: pytest.MonkeyPatch) -> None:
+    wide = "derived\n b = f(" + "1+1, " * 1_900 + "1)\n"
+    assert [p.code for p in format_text("a", wide.replace("1+1, ", "a, "))[1]] == []
+    lists = "figure h1\n hide " + ", ".join(["a+b"] * 1_900) + "\n"
+    assert [p.code for p in format_text("a", lists)[1]] == ["line-too-long"]
+    monkeypatch.setattr(printer, "FILE_LIMIT", 20)
+    assert [p.code for p in format_text("a", "a\n b\n c\n d\n")[1]] == ["file-too-long"]
+    assert format_text("a", "a\n b\n c\n")[0] == "a\n    b\n    c\n"
+
+
 def test_a_printer_that_changed_the_meaning_would_be_caught(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(printer, "print_item", lambda item: item.word or "0")
     with pytest.raises(RuntimeError, match="changed"):
