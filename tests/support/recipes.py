@@ -57,6 +57,7 @@ def check_mesh(mesh: Mesh, rung: float, tolerance: float = 1e-9) -> None:
     Closed, finite, sides paired, no sheet without thickness; frames right-handed and orthonormal; every vertex of a
     patch within the rung of its surface (twice where it is curved both ways); normals unit and to the face's side.
     """
+    check_arrays(mesh)
     assert mesh.closed
     volumes = component_volumes(mesh)
     assert (np.abs(volumes) > 1e-9 * np.abs(volumes).max()).all()
@@ -83,6 +84,34 @@ def check_mesh(mesh: Mesh, rung: float, tolerance: float = 1e-9) -> None:
             both = 2.0 if kind in (PatchKind.SPHERE, PatchKind.TORUS) else 1.0
             assert np.abs(off).max() <= both * rung * (1.0 + 1e-4) + tolerance * size
     check_normals(mesh)
+
+
+def check_arrays(mesh: Mesh) -> None:
+    """Shapes, dtypes and ranges as the contract states them."""
+    n, m, p = len(mesh.vertices), len(mesh.faces), len(mesh.patches.kind)
+    expected = {
+        "vertices": (np.float64, (n, 3)),
+        "faces": (np.int32, (m, 3)),
+        "corner_normals": (np.float32, (m, 3, 3)),
+        "face_patch": (np.int32, (m,)),
+        "face_origin": (np.uint8, (m,)),
+        "face_source": (np.int32, (m,)),
+        "edge_kind": (np.uint8, (m, 3)),
+    }
+    for name, (dtype, shape) in expected.items():
+        array = getattr(mesh, name)
+        assert (array.dtype, array.shape) == (dtype, shape), name
+    patches = mesh.patches
+    assert [a.dtype for a in (patches.kind, patches.frame, patches.size, patches.inward)] == [
+        np.uint8,
+        np.float64,
+        np.float64,
+        np.bool_,
+    ]
+    assert (patches.frame.shape, patches.size.shape, patches.inward.shape) == ((p, 4, 3), (p, 2), (p,))
+    assert mesh.faces.min() >= 0
+    assert np.array_equal(np.unique(mesh.faces), np.arange(n))
+    assert np.array_equal(np.unique(mesh.face_patch), np.arange(p))
 
 
 def component_volumes(mesh: Mesh) -> NDArray[np.float64]:
