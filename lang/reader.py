@@ -86,12 +86,14 @@ class _Scene:
         self.problems: list[Problem] = []
         self.broken: list[str] = []
         self.version: Span | None = None
+        self.first_line = 0
         self.figure = ""
         self.is_later = False
 
     def read(self, text: str) -> tuple[Scene, tuple[Problem, ...]]:
         layout = lay_out(self.parser, self.file, text)
         self.problems.extend(layout.problems)
+        self.first_line = layout.lines[0].place.line if layout.lines else 0
         lines = self.lines(layout.lines, "scene")
         version = VERSION if self.version else 0
         span = Span(self.file, 1, 1, layout.end.end_line, layout.end.end_column)
@@ -196,6 +198,9 @@ class _Scene:
         elif not isinstance(stated, Number) or stated.text != str(VERSION):
             sentence = f"expected `platewright {VERSION}`, the version of the language that is known here"
             self.problems.append(Problem("version", Severity.ERROR, head.span, sentence))
+        elif head.span.line != self.first_line:
+            sentence = "the version of the language stands above everything else"
+            self.problems.append(Problem("version", Severity.ERROR, head.span, sentence, "move this line to the top"))
         self.version = self.version or head.span
 
     def report_later(self, is_later: bool, reading: Reading) -> None:

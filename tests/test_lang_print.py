@@ -231,7 +231,7 @@ def test_what_would_grow_beyond_the_limits_of_size_is_a_problem(monkeypatch: pyt
     assert [p.code for p in format_text("a", wide.replace("1+1, ", "a, "))[1]] == []
     lists = "figure h1\n hide " + ", ".join(["a+b"] * 1_900) + "\n"
     assert [p.code for p in format_text("a", lists)[1]] == ["line-too-long"]
-    monkeypatch.setattr(printer, "FILE_LIMIT", 20)
+    monkeypatch.setattr(printer, "FILE_LIMIT", 16)
     assert [p.code for p in format_text("a", "a\n b\n c\n d\n")[1]] == ["file-too-long"]
     assert format_text("a", "a\n b\n c\n")[0] == "a\n    b\n    c\n"
 
