@@ -20,7 +20,7 @@ from .materials import Surface, linear
 from .mistakes import Problems, mistake
 from .solids.bounds import bounds, facts_rung
 from .solids.flaw import Flaw
-from .solids.ladder import first_at_most
+from .solids.ladder import COARSEST, first_at_most
 from .solids.recipe import Affine, Recipe
 from .solids.transform import largest_scale, matrix
 
@@ -386,7 +386,7 @@ def prove(things: Sequence[Thing], sources: Sequence[Span], mesher: Mesher) -> t
     for solid in _solids(things):
         low, high = bounds(solid.recipe)
         reach = max(b - a for a, b in zip(low, high, strict=True))
-        rung = first_at_most(max(reach, 1e-3) / PROOF_PARTS)
+        rung = first_at_most(reach / PROOF_PARTS) if reach > 0 else COARSEST
         _, flaws = mesher(solid.recipe, rung)
         problems.update((problem_of(flaw, solid, sources), None) for flaw in flaws)
     return tuple(problems)
