@@ -268,3 +268,17 @@ def test_degenerate_triangles_and_empty_panels() -> None:
     assert (raster.see(geometry, hidden, PAGE).face == -1).all()
     outside = replace(panel(plan(PAGE), PAGE), place=(500.0, 0.0, 10.0, 10.0))
     assert raster.see(geometry, outside, PAGE).face.size == 0
+
+
+def test_stored_code_is_dropped_when_any_kernel_changes() -> None:
+    from platewright.backend.raster.bins import tile_starts
+    from platewright.backend.raster.compiled import sources_digest
+
+    tile_starts(np.zeros((1, 1), np.int32), np.zeros(2, np.int64))
+    stored = tile_starts._cache._cache_file
+    assert stored._source_stamp == sources_digest() and stored._load_index()
+    stored._source_stamp = "another digest"
+    try:
+        assert not stored._load_index()
+    finally:
+        stored._source_stamp = sources_digest()

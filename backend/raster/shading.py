@@ -16,7 +16,10 @@ from .bins import TILE
 from .compiled import fast_kernel, kernel
 from .light import BLOCK, RESULT, WIDTH, light_blocks
 
-N_BLOCKS = 24
+# Blocks are lit after the row of pixels that fills ENOUGH of them, to stay in the nearest cache; a row adds at most one
+# block for each of its samples.
+ENOUGH = 16
+N_BLOCKS = ENOUGH + 4 * TILE
 _ZERO, _ONE, _HALF = np.float32(0), np.float32(1), np.float32(0.5)
 _RESULT = RESULT * WIDTH
 
@@ -109,7 +112,7 @@ def shade_tile(
                     qx2, qy2, q2 = ay * bw - aw * by, aw * bx - ax * bw, ax * by - ay * bx
                     # Page y runs down, so a triangle that faces the viewer has a negative determinant.
                     det = ax * qx0 + ay * qy0 + aw * q0
-                    size = -1.0 / det if det != 0.0 else 0.0
+                    size = 1.0 / det if det != 0.0 else 0.0
                     size *= max(aw, max(bw, cw))
                     x0, y0, c0 = np.float32(qx0 * size), np.float32(qy0 * size), np.float32(q0 * size)
                     x1, y1, c1 = np.float32(qx1 * size), np.float32(qy1 * size), np.float32(q1 * size)
@@ -119,21 +122,15 @@ def shade_tile(
                     n10, n11, n12 = normals[t, 1, 0], normals[t, 1, 1], normals[t, 1, 2]
                     n20, n21, n22 = normals[t, 2, 0], normals[t, 2, 1], normals[t, 2, 2]
                 w0, w1, w2 = x0 * v0 + y0 * v1 + c0, x1 * v0 + y1 * v1 + c1, x2 * v0 + y2 * v1 + c2
-                if w0 + w1 + w2 < _ZERO:
-                    w0, w1, w2 = -w0, -w1, -w2
                 w0 = w0 if w0 > _ZERO else _ZERO
                 w1 = w1 if w1 > _ZERO else _ZERO
                 w2 = w2 if w2 > _ZERO else _ZERO
-                slot = open_block[material]
+                if w0 + w1 + w2 <= _ZERO:  # the centre lies beyond the horizon of a face seen edge on
+                    w0, w1, w2 = _ONE, _ONE, _ONE
+                # The mask says to the compiler that no index is negative.
+                slot = open_block[material] & 0xFFFF
                 if slot & 15 == 0:
-                    if n_blocks == N_BLOCKS:
-                        light_blocks(jobs, block_material, n_blocks, materials, far, near, ambient, axis)
-                        _deposit(jobs, fills, n_blocks, pixel, share, light)
-                        for block in range(n_blocks):
-                            open_block[block_material[block]] = 0
-                        n_blocks = 0
                     block_material[n_blocks] = material
-                    fills[n_blocks] = 0
                     slot = n_blocks * WIDTH
                     n_blocks += 1
                 block, k = slot >> 4, slot & 15
@@ -159,10 +156,12 @@ def shade_tile(
                 light[p * 3] += white
                 light[p * 3 + 1] += white
                 light[p * 3 + 2] += white
-    light_blocks(jobs, block_material, n_blocks, materials, far, near, ambient, axis)
-    _deposit(jobs, fills, n_blocks, pixel, share, light)
-    for block in range(n_blocks):
-        open_block[block_material[block]] = 0
+        if n_blocks >= ENOUGH or y == height - 1:
+            light_blocks(jobs, block_material, n_blocks, materials, far, near, ambient, axis)
+            _deposit(jobs, fills, n_blocks, pixel, share, light)
+            for block in range(n_blocks):
+                open_block[block_material[block]] = 0
+            n_blocks = 0
     return is_seen
 
 

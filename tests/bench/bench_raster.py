@@ -141,7 +141,7 @@ def threads(name: str = "100k") -> None:
 
 
 def memory() -> None:
-    """Peak of a fresh process that draws 5 M triangles, less the same with 20, over the arrays of the triangles."""
+    """Peak of a fresh process that holds and draws 5 M triangles, less the same with 10 k, over their arrays."""
     peaks = [
         [int(word) for word in subprocess.check_output([sys.executable, __file__, "--peak", name]).split()]
         for name in ("10k", "5M")
