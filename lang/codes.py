@@ -8,7 +8,7 @@ from types import MappingProxyType
 CODES: Mapping[str, str] = MappingProxyType(
     {
         # --- the shape of the text
-        "file-too-long": "a file has more characters than the limit",
+        "file-too-long": "a file has more characters or lines than the limit",
         "line-too-long": "a line has more characters than the limit",
         "too-many-problems": "a file has so many problems that reading stopped",
         "tab": "a file is laid out with tabs instead of spaces",

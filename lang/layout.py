@@ -13,6 +13,7 @@ from .source import Span
 from .values import read_items
 
 FILE_LIMIT = 4_000_000
+LINES_LIMIT = 200_000
 LINE_LIMIT = 10_000
 LEVELS_LIMIT = 20
 PROBLEMS_LIMIT = 500
@@ -88,8 +89,11 @@ class _Reader:
         text = text.removeprefix("\ufeff")
         lines = text.split("\n")
         end = Span(self.file, len(lines), len(lines[-1]) + 1, len(lines), len(lines[-1]) + 1)
-        if len(text) > FILE_LIMIT:
-            sentence = f"a file may have {FILE_LIMIT} characters, and this one has {len(text)}"
+        if len(text) > FILE_LIMIT or len(lines) > LINES_LIMIT:
+            sentence = (
+                f"a file may have {FILE_LIMIT} characters in {LINES_LIMIT} lines, "
+                f"and this one has {len(text)} in {len(lines)}"
+            )
             self.add("file-too-long", Span(self.file, 1, 1, 1, 1), sentence, "split it, and join the files by `see`")
             return Layout(self.file, [], [], end, self.problems)
         for number, line in enumerate(lines, 1):
@@ -109,7 +113,8 @@ class _Reader:
             line = self.without_tabs(place, line)
         stripped = line.lstrip(" ")
         if not stripped:
-            self.waiting.append(("", 0))
+            if not self.waiting or self.waiting[-1][0]:
+                self.waiting.append(("", 0))
             return
         column = len(line) - len(stripped)
         if len(line) > LINE_LIMIT:

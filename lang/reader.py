@@ -105,6 +105,8 @@ class _Scene:
         starts = self.words.places.get(context, NO_STARTS)
         read = []
         for raw in raws:
+            if len(self.problems) > PROBLEMS_LIMIT:
+                break
             line = self.line(raw, starts, context)
             if line is not None:
                 read.append(line)

@@ -216,8 +216,11 @@ def test_long_runs_of_operations_are_a_located_problem() -> None:
 def test_limits_of_size_are_named() -> None:
     long_line = read_scene("a", "x" * (layout.LINE_LIMIT + 1))[1][0]
     assert long_line.code == "line-too-long" and str(layout.LINE_LIMIT) in long_line.sentence
-    long_file = read_scene("a", "\n" * (layout.FILE_LIMIT + 1))[1][0]
-    assert long_file.code == "file-too-long" and str(layout.FILE_LIMIT) in long_file.sentence
+    long_line = "#" * 9_999 + "\n"
+    for text in (long_line * (layout.FILE_LIMIT // 10_000 + 1), "\n" * layout.LINES_LIMIT):
+        long_file = read_scene("a", text)[1][0]
+        assert long_file.code == "file-too-long"
+        assert str(layout.FILE_LIMIT) in long_file.sentence and str(layout.LINES_LIMIT) in long_file.sentence
     deep = "\n".join(" " * i + "part a" for i in range(layout.LEVELS_LIMIT + 5))
     assert "nested-lines-too-deep" in codes(deep)
     many = read_scene("a", "(\n" * (layout.PROBLEMS_LIMIT * 3))[1]

@@ -45,8 +45,8 @@ def test_every_unit_constant_and_standard_viewpoint_stands_in_the_reference() ->
 
 
 def test_the_limits_are_those_that_hold() -> None:
-    limits = README[README.index("## Limits") :].replace("10 000", "10000").replace("4 million", "4000000")
-    held = {layout.FILE_LIMIT, layout.LINE_LIMIT, layout.LEVELS_LIMIT, layout.PROBLEMS_LIMIT}
+    limits = README[README.index("## Limits") :].replace("0 000", "0000").replace("4 million", "4000000")
+    held = {layout.FILE_LIMIT, layout.LINES_LIMIT, layout.LINE_LIMIT, layout.LEVELS_LIMIT, layout.PROBLEMS_LIMIT}
     held |= {scanner.NESTING_LIMIT, scanner.OPERATIONS_LIMIT, values.NUMBER_LENGTH_LIMIT}
     assert {int(number) for number in re.findall(r"\d+", limits)} == held
 
