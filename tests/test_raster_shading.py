@@ -175,6 +175,20 @@ def test_metal_is_not_black_and_brighter_toward_the_upper_left() -> None:
     assert light[60, 60] > 2 * light[145, 145]
 
 
+def test_a_matt_sphere_under_ambient_light_turns_with_the_surround() -> None:
+    # A surround of two even halves gives a Lambert surface the mean 1 + contrast * cosine of its tilt to the axis.
+    ball = assemble([sphere("ball", 9.0, NOWHERE, 96)])
+    drawn = panel(ball_view(0, 0), PAGE, 4, lighting=lit(Light("ambient", NOWHERE, (0.5, 0.5, 0.5))))
+    light = colour.from_bytes(painted(ball, drawn, (MATT,)))[..., 0]
+    y, x = np.mgrid[:200, :200] + 0.5
+    right, up = (x - 100) / 90, (100 - y) / 90
+    inside = np.hypot(right, up) < 0.8
+    toward = np.sqrt(np.maximum(1 - right**2 - up**2, 0))
+    expected = 0.8 * 0.5 * (1 + reflectance.CONTRAST * (up - right + toward) / np.sqrt(3))
+    # What the rough coat takes and gives back by Schlick's term stays under 1.5 % at these angles.
+    assert np.abs(light / expected - 1)[inside].max() < 0.02
+
+
 def test_inner_sides_of_open_surfaces_are_lit_from_the_viewers_side() -> None:
     floor = triangles("f", [(0, 0, 0), (20, 0, 0), (20, -20, 0), (0, -20, 0)], [[0, 2, 1], [0, 3, 2]])
     turned = replace(floor, faces=floor.faces[:, ::-1].copy(), normals=-floor.normals)
