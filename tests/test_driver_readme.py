@@ -5,10 +5,13 @@ from __future__ import annotations
 import re
 from pathlib import Path
 
+import numpy as np
 import pytest
+from PIL import Image
 from platewright.compiler.driver.cli import main
 
-README = (Path(__file__).parents[1] / "README.md").read_text(encoding="utf-8")
+ROOT = Path(__file__).parents[1]
+README = (ROOT / "README.md").read_text(encoding="utf-8")
 COMPILING = "platewright: compiling the drawing kernels for this machine, which happens once\n"
 CASES = Path(__file__).parent / "cases" / "typical"
 
@@ -41,13 +44,25 @@ def test_the_tour_draws_what_it_says(drum: Path, capsys: pytest.CaptureFixture[s
     assert [name for name in names if after[name] == made[name]] == []
 
 
-def test_the_first_scene_draws_without_a_figure(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+def test_the_first_scene_is_that_of_the_picture_beside_it(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     path = tmp_path / "drum.plate"
     path.write_text(_blocks("platewright")[0], encoding="utf-8")
-    assert main(["draw", str(path), "--resolution", "60"]) == 0
+    assert path.read_bytes() == (ROOT / "examples" / "drum" / "drum.plate").read_bytes()
+    assert main(["draw", str(path), "--resolution", "200"]) == 0
     out, err = capsys.readouterr()
-    assert out == f"{tmp_path / 'figures' / 'drum.png'}\n"
+    assert out == f"{tmp_path / 'figures' / 'overview.png'}\n"
     assert err.replace(COMPILING, "") == ""
+    drawn, shown = (
+        np.asarray(Image.open(picture)) for picture in (Path(out.strip()), ROOT / "examples/drum/overview.png")
+    )
+    assert drawn.shape == shown.shape
+    assert np.abs(drawn.astype(int) - shown).max() <= 2
+
+
+def test_every_picture_and_page_the_readme_points_to_is_there() -> None:
+    targets = re.findall(r"\]\(([^)#]+)\)|src=\"([^\"]+)\"", README)
+    assert len(targets) >= 4
+    assert [name for pair in targets if not (ROOT / (name := "".join(pair))).is_file()] == []
 
 
 def test_the_shown_messages_are_those_of_the_cases() -> None:

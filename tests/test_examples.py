@@ -21,7 +21,7 @@ def _name(path: Path) -> str:
 
 def test_the_examples_are_those_that_the_documents_speak_of() -> None:
     assert [_name(scene) for scene in SCENES] == [
-        "drum.plate",
+        "drum/drum.plate",
         "rain_gauge/rain_gauge.plate",
         "vacuum_chamber/vacuum_chamber.plate",
     ]
