@@ -103,14 +103,22 @@ def dump_triangles(flattened: Flattened) -> str:
     """One line a triangle: path, material, patch, where it comes from, source line, kinds of its three sides, and nine
     coordinates in mm that read back exactly."""
     geometry = flattened.geometry
+    where = [f"{source.file}:{source.line}" for source in geometry.sources]
+    heads = [f"{node.path} {_material(flattened, node.material)}" for node in geometry.nodes]
+    columns = (geometry.face_node, geometry.face_patch, geometry.face_origin, geometry.face_source)
+    places = (geometry.vertices[geometry.faces].reshape(-1, 9) + 0.0).tolist()
+    rows = zip(*(column.tolist() for column in columns), geometry.edge_kind.tolist(), places, strict=True)
     lines = []
-    for face, corners in enumerate(geometry.faces):
-        node = geometry.nodes[geometry.face_node[face]]
-        material = flattened.materials[node.material].name or "plain"
-        source = geometry.sources[geometry.face_source[face]] if geometry.face_source[face] >= 0 else None
-        where = f"{source.file}:{source.line}" if source else "-"
-        origin = FaceOrigin(int(geometry.face_origin[face])).name.lower()
-        sides = ",".join(EdgeKind(int(kind)).name.lower() for kind in geometry.edge_kind[face])
-        places = " ".join(repr(float(value) + 0.0) for value in geometry.vertices[corners].ravel())
-        lines.append(f"{node.path} {material} {geometry.face_patch[face]} {origin} {where} {sides} {places}\n")
+    for node, patch, origin, source, kinds, nine in rows:
+        sides = ",".join([_SIDES[kind] for kind in kinds])
+        made = where[source] if source >= 0 else "-"
+        lines.append(f"{heads[node]} {patch} {_ORIGINS[origin]} {made} {sides} {' '.join(map(repr, nine))}\n")
     return "".join(lines)
+
+
+_SIDES = {int(kind): kind.name.lower() for kind in EdgeKind}
+_ORIGINS = {int(origin): origin.name.lower() for origin in FaceOrigin}
+
+
+def _material(flattened: Flattened, row: int) -> str:
+    return "" if row < 0 else flattened.materials[row].name or "plain"

@@ -21,10 +21,8 @@ class OwnNames:
         self._taken: dict[str, Span] = {}
 
     def take(self, text: str, span: Span) -> None:
-        """Take a name; report it if something here has it already, or if it means an axis."""
-        if text in AXES:
-            self._problems.error("reserved-name", span, f"`{text}` is an axis; nothing else can be called so")
-        elif text in self._taken:
+        """Take a name; report it if something here has it already."""
+        if text in self._taken:
             related = (Related(self._taken[text], "the first of them"),)
             hint = "give one of them another name with `as`"
             self._problems.error("duplicate-name", span, f"two things here are called `{text}`", hint, related)
@@ -39,6 +37,8 @@ def read_marks(lines: tuple[tree.Line, ...], scope: Scope, names: OwnNames, prob
             with problems.collecting():
                 own = name(line.head)
                 names.take(own.text, own.span)
+                if own.text in AXES:
+                    problems.error("reserved-name", own.span, f"`{own.text}` is an axis; no mark can be called so")
                 along = optional(line.head, "axis")
                 axis = direction(along, scope) if along is not None else None
                 found.append(Mark(own.text, point(expression(line.head, "point"), scope), axis, own.span))

@@ -15,7 +15,7 @@ from platewright.lang.source import Span
 
 from . import limits
 from .expressions import literal
-from .mistakes import Problems, mistake
+from .mistakes import Mistake, Problems, mistake
 from .scope import did_you_mean
 from .values import Value, shortened
 
@@ -52,15 +52,16 @@ def read_table(file: str, text: str) -> tuple[Table | None, tuple[Problem, ...]]
     A column without unit holds numbers throughout, or yes and no throughout, or else texts. Cost: linear in the text.
     """
     problems = Problems()
-    records: tuple[_Record, ...] = ()
+    table: Table | None = None
     with problems.collecting():
-        records = _read(file, text)
-    if problems.has_errors:
-        return None, problems.all()
+        table = _table(file, _read(file, text), problems)
+    return (None if problems.has_errors else table), problems.all()
+
+
+def _table(file: str, records: tuple[_Record, ...], problems: Problems) -> Table:
+    """The table of a header and rows. Raises Mistake where the header is no header."""
     header, body = records[0], records[1:]
     columns = _header(header, problems)
-    if problems.has_errors:
-        return None, problems.all()
     whole: list[_Record] = []
     for record in body:
         if len(record.cells) != len(columns):
@@ -71,11 +72,9 @@ def read_table(file: str, text: str) -> tuple[Table | None, tuple[Problem, ...]]
             whole.append(record)
     values = [_column(name, unit, number, whole, problems) for number, (name, unit) in enumerate(columns)]
     _label(whole, problems)
-    if problems.has_errors:
-        return None, problems.all()
     names, labels = tuple(name for name, _ in columns), tuple(record.cells[0] for record in whole)
     spans = tuple(tuple(record.spans) for record in whole)
-    return Table(file, names, tuple(zip(*values, strict=True)), labels, tuple(header.spans), spans), problems.all()
+    return Table(file, names, tuple(zip(*values, strict=True)), labels, tuple(header.spans), spans)
 
 
 def _read(file: str, text: str) -> tuple[_Record, ...]:
@@ -123,7 +122,8 @@ def _cell_spans(file: str, line: int, cells: Sequence[str], is_quoted: bool) -> 
 
 
 def _header(header: _Record, problems: Problems) -> list[tuple[str, str]]:
-    """Names and units of the columns, `""` where a column has none."""
+    """Names and units of the columns, `""` where a column has none. Raises Mistake after reporting what is wrong."""
+    before = problems.n_mistakes
     columns: list[tuple[str, str]] = []
     for cell, span in zip(header.cells, header.spans, strict=True):
         name, _, unit = (part.strip() for part in cell.partition(" "))
@@ -134,7 +134,9 @@ def _header(header: _Record, problems: Problems) -> list[tuple[str, str]]:
             problems.error("unknown-unit", span, f"`{unit}` is no unit", did_you_mean(nearest(unit, units.UNITS)))
         if name and name in [known for known, _ in columns]:
             problems.error("duplicate-name", span, f"two columns are called `{name}`", "rename one")
-        columns.append((name, unit if unit in units.UNITS else ""))
+        columns.append((name, unit))
+    if problems.n_mistakes > before:
+        raise Mistake(None)
     return columns
 
 

@@ -97,7 +97,9 @@ def _report_unknown(reading: tree.Reading, known: set[str], problems: Problems) 
     shape = reading.get("shape")
     if isinstance(shape, tree.Reading) and shape.row in LATER:
         return
-    for path in names_in(reading, into_brackets=False):
+    # A thing is turned about an axis of its own, whose name its own lines declare.
+    values = tuple(value for slot, value in reading.values if (reading.row, slot) != ("turn", "axis"))
+    for path in names_in(values, into_brackets=False):
         first = path.steps[0]
         if first.name not in known:
             sentence = f"nothing here is called `{first.name}`"

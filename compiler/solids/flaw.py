@@ -9,7 +9,8 @@ from dataclasses import dataclass
 class Flaw:
     """One mistake. `code` is stable; `source` is a row of the compiler's table of lines, -1 for the whole part.
 
-    The sentence is in the author's words, the hint is the way out. `is_error` is False for a warning.
+    The sentence is in the author's words and in the style of problems, small at the start and without a period; so is
+    the hint, the way out. `is_error` is False for a warning.
     """
 
     code: str

@@ -130,30 +130,30 @@ def faults(outline: Outline, turned: bool) -> tuple[OutlineFlaw, ...]:
     """
     loops = (outline.outer, *outline.holes)
     if sum(len(loop.stretches) for loop in loops) > MAX_STRETCHES:
-        sentence = f"The outline has more than {MAX_STRETCHES} stretches, the limit named `stretches`."
-        return (OutlineFlaw("too-large", sentence, "Draw it with fewer lines and arcs."),)
+        sentence = f"the outline has more than {MAX_STRETCHES} stretches, the limit named `stretches`"
+        return (OutlineFlaw("too-large", sentence, "draw it with fewer lines and arcs"),)
     curves = [oriented(loop, k == 0) for k, loop in enumerate(loops)]
     size = max(1e-12, max(abs(x) for loop in curves for corner in extent(loop) for x in corner))
     for loop in curves:
         if abs(area(loop)) <= _NEAR * size * size:
-            return (OutlineFlaw("no-area", "The outline encloses no area.", "Give it points that go round something."),)
+            return (OutlineFlaw("no-area", "the outline encloses no area", "give it points that go round something"),)
     lines = [polyline(loop, 0.0) for loop in curves]
     touch = contact(lines)
     if touch is not None:
         where = f"({touch[0]:.6g} mm, {touch[1]:.6g} mm)"
-        sentence = f"The outline crosses or touches itself at {where}."
-        return (OutlineFlaw("outline-crosses-itself", sentence, "Let its stretches meet only end to end."),)
+        sentence = f"the outline crosses or touches itself at {where}"
+        return (OutlineFlaw("outline-crosses-itself", sentence, "let its stretches meet only end to end"),)
     for k in range(1, len(lines)):
         if not inside(lines[k].points[0], lines[0].points):
-            sentence = f"Hole {k} of the outline lies outside it."
-            return (OutlineFlaw("hole-outside", sentence, "Move the hole inside the outer loop."),)
+            sentence = f"hole {k} of the outline lies outside it"
+            return (OutlineFlaw("hole-outside", sentence, "move the hole inside the outer loop"),)
         if any(inside(lines[k].points[0], lines[j].points) for j in range(1, len(lines)) if j != k):
-            sentence = f"Hole {k} of the outline lies in another hole."
-            return (OutlineFlaw("hole-outside", sentence, "Leave out the inner hole."),)
+            sentence = f"hole {k} of the outline lies in another hole"
+            return (OutlineFlaw("hole-outside", sentence, "leave out the inner hole"),)
     least = float(min(line.points[:, 0].min() for line in lines))
     if turned and least < -_NEAR * size:
-        sentence = f"The outline to be revolved reaches a radius of {least:.6g} mm; none may be negative."
-        return (OutlineFlaw("negative-radius", sentence, "Keep the outline on one side of the axis."),)
+        sentence = f"the outline to be revolved reaches a radius of {least:.6g} mm; none may be negative"
+        return (OutlineFlaw("negative-radius", sentence, "keep the outline on one side of the axis"),)
     return ()
 
 

@@ -64,9 +64,9 @@ def problems_of(shape: Primitive) -> tuple[OutlineFlaw, ...]:
         return faults(shape.outline, isinstance(shape, Revolve))
     if isinstance(shape, Torus) and shape.tube >= shape.diameter:
         sentence = (
-            f"The tube of the torus, {shape.tube:.6g} mm, must be thinner than its diameter, {shape.diameter:.6g} mm."
+            f"the tube of the torus, {shape.tube:.6g} mm, must be thinner than its diameter, {shape.diameter:.6g} mm"
         )
-        return (OutlineFlaw("torus-meets-itself", sentence, "Make the tube thinner or the diameter larger."),)
+        return (OutlineFlaw("torus-meets-itself", sentence, "make the tube thinner or the diameter larger"),)
     return ()
 
 
