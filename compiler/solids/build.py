@@ -15,7 +15,7 @@ import manifold3d
 import numpy as np
 from manifold3d import Manifold, OpType
 from numpy.typing import NDArray
-from platewright.backend.contract import Mesh
+from platewright.backend.contract import Mesh, PatchKind
 
 from . import transform
 from .finish import finish
@@ -24,11 +24,12 @@ from .ladder import MAX_COPIES, MAX_DEPTH, MAX_TRIANGLES
 from .levels import Levels, axis_planes
 from .recipe import Affine, Placed, Primitive, Recipe
 from .shell import Shell
-from .surfaces import Surfaces, concatenate, place
+from .surfaces import Surfaces, concatenate, moved_normals, place, placed_normals
 from .tessellate import count_triangles, problems_of, rise, tessellate
 from .topology import SPECK, in_use, without_specks
 
 F64 = NDArray[np.float64]
+I64 = NDArray[np.int64]
 
 BUILD_VERSION = 1
 """Part of every mesh's key; changes when the same recipe gives other triangles."""
@@ -72,7 +73,7 @@ class _Leaf:
 
     number: int
     source: int
-    surfaces: Surfaces
+    shell: Shell
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -161,15 +162,15 @@ class _Workshop:
         if isinstance(shape, Recipe):
             body = self.make(shape, grown)
             if any(step.operation != "add" for step in shape.steps) and body.manifold.is_empty():
-                sentence = "Nothing is left of the part that is used here."
-                self.flaws.append(Flaw("empty-part", placed.source, sentence, "Look at its cuts."))
+                sentence = "nothing is left of the part that is used here"
+                self.flaws.append(Flaw("empty-part", placed.source, sentence, "look at its cuts"))
             return body
         if (shape, grown) not in self._shells:
             shell = tessellate(shape, self.rung / grown)
             self._shells[shape, grown] = shell, _volume(shell)
         shell, volume = self._shells[shape, grown]
         number = Manifold.reserve_ids(1)
-        self.leaves.append(_Leaf(number, placed.source, shell.surfaces))
+        self.leaves.append(_Leaf(number, placed.source, shell))
         box = np.array((shell.vertices.min(axis=0), shell.vertices.max(axis=0)))
         return _Body(_import(shell, number), axis_planes(shell.surfaces), (volume, volume), box)
 
@@ -191,15 +192,13 @@ def settled(placements: Sequence[Affine], lift: float = 0.0) -> F64:
 def _before(recipe: Recipe, rung: float) -> tuple[Flaw, ...]:
     """Budgets and the mistakes of single shapes; nothing is tessellated."""
     copies, triangles = _totals(recipe, rung, {})
-    hint = "Use fewer copies or a coarser chord error."
+    hint = "use fewer copies or a coarser chord error"
     if copies > MAX_COPIES:
         return (
-            Flaw(
-                "too-large", -1, f"The part is made of more than {MAX_COPIES} shapes, the limit named `copies`.", hint
-            ),
+            Flaw("too-large", -1, f"the part is made of more than {MAX_COPIES} shapes, the limit named `copies`", hint),
         )
     if triangles > MAX_TRIANGLES:
-        sentence = f"The part would take more than {MAX_TRIANGLES} triangles, the limit named `triangles`."
+        sentence = f"the part would take more than {MAX_TRIANGLES} triangles, the limit named `triangles`"
         return (Flaw("too-large", -1, sentence, hint),)
     found: dict[Flaw, None] = {}
     judged: dict[Primitive, tuple[tuple[str, str, str], ...]] = {}
@@ -212,8 +211,8 @@ def _before(recipe: Recipe, rung: float) -> tuple[Flaw, ...]:
             found[Flaw(code, placed.source, sentence, hint)] = None
     first = next((step for step in recipe.steps if step.placed), None)
     if first is not None and first.operation != "add":
-        sentence = f"The part begins with a {first.operation}, but there is nothing to {first.operation} yet."
-        found[Flaw("nothing-to-cut", first.placed[0].source, sentence, "Add a shape first.")] = None
+        sentence = f"the part begins with a {first.operation}, but there is nothing to {first.operation} yet"
+        found[Flaw("nothing-to-cut", first.placed[0].source, sentence, "add a shape first")] = None
     return tuple(found)
 
 
@@ -276,22 +275,58 @@ def _from_shell(key: str, placed: Placed, rung: float) -> Mesh:
     faces = shell.faces if transform.determinant(placement) > 0.0 else np.ascontiguousarray(shell.faces[:, ::-1])
     vertices = shell.vertices if placement == transform.IDENTITY else transform.apply(placement, shell.vertices) + 0.0
     source = np.full(len(faces), placed.source, np.int32)
-    return finish(key, vertices, faces, shell.face_surface, source, place(shell.surfaces, array))
+    free = None
+    if shell.normals is not None:
+        normals = shell.normals if faces is shell.faces else shell.normals[:, ::-1]
+        free = placed_normals(array, normals)
+    return finish(key, vertices, faces, shell.face_surface, source, place(shell.surfaces, array), free)
 
 
 def _import(shell: Shell, number: int) -> Manifold:
-    faces = shell.faces.astype(np.uint64)
+    properties, faces, copies = _with_normals(shell)
     mesh = manifold3d.Mesh64(
-        vert_properties=shell.vertices,
-        tri_verts=faces,
+        vert_properties=properties,
+        tri_verts=faces.astype(np.uint64),
+        merge_from_vert=np.flatnonzero(copies != np.arange(len(copies))).astype(np.uint64),
+        merge_to_vert=copies[copies != np.arange(len(copies))].astype(np.uint64),
         run_index=np.array([0, faces.size], np.uint64),
         run_original_id=np.array([number], np.uint32),
-        face_id=shell.face_surface.astype(np.uint64),
+        face_id=_face_numbers(shell).astype(np.uint64),
     )
     solid = Manifold(mesh)
     if solid.status() != manifold3d.Error.NoError:
         raise SolidError(f"a shell is not closed: {solid.status()}")
     return solid
+
+
+def _with_normals(shell: Shell) -> tuple[F64, I64, I64]:
+    """Vertices as the kernel takes them (n,3), or (n,6) with normals that it carries over cuts; the faces in them; and
+    for each the first that stands at its place. A vertex where free patches meet stands once for each normal.
+    """
+    if shell.normals is None:
+        return shell.vertices, shell.faces.astype(np.int64), np.arange(len(shell.vertices))
+    corner = shell.faces.astype(np.int64).ravel()
+    normals = np.round(shell.normals.reshape(-1, 3), 12) + 0.0
+    order = np.lexsort((normals[:, 2], normals[:, 1], normals[:, 0], corner))
+    ordered, by_vertex = normals[order], corner[order]
+    is_new = np.ones(len(order), np.bool_)
+    is_new[1:] = (by_vertex[1:] != by_vertex[:-1]) | (ordered[1:] != ordered[:-1]).any(axis=1)
+    faces = np.empty(len(order), np.int64)
+    faces[order] = np.cumsum(is_new) - 1
+    vertex = by_vertex[is_new]
+    first = np.searchsorted(vertex, vertex)
+    return np.concatenate((shell.vertices[vertex], ordered[is_new]), axis=1), faces.reshape(-1, 3), first
+
+
+def _face_numbers(shell: Shell) -> NDArray[np.int64]:
+    """What the kernel keeps of every face: the row of its surface, or behind all rows its own number if that is FREE,
+    so that its normals are found again on what is left of it.
+    """
+    rows = shell.face_surface.astype(np.int64)
+    if shell.normals is None:
+        return rows
+    own = len(shell.surfaces) + np.arange(len(rows))
+    return np.where((shell.surfaces.kind == PatchKind.FREE)[rows], own, rows)
 
 
 def _combined(solid: Manifold, operation: str, operands: list[Manifold], box: F64) -> Manifold:
@@ -333,7 +368,7 @@ def _after(body: _Body, pieces: list[Manifold], recipe: Recipe) -> Iterator[Flaw
     solid = body.manifold
     if solid.status() != manifold3d.Error.NoError:
         name = solid.status().name
-        yield Flaw("boolean-failed", -1, f"The shapes could not be combined: {name}.", "Please report it.")
+        yield Flaw("boolean-failed", -1, f"the shapes could not be combined: {name}", "please report it")
         return
     if not pieces:
         yield _empty(recipe)
@@ -342,12 +377,12 @@ def _after(body: _Body, pieces: list[Manifold], recipe: Recipe) -> Iterator[Flaw
     volume, slack = solid.volume(), VOLUME_SLACK * high
     if not low - slack <= volume <= high + slack:
         found = f"{volume:.6g} mm3 is left, between {low:.6g} and {high:.6g} expected"
-        yield Flaw("boolean-failed", -1, f"The shapes could not be combined: {found}.", "Please report it.")
+        yield Flaw("boolean-failed", -1, f"the shapes could not be combined: {found}", "please report it")
     # A cavity is a surface of its own with a negative volume; only what has a positive one is a piece.
     n = sum(1 for piece in pieces if piece.volume() > 0.0)
     if n > 1:
-        hint = "Let its shapes overlap, or make a part of each."
-        yield Flaw("several-pieces", -1, f"The part falls into {n} pieces.", hint, is_error=False)
+        hint = "let its shapes overlap, or make a part of each"
+        yield Flaw("several-pieces", -1, f"the part falls into {n} pieces", hint, is_error=False)
 
 
 def _is_speck(piece: Manifold, solid: Manifold) -> bool:
@@ -359,15 +394,20 @@ def _is_speck(piece: Manifold, solid: Manifold) -> bool:
 def _empty(recipe: Recipe) -> Flaw:
     last = next((s for s in reversed(recipe.steps) if s.operation != "add" and s.placed), None)
     if last is None:
-        return Flaw("empty-part", -1, "The part has no shape.", "Add one.")
+        return Flaw("empty-part", -1, "the part has no shape", "add one")
     verb = "cutting" if last.operation == "cut" else "keeping"
-    sentence = f"Nothing is left of the part after {verb} this."
-    return Flaw("empty-part", last.placed[0].source, sentence, "Check where it stands and how large it is.")
+    sentence = f"nothing is left of the part after {verb} this"
+    return Flaw("empty-part", last.placed[0].source, sentence, "check where it stands and how large it is")
 
 
 def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf], has_specks: bool) -> Mesh:
     mesh = solid.to_mesh64()
-    faces = np.asarray(mesh.tri_verts).astype(np.int32)
+    faces, free = np.asarray(mesh.tri_verts).astype(np.int32), None
+    if np.shape(mesh.vert_properties)[1] > 3:
+        free = np.asarray(mesh.vert_properties)[:, 3:6][faces]
+        same = np.arange(len(mesh.vert_properties), dtype=np.int32)
+        same[np.asarray(mesh.merge_from_vert, np.int64)] = np.asarray(mesh.merge_to_vert, np.int32)
+        faces = same[faces]
     run_index = np.array(mesh.run_index, np.int64) // 3
     lengths = run_index[1:] - run_index[:-1]
     numbers = np.array([leaf.number for leaf in leaves], np.int64)
@@ -376,24 +416,31 @@ def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf], has_specks: b
     # A run without triangles may be that of the box round what is kept.
     if (lengths[numbers[leaf_of_run] != originals] > 0).any():
         raise SolidError("a face of no shape of the recipe")
-    sizes = np.array([len(leaf.surfaces) for leaf in leaves], np.int64)
+    sizes = np.array([len(leaf.shell.surfaces) for leaf in leaves], np.int64)
     first_of_leaf = np.cumsum(sizes) - sizes
     size_of_run = sizes[leaf_of_run]
     first_of_run = np.cumsum(size_of_run) - size_of_run
     # One row of surfaces for every run and every surface of its original.
     run_of_row = np.repeat(np.arange(len(lengths)), size_of_run)
     within = np.arange(len(run_of_row)) - first_of_run[run_of_row]
-    local = concatenate([leaf.surfaces for leaf in leaves]).take(first_of_leaf[leaf_of_run[run_of_row]] + within)
+    local = concatenate([leaf.shell.surfaces for leaf in leaves]).take(first_of_leaf[leaf_of_run[run_of_row]] + within)
     placements = np.asarray(mesh.run_transform).transpose(0, 2, 1)[run_of_row]
     placed = place(local, placements)
     behind = (np.array(mesh.run_flags, np.uint8) & 1).astype(np.bool_)[run_of_row]
     rows = np.repeat(first_of_run, lengths) + np.array(mesh.face_id, np.int64)
     sources = np.array([leaf.source for leaf in leaves], np.int32)[leaf_of_run]
     vertices = np.ascontiguousarray(mesh.vert_properties[:, :3]) + 0.0
+    if free is not None:
+        vertices, faces = in_use(vertices, faces)
+        run = np.repeat(np.arange(len(lengths)), lengths)
+        turned = np.asarray(mesh.run_transform).transpose(0, 2, 1)[run]
+        side = np.where(np.array(mesh.run_flags, np.uint8) & 1, -1.0, 1.0)[run]
+        free = placed_normals(turned[:, None], free) * side[:, None, None]
     rows, sources = rows.astype(np.int32), np.repeat(sources, lengths)
     if has_specks:
         kept = without_specks(vertices, faces)
         vertices, faces, rows, sources = *in_use(vertices, faces[kept]), rows[kept], sources[kept]
+        free = None if free is None else free[kept]
     return finish(
         key,
         vertices,
@@ -401,4 +448,5 @@ def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf], has_specks: b
         rows,
         sources,
         Surfaces(placed.kind, placed.affine, placed.ratio, placed.flipped ^ behind),
+        free,
     )

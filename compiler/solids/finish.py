@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 from platewright.backend.contract import EdgeKind, FaceOrigin, Mesh, PatchKind
 
+from .flaw import SolidError
 from .surfaces import SAME_SURFACE, Surfaces, describe, normals, plane_normals
 from .topology import paired_sides
 
@@ -19,12 +20,20 @@ TANGENT_WITHIN = 0.1
 tangent point to a thousandth of the radius stays within it."""
 
 
-def finish(key: str, vertices: F64, faces: I32, face_surface: I32, face_source: I32, surfaces: Surfaces) -> Mesh:
+def finish(
+    key: str,
+    vertices: F64,
+    faces: I32,
+    face_surface: I32,
+    face_source: I32,
+    surfaces: Surfaces,
+    free_normals: F64 | None = None,
+) -> Mesh:
     """Assemble a mesh.
 
-    vertices (n,3); faces (m,3); face_surface (m,) row of `surfaces`, which are outward; face_source (m,). Neighbouring
-    patches on one surface become one patch, numbered in the order of their first triangles. Cost: one sort of the
-    3m sides.
+    vertices (n,3); faces (m,3); face_surface (m,) row of `surfaces`, which are outward; face_source (m,);
+    free_normals (m,3,3) for the faces of FREE surfaces. Neighbouring patches on one surface become one patch, numbered
+    in the order of their first triangles. Cost: one sort of the 3m sides.
     """
     row, surfaces = _in_use(face_surface, surfaces)
     one, other, closed = paired_sides(faces, len(vertices))
@@ -32,6 +41,15 @@ def finish(key: str, vertices: F64, faces: I32, face_surface: I32, face_source: 
     one_met, other_met = one[met], other[met]
     row, surfaces = _merge(row, surfaces, one_met // 3, other_met // 3, float(np.abs(vertices).max(initial=0.0)))
     corner = _corner_normals(vertices, faces, row, surfaces)
+    is_free = (surfaces.kind == PatchKind.FREE)[row]
+    if is_free.any():
+        assert free_normals is not None
+        corner[is_free] = free_normals[is_free]
+    free = np.flatnonzero(surfaces.kind[row] == PatchKind.FREE)
+    if len(free):
+        if free_normals is None:
+            raise SolidError("a free surface without normals")
+        corner[free] = _kept_normals(vertices[faces[free]], free_normals[free])
     return Mesh(
         key=key,
         vertices=vertices,
@@ -125,7 +143,7 @@ def _corner_normals(vertices: F64, faces: I32, row: I32, surfaces: Surfaces) -> 
         every = np.zeros((len(surfaces), 3), np.float32)
         every[flat_rows] = plane_normals(surfaces.take(np.flatnonzero(flat_rows)))
         corner[:] = every[row][:, None]
-    curved = np.flatnonzero(~flat)
+    curved = np.flatnonzero(~flat & (surfaces.kind != PatchKind.FREE)[row])
     if not len(curved):
         return corner
     # Most vertices lie on one curved patch and are worked out once; those on several, again for each corner.
@@ -143,6 +161,14 @@ def _corner_normals(vertices: F64, faces: I32, row: I32, surfaces: Surfaces) -> 
         some[face, k] = _middle_normals(vertices[used[face]], of_row[face], surfaces)
     corner[curved] = some
     return corner
+
+
+def _kept_normals(triangles: F64, normals: F64) -> F64:
+    """Normals (k,3,3) as unit vectors, those of the triangle where none is kept."""
+    own = np.cross(triangles[:, 1] - triangles[:, 0], triangles[:, 2] - triangles[:, 0])
+    found = np.where((normals == 0.0).all(axis=2)[:, :, None], own[:, None], normals)
+    length = np.sqrt((found**2).sum(axis=2))[:, :, None]
+    return np.where(length > 0.0, found / np.where(length > 0.0, length, 1.0), (0.0, 0.0, 1.0))
 
 
 def _middle_normals(triangles: F64, row: I32, surfaces: Surfaces) -> F64:

@@ -5,6 +5,7 @@ and the normal follows from the gradient g of the canonical equation as A^-T g. 
 
 plane z = 0; cylinder x² + y² = 1; cone x² + y² = z², z > 0; sphere x² + y² + z² = 1;
 torus (rho - q)² + z² = 1 with rho = hypot(x, y) and q the ratio of the radii.
+A FREE surface has no equation: its normals are kept with its triangles (`Shell.normals`).
 """
 
 from __future__ import annotations
@@ -28,7 +29,7 @@ _WEIGHTS = {int(PatchKind.CYLINDER): (1.0, 1.0, 0.0), int(PatchKind.SPHERE): (1.
 class Surfaces:
     """Analytic surfaces, one row each.
 
-    kind (p,) uint8 `PatchKind` of the canonical surface, never FREE; affine (p,3,4) float64 canonical to solid;
+    kind (p,) uint8 `PatchKind` of the canonical surface; affine (p,3,4) float64 canonical to solid;
     ratio (p,) float64, for a torus the radius of the centre circle over that of the tube, otherwise 0;
     flipped (p,) bool, the solid lies on the side that the gradient points to.
     """
@@ -64,6 +65,20 @@ def surfaces(rows: Sequence[tuple[PatchKind, F64, float, bool]]) -> Surfaces:
         np.array([row[2] for row in rows], np.float64),
         np.array([row[3] for row in rows], np.bool_),
     )
+
+
+def free() -> tuple[PatchKind, F64, float, bool]:
+    """The row of a surface without equation."""
+    return PatchKind.FREE, np.eye(3, 4), 0.0, False
+
+
+def moved_normals(linear: F64, vectors: F64) -> F64:
+    """Unit normals (..., 3) after a placement's linear part (..., 3, 3): by the cofactors, outward for any handedness."""
+    a, b, c = linear[..., 0, :], linear[..., 1, :], linear[..., 2, :]
+    cofactors = np.stack((np.cross(b, c), np.cross(c, a), np.cross(a, b)), axis=-2)
+    turned = (cofactors * vectors[..., None, :]).sum(axis=-1)
+    sign = np.sign((a * cofactors[..., 0, :]).sum(axis=-1))
+    return _unit(turned * sign[..., None])
 
 
 def plane(origin: Sequence[float], normal: Sequence[float], x_axis: Sequence[float]) -> F64:
@@ -149,6 +164,12 @@ def describe(all_surfaces: Surfaces) -> Patches:
             frame[lost] = np.concatenate((np.zeros((1, 3)), np.eye(3)))
             size[lost] = 0.0
     return Patches(kind, frame + 0.0, size, inward)
+
+
+def placed_normals(affine: F64, normals: F64) -> F64:
+    """Unit normals (...,3) under placements (...,3,4) or one (3,4): A^-T n; zeros stay zeros."""
+    turned = np.linalg.inv(affine[..., :3]).swapaxes(-1, -2)
+    return _unit((turned @ normals[..., None])[..., 0])
 
 
 def _describe_plane(some: Surfaces, frame: F64, chosen: NDArray[np.intp]) -> NDArray[np.bool_]:
