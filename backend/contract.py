@@ -112,6 +112,25 @@ class Mark:
     diameter: float | None = None
 
 
+@dataclass(frozen=True, slots=True)
+class Thread:
+    """A screw thread that stands in the geometry as a plain cylinder: by drawing convention (ISO 6410-1).
+
+    World millimetres. The axis runs from `start`, the middle of one end, along the unit vector `axis` for `length`.
+    `major` and `minor` are diameters; the cylinder in the geometry is the crest: the major one, or the minor one of an
+    internal thread, whose material lies outside. `left` is the hand.
+    """
+
+    start: tuple[float, float, float]
+    axis: tuple[float, float, float]
+    length: float
+    major: float
+    minor: float
+    pitch: float
+    internal: bool
+    left: bool = False
+
+
 @dataclass(frozen=True, eq=False, slots=True)
 class Node:
     """One entry of the part tree, parents before children.
@@ -119,7 +138,8 @@ class Node:
     `path` is unique and stable. Only leaves hold triangles: `mesh` is a row of `Geometry.meshes`,
     `placement` (4,4) float64 maps the mesh's frame to the world, and `face_range`, `vertex_range` say
     where its triangles and vertices stand in the flattened arrays. A `placement` of a node without a mesh is that
-    of its own frame. `material` is a row of `Job.materials`, -1 for nodes without a mesh.
+    of its own frame. `material` is a row of `Job.materials`, -1 for nodes without a mesh. `threads` are those drawn by
+    convention.
     """
 
     path: str
@@ -133,6 +153,7 @@ class Node:
     closed: bool = True
     source: SourceSpan | None = None
     marks: tuple[Mark, ...] = ()
+    threads: tuple[Thread, ...] = ()
 
 
 @dataclass(frozen=True, eq=False, slots=True)
