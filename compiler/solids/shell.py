@@ -28,7 +28,10 @@ class Shell:
 
 
 def shell(
-    vertices: NDArray[np.float64], pieces: Sequence[tuple[NDArray[np.integer], int]], surfaces: Surfaces
+    vertices: NDArray[np.float64],
+    pieces: Sequence[tuple[NDArray[np.integer], int]],
+    surfaces: Surfaces,
+    normals: NDArray[np.float64] | None = None,
 ) -> Shell:
     """From vertices and pieces, each the triangles (k,3) of one surface; vertices without triangles are left out."""
     faces = np.concatenate([triangles for triangles, _ in pieces]).astype(np.int32)
