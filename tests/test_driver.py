@@ -418,17 +418,18 @@ def test_a_bar_appears_only_for_who_watches_long_work(monkeypatch: pytest.Monkey
         monkeypatch.setattr("platewright.compiler.driver.report._PATIENCE", patience)
         err = Terminal()
         report = Report(io.StringIO(), err, False, is_watched)
-        with report.progress(2) as begin:
-            begin("first")
+        with report.progress(2) as steps:
+            steps.begin("first")
+            steps.share(0.5)
             report.message("aside")
-            begin("second")
+            steps.begin("second")
         return err.getvalue()
 
     monkeypatch.setenv("TERM", "xterm")
     assert said(is_watched=False, patience=-1) == "platewright: aside\n"
     assert said(is_watched=True, patience=60) == "platewright: aside\n"
     long = said(is_watched=True, patience=-1)
-    assert "first" in long and "second" in long and "platewright: aside\n" in long
+    assert "first" in long and " 25%" in long and "second" in long and "platewright: aside\n" in long
 
 
 def test_a_reader_that_leaves_is_no_fault(drum: Path) -> None:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -11,7 +11,7 @@ from platewright.lang.problems import is_error
 
 from . import files, warm
 from .crash import Trace
-from .report import Report
+from .report import Report, Steps
 from .session import Session, chosen_figures, chosen_variants, open_session, title
 
 if TYPE_CHECKING:
@@ -67,15 +67,15 @@ def draw(wanted: Wanted, trace: Trace, report: Report) -> int:
         return 1
     figures = chosen_figures(session.project, wanted.figures)
     variants = chosen_variants(session.project, wanted.variants, wanted.all_variants)
-    with report.progress(max(1, len(figures)) * len(variants)) as begin:
+    with report.progress(max(1, len(figures)) * len(variants)) as steps:
         for variant in variants:
-            _draw_variant(variant, figures, run, begin)
+            _draw_variant(variant, figures, run, steps)
     if run.failed:
         report.message(f"not written: {', '.join(run.failed)}")
     return 1 if run.failed or session.findings.has_errors else 0
 
 
-def _draw_variant(variant: Variant | None, figures: tuple[str, ...], run: _Run, begin: Callable[[str], None]) -> None:
+def _draw_variant(variant: Variant | None, figures: tuple[str, ...], run: _Run, steps: Steps) -> None:
     """All figures of one variant. A problem that concerns all of it keeps every figure from being written."""
     model = run.session.build(variant, run.wanted.settings)
     run.show_news()
@@ -90,15 +90,15 @@ def _draw_variant(variant: Variant | None, figures: tuple[str, ...], run: _Run, 
     bad = run.session.bad_figures(model)
     for figure in figures or [figure.name for figure in model.figures]:
         unit = figure if variant is None else f"{variant.name}/{figure}"
-        begin(unit)
+        steps.begin(unit)
         run.session.trace.stage = f"drawing {unit}"
-        content = None if figure in bad else _unit(model, figure, variant, run)
+        content = None if figure in bad else _unit(model, figure, variant, run, steps)
         run.show_news()
         if content is None or not _write(content, run):
             run.failed.append(unit)
 
 
-def _unit(model: Model, figure: str, variant: Variant | None, run: _Run) -> dict[Path, bytes] | None:
+def _unit(model: Model, figure: str, variant: Variant | None, run: _Run, steps: Steps) -> dict[Path, bytes] | None:
     """The files of one figure of one variant, all in memory; None if a problem forbids them."""
     from platewright.backend import sheet
     from platewright.backend.write.record import record_bytes
@@ -112,7 +112,7 @@ def _unit(model: Model, figure: str, variant: Variant | None, run: _Run) -> dict
         return None
     kinds = run.wanted.kinds or tuple(kind for kind in job.sheet.files if kind in KINDS) or KINDS[:1]
     with warm.compiling_told(run.report):
-        drawing = sheet.draw(job, kinds)
+        drawing = sheet.draw(job, kinds, progress=steps.share)
     content = {f"{figure}.{kind}": sheet.encode(drawing, job, kind) for kind in dict.fromkeys(kinds)}
     if run.wanted.record:
         content[f"{figure}.record.json"] = record_bytes(job, drawing.measures)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import io
 import time
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager, nullcontext
 from typing import TYPE_CHECKING, TextIO
 
@@ -75,39 +75,50 @@ class Report:
             stream.flush()
 
     @contextmanager
-    def progress(self, n_steps: int) -> Iterator[Callable[[str], None]]:
-        """Long work in steps: call what this yields with the name of each step as it begins.
-
-        On a terminal a bar appears once the work proves long; elsewhere nothing does.
-        """
+    def progress(self, n_steps: int) -> Iterator[Steps]:
+        """Long work in steps. On a terminal a bar appears once the work proves long; elsewhere nothing does."""
         if not self._is_watched:
-            yield lambda label: None
+            yield Steps()
             return
         self._bar = _Bar(self._err, n_steps, self._is_coloured)
         try:
-            yield self._bar.begin
+            yield self._bar
         finally:
             self._bar.end()
             self._bar = None
 
 
-class _Bar:
+class Steps:
+    """Told what is being worked on and how far it is. This one tells nobody."""
+
+    def begin(self, label: str) -> None:
+        """Count the step before as done and name the next."""
+
+    def share(self, done: float) -> None:
+        """How much of the step at hand is done, 0..1."""
+
+
+class _Bar(Steps):
     """A bar that is drawn only after `_PATIENCE` seconds, so that short work imports no terminal library."""
 
     def __init__(self, stream: TextIO, n_steps: int, is_coloured: bool) -> None:
         self._stream, self._n_steps, self._is_coloured = stream, n_steps, is_coloured
         self._started = time.monotonic()
         self._n_done = -1
+        self._label = ""
         self._shown: tuple[Progress, TaskID] | None = None
 
     def begin(self, label: str) -> None:
-        """Count the step before as done and name the next."""
         self._n_done += 1
+        self._label = label
+        self.share(0.0)
+
+    def share(self, done: float) -> None:
         if self._shown is None and time.monotonic() - self._started > _PATIENCE:
             self._show()
         if self._shown is not None:
             progress, task = self._shown
-            progress.update(task, completed=self._n_done, description=label)
+            progress.update(task, completed=self._n_done + done, description=self._label)
 
     @contextmanager
     def aside(self) -> Iterator[None]:
@@ -127,13 +138,13 @@ class _Bar:
 
     def _show(self) -> None:
         from rich.console import Console
-        from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn, TimeRemainingColumn
+        from rich.progress import BarColumn, Progress, TaskProgressColumn, TextColumn, TimeRemainingColumn
 
         console = Console(file=self._stream, no_color=not self._is_coloured)
         columns = (
             TextColumn("{task.description}", markup=False),
             BarColumn(),
-            MofNCompleteColumn(),
+            TaskProgressColumn(),
             TimeRemainingColumn(),
         )
         progress = Progress(*columns, console=console, transient=True)

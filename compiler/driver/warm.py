@@ -81,9 +81,9 @@ def warm_up(trace: Trace, report: Report) -> int:
     model = None if project is None else build(project)[0]
     if model is None:
         raise AssertionError(f"the warm-up scene does not build: {problems}")
-    with compiling_told(report), report.progress(len(model.figures)) as begin:
+    with compiling_told(report), report.progress(len(model.figures)) as steps:
         for figure in model.figures:
-            begin(figure.name)
+            steps.begin(figure.name)
             job, problems = plan(model, figure.name, KeptMeshes(), resolution=100.0, measures=True)
             if job is None:
                 raise AssertionError(f"the warm-up scene does not draw: {problems}")
