@@ -15,7 +15,7 @@ import manifold3d
 import numpy as np
 from manifold3d import Manifold, OpType
 from numpy.typing import NDArray
-from platewright.backend.contract import Mesh, PatchKind
+from platewright.backend.contract import Mesh
 
 from . import transform
 from .finish import finish
@@ -24,7 +24,7 @@ from .ladder import MAX_COPIES, MAX_DEPTH, MAX_TRIANGLES
 from .levels import Levels, axis_planes
 from .recipe import Affine, Placed, Primitive, Recipe
 from .shell import Shell
-from .surfaces import Surfaces, concatenate, moved_normals, place, placed_normals
+from .surfaces import Surfaces, concatenate, place, placed_normals
 from .tessellate import count_triangles, problems_of, rise, tessellate
 from .topology import SPECK, in_use, without_specks
 
@@ -291,7 +291,7 @@ def _import(shell: Shell, number: int) -> Manifold:
         merge_to_vert=copies[copies != np.arange(len(copies))].astype(np.uint64),
         run_index=np.array([0, faces.size], np.uint64),
         run_original_id=np.array([number], np.uint32),
-        face_id=_face_numbers(shell).astype(np.uint64),
+        face_id=shell.face_surface.astype(np.uint64),
     )
     solid = Manifold(mesh)
     if solid.status() != manifold3d.Error.NoError:
@@ -316,17 +316,6 @@ def _with_normals(shell: Shell) -> tuple[F64, I64, I64]:
     vertex = by_vertex[is_new]
     first = np.searchsorted(vertex, vertex)
     return np.concatenate((shell.vertices[vertex], ordered[is_new]), axis=1), faces.reshape(-1, 3), first
-
-
-def _face_numbers(shell: Shell) -> NDArray[np.int64]:
-    """What the kernel keeps of every face: the row of its surface, or behind all rows its own number if that is FREE,
-    so that its normals are found again on what is left of it.
-    """
-    rows = shell.face_surface.astype(np.int64)
-    if shell.normals is None:
-        return rows
-    own = len(shell.surfaces) + np.arange(len(rows))
-    return np.where((shell.surfaces.kind == PatchKind.FREE)[rows], own, rows)
 
 
 def _combined(solid: Manifold, operation: str, operands: list[Manifold], box: F64) -> Manifold:

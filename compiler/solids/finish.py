@@ -41,10 +41,6 @@ def finish(
     one_met, other_met = one[met], other[met]
     row, surfaces = _merge(row, surfaces, one_met // 3, other_met // 3, float(np.abs(vertices).max(initial=0.0)))
     corner = _corner_normals(vertices, faces, row, surfaces)
-    is_free = (surfaces.kind == PatchKind.FREE)[row]
-    if is_free.any():
-        assert free_normals is not None
-        corner[is_free] = free_normals[is_free]
     free = np.flatnonzero(surfaces.kind[row] == PatchKind.FREE)
     if len(free):
         if free_normals is None:

@@ -33,7 +33,10 @@ def shell(
     surfaces: Surfaces,
     normals: NDArray[np.float64] | None = None,
 ) -> Shell:
-    """From vertices and pieces, each the triangles (k,3) of one surface; vertices without triangles are left out."""
+    """From vertices and pieces, each the triangles (k,3) of one surface; vertices without triangles are left out.
+
+    `normals` (m,3,3) are those of all triangles in the order of the pieces, read where a surface is FREE.
+    """
     faces = np.concatenate([triangles for triangles, _ in pieces]).astype(np.int32)
     vertices, faces = in_use(vertices, faces)
     rows = np.repeat([row for _, row in pieces], [len(triangles) for triangles, _ in pieces]).astype(np.int32)

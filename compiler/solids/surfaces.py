@@ -72,15 +72,6 @@ def free() -> tuple[PatchKind, F64, float, bool]:
     return PatchKind.FREE, np.eye(3, 4), 0.0, False
 
 
-def moved_normals(linear: F64, vectors: F64) -> F64:
-    """Unit normals (..., 3) after a placement's linear part (..., 3, 3): by the cofactors, outward for any handedness."""
-    a, b, c = linear[..., 0, :], linear[..., 1, :], linear[..., 2, :]
-    cofactors = np.stack((np.cross(b, c), np.cross(c, a), np.cross(a, b)), axis=-2)
-    turned = (cofactors * vectors[..., None, :]).sum(axis=-1)
-    sign = np.sign((a * cofactors[..., 0, :]).sum(axis=-1))
-    return _unit(turned * sign[..., None])
-
-
 def plane(origin: Sequence[float], normal: Sequence[float], x_axis: Sequence[float]) -> F64:
     """The (3,4) affine of a plane from its outward unit normal and a unit vector in it."""
     # Plain numbers: for single vectors they are many times faster than arrays.
