@@ -107,7 +107,8 @@ class _Measures:
         ends = []
         for each in call.positional:
             value = evaluate(each, self.model.scope.inside({}, self))
-            if not isinstance(value, Vector) or len(value.components) != 3 or value.dimension != LENGTH:
+            is_point = isinstance(value, Vector) and (value.dimension == LENGTH or not any(value.components))
+            if not isinstance(value, Vector) or len(value.components) != 3 or not is_point:
                 raise mistake("wrong-kind", each.span, f"`distance` takes two points, found {kind_of(value)}")
             ends.append(value.components)
         return Quantity(math.dist(*ends), LENGTH)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from platewright.backend.contract import Geometry
 from platewright.lang import tree
 from platewright.lang.problems import Problem
 
@@ -100,14 +101,20 @@ def _parts(flattened: Flattened) -> list[PartRow]:
     rows = []
     for (path, mesh), copies in paths.items():
         solids = below.get(copies[0], [])
-        ranges = [geometry.nodes[row].vertex_range for row in solids]
-        x, y, z = (
-            max(float(geometry.vertices[a:b, k].max()) for a, b in ranges)
-            - min(float(geometry.vertices[a:b, k].min()) for a, b in ranges)
-            for k in range(3)
-        )
-        rows.append(PartRow(path, len(copies), (x, y, z), sum(volumes[row] for row in solids), mesh < 0))
+        size = _size(geometry, solids) if solids else (0.0, 0.0, 0.0)
+        rows.append(PartRow(path, len(copies), size, sum(volumes[row] for row in solids), mesh < 0))
     return rows
+
+
+def _size(geometry: Geometry, solids: list[int]) -> tuple[float, float, float]:
+    """The sides of the box round some solids, mm."""
+    ranges = [geometry.nodes[row].vertex_range for row in solids]
+    x, y, z = (
+        max(float(geometry.vertices[a:b, k].max()) for a, b in ranges)
+        - min(float(geometry.vertices[a:b, k].min()) for a, b in ranges)
+        for k in range(3)
+    )
+    return (x, y, z)
 
 
 def unbracketed(path: str) -> str:

@@ -206,8 +206,9 @@ def geometry(
 ) -> tuple[Exported | None, tuple[Problem, ...]]:
     """World-space triangles of a part path and all below it, at a chord error of at most `tolerance_mm`."""
     written, problems = read_value("--of", path)
+    if problems:
+        return None, problems
     collected = Problems()
-    collected.extend(problems)
     exported: Exported | None = None
     with collected.collecting():
         exported = _export(model.built, written, path, tolerance_mm, mesher, collected)
