@@ -219,9 +219,8 @@ def test_a_figure_shows_a_thing_with_values_of_its_own() -> None:
 
 def test_a_mistake_in_a_thing_made_for_one_figure_is_told_there() -> None:
     text = (
-        BOX
-        + "part rod(d)\n    add cylinder diameter d length 9 mm - d\nfigure f\n    show rod(d = 30 mm)\n"
-    text += "figure other\n    show box\n"
+        BOX + "part rod(d)\n    add cylinder diameter d length 9 mm - d\nfigure f\n    show rod(d = 30 mm)\n"
+        "figure other\n    show box\n"
     )
     (error,) = checked(text).errors
     assert (error.code, error.within, error.span.line) == ("out-of-range", "f", 5)
