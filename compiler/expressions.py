@@ -250,7 +250,7 @@ def _tuple(expression: tree.Tuple, scope: Scope, depth: int) -> Vector:
         components.append(value)
     dimension = next((each.dimension for each in components if not each.bare_zero), NUMBER)
     for item, component in zip(expression.items, components, strict=True):
-        if component.dimension != dimension and not component.bare_zero:
+        if component.dimension is not dimension and component.dimension != dimension and not component.bare_zero:
             wanted = with_article(dimension_name(dimension))
             sentence = f"the values of a point are of one kind: expected {wanted}, found {kind_of(component)}"
             raise mistake("wrong-kind", item.span, sentence)
