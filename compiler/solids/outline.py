@@ -1,8 +1,7 @@
 """Plane outlines: one winding, stretches to points, and the mistakes that an outline can hold.
 
-Lines and arcs become `Curve`s that run round the material with it on their left: the outer loop counter-clockwise,
-holes clockwise. Arcs are divided at the marks of their own full circle, so an arc and a cylinder of its radius and
-centre share vertices.
+Stretches become `Curve`s that run round the material with it on their left: the outer loop counter-clockwise,
+holes clockwise.
 """
 
 from __future__ import annotations
@@ -13,37 +12,30 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from ..trigonometry import circle_points, circle_table
+from .cubic import bezier_pieces
+from .curve import Curve, area_beside, divided, full_turn, reached, reverse
+from .curve import count_chords as count_curve_chords
+from .curve import sweep as sweep
 from .flaw import SolidError
-from .ladder import divisions
-from .recipe import ArcTo, Loop, Outline, Point2
+from .recipe import ArcTo, EllipseTo, Loop, Outline, Point2, SplineTo, Stretch
 
 F64 = NDArray[np.float64]
 
 MAX_STRETCHES = 20_000
 """Limit named `stretches`: lines and arcs of one outline."""
 _NEAR = 1e-9
-_CHECK_RUNG = 1e-5  # part of the radius: 704 chords a circle
-
-
-@dataclass(frozen=True, slots=True)
-class Curve:
-    """One stretch. An arc has a radius above 0 and turns counter-clockwise round `centre` if `left`."""
-
-    start: Point2
-    end: Point2
-    centre: Point2 = (0.0, 0.0)
-    radius: float = 0.0
-    left: bool = True
 
 
 @dataclass(frozen=True, eq=False, slots=True)
 class Polyline:
-    """A closed polygon: points (k,2) float64; curve (k,) int32, the row of `curves` that point k to k+1 runs along."""
+    """A closed polygon: points (k,2) float64; curve (k,) int32, the row of `curves` that point k to k+1 runs along;
+    tangents (k,2,2) float64, the unit tangents of that curve at both ends of the chord.
+    """
 
     points: F64
     curve: NDArray[np.int32]
     curves: tuple[Curve, ...]
+    tangents: F64
 
 
 @dataclass(frozen=True, slots=True)
@@ -60,7 +52,7 @@ def flatten(outline: Outline, rung: float) -> list[Polyline]:
     loops = [oriented(loop, k == 0) for k, loop in enumerate((outline.outer, *outline.holes))]
     for chord_error in (rung, rung / 4.0, rung / 16.0, rung / 64.0, 0.0):
         lines = [polyline(curves, chord_error) for curves in loops]
-        if (len(loops) == 1 and len(loops[0]) == 1) or contact(lines) is None:
+        if (len(loops) == 1 and len(loops[0]) == 1 and not loops[0][0].pieces) or contact(lines) is None:
             return lines
     raise SolidError("an outline that touches itself was not refused")
 
@@ -70,56 +62,35 @@ def oriented(loop: Loop, counter_clockwise: bool) -> tuple[Curve, ...]:
     curves = _joined(_curves(loop))
     if (area(curves) > 0.0) == counter_clockwise:
         return curves
-    return tuple(replace(c, start=c.end, end=c.start, left=not c.left) for c in reversed(curves))
+    return tuple(reverse(c) for c in reversed(curves))
 
 
 def area(curves: tuple[Curve, ...]) -> float:
-    """Signed area, mm2: the polygon of the ends (shoelace) and the segment r²(t - sin t)/2 of each arc."""
-    total = 0.0
-    for c in curves:
-        total += (c.start[0] * c.end[1] - c.end[0] * c.start[1]) / 2.0
-        if c.radius:
-            turn = sweep(c)
-            total += (1.0 if c.left else -1.0) * c.radius**2 * (turn - math.sin(turn)) / 2.0
-    return total
-
-
-def sweep(arc: Curve) -> float:
-    """The angle an arc turns through, radians in (0, 2 pi]."""
-    first, last = _angle(arc, arc.start), _angle(arc, arc.end)
-    turn = (last - first if arc.left else first - last) % math.tau
-    return math.tau if turn * arc.radius <= _NEAR * arc.radius or math.dist(arc.start, arc.end) == 0.0 else turn
+    """Signed area of a closed loop, mm2, exact for every kind of stretch."""
+    return sum(area_beside(curve) for curve in curves)
 
 
 def extent(curves: tuple[Curve, ...]) -> tuple[Point2, Point2]:
     """The exact box (low, high) of a closed loop; two points at the origin for an empty one."""
-    reached = [c.start for c in curves] or [(0.0, 0.0)]
-    for c in curves:
-        if c.radius:
-            (x, y), r = c.centre, c.radius
-            begin, turn = _angle(c, c.start if c.left else c.end), sweep(c)
-            for quarter, point in enumerate(((x + r, y), (x, y + r), (x - r, y), (x, y - r))):
-                if (quarter * math.pi / 2 - begin) % math.tau <= turn:
-                    reached.append(point)
-    across, up = [p[0] for p in reached], [p[1] for p in reached]
+    points = [point for curve in curves for point in reached(curve)] or [(0.0, 0.0)]
+    across, up = [p[0] for p in points], [p[1] for p in points]
     return (min(across), min(up)), (max(across), max(up))
 
 
 def count_chords(curves: tuple[Curve, ...], rung: float) -> int:
     """Points of `polyline` at most."""
-    return sum(math.ceil(_chords(c, rung) * sweep(c) / math.tau) + 2 if c.radius else 1 for c in curves)
+    return sum(count_curve_chords(curve, rung) for curve in curves)
 
 
 def polyline(curves: tuple[Curve, ...], rung: float) -> Polyline:
     """Chords of at most `rung` of error, 0 for 1/100 000 of each radius; a circle alone starts at its own zero mark."""
-    if len(curves) == 1:
-        points = _circle(curves[0], rung)
-        return Polyline(points, np.zeros(len(points), np.int32), curves)
-    pieces = [
-        np.concatenate((np.array([c.start]), _marks(c, rung))) if c.radius else np.array([c.start]) for c in curves
-    ]
-    rows = np.repeat(np.arange(len(curves), dtype=np.int32), [len(piece) for piece in pieces])
-    return Polyline(np.concatenate(pieces), rows, curves)
+    if len(curves) == 1 and not curves[0].pieces:
+        pieces = [full_turn(curves[0], rung)]
+    else:
+        pieces = [divided(curve, rung) for curve in curves]
+    rows = np.repeat(np.arange(len(curves), dtype=np.int32), [len(points) for points, _ in pieces])
+    tangents = np.concatenate([np.stack((along[:-1], along[1:]), axis=1) for _, along in pieces])
+    return Polyline(np.concatenate([points for points, _ in pieces]), rows, curves, tangents)
 
 
 def faults(outline: Outline, turned: bool) -> tuple[OutlineFlaw, ...]:
@@ -129,7 +100,7 @@ def faults(outline: Outline, turned: bool) -> tuple[OutlineFlaw, ...]:
     outlines as they are drawn.
     """
     loops = (outline.outer, *outline.holes)
-    if sum(len(loop.stretches) for loop in loops) > MAX_STRETCHES:
+    if sum(_count(stretch) for loop in loops for stretch in loop.stretches) > MAX_STRETCHES:
         sentence = f"the outline has more than {MAX_STRETCHES} stretches, the limit named `stretches`"
         return (OutlineFlaw("too-large", sentence, "draw it with fewer lines and arcs"),)
     curves = [oriented(loop, k == 0) for k, loop in enumerate(loops)]
@@ -155,6 +126,10 @@ def faults(outline: Outline, turned: bool) -> tuple[OutlineFlaw, ...]:
         sentence = f"the outline to be revolved reaches a radius of {least:.6g} mm; none may be negative"
         return (OutlineFlaw("negative-radius", sentence, "keep the outline on one side of the axis"),)
     return ()
+
+
+def _count(stretch: Stretch) -> int:
+    return len(stretch.points) if isinstance(stretch, SplineTo) else 1
 
 
 def inside(point: F64, polygon: F64) -> bool:
@@ -245,7 +220,12 @@ def _gap(p: F64, a: F64, b: F64) -> F64:
 def _curves(loop: Loop) -> list[Curve]:
     curves, at = [], loop.start
     for stretch in loop.stretches:
-        if isinstance(stretch, ArcTo):
+        if isinstance(stretch, SplineTo):
+            curves.append(_spline(at, stretch))
+        elif isinstance(stretch, EllipseTo):
+            oval = (*stretch.axes, stretch.turn)
+            curves.append(Curve(at, stretch.end, stretch.centre, 0.0, stretch.left, oval))
+        elif isinstance(stretch, ArcTo):
             radius = math.dist(at, stretch.centre)
             if abs(math.dist(stretch.end, stretch.centre) - radius) > 1e-6 * max(radius, 1e-3) or not radius > 0.0:
                 raise SolidError(f"arc from {at} to {stretch.end}: its ends differ in radius about {stretch.centre}")
@@ -262,6 +242,12 @@ def _curves(loop: Loop) -> list[Curve]:
     return curves
 
 
+def _spline(start: Point2, stretch: SplineTo) -> Curve:
+    control = bezier_pieces((start, *stretch.points), stretch.tangent).tolist()
+    pieces = tuple(((a[0], a[1]), (b[0], b[1]), (c[0], c[1]), (d[0], d[1])) for a, b, c, d in control)
+    return Curve(start, stretch.end, pieces=pieces)
+
+
 def _joined(curves: list[Curve]) -> tuple[Curve, ...]:
     joined: list[Curve] = []
     for curve in curves:
@@ -275,36 +261,8 @@ def _joined(curves: list[Curve]) -> tuple[Curve, ...]:
 
 
 def _straight_on(one: Curve, other: Curve) -> bool:
-    if one.radius or other.radius:
+    if not (one.is_line and other.is_line):
         return False
     ax, ay = one.end[0] - one.start[0], one.end[1] - one.start[1]
     bx, by = other.end[0] - other.start[0], other.end[1] - other.start[1]
     return abs(ax * by - ay * bx) <= 1e-12 * math.hypot(ax, ay) * math.hypot(bx, by) and ax * bx + ay * by > 0.0
-
-
-def _angle(arc: Curve, point: Point2) -> float:
-    return math.atan2(point[1] - arc.centre[1], point[0] - arc.centre[0])
-
-
-def _chords(arc: Curve, rung: float) -> int:
-    return divisions(arc.radius, rung or _CHECK_RUNG * arc.radius)
-
-
-def _circle(arc: Curve, rung: float) -> F64:
-    table = circle_table(_chords(arc, rung))
-    points = np.array(arc.centre) + arc.radius * table
-    return points if arc.left else np.concatenate((points[:1], points[:0:-1]))
-
-
-def _marks(arc: Curve, rung: float) -> F64:
-    """The marks of the arc's full circle that lie strictly within it, in its direction."""
-    n = _chords(arc, rung)
-    step = math.tau / n
-    first, turn = _angle(arc, arc.start), sweep(arc)
-    if not arc.left:
-        first -= turn
-    # A mark that all but coincides with an end would leave a sliver.
-    low, high = first / step + 1e-6, (first + turn) / step - 1e-6
-    marks = np.arange(math.ceil(low), math.floor(high) + 1)
-    points = np.array(arc.centre) + arc.radius * circle_points(n, marks)
-    return points if arc.left else points[::-1]

@@ -12,11 +12,12 @@ from numpy.typing import NDArray
 from platewright.backend.contract import PatchKind
 
 from ..trigonometry import cos_deg, sin_deg
-from .outline import Curve, Polyline
+from .curve import Curve
+from .outline import Polyline
 from .recipe import Block, Prism, Pyramid, Wedge
 from .revolve import disc
 from .shell import Shell, shell
-from .surfaces import cross, plane, surfaces
+from .surfaces import cross, free, plane, surfaces
 
 F64 = NDArray[np.float64]
 
@@ -86,9 +87,11 @@ def extrude(loops: list[Polyline], length: float) -> Shell:
         (PatchKind.PLANE, plane((0.0, 0.0, 0.0), (0.0, 0.0, -1.0), (1.0, 0.0, 0.0)), 0.0, False),
         (PatchKind.PLANE, plane((0.0, 0.0, length), (0.0, 0.0, 1.0), (1.0, 0.0, 0.0)), 0.0, False),
     ]
+    normals = [np.zeros((2 * len(cap), 3, 3))]
     first = 0
     for loop in loops:
         k = len(loop.points)
+        outward = np.stack((loop.tangents[..., 1], -loop.tangents[..., 0], np.zeros((k, 2))), axis=2)
         here = first + np.arange(k)
         then = first + (np.arange(k) + 1) % k
         # Rows of one curve stand together, so the walls can be cut where the curve changes.
@@ -96,12 +99,16 @@ def extrude(loops: list[Polyline], length: float) -> Shell:
         for low, high in pairwise(starts):
             a, b = here[low:high], then[low:high]
             pieces.append((np.concatenate((np.stack((a, b, b + n), 1), np.stack((a, b + n, a + n), 1))), len(rows)))
+            normals.append(np.concatenate((outward[low:high][:, [0, 1, 1]], outward[low:high][:, [0, 1, 0]])))
             rows.append(_wall(loop.curves[loop.curve[low]]))
         first += k
-    return shell(vertices, pieces, surfaces(rows))
+    is_free = any(row[0] == PatchKind.FREE for row in rows)
+    return shell(vertices, pieces, surfaces(rows), np.concatenate(normals) if is_free else None)
 
 
 def _wall(curve: Curve) -> tuple[PatchKind, F64, float, bool]:
+    if curve.is_free:
+        return free()
     if curve.radius:
         (x, y), r = curve.centre, curve.radius
         affine = np.array([[r, 0.0, 0.0, x], [0.0, r, 0.0, y], [0.0, 0.0, 1.0, 0.0]])

@@ -31,6 +31,38 @@ class ArcTo:
 
 
 @dataclass(frozen=True, slots=True)
+class SplineTo:
+    """A C2 cubic spline from here through `points`, chord lengths its parameter (`cubic.bezier_pieces`).
+
+    It starts along `tangent`, or without bending; it ends without bending, and closes smoothly where it is a whole loop.
+    """
+
+    points: tuple[Point2, ...]
+    tangent: Point2 | None = None
+
+    @property
+    def end(self) -> Point2:
+        """The last point."""
+        return self.points[-1]
+
+
+@dataclass(frozen=True, slots=True)
+class EllipseTo:
+    """A stretch of an ellipse to `end`, by its half axes, the first `turn` degrees from x; the end at the start is all
+    of it.
+    """
+
+    end: Point2
+    centre: Point2
+    axes: tuple[float, float]
+    turn: float
+    left: bool
+
+
+Stretch = LineTo | ArcTo | SplineTo | EllipseTo
+
+
+@dataclass(frozen=True, slots=True)
 class Loop:
     """A closed plane curve from `start`; if the last stretch does not end there, a straight one closes it.
 
@@ -38,7 +70,7 @@ class Loop:
     """
 
     start: Point2
-    stretches: tuple[LineTo | ArcTo, ...]
+    stretches: tuple[Stretch, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -130,20 +162,172 @@ class Pyramid:
 
 @dataclass(frozen=True, slots=True)
 class Extrude:
-    """The outline's plane is xy; it rises from z = 0."""
+    """The outline's plane is xy; it rises from z = 0.
+
+    Its walls lean inward by `taper` degrees, parallel outlines all the way; it turns by `twist` degrees as it rises.
+    """
 
     outline: Outline
     length: float
+    taper: float = 0.0
+    twist: float = 0.0
 
 
 @dataclass(frozen=True, slots=True)
 class Revolve:
-    """The outline's second axis becomes z, its first the radius, which may not be negative; a full turn."""
+    """The outline's second axis becomes z, its first the radius, which may not be negative; turned by `angle` degrees
+    from the x axis, with plane ends if that is less than 360.
+    """
 
     outline: Outline
+    angle: float = 360.0
 
 
-Primitive = Block | Wedge | Cylinder | Cone | Sphere | Ellipsoid | Torus | Prism | Pyramid | Extrude | Revolve
+@dataclass(frozen=True, slots=True)
+class Edged:
+    """A shape with its edges rounded by a radius or chamfered, `size` being the length taken off either side.
+
+    All edges of a block, wedge, cylinder, cone, prism or pyramid; those round the two ends of an extrusion; the
+    outer ones of a revolution.
+    """
+
+    shape: Block | Wedge | Cylinder | Cone | Prism | Pyramid | Extrude | Revolve
+    kind: Literal["rounded", "chamfered"]
+    size: float
+
+
+@dataclass(frozen=True, slots=True)
+class SpaceLineTo:
+    """A straight stretch to `end`; above 0, `bend` is the radius of the arc that rounds the corner there."""
+
+    end: Point3
+    bend: float = 0.0
+
+
+@dataclass(frozen=True, slots=True)
+class SpaceArcTo:
+    """A circular stretch through a point to `end`."""
+
+    through: Point3
+    end: Point3
+
+
+@dataclass(frozen=True, slots=True)
+class SpaceSplineTo:
+    """A C2 cubic spline from here through `points`, chord lengths its parameter (`spine.spline`).
+
+    It takes over the direction of the stretch before it and, if that is straight or an arc, of the one after it; a
+    free end is natural, and one spline back to the start of its path is periodic.
+    """
+
+    points: tuple[Point3, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Helix:
+    """A whole path about z from (diameter/2, 0, 0) upward; `left` turns clockwise as it rises."""
+
+    diameter: float
+    pitch: float
+    turns: float
+    left: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class SpacePath:
+    """A curve in space from `start`; closed if its last stretch ends there. A helix stands alone."""
+
+    start: Point3
+    stretches: tuple[SpaceLineTo | SpaceArcTo | SpaceSplineTo | Helix, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Sweep:
+    """The outline carried along the path in a frame that does not turn about it, but for `twist` degrees in all.
+
+    At the start the outline's plane stands square to the path, its axes as `transform.facing` tips x and y.
+    """
+
+    outline: Outline
+    path: SpacePath
+    twist: float = 0.0
+
+
+@dataclass(frozen=True, slots=True)
+class Tube:
+    """A round tube along the path, a rod if the bore is 0."""
+
+    path: SpacePath
+    diameter: float
+    bore: float = 0.0
+
+
+@dataclass(frozen=True, slots=True)
+class Spring:
+    """A coil about z by its mean diameter, with open ends; `length` from end to end of its wire, from z = 0."""
+
+    diameter: float
+    wire: float
+    turns: float
+    length: float
+    left: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Bellows:
+    """A corrugated tube about z from z = 0 by its outer diameter and bore, its ends in the middle of a root."""
+
+    diameter: float
+    bore: float
+    convolutions: int
+    length: float
+    thickness: float
+
+
+@dataclass(frozen=True, slots=True)
+class Transition:
+    """From one outline at z = 0 to another at `length`: their common envelope where both are convex."""
+
+    lower: Outline
+    upper: Outline
+    length: float
+
+
+@dataclass(frozen=True, slots=True)
+class Thread:
+    """A screw thread of the basic profile of ISO 68-1, base centre at the origin, axis z.
+
+    `major` is its diameter, `internal` says that it is the wall of a hole, `left` its hand. A plain cylinder over its
+    crests stands for it unless it is `real`.
+    """
+
+    major: float
+    pitch: float
+    length: float
+    left: bool = False
+    internal: bool = False
+    real: bool = False
+
+
+Primitive = (
+    Block
+    | Wedge
+    | Cylinder
+    | Cone
+    | Sphere
+    | Ellipsoid
+    | Torus
+    | Prism
+    | Pyramid
+    | Extrude
+    | Revolve
+    | Sweep
+    | Tube
+    | Spring
+    | Bellows
+    | Transition
+    | Thread
+)
 
 
 @dataclass(frozen=True, slots=True)

@@ -8,39 +8,47 @@ disc has n - 2.
 
 from __future__ import annotations
 
+import math
+from dataclasses import dataclass, field
+
+import manifold3d
 import numpy as np
 from numpy.typing import NDArray
 from platewright.backend.contract import PatchKind
 
-from ..trigonometry import circle_table
+from ..trigonometry import circle_points, circle_table, cos_deg, sin_deg
 from .ladder import divisions
-from .outline import Curve, Polyline
+from .curve import Curve
+from .outline import Polyline
 from .shell import Shell, shell
-from .surfaces import plane, surfaces, upright
+from .surfaces import free, plane, surfaces, upright
 
 F64 = NDArray[np.float64]
 I64 = NDArray[np.int64]
 _NEAR = 1e-12
 
 
-def revolve(loops: list[Polyline], rung: float) -> Shell:
-    """Turn closed profiles in (radius, height), the material on their left, about z. Radii may not be negative."""
+def revolve(loops: list[Polyline], rung: float, angle: float = 360.0) -> Shell:
+    """Turn closed profiles in (radius, height), the material on their left, about z. Radii may not be negative.
+
+    Less than a full turn, `angle` degrees from the x axis, has plane ends.
+    """
     radius = [_radii(loop) for loop in loops]
     division = ring_divisions(loops, rung)
+    turn = _Turn(angle)
     vertices: list[F64] = []
     pieces: list[tuple[I64, int]] = []
+    normals: list[F64] = []
     rows: list[tuple[PatchKind, F64, float, bool]] = []
-    bands: dict[tuple[int, int], I64] = {}
-    tables: dict[int, F64] = {1: np.zeros((1, 2))}
     n_vertices = 0
     for loop, rho, count in zip(loops, radius, division, strict=True):
-        first = n_vertices + np.concatenate(([0], np.cumsum(count)))
+        size = np.where(count == 1, 1, [turn.size(int(n)) for n in count])
+        first = n_vertices + np.concatenate(([0], np.cumsum(size)))
         n_vertices = int(first[-1])
         for r, z, n in zip(rho, loop.points[:, 1], count, strict=True):
-            if n not in tables:
-                tables[int(n)] = circle_table(int(n))
-            ring = np.empty((n, 3))
-            ring[:, :2], ring[:, 2] = tables[int(n)] * r, z
+            table = turn.table(int(n))
+            ring = np.empty((len(table), 3))
+            ring[:, :2], ring[:, 2] = table * r, z
             vertices.append(ring)
         row_of = {}
         for k, curve_row in enumerate(loop.curve):
@@ -53,8 +61,83 @@ def revolve(loops: list[Polyline], rung: float) -> Shell:
                 row_of[curve_row] = len(rows)
                 rows.append(_surface(curve))
             flat = rows[row_of[curve_row]][0] == PatchKind.PLANE
-            pieces.append((_between(n, m, flat, bands, int(first[k]), int(first[following])), row_of[curve_row]))
-    return shell(np.concatenate(vertices), pieces, surfaces(rows))
+            local = turn.between(n, m, flat)
+            pieces.append((np.where(local < turn.size(n), local + first[k], local - turn.size(n) + first[following]),
+                           row_of[curve_row]))
+            normals.append(turn.normals(n, m, loop.tangents[k], local) if curve.is_free else np.zeros((*local.shape, 3)))
+        turn.starts.append(first[:-1]), turn.ends.append(first[:-1] + size - 1)
+    if angle < 360.0:
+        cap = manifold3d.triangulate([loop.points for loop in loops]).astype(np.int64)
+        pieces += [(np.concatenate(turn.starts)[cap], len(rows)), (np.concatenate(turn.ends)[cap[:, ::-1]], len(rows) + 1)]
+        normals.append(np.zeros((2 * len(cap), 3, 3)))
+        c, s = cos_deg(angle), sin_deg(angle)
+        for normal, along in (((0.0, -1.0, 0.0), (1.0, 0.0, 0.0)), ((-s, c, 0.0), (c, s, 0.0))):
+            rows.append((PatchKind.PLANE, plane((0.0, 0.0, 0.0), normal, along), 0.0, False))
+    is_free = any(row[0] == PatchKind.FREE for row in rows)
+    return shell(np.concatenate(vertices), pieces, surfaces(rows), np.concatenate(normals) if is_free else None)
+
+
+@dataclass(slots=True)
+class _Turn:
+    """The rings of one revolution: directions by division, and the bands between them, each worked out once."""
+
+    angle: float
+    starts: list[I64] = field(default_factory=list)
+    ends: list[I64] = field(default_factory=list)
+    _tables: dict[int, F64] = field(default_factory=dict)
+    _bands: dict[tuple[int, int, bool], I64] = field(default_factory=dict)
+
+    def marks(self, n: int) -> int:
+        """Marks of a division in n that lie within the turn, the first included."""
+        return n if self.angle >= 360.0 else max(1, math.ceil(n * self.angle / 360.0 - 1e-6))
+
+    def size(self, n: int) -> int:
+        """Vertices of a ring of division n."""
+        return 1 if n == 1 else self.marks(n) + (self.angle < 360.0)
+
+    def table(self, n: int) -> F64:
+        """Directions (k,2) of the vertices of a ring."""
+        if n not in self._tables:
+            if n == 1:
+                self._tables[n] = np.zeros((1, 2))
+            elif self.angle >= 360.0:
+                self._tables[n] = circle_table(n)
+            else:
+                last = (cos_deg(self.angle), sin_deg(self.angle))
+                self._tables[n] = np.concatenate((circle_points(n, np.arange(self.marks(n))), [last]))
+        return self._tables[n]
+
+    def between(self, n: int, m: int, flat: bool) -> I64:
+        """Triangles between the ring of division n, its vertices from 0, and that of m, which follows in profile and
+        in number.
+        """
+        key = (n, m, flat and 1 in (n, m))
+        if key not in self._bands:
+            if self.angle < 360.0:
+                self._bands[key] = strip(self._shares(n), self._shares(m))
+            elif flat and m == 1:
+                self._bands[key] = disc(n)[:, ::-1]
+            elif flat and n == 1:
+                self._bands[key] = disc(m) + 1
+            else:
+                self._bands[key] = _band(n, m)
+        return self._bands[key]
+
+    def normals(self, n: int, m: int, tangents: F64, faces: I64) -> F64:
+        """Outward normals (k,3,3) at the corners of a band, whose profile has the tangents (2,2) at its two rings."""
+        rings = []
+        for division, (across, up) in zip((n, m), tangents.tolist(), strict=True):
+            table = self.table(division)
+            rings.append(np.column_stack((up * table, np.full(len(table), -across))))
+        found: F64 = np.concatenate(rings)[faces]
+        # On the axis only the height of a normal is known, and of it the sign; the triangle's other corners say more.
+        length = np.sqrt((found**2).sum(axis=2, keepdims=True))
+        return np.where(length > 0.5, found / np.where(length > 0.0, length, 1.0), found)
+
+    def _shares(self, n: int) -> F64:
+        if n == 1:
+            return np.zeros(1)
+        return np.append(np.arange(self.marks(n)) * 360.0 / n, self.angle)
 
 
 def ring_divisions(loops: list[Polyline], rung: float) -> list[NDArray[np.int64]]:
@@ -97,18 +180,6 @@ def _radii(loop: Polyline) -> F64:
     return np.where(np.abs(rho) <= 1e-9 * max(1e-12, float(np.abs(loop.points).max())), 0.0, rho)
 
 
-def _between(n: int, m: int, flat: bool, bands: dict[tuple[int, int], I64], a: int, b: int) -> I64:
-    """Triangles between the ring of n vertices from row a and that of m from row b, which follows it in the profile."""
-    if flat and m == 1:
-        return disc(n)[:, ::-1] + a if n > 1 else disc(n)
-    if flat and n == 1:
-        return disc(m) + b
-    if (n, m) not in bands:
-        bands[n, m] = _band(n, m)
-    band = bands[n, m]
-    return np.where(band < n, band + a, band - n + b)
-
-
 def disc(n: int) -> I64:
     """A convex polygon of n vertices as a strip from side to side, (n-2,3), seen counter-clockwise from below."""
     k = np.arange(n)
@@ -135,7 +206,25 @@ def _band(n: int, m: int) -> I64:
     return np.concatenate((lower, upper))
 
 
+def strip(first: F64, second: F64) -> I64:
+    """Triangles between two open rows of vertices at rising places (n,) and (m,), rows numbered 0 .. n-1 and n .. n+m-1,
+    joined in the order of the middles of their chords; counter-clockwise if the first runs along +x below the second.
+    """
+    n, m = len(first), len(second)
+    below, above = (first[1:] + first[:-1]) / 2.0, (second[1:] + second[:-1]) / 2.0
+    # Where middles are equal the first row goes first; a margin keeps rounding from deciding.
+    margin = 1e-9 * max(float(first[-1] - first[0]), float(second[-1] - second[0]), 1e-300)
+    i, j = np.arange(n - 1), np.arange(m - 1)
+    passed_m = np.searchsorted(above, below - margin)
+    passed_n = np.searchsorted(below, above + margin)
+    lower = np.stack((i, i + 1, n + passed_m), axis=1)
+    upper = np.stack((passed_n, n + j + 1, n + j), axis=1)
+    return np.concatenate((lower, upper)).astype(np.int64)
+
+
 def _surface(curve: Curve) -> tuple[PatchKind, F64, float, bool]:
+    if curve.is_free:
+        return free()
     if curve.radius:
         r, (across, height) = curve.radius, curve.centre
         if abs(across) <= 1e-9 * r:
