@@ -8,7 +8,7 @@ from typing import Literal
 import numpy as np
 
 from .graph import Solid, Thing
-from .solids.recipe import Affine, Cone, Cylinder, Primitive, Recipe, Revolve, Sphere, Torus
+from .solids.recipe import Affine, Cone, Cylinder, Primitive, Recipe, Revolve, Sphere, Thread, Torus
 
 Symmetry = Literal["ball", "round", "none"]
 """What leaves a shape as it is: any turn about its origin, turns about its z axis, nothing."""
@@ -20,6 +20,8 @@ def symmetry(shape: Primitive | Recipe) -> Symmetry:
         case Sphere():
             return "ball"
         case Cylinder() | Cone() | Torus() | Revolve():
+            return "round"
+        case Thread(real=False):
             return "round"
         case Recipe():
             placed = [each for step in shape.steps for each in step.placed]

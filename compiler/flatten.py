@@ -22,7 +22,7 @@ from .solids.bounds import bounds, facts_rung
 from .solids.flaw import Flaw
 from .solids.ladder import COARSEST, first_at_most
 from .solids.recipe import Affine, Recipe
-from .solids.transform import largest_scale, matrix
+from .solids.transform import determinant, largest_scale, matrix
 
 _T = TypeVar("_T", bound=np.generic)
 
@@ -196,6 +196,7 @@ def _nodes(
                 closed,
                 source_span(entry.span),
                 _marks(entry),
+                _threads(entry),
             )
         )
     return tuple(nodes)
@@ -216,6 +217,30 @@ def _marks(entry: Entry) -> tuple[contract.Mark, ...]:
                 found.append(
                     contract.Mark(bracketed(feature.name, label), moved(entry.placement, copy.centre), axis, across)
                 )
+    return tuple(found)
+
+
+def _threads(entry: Entry) -> tuple[contract.Thread, ...]:
+    if not isinstance(entry.thing, Solid) or not entry.thing.threads:
+        return ()
+    place, scale = entry.placement, largest_scale(entry.placement)
+    is_mirrored = determinant(place) < 0.0
+    found = []
+    for thread in entry.thing.threads:
+        axis = _turned(place, thread.axis)
+        assert axis is not None
+        found.append(
+            contract.Thread(
+                moved(place, thread.start),
+                axis,
+                thread.length * scale,
+                thread.major * scale,
+                thread.minor * scale,
+                thread.pitch * scale,
+                thread.internal,
+                thread.left != is_mirrored,
+            )
+        )
     return tuple(found)
 
 

@@ -51,6 +51,20 @@ class Feature:
     span: Span
 
 
+@dataclass(frozen=True, slots=True)
+class Thread:
+    """A thread that is drawn by convention, in the part's frame: the middle of one end, the unit axis, sizes in mm."""
+
+    start: Point
+    axis: Point
+    length: float
+    major: float
+    minor: float
+    pitch: float
+    internal: bool
+    left: bool
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Solid:
     """A part with its parameters fixed.
@@ -66,6 +80,7 @@ class Solid:
     span: Span
     n_shapes: int = field(default=1)
     n_levels: int = field(default=1)
+    threads: tuple[Thread, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

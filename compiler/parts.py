@@ -21,6 +21,7 @@ from .scope import Scope
 from .shapes import OUTLINED, diameter, height, read_shape
 from .solids.recipe import Affine, Placed, Primitive, Recipe, Step
 from .solids.transform import IDENTITY, compose, determinant
+from .threads import threads_of
 from .turns import labels, placements, turns
 
 if TYPE_CHECKING:
@@ -73,7 +74,8 @@ class _Part:
                     surface = self.things.surface(*material)
         recipe, span = Recipe(tuple(self.steps)), self.declaration.span
         features = tuple(self.features)
-        return Solid(self.declaration.name, recipe, surface, marks, features, span, self.n_shapes, self.n_levels)
+        size = (self.n_shapes, self.n_levels)
+        return Solid(self.declaration.name, recipe, surface, marks, features, span, *size, threads_of(recipe))
 
     def _begins_with_add(self) -> None:
         declaration, problems = self.declaration, self.things.problems
@@ -109,7 +111,7 @@ class _Part:
         """The shapes of one line, or of the lines indented under it, placed and repeated."""
         reading = line.head.get("shape")
         if isinstance(reading, tree.Reading):
-            yield self._shape(line, reading, scope, (IDENTITY,))
+            yield self._shape(line, reading, scope, (IDENTITY,), line.word == "cut")
             return
         outer = placements(line, scope, self.axes, {})
         for below in line.lines:
@@ -117,12 +119,14 @@ class _Part:
                 for turn in turns(below, scope, self.things.tables, self.module.file):
                     inner = below.head.get("shape")
                     assert isinstance(inner, tree.Reading)
-                    yield self._shape(below, inner, turn.scope, outer)
+                    yield self._shape(below, inner, turn.scope, outer, line.word == "cut")
 
-    def _shape(self, line: tree.Line, reading: tree.Reading, scope: Scope, outer: tuple[Affine, ...]) -> Placed:
+    def _shape(
+        self, line: tree.Line, reading: tree.Reading, scope: Scope, outer: tuple[Affine, ...], is_cut: bool
+    ) -> Placed:
         if reading.row in LATER:
             raise Mistake(None)
-        shape, own, n_shapes, n_levels = self._made(reading, scope)
+        shape, own, n_shapes, n_levels = self._made(reading, scope, is_cut)
         places = placements(line, scope, self.axes, own)
         self._count(len(outer) * len(places) * n_shapes, n_levels, line)
         if outer != (IDENTITY,):
@@ -145,7 +149,7 @@ class _Part:
             sentence = f"parts hold each other more than {limits.NESTING} deep, the limit"
             raise mistake("too-deep", line.span, sentence)
 
-    def _made(self, reading: tree.Reading, scope: Scope) -> tuple[Primitive | Recipe, Marks, int, int]:
+    def _made(self, reading: tree.Reading, scope: Scope, is_cut: bool) -> tuple[Primitive | Recipe, Marks, int, int]:
         """The primitive or part that a shape's words name, the axes of its marks, how many shapes and levels it is."""
         if reading.row == "solid":
             written = expression(reading, "part")
@@ -161,7 +165,7 @@ class _Part:
             written = expression(reading, "outline")
             assert isinstance(written, (tree.Path, tree.Call))
             outline = self.things.outline(self.module, written, scope)
-        return read_shape(reading, scope, outline), {}, 1, 0
+        return read_shape(reading, scope, outline, is_cut), {}, 1, 0
 
 
 def _feature_copies(placed: Placed, named: list[str]) -> Iterator[FeatureCopy]:

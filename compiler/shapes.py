@@ -22,16 +22,21 @@ from .solids.recipe import (
     Pyramid,
     Revolve,
     Sphere,
+    Thread,
     Torus,
     Wedge,
 )
+from .threads import read_thread
 
 OUTLINED = ("extrude", "revolve")
 """Shapes made from an outline, which the caller resolves."""
 
 
-def read_shape(reading: tree.Reading, scope: Scope, outline: Outline | None) -> Primitive:
-    """The primitive that a shape's words describe; `outline` is that of `extrude` and `revolve`. Raises Mistake."""
+def read_shape(reading: tree.Reading, scope: Scope, outline: Outline | None, is_cut: bool = False) -> Primitive:
+    """The primitive that a shape's words describe; `outline` is that of `extrude` and `revolve`.
+
+    A thread that is cut is internal. Raises Mistake.
+    """
 
     def size(slot: str, zero: bool = False) -> float:
         return positive_length(expression(reading, slot), scope, slot, zero)
@@ -61,6 +66,8 @@ def read_shape(reading: tree.Reading, scope: Scope, outline: Outline | None) -> 
         case "revolve":
             assert outline is not None
             return Revolve(outline)
+        case "thread":
+            return read_thread(reading, scope, size("length"), is_cut)
     raise AssertionError(f"no shape {reading.word}")
 
 
@@ -69,7 +76,7 @@ def height(shape: Primitive) -> float:
     match shape:
         case Block() | Wedge():
             return shape.size[2]
-        case Cylinder() | Cone() | Prism() | Pyramid() | Extrude():
+        case Cylinder() | Cone() | Prism() | Pyramid() | Extrude() | Thread():
             return shape.length
         case Revolve():
             return max(point[1] for point in _corners(shape.outline))
@@ -79,6 +86,8 @@ def height(shape: Primitive) -> float:
 
 def diameter(shape: Primitive) -> float | None:
     """The diameter of a round shape at its base, None for others."""
+    if isinstance(shape, Thread):
+        return shape.major
     return shape.diameter if isinstance(shape, (Cylinder, Cone, Sphere, Torus)) else None
 
 

@@ -16,6 +16,7 @@ from .placement import AXES
 from .readings import LATER, parameters
 from .readings import name as declared_name
 from .scope import did_you_mean
+from .threads import is_designation
 
 Users: TypeAlias = Mapping[str, Mapping[str, None]]
 
@@ -99,9 +100,10 @@ def _report_unknown(reading: tree.Reading, known: set[str], problems: Problems) 
         return
     # A thing is turned about an axis of its own, whose name its own lines declare.
     values = tuple(value for slot, value in reading.values if (reading.row, slot) != ("turn", "axis"))
+    is_thread = isinstance(shape, tree.Reading) and shape.row == "thread"
     for path in names_in(values, into_brackets=False):
         first = path.steps[0]
-        if first.name not in known:
+        if first.name not in known and not (is_thread and is_designation(path)):
             sentence = f"nothing here is called `{first.name}`"
             problems.error("unknown-name", first.span, sentence, did_you_mean(nearest(first.name, known)))
 

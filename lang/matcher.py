@@ -141,6 +141,8 @@ class Matcher:
         """Whether what may be left out starts at an item: by its word, or by a value that starts no clause."""
         if isinstance(element, Literal):
             return item.word == element.text
+        if isinstance(element, Slot) and element.options and item.node is None:
+            return any(option[0] == item.word for option in element.options)
         if item.node is not None or self.pattern is None or not self.pattern.row.clauses:
             return True
         return item.word not in self.words.clauses[self.pattern.row.clauses].by_word

@@ -460,12 +460,10 @@ SHAPE_ROWS: tuple[Row, ...] = (
     ),
     Row(
         "thread",
-        "thread diameter <diameter:length> pitch <pitch:length> length <length:length> [<hand:left|right>] "
-        "[drawn <drawn:real|by convention>]",
+        "thread <designation:any> length <length:length> [<form:real|by convention>] [<hand:left|right>]",
         ("shape",),
-        "a screw thread, drawn by convention unless asked for real",
-        "thread diameter 6 mm pitch 1 mm length 12 mm",
-        later=True,
+        "a metric screw thread, drawn by convention unless asked for real",
+        "thread M20 length 40 mm",
     ),
     Row(
         "lettering",

@@ -22,10 +22,12 @@ from .recipe import (
     Recipe,
     Revolve,
     Sphere,
+    Thread,
     Torus,
     Wedge,
 )
 from .tessellate import rise
+from .thread import plain
 
 F64 = NDArray[np.float64]
 _Box = tuple[F64, F64]
@@ -94,6 +96,9 @@ def _of_placed(
 def _hull(shape: Primitive) -> tuple[list[tuple[F64, F64]], F64]:
     """Sums of ellipsoids (centre, half axes (k,3)) and points whose hull has the shape's box under affine maps."""
     none = np.zeros((0, 3))
+    if isinstance(shape, Thread):
+        # A real one reaches over its major diameter, whether or not it is internal.
+        shape = Cylinder(shape.major, shape.length) if shape.real else plain(shape)
     if isinstance(shape, Sphere):
         return [(np.zeros(3), np.full((1, 3), shape.diameter / 2))], none
     if isinstance(shape, Ellipsoid):

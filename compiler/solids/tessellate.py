@@ -28,12 +28,15 @@ from .recipe import (
     Revolve,
     Sphere,
     Torus,
+    Thread,
     Wedge,
 )
 from .revolve import revolve
 from .shell import Shell
 from .surfaces import place
 
+from .thread import count_triangles as count_thread
+from .thread import plain, thread
 F64 = NDArray[np.float64]
 
 
@@ -54,6 +57,8 @@ def tessellate(shape: Primitive, rung: float) -> Shell:
     if isinstance(shape, Extrude):
         return extrude(flatten(shape.outline, rung), shape.length)
     if isinstance(shape, Ellipsoid):
+    if isinstance(shape, Thread):
+        return thread(shape, rung) if shape.real else tessellate(plain(shape), rung)
         return _ellipsoid(shape, rung)
     return revolve(_profile(shape, rung), rung)
 
@@ -84,6 +89,8 @@ def count_triangles(shape: Primitive, rung: float) -> int:
     if isinstance(shape, Torus):
         return 2 * divisions((shape.diameter + shape.tube) / 2, rung) * divisions(shape.tube / 2, rung)
     loops = [oriented(loop, k == 0) for k, loop in enumerate((shape.outline.outer, *shape.outline.holes))]
+    if isinstance(shape, Thread):
+        return count_thread(shape, rung) if shape.real else count_triangles(plain(shape), rung)
     chords = sum(count_chords(curves, rung) for curves in loops)
     if isinstance(shape, Extrude):
         return 4 * chords
@@ -94,7 +101,7 @@ def rise(shape: Primitive) -> float:
     """The length of a shape that stands on z = 0; 0 for those that are centred or revolved."""
     if isinstance(shape, Block | Wedge):
         return shape.size[2]
-    if isinstance(shape, Cylinder | Cone | Prism | Pyramid | Extrude):
+    if isinstance(shape, Cylinder | Cone | Prism | Pyramid | Extrude | Thread):
         return shape.length
     return 0.0
 
@@ -105,8 +112,8 @@ def require_positive(shape: Primitive) -> None:
     for name in type(shape).__dataclass_fields__:
         value = getattr(shape, name)
         for each in value if isinstance(value, tuple) else (value,):
-            if isinstance(each, int | float) and not (
-                math.isfinite(each) and (each > 0.0 or (each == 0.0 and name in may_be_zero))
+            if isinstance(each, int | float) and not isinstance(each, bool) and not (
+                math.isfinite(each) and (each > 0.0 or (each == 0.0 and name in may_be_zero) or name in any_sign)
             ):
                 raise SolidError(f"{type(shape).__name__}: {name} is {each}")
 
