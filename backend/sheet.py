@@ -56,7 +56,8 @@ def encode(drawing: Drawing, job: Job, kind: str) -> bytes:
     sheet = job.sheet
     if kind == "tiff":
         return tiff.tiff_bytes(drawing.image, sheet.page.resolution)
-    words = (("Title", sheet.title), ("Description", sheet.description or sheet.alt))
+    # Keywords of the PNG standard: the short alternative is the description, the long one the comment.
+    words = (("Title", sheet.title), ("Description", sheet.alt), ("Comment", sheet.description))
     text = tuple((key, value) for key, value in words if value)
     return png.png_bytes(drawing.image, sheet.page.resolution, text)
 

@@ -6,7 +6,7 @@ import math
 from collections.abc import Sequence
 
 import numpy as np
-from platewright.backend.contract import F64, I32, Geometry
+from platewright.backend.contract import F64, I32
 from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Problem
@@ -15,14 +15,16 @@ from platewright.lang.units import AREA, LENGTH, MASS, NUMBER, VOLUME, Dimension
 
 from .arithmetic import COMPARISONS, compare, matched, same
 from .build import Model
-from .expressions import evaluate
+from .expressions import evaluate, truth
 from .flatten import Flattened, Mesher, flatten
 from .graph import Solid
-from .measure import area, clearance, volume
+from .measure import area, least_clearance, volume
 from .mistakes import Mistake, Problems, mistake
 from .paths import Placed, follow
 from .readings import expression, optional
 from .scope import Scope, did_you_mean
+from .solids.recipe import Affine
+from .solids.transform import apply, determinant
 from .subjects import Subject, find_subject
 from .values import Quantity, Value, Vector, kind_of, shown, spell
 
@@ -57,7 +59,7 @@ class _Measures:
     def __init__(self, subject: Subject, model: Model, mesher: Mesher, problems: Problems) -> None:
         self.name, self.thing = subject.name, subject.thing
         self.model, self.mesher, self.problems = model, mesher, problems
-        self.flattened: Flattened | None = None
+        self.flattened: dict[int, Flattened] = {}
 
     def value(self, path: tree.Path) -> Value | None:
         steps = self._steps(path)
@@ -85,8 +87,9 @@ class _Measures:
             return self._distance(call)
         if name == "clearance":
             return self._clearance(call)
-        rows = self._rows(self._placed(name, call.positional[0]), call.positional[0])
-        return self._size(name, rows) if name in SIZES else self._sum(name, rows, call.span)
+        written = call.positional[0]
+        placed = self._placed(name, written)
+        return self._size(name, placed, written) if name in SIZES else self._sum(name, placed, written, call.span)
 
     def names(self) -> tuple[str, ...]:
         return (*self._inside(), self.name, *MEASURES)
@@ -126,27 +129,19 @@ class _Measures:
             raise mistake("wrong-kind", written.span, f"`{name}` takes a part or assembly, found {kind_of(placed)}")
         return placed
 
-    def _rows(self, placed: Placed, written: tree.Expression) -> list[int]:
-        """Rows of the solids at a path and below it. Raises Mistake if there are none."""
-        path = f"{self.name}.{placed.path}" if placed.path else self.name
-        nodes = self._geometry().geometry.nodes
-        rows = [k for k, node in enumerate(nodes) if node.mesh >= 0 and f"{node.path}.".startswith(f"{path}.")]
-        if not rows:
-            raise mistake("nothing-to-measure", written.span, f"`{path}` holds no parts to measure")
-        return rows
+    def _size(self, name: str, placed: Placed, written: tree.Expression) -> Quantity:
+        axis = SIZES[name]
+        row = placed.placement[axis]
+        vertices = self._geometry(placed, written).geometry.vertices
+        along = vertices[:, 0] * row[0] + vertices[:, 1] * row[1] + vertices[:, 2] * row[2]
+        return Quantity(float(along.max() - along.min()), LENGTH)
 
-    def _size(self, name: str, rows: list[int]) -> Quantity:
-        geometry, axis = self._geometry().geometry, SIZES[name]
-        ranges = [geometry.nodes[row].vertex_range for row in rows]
-        low = min(float(geometry.vertices[a:b, axis].min()) for a, b in ranges)
-        high = max(float(geometry.vertices[a:b, axis].max()) for a, b in ranges)
-        return Quantity(high - low, LENGTH)
-
-    def _sum(self, name: str, rows: list[int], span: Span) -> Quantity:
-        flattened = self._geometry()
+    def _sum(self, name: str, placed: Placed, written: tree.Expression, span: Span) -> Quantity:
+        flattened = self._geometry(placed, written)
         total = 0.0
-        for row in rows:
-            node = flattened.geometry.nodes[row]
+        for node in flattened.geometry.nodes:
+            if node.mesh < 0:
+                continue
             faces = flattened.geometry.faces[slice(*node.face_range)]
             each = (area if name == "area" else volume)(flattened.geometry.vertices, faces)
             if name == "mass":
@@ -156,41 +151,56 @@ class _Measures:
                     raise mistake("no-density", span, f"`{node.path}` has no density, so no mass", hint)
                 each *= material.density / 1000.0  # g/cm3 to g/mm3
             total += each
-        return Quantity(total, _DIMENSIONS[name])
+        enlarged = abs(determinant(placed.placement)) ** (2 / 3 if name == "area" else 1)
+        return Quantity(total * enlarged, _DIMENSIONS[name])
 
     def _clearance(self, call: tree.Call) -> Quantity:
-        one, other = (self._rows(self._placed("clearance", each), each) for each in call.positional)
-        if set(one) & set(other):
+        one, other = (self._placed("clearance", each) for each in call.positional)
+        if any(f"{a.path}.".startswith(f"{b.path}.") or not b.path for a, b in ((one, other), (other, one))):
             raise mistake("wrong-parameters", call.span, "one of these is part of the other, so there is no gap")
-        if len(one) * len(other) > MAX_PAIRS:
-            raise mistake("too-much", call.span, f"more than {MAX_PAIRS} pairs of parts lie between these, the limit")
-        geometry = self._geometry().geometry
-        gaps = [clearance(*_solid_of(geometry, a), *_solid_of(geometry, b)) for a in one for b in other]
-        return Quantity(min(gaps), LENGTH)
+        sides = [
+            _solids(self._geometry(placed, written), placed.placement)
+            for placed, written in zip((one, other), call.positional, strict=True)
+        ]
+        if len(sides[0]) * len(sides[1]) > MAX_PAIRS:
+            raise mistake("too-much", call.span, f"more than {MAX_PAIRS:,} pairs of parts lie between these, the limit")
+        return Quantity(least_clearance(sides[0], sides[1]), LENGTH)
 
-    def _geometry(self) -> Flattened:
-        if self.flattened is None:
-            found, problems = flatten(self.thing, self.name, None, self.model.sources, self.mesher)
+    def _geometry(self, placed: Placed, written: tree.Expression) -> Flattened:
+        """One thing flattened in its own frame, once. Raises Mistake if it holds no parts."""
+        if id(placed.thing) not in self.flattened:
+            path = f"{self.name}.{placed.path}" if placed.path else self.name
+            found, problems = flatten(placed.thing, path, None, self.model.sources, self.mesher)
             self.problems.extend(problems)
             if found is None:
                 raise Mistake(None)
-            self.flattened = found
-        return self.flattened
+            if not len(found.geometry.faces):
+                raise mistake("nothing-to-measure", written.span, f"`{path}` holds no parts to measure")
+            self.flattened[id(placed.thing)] = found
+        return self.flattened[id(placed.thing)]
 
 
 _DIMENSIONS: dict[str, Dimension] = {"volume": VOLUME, "area": AREA, "mass": MASS}
 
 
-def _solid_of(geometry: Geometry, row: int) -> tuple[F64, I32]:
-    """Vertices and faces of one node, by themselves."""
-    node = geometry.nodes[row]
-    start, stop = node.vertex_range
-    return geometry.vertices[start:stop], geometry.faces[slice(*node.face_range)] - np.int32(start)
+def _solids(flattened: Flattened, placement: Affine) -> list[tuple[F64, I32]]:
+    """Vertices, placed, and faces of every solid."""
+    geometry, found = flattened.geometry, []
+    for node in geometry.nodes:
+        if node.mesh >= 0:
+            start, stop = node.vertex_range
+            faces = geometry.faces[slice(*node.face_range)] - np.int32(start)
+            turned_over = determinant(placement) < 0
+            vertices = apply(placement, geometry.vertices[start:stop])
+            found.append((vertices, faces[:, ::-1] if turned_over else faces))
+    return found
 
 
 def _judge(fact: tree.Line, scope: Scope, model: Model) -> None:
-    """Raise the mistake that the fact does not hold, with what was measured."""
-    written = expression(fact.head, "measure")
+    """Raise the mistake that the fact does not hold, with what was measured; one whose `when` fails is not judged."""
+    written, when = expression(fact.head, "measure"), optional(fact.head, "condition")
+    if when is not None and not truth(when, scope):
+        return
     wanted, within = optional(fact.head, "value"), optional(fact.head, "tolerance")
     if wanted is not None:
         _judge_equal(fact, written, wanted, scope, model)

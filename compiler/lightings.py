@@ -19,13 +19,13 @@ from .trigonometry import cos_deg, sin_deg
 
 Point = tuple[float, float, float]
 
-KEY_LUX, SUN_LUX, AMBIENT_LUX = 1000.0, 100_000.0, 400.0
+KEY_LUX, SUN_LUX, AMBIENT_LUX = 1000.0, 100_000.0, 600.0
 """Illuminance where none is stated.
 
 Full daylight of about 100 klx is common practice; the others are our own choice.
 """
 
-WHITE = 0.85
+WHITE = 0.82
 """Linear value that the automatic exposure gives a white matt surface that faces the light: short of paper white."""
 
 

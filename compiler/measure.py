@@ -8,6 +8,7 @@ the middle of the box (divergence theorem), which keeps them accurate far from t
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 
 import manifold3d
 import numpy as np
@@ -88,10 +89,34 @@ def clearance(vertices: F64, faces: Faces, other_vertices: F64, other_faces: Fac
     ValueError if either is not closed. Cost grows with the triangles that lie nearer to the other solid than the
     first few vertices do.
     """
-    solids = [_solid(vertices, faces), _solid(other_vertices, other_faces)]
-    some, others = (v[:: max(1, len(v) // _SAMPLE)] for v in (vertices, other_vertices))
-    reach = float(np.sqrt(((some[:, None] - others[None]) ** 2).sum(axis=2).min()))
-    return float(solids[0].min_gap(solids[1], reach * (1.0 + 1e-9) + 1e-9))
+    return least_clearance([(vertices, faces)], [(other_vertices, other_faces)])
+
+
+def least_clearance(ones: Sequence[tuple[F64, Faces]], others: Sequence[tuple[F64, Faces]]) -> float:
+    """Least distance in mm between any of some closed solids and any of others, as `clearance`.
+
+    Pairs are taken by the distance of their boxes, nearest first, and only while that is less than the least found.
+    """
+    boxes, other_boxes = (np.array([(v.min(axis=0), v.max(axis=0)) for v, _ in each]) for each in (ones, others))
+    apart = np.maximum(boxes[:, None, 0] - other_boxes[None, :, 1], other_boxes[None, :, 0] - boxes[:, None, 1])
+    gaps = np.sqrt((np.maximum(apart, 0.0) ** 2).sum(axis=2))
+    solids: dict[tuple[int, int], manifold3d.Manifold] = {}
+
+    def solid(side: int, row: int) -> manifold3d.Manifold:
+        if (side, row) not in solids:
+            solids[side, row] = _solid(*(ones, others)[side][row])
+        return solids[side, row]
+
+    least = math.inf
+    for pair in np.argsort(gaps, axis=None, kind="stable"):
+        one, other = (int(each) for each in np.unravel_index(pair, gaps.shape))
+        if gaps[one, other] >= least or least == 0.0:
+            break
+        some, far = (v[:: max(1, len(v) // _SAMPLE)] for v in (ones[one][0], others[other][0]))
+        reach = float(np.sqrt(((some[:, None] - far[None]) ** 2).sum(axis=2).min()))
+        reach = min(reach, least) * (1.0 + 1e-9) + 1e-9
+        least = min(least, float(solid(0, one).min_gap(solid(1, other), reach)))
+    return least
 
 
 def _solid(vertices: F64, faces: Faces) -> manifold3d.Manifold:

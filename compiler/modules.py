@@ -15,6 +15,7 @@ from .functions import CONSTANTS, FUNCTIONS
 from .mistakes import Mistake, Problems, mistake
 from .project import Files
 from .readings import name as declared_name
+from .readings import parameters
 from .scope import did_you_mean
 
 DECLARED = (
@@ -170,8 +171,10 @@ def declare(declaration: Declaration, space: dict[str, Declaration], problems: P
             "duplicate-name", declaration.span, f"`{declaration.name}` is declared twice", "rename one", related
         )
         return
-    if declaration.name in FUNCTIONS or declaration.name in CONSTANTS:
-        what = "a function" if declaration.name in FUNCTIONS else "a constant"
+    # A call's parenthesis touches its name, so a value may be called `length`; a second function may not.
+    hides_function = declaration.name in FUNCTIONS and declaration.kind == "derived" and parameters(declaration.line)
+    if hides_function or declaration.name in CONSTANTS:
+        what = "a function" if hides_function else "a constant"
         problems.error(
             "duplicate-name", declaration.span, f"`{declaration.name}` is {what} of the language", "rename it"
         )

@@ -155,7 +155,9 @@ def _ring(clause: tree.Reading, number: int, scope: Scope, marks: Marks) -> tupl
             hint = "leave `over` out for a full ring"
             sentence = f"expected an angle between 0 and 360 deg, found {whole:g} deg"
             raise mistake("out-of-range", over.span, sentence, hint)
-    return tuple(turn(whole * k / steps, axis.along, axis.through) for k in range(number))
+    written = optional(clause, "start")
+    start = quantity(written, scope, ANGLE) if written is not None else 0.0
+    return tuple(turn(start + whole * k / steps, axis.along, axis.through) for k in range(number))
 
 
 def _row(clause: tree.Reading, number: int, scope: Scope) -> tuple[Affine, ...]:

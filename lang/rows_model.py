@@ -136,7 +136,7 @@ DECLARATION_ROWS: tuple[Row, ...] = (
     Row("expect", "expect <subject:path>", ("scene",), "states facts that must hold", "expect gauge", lines="expect"),
     Row(
         "fact",
-        "<measure:any> [= <value:any>] [within <tolerance:any>]",
+        "<measure:any> [= <value:any>] [within <tolerance:any>] [when <condition:truth>]",
         ("expect",),
         "one measure compared",
         "distance(funnel.rim_left, funnel.rim_right) = rim within 0.1 mm",
@@ -521,7 +521,7 @@ PLACING_ROWS: tuple[Row, ...] = (
         "facing",
         "facing <direction:direction>",
         ("placing",),
-        "tips the thing's z axis toward a direction",
+        "tips the thing's z axis toward a direction; its y axis stays level",
         "facing (1, 0, 1)",
         is_once=True,
     ),
@@ -543,7 +543,7 @@ PLACING_ROWS: tuple[Row, ...] = (
     ),
     Row(
         "ring",
-        "ring <count:count> [about <axis:axis>] [over <over:angle>]",
+        "ring <count:count> [about <axis:axis>] [over <over:angle>] [from <start:angle>]",
         ("repeating",),
         "copies around an axis of what encloses the thing, z if none is named",
         "ring 4 about z over 180 deg",

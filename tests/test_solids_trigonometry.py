@@ -102,6 +102,7 @@ def test_facing_takes_z_to_the_direction(direction: transform.Point3) -> None:
     assert np.abs(linear @ linear.T - np.eye(3)).max() < 1e-13
     assert np.abs(linear[:, 2] - np.array(direction) / math.hypot(*direction)).max() < 1e-15
     assert transform.determinant(turned) > 0.0
+    assert linear[2, 1] == 0.0, "y stays level"
 
 
 @given(directions, directions)

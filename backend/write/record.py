@@ -23,6 +23,9 @@ def record_bytes(job: Job, measures: tuple[Measure, ...], schema: int = SCHEMA) 
     record: dict[str, JsonValue] = {
         "schema": SCHEMA,
         "figure": sheet.name,
+        "title": sheet.title,
+        "alt": sheet.alt,
+        "description": sheet.description,
         "page": {
             "width_mm": page.width,
             "height_mm": page.height,

@@ -57,14 +57,17 @@ def scale(factors: float | Point3, through: Point3 = (0.0, 0.0, 0.0)) -> Affine:
 
 
 def facing(direction: Point3) -> Affine:
-    """The smallest turn that takes +z to `direction`; about x for a half turn. ValueError for a zero direction."""
+    """The turn that takes +z to `direction` and keeps y level: about y by the tilt, then about z by the bearing.
+
+    So what is ringed about z stands alike at every place. Straight down is a half turn about y. ValueError for a zero
+    direction.
+    """
     x, y, z = _unit(direction)
-    if x * x + y * y == 0.0:
-        return IDENTITY if z > 0.0 else turn(180.0, (1.0, 0.0, 0.0))
-    # Rodrigues' formula with axis (-y, x, 0)/|.| written without the angle, so nothing is lost near 0 and 180.
-    k = (1.0 - z) / (x * x + y * y) if z < 0.0 else 1.0 / (1.0 + z)
-    rows = ((1.0 - k * x * x, -k * x * y, x), (-k * x * y, 1.0 - k * y * y, y), (-x, -y, z))
-    return _about(rows, (0.0, 0.0, 0.0))
+    level = math.hypot(x, y)
+    if level == 0.0:
+        return IDENTITY if z > 0.0 else turn(180.0, (0.0, 1.0, 0.0))
+    c, s = x / level, y / level
+    return _about(((c * z, -s, x), (s * z, c, y), (-level, 0.0, z)), (0.0, 0.0, 0.0))
 
 
 def compose(*affines: Affine) -> Affine:
