@@ -5,11 +5,13 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from .along import ALONG, box_points
 from .ladder import COARSEST, FACTS_SHARE, first_at_most
 from .outline import extent, oriented
 from .polyhedra import regular_polygon
 from .recipe import (
     Affine,
+    Bellows,
     Block,
     Cone,
     Cylinder,
@@ -22,6 +24,7 @@ from .recipe import (
     Recipe,
     Revolve,
     Sphere,
+    Spring,
     Thread,
     Torus,
     Wedge,
@@ -112,6 +115,11 @@ def _hull(shape: Primitive) -> tuple[list[tuple[F64, F64]], F64]:
     if isinstance(shape, Revolve):
         low, high = extent(oriented(shape.outline.outer, True))
         return [_disc(high[0], low[1]), _disc(high[0], high[1])], none
+    if isinstance(shape, Spring | Bellows):
+        across = shape.diameter + (shape.wire if isinstance(shape, Spring) else 0.0)
+        return [_disc(across / 2, 0.0), _disc(across / 2, shape.length)], none
+    if isinstance(shape, ALONG):
+        return [], box_points(shape)
     return [], _corners(shape)
 
 

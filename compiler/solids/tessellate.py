@@ -11,11 +11,14 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
+from .along import ALONG, along_flaws, along_shell, count_along, placed_cone, shifted
+from .curve import Curve
 from .flaw import SolidError
 from .ladder import divisions
-from .outline import Curve, OutlineFlaw, Polyline, count_chords, extent, faults, flatten, oriented, polyline
+from .outline import OutlineFlaw, Polyline, count_chords, extent, faults, flatten, oriented, polyline
 from .polyhedra import block, extrude, prism, pyramid, wedge
 from .recipe import (
+    Bellows,
     Block,
     Cone,
     Cylinder,
@@ -27,16 +30,18 @@ from .recipe import (
     Pyramid,
     Revolve,
     Sphere,
-    Torus,
+    Spring,
     Thread,
+    Torus,
+    Transition,
     Wedge,
 )
 from .revolve import revolve
 from .shell import Shell
 from .surfaces import place
-
 from .thread import count_triangles as count_thread
 from .thread import plain, thread
+
 F64 = NDArray[np.float64]
 
 
@@ -56,17 +61,22 @@ def tessellate(shape: Primitive, rung: float) -> Shell:
         return pyramid(shape)
     if isinstance(shape, Extrude):
         return extrude(flatten(shape.outline, rung), shape.length)
-    if isinstance(shape, Ellipsoid):
     if isinstance(shape, Thread):
         return thread(shape, rung) if shape.real else tessellate(plain(shape), rung)
+    if isinstance(shape, Ellipsoid):
         return _ellipsoid(shape, rung)
-    return revolve(_profile(shape, rung), rung)
+    if isinstance(shape, ALONG):
+        round_one = placed_cone(shape) if isinstance(shape, Transition) else None
+        return along_shell(shape, rung) if round_one is None else shifted(tessellate(round_one[0], rung), round_one[1])
+    return revolve(_profile(shape, rung), rung, shape.angle if isinstance(shape, Revolve) else 360.0)
 
 
 def problems_of(shape: Primitive) -> tuple[OutlineFlaw, ...]:
     """Mistakes an author can make in one shape, whatever the rung."""
     if isinstance(shape, Extrude | Revolve):
         return faults(shape.outline, isinstance(shape, Revolve))
+    if isinstance(shape, ALONG):
+        return along_flaws(shape)
     if isinstance(shape, Torus) and shape.tube >= shape.diameter:
         sentence = (
             f"the tube of the torus, {shape.tube:.6g} mm, must be thinner than its diameter, {shape.diameter:.6g} mm"
@@ -88,9 +98,11 @@ def count_triangles(shape: Primitive, rung: float) -> int:
         return n * (n - 2)
     if isinstance(shape, Torus):
         return 2 * divisions((shape.diameter + shape.tube) / 2, rung) * divisions(shape.tube / 2, rung)
-    loops = [oriented(loop, k == 0) for k, loop in enumerate((shape.outline.outer, *shape.outline.holes))]
     if isinstance(shape, Thread):
         return count_thread(shape, rung) if shape.real else count_triangles(plain(shape), rung)
+    if isinstance(shape, ALONG):
+        return count_along(shape, rung)
+    loops = [oriented(loop, k == 0) for k, loop in enumerate((shape.outline.outer, *shape.outline.holes))]
     chords = sum(count_chords(curves, rung) for curves in loops)
     if isinstance(shape, Extrude):
         return 4 * chords
@@ -101,14 +113,14 @@ def rise(shape: Primitive) -> float:
     """The length of a shape that stands on z = 0; 0 for those that are centred or revolved."""
     if isinstance(shape, Block | Wedge):
         return shape.size[2]
-    if isinstance(shape, Cylinder | Cone | Prism | Pyramid | Extrude | Thread):
+    if isinstance(shape, Cylinder | Cone | Prism | Pyramid | Extrude | Thread | Spring | Bellows | Transition):
         return shape.length
     return 0.0
 
 
 def require_positive(shape: Primitive) -> None:
     """SolidError unless every size is a positive finite number; `top` and `top_length` may be 0."""
-    may_be_zero = {"top", "top_length"}
+    may_be_zero, any_sign = {"top", "top_length", "bore"}, {"taper", "twist"}
     for name in type(shape).__dataclass_fields__:
         value = getattr(shape, name)
         for each in value if isinstance(value, tuple) else (value,):
