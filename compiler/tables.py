@@ -46,19 +46,20 @@ _NUMBER = re.compile(r"[+-]?\d{1,40}(\.\d{1,40})?([eE][+-]?\d{1,9})?")
 _UNFIT = re.compile(r'[\[\]"]')
 
 
-def read_table(file: str, text: str) -> tuple[Table | None, tuple[Problem, ...]]:
+def read_table(file: str, text: str, is_labelled: bool = True) -> tuple[Table | None, tuple[Problem, ...]]:
     """Read a CSV text (RFC 4180) whose header gives each column a name and, after a space, its unit: `length mm`.
 
-    A column without unit holds numbers throughout, or yes and no throughout, or else texts. Cost: linear in the text.
+    A column without unit holds numbers throughout, or yes and no throughout, or else texts. The first column names the
+    rows unless the table is not labelled. Cost: linear in the text.
     """
     problems = Problems()
     table: Table | None = None
     with problems.collecting():
-        table = _table(file, _read(file, text), problems)
+        table = _table(file, _read(file, text), problems, is_labelled)
     return (None if problems.has_errors else table), problems.all()
 
 
-def _table(file: str, records: tuple[_Record, ...], problems: Problems) -> Table:
+def _table(file: str, records: tuple[_Record, ...], problems: Problems, is_labelled: bool) -> Table:
     """The table of a header and rows. Raises Mistake where the header is no header."""
     header, body = records[0], records[1:]
     columns = _header(header, problems)
@@ -71,7 +72,8 @@ def _table(file: str, records: tuple[_Record, ...], problems: Problems) -> Table
         else:
             whole.append(record)
     values = [_column(name, unit, number, whole, problems) for number, (name, unit) in enumerate(columns)]
-    _label(whole, problems)
+    if is_labelled:
+        _label(whole, problems)
     names, labels = tuple(name for name, _ in columns), tuple(record.cells[0] for record in whole)
     spans = tuple(tuple(record.spans) for record in whole)
     return Table(file, names, tuple(zip(*values, strict=True)), labels, tuple(header.spans), spans)

@@ -22,7 +22,9 @@ README = (Path(__file__).parents[1] / "lang" / "README.md").read_text(encoding="
 EXAMPLES = re.findall(r"^```plate( later)?\n(.*?)^```$", README, re.MULTILINE | re.DOTALL)
 BESIDE = {
     "fasteners.plate": "platewright 1\n\npart screw(d = 5 mm)\n    add cylinder diameter d length 3 * d\n",
+    "holes.csv": "name,outside mm,bore mm\nsmall,20,5\nlarge,30,8.4\n",
     "sizes.csv": "name,rim mm,opened\nsmall,120,no\nlarge,300,yes\n",
+    "profile.csv": "x mm,y mm\n12,0\n5,10\n-9,8\n-9,-8\n5,-10\n12,0\n",
 }
 
 

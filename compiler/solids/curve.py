@@ -231,7 +231,8 @@ def _cubic_chords(control: F64, rung: float) -> NDArray[np.int64]:
     most = np.hypot(bend[..., 0], bend[..., 1]).max(axis=1)
     error = rung or CHECK_SHARE * float(np.ptp(control, axis=(0, 1)).max())
     # At least two, so that no piece is taken for straight.
-    return np.maximum(np.ceil(np.sqrt(most / (8.0 * error)) - _NEAR), 2).astype(np.int64)
+    chords: NDArray[np.int64] = np.maximum(np.ceil(np.sqrt(most / (8.0 * error)) - _NEAR), 2).astype(np.int64)
+    return chords
 
 
 def _divided_cubics(curve: Curve, rung: float) -> tuple[F64, F64]:

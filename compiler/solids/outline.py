@@ -57,6 +57,11 @@ def flatten(outline: Outline, rung: float) -> list[Polyline]:
     raise SolidError("an outline that touches itself was not refused")
 
 
+def closed(loop: Loop) -> tuple[Curve, ...]:
+    """The loop's stretches as written, closed, none of no length."""
+    return tuple(_curves(loop))
+
+
 def oriented(loop: Loop, counter_clockwise: bool) -> tuple[Curve, ...]:
     """The loop's stretches, closed, in the winding asked for; none of no length, collinear lines joined."""
     curves = _joined(_curves(loop))
@@ -243,7 +248,7 @@ def _curves(loop: Loop) -> list[Curve]:
 
 
 def _spline(start: Point2, stretch: SplineTo) -> Curve:
-    control = bezier_pieces((start, *stretch.points), stretch.tangent).tolist()
+    control = bezier_pieces((start, *stretch.points), stretch.tangent, stretch.end_tangent).tolist()
     pieces = tuple(((a[0], a[1]), (b[0], b[1]), (c[0], c[1]), (d[0], d[1])) for a, b, c, d in control)
     return Curve(start, stretch.end, pieces=pieces)
 

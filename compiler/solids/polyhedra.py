@@ -100,13 +100,14 @@ def extrude(loops: list[Polyline], length: float) -> Shell:
             a, b = here[low:high], then[low:high]
             pieces.append((np.concatenate((np.stack((a, b, b + n), 1), np.stack((a, b + n, a + n), 1))), len(rows)))
             normals.append(np.concatenate((outward[low:high][:, [0, 1, 1]], outward[low:high][:, [0, 1, 0]])))
-            rows.append(_wall(loop.curves[loop.curve[low]]))
+            rows.append(wall(loop.curves[loop.curve[low]]))
         first += k
     is_free = any(row[0] == PatchKind.FREE for row in rows)
     return shell(vertices, pieces, surfaces(rows), np.concatenate(normals) if is_free else None)
 
 
-def _wall(curve: Curve) -> tuple[PatchKind, F64, float, bool]:
+def wall(curve: Curve) -> tuple[PatchKind, F64, float, bool]:
+    """The surface over one stretch of an outline in the xy plane, the material on its left."""
     if curve.is_free:
         return free()
     if curve.radius:

@@ -34,11 +34,13 @@ class ArcTo:
 class SplineTo:
     """A C2 cubic spline from here through `points`, chord lengths its parameter (`cubic.bezier_pieces`).
 
-    It starts along `tangent`, or without bending; it ends without bending, and closes smoothly where it is a whole loop.
+    It starts along `tangent` and ends along `end_tangent`, without bending where they are None, and closes smoothly
+    where it is a whole loop.
     """
 
     points: tuple[Point2, ...]
     tangent: Point2 | None = None
+    end_tangent: Point2 | None = None
 
     @property
     def end(self) -> Point2:

@@ -17,8 +17,8 @@ from numpy.typing import NDArray
 from platewright.backend.contract import PatchKind
 
 from ..trigonometry import circle_points, circle_table, cos_deg, sin_deg
-from .ladder import divisions
 from .curve import Curve
+from .ladder import divisions
 from .outline import Polyline
 from .shell import Shell, shell
 from .surfaces import free, plane, surfaces, upright
@@ -59,16 +59,26 @@ def revolve(loops: list[Polyline], rung: float, angle: float = 360.0) -> Shell:
             curve = loop.curves[curve_row]
             if curve_row not in row_of:
                 row_of[curve_row] = len(rows)
-                rows.append(_surface(curve))
+                rows.append(profile_surface(curve))
             flat = rows[row_of[curve_row]][0] == PatchKind.PLANE
             local = turn.between(n, m, flat)
-            pieces.append((np.where(local < turn.size(n), local + first[k], local - turn.size(n) + first[following]),
-                           row_of[curve_row]))
-            normals.append(turn.normals(n, m, loop.tangents[k], local) if curve.is_free else np.zeros((*local.shape, 3)))
-        turn.starts.append(first[:-1]), turn.ends.append(first[:-1] + size - 1)
+            pieces.append(
+                (
+                    np.where(local < turn.size(n), local + first[k], local - turn.size(n) + first[following]),
+                    row_of[curve_row],
+                )
+            )
+            normals.append(
+                turn.normals(n, m, loop.tangents[k], local) if curve.is_free else np.zeros((*local.shape, 3))
+            )
+        turn.starts.append(first[:-1])
+        turn.ends.append(first[:-1] + size - 1)
     if angle < 360.0:
         cap = manifold3d.triangulate([loop.points for loop in loops]).astype(np.int64)
-        pieces += [(np.concatenate(turn.starts)[cap], len(rows)), (np.concatenate(turn.ends)[cap[:, ::-1]], len(rows) + 1)]
+        pieces += [
+            (np.concatenate(turn.starts)[cap], len(rows)),
+            (np.concatenate(turn.ends)[cap[:, ::-1]], len(rows) + 1),
+        ]
         normals.append(np.zeros((2 * len(cap), 3, 3)))
         c, s = cos_deg(angle), sin_deg(angle)
         for normal, along in (((0.0, -1.0, 0.0), (1.0, 0.0, 0.0)), ((-s, c, 0.0), (c, s, 0.0))):
@@ -207,8 +217,10 @@ def _band(n: int, m: int) -> I64:
 
 
 def strip(first: F64, second: F64) -> I64:
-    """Triangles between two open rows of vertices at rising places (n,) and (m,), rows numbered 0 .. n-1 and n .. n+m-1,
-    joined in the order of the middles of their chords; counter-clockwise if the first runs along +x below the second.
+    """Triangles between two open rows of vertices at rising places (n,) and (m,), numbered 0 .. n-1 and n .. n+m-1.
+
+    They are joined in the order of the middles of their chords, counter-clockwise if the first runs along +x below the
+    second.
     """
     n, m = len(first), len(second)
     below, above = (first[1:] + first[:-1]) / 2.0, (second[1:] + second[:-1]) / 2.0
@@ -222,7 +234,8 @@ def strip(first: F64, second: F64) -> I64:
     return np.concatenate((lower, upper)).astype(np.int64)
 
 
-def _surface(curve: Curve) -> tuple[PatchKind, F64, float, bool]:
+def profile_surface(curve: Curve) -> tuple[PatchKind, F64, float, bool]:
+    """What one stretch of a profile in (radius, height) sweeps about z, the material on its left."""
     if curve.is_free:
         return free()
     if curve.radius:
