@@ -18,6 +18,7 @@ from .modules import THINGS, Declaration, Module, Modules
 from .parameters import Setting, module_scope, outermost
 from .project import Files
 from .readings import parameters
+from .records import Tables
 from .scope import Scope
 from .viewpoints import Viewpoint, read_viewpoint
 
@@ -72,7 +73,7 @@ def build_model(files: Files, modules: Modules, settings: tuple[Setting, ...]) -
     Cost: linear in the lines and the copies they make.
     """
     problems = Problems()
-    scopes = _scopes(files.main, modules, settings, problems)
+    scopes = _scopes(files.main, modules, settings, problems, files.tables)
     instances = Instances(modules, files.tables, scopes, problems)
     things: dict[str, Thing] = {}
     viewpoints: dict[tuple[str, str], Described[Viewpoint]] = {}
@@ -126,14 +127,16 @@ def _has_defaults(declaration: Declaration) -> bool:
     return all(parameter.default is not None for parameter in parameters(declaration.line))
 
 
-def _scopes(main: str, modules: Modules, settings: tuple[Setting, ...], problems: Problems) -> dict[str, Scope]:
+def _scopes(
+    main: str, modules: Modules, settings: tuple[Setting, ...], problems: Problems, tables: Tables
+) -> dict[str, Scope]:
     """The values of every file; settings are those of the main one."""
     scopes: dict[str, Scope] = {}
     outer = outermost()
     for file in _seen_first(main, modules):
         module = modules[file]
         prefixes = {name: scopes[seen] for name, seen in module.prefixes.items() if seen in scopes}
-        scopes[file] = module_scope(module, prefixes, settings if file == main else (), problems, outer)
+        scopes[file] = module_scope(module, prefixes, settings if file == main else (), problems, outer, tables)
     return scopes
 
 

@@ -16,7 +16,7 @@ from . import limits
 from .arithmetic import arithmetic, compare, finite, matched, negative
 from .functions import FUNCTIONS, Unfit
 from .mistakes import Mistake, mistake
-from .scope import Failed, Formula, Named, Scope, did_you_mean, unknown_name
+from .scope import Failed, Formula, Named, Record, Scope, did_you_mean, unknown_name
 from .values import (
     Day,
     Interval,
@@ -150,6 +150,8 @@ def _path(path: tree.Path, scope: Scope, depth: int) -> Value:
     if seen is not None:
         return _path(tree.Path(path.steps[1:], path.span), seen, depth)
     found = _meant(first, scope)
+    if isinstance(found, Record):
+        return found.cell(path)
     if len(path.steps) > 1:
         sentence = f"`{first.name}` is a value; it has no `{path.steps[1].name}`"
         raise mistake("unknown-name", path.steps[1].span, sentence)
@@ -160,7 +162,7 @@ def _path(path: tree.Path, scope: Scope, depth: int) -> Value:
     return found
 
 
-def _meant(step: tree.Step, scope: Scope) -> Value | Formula:
+def _meant(step: tree.Step, scope: Scope) -> Value | Formula | Record:
     """What a name stands for. Raises Mistake, without a problem where its value has been reported already."""
     found = scope.find(step.name)
     if found is None:
@@ -197,7 +199,8 @@ def _call(call: tree.Call, scope: Scope, depth: int) -> Value:
     if isinstance(found, Failed):
         raise Mistake(None)
     if not isinstance(found, Formula):
-        raise mistake("wrong-kind", call.path.span, f"`{name}` is {kind_of(found)}, not a function")
+        what = "a row of a table" if isinstance(found, Record) else kind_of(found)
+        raise mistake("wrong-kind", call.path.span, f"`{name}` is {what}, not a function")
     given = _given(found, call, scope, depth)
     return evaluate(found.body, found.scope.inside(given), depth)
 

@@ -73,7 +73,7 @@ class Instances:
         def make(inner: Scope) -> Thing:
             self._under_way.append(declaration)
             try:
-                local = local_scope(declaration.line.lines, inner, self.problems)
+                local = local_scope(declaration.line.lines, inner, self.problems, self.tables, module.file, span)
                 if declaration.kind == "part":
                     return make_part(self, module, declaration, local)
                 return make_assembly(self, module, declaration, local)
@@ -95,7 +95,9 @@ class Instances:
             raise Mistake(None)
 
         def make(inner: Scope) -> Outline:
-            return read_outline(declaration.line, local_scope(declaration.line.lines, inner, self.problems))
+            lines = declaration.line.lines
+            local = local_scope(lines, inner, self.problems, self.tables, module.file, span)
+            return read_outline(declaration.line, local)
 
         return self._once(self._outlines, module, declaration, call, scope, span, make)
 

@@ -14,7 +14,7 @@ from .flatten import Flattened, Mesher, flatten
 from .measure import volume
 from .mistakes import Problems
 from .readings import optional
-from .scope import Failed, Formula
+from .scope import Failed, Formula, Record
 from .values import Value, spell
 
 
@@ -82,8 +82,8 @@ def _parameters(model: Model) -> tuple[ParameterRow, ...]:
     return tuple(rows)
 
 
-def _spelt(value: Value | Formula | Failed | None) -> str:
-    return "" if value is None or isinstance(value, (Formula, Failed)) else spell(value)
+def _spelt(value: Value | Formula | Record | Failed | None) -> str:
+    return "" if value is None or isinstance(value, (Formula, Record, Failed)) else spell(value)
 
 
 def _parts(flattened: Flattened) -> list[PartRow]:

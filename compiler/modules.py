@@ -154,7 +154,7 @@ def _declarations(scene: tree.Scene, faults: Sequence[int]) -> Iterator[Declarat
             for below in line.lines:
                 name = declared_name(below.head)
                 yield Declaration(line.word, name.text, name.span, below)
-        elif line.word == "see":
+        elif line.word in ("see", "see library"):
             name = declared_name(line.head, "prefix")
             yield Declaration("see", name.text, name.span, line)
         elif line.word in (*DECLARED, "figure", "variants"):

@@ -19,7 +19,8 @@ from .modules import Declaration, Module, names_in
 from .ordering import order
 from .readings import expression, optional, parameters
 from .readings import name as declared_name
-from .scope import Failed, Formula, Named, Scope, did_you_mean
+from .records import Tables, read_record
+from .scope import Failed, Formula, Named, Record, Scope, did_you_mean
 from .values import Interval, Quantity, Value, Vector, dimension_name, kind_of, shown, spell, usual_unit
 
 Names = dict[str, Named]
@@ -40,7 +41,12 @@ def outermost() -> Scope:
 
 
 def module_scope(
-    module: Module, prefixes: Mapping[str, Scope], settings: tuple[Setting, ...], problems: Problems, outer: Scope
+    module: Module,
+    prefixes: Mapping[str, Scope],
+    settings: tuple[Setting, ...],
+    problems: Problems,
+    outer: Scope,
+    tables: Tables,
 ) -> Scope:
     """The parameters and derived values of one file, each computed after those it depends on.
 
@@ -58,7 +64,7 @@ def module_scope(
             if declaration.kind == "given":
                 named[declaration.name] = _given(declaration, chosen.get(declaration.name), scope)
             else:
-                named[declaration.name] = derived_value(declaration, scope)
+                named[declaration.name] = derived_value(declaration, scope, tables, module.file)
     return scope
 
 
@@ -80,8 +86,12 @@ def in_order(declarations: Iterable[Declaration], named: Names, problems: Proble
     return [valued[name] for name in sequence]
 
 
-def derived_value(declaration: Declaration, scope: Scope) -> Value | Formula:
-    """The value of a `derived` line, or the function it defines. Raises Mistake."""
+def derived_value(
+    declaration: Declaration, scope: Scope, tables: Tables, file: str, asked: Span | None = None
+) -> Value | Formula | Record:
+    """The value of a `derived` line, the function it defines, or the row it names. Raises Mistake."""
+    if declaration.line.head.row == "derived row":
+        return read_record(declaration.line.head, scope, tables, file, asked)
     body = expression(declaration.line.head, "value")
     wanted = parameters(declaration.line)
     if not wanted:
@@ -89,8 +99,13 @@ def derived_value(declaration: Declaration, scope: Scope) -> Value | Formula:
     return Formula(declaration.name, tuple(parameter.name for parameter in wanted), body, scope)
 
 
-def local_scope(lines: tuple[tree.Line, ...], scope: Scope, problems: Problems) -> Scope:
-    """The scope inside a part or assembly: its `derived` values on top of its parameters."""
+def local_scope(
+    lines: tuple[tree.Line, ...], scope: Scope, problems: Problems, tables: Tables, file: str, asked: Span
+) -> Scope:
+    """The scope inside a part or assembly: its `derived` values on top of its parameters.
+
+    `file` holds the lines, `asked` is where the thing was asked for.
+    """
     declarations = []
     for line in lines:
         if line.word == "derived":
@@ -104,7 +119,7 @@ def local_scope(lines: tuple[tree.Line, ...], scope: Scope, problems: Problems) 
     for declaration in in_order(declarations, named, problems):
         named[declaration.name] = Failed()
         with problems.collecting():
-            named[declaration.name] = derived_value(declaration, inner)
+            named[declaration.name] = derived_value(declaration, inner, tables, file, asked)
     return inner
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import posixpath
 from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
+from importlib import resources
 
 from platewright.lang import tree
 from platewright.lang.problems import Problem, is_error
@@ -48,6 +49,7 @@ _REASONS = {
     "outside": "`{name}` lies outside the project's folder",
     "too large": f"`{{name}}` is larger than {limits.FILE_BYTES:,} bytes, the limit",
     "not a file": "`{name}` is not a file",
+    "no library": "no library comes with the program as `{name}`",
     "unreadable": "`{name}` cannot be read",
     "too many": f"the scene sees more than {limits.FILES} files, the limit",
 }
@@ -55,6 +57,18 @@ _REASONS = {
 
 def load(main: str, loader: Loader) -> tuple[Files | None, tuple[Problem, ...]]:
     """Read `main` and, from file to file, all that it sees. Names are POSIX paths relative to the project's folder.
+
+LIBRARY = "library:/"
+"""Where the files that come with the program stand among those of a scene; no file of a project can stand there."""
+
+
+def read_library(name: str) -> bytes | Refusal:
+    """A file of a library that comes with the program, or why there is none."""
+    folder = resources.files(__package__).joinpath("library")
+    known = {each.name: each for each in folder.iterdir()}
+    found = known.get(name.removeprefix(LIBRARY))
+    return found.read_bytes() if found is not None else Refusal("no library")
+
 
     None only where `main` itself gives no text. Cost: linear in the texts.
     """
@@ -112,10 +126,11 @@ class _Reading:
         """The text of a file, decoded; None with a problem, given once, if there is none."""
         if name in self.refused:
             return None
-        answer = Refusal("too many") if len(self.texts) >= limits.FILES else self.loader(name)
+        load = read_library if name.startswith(LIBRARY) else self.loader
+        answer = Refusal("too many") if len(self.texts) >= limits.FILES else load(name)
         if isinstance(answer, Refusal):
             self.refused.add(name)
-            sentence = _REASONS.get(answer.reason, _REASONS["unreadable"]).format(name=name)
+            sentence = _REASONS.get(answer.reason, _REASONS["unreadable"]).format(name=name.removeprefix(LIBRARY))
             self.problems.error("too-much" if answer.reason == "too many" else "no-such-file", span, sentence)
             return None
         try:
@@ -136,6 +151,10 @@ class _Reading:
             if line.word == "see":
                 prefix, wanted = line.head.get("prefix"), self._constant(line.head.get("file"))
                 if isinstance(prefix, tree.Name) and wanted is not None:
+            if line.word == "see library":
+                prefix, wanted = line.head.get("prefix"), self._constant(line.head.get("library"))
+                if isinstance(prefix, tree.Name) and wanted is not None:
+                    yield prefix.text, f"{LIBRARY}{wanted[0]}.plate", wanted[1]
                     target = self._within(scene.file, *wanted)
                     if target:
                         yield prefix.text, target, wanted[1]

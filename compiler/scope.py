@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from typing import Protocol, TypeAlias
 
@@ -26,11 +26,21 @@ class Formula:
     scope: Scope
 
 
+@dataclass(frozen=True, slots=True)
+class Record:
+    """A row of a table that a name stands for: `cell` gives the value at a path that starts with the name.
+
+    It may raise Mistake.
+    """
+
+    cell: Callable[[tree.Path], Value]
+
+
 class Failed:
     """Stands for a name whose value has been reported as wrong already."""
 
 
-Named: TypeAlias = "Value | Formula | Failed"
+Named: TypeAlias = "Value | Formula | Record | Failed"
 
 
 class Paths(Protocol):

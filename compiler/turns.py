@@ -2,26 +2,22 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 from platewright.lang import tree
-from platewright.lang.problems import Related
 from platewright.lang.units import NUMBER
 
 from . import limits
 from .expressions import count, truth
-from .mistakes import Mistake, mistake
+from .mistakes import mistake
 from .placement import Marks, place, repeat
-from .project import beside
 from .readings import expression, name
+from .records import RowPaths, Tables, table_of
 from .scope import Scope
 from .solids.recipe import Affine
 from .solids.transform import IDENTITY, compose
-from .tables import Table
-from .values import Quantity, Value
-
-Tables = Mapping[str, Table]
+from .values import Quantity
 
 
 @dataclass(frozen=True, slots=True)
@@ -83,7 +79,7 @@ def _turns(clause: tree.Reading, scope: Scope, tables: Tables, file: str, n_oute
         sentence = f"`{variable}` is declared outside already; inside it would mean something else"
         raise mistake("duplicate-name", written.span, sentence, "rename it")
     if clause.get("table") is not None:
-        table = _table(clause, tables, file)
+        table = table_of(clause, tables, file)
         _affordable(len(table.rows), n_outer, clause)
         for row, label in enumerate(table.labels):
             yield Turn(label, scope.inside({}, RowPaths(variable, table, row)))
@@ -103,51 +99,3 @@ def _affordable(n_turns: int, n_outer: int, clause: tree.Reading) -> None:
     if n_turns * n_outer > limits.COPIES:
         sentence = f"{n_turns * n_outer:,} copies are more than {limits.COPIES:,}, the limit"
         raise mistake("too-much", clause.span, sentence)
-
-
-def _table(clause: tree.Reading, tables: Tables, file: str) -> Table:
-    written = clause.get("table")
-    assert isinstance(written, tree.Text)
-    target = beside(file, "".join(part for part in written.parts if isinstance(part, str)))
-    table = tables.get(target) if target else None
-    if table is None:
-        raise Mistake(None)
-    return table
-
-
-@dataclass(frozen=True, slots=True)
-class RowPaths:
-    """`row.column` on a line with `for row over` a table."""
-
-    variable: str
-    table: Table
-    row: int
-
-    def value(self, path: tree.Path) -> Value | None:
-        """The cell, None for a path that does not begin with the variable. Raises Mistake."""
-        if path.steps[0].name != self.variable:
-            return None
-        columns = self.table.columns
-        if len(path.steps) != 2:
-            listed = ", ".join(f"`{self.variable}.{column}`" for column in columns)
-            sentence = f"`{self.variable}` is a row of the table"
-            raise mistake("wrong-kind", path.span, sentence, f"its values are {listed}")
-        column = path.steps[1].name
-        if column not in columns:
-            hint = f"it has {', '.join(f'`{each}`' for each in columns)}"
-            raise mistake("unknown-name", path.steps[1].span, f"the table has no column `{column}`", hint)
-        number = columns.index(column)
-        value = self.table.rows[self.row][number]
-        if value is None:
-            related = (Related(self.table.cell_spans[self.row][number], "this cell"),)
-            sentence = f"the cell `{column}` of row `{self.table.labels[self.row]}` is empty"
-            raise mistake("bad-table", path.span, sentence, "fill it, or leave the row out", related)
-        return value
-
-    def call(self, call: tree.Call) -> Value | None:
-        """None: a row has no measures."""
-        return None
-
-    def names(self) -> tuple[str, ...]:
-        """The variable."""
-        return (self.variable,)

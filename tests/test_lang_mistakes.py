@@ -307,7 +307,7 @@ platewright 1
 > 2:1 version: the version of the language is stated twice
 ---
 see fasteners as f
-> 1:4 missing-value: expected a text in double quotes behind `see`, found `fasteners` | for example `see "fasteners.plate" as fasteners`
+> 1:4 missing-value: expected `library` or a text in double quotes behind `see`, found `fasteners` | for example `see library "fasteners" as fasteners`
 ---
 block (1 mm, 1 mm, 1 mm)
 > 1:1 misplaced-word: `block` may not stand here | it stands behind `add`, `cut` or `keep`
