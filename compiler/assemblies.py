@@ -73,6 +73,10 @@ class _Placing:
         written = expression(line.head, "thing")
         assert isinstance(written, (tree.Path, tree.Call))
         self.things.note_placed(self.module, written)
+        for clause in line.clauses:
+            if clause.word == "centred":
+                sentence = "`centred` goes with shapes; a thing stands where its own lines put it"
+                raise mistake("wrong-form", clause.span, sentence)
         own = next((name(clause) for clause in line.clauses if clause.word == "as"), None)
         last = (written.path if isinstance(written, tree.Call) else written).steps[-1]
         for turn in turns(line, scope, self.things.tables, self.module.file):

@@ -6,7 +6,10 @@ Each is named in the message that enforces it.
 from __future__ import annotations
 
 COPIES = 100_000
-"""Copies that one line may make, things placed in one model, shapes in one part."""
+"""Copies that one line may make, and things placed in one model."""
+
+SHAPES = 3_000
+"""Shapes of one part, with all copies: all of them meet in one boolean evaluation."""
 
 NESTING = 32
 """Assemblies within assemblies, parts within parts."""

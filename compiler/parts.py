@@ -142,8 +142,8 @@ class _Part:
     def _count(self, n_shapes: int, n_levels: int, line: tree.Line) -> None:
         self.n_shapes += n_shapes
         self.n_levels = max(self.n_levels, n_levels + 1)
-        if self.n_shapes > limits.COPIES:
-            sentence = f"the part `{self.declaration.name}` is made of more than {limits.COPIES:,} shapes, the limit"
+        if self.n_shapes > limits.SHAPES:
+            sentence = f"the part `{self.declaration.name}` is made of more than {limits.SHAPES:,} shapes, the limit"
             raise mistake("too-much", line.span, sentence)
         if self.n_levels > limits.NESTING:
             sentence = f"parts hold each other more than {limits.NESTING} deep, the limit"

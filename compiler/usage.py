@@ -112,10 +112,19 @@ def _users(modules: Modules) -> dict[str, dict[str, dict[str, None]]]:
     """For each file, the names used anywhere and the names of the declarations that use them."""
     users: dict[str, dict[str, dict[str, None]]] = {file: {} for file in modules}
 
+    known: dict[tuple[str, str], str] = {}
+
+    def meant(module: Module, name: str) -> str:
+        if (module.file, name) not in known:
+            known[module.file, name] = nearest(name, module.names)
+        return known[module.file, name]
+
     def note(module: Module, path: tree.Path, user: str) -> None:
         here = module
         for step in path.steps:
-            users[here.file].setdefault(step.name, {})[user] = None
+            # A name that nothing declares may be meant for the one nearest to it, which is then not unused.
+            name = step.name if step.name in here.names else meant(here, step.name)
+            users[here.file].setdefault(name, {})[user] = None
             target = here.prefixes.get(step.name)
             if target is None or target not in modules:
                 return

@@ -230,6 +230,18 @@ SCENES = [
     ),
     Hostile("a torus through itself", part("add torus diameter 4 mm tube 5 mm"), ("out-of-range",), "cut itself"),
     Hostile("a wedge that hangs over", part("add wedge (4 mm, 4 mm, 4 mm) top 5 mm"), ("out-of-range",), "top"),
+    Hostile(
+        "a part of too many shapes",
+        part("add block (1 mm, 1 mm, 1 mm) row 90000 by (3 mm, 0, 0)"),
+        ("too-much",),
+        "shapes, the limit",
+    ),
+    Hostile(
+        "a placed thing that is centred",
+        BALL + "assembly a\n    place p centred\n",
+        ("wrong-form",),
+        "`centred` goes with shapes",
+    ),
 ]
 
 

@@ -119,6 +119,11 @@ def test_warnings_for_what_is_never_used() -> None:
     ]
 
 
+def test_a_misspelt_use_is_a_use() -> None:
+    run = checked(BALL + "figure f\n    show bal\n")
+    assert [(each.code, each.hint) for each in run.problems] == [("unknown-name", "did you mean `ball`?")]
+
+
 def test_a_part_is_used_by_a_figure_by_another_part_or_by_an_assembly() -> None:
     parts = BALL + "part shown\n    add sphere diameter 5 mm\npart inner\n    add sphere diameter 3 mm\n"
     text = parts + "part outer\n    add inner\nassembly a\n    place ball\n    place outer at (9 mm, 0, 0)\n"
