@@ -2,16 +2,16 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import NamedTuple, TypeAlias
+
+from msgspec import Struct
 
 from .scanner import Slip
 from .source import Span
 from .tree import Expression, Path, Setting, Step
 
 
-@dataclass(frozen=True, slots=True)
-class Equation:
+class Equation(Struct, frozen=True):
     """`left = right`, before it is known what it sets or defines."""
 
     left: Expression
@@ -19,8 +19,7 @@ class Equation:
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Series:
+class Series(Struct, frozen=True):
     """Values or settings joined by commas outside parentheses."""
 
     entries: tuple[Expression | Equation, ...]

@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
-
 from lark import Lark
+from msgspec import Struct, field
 
 from .items import Item, Place
 from .problems import Problem, Related, Severity
@@ -20,8 +19,7 @@ PROBLEMS_LIMIT = 500
 INDENT = 4
 
 
-@dataclass(slots=True)
-class RawLine:
+class RawLine(Struct):
     """A line with its items and the lines indented under it.
 
     `comment` is the comment behind it; `above` are the comments, notes and blank lines above it, as the printer keeps
@@ -40,16 +38,14 @@ class RawLine:
     lines: list[RawLine] = field(default_factory=list)
 
 
-@dataclass(frozen=True, slots=True)
-class Aside:
+class Aside(Struct, frozen=True):
     """A comment or note on a line of its own, or a blank line (`text` empty); `depth` counts levels."""
 
     text: str
     depth: int
 
 
-@dataclass(slots=True)
-class Layout:
+class Layout(Struct):
     """A file's lines, and the comments and blank lines after the last of them."""
 
     file: str

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from msgspec import Struct, field
 
 from .forms import signature_of, value_of
 from .items import Equation, Item, Place, Series
@@ -14,8 +14,7 @@ from .tree import Path, Reading, Value, Word
 NO_STARTS = Starts({}, ())
 
 
-@dataclass(slots=True)
-class Account:
+class Account(Struct):
     """What could have stood at the furthest item that did not fit.
 
     `elements` are what patterns wanted there, `starts` the rows that could have begun there, `pattern` the row that was

@@ -4,12 +4,12 @@ from __future__ import annotations
 
 import functools
 from collections.abc import Iterator
-from dataclasses import replace
 from importlib import resources
 from typing import Any
 
 from lark import Lark
 from lark.lexer import Lexer
+from msgspec.structs import replace
 
 from .fold import fold
 from .items import Equation, Node, Series, setting_of

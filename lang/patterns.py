@@ -5,22 +5,21 @@ from __future__ import annotations
 import functools
 import re
 from collections.abc import Mapping
-from dataclasses import dataclass
 from types import MappingProxyType
 from typing import TypeAlias
+
+from msgspec import Struct
 
 from .words import ROWS, Row
 
 
-@dataclass(frozen=True, slots=True)
-class Literal:
+class Literal(Struct, frozen=True):
     """A word that stands for itself."""
 
     text: str
 
 
-@dataclass(frozen=True, slots=True)
-class Slot:
+class Slot(Struct, frozen=True):
     """A place for one value; `options` are the words it offers, each split at its spaces."""
 
     name: str
@@ -28,8 +27,7 @@ class Slot:
     options: tuple[tuple[str, ...], ...] = ()
 
 
-@dataclass(frozen=True, slots=True)
-class Equals:
+class Equals(Struct, frozen=True):
     """`left = right` in one item; where `is_optional`, the left side alone will do."""
 
     left: Slot
@@ -37,15 +35,13 @@ class Equals:
     is_optional: bool
 
 
-@dataclass(frozen=True, slots=True)
-class Optional:
+class Optional(Struct, frozen=True):
     """Elements that may be left out together."""
 
     elements: tuple[Element, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Either:
+class Either(Struct, frozen=True):
     """One of several runs of elements."""
 
     branches: tuple[tuple[Element, ...], ...]
@@ -56,8 +52,7 @@ Element: TypeAlias = "Literal | Slot | Equals | Optional | Either"
 _PARTS = re.compile(r"<(?P<name>\w+):(?P<kind>[^>]+)>|(?P<mark>[\[\]{}/=])|(?P<word>[a-z]+)")
 
 
-@dataclass(frozen=True, slots=True)
-class Pattern:
+class Pattern(Struct, frozen=True):
     """A row ready for reading: its elements, the words it starts with, and the word it is known by."""
 
     row: Row
@@ -66,16 +61,14 @@ class Pattern:
     word: str
 
 
-@dataclass(frozen=True, slots=True)
-class Starts:
+class Starts(Struct, frozen=True):
     """The rows that may start at one place: by their first word, and those that start with a value."""
 
     by_word: Mapping[str, tuple[Pattern, ...]]
     wordless: tuple[Pattern, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Vocabulary:
+class Vocabulary(Struct, frozen=True):
     """All rows by place. `clauses` joins the places of each set of clause contexts that some row names.
 
     `homes` gives the places of each first word, `later` the keys of rows that are

@@ -7,8 +7,9 @@ a unit, and spaced elsewhere.
 
 from __future__ import annotations
 
-from dataclasses import fields, is_dataclass
 from typing import Any
+
+from msgspec import Struct
 
 from .fold import STRENGTH
 from .items import Equation, Item, Node, Series
@@ -225,8 +226,9 @@ def _essence(node: Any) -> Any:
     """A tree without its places, as nested tuples."""
     if isinstance(node, tuple):
         return tuple(_essence(part) for part in node)
-    if is_dataclass(node):
-        return (type(node).__name__, *(_essence(getattr(node, f.name)) for f in fields(node) if f.type != "Span"))
+    if isinstance(node, Struct):
+        kept = (getattr(node, name) for name in node.__struct_fields__ if not name.endswith("span"))
+        return (type(node).__name__, *(_essence(part) for part in kept))
     return node
 
 

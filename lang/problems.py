@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from enum import StrEnum
+
+from msgspec import Struct
 
 from .source import Span
 
@@ -16,16 +17,14 @@ class Severity(StrEnum):
     NOTE = "note"
 
 
-@dataclass(frozen=True, slots=True)
-class Related:
+class Related(Struct, frozen=True):
     """Another place that belongs to a problem, with a few words on how."""
 
     span: Span
     words: str
 
 
-@dataclass(frozen=True, slots=True)
-class Problem:
+class Problem(Struct, frozen=True):
     """One mistake. `code` is stable (see `codes`); `sentence` says found and expected in the author's words; `hint`
     is the fix.
 

@@ -2,11 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from msgspec import Struct
 
 
-@dataclass(frozen=True, slots=True)
-class Row:
+class Row(Struct, frozen=True):
     """One word of the language.
 
     `key` names the row; `pattern` says what it takes; `stands` are the contexts in which it may start a line or a

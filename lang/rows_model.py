@@ -77,7 +77,6 @@ DECLARATION_ROWS: tuple[Row, ...] = (
         "declares a curve in space",
         "path hose",
         lines="path",
-        later=True,
     ),
     Row("part", "part <name:signature>", ("scene",), "declares one solid of one material", "part funnel", lines="part"),
     Row(
@@ -336,20 +335,25 @@ CURVE_ROWS: tuple[Row, ...] = (
         "path curve through",
         "curve through <points:list>",
         ("path",),
-        "a smooth stretch in space through points",
+        "a smooth stretch in space through points, which goes on as the way goes",
         "curve through (10 mm, 0, 4 mm), (20 mm, 0, 6 mm), (30 mm, 0, 0)",
-        later=True,
     ),
     Row(
         "path points over",
         "points over <table:text>",
         ("path",),
-        "straight stretches in space through the points of a table",
+        "straight stretches in space through the points of a table of three columns",
         'points over "route.csv"',
-        later=True,
     ),
     Row(
-        "path from", "from <point:point>", ("path",), "where a path starts", "from (0, 0, 0)", later=True, is_once=True
+        "path curve over",
+        "curve over <table:text>",
+        ("path",),
+        "a smooth stretch in space through the points of a table of three columns",
+        'curve over "route.csv"',
+    ),
+    Row(
+        "path from", "from <point:point>", ("path",), "where a path starts", "from (0, 0, 0)", is_once=True
     ),
     Row(
         "path to",
@@ -357,7 +361,6 @@ CURVE_ROWS: tuple[Row, ...] = (
         ("path",),
         "a straight stretch, and the radius of the bend at its end",
         "to (0, 0, 50 mm) bend 15 mm",
-        later=True,
     ),
     Row(
         "path round to",
@@ -365,15 +368,13 @@ CURVE_ROWS: tuple[Row, ...] = (
         ("path",),
         "a circular stretch in space, through a point",
         "round to (20 mm, 0, 0) through (10 mm, 10 mm, 0)",
-        later=True,
     ),
     Row(
         "helix",
         "helix diameter <diameter:length> pitch <pitch:length> turns <turns:number> [<hand:left|right>]",
         ("path",),
-        "a helix about z, right-handed unless said otherwise",
+        "a helix about z as the whole path, right-handed unless said otherwise",
         "helix diameter 20 mm pitch 3 mm turns 12",
-        later=True,
     ),
     Row(
         "rounded",
@@ -517,11 +518,10 @@ SHAPE_ROWS: tuple[Row, ...] = (
     ),
     Row(
         "sweep",
-        "sweep <outline:thing> along <path:thing>",
+        "sweep <outline:thing> along <path:thing> [twist <twist:angle>]",
         ("shape",),
-        "an outline carried along a path",
+        "an outline carried along a path, turning about it only where a twist is given",
         "sweep gasket along rim_path",
-        later=True,
     ),
     Row(
         "tube along",
@@ -529,7 +529,29 @@ SHAPE_ROWS: tuple[Row, ...] = (
         ("shape",),
         "a round tube or rod along a path",
         "tube along hose diameter 12 mm bore 8 mm",
-        later=True,
+    ),
+    Row(
+        "tube through",
+        "tube through <points:list> [bend <radius:length>] diameter <diameter:length> [bore <bore:length>]",
+        ("shape",),
+        "a round tube or rod from point to point, bent at those between",
+        "tube through (0, 0, 0), (0, 0, 50 mm), (40 mm, 0, 50 mm) bend 15 mm diameter 8 mm bore 5 mm",
+    ),
+    Row(
+        "spring",
+        "spring diameter <diameter:length> wire <wire:length> turns <turns:number> length <length:length> "
+        "[<hand:left|right>]",
+        ("shape",),
+        "a coil by the mean diameter of its turns and that of its wire, its ends open",
+        "spring diameter 20 mm wire 2 mm turns 12 length 60 mm",
+    ),
+    Row(
+        "bellows",
+        "bellows diameter <diameter:length> bore <bore:length> convolutions <convolutions:count> "
+        "length <length:length> wall <wall:length>",
+        ("shape",),
+        "a corrugated tube by its outer diameter and its bore",
+        "bellows diameter 60 mm bore 40 mm convolutions 6 length 80 mm wall 1 mm",
     ),
     Row(
         "transition",
@@ -537,7 +559,6 @@ SHAPE_ROWS: tuple[Row, ...] = (
         ("shape",),
         "a solid that passes from one outline into another",
         "transition from square_end to round_end length 80 mm",
-        later=True,
     ),
     Row(
         "thread",

@@ -5,14 +5,14 @@ All nodes are frozen and carry the span of their text; a node's span lies inside
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Literal, TypeAlias
+
+from msgspec import Struct
 
 from .source import Span
 
 
-@dataclass(frozen=True, slots=True)
-class Number:
+class Number(Struct, frozen=True):
     """A number as written, with its unit symbol, or `""` for a pure number. `text` may be `1/2`."""
 
     text: str
@@ -20,32 +20,28 @@ class Number:
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Text:
+class Text(Struct, frozen=True):
     """A quoted text: stretches of characters and the values set into it in braces."""
 
     parts: tuple[str | Expression, ...]
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Truth:
+class Truth(Struct, frozen=True):
     """`yes` or `no`."""
 
     value: bool
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Date:
+class Date(Struct, frozen=True):
     """A calendar date, `2026-06-21`."""
 
     text: str
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Step:
+class Step(Struct, frozen=True):
     """One step of a path: a name and, in brackets, which copy: a count from 1 or the name of a table row."""
 
     name: str
@@ -53,8 +49,7 @@ class Step:
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Path:
+class Path(Struct, frozen=True):
     """A name, or names joined by dots: `rim`, `gauge.cap_screws[3].head`."""
 
     steps: tuple[Step, ...]
@@ -66,8 +61,7 @@ class Path:
         return ".".join(step.name for step in self.steps)
 
 
-@dataclass(frozen=True, slots=True)
-class Call:
+class Call(Struct, frozen=True):
     """A function, or a thing with its parameters: `pitch(d)`, `fasteners.screw(d = 4 mm)`."""
 
     path: Path
@@ -76,16 +70,14 @@ class Call:
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Tuple:
+class Tuple(Struct, frozen=True):
     """Two or three values in parentheses: a point or a vector."""
 
     items: tuple[Expression, ...]
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Unary:
+class Unary(Struct, frozen=True):
     """A sign or `not`."""
 
     operator: Literal["-", "not"]
@@ -93,8 +85,7 @@ class Unary:
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Binary:
+class Binary(Struct, frozen=True):
     """Arithmetic, comparison (`is`, `is not`, `<` ...) and `and`, `or`."""
 
     operator: Literal["+", "-", "*", "/", "^", "is", "is not", "<", "<=", ">", ">=", "and", "or"]
@@ -103,8 +94,7 @@ class Binary:
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Choice:
+class Choice(Struct, frozen=True):
     """`A if CONDITION else B`."""
 
     condition: Expression
@@ -113,8 +103,7 @@ class Choice:
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Range:
+class Range(Struct, frozen=True):
     """`low .. high`, both ends included."""
 
     low: Expression
@@ -122,8 +111,7 @@ class Range:
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Ratio:
+class Ratio(Struct, frozen=True):
     """`1:2`, a scale; in the slot of a clock time `12:30` is read as hours and minutes."""
 
     first: str
@@ -134,8 +122,7 @@ class Ratio:
 Expression: TypeAlias = Number | Text | Truth | Date | Path | Call | Tuple | Unary | Binary | Choice | Range | Ratio
 
 
-@dataclass(frozen=True, slots=True)
-class Setting:
+class Setting(Struct, frozen=True):
     """`name = value`."""
 
     name: str
@@ -144,24 +131,21 @@ class Setting:
     name_span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Name:
+class Name(Struct, frozen=True):
     """A name that this line declares."""
 
     text: str
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Word:
+class Word(Struct, frozen=True):
     """One of the words a slot offers: `left`, `upper left`, `survey part`."""
 
     text: str
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Parameter:
+class Parameter(Struct, frozen=True):
     """A parameter of a part, assembly, outline or function; `default` is None where the caller must give it."""
 
     name: str
@@ -174,8 +158,7 @@ Value: TypeAlias = (
 )
 
 
-@dataclass(frozen=True, slots=True)
-class Reading:
+class Reading(Struct, frozen=True):
     """A word and the values of its slots: `turn 12 deg about y` is `turn` with `by` and `axis`.
 
     `row` names the vocabulary row it was read by (`words.Row.key`); absent optional slots are left out. A slot of kind
@@ -197,8 +180,7 @@ class Reading:
         return None
 
 
-@dataclass(frozen=True, slots=True)
-class Line:
+class Line(Struct, frozen=True):
     """One line: what it says first, the clauses that follow in the order written, and the lines indented under it.
 
     Clauses written one a line under a line stand in `clauses` too. `note` holds the `##` lines above, joined.
@@ -220,8 +202,7 @@ class Line:
         return next((clause for clause in self.clauses if clause.word == word), None)
 
 
-@dataclass(frozen=True, slots=True)
-class Scene:
+class Scene(Struct, frozen=True):
     """One file: its language version (0 if it states none) and its declarations in the order written.
 
     `broken` are names that lines left out for a problem would have declared: a path that uses one of them needs no

@@ -11,14 +11,14 @@ Symbols follow ISO 80000-1 and its parts 3 (space and time), 4 (mechanics), 5 (t
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
 from fractions import Fraction
 from types import MappingProxyType
 from typing import Literal
 
+from msgspec import Struct
 
-@dataclass(frozen=True, slots=True)
-class Dimension:
+
+class Dimension(Struct, frozen=True):
     """Exponents of the base units. `place` marks the kinds that take no part in algebra: latitudes and longitudes."""
 
     length: int = 0
@@ -132,8 +132,7 @@ INCH = Fraction(254, 10)
 FOOT = 12 * INCH
 
 
-@dataclass(frozen=True, slots=True)
-class Unit:
+class Unit(Struct, frozen=True):
     """A symbol, its size in base units, its dimension, and its name for people.
 
     `offset` is what is added after the factor, in base units; only the degree Celsius has one. A unit with an offset

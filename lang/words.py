@@ -12,8 +12,9 @@ rows_model.py and rows_page.py.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 from types import MappingProxyType
+
+from msgspec import Struct
 
 from .row import Row as Row
 from .rows_model import (
@@ -119,8 +120,7 @@ PLACES: Mapping[str, str] = MappingProxyType(
 )
 
 
-@dataclass(frozen=True, slots=True)
-class Function:
+class Function(Struct, frozen=True):
     """A function that expressions may call, with its arguments and result as people read them.
 
     `place` is `"values"` for those that stand everywhere, `"facts"` for measures, which stand under `expect` alone.

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import gc
-from dataclasses import fields, is_dataclass
 from typing import Any
 
 import pytest
+from msgspec import Struct
 from platewright.lang import layout, scanner
 from platewright.lang.problems import Problem
 from platewright.lang.reader import read_scene, read_value
@@ -148,12 +148,12 @@ def check_spans(node: Any, parent: Span) -> int:
     """Checks every node below, and returns how many there are."""
     if isinstance(node, tuple):
         return sum(check_spans(part, parent) for part in node)
-    if not is_dataclass(node) or isinstance(node, Span):
+    if not isinstance(node, Struct) or isinstance(node, Span):
         return 0
     span = node.span  # type: ignore[attr-defined]
     start, end = (span.line, span.column), (span.end_line, span.end_column)
     assert (parent.line, parent.column) <= start <= end <= (parent.end_line, parent.end_column), (node, parent)
-    return 1 + sum(check_spans(getattr(node, field.name), span) for field in fields(node))
+    return 1 + sum(check_spans(getattr(node, field), span) for field in node.__struct_fields__)
 
 
 def test_every_span_lies_inside_its_parents() -> None:
@@ -170,7 +170,7 @@ def test_spans_hold_the_text_they_stand_for() -> None:
         node = stack.pop()
         if isinstance(node, tuple):
             stack.extend(node)
-        elif is_dataclass(node) and not isinstance(node, Span):
+        elif isinstance(node, Struct) and not isinstance(node, Span):
             if isinstance(node, Number):
                 written = lines[node.span.line - 1][node.span.column - 1 : node.span.end_column - 1]
                 assert written.startswith(node.text) and written.endswith(node.unit)
@@ -178,7 +178,7 @@ def test_spans_hold_the_text_they_stand_for() -> None:
             elif isinstance(node, Path) and all(step.index is None for step in node.steps):
                 assert lines[node.span.line - 1][node.span.column - 1 : node.span.end_column - 1] == node.dotted
                 checked += 1
-            stack.extend(getattr(node, field.name) for field in fields(node))
+            stack.extend(getattr(node, field) for field in node.__struct_fields__)
     assert checked > 60
 
 

@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-import dataclasses
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from msgspec import structs
 from platewright.lang.problems import Problem, Related, is_error
 
 from . import crash, files, names
@@ -68,7 +68,7 @@ def _with_variants(problem: Problem, variants: Sequence[Variant | None]) -> Prob
     notes = [Related(variant.span, f"in variant {variant.name}") for variant in named[:_MOST_NAMED_VARIANTS]]
     if len(named) > _MOST_NAMED_VARIANTS:
         notes[-1] = Related(notes[-1].span, f"and in {len(named) - len(notes) + 1} variants more")
-    return dataclasses.replace(problem, related=(*problem.related, *notes))
+    return structs.replace(problem, related=(*problem.related, *notes))
 
 
 def _is_on_line(problem: Problem, variant: Variant) -> bool:

@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import fields, is_dataclass
 from typing import Any
 
+from msgspec import Struct
 from platewright.lang.row import Row
 from platewright.lang.source import Span
 from platewright.lang.tree import Reading
@@ -130,16 +130,16 @@ def readings(node: Any) -> Iterator[Reading]:
     if isinstance(node, tuple):
         for part in node:
             yield from readings(part)
-    elif is_dataclass(node):
-        for field in fields(node):
-            yield from readings(getattr(node, field.name))
+    elif isinstance(node, Struct):
+        for field in node.__struct_fields__:
+            yield from readings(getattr(node, field))
 
 
 def without_places(node: Any) -> Any:
     """A tree as nested tuples, without its spans."""
     if isinstance(node, tuple):
         return tuple(without_places(part) for part in node)
-    if is_dataclass(node) and not isinstance(node, type):
-        kept = [getattr(node, field.name) for field in fields(node)]
+    if isinstance(node, Struct):
+        kept = [getattr(node, field) for field in node.__struct_fields__]
         return (type(node).__name__, *(without_places(part) for part in kept if not isinstance(part, Span)))
     return node
