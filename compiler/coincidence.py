@@ -8,7 +8,7 @@ from typing import Literal
 import numpy as np
 
 from .graph import Solid, Thing
-from .solids.recipe import Affine, Cone, Cylinder, Primitive, Recipe, Revolve, Sphere, Thread, Torus
+from .solids.recipe import Affine, Cone, Cylinder, Edged, Primitive, Recipe, Revolve, Sphere, Thread, Torus
 
 Symmetry = Literal["ball", "round", "none"]
 """What leaves a shape as it is: any turn about its origin, turns about its z axis, nothing."""
@@ -19,6 +19,10 @@ def symmetry(shape: Primitive | Recipe) -> Symmetry:
     match shape:
         case Sphere():
             return "ball"
+        case Edged():
+            return symmetry(shape.shape)
+        case Revolve() if shape.angle < 360.0:
+            return "none"
         case Cylinder() | Cone() | Torus() | Revolve():
             return "round"
         case Thread(real=False):

@@ -3,31 +3,40 @@
 from __future__ import annotations
 
 from platewright.lang import tree
-from platewright.lang.units import LENGTH
+from platewright.lang.units import ANGLE, LENGTH
 
-from .expressions import count, vector
+from .expressions import count, quantity, vector
 from .mistakes import mistake
 from .placement import positive_length, within_size
 from .readings import expression, optional
 from .scope import Scope
+from .solids.outline import extent, oriented
 from .solids.recipe import (
+    Bellows,
     Block,
     Cone,
     Cylinder,
+    Edged,
     Ellipsoid,
     Extrude,
     Outline,
     Primitive,
     Prism,
     Pyramid,
+    Recipe,
     Revolve,
     Sphere,
+    Spring,
     Thread,
     Torus,
+    Transition,
+    Tube,
     Wedge,
 )
 from .threads import read_thread
 
+MOST_TWIST = 36_000.0
+"""Degrees that an extrusion may turn: a hundred turns."""
 OUTLINED = ("extrude", "revolve")
 """Shapes made from an outline, which the caller resolves."""
 
@@ -62,24 +71,42 @@ def read_shape(reading: tree.Reading, scope: Scope, outline: Outline | None, is_
             return Pyramid(_sides(reading, scope), size("across"), _top(reading, scope), size("length"))
         case "extrude":
             assert outline is not None
-            return Extrude(outline, size("length"))
+            return Extrude(outline, size("length"), _taper(reading, scope), _twist(reading, scope))
         case "revolve":
             assert outline is not None
-            return Revolve(outline)
+            return Revolve(outline, _part_turn(reading, scope))
         case "thread":
             return read_thread(reading, scope, size("length"), is_cut)
     raise AssertionError(f"no shape {reading.word}")
 
 
+def with_edges(shape: Primitive | Recipe, clauses: tuple[tree.Reading, ...], scope: Scope) -> Primitive | Recipe:
+    """The shape with its edges made, where a clause says `rounded` or `chamfered`. Raises Mistake."""
+    made = [clause for clause in clauses if clause.word in ("rounded", "chamfered")]
+    if not made:
+        return shape
+    clause = made[0]
+    if len(made) > 1:
+        raise mistake("said-twice", made[1].span, "the edges of a shape are rounded or chamfered, not both")
+    if not isinstance(shape, Block | Wedge | Cylinder | Cone | Prism | Pyramid | Extrude | Revolve):
+        hint = "it goes with block, wedge, cylinder, cone, prism, pyramid, extrude and revolve"
+        raise mistake("no-edges", clause.span, f"`{clause.word}` finds no edges of its own on this shape", hint)
+    if clause.word == "rounded":
+        return Edged(shape, "rounded", positive_length(expression(clause, "radius"), scope, "radius"))
+    return Edged(shape, "chamfered", positive_length(expression(clause, "by"), scope, "chamfer"))
+
+
 def height(shape: Primitive) -> float:
     """The length a shape rises along its z axis from z = 0; 0 for shapes centred on the origin."""
     match shape:
+        case Edged():
+            return height(shape.shape)
         case Block() | Wedge():
             return shape.size[2]
-        case Cylinder() | Cone() | Prism() | Pyramid() | Extrude() | Thread():
+        case Cylinder() | Cone() | Prism() | Pyramid() | Extrude() | Thread() | Spring() | Bellows() | Transition():
             return shape.length
         case Revolve():
-            return max(point[1] for point in _corners(shape.outline))
+            return extent(oriented(shape.outline.outer, True))[1][1]
         case _:
             return 0.0
 
@@ -88,11 +115,10 @@ def diameter(shape: Primitive) -> float | None:
     """The diameter of a round shape at its base, None for others."""
     if isinstance(shape, Thread):
         return shape.major
-    return shape.diameter if isinstance(shape, (Cylinder, Cone, Sphere, Torus)) else None
-
-
-def _corners(outline: Outline) -> list[tuple[float, float]]:
-    return [outline.outer.start, *(stretch.end for stretch in outline.outer.stretches)]
+    if isinstance(shape, Edged):
+        return diameter(shape.shape)
+    round_ones = (Cylinder, Cone, Sphere, Torus, Tube, Spring, Bellows)
+    return shape.diameter if isinstance(shape, round_ones) else None
 
 
 def _sizes(reading: tree.Reading, slot: str, scope: Scope) -> tuple[float, float, float]:
@@ -104,6 +130,37 @@ def _sizes(reading: tree.Reading, slot: str, scope: Scope) -> tuple[float, float
             raise mistake("out-of-range", written.span, sentence)
         within_size(value, written.span, f"size along {axis}")
     return (x, y, z)
+
+
+def _taper(reading: tree.Reading, scope: Scope) -> float:
+    written = optional(reading, "taper")
+    if written is None:
+        return 0.0
+    angle = quantity(written, scope, ANGLE)
+    if not -85.0 <= angle <= 85.0:
+        raise mistake("out-of-range", written.span, f"taper: expected -85 deg to 85 deg, found {angle:g} deg")
+    return angle
+
+
+def _twist(reading: tree.Reading, scope: Scope) -> float:
+    written = optional(reading, "twist")
+    if written is None:
+        return 0.0
+    angle = quantity(written, scope, ANGLE)
+    if abs(angle) > MOST_TWIST:
+        raise mistake("out-of-range", written.span, f"twist: expected at most {MOST_TWIST:g} deg, found {angle:g} deg")
+    return angle
+
+
+def _part_turn(reading: tree.Reading, scope: Scope) -> float:
+    written = optional(reading, "angle")
+    if written is None:
+        return 360.0
+    angle = quantity(written, scope, ANGLE)
+    if not 0.01 <= angle <= 360.0:
+        sentence = f"expected an angle of 0.01 deg to 360 deg, found {angle:g} deg"
+        raise mistake("out-of-range", written.span, sentence)
+    return angle
 
 
 def _wedge(reading: tree.Reading, scope: Scope) -> Wedge:

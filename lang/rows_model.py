@@ -48,6 +48,13 @@ DECLARATION_ROWS: tuple[Row, ...] = (
         'row bolt over "bolts.csv" for "M8"',
     ),
     Row(
+        "accept",
+        "accept <codes:list>",
+        ("scene", "part", "assembly", "figure"),
+        "accepts warnings of these codes here: in what it stands in, at the top of a file everywhere",
+        'accept "floating-part"',
+    ),
+    Row(
         "see library",
         "see library <library:text> as <prefix:new>",
         ("scene",),
@@ -505,7 +512,6 @@ SHAPE_ROWS: tuple[Row, ...] = (
         ("shape",),
         "an outline drawn up along z, narrowing or turning as it rises",
         "extrude plate by 3 mm taper 5 deg",
-        later=True,
     ),
     Row("revolve", "revolve <outline:thing>", ("shape",), "an outline turned about z", "revolve wall"),
     Row(
@@ -514,7 +520,6 @@ SHAPE_ROWS: tuple[Row, ...] = (
         ("shape",),
         "an outline turned about z through part of a turn",
         "revolve wall through 270 deg",
-        later=True,
     ),
     Row(
         "sweep",

@@ -5,6 +5,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from ..trigonometry import cos_deg, sin_deg
+from . import stack
 from .along import ALONG, box_points
 from .ladder import COARSEST, FACTS_SHARE, first_at_most
 from .outline import extent, oriented
@@ -15,8 +17,10 @@ from .recipe import (
     Block,
     Cone,
     Cylinder,
+    Edged,
     Ellipsoid,
     Extrude,
+    Point2,
     Point3,
     Primitive,
     Prism,
@@ -99,6 +103,8 @@ def _of_placed(
 def _hull(shape: Primitive) -> tuple[list[tuple[F64, F64]], F64]:
     """Sums of ellipsoids (centre, half axes (k,3)) and points whose hull has the shape's box under affine maps."""
     none = np.zeros((0, 3))
+    if isinstance(shape, Edged):
+        return _hull(shape.shape)
     if isinstance(shape, Thread):
         # A real one reaches over its major diameter, whether or not it is internal.
         shape = Cylinder(shape.major, shape.length) if shape.real else plain(shape)
@@ -112,8 +118,12 @@ def _hull(shape: Primitive) -> tuple[list[tuple[F64, F64]], F64]:
     if isinstance(shape, Torus):
         ring, r = shape.diameter / 2, shape.tube / 2
         return [(np.zeros(3), np.array([[ring, ring, 0.0], [r, r, r]]))], none
+    if isinstance(shape, Extrude) and (shape.taper or shape.twist):
+        return _of_stack(shape)
     if isinstance(shape, Revolve):
         low, high = extent(oriented(shape.outline.outer, True))
+        if shape.angle < 360.0:
+            return [], _sector(low, high, shape.angle)
         return [_disc(high[0], low[1]), _disc(high[0], high[1])], none
     if isinstance(shape, Spring | Bellows):
         across = shape.diameter + (shape.wire if isinstance(shape, Spring) else 0.0)
@@ -141,6 +151,27 @@ def _corners(shape: Block | Wedge | Prism | Pyramid | Extrude) -> F64:
         return np.concatenate((_at(base, 0.0), _at(top, shape.length)))
     low, high = extent(oriented(shape.outline.outer, True))
     return _levels(np.array([[low[0], low[1]], [high[0], low[1]], [high[0], high[1]], [low[0], high[1]]]), shape.length)
+
+
+def _of_stack(shape: Extrude) -> tuple[list[tuple[F64, F64]], F64]:
+    """A tapered extrusion by its two ends, a twisted one by the circles round them."""
+    base, top = stack.reach(shape)
+    if not shape.twist:
+        return [], np.concatenate((_at(base, 0.0), _at(top, shape.length)))
+    ends = ((base, 0.0), (top, shape.length))
+    return [_disc(float(np.hypot(*box.T).max()), height) for box, height in ends], np.zeros((0, 3))
+
+
+def _sector(low: Point2, high: Point2, angle: float) -> F64:
+    """Points round part of a turn: the ends, the quarter marks, and where the tangents of these cross."""
+    marks = sorted({0.0, angle, *(quarter for quarter in (90.0, 180.0, 270.0) if quarter < angle)})
+    corners = [(r * cos_deg(a), r * sin_deg(a)) for a in (0.0, angle) for r in (low[0], high[0])]
+    corners += [(high[0] * cos_deg(a), high[0] * sin_deg(a)) for a in marks]
+    for a, b in zip(marks, marks[1:], strict=False):
+        far, middle = high[0] / cos_deg((b - a) / 2.0), (a + b) / 2.0
+        corners.append((far * cos_deg(middle), far * sin_deg(middle)))
+    points = np.array(corners)
+    return np.concatenate((_at(points, low[1]), _at(points, high[1])))
 
 
 def _disc(radius: float, height: float) -> tuple[F64, F64]:

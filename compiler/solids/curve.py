@@ -182,21 +182,36 @@ def end_tangents(curve: Curve) -> tuple[F64, F64]:
 
 def fraction_points(curve: Curve, n: int) -> tuple[F64, F64]:
     """n points (n,2) at even shares of the parameter from the start on, without the end; tangents (n+1,2)."""
-    share = np.arange(n + 1) / n
+    points, tangents = points_at(curve, np.arange(n + 1) / n)
+    points[0] = curve.start
+    return points[:-1], tangents
+
+
+def points_at(curve: Curve, share: F64) -> tuple[F64, F64]:
+    """Points (k,2) and unit tangents (k,2) at shares (k,) of the parameter, 0 to 1."""
     if curve.is_line:
         points = np.array(curve.start) + share[:, None] * (np.array(curve.end) - curve.start)
-        return points[:-1], np.repeat(end_tangents(curve)[0][None], n + 1, axis=0)
+        return points, np.repeat(end_tangents(curve)[0][None], len(share), axis=0)
     if curve.pieces:
         control = np.array(curve.pieces)
         place = share * len(control)
         row = np.minimum(place.astype(np.int64), len(control) - 1)
         within = place - row
-        return _positions(control[row], within)[:-1], unit(_derivatives(control[row], within))
+        return _positions(control[row], within), unit(_derivatives(control[row], within))
     turn = sweep(curve) * (1.0 if curve.left else -1.0)
     t = angle(curve, curve.start) + share * turn
     points = np.array(curve.centre) + np.stack((np.cos(t), np.sin(t)), axis=1) @ frame(curve).T
-    points[0] = curve.start
-    return points[:-1], tangents_at(curve, points)
+    return points, tangents_at(curve, points)
+
+
+def shares_of(curve: Curve, points: F64) -> F64:
+    """The shares (k,) of the parameter at which points (k,2) of a circular or elliptic stretch lie."""
+    sign = 1.0 if curve.left else -1.0
+    first = angle(curve, curve.start)
+    turns = np.array([sign * (angle(curve, (x, y)) - first) for x, y in points.tolist()])
+    turns = np.where(turns % math.tau > math.tau - _NEAR, 0.0, turns % math.tau)
+    shares: F64 = turns / sweep(curve)
+    return shares
 
 
 def unit(vectors: F64) -> F64:

@@ -118,6 +118,7 @@ def all_corners(curves: Sequence[Curve], corner: Corner, only: Literal["all", "l
     for k in range(len(curves)):
         turn = turn_at(curves[k - 1], curves[k]) if len(curves) > 1 else 0.0
         wanted = abs(turn) > _SMOOTH and (only == "all" or turn > 0.0)
+        wanted &= not (curves[k - 1].is_free or curves[k].is_free)
         found.append(corner if wanted else None)
     return found
 

@@ -22,37 +22,35 @@ from .surfaces import cross, free, plane, surfaces
 F64 = NDArray[np.float64]
 
 
-def block(shape: Block) -> Shell:
-    """Sides along the axes, the centre of the base at the origin."""
-    x, y, z = shape.size
-    return _between(_rectangle(-x / 2, x / 2, y), _rectangle(-x / 2, x / 2, y), z)
+Facets = tuple[F64, Sequence[Sequence[int]]]
+"""Corners (n,3) and the rows of them that go round each plane face, counter-clockwise from outside."""
 
 
-def wedge(shape: Wedge) -> Shell:
-    """A block whose top ends `top_length` from its -x side."""
+def facets(shape: Block | Wedge | Prism | Pyramid) -> Facets:
+    """Corners and faces of a solid with flat faces."""
+    if isinstance(shape, Block):
+        x, y, z = shape.size
+        return _between(_rectangle(-x / 2, x / 2, y), _rectangle(-x / 2, x / 2, y), z)
+    if isinstance(shape, Wedge):
+        return _wedge(shape)
+    base = regular_polygon(shape.sides, shape.across)
+    if isinstance(shape, Prism):
+        return _between(base, base, shape.length)
+    if shape.top > 0.0:
+        return _between(base, regular_polygon(shape.sides, shape.top), shape.length)
+    n = shape.sides
+    vertices = np.concatenate((_lifted(base, 0.0), [[0.0, 0.0, shape.length]]))
+    return vertices, (tuple(range(n - 1, -1, -1)), *((k, (k + 1) % n, n) for k in range(n)))
+
+
+def _wedge(shape: Wedge) -> Facets:
     x, y, z = shape.size
     base = _rectangle(-x / 2, x / 2, y)
     if shape.top_length > 0.0:
         return _between(base, _rectangle(-x / 2, shape.top_length - x / 2, y), z)
     ridge = np.array([[-x / 2, -y / 2, z], [-x / 2, y / 2, z]])
     vertices = np.concatenate((_lifted(base, 0.0), ridge))
-    return polyhedron(vertices, ((3, 2, 1, 0), (0, 1, 4), (1, 2, 5, 4), (2, 3, 5), (3, 0, 4, 5)))
-
-
-def prism(shape: Prism) -> Shell:
-    """A regular prism, one flat toward -y."""
-    base = regular_polygon(shape.sides, shape.across)
-    return _between(base, base, shape.length)
-
-
-def pyramid(shape: Pyramid) -> Shell:
-    """A regular pyramid or its frustum."""
-    base = regular_polygon(shape.sides, shape.across)
-    if shape.top > 0.0:
-        return _between(base, regular_polygon(shape.sides, shape.top), shape.length)
-    n = shape.sides
-    vertices = np.concatenate((_lifted(base, 0.0), [[0.0, 0.0, shape.length]]))
-    return polyhedron(vertices, (tuple(range(n - 1, -1, -1)), *((k, (k + 1) % n, n) for k in range(n))))
+    return vertices, ((3, 2, 1, 0), (0, 1, 4), (1, 2, 5, 4), (2, 3, 5), (3, 0, 4, 5))
 
 
 def regular_polygon(sides: int, across: float) -> F64:
@@ -119,11 +117,11 @@ def wall(curve: Curve) -> tuple[PatchKind, F64, float, bool]:
     return PatchKind.PLANE, plane((*curve.start, 0.0), (along[1], -along[0], 0.0), along.tolist()), 0.0, False
 
 
-def _between(base: F64, top: F64, height: float) -> Shell:
+def _between(base: F64, top: F64, height: float) -> Facets:
     n = len(base)
     sides = [(k, (k + 1) % n, n + (k + 1) % n, n + k) for k in range(n)]
     vertices = np.concatenate((_lifted(base, 0.0), _lifted(top, height)))
-    return polyhedron(vertices, (tuple(range(n - 1, -1, -1)), tuple(range(n, 2 * n)), *sides))
+    return vertices, (tuple(range(n - 1, -1, -1)), tuple(range(n, 2 * n)), *sides)
 
 
 def _rectangle(low: float, high: float, across: float) -> F64:

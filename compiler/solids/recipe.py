@@ -323,6 +323,7 @@ Primitive = (
     | Pyramid
     | Extrude
     | Revolve
+    | Edged
     | Sweep
     | Tube
     | Spring

@@ -11,17 +11,20 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
+from . import stack
 from .along import ALONG, along_flaws, along_shell, count_along, placed_cone, shifted
 from .curve import Curve
+from .edges import count_edged, edge_flaws, edged
 from .flaw import SolidError
 from .ladder import divisions
 from .outline import OutlineFlaw, Polyline, count_chords, extent, faults, flatten, oriented, polyline
-from .polyhedra import block, extrude, prism, pyramid, wedge
+from .polyhedra import extrude, facets, polyhedron
 from .recipe import (
     Bellows,
     Block,
     Cone,
     Cylinder,
+    Edged,
     Ellipsoid,
     Extrude,
     Point2,
@@ -51,15 +54,13 @@ def tessellate(shape: Primitive, rung: float) -> Shell:
     SolidError for sizes that are not positive or outlines that `problems_of` would have refused.
     """
     require_positive(shape)
-    if isinstance(shape, Block):
-        return block(shape)
-    if isinstance(shape, Wedge):
-        return wedge(shape)
-    if isinstance(shape, Prism):
-        return prism(shape)
-    if isinstance(shape, Pyramid):
-        return pyramid(shape)
+    if isinstance(shape, Block | Wedge | Prism | Pyramid):
+        return polyhedron(*facets(shape))
+    if isinstance(shape, Edged):
+        return edged(shape, rung)
     if isinstance(shape, Extrude):
+        if shape.taper or shape.twist:
+            return stack.stack(shape, None, rung)
         return extrude(flatten(shape.outline, rung), shape.length)
     if isinstance(shape, Thread):
         return thread(shape, rung) if shape.real else tessellate(plain(shape), rung)
@@ -73,8 +74,13 @@ def tessellate(shape: Primitive, rung: float) -> Shell:
 
 def problems_of(shape: Primitive) -> tuple[OutlineFlaw, ...]:
     """Mistakes an author can make in one shape, whatever the rung."""
+    if isinstance(shape, Edged):
+        return edge_flaws(shape)
     if isinstance(shape, Extrude | Revolve):
-        return faults(shape.outline, isinstance(shape, Revolve))
+        found = faults(shape.outline, isinstance(shape, Revolve))
+        if not found and isinstance(shape, Extrude) and shape.taper:
+            found = stack.taper_flaws(shape)
+        return found
     if isinstance(shape, ALONG):
         return along_flaws(shape)
     if isinstance(shape, Torus) and shape.tube >= shape.diameter:
@@ -102,6 +108,10 @@ def count_triangles(shape: Primitive, rung: float) -> int:
         return count_thread(shape, rung) if shape.real else count_triangles(plain(shape), rung)
     if isinstance(shape, ALONG):
         return count_along(shape, rung)
+    if isinstance(shape, Edged):
+        return 0 if edge_flaws(shape) else count_edged(shape, rung)
+    if isinstance(shape, Extrude) and (shape.taper or shape.twist):
+        return 0 if problems_of(shape) else stack.count_triangles(shape, None, rung)
     loops = [oriented(loop, k == 0) for k, loop in enumerate((shape.outline.outer, *shape.outline.holes))]
     chords = sum(count_chords(curves, rung) for curves in loops)
     if isinstance(shape, Extrude):
@@ -111,6 +121,8 @@ def count_triangles(shape: Primitive, rung: float) -> int:
 
 def rise(shape: Primitive) -> float:
     """The length of a shape that stands on z = 0; 0 for those that are centred or revolved."""
+    if isinstance(shape, Edged):
+        return rise(shape.shape)
     if isinstance(shape, Block | Wedge):
         return shape.size[2]
     if isinstance(shape, Cylinder | Cone | Prism | Pyramid | Extrude | Thread | Spring | Bellows | Transition):
