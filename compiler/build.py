@@ -92,6 +92,8 @@ def build_model(files: Files, modules: Modules, settings: tuple[Setting, ...]) -
                 with problems.collecting():
                     if declaration.kind == "outline":
                         instances.declared_outline(module, declaration, None, scope, declaration.span)
+                    elif declaration.kind == "path":
+                        instances.declared_path(module, declaration, None, scope, declaration.span)
                     elif declaration.kind in THINGS:
                         thing = instances.thing(module, declaration, None, scope, declaration.span)
                         if module.file == files.main:

@@ -12,15 +12,17 @@ from platewright.lang.source import Span
 
 from . import limits
 from .assemblies import make_assembly
+from .curves import read_path
 from .graph import Thing
 from .materials import Surface, read_material
 from .mistakes import Mistake, Problems, mistake
 from .modules import THINGS, Declaration, Module, Modules, find_kind
-from .outlines import read_outline
+from .outlines import Around, read_outline
 from .parameters import arguments, local_scope
 from .parts import make_part
+from .records import table_of
 from .scope import Scope
-from .solids.recipe import Outline
+from .solids.recipe import Outline, SpacePath
 from .tables import Table
 
 _Key = tuple[str, str, object]
@@ -43,6 +45,7 @@ class Instances:
     _source_rows: dict[Span, int] = field(default_factory=dict)
     _things: dict[_Key, Thing | None] = field(default_factory=dict)
     _outlines: dict[_Key, Outline | None] = field(default_factory=dict)
+    _paths: dict[_Key, SpacePath | None] = field(default_factory=dict)
     _surfaces: dict[tuple[str, str], Surface] = field(default_factory=dict)
     _under_way: list[Declaration] = field(default_factory=list)
 
@@ -94,12 +97,41 @@ class Instances:
         if declaration.is_faulty:
             raise Mistake(None)
 
+        if declaration in self._under_way:
+            raise mistake("recursion", span, f"the outline `{declaration.name}` cannot be parallel to itself")
+        around = Around(
+            lambda reading: table_of(reading, self.tables, module.file),
+            lambda other, inner: self.outline(module, other, inner),
+        )
+
         def make(inner: Scope) -> Outline:
-            lines = declaration.line.lines
-            local = local_scope(lines, inner, self.problems, self.tables, module.file, span)
-            return read_outline(declaration.line, local)
+            self._under_way.append(declaration)
+            try:
+                lines = declaration.line.lines
+                local = local_scope(lines, inner, self.problems, self.tables, module.file, span)
+                return read_outline(declaration.line, local, around)
+            finally:
+                self._under_way.pop()
 
         return self._once(self._outlines, module, declaration, call, scope, span, make)
+
+    def path(self, module: Module, written: tree.Path | tree.Call, scope: Scope) -> SpacePath:
+        """The path that a path or call names, with its parameters. Raises Mistake."""
+        here, declaration = find_kind(self.modules, module, path_of(written), ("path",))
+        return self.declared_path(here, declaration, call_of(written), scope, written.span)
+
+    def declared_path(
+        self, module: Module, declaration: Declaration, call: tree.Call | None, scope: Scope, span: Span
+    ) -> SpacePath:
+        """A path with its parameters. Raises Mistake."""
+        if declaration.is_faulty:
+            raise Mistake(None)
+
+        def make(inner: Scope) -> SpacePath:
+            local = local_scope(declaration.line.lines, inner, self.problems, self.tables, module.file, span)
+            return read_path(declaration.line, local, lambda reading: table_of(reading, self.tables, module.file))
+
+        return self._once(self._paths, module, declaration, call, scope, span, make)
 
     def _once(
         self,

@@ -5,6 +5,9 @@ Each is named in the message that enforces it.
 
 from __future__ import annotations
 
+TURNS = 10_000
+"""Turns of a helix or a spring."""
+
 COPIES = 100_000
 """Copies that one line may make, and things placed in one model."""
 

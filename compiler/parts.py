@@ -4,12 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass, field
+from itertools import groupby
 from typing import TYPE_CHECKING, Literal
 
 from platewright.lang import tree
+from platewright.lang.problems import Related
 
 from . import limits
-from .coincidence import coincide, symmetry
+from .along import WORDS, ends_of, read_along
+from .coincidence import coincide, shared_lines, symmetry
 from .graph import Feature, FeatureCopy, Solid
 from .marks import OwnNames, axes_of, read_marks
 from .materials import PLAIN
@@ -18,7 +21,7 @@ from .modules import Declaration, Module, find_kind
 from .placement import Marks
 from .readings import LATER, expression, name
 from .scope import Scope
-from .shapes import OUTLINED, diameter, height, read_shape
+from .shapes import OUTLINED, diameter, height, read_shape, with_edges
 from .solids.recipe import Affine, Placed, Primitive, Recipe, Step
 from .solids.transform import IDENTITY, compose, determinant
 from .threads import threads_of
@@ -64,6 +67,7 @@ class _Part:
                     self._step(line)
         if problems.n_mistakes == before and not self.declaration.is_faulty:
             self._begins_with_add()
+        self._shared()
         surface = PLAIN
         for line in lines:
             if line.word == "made of":
@@ -86,6 +90,21 @@ class _Part:
             span = self.things.sources[self.steps[0].placed[0].source]
             sentence = f"there is nothing to {self.steps[0].operation} yet: a part begins with `add`"
             problems.error("empty-part", span, sentence, "move an `add` line before it")
+
+    def _shared(self) -> None:
+        """Warn of shapes that two lines put in one place, where nothing between them does otherwise."""
+        for _, run in groupby(self.steps, lambda step: step.operation):
+            placed: dict[object, tuple[Primitive | Recipe, list[tuple[int, Affine]]]] = {}
+            for each in (each for step in run for each in step.placed):
+                key = (id(each.shape) if isinstance(each.shape, Recipe) else each.shape, each.centred)
+                found = placed.setdefault(key, (each.shape, []))[1]
+                found.extend((each.source, place) for place in each.placements)
+            for shape, places in placed.values():
+                for earlier, later in shared_lines(places, symmetry(shape)):
+                    related = (Related(self.things.sources[earlier], "it stands there already"),)
+                    sentence = "this puts a shape where the same one stands already"
+                    at, hint = self.things.sources[later], "leave one of the two out"
+                    self.things.problems.warn("coincident-copies", at, sentence, hint, related)
 
     def _step(self, line: tree.Line) -> None:
         """Read one line of the process sheet and what it names."""
@@ -127,6 +146,7 @@ class _Part:
         if reading.row in LATER:
             raise Mistake(None)
         shape, own, n_shapes, n_levels = self._made(reading, scope, is_cut)
+        shape = with_edges(shape, line.clauses, scope)
         places = placements(line, scope, self.axes, own)
         self._count(len(outer) * len(places) * n_shapes, n_levels, line)
         if outer != (IDENTITY,):
@@ -160,6 +180,8 @@ class _Part:
             thing = self.things.resolve(self.module, written, scope)
             assert isinstance(thing, Solid)
             return thing.recipe, axes_of(thing.marks), thing.n_shapes, thing.n_levels
+        if reading.row in WORDS:
+            return read_along(reading, scope, self.things, self.module), {}, 1, 0
         outline = None
         if reading.word in OUTLINED:
             written = expression(reading, "outline")
@@ -173,11 +195,28 @@ def _feature_copies(placed: Placed, named: list[str]) -> Iterator[FeatureCopy]:
     rise = 0.0 if isinstance(shape, Recipe) else height(shape)
     low = -rise / 2 if placed.centred else 0.0
     across = None if isinstance(shape, Recipe) else diameter(shape)
+    ends = ends_of(shape)
     for label, placement in zip(named, placed.placements, strict=True):
         size = sum(row[2] * row[2] for row in placement) ** 0.5
         x, y, z = (row[2] / size for row in placement)
         scaled = across * abs(determinant(placement)) ** (1 / 3) if across is not None else None
+        if ends is not None:
+            start, end = (_placed_at(placement, each) for each in (ends[0], ends[2]))
+            yield FeatureCopy(label, start, _placed_along(placement, ends[1]), end, scaled)
+            continue
         yield FeatureCopy(label, _moved(placement, low + rise / 2), (x, y, z), _moved(placement, low + rise), scaled)
+
+
+def _placed_at(placement: Affine, at: Point) -> Point:
+    x, y, z = (row[0] * at[0] + row[1] * at[1] + row[2] * at[2] + row[3] for row in placement)
+    return (x, y, z)
+
+
+def _placed_along(placement: Affine, way: Point) -> Point:
+    moved = [row[0] * way[0] + row[1] * way[1] + row[2] * way[2] for row in placement]
+    size = sum(each * each for each in moved) ** 0.5
+    x, y, z = (each / size for each in moved)
+    return (x, y, z)
 
 
 def _moved(placement: Affine, up: float) -> Point:

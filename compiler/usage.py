@@ -20,7 +20,7 @@ from .threads import is_designation
 
 Users: TypeAlias = Mapping[str, Mapping[str, None]]
 
-BODIES = ("derived", "outline", *THINGS)
+BODIES = ("derived", "outline", "path", *THINGS)
 """Declarations whose lines are evaluated only where they are used with values for their parameters."""
 
 

@@ -97,7 +97,7 @@ class _Group:
 
     def manifolds(self, to_correct: NDArray[np.bool_], correct: Callable[[F64], F64]) -> Iterator[Manifold]:
         for placement, is_off in zip(self.placements, to_correct, strict=True):
-            moved = self.body.manifold.transform(placement)
+            moved = _moved(self.body.manifold, placement)
             yield moved.warp_batch(correct) if is_off else moved
 
     def box(self) -> F64:
@@ -316,6 +316,32 @@ def _with_normals(shell: Shell) -> tuple[F64, I64, I64]:
     vertex = by_vertex[is_new]
     first = np.searchsorted(vertex, vertex)
     return np.concatenate((shell.vertices[vertex], ordered[is_new]), axis=1), faces.reshape(-1, 3), first
+
+
+def _moved(solid: Manifold, placement: F64) -> Manifold:
+    """A solid at a placement (3,4). The kernel gives the properties of a mirrored triangle to the wrong corners
+    (manifold3d 3.x), so a solid with normals is mirrored here.
+    """
+    if solid.num_prop() == 0 or np.linalg.det(placement[:, :3]) > 0.0:
+        return solid.transform(placement)
+    mesh = solid.to_mesh64()
+    properties = np.array(mesh.vert_properties)
+    properties[:, :3] = properties[:, :3] @ placement[:, :3].T + placement[:, 3]
+    runs = np.array(mesh.run_transform)
+    turned = runs @ placement[:, :3].T
+    turned[:, 3] += placement[:, 3]
+    mirrored = manifold3d.Mesh64(
+        vert_properties=properties,
+        tri_verts=np.ascontiguousarray(np.array(mesh.tri_verts)[:, ::-1]),
+        merge_from_vert=np.array(mesh.merge_from_vert),
+        merge_to_vert=np.array(mesh.merge_to_vert),
+        run_index=np.array(mesh.run_index),
+        run_original_id=np.array(mesh.run_original_id),
+        run_transform=turned,
+        run_flags=np.array(mesh.run_flags),
+        face_id=np.array(mesh.face_id),
+    )
+    return Manifold(mirrored)
 
 
 def _combined(solid: Manifold, operation: str, operands: list[Manifold], box: F64) -> Manifold:
