@@ -6,14 +6,15 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
 from platewright.lang import tree
+from platewright.lang.problems import Related
 from platewright.lang.units import LENGTH
 
 from . import limits
-from .coincidence import coincide, of_thing
+from .coincidence import coincide, of_thing, shared_lines
 from .expressions import evaluate
-from .graph import Assembly, Copy, Occurrence, count_nodes
+from .graph import Assembly, Copy, Occurrence, Thing, count_nodes
 from .marks import OwnNames, axes_of, read_marks
-from .mistakes import mistake
+from .mistakes import Problems, mistake
 from .modules import Declaration, Module
 from .placement import Marks, point
 from .readings import expression, name
@@ -50,10 +51,24 @@ def make_assembly(things: Instances, module: Module, declaration: Declaration, s
                 if n_nodes > limits.COPIES:
                     sentence = f"`{declaration.name}` holds more than {limits.COPIES:,} things, the limit"
                     raise mistake("too-much", line.span, sentence)
+    _shared(occurrences, problems)
     if not any(line.word == "place" for line in lines) and not declaration.is_faulty:
         sentence = f"the assembly `{declaration.name}` places nothing"
         problems.error("empty-assembly", declaration.span, sentence, "give it a `place` line")
     return Assembly(declaration.name, tuple(occurrences), marks, declaration.span, n_nodes, n_levels)
+
+
+def _shared(occurrences: list[Occurrence], problems: Problems) -> None:
+    """Warn of lines that place the same thing in one place."""
+    placed: dict[int, tuple[Thing, list[tuple[int, Affine]]]] = {}
+    for row, occurrence in enumerate(occurrences):
+        for copy in occurrence.copies:
+            placed.setdefault(id(copy.thing), (copy.thing, []))[1].append((row, copy.placement))
+    for thing, places in placed.values():
+        for earlier, later in shared_lines(places, of_thing(thing)):
+            related = (Related(occurrences[earlier].span, "it stands there already"),)
+            sentence = f"this places `{thing.name}` where it stands already"
+            problems.warn("coincident-copies", occurrences[later].span, sentence, "leave one of the two out", related)
 
 
 @dataclass(slots=True)

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from typing import Literal
 
 import numpy as np
+from numpy.typing import NDArray
 
 from .graph import Solid, Thing
 from .solids.recipe import Affine, Cone, Cylinder, Edged, Primitive, Recipe, Revolve, Sphere, Thread, Torus
@@ -45,16 +46,34 @@ def of_thing(thing: Thing) -> Symmetry:
 
 def coincide(placements: Sequence[Affine], kind: Symmetry) -> bool:
     """Whether any two of the placements put a thing of this symmetry in one place, to a millionth of a millimetre."""
-    if len(placements) < 2:
-        return False
+    return len(placements) > 1 and len(np.unique(_keys(placements, kind), axis=0)) < len(placements)
+
+
+def shared_lines(placed: Sequence[tuple[int, Affine]], kind: Symmetry) -> list[tuple[int, int]]:
+    """Pairs of lines, the earlier first, that put a thing of this symmetry in one place; `placed` are line and place.
+
+    Each line is named once, with the first that it shares a place with. Copies of one line are left to `coincide`.
+    """
+    if len({line for line, _ in placed}) < 2:
+        return []
+    first: dict[bytes, int] = {}
+    found: dict[int, int] = {}
+    for (line, _), key in zip(placed, _keys([place for _, place in placed], kind), strict=True):
+        earlier = first.setdefault(key.tobytes(), line)
+        if earlier != line:
+            found.setdefault(line, earlier)
+    return [(earlier, line) for line, earlier in found.items()]
+
+
+def _keys(placements: Sequence[Affine], kind: Symmetry) -> NDArray[np.float64]:
+    """One row for each placement, equal where the thing stands in one place."""
     places = np.array(placements)
     linear, shifts = np.round(places[:, :, :3], 9), np.round(places[:, :, 3], 6)
     if kind == "ball":
         linear = np.round((places[:, :, :3] ** 2).sum(axis=1), 9)[:, None, :]
     elif kind == "round":
         linear = linear[:, :, 2:]
-    keys = np.concatenate((linear.reshape(len(places), -1), shifts), axis=1) + 0.0
-    return len(np.unique(keys, axis=0)) < len(keys)
+    return np.ascontiguousarray(np.concatenate((linear.reshape(len(places), -1), shifts), axis=1) + 0.0)
 
 
 def _shift(placement: Affine) -> tuple[float, float, float]:

@@ -409,12 +409,16 @@ def prove(things: Sequence[Thing], sources: Sequence[Span], mesher: Mesher) -> t
     """
     problems: dict[Problem, None] = {}
     for solid in _solids(things):
-        low, high = bounds(solid.recipe)
-        reach = max(b - a for a, b in zip(low, high, strict=True))
-        rung = first_at_most(reach / PROOF_PARTS) if reach > 0 else COARSEST
-        _, flaws = mesher(solid.recipe, rung)
+        _, flaws = mesher(solid.recipe, proof_rung(solid))
         problems.update((problem_of(flaw, solid, sources), None) for flaw in flaws)
     return tuple(problems)
+
+
+def proof_rung(solid: Solid) -> float:
+    """The chord error in mm at which a part is proved."""
+    low, high = bounds(solid.recipe)
+    reach = max(b - a for a, b in zip(low, high, strict=True))
+    return first_at_most(reach / PROOF_PARTS) if reach > 0 else COARSEST
 
 
 def _solids(things: Sequence[Thing]) -> list[Solid]:

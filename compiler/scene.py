@@ -14,8 +14,10 @@ from platewright.lang.problems import Problem, Related, Severity, is_error
 from platewright.lang.reader import read_value
 from platewright.lang.source import Span
 
+from .acceptance import Acceptance, read_acceptances, unused
 from .build import Model as Built
 from .build import build_model
+from .contacts import check_contacts, check_sizes
 from .dump import dump_graph, dump_tree, dump_triangles
 from .expect import judge_facts
 from .expressions import evaluate
@@ -39,6 +41,7 @@ Setting = tuple[str, str]
 """A parameter's name and its value as source text."""
 
 __all__ = [
+    "Acceptance",
     "Exported",
     "Listing",
     "Loader",
@@ -56,6 +59,7 @@ __all__ = [
     "open_scene",
     "plan",
     "prove",
+    "unused",
 ]
 
 
@@ -68,6 +72,7 @@ class Project:
     modules: Modules
     variants: tuple[Variant, ...]
     known: frozenset[tuple[str, Span]]
+    acceptances: tuple[Acceptance, ...] = ()
 
     @property
     def texts(self) -> Mapping[str, str]:
@@ -123,8 +128,10 @@ def open_scene(name: str, loader: Loader) -> tuple[Project | None, tuple[Problem
     problems.extend(named)
     problems.extend(check_names(modules, name))
     variants = read_variants(files, modules, problems)
+    acceptances, unread = read_acceptances(name, files.scenes)
+    problems.extend(unread)
     known = frozenset((each.code, each.span) for each in problems.all() if is_error(each))
-    return Project(name, files, modules, variants, known), problems.all()
+    return Project(name, files, modules, variants, known, acceptances), problems.all()
 
 
 def build(
@@ -173,7 +180,7 @@ def figure_names(project: Project) -> tuple[str, ...]:
 
 
 def prove(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
-    """Problems that only meshing shows: outlines that cross themselves, parts that are empty or fall into pieces.
+    """Problems that only meshing shows: outlines that cross themselves, parts that are empty, in pieces, or float.
 
     Covers every part of the model and of those of its figures.
     """
@@ -181,6 +188,9 @@ def prove(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
     models = {id(model.built): model.built, **{id(built): built for built, _ in model.specs.values()}}
     for built in models.values():
         problems.extend(prove_things(tuple(built.things.values()), built.sources, mesher))
+    # What a figure sets may lift parts off on purpose.
+    problems.extend(check_sizes(model.built.things[root] for root in model.built.roots))
+    problems.extend(check_contacts(tuple(model.built.things.values()), mesher))
     return problems.all()
 
 

@@ -24,6 +24,9 @@ STAGES: tuple[Stage, ...] = ("tree", "graph", "triangles")
 EXPORTS = ("csv", "stl", "ply", "obj", "glb")
 """Kinds of triangle list, each the suffix of its file."""
 
+_OF_FIGURES = ("cropped",)
+"""Codes of warnings that come only from laying a figure out."""
+
 _NOT_READ = {
     "missing": "there is no such file",
     "not a file": "it is not a regular file",
@@ -51,6 +54,8 @@ def check(
     model = _check_variant(session, None, figures)
     for variant in session.project.variants if session.project is not None and model is not None else ():
         _check_variant(session, variant, figures)
+    if session.project is not None and not session.findings.has_errors:
+        _report_unused(session, figures)
     dumped = _dump(session, model, stage) if model is not None and stage is not None else ""
     problems = session.findings.worded()
     if form == "text":
@@ -76,6 +81,14 @@ def _check_variant(session: Session, variant: Variant | None, figures: bool) -> 
             session.trace.stage = f"laying out figure {figure.name} of {title(variant)}"
             session.findings.add(plan(model, figure.name, session.mesher)[1], variant)
     return model
+
+
+def _report_unused(session: Session, figures: bool) -> None:
+    """Warn of what is accepted and never came up; of figures' warnings only where figures were laid out."""
+    from platewright.compiler.scene import unused
+
+    wanted = [each for each in session.findings.acceptances if figures or each.code not in _OF_FIGURES]
+    session.findings.add(unused(wanted, session.findings.used))
 
 
 def _dump(session: Session, model: Model, stage: Stage) -> str:

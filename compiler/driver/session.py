@@ -14,7 +14,7 @@ from . import crash, files, names
 from .meshes import KeptMeshes
 
 if TYPE_CHECKING:
-    from platewright.compiler.scene import Loader, Model, Project, Refusal, Setting, Variant
+    from platewright.compiler.scene import Acceptance, Loader, Model, Project, Refusal, Setting, Variant
 
 _MOST_NAMED_VARIANTS = 8
 
@@ -40,11 +40,16 @@ class Findings:
     """All problems of a run in the order found, each once, with the variants it was found in."""
 
     found: dict[Problem, list[Variant | None]] = field(default_factory=dict)
+    acceptances: tuple[Acceptance, ...] = ()
+    used: dict[Acceptance, None] = field(default_factory=dict)
 
     def add(self, problems: Iterable[Problem], variant: Variant | None = None) -> None:
-        """Take in problems of the scene's defaults or of one variant."""
+        """Take in problems of the scene's defaults or of one variant, but for warnings that the scene accepts."""
         for problem in problems:
-            self.found.setdefault(problem, []).append(variant)
+            covers = [each for each in self.acceptances if each.covers(problem)]
+            self.used.update((each, None) for each in covers)
+            if not covers:
+                self.found.setdefault(problem, []).append(variant)
 
     def worded(self, after: int = 0) -> tuple[Problem, ...]:
         """The problems but for the first `after` found, in the order of the text.
@@ -154,7 +159,7 @@ def open_session(scene: Path, folder: Path | None, trace: crash.Trace) -> Sessio
     project, problems = open_scene(place.name, loader(place, trace))
     if project is not None:
         problems = (*problems, *names.problems(project.variants, "variant"))
-    findings = Findings()
+    findings = Findings(acceptances=project.acceptances if project is not None else ())
     findings.add(problems)
     return Session(project, problems, trace, findings)
 

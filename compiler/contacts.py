@@ -1,0 +1,235 @@
+"""What stands oddly in a model: a part that touches nothing it is placed with, a model of no likely size.
+
+Judged on the meshes of the proof, so nearer than their chord errors counts as touching. Boxes decide first; the true
+gap is asked for only where they meet. The work is bounded, and what a bound leaves open is not reported.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator, Sequence
+from dataclasses import dataclass, field
+
+import manifold3d
+import numpy as np
+from numpy.typing import NDArray
+from platewright.backend.contract import PatchKind
+from platewright.lang.problems import Problem
+
+from .flatten import Mesher, proof_rung
+from .graph import Assembly, Occurrence, Solid, Thing
+from .mistakes import Problems
+from .solids.bounds import bounds
+from .solids.transform import largest_scale
+
+F64 = NDArray[np.float64]
+
+SMALLEST_MODEL = 0.1
+"""mm; a smaller model is likely to be given in a wrong unit."""
+LARGEST_MODEL = 100_000.0
+"""mm; so is a larger one."""
+MOST_GAPS = 400
+"""Gaps measured in one model."""
+MOST_NEIGHBOURS = 12
+"""Gaps measured for one copy, and for one pair of copies."""
+MOST_BOXES = 100_000_000
+"""Boxes compared in one model."""
+_FLUSH = 1e-6
+"""Of its size: flat parts nearer than this touch."""
+
+
+def check_sizes(roots: Iterable[Thing]) -> tuple[Problem, ...]:
+    """Warnings for whole models under 0.1 mm or over 100 m."""
+    problems, leaves = Problems(), _Leaves()
+    for root in roots:
+        found = leaves.of(root)
+        reach = float((found.high.max(axis=0) - found.low.min(axis=0)).max()) if len(found.solids) else 1.0
+        hint = "check its units, or accept it by the code of this warning"
+        if 0.0 < reach < SMALLEST_MODEL:
+            problems.warn("tiny-model", root.span, f"the whole of `{root.name}` is only {reach:g} mm long", hint)
+        if reach > LARGEST_MODEL:
+            problems.warn("huge-model", root.span, f"the whole of `{root.name}` is {reach / 1000:g} m long", hint)
+    return problems.all()
+
+
+def check_contacts(things: Sequence[Thing], mesher: Mesher) -> tuple[Problem, ...]:
+    """Warnings for copies that touch nothing else placed in their assembly, one for each `place` line, or one for all.
+
+    Cost: boxes of all copies, and at most `MOST_GAPS` gaps between meshes of the proof.
+    """
+    problems, contacts = Problems(), _Contacts(mesher)
+    hint = 'move it, or say `accept "floating-part"` where it is meant'
+    for assembly in _assemblies(things):
+        floating = list(contacts.floating(assembly))
+        n_copies = sum(len(occurrence.copies) for occurrence in assembly.occurrences)
+        if floating and sum(n for _, n in floating) == n_copies:
+            sentence = f"none of the {n_copies} things placed in `{assembly.name}` touches another"
+            problems.warn("floating-part", assembly.span, sentence, hint.replace("move it", "move them"))
+            continue
+        for occurrence, n_floating in floating:
+            n = len(occurrence.copies)
+            named = f"`{occurrence.name}`" if n == 1 else f"{n_floating} of the {n} copies of `{occurrence.name}`"
+            verb = "touches" if n_floating == 1 else "touch"
+            sentence = f"{named} {verb} nothing else in `{assembly.name}`"
+            problems.warn("floating-part", occurrence.span, sentence, hint)
+    return problems.all()
+
+
+def _assemblies(things: Sequence[Thing]) -> list[Assembly]:
+    seen: dict[int, Thing] = {}
+    pending = list(reversed(things))
+    while pending:
+        thing = pending.pop()
+        if id(thing) not in seen:
+            seen[id(thing)] = thing
+            if isinstance(thing, Assembly):
+                pending.extend(copy.thing for each in reversed(thing.occurrences) for copy in reversed(each.copies))
+    return [thing for thing in seen.values() if isinstance(thing, Assembly)]
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class _Placed:
+    """Solids below a thing: placements (k,3,4) in its frame, boxes low (k,3) and high (k,3)."""
+
+    solids: tuple[Solid, ...]
+    placements: F64
+    low: F64
+    high: F64
+
+
+@dataclass(slots=True)
+class _Leaves:
+    """The solids below things, worked out once for each thing. Things hold each other at most `limits.NESTING` deep."""
+
+    known: dict[int, _Placed] = field(default_factory=dict)
+
+    def of(self, thing: Thing) -> _Placed:
+        """All solids below a thing."""
+        if id(thing) not in self.known:
+            self.known[id(thing)] = self._solid(thing) if isinstance(thing, Solid) else self._assembly(thing)
+        return self.known[id(thing)]
+
+    def _solid(self, solid: Solid) -> _Placed:
+        low, high = bounds(solid.recipe)
+        return _Placed((solid,), np.eye(3, 4)[None], np.array([low]), np.array([high]))
+
+    def _assembly(self, assembly: Assembly) -> _Placed:
+        parts = [self.copy(copy.thing, copy.placement) for each in assembly.occurrences for copy in each.copies]
+        return _Placed(
+            tuple(solid for part in parts for solid in part.solids),
+            np.concatenate([np.empty((0, 3, 4)), *(part.placements for part in parts)]),
+            np.concatenate([np.empty((0, 3)), *(part.low for part in parts)]),
+            np.concatenate([np.empty((0, 3)), *(part.high for part in parts)]),
+        )
+
+    def copy(self, thing: Thing, placement: Sequence[Sequence[float]]) -> _Placed:
+        """All solids below a placed copy, in the frame it is placed in."""
+        inner, outer = self.of(thing), np.array(placement, np.float64)
+        placements = outer[:, :3] @ inner.placements
+        placements[:, :, 3] += outer[:, 3]
+        middle = (inner.low + inner.high) / 2 @ outer[:, :3].T + outer[:, 3]
+        reach = (inner.high - inner.low) / 2 @ np.abs(outer[:, :3]).T
+        return _Placed(inner.solids, placements, middle - reach, middle + reach)
+
+
+@dataclass(slots=True)
+class _Contacts:
+    mesher: Mesher
+    leaves: _Leaves = field(default_factory=_Leaves)
+    gaps: int = MOST_GAPS
+    boxes: int = MOST_BOXES
+    known: dict[tuple[int, int, bytes], bool] = field(default_factory=dict)
+    solids: dict[int, tuple[manifold3d.Manifold | None, float]] = field(default_factory=dict)
+
+    def floating(self, assembly: Assembly) -> Iterator[tuple[Occurrence, int]]:
+        """Lines of which some copies touch nothing, and how many."""
+        copies = [(each, copy) for each in assembly.occurrences for copy in each.copies]
+        if len(copies) < 2:
+            return
+        placed = [self.leaves.copy(copy.thing, copy.placement) for _, copy in copies]
+        if any(not len(each.solids) for each in placed):
+            return
+        low = np.array([each.low.min(axis=0) for each in placed])
+        high = np.array([each.high.max(axis=0) for each in placed])
+        reach = np.array([max(self._near(solid) for solid in set(each.solids)) for each in placed])
+        touches = np.zeros(len(copies), np.bool_)
+        for k in range(len(copies)):
+            if touches[k]:
+                continue
+            other = self._neighbour(k, placed, (low, high), reach)
+            touches[k] = other is not None
+            if other is not None and other >= 0:
+                touches[other] = True
+        for occurrence in assembly.occurrences:
+            n = sum(1 for (each, _), touch in zip(copies, touches, strict=True) if each is occurrence and not touch)
+            if n:
+                yield occurrence, n
+
+    def _neighbour(self, k: int, placed: Sequence[_Placed], box: tuple[F64, F64], reach: F64) -> int | None:
+        """A copy that copy k touches, -1 where a bound leaves that open, None where there is none."""
+        low, high = box
+        self.boxes -= len(placed)
+        if self.boxes < 0:
+            return -1
+        near = reach[k] + reach
+        meets = (low <= high[k] + near[:, None]).all(axis=1) & (high >= low[k] - near[:, None]).all(axis=1)
+        meets[k] = False
+        others = np.flatnonzero(meets)
+        shared = np.minimum(high[others], high[k]) - np.maximum(low[others], low[k])
+        others = others[np.argsort(-shared.min(axis=1), kind="stable")]
+        for other in others[:MOST_NEIGHBOURS].tolist():
+            if self._touch(placed[k], placed[other]):
+                return int(other)
+        return -1 if len(others) > MOST_NEIGHBOURS else None
+
+    def _touch(self, one: _Placed, other: _Placed) -> bool:
+        near = np.array([self._near(solid) for solid in one.solids])
+        also = np.array([self._near(solid) for solid in other.solids])
+        tested = 0
+        for k in range(len(one.solids)):
+            reach = (near[k] + also)[:, None]
+            meets = (other.low <= one.high[k] + reach).all(axis=1) & (other.high >= one.low[k] - reach).all(axis=1)
+            for j in np.flatnonzero(meets).tolist():
+                tested += 1
+                if tested > MOST_NEIGHBOURS or self._meet(one, k, other, j):
+                    return True
+        return False
+
+    def _meet(self, one: _Placed, k: int, other: _Placed, j: int) -> bool:
+        """Whether two solids touch; yes where no more gaps may be measured."""
+        a, b = one.placements[k], other.placements[j]
+        inverse = np.linalg.inv(a[:, :3])
+        between = np.column_stack((inverse @ b[:, :3], inverse @ (b[:, 3] - a[:, 3])))
+        key = (id(one.solids[k]), id(other.solids[j]), (np.round(between, 7) + 0.0).tobytes())
+        if key not in self.known:
+            self.gaps -= 1
+            if self.gaps < 0:
+                return True
+            solids = [self._solid(one.solids[k]), self._solid(other.solids[j])]
+            if solids[0][0] is None or solids[1][0] is None:
+                return True
+            near = self._near(one.solids[k]) * _scale(a) + self._near(other.solids[j]) * _scale(b)
+            gap = solids[0][0].transform(a).min_gap(solids[1][0].transform(b), 2.0 * near)
+            self.known[key] = bool(gap <= near)
+        return self.known[key]
+
+    def _near(self, solid: Solid) -> float:
+        return self._solid(solid)[1]
+
+    def _solid(self, solid: Solid) -> tuple[manifold3d.Manifold | None, float]:
+        """A solid as the boolean kernel has it, and how near another may be to touch it."""
+        if id(solid) not in self.solids:
+            rung = proof_rung(solid)
+            mesh, _ = self.mesher(solid.recipe, rung)
+            made, near = None, rung
+            if mesh is not None:
+                faces = mesh.faces.astype(np.uint64)
+                made = manifold3d.Manifold(manifold3d.Mesh64(np.ascontiguousarray(mesh.vertices), faces))
+                is_flat = bool((mesh.patches.kind == PatchKind.PLANE).all())
+                near = _FLUSH * float(np.ptp(mesh.vertices, axis=0).max()) if is_flat else 2.0 * rung
+            self.solids[id(solid)] = made, near
+        return self.solids[id(solid)]
+
+
+def _scale(placement: F64) -> float:
+    a, b, c = placement.tolist()
+    return largest_scale((tuple(a), tuple(b), tuple(c)))
