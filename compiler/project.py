@@ -44,19 +44,19 @@ class Files:
     sees: Mapping[str, tuple[tuple[str, str, Span], ...]]
 
 
+POINT_TABLES = ("points over", "curve over")
+"""Words whose table holds points, so that its first column need not name the rows."""
+
 _REASONS = {
     "missing": "there is no file `{name}`",
+    "no library": "no library comes with the program as `{name}`",
     "outside": "`{name}` lies outside the project's folder",
     "too large": f"`{{name}}` is larger than {limits.FILE_BYTES:,} bytes, the limit",
     "not a file": "`{name}` is not a file",
-    "no library": "no library comes with the program as `{name}`",
     "unreadable": "`{name}` cannot be read",
     "too many": f"the scene sees more than {limits.FILES} files, the limit",
 }
 
-
-def load(main: str, loader: Loader) -> tuple[Files | None, tuple[Problem, ...]]:
-    """Read `main` and, from file to file, all that it sees. Names are POSIX paths relative to the project's folder.
 
 LIBRARY = "library:/"
 """Where the files that come with the program stand among those of a scene; no file of a project can stand there."""
@@ -69,6 +69,9 @@ def read_library(name: str) -> bytes | Refusal:
     found = known.get(name.removeprefix(LIBRARY))
     return found.read_bytes() if found is not None else Refusal("no library")
 
+
+def load(main: str, loader: Loader) -> tuple[Files | None, tuple[Problem, ...]]:
+    """Read `main` and, from file to file, all that it sees. Names are POSIX paths relative to the project's folder.
 
     None only where `main` itself gives no text. Cost: linear in the texts.
     """
@@ -148,13 +151,13 @@ class _Reading:
 
     def _sees(self, scene: tree.Scene) -> Iterator[tuple[str, str, Span]]:
         for line in scene.lines:
-            if line.word == "see":
-                prefix, wanted = line.head.get("prefix"), self._constant(line.head.get("file"))
-                if isinstance(prefix, tree.Name) and wanted is not None:
             if line.word == "see library":
                 prefix, wanted = line.head.get("prefix"), self._constant(line.head.get("library"))
                 if isinstance(prefix, tree.Name) and wanted is not None:
                     yield prefix.text, f"{LIBRARY}{wanted[0]}.plate", wanted[1]
+            if line.word == "see":
+                prefix, wanted = line.head.get("prefix"), self._constant(line.head.get("file"))
+                if isinstance(prefix, tree.Name) and wanted is not None:
                     target = self._within(scene.file, *wanted)
                     if target:
                         yield prefix.text, target, wanted[1]
@@ -168,7 +171,7 @@ class _Reading:
             if target and target not in self.texts:
                 text = self.text(target, wanted[1])
                 if text is not None:
-                    table, problems = read_table(target, text)
+                    table, problems = read_table(target, text, reading.word not in POINT_TABLES)
                     self.problems.extend(problems)
                     if table is not None:
                         self.tables[target] = table
