@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -167,7 +169,7 @@ def _sector(low: Point2, high: Point2, angle: float) -> F64:
     marks = sorted({0.0, angle, *(quarter for quarter in (90.0, 180.0, 270.0) if quarter < angle)})
     corners = [(r * cos_deg(a), r * sin_deg(a)) for a in (0.0, angle) for r in (low[0], high[0])]
     corners += [(high[0] * cos_deg(a), high[0] * sin_deg(a)) for a in marks]
-    for a, b in zip(marks, marks[1:], strict=False):
+    for a, b in pairwise(marks):
         far, middle = high[0] / cos_deg((b - a) / 2.0), (a + b) / 2.0
         corners.append((far * cos_deg(middle), far * sin_deg(middle)))
     points = np.array(corners)

@@ -187,8 +187,7 @@ def _round_corner(
 
 def _common_point(normals: F64, heights: F64) -> F64:
     """The point that several planes have in common, by least squares where there are more than three."""
-    point: F64 = np.linalg.solve(normals.T @ normals, normals.T @ heights)
-    return point
+    return np.asarray(np.linalg.solve(normals.T @ normals, normals.T @ heights), np.float64)
 
 
 def _shrunk(vertices: F64, polygons: Sequence[Sequence[int]], by: float) -> F64:
@@ -224,7 +223,7 @@ def _chamfered(vertices: F64, polygons: Sequence[Sequence[int]], by: float) -> t
             row[v, f] = len(points)
             points.append(vertices[v] + by / math.sqrt(float(turn @ turn)) * (before + after))
     tips: dict[int, int] = {}
-    for (v, f), at in list(row.items()):
+    for v, f in list(row):
         if v in tips:
             continue
         ring = _round_corner(v, sides, polygons, f)

@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 import manifold3d
 import numpy as np
@@ -17,9 +18,9 @@ from numpy.typing import NDArray
 from platewright.backend.contract import PatchKind
 
 from ..trigonometry import cos_deg, sin_deg, tan_deg
-from .curve import Curve, count_chords, divided, end_tangents, points_at, shares_of
+from .curve import Curve, count_chords, divided, end_tangents, points_at, shares_of, unit
 from .ladder import divisions
-from .outline import OutlineFlaw, contact, extent, inside, oriented, polyline
+from .outline import OutlineFlaw, Polyline, contact, extent, inside, oriented
 from .plane import Corner, PlaneFlaw, cornered, inset, is_smooth
 from .recipe import Extrude
 from .revolve import strip
@@ -75,9 +76,8 @@ def check(shape: Extrude, rim: Corner | None) -> None:
             for curve, (points, tangents) in zip(loop, pieces, strict=True):
                 if curve.is_free and ((np.diff(points, axis=0) * tangents[:-1]).sum(axis=1) <= 0.0).any():
                     raise PlaneFlaw("parallel-crosses-itself", f"a curve bends more sharply than {distance:.6g} mm")
-            line = polyline(curves, 0.0) if not any(c.is_free for c in curves) else None
-            ring = np.concatenate([points[:-1] for points, _ in pieces]) if line is None else line.points
-            lines.append(polyline(tuple(Curve(_point(a), _point(b)) for a, b in zip(ring, np.roll(ring, -1, 0))), 0.0))
+            ring = np.concatenate([points[:-1] for points, _ in pieces])
+            lines.append(_polygon(ring))
             if (_polygon_area(ring) > 0.0) != (k == 0):
                 raise PlaneFlaw("parallel-vanishes", f"nothing is left of the outline {distance:.6g} mm inside it")
         touch = contact(lines)
@@ -129,6 +129,7 @@ def reach(shape: Extrude) -> tuple[F64, F64]:
 
 def stack(shape: Extrude, rim: Corner | None, rung: float) -> Shell:
     """The closed shell of an extrusion with taper, twist or rims, for an outline that `check` has passed."""
+    rung = _fine_enough(shape, rim, rung)
     wall = profile(shape, rim)
     levels = _levels(shape, rim, rung)
     turn = _turn_of(levels)
@@ -166,6 +167,21 @@ def stack(shape: Extrude, rim: Corner | None, rung: float) -> Shell:
         rows.append((PatchKind.PLANE, plane((0.0, 0.0, height), (0.0, 0.0, up), (1.0, 0.0, 0.0)), 0.0, False))
     is_free = any(row[0] == PatchKind.FREE for row in rows)
     return shell(np.concatenate(vertices), pieces, surfaces(rows), np.concatenate(normals) if is_free else None)
+
+
+def _fine_enough(shape: Extrude, rim: Corner | None, rung: float) -> float:
+    """The rung, or a finer one where coarse chords of the loops would touch each other at one of the ends."""
+    loops = loops_of(shape)
+    if len(loops) == 1 and all(curve.is_line for curve in loops[0]):
+        return rung
+    for _ in range(3):
+        levels = _levels(shape, rim, rung)
+        turn = _turn_of(levels)
+        ends = [[_ring(loop, level, rung, turn).points for loop in loops] for level in (levels[0], levels[-1])]
+        if all(contact([_polygon(ring) for ring in rings]) is None for rings in ends):
+            break
+        rung /= 4.0
+    return rung
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -239,7 +255,7 @@ def _twist_steps(shape: Extrude, rung: float) -> int:
 
 def _turn_of(levels: Sequence[_Level]) -> float:
     """The angle between two levels at most, radians."""
-    return max(math.radians(abs(b.angle - a.angle)) for a, b in zip(levels, levels[1:], strict=False))
+    return max(math.radians(abs(b.angle - a.angle)) for a, b in pairwise(levels))
 
 
 def _shares(curves: Sequence[Curve], moved: Sequence[Curve], c: int, rung: float, turn: float) -> F64:
@@ -358,5 +374,7 @@ def _polygon_area(points: F64) -> float:
     return float((points[:, 0] * after[:, 1] - after[:, 0] * points[:, 1]).sum()) / 2.0
 
 
-def _point(array: F64) -> tuple[float, float]:
-    return (float(array[0]), float(array[1]))
+def _polygon(points: F64) -> Polyline:
+    after = np.roll(points, -1, axis=0)
+    along = unit(after - points)
+    return Polyline(points, np.arange(len(points), dtype=np.int32), (), np.stack((along, along), axis=1))
