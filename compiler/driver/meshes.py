@@ -14,9 +14,13 @@ _MOST_FACES = 10_000_000
 
 
 class KeptMeshes:
-    """A mesher (`compiler.flatten.Mesher`) that builds each recipe at each rung once. Results never depend on it."""
+    """A mesher (`compiler.flatten.Mesher`) that builds each recipe at each rung once. Results never depend on it.
+
+    `n_built` counts what has been built.
+    """
 
     def __init__(self) -> None:
+        self.n_built = 0
         self._kept: dict[tuple[Recipe, float], tuple[Mesh | None, tuple[Flaw, ...]]] = {}
         self._n_faces = 0
 
@@ -33,5 +37,6 @@ class KeptMeshes:
             self._kept.clear()
             self._n_faces = 0
         mesh, flaws = build(recipe, rung)
+        self.n_built += 1
         self._kept[recipe, rung] = mesh, flaws
         self._n_faces += 0 if mesh is None else len(mesh.faces)
