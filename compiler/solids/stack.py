@@ -153,10 +153,13 @@ def stack(shape: Extrude, rim: Corner | None, rung: float) -> Shell:
         n_vertices = start
         for k in range(len(levels) - 1):
             for c in range(len(loop)):
-                faces, corner = _band(rings[k], rings[k + 1], levels[k], levels[k + 1], c, shape)
+                row = first_row + levels[k].stage * len(loop) + c
+                faces = strip(rings[k].shares[c], rings[k + 1].shares[c])
                 low, high = rings[k].index(c) + starts[k], rings[k + 1].index(c) + starts[k + 1]
-                pieces.append((np.concatenate((low, high))[faces], first_row + levels[k].stage * len(loop) + c))
-                normals.append(corner)
+                pieces.append((np.concatenate((low, high))[faces], row))
+                is_free = rows[row][0] == PatchKind.FREE
+                corner = _band_normals(rings[k : k + 2], levels[k : k + 2], c, shape)[faces] if is_free else None
+                normals.append(np.zeros((len(faces), 3, 3)) if corner is None else corner)
         bottoms.append((rings[0].points, starts[0] + np.arange(len(rings[0].points))))
         tops.append((rings[-1].points, starts[-1] + np.arange(len(rings[-1].points))))
     for ends, height, up in ((bottoms, 0.0, -1.0), (tops, shape.length, 1.0)):
@@ -317,14 +320,13 @@ def _raised(points: F64, level: _Level) -> F64:
     return np.column_stack((c * x - s * y, s * x + c * y, np.full(len(x), level.height)))
 
 
-def _band(low: _Ring, high: _Ring, below: _Level, above: _Level, c: int, shape: Extrude) -> tuple[I64, F64]:
-    """Triangles between two levels along one curve, on its points below and then above, and their normals."""
-    faces = strip(low.shares[c], high.shares[c])
+def _band_normals(rings: Sequence[_Ring], levels: Sequence[_Level], c: int, shape: Extrude) -> F64:
+    """Normals (k,3) at the points of one curve at one level and then at the next."""
     ends = []
-    for ring, level, way in ((low, below, below.above), (high, above, above.below)):
+    for ring, level, way in zip(rings, levels, (levels[0].above, levels[1].below), strict=True):
         points, tangents = ring.points[ring.index(c)], ring.tangents[c]
         ends.append(_normals(points, tangents, way, level.angle, math.radians(shape.twist) / shape.length))
-    return faces, np.concatenate(ends)[faces]
+    return np.concatenate(ends)
 
 
 def _normals(points: F64, tangents: F64, way: F64, angle: float, twist: float) -> F64:
