@@ -172,7 +172,10 @@ class _Way:
             case "curve through":
                 points = _points(line.head, self.scope)
                 self._add(
-                    _spline(self.here, points, self._tangent(line) if word(line.head, "start") else None, line), line
+                    _spline(
+                        self.here, points, self._tangent(line) if word(line.head, "start") == "tangent" else None, line
+                    ),
+                    line,
                 )
             case "points over" | "curve over":
                 self._follow(line, _table_points(line.head, self.around))
