@@ -76,7 +76,8 @@ def area_of(text: str, extra: str = "") -> float:
         (lines("from (4 mm, 0)\nto (10 mm, 3 mm)\nmirrored across y"), 18.0),
         (
             lines(
-                "from (-5 mm, 0)\nto (-5 mm, -3 mm)\nround to (5 mm, -3 mm) radius 5 mm right\nto (5 mm, 0)\nmirrored across y"
+                "from (-5 mm, 0)\nto (-5 mm, -3 mm)\nround to (5 mm, -3 mm) radius 5 mm right\n"
+                "to (5 mm, 0)\nmirrored across y"
             ),
             60.0 + PI * 25,
         ),
