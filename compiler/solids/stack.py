@@ -104,10 +104,12 @@ def count_triangles(shape: Extrude, rim: Corner | None, rung: float) -> int:
     """Triangles of `stack` at most, for an outline that `check` has passed."""
     levels = _levels(shape, rim, rung)
     turn = _turn_of(levels)
+    insets = [level.inset for level in levels]
     total = 0
     for loop in loops_of(shape):
-        widest = max(count for count in (_ring_size(loop, level.inset, rung, turn) for level in levels))
-        total += 2 * widest * (len(levels) - 1) + 4 * widest
+        # An arc grows or shrinks steadily with the inset, so its division is largest at one of the ends.
+        sizes = [_divisions(loop, distance, rung, turn) for distance in (min(insets), max(insets))]
+        total += sum(map(max, *sizes)) * (2 * (len(levels) - 1) + 4)
     return total
 
 
@@ -284,9 +286,10 @@ def _length(curve: Curve) -> float:
     return float(np.hypot(*np.diff(points, axis=0).T).sum())
 
 
-def _ring_size(loop: tuple[Curve, ...], distance: float, rung: float, turn: float) -> int:
+def _divisions(loop: tuple[Curve, ...], distance: float, rung: float, turn: float) -> list[int]:
+    """Chords of each curve of a loop at an inset."""
     moved = inset(loop, distance) if distance else loop
-    return sum(len(_shares(loop, moved, c, rung, turn)) - 1 for c in range(len(loop)))
+    return [len(_shares(loop, moved, c, rung, turn)) - 1 for c in range(len(loop))]
 
 
 def _ring(loop: tuple[Curve, ...], level: _Level, rung: float, turn: float) -> _Ring:
