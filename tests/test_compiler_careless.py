@@ -562,7 +562,7 @@ SCENES = [
     ),
     Hostile(
         "a shape not drawn yet",
-        "outline o\n    circle diameter 4 mm\npart p\n    add extrude o by 4 mm taper 5 deg\n",
+        part('add lettering "OPEN" capitals 5 mm depth 0.5 mm'),
         ("not-drawn-yet",),
     ),
     Hostile(

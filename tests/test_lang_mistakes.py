@@ -284,7 +284,7 @@ material b
 ---
 outline w
     round to (1 mm, 2 mm)
-> 2:26 missing-value: expected `radius` or `through` behind `(1 mm, 2 mm)` | for example `round to (0, 20 mm) radius 10 mm left`
+> 2:26 missing-value: expected `radius`, `through` or `tangent` behind `(1 mm, 2 mm)` | for example `round to (0, 20 mm) radius 10 mm left`
 ---
 lighting sunny
     sun elevation 30 deg
