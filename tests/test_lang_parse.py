@@ -254,7 +254,7 @@ def test_names_of_broken_lines_are_kept() -> None:
 
 
 def test_not_drawn_yet_is_confined_to_its_figure() -> None:
-    text = "sequence s\n    step open\nfigure f\n    items\nfigure h1\n    drawn as tone\n"
+    text = "sequence cleaning\n    step open\nfigure f\n    items\nfigure h1\n    drawn as tone\n"
     problems = read_scene("a", text)[1]
     assert [(p.code, p.span.line, p.within) for p in problems] == [("not-drawn-yet", 1, ""), ("not-drawn-yet", 4, "f")]
 
