@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Mapping
-from dataclasses import dataclass
 
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.codes import CODES
 from platewright.lang.nearest import nearest
@@ -15,8 +15,7 @@ from .mistakes import Problems
 from .scope import did_you_mean
 
 
-@dataclass(frozen=True, slots=True)
-class Acceptance:
+class Acceptance(Struct, frozen=True):
     """One code accepted: where that is said, and where it holds, in all files or within a stretch of one."""
 
     code: str

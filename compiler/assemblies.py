@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
+from msgspec import Struct, field
 from platewright.lang import tree
 from platewright.lang.problems import Related
 from platewright.lang.units import LENGTH
@@ -71,8 +71,7 @@ def _shared(occurrences: list[Occurrence], problems: Problems) -> None:
             problems.warn("coincident-copies", occurrences[later].span, sentence, "leave one of the two out", related)
 
 
-@dataclass(slots=True)
-class _Placing:
+class _Placing(Struct):
     """A `place` line while it is read."""
 
     things: Instances

@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
 from typing import Generic, TypeVar
 
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.problems import Problem
 from platewright.lang.source import Span
@@ -25,16 +25,14 @@ from .viewpoints import Viewpoint, read_viewpoint
 _Read = TypeVar("_Read")
 
 
-@dataclass(frozen=True, slots=True)
-class Described(Generic[_Read]):
+class Described(Struct, Generic[_Read], frozen=True):
     """What a viewpoint or lighting says, None where its problems forbid its use."""
 
     value: _Read | None
     problems: tuple[Problem, ...]
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Model:
+class Model(Struct, frozen=True, eq=False):
     """One variant of a scene, evaluated.
 
     `things` are the parts and assemblies of the main file that have all parameters, `roots` the names of those that

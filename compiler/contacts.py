@@ -7,10 +7,10 @@ gap is asked for only where they meet. The work is bounded, and what a bound lea
 from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Sequence
-from dataclasses import dataclass, field
 
 import manifold3d
 import numpy as np
+from msgspec import Struct, field
 from numpy.typing import NDArray
 from platewright.backend.contract import PatchKind
 from platewright.lang.problems import Problem
@@ -86,8 +86,7 @@ def _assemblies(things: Sequence[Thing]) -> list[Assembly]:
     return [thing for thing in seen.values() if isinstance(thing, Assembly)]
 
 
-@dataclass(frozen=True, eq=False, slots=True)
-class _Placed:
+class _Placed(Struct, frozen=True, eq=False):
     """Solids below a thing: placements (k,3,4) in its frame, boxes low (k,3) and high (k,3)."""
 
     solids: tuple[Solid, ...]
@@ -96,8 +95,7 @@ class _Placed:
     high: F64
 
 
-@dataclass(slots=True)
-class _Leaves:
+class _Leaves(Struct):
     """The solids below things, worked out once for each thing. Things hold each other at most `limits.NESTING` deep."""
 
     known: dict[int, _Placed] = field(default_factory=dict)
@@ -131,8 +129,7 @@ class _Leaves:
         return _Placed(inner.solids, placements, middle - reach, middle + reach)
 
 
-@dataclass(slots=True)
-class _Contacts:
+class _Contacts(Struct):
     mesher: Mesher
     leaves: _Leaves = field(default_factory=_Leaves)
     gaps: int = MOST_GAPS

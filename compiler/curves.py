@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, field
 
+from msgspec import Struct, field
 from platewright.lang import tree
 from platewright.lang.source import Span
 from platewright.lang.units import LENGTH, NUMBER
@@ -52,8 +52,7 @@ def points_of(reading: tree.Reading, scope: Scope) -> list[Point3]:
     return [point(each, scope) for each in listed if not isinstance(each, (tree.Setting, tree.Parameter, tree.Name))]
 
 
-@dataclass(slots=True)
-class _Way:
+class _Way(Struct):
     """A path while its lines are read; `spans` are the lines of its stretches."""
 
     scope: Scope

@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from typing import Literal
 
 import numpy as np
+from msgspec.structs import replace
 from platewright.backend import camera, contract
 from platewright.backend.contract import F64
 from platewright.lang import tree

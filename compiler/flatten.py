@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
 from typing import TypeVar
 
 import numpy as np
+from msgspec import Struct
 from numpy.typing import NDArray
 from platewright.backend import contract
 from platewright.backend.contract import F64, I32, Geometry, Material, Mesh, Patches, PatchKind
@@ -33,8 +33,7 @@ PROOF_PARTS = 200.0
 """A part is proved at a chord error of its largest side over this."""
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Flattened:
+class Flattened(Struct, frozen=True, eq=False):
     """World-space triangles and the materials their nodes refer to."""
 
     geometry: Geometry

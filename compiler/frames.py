@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
+from msgspec import Struct
 from platewright.backend import camera
 from platewright.backend.contract import F64, Projection
 from platewright.lang.source import Span
@@ -29,8 +29,7 @@ STANDARD_SCALES = tuple(
 Style = Literal["tone", "survey part", "survey depth", "survey facing"]
 
 
-@dataclass(frozen=True, slots=True)
-class Spec:
+class Spec(Struct, frozen=True):
     """What a figure says, with its values fixed and its defaults filled in. Lengths are mm on paper."""
 
     name: str
@@ -52,8 +51,7 @@ class Spec:
     description: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class Frame:
+class Frame(Struct, frozen=True):
     """A page and the projection onto it. `magnification` is mm on paper a model mm at the nearest point."""
 
     width: float

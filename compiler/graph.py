@@ -7,9 +7,9 @@ part tree with its stable paths; nothing is expanded before that.
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, field
 from typing import TypeAlias
 
+from msgspec import Struct, field
 from platewright.lang.source import Span
 
 from .materials import Surface
@@ -19,8 +19,7 @@ from .solids.transform import IDENTITY, compose
 Point = tuple[float, float, float]
 
 
-@dataclass(frozen=True, slots=True)
-class Mark:
+class Mark(Struct, frozen=True):
     """A named point of a thing in the thing's own frame, with an axis where one is given."""
 
     name: str
@@ -29,8 +28,7 @@ class Mark:
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class FeatureCopy:
+class FeatureCopy(Struct, frozen=True):
     """What one `add` or `cut` line made, in the part's frame: middle, axis, end of the axis, diameter if it is
     round, and what stands in brackets behind its name.
     """
@@ -42,8 +40,7 @@ class FeatureCopy:
     diameter: float | None
 
 
-@dataclass(frozen=True, slots=True)
-class Feature:
+class Feature(Struct, frozen=True):
     """A named feature of a part and its copies; none where its `when` held for no copy."""
 
     name: str
@@ -51,8 +48,7 @@ class Feature:
     span: Span
 
 
-@dataclass(frozen=True, slots=True)
-class Thread:
+class Thread(Struct, frozen=True):
     """A thread that is drawn by convention, in the part's frame: the middle of one end, the unit axis, sizes in mm."""
 
     start: Point
@@ -65,8 +61,7 @@ class Thread:
     left: bool
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Solid:
+class Solid(Struct, frozen=True, eq=False):
     """A part with its parameters fixed.
 
     `n_shapes` counts the shapes it is made of, with all copies; `n_levels` the parts within parts, itself among them.
@@ -83,8 +78,7 @@ class Solid:
     threads: tuple[Thread, ...] = ()
 
 
-@dataclass(frozen=True, slots=True)
-class Copy:
+class Copy(Struct, frozen=True):
     """One placed copy: its label (`""` for a single one, else what stands in brackets), the thing, and its place."""
 
     label: str
@@ -92,8 +86,7 @@ class Copy:
     placement: Affine
 
 
-@dataclass(frozen=True, slots=True)
-class Occurrence:
+class Occurrence(Struct, frozen=True):
     """One `place` line: a name and its copies; none where its `when` held for no copy.
 
     `explodes` is a vector in the assembly's frame, one for each copy.
@@ -105,8 +98,7 @@ class Occurrence:
     span: Span
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Assembly:
+class Assembly(Struct, frozen=True, eq=False):
     """An assembly with its parameters fixed.
 
     `n_nodes` counts everything below it and itself, `n_levels` the things within things.
@@ -123,8 +115,7 @@ class Assembly:
 Thing: TypeAlias = Solid | Assembly
 
 
-@dataclass(frozen=True, slots=True)
-class Entry:
+class Entry(Struct, frozen=True):
     """One entry of the walked tree. `placement` maps the thing's frame to the root's; parents come before children."""
 
     path: str

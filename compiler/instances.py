@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass, field
 from typing import TypeVar
 
+from msgspec import Struct, field
 from platewright.lang import tree
 from platewright.lang.problems import Related
 from platewright.lang.source import Span
@@ -29,8 +29,7 @@ _Key = tuple[str, str, object]
 _Made = TypeVar("_Made")
 
 
-@dataclass(slots=True)
-class Instances:
+class Instances(Struct):
     """Makes things on demand and keeps them for one evaluation; problems are collected on the way.
 
     `placed` are the things that another holds, by file and name; `sources` the lines that recipes refer to by row.

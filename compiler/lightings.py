@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from math import pi
 
+from msgspec import Struct
 from platewright.backend import contract
 from platewright.backend.contract import Light
 from platewright.lang import tree
@@ -29,8 +29,7 @@ WHITE = 0.82
 """Linear value that the automatic exposure gives a white matt surface that faces the light: short of paper white."""
 
 
-@dataclass(frozen=True, slots=True)
-class Source:
+class Source(Struct, frozen=True):
     """One source. `vector`: for `picture` the direction toward the light in (right, up, toward the viewer), for `sun`
     in the world, for `lamp` its place in mm. `strength`: lux, for a lamp candela."""
 
@@ -39,8 +38,7 @@ class Source:
     strength: float
 
 
-@dataclass(frozen=True, slots=True)
-class Sources:
+class Sources(Struct, frozen=True):
     """A lighting, and the factor on its automatic exposure."""
 
     sources: tuple[Source, ...]

@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
+from msgspec import Struct
 from platewright.backend.contract import Geometry
 from platewright.lang import tree
 from platewright.lang.problems import Problem
@@ -18,8 +17,7 @@ from .scope import Failed, Formula, Record
 from .values import Value, spell
 
 
-@dataclass(frozen=True, slots=True)
-class ParameterRow:
+class ParameterRow(Struct, frozen=True):
     """One parameter: its value in this variant, what it may be (`""` for anything), and its note."""
 
     name: str
@@ -28,8 +26,7 @@ class ParameterRow:
     note: str
 
 
-@dataclass(frozen=True, slots=True)
-class PartRow:
+class PartRow(Struct, frozen=True):
     """One path, brackets left out: how many copies there are, and of one copy the box (mm) and volume (mm3)."""
 
     path: str
@@ -39,8 +36,7 @@ class PartRow:
     is_assembly: bool
 
 
-@dataclass(frozen=True, slots=True)
-class Listing:
+class Listing(Struct, frozen=True):
     """All of it, in the order of the text. Sizes and volumes are taken at the rung of facts."""
 
     parameters: tuple[ParameterRow, ...]

@@ -7,8 +7,8 @@ n and k; sources beside the table.
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
 
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.units import DENSITY, NUMBER
 
@@ -21,8 +21,7 @@ from .values import shortened
 RGB = tuple[float, float, float]
 
 
-@dataclass(frozen=True, slots=True)
-class Surface:
+class Surface(Struct, frozen=True):
     """A material with its values fixed. `colour` is 8-bit sRGB, `reflectance` linear RGB at normal incidence.
 
     gloss runs from 0, matt, to 1, a mirror; density in g/cm3, 0 where none is stated.

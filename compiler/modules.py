@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from bisect import bisect_left
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
 
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Problem, Related
@@ -35,8 +35,7 @@ DECLARED = (
 THINGS = ("part", "assembly")
 
 
-@dataclass(frozen=True, slots=True)
-class Declaration:
+class Declaration(Struct, frozen=True):
     """One declared name. `kind` is the word that declares it: `given`, `derived`, `see`, `part` ...
 
     `is_faulty` if lines of it could not be read: what is left may be checked, but is not what was meant.
@@ -49,8 +48,7 @@ class Declaration:
     is_faulty: bool = False
 
 
-@dataclass(frozen=True, slots=True)
-class Module:
+class Module(Struct, frozen=True):
     """The names one file declares. Figures and variants name files and folders, so each has a space of its own.
 
     `broken` are names that lines which could not be read would have declared; `has_faults` says there are such lines.

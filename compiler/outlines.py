@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from dataclasses import dataclass, field
 
+from msgspec import Struct, field
 from platewright.lang import tree
 from platewright.lang.source import Span
 from platewright.lang.units import ANGLE, LENGTH
@@ -30,8 +30,7 @@ REST = ("mirrored across", "ring", "rounded", "chamfered")
 """Lines that finish a loop of stretches."""
 
 
-@dataclass(frozen=True, slots=True)
-class Around:
+class Around(Struct, frozen=True):
     """What an outline may ask of the scene: the table that a line names, another outline."""
 
     table: Callable[[tree.Reading], Table]
@@ -81,8 +80,7 @@ def _alone(lines: tuple[tree.Line, ...]) -> None:
         raise mistake("open-outline", lines[1].span, f"{sentence}; nothing can follow it")
 
 
-@dataclass(slots=True)
-class _Way:
+class _Way(Struct):
     """A loop while its lines are read: where it starts, its stretches, what is wanted of each corner and by which line.
 
     Corner k stands at the start of stretch k, the last one at the end of all.

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
 
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Related
@@ -26,8 +26,7 @@ from .values import Interval, Quantity, Value, Vector, dimension_name, kind_of, 
 Names = dict[str, Named]
 
 
-@dataclass(frozen=True, slots=True)
-class Setting:
+class Setting(Struct, frozen=True):
     """A parameter set from outside, where it was set, and the value."""
 
     name: str

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.units import LENGTH, NUMBER
@@ -20,8 +20,7 @@ from .values import Quantity, Value, Vector, kind_of, shortened, spell_number
 FEATURE_VALUES = ("centre", "axis", "top", "diameter")
 
 
-@dataclass(frozen=True, slots=True)
-class Placed:
+class Placed(Struct, frozen=True):
     """A thing, its path below where the search began, and its place in that frame."""
 
     thing: Thing

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.source import Span
 from platewright.lang.units import ANGLE, LENGTH, NUMBER
@@ -21,8 +21,7 @@ from .values import Vector, kind_of, unit_vector
 Point = tuple[float, float, float]
 
 
-@dataclass(frozen=True, slots=True)
-class Axis:
+class Axis(Struct, frozen=True):
     """A line in space: a point and a unit direction."""
 
     through: Point

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Related
@@ -53,8 +53,7 @@ def read_record(reading: tree.Reading, scope: Scope, tables: Tables, file: str, 
     return Record(RowPaths(name(reading).text, table, table.labels.index(label)).cell)
 
 
-@dataclass(frozen=True, slots=True)
-class RowPaths:
+class RowPaths(Struct, frozen=True):
     """`row.column` on a line with `for row over` a table, and wherever a derived row is in reach."""
 
     variable: str

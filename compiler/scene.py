@@ -6,8 +6,8 @@ All of it is pure: files come from a loader, meshes from a mesher that may keep 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
 
+from msgspec import Struct
 from platewright.backend import contract
 from platewright.lang import tree
 from platewright.lang.problems import Problem, Related, Severity, is_error
@@ -63,8 +63,7 @@ __all__ = [
 ]
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Project:
+class Project(Struct, frozen=True, eq=False):
     """A scene with all it sees, names checked, variants read. `known` are the places of what has been reported."""
 
     main: str
@@ -85,8 +84,7 @@ class Project:
         return self.files.scenes
 
 
-@dataclass(frozen=True, slots=True)
-class FigureName:
+class FigureName(Struct, frozen=True):
     """One figure of a model and the kinds of file it wants."""
 
     name: str
@@ -94,8 +92,7 @@ class FigureName:
     files: tuple[str, ...]
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Model:
+class Model(Struct, frozen=True, eq=False):
     """One variant, evaluated. A figure with `with` lines has a model of its own."""
 
     built: Built
@@ -104,8 +101,7 @@ class Model:
     problems: tuple[Problem, ...]
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Exported:
+class Exported(Struct, frozen=True, eq=False):
     """Triangles to hand on: a part path and all below it."""
 
     geometry: contract.Geometry

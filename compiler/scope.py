@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass, field
 from typing import Protocol, TypeAlias
 
+from msgspec import Struct, field
 from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.source import Span
@@ -16,8 +16,7 @@ from .mistakes import Mistake, mistake
 from .values import Quantity, Value
 
 
-@dataclass(frozen=True, slots=True)
-class Formula:
+class Formula(Struct, frozen=True):
     """A function an author has defined: its parameters and body, and the scope it sees."""
 
     name: str
@@ -26,8 +25,7 @@ class Formula:
     scope: Scope
 
 
-@dataclass(frozen=True, slots=True)
-class Record:
+class Record(Struct, frozen=True):
     """A row of a table that a name stands for: `cell` gives the value at a path that starts with the name.
 
     It may raise Mistake.
@@ -56,8 +54,7 @@ class Paths(Protocol):
         """The names a path may start with."""
 
 
-@dataclass(slots=True)
-class Budget:
+class Budget(Struct):
     """What one evaluation may still compute and place, and the literals it has read."""
 
     steps: int = limits.STEPS
@@ -83,8 +80,7 @@ class Budget:
         raise Mistake(None) if was_used_up else mistake("too-much", span, sentence)
 
 
-@dataclass(frozen=True, slots=True)
-class Scope:
+class Scope(Struct, frozen=True):
     """Names and what they stand for, inside an enclosing scope. `prefixes` leads to the scopes of files seen."""
 
     names: Mapping[str, Named]

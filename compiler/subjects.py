@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
+from msgspec import Struct
 from platewright.lang import tree
 
 from .build import Model
@@ -13,8 +12,7 @@ from .modules import THINGS, find_kind
 from .paths import Placed, follow
 
 
-@dataclass(frozen=True, slots=True)
-class Subject:
+class Subject(Struct, frozen=True):
     """A thing in its own frame, the path it goes by, and the last name of that path without brackets."""
 
     thing: Thing

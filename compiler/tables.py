@@ -6,8 +6,8 @@ import csv
 import io
 import re
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass
 
+from msgspec import Struct
 from platewright.lang import units
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Problem, Related
@@ -20,8 +20,7 @@ from .scope import did_you_mean
 from .values import Value, shortened
 
 
-@dataclass(frozen=True, slots=True)
-class Table:
+class Table(Struct, frozen=True):
     """Columns by name in order, and rows of values; None where a cell is empty.
 
     `labels` are the first cells as written, which name the rows; `cell_spans` has a span for each cell, `header` one
@@ -36,8 +35,7 @@ class Table:
     cell_spans: tuple[tuple[Span, ...], ...]
 
 
-@dataclass(frozen=True, slots=True)
-class _Record:
+class _Record(Struct, frozen=True):
     cells: list[str]
     spans: list[Span]
 

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
 
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.units import NUMBER
 
@@ -20,8 +20,7 @@ from .solids.transform import IDENTITY, compose
 from .values import Quantity
 
 
-@dataclass(frozen=True, slots=True)
-class Turn:
+class Turn(Struct, frozen=True):
     """One turn of a line's `for`: the scope in which the line is read, and the name of the copy (`""` for a count)."""
 
     label: str

@@ -3,15 +3,14 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 from typing import TypeAlias
 
+from msgspec import Struct
 from platewright.lang import units
 from platewright.lang.units import LENGTH, NUMBER, Dimension
 
 
-@dataclass(frozen=True, slots=True)
-class Quantity:
+class Quantity(Struct, frozen=True):
     """A number in the base unit of its dimension (mm, degree, g, lm, ...).
 
     `bare_zero` marks the literal 0, which fits any.
@@ -22,32 +21,28 @@ class Quantity:
     bare_zero: bool = False
 
 
-@dataclass(frozen=True, slots=True)
-class Vector:
+class Vector(Struct, frozen=True):
     """Two or three components of one dimension: a point (lengths) or a direction (pure numbers)."""
 
     components: tuple[float, ...]
     dimension: Dimension
 
 
-@dataclass(frozen=True, slots=True)
-class Interval:
+class Interval(Struct, frozen=True):
     """`low .. high`, ends included."""
 
     low: Quantity
     high: Quantity
 
 
-@dataclass(frozen=True, slots=True)
-class Proportion:
+class Proportion(Struct, frozen=True):
     """`1:2`: lengths on paper to lengths of the model."""
 
     first: float
     second: float
 
 
-@dataclass(frozen=True, slots=True)
-class Day:
+class Day(Struct, frozen=True):
     """A calendar date as written."""
 
     text: str

@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.problems import Related
 from platewright.lang.source import Span
@@ -17,8 +16,7 @@ from .readings import name, optional, settings
 from .tables import Table
 
 
-@dataclass(frozen=True, slots=True)
-class Variant:
+class Variant(Struct, frozen=True):
     """One named group of settings, and the `variants` declaration it stands in."""
 
     name: str

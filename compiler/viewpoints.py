@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Literal, TypeAlias
 
+from msgspec import Struct
 from platewright.backend import camera
 from platewright.lang import tree
 from platewright.lang.problems import Related
@@ -20,15 +20,13 @@ FILM_MM = 36.0
 """Width of the film when none is stated."""
 
 
-@dataclass(frozen=True, slots=True)
-class Parallel:
+class Parallel(Struct, frozen=True):
     """Parallel projection square to the picture plane."""
 
     axes: camera.Axes
 
 
-@dataclass(frozen=True, slots=True)
-class Central:
+class Central(Struct, frozen=True):
     """Central projection. `angle` or `lens` on `film` hold the field of view; without them the figure is fitted."""
 
     eye: tuple[float, float, float]
