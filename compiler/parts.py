@@ -22,7 +22,8 @@ from .placement import Marks
 from .readings import LATER, expression, name
 from .scope import Scope
 from .shapes import OUTLINED, diameter, height, read_shape, with_edges
-from .solids.recipe import Affine, Placed, Primitive, Recipe, Step
+from .sheets import SHEETS, read_sheet
+from .solids.recipe import Affine, Envelope, Placed, Primitive, Recipe, Step
 from .solids.transform import IDENTITY, compose, determinant
 from .threads import threads_of
 from .turns import labels, placements, turns
@@ -129,6 +130,9 @@ class _Part:
     def _placed(self, line: tree.Line, scope: Scope) -> Iterator[Placed]:
         """The shapes of one line, or of the lines indented under it, placed and repeated."""
         reading = line.head.get("shape")
+        if isinstance(reading, tree.Reading) and reading.row == "envelope of":
+            yield self._envelope(line, reading, scope)
+            return
         if isinstance(reading, tree.Reading):
             yield self._shape(line, reading, scope, (IDENTITY,), line.word == "cut")
             return
@@ -139,6 +143,22 @@ class _Part:
                     inner = below.head.get("shape")
                     assert isinstance(inner, tree.Reading)
                     yield self._shape(below, inner, turn.scope, outer, line.word == "cut")
+
+    def _envelope(self, line: tree.Line, reading: tree.Reading, scope: Scope) -> Placed:
+        """The convex solid round the shapes on the lines below, placed and repeated as its own line says."""
+        inside: list[Placed] = []
+        for below in line.lines:
+            for turn in turns(below, scope, self.things.tables, self.module.file):
+                inner = below.head.get("shape")
+                assert isinstance(inner, tree.Reading)
+                inside.append(self._shape(below, inner, turn.scope, (IDENTITY,), line.word == "cut"))
+                if isinstance(inside[-1].shape, Recipe):
+                    sentence = "an envelope goes round shapes, and this is a part"
+                    raise mistake("wrong-form", inner.span, sentence, "write the shapes that the part is made of")
+        if not inside:
+            raise mistake("empty-part", reading.span, "this envelope goes round nothing", "give it shapes, a line each")
+        with_edges(Envelope(()), line.clauses, scope)
+        return Placed(Envelope(tuple(inside)), placements(line, scope, self.axes, {}), self.things.source(line.span))
 
     def _shape(
         self, line: tree.Line, reading: tree.Reading, scope: Scope, outer: tuple[Affine, ...], is_cut: bool
@@ -180,6 +200,11 @@ class _Part:
             thing = self.things.resolve(self.module, written, scope)
             assert isinstance(thing, Solid)
             return thing.recipe, axes_of(thing.marks), thing.n_shapes, thing.n_levels
+        if reading.row == "envelope of":
+            hint = "write it behind `add`, `cut` or `keep`, its shapes on the lines below"
+            raise mistake("wrong-form", reading.span, "an envelope cannot stand here", hint)
+        if reading.word in SHEETS:
+            return read_sheet(reading, scope, self.things.tables, self.module.file), {}, 1, 0
         if reading.row in WORDS:
             return read_along(reading, scope, self.things, self.module), {}, 1, 0
         outline = None

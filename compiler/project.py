@@ -44,7 +44,7 @@ class Files:
     sees: Mapping[str, tuple[tuple[str, str, Span], ...]]
 
 
-POINT_TABLES = ("points over", "curve over")
+POINT_TABLES = ("points over", "curve over", "relief")
 """Words whose table holds points, so that its first column need not name the rows."""
 
 _REASONS = {

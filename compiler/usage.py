@@ -20,6 +20,9 @@ from .threads import is_designation
 
 Users: TypeAlias = Mapping[str, Mapping[str, None]]
 
+VARIABLES = {"relief": {"x", "y"}, "surface": {"u", "v"}}
+"""Names that a shape's words bring with them."""
+
 BODIES = ("derived", "outline", "path", *THINGS)
 """Declarations whose lines are evaluated only where they are used with values for their parameters."""
 
@@ -101,6 +104,8 @@ def _report_unknown(reading: tree.Reading, known: set[str], problems: Problems) 
     # A thing is turned about an axis of its own, whose name its own lines declare.
     values = tuple(value for slot, value in reading.values if (reading.row, slot) != ("turn", "axis"))
     is_thread = isinstance(shape, tree.Reading) and shape.row == "thread"
+    if isinstance(shape, tree.Reading) and shape.row in VARIABLES:
+        known = known | VARIABLES[shape.row]
     for path in names_in(values, into_brackets=False):
         first = path.steps[0]
         if first.name not in known and not (is_thread and is_designation(path)):

@@ -82,6 +82,7 @@ CODES: Mapping[str, str] = MappingProxyType(
         "path-turns-back": "a path turns back on itself",
         "path-has-corner": "a path turns a corner where a curve begins or ends",
         "cuts-itself": "a body along a path would cut itself",
+        "no-value": "the function of a surface has no value or no direction somewhere",
         "no-wall": "a bore leaves no wall",
         "hole-without-partner": "an outline with holes is to pass into another",
         "no-area": "an outline encloses no area",

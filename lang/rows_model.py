@@ -586,15 +586,13 @@ SHAPE_ROWS: tuple[Row, ...] = (
         ("shape",),
         "a surface raised over a rectangle, by a function of x and y or over a table",
         "relief z = 2 mm + x/20 over (40 mm, 30 mm)",
-        later=True,
     ),
     Row(
         "surface",
-        "surface <point:point> u <u:range> v <v:range> [thickness <thickness:length>]",
+        "surface <point:point> u <u:range> v <v:range> thickness <thickness:length>",
         ("shape",),
         "a surface by its point as a function of u and v",
         "surface (u, v, u*v / 50 mm) u 0 mm .. 40 mm v 0 mm .. 30 mm thickness 1 mm",
-        later=True,
     ),
     Row(
         "envelope of",
@@ -602,7 +600,6 @@ SHAPE_ROWS: tuple[Row, ...] = (
         ("shape",),
         "the smallest convex solid round the shapes on the lines below",
         "envelope of",
-        later=True,
     ),
     Row(
         "mesh",

@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
+import math
 from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
 
 from ..trigonometry import cos_deg, sin_deg
-from . import stack
+from . import sheets, stack
 from .along import ALONG, box_points
 from .ladder import COARSEST, FACTS_SHARE, first_at_most
 from .outline import extent, oriented
@@ -21,13 +22,16 @@ from .recipe import (
     Cylinder,
     Edged,
     Ellipsoid,
+    Envelope,
     Extrude,
+    ParametricSurface,
     Point2,
     Point3,
     Primitive,
     Prism,
     Pyramid,
     Recipe,
+    Relief,
     Revolve,
     Sphere,
     Spring,
@@ -40,6 +44,8 @@ from .thread import plain
 
 F64 = NDArray[np.float64]
 _Box = tuple[F64, F64]
+_STEP = 15.0
+"""Degrees between the points that stand for a circular way."""
 
 
 def bounds(recipe: Recipe) -> tuple[Point3, Point3]:
@@ -107,6 +113,11 @@ def _hull(shape: Primitive) -> tuple[list[tuple[F64, F64]], F64]:
     none = np.zeros((0, 3))
     if isinstance(shape, Edged):
         return _hull(shape.shape)
+    if isinstance(shape, Relief | ParametricSurface):
+        return [], _box_corners(*sheets.bounds(shape))
+    if isinstance(shape, Envelope):
+        boxes = [_of_placed(each.shape, at, each.centred, {}) for each in shape.placed for at in each.placements]
+        return [], np.concatenate([_box_corners(*box) for box in boxes if box is not None])
     if isinstance(shape, Thread):
         # A real one reaches over its major diameter, whether or not it is internal.
         shape = Cylinder(shape.major, shape.length) if shape.real else plain(shape)
@@ -156,12 +167,23 @@ def _corners(shape: Block | Wedge | Prism | Pyramid | Extrude) -> F64:
 
 
 def _of_stack(shape: Extrude) -> tuple[list[tuple[F64, F64]], F64]:
-    """A tapered extrusion by its two ends, a twisted one by the circles round them."""
+    """A tapered extrusion by its two ends; a twisted one by the ways of their corners, beyond a turn by circles."""
     base, top = stack.reach(shape)
     if not shape.twist:
         return [], np.concatenate((_at(base, 0.0), _at(top, shape.length)))
-    ends = ((base, 0.0), (top, shape.length))
-    return [_disc(float(np.hypot(*box.T).max()), height) for box, height in ends], np.zeros((0, 3))
+    if abs(shape.twist) >= 360.0:
+        ends = ((base, 0.0), (top, shape.length))
+        return [_disc(float(np.hypot(*box.T).max()), height) for box, height in ends], np.zeros((0, 3))
+    points = []
+    steps = math.ceil(abs(shape.twist) / _STEP)
+    for k in range(2 * steps + 1):
+        # Between two points of a circle lies the place where their tangents cross.
+        far = 1.0 / cos_deg(shape.twist / (2 * steps)) if k % 2 else 1.0
+        c, s = (far * f(shape.twist * k / (2 * steps)) for f in (cos_deg, sin_deg))
+        corners = np.concatenate((base, top)) @ np.array(((c, s), (-s, c)))
+        low, high = (shape.length * m / steps for m in (k // 2, (k + 1) // 2))
+        points += [_at(corners, low), _at(corners, high)]
+    return [], np.concatenate(points)
 
 
 def _sector(low: Point2, high: Point2, angle: float) -> F64:
@@ -174,6 +196,10 @@ def _sector(low: Point2, high: Point2, angle: float) -> F64:
         corners.append((far * cos_deg(middle), far * sin_deg(middle)))
     points = np.array(corners)
     return np.concatenate((_at(points, low[1]), _at(points, high[1])))
+
+
+def _box_corners(low: F64, high: F64) -> F64:
+    return np.array([(x, y, z) for x in (low[0], high[0]) for y in (low[1], high[1]) for z in (low[2], high[2])])
 
 
 def _disc(radius: float, height: float) -> tuple[F64, F64]:

@@ -311,6 +311,50 @@ class Thread:
     real: bool = False
 
 
+@dataclass(frozen=True, slots=True)
+class Field:
+    """A function of two variables as a program for a stack (`fields`)."""
+
+    program: tuple[tuple[str, float], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Grid:
+    """A function of x and y by its values `z`, a row for each y, straight between them; `x` and `y` rise."""
+
+    x: tuple[float, ...]
+    y: tuple[float, ...]
+    z: tuple[tuple[float, ...], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Relief:
+    """The solid between z = 0 and a height above it over a rectangle, its middle at the origin.
+
+    A grid starts at minus half the size and ends at half of it.
+    """
+
+    height: Field | Grid
+    size: Point2
+
+
+@dataclass(frozen=True, slots=True)
+class ParametricSurface:
+    """A sheet of a thickness, half of it on each side of the surface that `point` describes over ranges of u and v."""
+
+    point: tuple[Field, Field, Field]
+    u: Point2
+    v: Point2
+    thickness: float
+
+
+@dataclass(frozen=True, slots=True)
+class Envelope:
+    """The smallest convex solid round shapes, none of them a recipe."""
+
+    placed: tuple[Placed, ...]
+
+
 Primitive = (
     Block
     | Wedge
@@ -330,6 +374,9 @@ Primitive = (
     | Bellows
     | Transition
     | Thread
+    | Relief
+    | ParametricSurface
+    | Envelope
 )
 
 

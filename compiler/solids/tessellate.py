@@ -11,10 +11,11 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from . import stack
+from . import sheets, stack
 from .along import ALONG, along_flaws, along_shell, count_along, placed_cone, shifted
 from .curve import Curve
 from .edges import count_edged, edge_flaws, edged
+from .envelope import envelope, largest_turn
 from .flaw import SolidError
 from .ladder import divisions
 from .outline import OutlineFlaw, Polyline, count_chords, extent, faults, flatten, oriented, polyline
@@ -26,11 +27,16 @@ from .recipe import (
     Cylinder,
     Edged,
     Ellipsoid,
+    Envelope,
     Extrude,
+    ParametricSurface,
+    Placed,
     Point2,
     Primitive,
     Prism,
     Pyramid,
+    Recipe,
+    Relief,
     Revolve,
     Sphere,
     Spring,
@@ -44,6 +50,7 @@ from .shell import Shell
 from .surfaces import place
 from .thread import count_triangles as count_thread
 from .thread import plain, thread
+from .transform import apply, largest_scale
 
 F64 = NDArray[np.float64]
 
@@ -62,6 +69,12 @@ def tessellate(shape: Primitive, rung: float) -> Shell:
         if shape.taper or shape.twist:
             return stack.stack(shape, None, rung)
         return extrude(flatten(shape.outline, rung), shape.length)
+    if isinstance(shape, Relief | ParametricSurface):
+        return sheets.sheet(shape, rung)
+    if isinstance(shape, Envelope):
+        inside = [(placed, tessellate(_primitive(placed), rung / _scale(placed))) for placed in shape.placed]
+        points = [_moved(placed, made) for placed, made in inside]
+        return envelope(points, max(largest_turn(made) for _, made in inside))
     if isinstance(shape, Thread):
         return thread(shape, rung) if shape.real else tessellate(plain(shape), rung)
     if isinstance(shape, Ellipsoid):
@@ -83,6 +96,10 @@ def problems_of(shape: Primitive) -> tuple[OutlineFlaw, ...]:
         return found
     if isinstance(shape, ALONG):
         return along_flaws(shape)
+    if isinstance(shape, Relief | ParametricSurface):
+        return sheets.sheet_flaws(shape)
+    if isinstance(shape, Envelope):
+        return tuple(flaw for placed in shape.placed for flaw in problems_of(_primitive(placed)))
     if isinstance(shape, Torus) and shape.tube >= shape.diameter:
         sentence = (
             f"the tube of the torus, {shape.tube:.6g} mm, must be thinner than its diameter, {shape.diameter:.6g} mm"
@@ -104,6 +121,11 @@ def count_triangles(shape: Primitive, rung: float) -> int:
         return n * (n - 2)
     if isinstance(shape, Torus):
         return 2 * divisions((shape.diameter + shape.tube) / 2, rung) * divisions(shape.tube / 2, rung)
+    if isinstance(shape, Relief | ParametricSurface):
+        return 0 if sheets.sheet_flaws(shape) else sheets.count_triangles(shape, rung)
+    if isinstance(shape, Envelope):
+        inside = ((each, count_triangles(_primitive(each), rung / _scale(each))) for each in shape.placed)
+        return sum(len(each.placements) * n for each, n in inside)
     if isinstance(shape, Thread):
         return count_thread(shape, rung) if shape.real else count_triangles(plain(shape), rung)
     if isinstance(shape, ALONG):
@@ -119,6 +141,22 @@ def count_triangles(shape: Primitive, rung: float) -> int:
     return 2 * chords * divisions(max(extent(loops[0])[1][0], rung), rung)
 
 
+def _primitive(placed: Placed) -> Primitive:
+    if isinstance(placed.shape, Recipe):
+        raise SolidError("a part in an envelope")
+    return placed.shape
+
+
+def _scale(placed: Placed) -> float:
+    return max((largest_scale(placement) for placement in placed.placements), default=1.0)
+
+
+def _moved(placed: Placed, made: Shell) -> F64:
+    """Vertices of all copies of one shape in an envelope, (n,3)."""
+    vertices = made.vertices - (0.0, 0.0, rise(_primitive(placed)) / 2 if placed.centred else 0.0)
+    return np.concatenate([apply(placement, vertices) for placement in placed.placements])
+
+
 def rise(shape: Primitive) -> float:
     """The length of a shape that stands on z = 0; 0 for those that are centred or revolved."""
     if isinstance(shape, Edged):
@@ -132,12 +170,16 @@ def rise(shape: Primitive) -> float:
 
 def require_positive(shape: Primitive) -> None:
     """SolidError unless every size is a positive finite number; `top` and `top_length` may be 0."""
-    may_be_zero, any_sign = {"top", "top_length", "bore"}, {"taper", "twist"}
+    may_be_zero, any_sign = {"top", "top_length", "bore"}, {"taper", "twist", "u", "v"}
     for name in type(shape).__dataclass_fields__:
         value = getattr(shape, name)
         for each in value if isinstance(value, tuple) else (value,):
-            if isinstance(each, int | float) and not isinstance(each, bool) and not (
-                math.isfinite(each) and (each > 0.0 or (each == 0.0 and name in may_be_zero) or name in any_sign)
+            if (
+                isinstance(each, int | float)
+                and not isinstance(each, bool)
+                and not (
+                    math.isfinite(each) and (each > 0.0 or (each == 0.0 and name in may_be_zero) or name in any_sign)
+                )
             ):
                 raise SolidError(f"{type(shape).__name__}: {name} is {each}")
 
