@@ -18,7 +18,7 @@ from numpy.typing import NDArray
 from platewright.backend.contract import PatchKind
 
 from ..trigonometry import cos_deg, sin_deg, tan_deg
-from .curve import Curve, count_chords, divided, end_tangents, points_at, shares_of, unit
+from .curve import Curve, count_chords, divided, end_tangents, full_turn, points_at, shares_of, unit
 from .ladder import divisions
 from .outline import OutlineFlaw, Polyline, contact, extent, inside, oriented
 from .plane import Corner, PlaneFlaw, cornered, inset, is_smooth
@@ -263,22 +263,31 @@ def _turn_of(levels: Sequence[_Level]) -> float:
     return max(math.radians(abs(b.angle - a.angle)) for a, b in pairwise(levels))
 
 
-def _shares(curves: Sequence[Curve], moved: Sequence[Curve], c: int, rung: float, turn: float) -> F64:
-    """Where a curve of one level is divided: an arc with smooth ends at the marks of its own circle."""
+def _division(
+    curves: Sequence[Curve], moved: Sequence[Curve], c: int, distance: float, rung: float, turn: float
+) -> tuple[F64, F64, F64]:
+    """Shares (k,), points (k,2) and tangents (k,2) of a curve at one level, its end included.
+
+    Circles, and arcs whose ends are smooth, are divided at the marks of their own circle, as cylinders are.
+    """
     curve, level = curves[c], moved[c]
-    n = count_chords(level, rung)
+    if curve.radius and not turn:
+        if len(curves) == 1:
+            points, tangents = full_turn(level, rung)
+            return np.arange(len(tangents)) / len(points), np.concatenate((points, points[:1])), tangents
+        if is_smooth(curves[c - 1], curve) and is_smooth(curve, curves[(c + 1) % len(curves)]):
+            points, tangents = divided(level, rung)
+            whole = np.concatenate((points, np.array([level.end])))
+            return np.append(shares_of(level, points), 1.0), whole, tangents
+    n = 1 if curve.is_line and not turn else count_chords(level, rung)
     if turn:
         # A twisted face is off by a quarter of its length times its turn where it is split in two.
-        length = _length(level)
-        return np.linspace(0.0, 1.0, max(n, math.ceil(length * turn / (4.0 * rung))) + 1)
-    if curve.is_line:
-        return np.array((0.0, 1.0))
-    if curve.radius:
-        alone = len(curves) == 1
-        if alone or (is_smooth(curves[c - 1], curve) and is_smooth(curve, curves[(c + 1) % len(curves)])):
-            points, _ = divided(level, rung)
-            return np.append(shares_of(level, points), 1.0)
-    return np.linspace(0.0, 1.0, n + 1)
+        n = max(n, math.ceil(_length(level) * turn / (4.0 * rung)))
+    shares = np.arange(n + 1) / n
+    points, tangents = _moved(level, shares, distance)
+    if not level.is_free:
+        points[0] = level.start
+    return shares, points, tangents
 
 
 def _length(curve: Curve) -> float:
@@ -289,24 +298,16 @@ def _length(curve: Curve) -> float:
 def _divisions(loop: tuple[Curve, ...], distance: float, rung: float, turn: float) -> list[int]:
     """Chords of each curve of a loop at an inset."""
     moved = inset(loop, distance) if distance else loop
-    return [len(_shares(loop, moved, c, rung, turn)) - 1 for c in range(len(loop))]
+    return [len(_division(loop, moved, c, distance, rung, turn)[0]) - 1 for c in range(len(loop))]
 
 
 def _ring(loop: tuple[Curve, ...], level: _Level, rung: float, turn: float) -> _Ring:
     moved = inset(loop, level.inset) if level.inset else loop
-    points, first, shares, tangents = [], [], [], []
-    n = 0
-    for c, curve in enumerate(moved):
-        share = _shares(loop, moved, c, rung, turn)
-        place, along = _moved(curve, share, level.inset)
-        if not curve.is_free:
-            place[0] = curve.start
-        points.append(place[:-1])
-        first.append(n)
-        n += len(share) - 1
-        shares.append(share)
-        tangents.append(along)
-    return _Ring(np.concatenate(points), first, shares, tangents)
+    pieces = [_division(loop, moved, c, level.inset, rung, turn) for c in range(len(loop))]
+    sizes = [len(shares) - 1 for shares, _, _ in pieces]
+    first = np.cumsum([0, *sizes[:-1]]).tolist()
+    points = np.concatenate([points[:-1] for _, points, _ in pieces])
+    return _Ring(points, first, [shares for shares, _, _ in pieces], [tangents for _, _, tangents in pieces])
 
 
 def _moved(curve: Curve, shares: F64, distance: float) -> tuple[F64, F64]:
