@@ -144,7 +144,8 @@ class _Way(Struct):
         try:
             return plane.with_corners(loop, wanted)
         except PlaneFlaw as flaw:
-            hint = "make it smaller, or the stretches beside it longer" if flaw.code == "corner-too-large" else ""
+            is_large = flaw.code == "corner-too-large"
+            hint = "make it smaller, or the stretches beside it longer" if is_large else "leave it out here"
             where = loop.stretches[flaw.corner - 1].end
             sentence = f"{flaw.sentence}, at ({where[0]:.6g} mm, {where[1]:.6g} mm)"
             raise mistake(flaw.code, spans[flaw.corner], sentence, hint) from None
