@@ -245,8 +245,9 @@ def _marks(curve: Curve, rung: float) -> F64:
     first, turn = angle(curve, curve.start), sweep(curve)
     if not curve.left:
         first -= turn
-    # A mark that all but coincides with an end would leave a sliver.
-    low, high = first / step + 1e-6, (first + turn) / step - 1e-6
+    # A mark that all but coincides with an end would leave a sliver; for a check alone, marks need not be kept.
+    margin = 1e-6 if rung else 0.05
+    low, high = first / step + margin, (first + turn) / step - margin
     marks = np.arange(math.ceil(low), math.floor(high) + 1)
     table = circle_points(n, marks)
     points = np.array(curve.centre) + (table @ frame(curve).T if curve.oval else curve.radius * table)

@@ -429,7 +429,7 @@ def _free_moved(curve: Curve, distance: float) -> Curve:
     whole = curve.start == curve.end
     points, _ = divided(curve, 0.0)
     size = float(np.ptp(points, axis=0).max())
-    n = 8 * max(1, len(curve.pieces))
+    n = max(8, len(curve.pieces))
     while True:
         even, tangents = fraction_points(curve, 2 * n)
         base = np.concatenate((even, [curve.end]))
