@@ -143,9 +143,30 @@ class _Workshop:
             for group in groups:
                 operands.extend(group.manifolds(levels.to_correct(n), levels.correct))
                 n += 1
-            solid = _combined(solid, operation, operands, box)
+            solid = self._kept(solid, operands, box) if operation == "keep" else _combined(solid, operation, operands)
             low, high = _volume_bounds(low, high, operation, groups)
         return _Body(solid, levels.planes(), (low, high), box)
+
+    def _kept(self, solid: Manifold, operands: list[Manifold], box: F64) -> Manifold:
+        """What remains when the rest of a box round everything is cut away: the intersection leaves sheets of no
+        thickness where solids touch, its difference does not. Where solids share faces either may go wrong, so each is
+        held to the other, and where they differ to what a cut would take away.
+        """
+        margin = np.ptp(box, axis=0).max() / 4.0
+        around = Manifold.cube((np.ptp(box, axis=0) + 2.0 * margin).tolist()).translate((box[0] - margin).tolist())
+        kept = solid - Manifold.batch_boolean([around, *operands], OpType.Subtract)
+        others = Manifold.batch_boolean(operands, OpType.Add)
+        crossed, slack = solid ^ others, VOLUME_SLACK * solid.volume()
+        if abs(kept.volume() - crossed.volume()) <= slack:
+            return kept
+        taken = solid.volume() - (solid - others).volume()
+        best = min((kept, crossed), key=lambda each: abs(each.volume() - taken))
+        if abs(best.volume() - taken) > slack:
+            found = f"{best.volume():.6g} mm3 is kept where a cut takes {taken:.6g} mm3 away"
+            self.flaws.append(
+                Flaw("boolean-failed", -1, f"the shapes could not be combined: {found}", "please report it")
+            )
+        return best
 
     def _groups(self, placed: Placed, grown: float) -> Iterator[_Group]:
         """The shape at its placements, one group for each scale: what grows needs a finer division."""
@@ -344,17 +365,9 @@ def _moved(solid: Manifold, placement: F64) -> Manifold:
     return Manifold(mirrored)
 
 
-def _combined(solid: Manifold, operation: str, operands: list[Manifold], box: F64) -> Manifold:
-    """One step. What is kept is what remains when the rest of a box round everything is cut away: the kernel's
-    intersection leaves sheets of no thickness where solids touch, its difference does not.
-    """
-    if operation == "add":
-        return Manifold.batch_boolean([solid, *operands], OpType.Add)
-    if operation == "cut":
-        return Manifold.batch_boolean([solid, *operands], OpType.Subtract)
-    margin = np.ptp(box, axis=0).max() / 4.0
-    around = Manifold.cube((np.ptp(box, axis=0) + 2.0 * margin).tolist()).translate((box[0] - margin).tolist())
-    return solid - Manifold.batch_boolean([around, *operands], OpType.Subtract)
+def _combined(solid: Manifold, operation: str, operands: list[Manifold]) -> Manifold:
+    """One step that adds or cuts."""
+    return Manifold.batch_boolean([solid, *operands], OpType.Add if operation == "add" else OpType.Subtract)
 
 
 def _common_box(boxes: list[F64]) -> F64:

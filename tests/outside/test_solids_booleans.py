@@ -73,11 +73,12 @@ def test_facts_are_as_fine_for_every_size(diameter: float) -> None:
     assert 0.0 < 1.0 - volume(mesh) / (math.pi * diameter**3 / 6) < 4e-4
 
 
-def test_500_convex_pairs_against_half_spaces() -> None:
+@pytest.mark.parametrize(("n", "seed"), [(300, 20128), pytest.param(1000, 20129, marks=pytest.mark.slow)])
+def test_convex_pairs_against_half_spaces(n: int, seed: int) -> None:
     """Volume of the intersection of two random convex solids: Qhull's half-space intersection, to 1e-9."""
-    random = np.random.default_rng(20128)
+    random = np.random.default_rng(seed)
     worst, met = 0.0, 0
-    for _ in range(500):
+    for _ in range(n):
         steps, planes = [], []
         for make in (add, keep):
             sides, across, length = int(random.integers(3, 9)), *random.uniform(2.0, 6.0, 2).tolist()
@@ -107,7 +108,7 @@ def test_500_convex_pairs_against_half_spaces() -> None:
         exact = ConvexHull(HalfspaceIntersection(half_spaces, inner).intersections).volume
         worst = max(worst, abs(volume(mesh) - exact) / max(1.0, exact))
         assert (mesh.patches.kind == PatchKind.PLANE).all()
-    assert met > 350
+    assert met > 0.7 * n
     assert worst < 1e-9
 
 
