@@ -16,7 +16,7 @@ from .revolve import revolve
 from .selfcut import flaws_along
 from .shell import Shell
 from .spine import PathFlaw, length_of
-from .stations import parameters, stations
+from .stations import affordable, parameters, stations
 from .surfaces import place
 from .sweep import bellows_outline, parts_of, reach_from_path, rings, swept
 from .transition import as_cone, transition, transition_flaws
@@ -26,6 +26,7 @@ F64 = NDArray[np.float64]
 ALONG = (Sweep, Tube, Spring, Bellows, Transition)
 Along = Sweep | Tube | Spring | Bellows | Transition
 _BOX = 2e-3
+_MOST_POINTS = 500_000
 
 
 def along_shell(shape: Along, rung: float) -> Shell:
@@ -67,15 +68,18 @@ def count_along(shape: Along, rung: float) -> int:
 
 
 def box_points(shape: Sweep | Tube | Transition) -> F64:
-    """Points (k,3) whose box is that of the shape, to 1/500 of the section's reach; none for a mistake."""
+    """Points (k,3) whose box is that of the shape, to 1/500 of the section's reach where that takes at most
+    half a million points; one point for a mistake."""
     if isinstance(shape, Transition):
         return np.concatenate((_corners(shape.lower, 0.0), _corners(shape.upper, shape.length)))
     outline, found, twist = parts_of(shape)
     if isinstance(found, PathFlaw):
         return np.zeros((1, 3))
     reach = _reach(outline)
-    loops = flatten(Outline(outline.outer), _BOX * reach)
-    points: F64 = rings(loops, stations(found, _BOX * reach, reach_from_path(loops), twist)).reshape(-1, 3)
+    outer = Outline(outline.outer)
+    rung = affordable(found, _BOX * reach, reach, lambda at: _chords(outer, at), _MOST_POINTS)
+    loops = flatten(outer, rung)
+    points: F64 = rings(loops, stations(found, rung, reach_from_path(loops), twist)).reshape(-1, 3)
     return points
 
 

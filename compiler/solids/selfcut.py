@@ -15,11 +15,11 @@ import numpy as np
 from manifold3d import Manifold
 from numpy.typing import NDArray
 
-from .outline import OutlineFlaw, Polyline, faults, flatten
+from .outline import OutlineFlaw, Polyline, count_chords, faults, flatten, oriented
 from .recipe import Bellows, Spring, Sweep, Tube
 from .spine import Arc, PathFlaw, Trace, spelled
-from .stations import Stations, stations
-from .sweep import bellows_outline, parts_of, reach_from_path, rings
+from .stations import Stations, affordable, stations
+from .sweep import bellows_outline, divisions_in_common, parts_of, reach_from_path, rings
 
 F64 = NDArray[np.float64]
 I64 = NDArray[np.int64]
@@ -28,6 +28,12 @@ _SHARE = 1e-2  # chord error as part of the reach
 MAX_CLOSE = 4_000
 """Limit named `close`: pairs of pieces of one body that come close to each other."""
 _BLOCK = 1_000_000
+_TURN = math.radians(150.0)
+"""A curve that bends nowhere tighter than the section reaches has to turn half round before it can meet itself: where
+two normal discs share a point, its distance to the curve has two minima, and between them the curve leaves the ball of
+that radius round the point and comes back to it. Some of the half turn is kept as a margin.
+"""
+_MOST_POINTS = 1_000_000  # of all sections; with more of them the chord error is coarser
 
 
 def flaws_along(shape: Sweep | Tube | Spring | Bellows) -> tuple[OutlineFlaw, ...]:
@@ -45,8 +51,16 @@ def flaws_along(shape: Sweep | Tube | Spring | Bellows) -> tuple[OutlineFlaw, ..
         if wrong:
             return wrong
     reach = reach_from_path(flatten(outline, 0.02 * _extent(shape)))
-    loops = flatten(outline, _SHARE * reach)
-    along = stations(found, _SHARE * reach, reach, twist)
+    curves = [oriented(loop, k == 0) for k, loop in enumerate((outline.outer, *outline.holes))]
+    rung = affordable(
+        found, _SHARE * reach, reach, lambda at: sum(count_chords(each, at) for each in curves), _MOST_POINTS
+    )
+    loops = flatten(outline, rung)
+    symmetry = 1 if isinstance(shape, Sweep) else divisions_in_common(loops)
+    along = stations(found, rung, reach, twist, symmetry)
+    if len(along.points) * sum(len(loop.points) for loop in loops) > 4 * _MOST_POINTS:
+        sentence = f"it is judged by more than {4 * _MOST_POINTS} points, the limit named `points`"
+        return (OutlineFlaw("too-large", sentence, "give its path fewer turns or its section fewer curves"),)
     points = rings(loops, along)
     tight = _tight(points, along)
     if tight is not None:
@@ -136,15 +150,25 @@ def _pieces(along: Stations, reach: float) -> list[tuple[int, int]]:
 def _close(points: F64, along: Stations, pieces: list[tuple[int, int]], reach: float) -> list[tuple[int, int]] | None:
     """Pieces, not neighbours, whose boxes overlap and whose axes come closer than twice the reach; None if too many.
 
-    Cost: a sweep along x in blocks, n log n for bodies that are not wound on themselves.
+    Cost: a sweep along the longest axis in blocks, n log n for bodies that are not wound on themselves.
     """
     n, m = len(points), len(pieces)
     flat = [points[np.arange(a, b + 1) % n].reshape(-1, 3) for a, b in pieces]
     low, high = np.array([p.min(axis=0) for p in flat]), np.array([p.max(axis=0) for p in flat])
     start, end = along.points[[a for a, _ in pieces]], along.points[[b % n for _, b in pieces]]
     off = np.array([_off_chord(along.points[np.arange(a, b + 1) % n]) for a, b in pieces])
-    order = np.argsort(low[:, 0], kind="stable")
-    counts = np.searchsorted(low[order, 0], high[order, 0], side="right") - np.arange(m) - 1
+    turned, is_gentle = _turned(along), float((along.bent**2).sum(axis=1).max()) * reach**2 < 1.0
+    begin, stop_at = turned[[a for a, _ in pieces]], turned[[b for _, b in pieces]]
+
+    def may_meet(i: I64, j: I64) -> NDArray[np.bool_]:
+        between = stop_at[j] - begin[i]
+        if along.is_closed:
+            between = np.minimum(between, turned[-1] - begin[j] + stop_at[i])
+        return (between > _TURN) | (not is_gentle)
+
+    axis = int(np.ptp(along.points, axis=0).argmax())
+    order = np.argsort(low[:, axis], kind="stable")
+    counts = np.searchsorted(low[order, axis], high[order, axis], side="right") - np.arange(m) - 1
     found: list[tuple[int, int]] = []
     at = 0
     while at < m:
@@ -153,7 +177,7 @@ def _close(points: F64, along: Stations, pieces: list[tuple[int, int]], reach: f
         first = np.repeat(np.arange(at, stop), some)
         second = first + 1 + np.arange(len(first)) - np.repeat(np.cumsum(some) - some, some)
         i, j = np.minimum(order[first], order[second]), np.maximum(order[first], order[second])
-        apart = (j - i > 1) & ~(along.is_closed & (j - i == m - 1))
+        apart = (j - i > 1) & ~(along.is_closed & (j - i == m - 1)) & may_meet(i, j)
         boxes = (low[i] < high[j]).all(axis=1) & (low[j] < high[i]).all(axis=1)
         i, j = i[apart & boxes], j[apart & boxes]
         near = _gaps(start[i], end[i], start[j], end[j]) < 2.0 * reach + off[i] + off[j]
@@ -162,6 +186,20 @@ def _close(points: F64, along: Stations, pieces: list[tuple[int, int]], reach: f
             return None
         at = stop
     return sorted(found)
+
+
+def _turned(along: Stations) -> F64:
+    """How far, radians, the path has turned up to every station and, closed, at its end."""
+    m = len(along.stretch)
+    behind = (np.arange(m) + 1) % len(along.points)
+
+    def between(one: F64, other: F64) -> F64:
+        angles: F64 = 2.0 * np.arcsin(np.minimum(np.sqrt(((one - other) ** 2).sum(axis=1)) / 2.0, 1.0))
+        return angles
+
+    bends = between(along.after[:m, :, 2], along.before[behind, :, 2])
+    corners = between(along.before[behind, :, 2], along.after[behind, :, 2])
+    return np.concatenate(([0.0], np.cumsum(bends + corners)))
 
 
 def _off_chord(points: F64) -> float:

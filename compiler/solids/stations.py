@@ -2,12 +2,14 @@
 
 The frame is carried by the double reflection method (W. Wang, B. Juettler, D. Zheng, Y. Liu, Computation of
 rotation minimizing frames, ACM Transactions on Graphics 27(1), 2008), in steps of at most two degrees whatever the
-rung, so that a figure's rung does not turn a section. A closed path spreads what its frame lacks over its length.
+rung, so that a figure's rung does not turn a section (longer ones where a path turns more than 1000 times). A closed
+path spreads what its frame lacks over its length.
 """
 
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -35,6 +37,7 @@ F64 = NDArray[np.float64]
 I64 = NDArray[np.int64]
 
 _STEP = math.radians(2.0)
+_MOST_STEPS = 200_000  # of a path; one that turns more is followed in longer steps
 _FINE = 32  # samples a span of a spline, for its curvature
 _COILED = 8  # samples a turn of a helix, whose curvature does not change
 
@@ -70,23 +73,34 @@ def stations(found: Trace, rung: float, reach: float, twist: float = 0.0, symmet
     Cost: linear in the turning of the path.
     """
     total = sum(map(length_of, found.stretches))
-    fine = _Fine(found, total)
+    # A frame that looks alike however it turns need not be followed closely.
+    closely = max(_STEP, sum(map(_all_turning, found.stretches)) / _MOST_STEPS)
+    fine = _Fine(closely if symmetry == 1 else math.inf)
     turned = math.radians(twist)
     for row, each in enumerate(found.stretches):
         share = abs(turned) * length_of(each) / total
         fine.follow(row, each, parameters(each, rung, reach, share))
-    frames = carried(np.array(fine.points), np.array(fine.tangents), start_axis(fine.tangents[0]))
-    lengths = np.array(fine.lengths)
+    dense = fine.table()
+    axes = carried(dense.points, dense.tangents, start_axis(dense.tangents[0]))
     shift = 0
     if found.is_closed:
-        rest = _rest(frames, np.array(fine.tangents))
+        rest = _rest(axes, dense.tangents)
         steps = round(rest / (math.tau / symmetry))
         shift = steps % symmetry
         turned += rest - steps * math.tau / symmetry
-    angle = turned / total * lengths
-    return _chosen(
-        fine, _rolled(frames, np.array(fine.tangents), angle), found.is_closed, (shift, symmetry), turned / total
-    )
+    angle = turned / total * dense.lengths
+    every = _rolled(axes, dense.tangents, angle)
+    return _chosen(dense, every, found.is_closed, (shift, symmetry), turned / total)
+
+
+def affordable(found: Trace, rung: float, reach: float, chords: Callable[[float], int], most: int) -> float:
+    """The rung, or the first of its doubles below the reach at which all sections have at most `most` points."""
+    while rung < reach / 2.0:
+        n = sum(len(parameters(each, rung, reach)) for each in found.stretches)
+        if n * chords(rung) <= most:
+            break
+        rung *= 2.0
+    return rung
 
 
 def frames(points: F64, tangents: F64) -> F64:
@@ -105,25 +119,30 @@ def start_axis(along: F64) -> F64:
 
 def carried(points: F64, tangents: F64, axis: F64) -> F64:
     """The axis (n,3) carried along; where two points are one, by the smallest turn between their tangents."""
-    at, along = points.tolist(), tangents.tolist()
-    r = axis.tolist()
-    axes = [r]
-    for k in range(len(at) - 1):
-        v = [q - p for p, q in zip(at[k], at[k + 1], strict=True)]
-        square = _dot(v, v)
-        if square > 1e-24:
-            r = _reflected(r, v, square)
-            left = _reflected(along[k], v, square)
-            w = [q - p for p, q in zip(left, along[k + 1], strict=True)]
-            square = _dot(w, w)
-            if square > 1e-24:
-                r = _reflected(r, w, square)
-        else:
-            total = [p + q for p, q in zip(along[k], along[k + 1], strict=True)]
-            share = _dot(along[k + 1], r) / (1.0 + _dot(along[k], along[k + 1]))
-            r = [a - share * b for a, b in zip(r, total, strict=True)]
-        axes.append(r)
+    # Both mirror planes of every step are known beforehand; only the axis itself has to follow step by step.
+    v = np.diff(points, axis=0)
+    square = (v * v).sum(axis=1)
+    moves = square > 1e-24
+    one, other = tangents[:-1], tangents[1:]
+    left = one - _shares(v, one, square, moves) * v
+    w = np.where(moves[:, None], other - left, one + other)
+    across = (w * w).sum(axis=1)
+    first = (v * np.sqrt(2.0 / np.where(moves, square, np.inf))[:, None]).tolist()
+    second = (w * np.sqrt(2.0 / np.where(across > 1e-24, across, np.inf))[:, None]).tolist()
+    x, y, z = axis.tolist()
+    axes = [(x, y, z)]
+    for (a, b, c), (d, e, f) in zip(first, second, strict=True):
+        share = a * x + b * y + c * z
+        x, y, z = x - share * a, y - share * b, z - share * c
+        share = d * x + e * y + f * z
+        x, y, z = x - share * d, y - share * e, z - share * f
+        axes.append((x, y, z))
     return np.array(axes)
+
+
+def _shares(v: F64, vectors: F64, square: F64, moves: NDArray[np.bool_]) -> F64:
+    shares: F64 = (2.0 * (v * vectors).sum(axis=1) / np.where(moves, square, np.inf))[:, None]
+    return shares
 
 
 def parameters(stretch: Stretch, rung: float, reach: float, twist: float = 0.0) -> F64:
@@ -162,35 +181,54 @@ def _probes(stretch: Spline | Coil) -> F64:
     return np.linspace(0.0, stretch.angle, _COILED * max(1, math.ceil(stretch.angle / math.tau)) + 1)
 
 
+@dataclass(frozen=True, eq=False, slots=True)
+class _Dense:
+    """points, tangents, bent (m,3), lengths (m,); chosen (s,) rows of stations; rows (i,) stretch of every interval."""
+
+    points: F64
+    tangents: F64
+    lengths: F64
+    bent: F64
+    chosen: I64
+    rows: I64
+
+
 class _Fine:
     """The path in small steps, some of them stations. Joints stand twice, as either side sees them."""
 
-    def __init__(self, found: Trace, total: float) -> None:
-        self.points: list[F64] = []
-        self.tangents: list[F64] = []
-        self.lengths: list[float] = []
-        self.bent: list[F64] = []
-        self.chosen: list[int] = []
-        self.rows: list[int] = []
+    def __init__(self, step: float) -> None:
+        self._step = step
+        self._parts: list[tuple[F64, F64, F64, F64]] = []
+        self._chosen: list[I64] = []
+        self._rows: list[I64] = []
+        self._n = 0
         self._so_far = 0.0
 
     def follow(self, row: int, stretch: Stretch, at: F64) -> None:
         """Take in one stretch, divided at its parameters."""
         angles = _turning(stretch, at)
-        n = np.maximum(1, np.ceil(angles / _STEP).astype(np.int64))
+        n = np.maximum(1, np.ceil(angles / self._step).astype(np.int64))
         pieces = [np.linspace(a, b, k, endpoint=False) for a, b, k in zip(at[:-1], at[1:], n.tolist(), strict=True)]
         dense = np.concatenate((*pieces, at[-1:]))
-        first = len(self.points)
-        self.chosen.extend((first + np.concatenate(([0], np.cumsum(n)))).tolist())
-        self.rows.extend([row] * (len(at) - 1))
+        self._chosen.append(self._n + np.concatenate(([0], np.cumsum(n))))
+        self._rows.append(np.full(len(at) - 1, row))
+        self._n += len(dense)
         points = position(stretch, dense)
         length = length_of(stretch)
         along = np.concatenate(([0.0], np.cumsum(np.sqrt((np.diff(points, axis=0) ** 2).sum(axis=1)))))
-        self.lengths.extend((self._so_far + along * (length / along[-1])).tolist())
+        lengths = self._so_far + along * (length / along[-1])
         self._so_far += length
-        self.points.extend(points)
-        self.tangents.extend(tangent(stretch, dense))
-        self.bent.extend(curvature(stretch, dense))
+        self._parts.append((points, tangent(stretch, dense), lengths, curvature(stretch, dense)))
+
+    def table(self) -> _Dense:
+        """All of it."""
+        points, tangents, lengths, bent = (np.concatenate(each) for each in zip(*self._parts, strict=True))
+        return _Dense(points, tangents, lengths, bent, np.concatenate(self._chosen), np.concatenate(self._rows))
+
+
+def _all_turning(stretch: Stretch) -> float:
+    """The angle, radians, that a stretch turns through, roughly."""
+    return float(_turning(stretch, _probes(stretch)).sum()) if isinstance(stretch, Spline | Coil) else 0.0
 
 
 def _turning(stretch: Stretch, at: F64) -> F64:
@@ -220,17 +258,17 @@ def _rolled(axes: F64, tangents: F64, angle: F64) -> F64:
     return np.stack((c * axes + s * other, c * other - s * axes, tangents), axis=2)
 
 
-def _chosen(fine: _Fine, every: F64, is_closed: bool, shift: tuple[int, int], twist: float) -> Stations:
+def _chosen(fine: _Dense, every: F64, is_closed: bool, shift: tuple[int, int], twist: float) -> Stations:
     """The stations among the small steps: at a joint one for the two that stand there."""
-    chosen = np.array(fine.chosen)
-    starts = np.flatnonzero(np.diff(np.array(fine.rows), prepend=-1))
+    chosen = fine.chosen
+    starts = np.flatnonzero(np.diff(fine.rows, prepend=-1))
     # The end of stretch j stands in `chosen` just before the start of stretch j + 1.
     ahead = starts + np.arange(len(starts))
     after = np.delete(chosen, ahead[1:] - 1)
     before = np.delete(chosen, ahead[1:])
     if is_closed:
         after, before = after[:-1], np.concatenate((before[-1:], before[1:-1]))
-    points = np.array(fine.points)[after]
+    points = fine.points[after]
     one, other = every[before], every[after]
     section = other[:, :, :2].copy()
     way_in, way_out = one[:, :, 2], other[:, :, 2]
@@ -239,14 +277,5 @@ def _chosen(fine: _Fine, every: F64, is_closed: bool, shift: tuple[int, int], tw
         plane = way_in[corner] + way_out[corner]
         slope = (plane[:, :, None] * section[corner]).sum(axis=1) / (plane * way_out[corner]).sum(axis=1)[:, None]
         section[corner] -= way_out[corner][:, :, None] * slope[:, None, :]
-    bent, lengths = np.array(fine.bent)[after], np.array(fine.lengths)[after]
-    return Stations(points, one, other, section, bent, lengths, np.array(fine.rows), is_closed, *shift, twist)
-
-
-def _dot(a: list[float], b: list[float]) -> float:
-    return a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
-
-
-def _reflected(a: list[float], normal: list[float], square: float) -> list[float]:
-    share = 2.0 / square * _dot(normal, a)
-    return [a[0] - share * normal[0], a[1] - share * normal[1], a[2] - share * normal[2]]
+    bent, lengths = fine.bent[after], fine.lengths[after]
+    return Stations(points, one, other, section, bent, lengths, fine.rows, is_closed, *shift, twist)

@@ -39,7 +39,7 @@ def swept(shape: Sweep | Tube | Spring, rung: float) -> Shell:
     loops = flatten(outline, rung)
     reach = reach_from_path(loops)
     round_section = isinstance(shape, Tube | Spring)
-    symmetry = divisions_in_common(loops) if round_section and found.is_closed else 1
+    symmetry = divisions_in_common(loops) if round_section else 1
     along = stations(found, rung, reach, twist, symmetry)
     if along.twist and not round_section:
         loops = [_divided(loop, rung, reach) for loop in loops]
