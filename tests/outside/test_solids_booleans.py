@@ -112,6 +112,19 @@ def test_convex_pairs_against_half_spaces(n: int, seed: int) -> None:
     assert worst < 1e-9
 
 
+def test_what_is_kept_of_a_solid_by_itself_is_the_solid() -> None:
+    """A A = A (idempotence). The kernel's difference alone loses a twelfth of this prism: all its faces coincide."""
+    place: Affine = (
+        (0.9784085179070207, -0.08441279676552099, 0.18865643861053374, 0.034376014779413655),
+        (0.11371929180421445, 0.9820705856948581, -0.15035054833457182, -0.7701337922075986),
+        (-0.17258242888120204, 0.16855813375563142, 0.9704655896971739, -0.959088782038796),
+    )
+    prism = Prism(8, 4.034476059764122, 2.9098506212085002)
+    alone, kept = made(add(prism, place)), made(add(prism, place), keep(prism, place))
+    check_mesh(kept, 0.02)
+    assert volume(kept) == pytest.approx(volume(alone), rel=1e-12)
+
+
 def deepest(half_spaces: np.ndarray) -> np.ndarray | None:
     """The centre of the largest ball within all half spaces, None if there is none (linear programme)."""
     from scipy.optimize import linprog
