@@ -5,7 +5,7 @@ Each is named in the message that enforces it.
 
 from __future__ import annotations
 
-TURNS = 1_000
+TURNS = 500
 """Turns of a helix or a spring."""
 
 COPIES = 100_000

@@ -27,9 +27,10 @@ from platewright.compiler.solids.recipe import (
     Transition,
     Tube,
 )
+from platewright.compiler.solids.spine import length_of, position, reach_of
 from platewright.compiler.solids.tessellate import count_triangles, problems_of, tessellate
 from platewright.compiler.solids.transform import compose, mirror, scale, translate, turn
-from support.bodies import HOSE, LOOP, MIXED, SQUARE, STRIP, bent, circle, flaw, ring_path
+from support.bodies import HOSE, LOOP, MIXED, SQUARE, STRIP, bent, circle, flaw, ring_path, traced
 from support.recipes import add, check_mesh, cut, made
 
 P = PatchKind
@@ -213,3 +214,40 @@ def test_the_same_recipe_gives_the_same_bytes() -> None:
     one, other = (made(add(Sweep(STRIP, ring_path())), rung=0.05) for _ in range(2))
     assert one.vertices.tobytes() == other.vertices.tobytes()
     assert one.corner_normals.tobytes() == other.corner_normals.tobytes()
+
+
+def wandering(seed: int) -> tuple[Tube, float]:
+    """A tube along edges of a grid of 20 mm, bent round 8 mm, and the least distance of far points of its axis, less
+    its diameter: below 0 it cuts itself."""
+    random = np.random.default_rng(seed)
+    points, way = [np.zeros(3)], np.array([1.0, 0.0, 0.0])
+    for _ in range(14):
+        points.append(points[-1] + 20.0 * way)
+        turned = np.roll(way, int(random.integers(1, 3))) * random.choice((-1.0, 1.0))
+        way = turned if random.random() < 0.7 else way
+    path = bent(*((float(x), float(y), float(z)) for x, y, z in points), radius=8.0)
+    at, places, so_far = [], [], 0.0
+    for stretch in traced(path).stretches:
+        steps = np.linspace(0.0, reach_of(stretch), max(2, int(2 * length_of(stretch))))
+        places.append(position(stretch, steps))
+        at.append(so_far + steps / reach_of(stretch) * length_of(stretch))
+        so_far += length_of(stretch)
+    axis, along = np.concatenate(places), np.concatenate(at)
+    apart = np.sqrt(((axis[:, None] - axis[None]) ** 2).sum(axis=2))
+    far = np.abs(along[:, None] - along[None]) > math.pi * 8.0 + 1.0
+    diameter = float(random.uniform(4.0, 15.0))
+    return Tube(path, diameter), float(apart[far].min()) - diameter
+
+
+def test_far_stretches_that_meet_are_found_on_random_paths_and_no_others() -> None:
+    """Judged against distances between sampled points of the axis; cases within a quarter of a millimetre of touching
+    are left out, and so are those whose flat ends decide."""
+    found = {True: 0, False: 0}
+    for seed in range(44):
+        tube, gap = wandering(seed)
+        if abs(gap) < 0.25 or -tube.diameter / 2 < gap < 0.0:
+            continue
+        codes = [each.code for each in problems_of(tube)]
+        assert codes == (["cuts-itself"] if gap < 0.0 else []), (seed, gap)
+        found[gap < 0.0] += 1
+    assert found[True] >= 5 and found[False] >= 20, found
