@@ -31,7 +31,7 @@ MOST_GAPS = 400
 """Gaps measured in one model."""
 MOST_NEIGHBOURS = 12
 """Gaps measured for one copy, and for one pair of copies."""
-MOST_BOXES = 100_000_000
+MOST_BOXES = 10_000_000
 """Boxes compared in one model."""
 _FLUSH = 1e-6
 """Of its size: flat parts nearer than this touch."""
