@@ -111,7 +111,7 @@ class _Reading:
         for each, line in lines.items():
             with self.problems.collecting():
                 changes.update(self._read(each, line.head))
-        return replace(found, **changes) if found is not None else None  # type: ignore[arg-type]
+        return replace(found, **changes) if found is not None else None
 
     def _subject(self, line: tree.Line | None) -> Spec:
         viewpoint, sources = standard("isometric"), DEFAULT

@@ -125,7 +125,7 @@ def test_documented_counts() -> None:
     n, m = divisions(5.0, RUNG), divisions(2.5, RUNG)
     assert len(tessellate(Cylinder(10.0, 4.0), RUNG).faces) == 4 * n - 4
     assert len(tessellate(Cone(10.0, 0.0, 4.0), RUNG).faces) == 2 * n - 2
-    assert len(tessellate(Cone(10.0, 5.0, 4.0), RUNG).faces) == 2 * n + 2 * m - 4
+    assert len(tessellate(Cone(10.0, 5.0, 4.0), RUNG).faces) == 4 * n + 2 * m - 4
     assert len(tessellate(Sphere(10.0), RUNG).faces) == n * (n - 2)
     assert len(tessellate(Torus(5.0, 5.0 - 1e-6), RUNG).faces) == 2 * divisions(5.0 - 5e-7, RUNG) * m
 

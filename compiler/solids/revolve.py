@@ -3,7 +3,8 @@
 A ring's division follows from its own radius and the rung, so a cylinder of a given radius has the same vertices
 wherever it occurs. Rings of different division are joined by the order of their angles; a band between rings of n
 and m vertices has n + m triangles, n where one ring is a point on the axis of a curved or sloping surface, and a flat
-disc has n - 2.
+disc has n - 2. A cone between rings of n and more, m, vertices is two bands: n + m close to the smaller end, then
+2 m; one band of n + m if it is shorter than `2 FAN_RUNGS` chord errors.
 """
 
 from __future__ import annotations
@@ -26,6 +27,11 @@ from .surfaces import free, plane, surfaces, upright
 F64 = NDArray[np.float64]
 I64 = NDArray[np.int64]
 _NEAR = 1e-12
+FAN_SHARE = 1.0 / 64.0
+FAN_RUNGS = 12.0
+"""The part of a cone's length that joins its few vertices at the smaller end to its many, and the chord errors that
+it is long at least.
+"""
 
 
 def revolve(loops: list[Polyline], rung: float, angle: float = 360.0) -> Shell:
@@ -33,8 +39,8 @@ def revolve(loops: list[Polyline], rung: float, angle: float = 360.0) -> Shell:
 
     Less than a full turn, `angle` degrees from the x axis, has plane ends.
     """
+    loops, division = _with_fine_cones(loops, ring_divisions(loops, rung), rung)
     radius = [_radii(loop) for loop in loops]
-    division = ring_divisions(loops, rung)
     turn = _Turn(angle)
     vertices: list[F64] = []
     pieces: list[tuple[I64, int]] = []
@@ -182,7 +188,43 @@ def ring_divisions(loops: list[Polyline], rung: float) -> list[NDArray[np.int64]
 
 def count_triangles(loops: list[Polyline], rung: float) -> int:
     """Triangles that `revolve` makes: the bands' sums, at most (discs and joins at the axis take fewer)."""
-    return sum(int((count + np.roll(count, -1)).sum()) for count in ring_divisions(loops, rung))
+    _, division = _with_fine_cones(loops, ring_divisions(loops, rung), rung)
+    return sum(int((count + np.roll(count, -1)).sum()) for count in division)
+
+
+def _with_fine_cones(loops: list[Polyline], division: list[I64], rung: float) -> tuple[list[Polyline], list[I64]]:
+    """Put a ring of the larger division close to the smaller end of every cone whose ends are divided unlike.
+
+    Where many vertices met few over the whole of a cone, shading between their normals would show as rays. The band
+    that joins them is several chord errors long, so that its triangles do not lean over; a cone too short for that
+    stays one band.
+    """
+    finer = [_with_fine_cone(loop, count, rung) for loop, count in zip(loops, division, strict=True)]
+    return [loop for loop, _ in finer], [count for _, count in finer]
+
+
+def fan_share(length: float, rung: float) -> float:
+    """The part of a cone of a slant `length` mm that joins its two divisions; from 0.5 on the cone is one band."""
+    return max(FAN_SHARE, FAN_RUNGS * rung / length) if length > 0.0 else 1.0
+
+
+def _with_fine_cone(loop: Polyline, count: I64, rung: float) -> tuple[Polyline, I64]:
+    following, end = np.roll(count, -1), np.roll(loop.points, -1, axis=0)
+    across, up = (end - loop.points).T
+    is_line = np.array([not (curve.is_free or curve.radius) for curve in loop.curves])[loop.curve]
+    is_cone = is_line & (count != following) & (count > 1) & (following > 1) & (np.abs(up) > _NEAR * np.abs(across))
+    fan = np.array([fan_share(float(length), rung) for length in np.hypot(across, up)])
+    rows = np.flatnonzero(is_cone & (fan < 0.5))
+    if not len(rows):
+        return loop, count
+    share = np.where(count[rows] < following[rows], fan[rows], 1.0 - fan[rows])[:, None]
+    between = loop.points[rows] * (1.0 - share) + end[rows] * share
+    return Polyline(
+        np.insert(loop.points, rows + 1, between, axis=0),
+        np.insert(loop.curve, rows + 1, loop.curve[rows]),
+        loop.curves,
+        np.insert(loop.tangents, rows + 1, loop.tangents[rows], axis=0),
+    ), np.insert(count, rows + 1, np.maximum(count[rows], following[rows]))
 
 
 def _radii(loop: Polyline) -> F64:

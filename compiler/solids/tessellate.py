@@ -1,7 +1,7 @@
 """Every primitive of a recipe to its shell: one place to add a solid.
 
-Triangles, n = divisions(radius, rung): cylinder 4n - 4; cone 2n - 2, truncated 2n - 4 + n + m; sphere and ellipsoid
-n(n - 2); torus 2nm.
+Triangles, n = divisions(radius, rung): cylinder 4n - 4; cone 2n - 2, truncated with m < n at its smaller end
+4n + 2m - 4 (2n + 2m - 4 if it is short); sphere and ellipsoid n(n - 2); torus 2nm.
 """
 
 from __future__ import annotations
@@ -45,7 +45,7 @@ from .recipe import (
     Transition,
     Wedge,
 )
-from .revolve import revolve
+from .revolve import fan_share, revolve
 from .shell import Shell
 from .surfaces import place
 from .thread import count_triangles as count_thread
@@ -115,7 +115,10 @@ def count_triangles(shape: Primitive, rung: float) -> int:
     if isinstance(shape, Prism | Pyramid):
         return (2 if isinstance(shape, Pyramid) and shape.top == 0.0 else 4) * (shape.sides - 1)
     if isinstance(shape, Cylinder | Cone):
-        return sum(2 * divisions(d / 2, rung) - 2 for d in (shape.diameter, _top(shape)) if d > 0.0)
+        ends = [divisions(d / 2, rung) for d in (shape.diameter, _top(shape)) if d > 0.0]
+        slant = math.hypot((shape.diameter - _top(shape)) / 2, shape.length)
+        extra = 2 * max(ends) if len(set(ends)) == 2 and fan_share(slant, rung) < 0.5 else 0
+        return sum(2 * n - 2 for n in ends) + extra
     if isinstance(shape, Sphere | Ellipsoid):
         n = divisions((max(shape.axes) if isinstance(shape, Ellipsoid) else shape.diameter) / 2, rung)
         return n * (n - 2)
@@ -138,7 +141,9 @@ def count_triangles(shape: Primitive, rung: float) -> int:
     chords = sum(count_chords(curves, rung) for curves in loops)
     if isinstance(shape, Extrude):
         return 4 * chords
-    return 2 * chords * divisions(max(extent(loops[0])[1][0], rung), rung)
+    # A sloping line may take a second ring (`revolve`).
+    lines = sum(not (curve.radius or curve.is_free) for curves in loops for curve in curves)
+    return 2 * (chords + lines) * divisions(max(extent(loops[0])[1][0], rung), rung)
 
 
 def _primitive(placed: Placed) -> Primitive:

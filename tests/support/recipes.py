@@ -59,8 +59,9 @@ def check_mesh(mesh: Mesh, rung: float, tolerance: float = 1e-9) -> None:
     """
     check_arrays(mesh)
     assert mesh.closed
-    volumes = component_volumes(mesh)
-    assert (np.abs(volumes) > 1e-9 * np.abs(volumes).max()).all()
+    # A piece may be small, as where a ridge just reaches through, but it has a thickness: its volume over its area.
+    thickness = np.abs(component_volumes(mesh)) / component_areas(mesh)
+    assert (thickness > 1e-9 * np.ptp(mesh.vertices, axis=0).max()).all()
     assert np.isfinite(mesh.vertices).all()
     assert np.isfinite(mesh.corner_normals).all()
     assert not (mesh.edge_kind == EdgeKind.BORDER).any()
@@ -119,6 +120,13 @@ def component_volumes(mesh: Mesh) -> NDArray[np.float64]:
     a, b, c = (mesh.vertices[mesh.faces[:, k]] - mesh.vertices.mean(axis=0) for k in range(3))
     six = np.einsum("ij,ij->i", a, np.cross(b, c))
     return np.bincount(measure.components(mesh.faces, len(mesh.vertices)), six) / 6.0
+
+
+def component_areas(mesh: Mesh) -> NDArray[np.float64]:
+    """Of every connected surface, mm2."""
+    a, b, c = (mesh.vertices[mesh.faces[:, k]] for k in range(3))
+    doubled = np.linalg.norm(np.cross(b - a, c - a), axis=1)
+    return np.bincount(measure.components(mesh.faces, len(mesh.vertices)), doubled) / 2.0
 
 
 def check_normals(mesh: Mesh) -> None:
