@@ -167,8 +167,8 @@ def test_the_signed_volumes_of_the_dump_are_those_of_the_list() -> None:
     totals: dict[str, float] = defaultdict(float)
     for line in dumped(run, "triangles").splitlines():
         path, *_ = line.split(" ")
-        a, b, c = np.array([float(each) for each in line.split(" ")[-9:]]).reshape(3, 3)
-        totals[path] += float(a @ np.cross(b, c)) / 6
+        (ax, ay, az), (bx, by, bz), (cx, cy, cz) = zip(*[map(float, line.split(" ")[-9:])] * 3, strict=True)
+        totals[path] += (ax * (by * cz - bz * cy) + ay * (bz * cx - bx * cz) + az * (bx * cy - by * cx)) / 6
     listing, _ = scene.listing(run.model, run.project, run.meshes)
     volumes = {row.path: row.volume for row in listing.parts}
     assert set(totals) == set(volumes) - {"a"} and len(totals) == 5

@@ -152,9 +152,10 @@ FAMILIES: tuple[Callable[[np.random.Generator], Case], ...] = (
 )
 
 
+@pytest.mark.parametrize("seeds", [range(3), pytest.param(range(3, EACH), marks=pytest.mark.slow)], ids=["few", "all"])
 @pytest.mark.parametrize("family", FAMILIES, ids=lambda family: family.__name__)
-def test_random_bodies_converge_at_second_order(family: Callable[[np.random.Generator], Case]) -> None:
-    for seed in range(EACH):
+def test_random_bodies_converge_at_second_order(family: Callable[[np.random.Generator], Case], seeds: range) -> None:
+    for seed in seeds:
         shape, exact, radius = family(np.random.default_rng([seed, len(family.__name__)]))
         rungs = [radius * 8e-3 * step for step in STEPS]
         errors = []
