@@ -359,9 +359,7 @@ CURVE_ROWS: tuple[Row, ...] = (
         "a smooth stretch in space through the points of a table of three columns",
         'curve over "route.csv"',
     ),
-    Row(
-        "path from", "from <point:point>", ("path",), "where a path starts", "from (0, 0, 0)", is_once=True
-    ),
+    Row("path from", "from <point:point>", ("path",), "where a path starts", "from (0, 0, 0)", is_once=True),
     Row(
         "path to",
         "to <point:point> [bend <radius:length>]",
