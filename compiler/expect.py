@@ -20,6 +20,7 @@ from .flatten import Flattened, Mesher, flatten
 from .graph import Solid
 from .measure import area, least_clearance, volume
 from .mistakes import Mistake, Problems, mistake
+from .modules import names_in
 from .paths import Placed, follow
 from .readings import expression, optional
 from .scope import Scope, did_you_mean
@@ -34,7 +35,11 @@ MEASURES = ("distance", "clearance", *SIZES, "volume", "area", "mass", *LATER)
 MAX_PAIRS = 2_500
 
 EQUAL = 1e-6
-"""Part of the larger value by which two values may differ where no `within` is stated."""
+EQUAL_ON_TRIANGLES = 1e-3
+"""Part of the larger value by which two values may differ where no `within` is stated; the second where a volume, area
+or mass is among them, for these are measured on triangles (`solids.bounds.facts_rung` says how far they fall short).
+"""
+ON_TRIANGLES = ("volume", "area", "mass")
 
 
 def judge_facts(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
@@ -242,7 +247,8 @@ def _judge_equal(
         is_met, expected = same(left, right, fact.span), shown(right)
     else:
         left, right = matched(left, right, fact.span, "the two sides of a fact are of one kind")
-        tolerance, spelt = EQUAL * max(abs(left.value), abs(right.value)), ""
+        share = EQUAL_ON_TRIANGLES if _is_on_triangles(written, wanted) else EQUAL
+        tolerance, spelt = share * max(abs(left.value), abs(right.value)), ""
         if within is not None:
             tolerance, spelt = _tolerance(within, left, right, scope)
         # The last few bits of a sum are no difference.
@@ -251,6 +257,10 @@ def _judge_equal(
     if not is_met:
         words = _source_text(model, written.span)
         raise mistake("broken-fact", fact.span, f"`{words}` is {shown(left)}, expected {expected}")
+
+
+def _is_on_triangles(*written: tree.Expression) -> bool:
+    return any(path.dotted in ON_TRIANGLES for each in written for path in names_in(each))
 
 
 def _tolerance(within: tree.Expression, left: Quantity, right: Quantity, scope: Scope) -> tuple[float, str]:

@@ -35,6 +35,9 @@ ERROR_ON_PAPER_MM = 0.02
 """The chord error on paper that a figure's rung keeps to, at its nearest point."""
 
 DRAWABLE: tuple[Literal["png", "tiff"], ...] = ("png", "tiff")
+LEAST_ON_PAPER_MM = 0.05
+"""A subject smaller than this on paper is not drawn: about a dot at 500 to the inch."""
+
 NOT_YET = ("svg", "pdf", "eps")
 
 
@@ -277,9 +280,13 @@ class _Planner:
         """A figure with nothing in view is a problem; one whose subject leaves the page says so."""
         points, _ = camera.to_page(frame.projection, vertices)
         inside = (points >= 0).all(axis=1) & (points <= (frame.width, frame.height)).all(axis=1)
+        spans = np.nanmin(points, axis=0), np.nanmax(points, axis=0)
+        reach = float((spans[1] - spans[0]).max())
+        if reach < LEAST_ON_PAPER_MM:
+            sentence = f"the whole subject would be {reach:.2g} mm large on paper, too small to be seen"
+            raise mistake("nothing-in-view", self.spec.span, sentence, "a larger scale")
         if inside.all():
             return
-        spans = np.nanmin(points, axis=0), np.nanmax(points, axis=0)
         misses = not inside.any() and ((spans[0] > (frame.width, frame.height)).any() or (spans[1] < 0).any())
         if misses:
             raise mistake("nothing-in-view", self.spec.span, "nothing of the subject lies within this view")

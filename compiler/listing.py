@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import numpy as np
 from msgspec import Struct
 from platewright.backend.contract import Geometry
 from platewright.lang import tree
@@ -90,8 +91,9 @@ def _parts(flattened: Flattened) -> list[PartRow]:
     below: dict[int, list[int]] = {row: [row] for row, node in enumerate(geometry.nodes) if node.mesh >= 0}
     for row in range(len(geometry.nodes) - 1, 0, -1):
         below.setdefault(geometry.nodes[row].parent, []).extend(below.get(row, []))
+    of_mesh = [volume(mesh.vertices, mesh.faces) for mesh in geometry.meshes]
     volumes = [
-        volume(geometry.vertices, geometry.faces[slice(*node.face_range)]) if node.mesh >= 0 else 0.0
+        of_mesh[node.mesh] * abs(float(np.linalg.det(node.placement[:3, :3]))) if node.mesh >= 0 else 0.0
         for node in geometry.nodes
     ]
     rows = []

@@ -111,7 +111,8 @@ def faults(outline: Outline, turned: bool) -> tuple[OutlineFlaw, ...]:
     curves = [oriented(loop, k == 0) for k, loop in enumerate(loops)]
     size = max(1e-12, max(abs(x) for loop in curves for corner in extent(loop) for x in corner))
     for loop in curves:
-        if abs(area(loop)) <= _NEAR * size * size:
+        # Lobes of a crossing loop may cancel; only what lies on one line encloses nothing.
+        if abs(area(loop)) <= _NEAR * size * size and _is_on_a_line(loop, size):
             return (OutlineFlaw("no-area", "the outline encloses no area", "give it points that go round something"),)
     lines = [polyline(loop, 0.0) for loop in curves]
     touch = contact(lines)
@@ -135,6 +136,15 @@ def faults(outline: Outline, turned: bool) -> tuple[OutlineFlaw, ...]:
 
 def _count(stretch: Stretch) -> int:
     return len(stretch.points) if isinstance(stretch, SplineTo) else 1
+
+
+def _is_on_a_line(loop: tuple[Curve, ...], size: float) -> bool:
+    if any(curve.radius or curve.is_free for curve in loop):
+        return False
+    points = np.array([curve.start for curve in loop]).reshape(-1, 2)
+    away = points - points[:1]
+    far = away[np.argmax((away**2).sum(axis=1))] if len(away) else np.zeros(2)
+    return bool((np.abs(away[:, 0] * far[1] - away[:, 1] * far[0]) <= _NEAR * size * size).all())
 
 
 def inside(point: F64, polygon: F64) -> bool:
