@@ -67,7 +67,8 @@ def check_contacts(things: Sequence[Thing], mesher: Mesher) -> tuple[Problem, ..
             continue
         for occurrence, n_floating in floating:
             n = len(occurrence.copies)
-            named = f"`{occurrence.name}`" if n == 1 else f"{n_floating} of the {n} copies of `{occurrence.name}`"
+            number = f"at least {n_floating}" if contacts.boxes < 0 else f"{n_floating}"
+            named = f"`{occurrence.name}`" if n == 1 else f"{number} of the {n} copies of `{occurrence.name}`"
             verb = "touches" if n_floating == 1 else "touch"
             sentence = f"{named} {verb} nothing else in `{assembly.name}`"
             problems.warn("floating-part", occurrence.span, sentence, hint)
