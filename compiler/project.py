@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import posixpath
 from collections.abc import Callable, Iterator, Mapping
-from dataclasses import dataclass
 from importlib import resources
 
+from msgspec import Struct
 from platewright.lang import tree
 from platewright.lang.problems import Problem, is_error
 from platewright.lang.reader import read_scene
@@ -19,8 +19,7 @@ from .readings import LATER
 from .tables import Table, read_table
 
 
-@dataclass(frozen=True, slots=True)
-class Refusal:
+class Refusal(Struct, frozen=True):
     """What a loader answers instead of bytes."""
 
     reason: str
@@ -29,8 +28,7 @@ class Refusal:
 Loader = Callable[[str], "bytes | Refusal"]
 
 
-@dataclass(frozen=True, slots=True)
-class Files:
+class Files(Struct, frozen=True):
     """Parsed scenes and tables by file name, the texts they came from, and where each `see` leads.
 
     `faults` are the lines of each scene that could not be read and have their problem already.

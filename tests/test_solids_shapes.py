@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-import dataclasses
 import math
 
 import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from msgspec import structs
 from platewright.backend.contract import EdgeKind, PatchKind
 from platewright.compiler import measure
 from platewright.compiler.solids import transform
@@ -264,8 +264,8 @@ def test_any_size_is_closed_and_sane(shape: Primitive, rung: float) -> None:
 @pytest.mark.parametrize("value", [0.0, -1.0, math.nan, math.inf])
 @pytest.mark.parametrize("shape", [Cylinder(1.0, 1.0), Sphere(1.0), Torus(3.0, 1.0), Cone(1.0, 1.0, 1.0)])
 def test_sizes_that_are_no_sizes_are_our_bug(shape: Primitive, value: float) -> None:
-    for name in type(shape).__dataclass_fields__:
+    for name in type(shape).__struct_fields__:
         if name == "top" and value == 0.0:
             continue
         with pytest.raises(SolidError, match=name):
-            tessellate(dataclasses.replace(shape, **{name: value}), RUNG)
+            tessellate(structs.replace(shape, **{name: value}), RUNG)

@@ -2,11 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from msgspec import Struct
 
 
-@dataclass(frozen=True, slots=True)
-class Flaw:
+class Flaw(Struct, frozen=True):
     """One mistake. `code` is stable; `source` is a row of the compiler's table of lines, -1 for the whole part.
 
     The sentence is in the author's words and in the style of problems, small at the start and without a period; so is

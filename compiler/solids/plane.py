@@ -12,6 +12,7 @@ from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
+from msgspec import structs
 from numpy.typing import NDArray
 
 from ..trigonometry import cos_deg, sin_deg
@@ -161,8 +162,8 @@ def turned(stretches: Sequence[Stretch], degrees: float) -> tuple[Stretch, ...]:
 def ending_at(stretch: Stretch, end: Point2) -> Stretch:
     """The stretch with its end set to a point that differs by rounding alone."""
     if isinstance(stretch, SplineTo):
-        return replace(stretch, points=(*stretch.points[:-1], end))
-    return replace(stretch, end=end)
+        return structs.replace(stretch, points=(*stretch.points[:-1], end))
+    return structs.replace(stretch, end=end)
 
 
 def turn_point(point: Point2, degrees: float) -> Point2:

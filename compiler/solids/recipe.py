@@ -6,23 +6,22 @@ a shape's own frame to the part's frame. Values are frozen and hashable; equal r
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Literal
+
+from msgspec import Struct
 
 Point2 = tuple[float, float]
 Point3 = tuple[float, float, float]
 Affine = tuple[tuple[float, float, float, float], tuple[float, float, float, float], tuple[float, float, float, float]]
 
 
-@dataclass(frozen=True, slots=True)
-class LineTo:
+class LineTo(Struct, frozen=True):
     """A straight stretch to `end`."""
 
     end: Point2
 
 
-@dataclass(frozen=True, slots=True)
-class ArcTo:
+class ArcTo(Struct, frozen=True):
     """A circular stretch to `end` round `centre`; `left` turns counter-clockwise."""
 
     end: Point2
@@ -30,8 +29,7 @@ class ArcTo:
     left: bool
 
 
-@dataclass(frozen=True, slots=True)
-class SplineTo:
+class SplineTo(Struct, frozen=True):
     """A C2 cubic spline from here through `points`, chord lengths its parameter (`cubic.bezier_pieces`).
 
     It starts along `tangent` and ends along `end_tangent`, without bending where they are None, and closes smoothly
@@ -48,8 +46,7 @@ class SplineTo:
         return self.points[-1]
 
 
-@dataclass(frozen=True, slots=True)
-class EllipseTo:
+class EllipseTo(Struct, frozen=True):
     """A stretch of an ellipse to `end`, by its half axes, the first `turn` degrees from x; the end at the start is all
     of it.
     """
@@ -64,8 +61,7 @@ class EllipseTo:
 Stretch = LineTo | ArcTo | SplineTo | EllipseTo
 
 
-@dataclass(frozen=True, slots=True)
-class Loop:
+class Loop(Struct, frozen=True):
     """A closed plane curve from `start`; if the last stretch does not end there, a straight one closes it.
 
     A full circle is one `ArcTo` whose end is the start.
@@ -75,23 +71,20 @@ class Loop:
     stretches: tuple[Stretch, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Outline:
+class Outline(Struct, frozen=True):
     """An outer loop and the loops of its holes, in any winding."""
 
     outer: Loop
     holes: tuple[Loop, ...] = ()
 
 
-@dataclass(frozen=True, slots=True)
-class Block:
+class Block(Struct, frozen=True):
     """Sides along x, y, z; centre of the base at the origin."""
 
     size: Point3
 
 
-@dataclass(frozen=True, slots=True)
-class Wedge:
+class Wedge(Struct, frozen=True):
     """A block whose top is `top_length` long in x.
 
     From 0 (a sharp ridge) up, its slope on the +x side (ISO 10303-42 right angular wedge).
@@ -101,16 +94,14 @@ class Wedge:
     top_length: float
 
 
-@dataclass(frozen=True, slots=True)
-class Cylinder:
+class Cylinder(Struct, frozen=True):
     """Base centre at the origin, axis z."""
 
     diameter: float
     length: float
 
 
-@dataclass(frozen=True, slots=True)
-class Cone:
+class Cone(Struct, frozen=True):
     """Base centre at the origin, axis z; `top` is the upper diameter, 0 for a point."""
 
     diameter: float
@@ -118,30 +109,26 @@ class Cone:
     length: float
 
 
-@dataclass(frozen=True, slots=True)
-class Sphere:
+class Sphere(Struct, frozen=True):
     """Centred at the origin."""
 
     diameter: float
 
 
-@dataclass(frozen=True, slots=True)
-class Ellipsoid:
+class Ellipsoid(Struct, frozen=True):
     """Full axes along x, y, z; centred at the origin."""
 
     axes: Point3
 
 
-@dataclass(frozen=True, slots=True)
-class Torus:
+class Torus(Struct, frozen=True):
     """`diameter` of the centre circle, `tube` diameter; centred at the origin, axis z."""
 
     diameter: float
     tube: float
 
 
-@dataclass(frozen=True, slots=True)
-class Prism:
+class Prism(Struct, frozen=True):
     """A regular prism.
 
     `across` its flats for an even number of sides, else twice the inscribed radius; a flat faces -y.
@@ -152,8 +139,7 @@ class Prism:
     length: float
 
 
-@dataclass(frozen=True, slots=True)
-class Pyramid:
+class Pyramid(Struct, frozen=True):
     """As `Prism`, running to `top` across (0 for a point) at height `length`."""
 
     sides: int
@@ -162,8 +148,7 @@ class Pyramid:
     length: float
 
 
-@dataclass(frozen=True, slots=True)
-class Extrude:
+class Extrude(Struct, frozen=True):
     """The outline's plane is xy; it rises from z = 0.
 
     Its walls lean inward by `taper` degrees, parallel outlines all the way; it turns by `twist` degrees as it rises.
@@ -175,8 +160,7 @@ class Extrude:
     twist: float = 0.0
 
 
-@dataclass(frozen=True, slots=True)
-class Revolve:
+class Revolve(Struct, frozen=True):
     """The outline's second axis becomes z, its first the radius, which may not be negative; turned by `angle` degrees
     from the x axis, with plane ends if that is less than 360.
     """
@@ -185,8 +169,7 @@ class Revolve:
     angle: float = 360.0
 
 
-@dataclass(frozen=True, slots=True)
-class Edged:
+class Edged(Struct, frozen=True):
     """A shape with its edges rounded by a radius or chamfered, `size` being the length taken off either side.
 
     All edges of a block, wedge, cylinder, cone, prism or pyramid; those round the two ends of an extrusion; the
@@ -198,24 +181,21 @@ class Edged:
     size: float
 
 
-@dataclass(frozen=True, slots=True)
-class SpaceLineTo:
+class SpaceLineTo(Struct, frozen=True):
     """A straight stretch to `end`; above 0, `bend` is the radius of the arc that rounds the corner there."""
 
     end: Point3
     bend: float = 0.0
 
 
-@dataclass(frozen=True, slots=True)
-class SpaceArcTo:
+class SpaceArcTo(Struct, frozen=True):
     """A circular stretch through a point to `end`."""
 
     through: Point3
     end: Point3
 
 
-@dataclass(frozen=True, slots=True)
-class SpaceSplineTo:
+class SpaceSplineTo(Struct, frozen=True):
     """A C2 cubic spline from here through `points`, chord lengths its parameter (`spine.spline`).
 
     It takes over the direction of the stretch before it and, if that is straight or an arc, of the one after it; a
@@ -225,8 +205,7 @@ class SpaceSplineTo:
     points: tuple[Point3, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Helix:
+class Helix(Struct, frozen=True):
     """A whole path about z from (diameter/2, 0, 0) upward; `left` turns clockwise as it rises."""
 
     diameter: float
@@ -235,16 +214,14 @@ class Helix:
     left: bool = False
 
 
-@dataclass(frozen=True, slots=True)
-class SpacePath:
+class SpacePath(Struct, frozen=True):
     """A curve in space from `start`; closed if its last stretch ends there. A helix stands alone."""
 
     start: Point3
     stretches: tuple[SpaceLineTo | SpaceArcTo | SpaceSplineTo | Helix, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Sweep:
+class Sweep(Struct, frozen=True):
     """The outline carried along the path in a frame that does not turn about it, but for `twist` degrees in all.
 
     At the start the outline's plane stands square to the path, its axes as `transform.facing` tips x and y.
@@ -255,8 +232,7 @@ class Sweep:
     twist: float = 0.0
 
 
-@dataclass(frozen=True, slots=True)
-class Tube:
+class Tube(Struct, frozen=True):
     """A round tube along the path, a rod if the bore is 0."""
 
     path: SpacePath
@@ -264,8 +240,7 @@ class Tube:
     bore: float = 0.0
 
 
-@dataclass(frozen=True, slots=True)
-class Spring:
+class Spring(Struct, frozen=True):
     """A coil about z by its mean diameter, with open ends; `length` from end to end of its wire, from z = 0."""
 
     diameter: float
@@ -275,8 +250,7 @@ class Spring:
     left: bool = False
 
 
-@dataclass(frozen=True, slots=True)
-class Bellows:
+class Bellows(Struct, frozen=True):
     """A corrugated tube about z from z = 0 by its outer diameter and bore, its ends in the middle of a root."""
 
     diameter: float
@@ -286,8 +260,7 @@ class Bellows:
     thickness: float
 
 
-@dataclass(frozen=True, slots=True)
-class Transition:
+class Transition(Struct, frozen=True):
     """From one outline at z = 0 to another at `length`: their common envelope where both are convex."""
 
     lower: Outline
@@ -295,8 +268,7 @@ class Transition:
     length: float
 
 
-@dataclass(frozen=True, slots=True)
-class Thread:
+class Thread(Struct, frozen=True):
     """A screw thread of the basic profile of ISO 68-1, base centre at the origin, axis z.
 
     `major` is its diameter, `internal` says that it is the wall of a hole, `left` its hand. A plain cylinder over its
@@ -311,15 +283,13 @@ class Thread:
     real: bool = False
 
 
-@dataclass(frozen=True, slots=True)
-class Field:
+class Field(Struct, frozen=True):
     """A function of two variables as a program for a stack (`fields`)."""
 
     program: tuple[tuple[str, float], ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Grid:
+class Grid(Struct, frozen=True):
     """A function of x and y by its values `z`, a row for each y, straight between them; `x` and `y` rise."""
 
     x: tuple[float, ...]
@@ -327,8 +297,7 @@ class Grid:
     z: tuple[tuple[float, ...], ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Relief:
+class Relief(Struct, frozen=True):
     """The solid between z = 0 and a height above it over a rectangle, its middle at the origin.
 
     A grid starts at minus half the size and ends at half of it.
@@ -338,8 +307,7 @@ class Relief:
     size: Point2
 
 
-@dataclass(frozen=True, slots=True)
-class ParametricSurface:
+class ParametricSurface(Struct, frozen=True):
     """A sheet of a thickness, half of it on each side of the surface that `point` describes over ranges of u and v."""
 
     point: tuple[Field, Field, Field]
@@ -348,8 +316,7 @@ class ParametricSurface:
     thickness: float
 
 
-@dataclass(frozen=True, slots=True)
-class Envelope:
+class Envelope(Struct, frozen=True):
     """The smallest convex solid round shapes, none of them a recipe."""
 
     placed: tuple[Placed, ...]
@@ -380,8 +347,7 @@ Primitive = (
 )
 
 
-@dataclass(frozen=True, slots=True)
-class Placed:
+class Placed(Struct, frozen=True):
     """One shape, or another part's recipe, at each of `placements` (a pattern's copies).
 
     `source` is the row of the author's line in the table that the compiler keeps beside the recipe.
@@ -394,16 +360,14 @@ class Placed:
     centred: bool = False
 
 
-@dataclass(frozen=True, slots=True)
-class Step:
+class Step(Struct, frozen=True):
     """One line of the process sheet: the union of `placed` is added, cut, or kept."""
 
     operation: Literal["add", "cut", "keep"]
     placed: tuple[Placed, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Recipe:
+class Recipe(Struct, frozen=True):
     """The steps of one part in order. Sources of a nested recipe are rows of the outermost part's table."""
 
     steps: tuple[Step, ...]

@@ -176,7 +176,7 @@ def rise(shape: Primitive) -> float:
 def require_positive(shape: Primitive) -> None:
     """SolidError unless every size is a positive finite number; `top` and `top_length` may be 0."""
     may_be_zero, any_sign = {"top", "top_length", "bore"}, {"taper", "twist", "u", "v"}
-    for name in type(shape).__dataclass_fields__:
+    for name in type(shape).__struct_fields__:
         value = getattr(shape, name)
         for each in value if isinstance(value, tuple) else (value,):
             if (
