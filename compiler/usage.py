@@ -6,6 +6,7 @@ from collections.abc import Iterator, Mapping
 from typing import TypeAlias
 
 from platewright.lang import tree
+from platewright.lang.meant import shape_hint
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Problem, Related
 
@@ -106,11 +107,25 @@ def _report_unknown(reading: tree.Reading, known: set[str], problems: Problems) 
     is_thread = isinstance(shape, tree.Reading) and shape.row == "thread"
     if isinstance(shape, tree.Reading) and shape.row in VARIABLES:
         known = known | VARIABLES[shape.row]
+    named = _named_part(shape)
     for path in names_in(values, into_brackets=False):
         first = path.steps[0]
         if first.name not in known and not (is_thread and is_designation(path)):
             sentence = f"nothing here is called `{first.name}`"
-            problems.error("unknown-name", first.span, sentence, did_you_mean(nearest(first.name, known)))
+            if path is named:
+                hint = shape_hint(first.name, known.difference(FUNCTIONS, CONSTANTS, AXES))
+            else:
+                hint = did_you_mean(nearest(first.name, known))
+            problems.error("unknown-name", first.span, sentence, hint)
+
+
+def _named_part(shape: tree.Value | None) -> tree.Path | None:
+    """The plain name that stands as a part where a shape's word might: a shape with a slip in it is read so."""
+    if not isinstance(shape, tree.Reading) or shape.row != "solid":
+        return None
+    written = shape.get("part")
+    path = written.path if isinstance(written, tree.Call) else written
+    return path if isinstance(path, tree.Path) and len(path.steps) == 1 else None
 
 
 def _users(modules: Modules) -> dict[str, dict[str, dict[str, None]]]:

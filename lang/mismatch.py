@@ -7,6 +7,7 @@ from collections.abc import Iterable
 from .items import Equation, Item, Series, plain_name
 from .layout import RawLine, slip_problem
 from .matcher import Account, Matcher
+from .meant import shape_hint, shape_meant
 from .nearest import nearest
 from .patterns import Element, Equals, Literal, Pattern, Slot, Starts, Vocabulary
 from .problems import Problem, Severity
@@ -17,29 +18,33 @@ from .values import sign_slip, unit_slip
 from .words import KINDS, PLACES, SHAPE_WORDS
 
 
-def explain(raw: RawLine, starts: Starts, words: Vocabulary) -> Problem:
-    """The problem of a line that no row which may start there can read to its end."""
+def explain(raw: RawLine, starts: Starts, words: Vocabulary, things: frozenset[str]) -> Problem:
+    """The problem of a line that no row which may start there can read to its end.
+
+    `things` are the names of the parts and assemblies of the file.
+    """
     account = Account()
     matcher = Matcher(raw, words, account)
     found = matcher.start(starts, 0)
     if found is not None:
         matcher.clauses(found[2], found[1], [])
-    return _Explanation(raw, account, words).problem()
+    return _Explanation(raw, account, words, things).problem()
 
 
-def explain_clauses(raw: RawLine, pattern: Pattern, words: Vocabulary) -> Problem:
-    """The problem of an indented line that is not made of clauses of the line above."""
+def explain_clauses(raw: RawLine, pattern: Pattern, words: Vocabulary, things: frozenset[str]) -> Problem:
+    """The problem of an indented line that is not made of clauses of the line above; `things` as for `explain`."""
     account = Account()
     Matcher(raw, words, account).clauses(pattern, 0, [])
-    return _Explanation(raw, account, words).problem()
+    return _Explanation(raw, account, words, things).problem()
 
 
 class _Explanation:
     """What is known about one mismatch: the furthest item that did not fit, and what could have stood there."""
 
-    def __init__(self, raw: RawLine, account: Account, words: Vocabulary) -> None:
+    def __init__(self, raw: RawLine, account: Account, words: Vocabulary, things: frozenset[str]) -> None:
         self.raw = raw
         self.words = words
+        self.things = things
         self.account = account
         self.at = max(account.at, 0)
         self.item = raw.items[self.at] if self.at < len(raw.items) else None
@@ -62,7 +67,7 @@ class _Explanation:
 
     def problem(self) -> Problem:
         """The one problem that says it best."""
-        slip = self.touching() or self.swallowed_word() or self.misspelt_shape()
+        slip = self.unknown_shape() or self.touching() or self.swallowed_word()
         if slip is not None:
             return slip_problem(self.raw.place, slip)
         if self.item is None:
@@ -119,17 +124,21 @@ class _Explanation:
         sentence = f"expected a value behind `{shown}`, found the word `{before.word}`"
         return Slip("missing-value", behind.end, behind.end, sentence, self.example())
 
-    def misspelt_shape(self) -> Slip | None:
-        """A shape with a slip in it is read as a part, and what follows does not fit a part."""
+    def unknown_shape(self) -> Slip | None:
+        """A word that is no shape is read as a part, and what follows does not fit a part."""
         before, item = self.before, self.item
         if before is None or not before.word or item is None or not self.account.is_leftover:
             return None
-        near = nearest(before.word, SHAPE_WORDS)
-        first = self.raw.items[self.at - 2].word if self.at >= 2 else ""
-        if not near or first not in ("add", "cut", "keep", ""):
+        pattern = self.account.pattern
+        above = self.raw.items[self.at - 2].word if self.at >= 2 else ""
+        is_group = self.at == 1 and pattern is not None and "group" in pattern.row.stands
+        if before.word in self.things or not (is_group or above in ("add", "cut", "keep")):
             return None
-        sentence = f"`{before.word}` is no shape, and a part takes nothing like what follows it"
-        return Slip("unknown-word", before.start, before.end, sentence, f"did you mean `{near}`?")
+        if nearest(item.word, self.known) and not shape_meant(before.word):
+            return None
+        what = "no part is called so" if item.kind == "OPEN" else "a part takes nothing like what follows it"
+        sentence = f"`{before.word}` is no shape, and {what}"
+        return Slip("unknown-word", before.start, before.end, sentence, shape_hint(before.word, self.things))
 
     # --- words and values
 

@@ -5,19 +5,20 @@ from __future__ import annotations
 from collections.abc import Iterable
 
 
-def nearest(word: str, known: Iterable[str]) -> str:
+def nearest(word: str, known: Iterable[str], is_ranked: bool = False) -> str:
     """The known word that is fewest slips away, or "" if none is near enough to be meant.
 
     A slip is a letter too many, one missing, one wrong, or two neighbours swapped (Damerau-Levenshtein distance in its
     restricted form). Up to a third of the letters may be slips, at least one; among equals the first in the order
-    of the alphabet wins. Cost: the product of the lengths for each known word.
+    of the alphabet wins, or where `is_ranked` the first in the order given. Cost: the product of the lengths for each
+    known word.
     """
     if len(word) > 60:
         return ""
     folded = word.lower()
     best = ""
     limit = max(1, len(word) // 3)
-    for candidate in sorted(set(known)):
+    for candidate in known if is_ranked else sorted(set(known)):
         if abs(len(candidate) - len(word)) > limit:
             continue
         slips = 0 if candidate.lower() == folded else distance(folded, candidate.lower())

@@ -89,11 +89,14 @@ class _Scene:
         self.first_line = 0
         self.figure = ""
         self.is_later = False
+        self.layout: list[RawLine] = []
+        self.known_things: frozenset[str] | None = None
 
     def read(self, text: str) -> tuple[Scene, tuple[Problem, ...]]:
         layout = lay_out(self.parser, self.file, text)
         self.problems.extend(layout.problems)
         self.first_line = layout.lines[0].place.line if layout.lines else 0
+        self.layout = layout.lines
         lines = self.lines(layout.lines, "scene")
         version = VERSION if self.version else 0
         span = Span(self.file, 1, 1, layout.end.end_line, layout.end.end_column)
@@ -139,7 +142,7 @@ class _Scene:
             if found is not None and matcher.clauses(found[2], found[1], clauses) < 0:
                 found = None
             if found is None:
-                self.problems.append(explain(raw, starts, self.words))
+                self.problems.append(explain(raw, starts, self.words, self.things()))
         except Slip as slip:
             self.problems.append(slip_problem(raw.place, slip))
             found = None
@@ -190,6 +193,15 @@ class _Scene:
         self.figure = name.text if head.row == "figure" and isinstance(name, Name) else ""
         if head.row == "platewright":
             self.check_version(head)
+
+    def things(self) -> frozenset[str]:
+        """The names of the parts and assemblies that the file declares, on broken lines too; found once, when asked."""
+        if self.known_things is None:
+            heads = [_DECLARES.match(raw.text, raw.column) for raw in self.layout]
+            self.known_things = frozenset(
+                head["name"] for head in heads if head and head["word"] in ("part", "assembly") and head["name"]
+            )
+        return self.known_things
 
     def check_version(self, head: Reading) -> None:
         stated = head.get("version")
@@ -242,7 +254,7 @@ class _Scene:
         read: list[Reading] = []
         try:
             if Matcher(raw, self.words).clauses(pattern, 0, read) < 0:
-                self.problems.append(explain_clauses(raw, pattern, self.words))
+                self.problems.append(explain_clauses(raw, pattern, self.words, self.things()))
                 return
         except Slip as slip:
             self.problems.append(slip_problem(raw.place, slip))

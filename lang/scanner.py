@@ -14,7 +14,7 @@ from types import MappingProxyType
 from typing import TypeAlias
 
 from .nearest import nearest
-from .units import UNITS
+from .units import COMMON_UNITS, UNITS
 
 NESTING_LIMIT = 50
 OPERATIONS_LIMIT = 100
@@ -370,7 +370,8 @@ def _glued(text: str, begin: int, end: int, number: Piece) -> Slip:
 def unit_hint(written: str) -> str:
     """The unit that was meant, by its symbol or by its name."""
     names = {unit.name: symbol for symbol, unit in UNITS.items()} | {"degree": "deg", "micron": "um", "feet": "ft"}
-    near = nearest(written, UNITS) or names.get(nearest(written, names), "")
+    ranked = dict.fromkeys((*COMMON_UNITS, *UNITS))
+    near = nearest(written, ranked, is_ranked=True) or names.get(nearest(written, names), "")
     return f"did you mean the unit `{near}`?" if near else ""
 
 

@@ -197,6 +197,9 @@ UNITS: Mapping[str, Unit] = _table(
     Unit("degW", Fraction(-1), LONGITUDE, "degree of west longitude"),
 )
 
+# The units that scenes use most, the most frequent first (common practice): one of them is meant sooner than the rest.
+COMMON_UNITS: tuple[str, ...] = ("mm", "deg", "m", "cm", "um", "km", "inch", "ft")
+
 
 def exact(text: str) -> Fraction:
     """The value of a number as written: `12`, `0.5`, `1e-3`, `1/2`, with or without a sign.

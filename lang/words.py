@@ -45,6 +45,24 @@ SHAPE_WORDS: frozenset[str] = frozenset(
     row.pattern.split()[0] for row in ROWS if "shape" in row.stands and not row.pattern.startswith("<")
 )
 
+# What people call a shape in everyday speech, and the word of the language for it.
+EVERYDAY_SHAPES: Mapping[str, str] = MappingProxyType(
+    {
+        "ball": "sphere",
+        "box": "block",
+        "brick": "block",
+        "coil": "spring",
+        "cube": "block",
+        "cuboid": "block",
+        "disc": "cylinder",
+        "disk": "cylinder",
+        "helix": "spring",
+        "pipe": "tube",
+        "ramp": "wedge",
+        "rod": "cylinder",
+    }
+)
+
 STANDARD_VIEWPOINTS: tuple[str, ...] = ("front", "rear", "left", "right", "top", "bottom", "isometric")
 
 # What a slot of each kind takes, for messages and the reference.

@@ -7,6 +7,15 @@ from support.hostile import BALL, Hostile, given, judge, part
 
 SCENES = [
     Hostile("an empty part", "part p\n", ("empty-part",), "adds nothing"),
+    Hostile(
+        "a shape with a slip in it, its parenthesis touching",
+        part("add blok(3 mm, 1 mm, 1 mm)"),
+        ("unknown-name",),
+        "`blok`",
+        "did you mean `block`?",
+    ),
+    Hostile("a shape by its everyday name", part("add box"), ("unknown-name",), "`box`", "did you mean `block`?"),
+    Hostile("a shape unheard of", part("add gromlet"), ("unknown-name",), "`gromlet`", "`part gromlet`"),
     Hostile("a part that only cuts", part("cut sphere diameter 4 mm"), ("empty-part",), "begins with `add`"),
     Hostile(
         "a part whose condition never holds", part("add sphere diameter 4 mm when no"), ("empty-part",), "adds nothing"

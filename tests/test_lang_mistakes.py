@@ -15,6 +15,35 @@ part can
 > 2:9 unknown-word: `cylnder` is no shape, and a part takes nothing like what follows it | did you mean `cylinder`?
 ---
 part can
+    add blok (1 mm, 1 mm, 1 mm)
+> 2:9 unknown-word: `blok` is no shape, and no part is called so | did you mean `block`?
+---
+part can
+    add box (1 mm, 1 mm, 1 mm)
+> 2:9 unknown-word: `box` is no shape, and no part is called so | did you mean `block`?
+---
+part can
+    add
+        boxx (1 mm, 1 mm, 1 mm)
+> 3:9 unknown-word: `boxx` is no shape, and no part is called so | shapes are `block`, `cylinder`, `cone`, `sphere`, `extrude`, `revolve` and others; a part is declared by `part boxx`
+---
+part can
+    add rivets (d = 4 mm)
+part rivet(d = 3 mm)
+    add sphere diameter d
+> 2:9 unknown-word: `rivets` is no shape, and no part is called so | did you mean `rivet`?
+---
+part can
+    add rivet (d = 4 mm)
+part rivet(d = 3 mm)
+    add sphere diameter d
+> 2:14 call-space: the parenthesis of a call touches its name | write `rivet(`, or `rivet at (` for a place
+---
+part can
+    add sphere diameter 1 mn
+> 2:27 unknown-unit: `mn` behind the number `1` is no unit | did you mean the unit `mm`?
+---
+part can
     add cylinder diametr 60 mm length 50 mm
 > 2:18 unknown-word: `diametr` is not a word that stands here | did you mean `diameter`?
 ---

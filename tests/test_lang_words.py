@@ -140,4 +140,5 @@ def test_slips_between_words(a: str, b: str, slips: int) -> None:
 def test_nearest_word() -> None:
     known = ["cylinder", "cone", "sphere"]
     assert nearest("cylnder", known) == "cylinder" and nearest("shpere", known) == "sphere"
+    assert nearest("cune", ["cube", "cone"], is_ranked=True) == "cube" and nearest("cune", ["cube", "cone"]) == "cone"
     assert nearest("Cone", known) == "cone" and nearest("wedge", known) == "" and nearest("x" * 1000, known) == ""
