@@ -17,12 +17,14 @@ NO_STARTS = Starts({}, ())
 class Account(Struct):
     """What could have stood at the furthest item that did not fit.
 
-    `elements` are what patterns wanted there, `starts` the rows that could have begun there, `pattern` the row that was
-    being read, and `is_leftover` says that this row was already complete.
+    `elements` are what patterns wanted there and `rows` those patterns, each at the same index, `starts` the rows that
+    could have begun there, `pattern` the row that was being read, and `is_leftover` says that this row was already
+    complete.
     """
 
     at: int = -1
     elements: list[Element] = field(default_factory=list)
+    rows: list[Pattern | None] = field(default_factory=list)
     starts: list[Starts] = field(default_factory=list)
     pattern: Pattern | None = None
     is_leftover: bool = False
@@ -32,6 +34,7 @@ class Account(Struct):
         if at > self.at:
             self.at = at
             self.elements = []
+            self.rows = []
             self.starts = []
             self.is_leftover = False
             self.pattern = pattern
@@ -217,6 +220,7 @@ class Matcher:
         """Notes what was wanted at an item that did not fit; always -1."""
         if self.account is not None and self.account.move(at, self.pattern):
             self.account.elements.append(element)
+            self.account.rows.append(self.pattern)
             self.account.pattern = self.account.pattern or self.pattern
         return -1
 

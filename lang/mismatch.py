@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
 
 from .items import Equation, Item, Series, plain_name
 from .layout import RawLine, slip_problem
 from .matcher import Account, Matcher
 from .meant import shape_hint, shape_meant
 from .nearest import nearest
-from .patterns import Element, Equals, Literal, Pattern, Slot, Starts, Vocabulary
+from .patterns import Either, Element, Equals, Literal, Optional, Pattern, Slot, Starts, Vocabulary
 from .problems import Problem, Severity
 from .scanner import Slip
 from .source import Span
@@ -50,6 +50,7 @@ class _Explanation:
         self.item = raw.items[self.at] if self.at < len(raw.items) else None
         self.before = raw.items[self.at - 1] if self.at else None
         self.known = self.expected_words()
+        self.rows, self.elements = self.drawn_today()
 
     def expected_words(self) -> list[str]:
         """The words that could have stood there, in the order of the vocabulary."""
@@ -64,6 +65,13 @@ class _Explanation:
         if any(isinstance(element, Slot) and element.kind == "shape" for element in self.account.elements):
             known.extend(sorted(SHAPE_WORDS))
         return list(dict.fromkeys(known))
+
+    def drawn_today(self) -> tuple[list[Pattern], list[Element]]:
+        """The rows that were being read and what they wanted: of the words drawn today where there are any."""
+        wanted = [(row, element) for row, element in zip(self.account.rows, self.account.elements, strict=True) if row]
+        today = [(row, element) for row, element in wanted if not row.row.later] or wanted
+        rows = {row.row.key: row for row, _ in today}
+        return list(rows.values()), [element for _, element in today]
 
     def problem(self) -> Problem:
         """The one problem that says it best."""
@@ -160,21 +168,52 @@ class _Explanation:
             sentence = f"`{item.word}` is not a word that stands here"
             return self.make("unknown-word", span, sentence, f"did you mean `{near}`?")
         if self.account.elements and not self.account.is_leftover:
-            sentence = f"expected {self.wanted()} behind {self.shown_before()}, found `{item.word}`"
-            return self.make("missing-value", self.gap(span), sentence, self.example())
+            return self.other_word(item, span)
         homes = [PLACES[home] for home in self.words.homes.get(item.word, ())]
         if homes:
-            hint = f"it stands {_listed(dict.fromkeys(homes))}"
+            hint = f"it stands {_listed(dict.fromkeys(homes))}{self.by_material(item.word)}"
             return self.make("misplaced-word", span, f"`{item.word}` may not stand here", hint)
         everywhere = nearest(item.word, self.words.homes) if len(item.word) > 3 else ""
         if everywhere:
             homes = [PLACES[home] for home in self.words.homes[everywhere]]
-            hint = f"`{everywhere}` stands {_listed(dict.fromkeys(homes))}"
+            hint = f"`{everywhere}` stands {_listed(dict.fromkeys(homes))}{self.by_material(everywhere)}"
         elif self.known:
-            hint = f"here may stand {_listed([f'`{word}`' for word in self.known[:12]])}"
+            hint = f"here may stand {_listed([f'`{word}`' for word in self.words_today()[:12]])}"
         else:
             hint = self.example()
         return self.make("unknown-word", span, f"`{item.word}` is not a word that stands here", hint)
+
+    def other_word(self, item: Item, span: Span) -> Problem:
+        """A word where another is wanted: one of the same row that comes later, with a slip or without, or none."""
+        said = {before.word for before in self.raw.items[: self.at]}
+        comes = [word for row in self.rows for word in _literals(row.elements) if word not in said]
+        first = next((element.text for element in self.elements if isinstance(element, Literal)), "")
+        meant = item.word if item.word in comes else nearest(item.word, comes)
+        sentence = f"expected {self.wanted()} behind {self.shown_before()}, found `{item.word}`"
+        hint = self.example()
+        if first and meant and meant != item.word:
+            sentence = f"`{item.word}` is not a word that stands here"
+            return self.make("unknown-word", span, sentence, f"did you mean `{meant}`? `{first}` comes before it")
+        if first and meant:
+            hint = f"`{first}` comes before `{meant}`: {hint}"
+        elif first == "diameter" and item.word == "radius":
+            hint = f"sizes are diameters, twice the radius: {hint}"
+        return self.make("missing-value", self.gap(span), sentence, hint)
+
+    def by_material(self, word: str) -> str:
+        """The way from a part to a word of materials, to end a hint."""
+        is_far = "made" in self.known and "material" in self.words.homes.get(word, ())
+        return "; a part takes its material by `made of`" if is_far else ""
+
+    def words_today(self) -> list[str]:
+        """The words that could have stood there and are drawn today, or all where none is."""
+        later = {
+            word
+            for starts in self.account.starts
+            for word, rows in starts.by_word.items()
+            if all(row.row.later for row in rows)
+        }
+        return [word for word in self.known if word not in later] or self.known
 
     def wrong_value(self, item: Item) -> Problem:
         """A value where a word is wanted, of the wrong form, or one too many."""
@@ -230,13 +269,25 @@ class _Explanation:
 
     def wanted(self) -> str:
         """What could have stood there, for people."""
-        wanted = [_describe(element) for element in self.account.elements]
+        wanted = [_describe(element) for element in self.elements]
         return _listed(dict.fromkeys(wanted)) or "a word of the language"
 
     def example(self) -> str:
         """An example of the row that was being read."""
-        pattern = self.account.pattern
+        pattern = self.rows[0] if self.rows and not self.account.is_leftover else self.account.pattern
         return f"for example `{pattern.row.example}`" if pattern is not None and pattern.row.example else ""
+
+
+def _literals(elements: tuple[Element, ...]) -> Iterator[str]:
+    """The words of a row, those of alternatives and of what may be left out too."""
+    for element in elements:
+        if isinstance(element, Literal):
+            yield element.text
+        elif isinstance(element, Optional):
+            yield from _literals(element.elements)
+        elif isinstance(element, Either):
+            for branch in element.branches:
+                yield from _literals(branch)
 
 
 def _leftmost(node: object) -> Path | None:

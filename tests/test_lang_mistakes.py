@@ -28,13 +28,13 @@ part can
 > 3:9 unknown-word: `boxx` is no shape, and no part is called so | shapes are `block`, `cylinder`, `cone`, `sphere`, `extrude`, `revolve` and others; a part is declared by `part boxx`
 ---
 part can
-    add rivets (d = 4 mm)
+    add rivets (4 mm, 1)
 part rivet(d = 3 mm)
     add sphere diameter d
 > 2:9 unknown-word: `rivets` is no shape, and no part is called so | did you mean `rivet`?
 ---
 part can
-    add rivet (d = 4 mm)
+    add rivet (4 mm, 1)
 part rivet(d = 3 mm)
     add sphere diameter d
 > 2:14 call-space: the parenthesis of a call touches its name | write `rivet(`, or `rivet at (` for a place
@@ -61,7 +61,31 @@ part can
 ---
 part can
     add cylinder length 60 mm diameter 50 mm
-> 2:17 missing-value: expected `diameter` behind `cylinder`, found `length` | for example `cylinder diameter 20 mm length 8 mm`
+> 2:17 missing-value: expected `diameter` behind `cylinder`, found `length` | `diameter` comes before `length`: for example `cylinder diameter 20 mm length 8 mm`
+---
+part can
+    add cylinder lenght 3 mm diameter 5 mm
+> 2:18 unknown-word: `lenght` is not a word that stands here | did you mean `length`? `diameter` comes before it
+---
+part can
+    add cylinder radius 5 mm length 3 mm
+> 2:17 missing-value: expected `diameter` behind `cylinder`, found `radius` | sizes are diameters, twice the radius: for example `cylinder diameter 20 mm length 8 mm`
+---
+figure f
+    scale 0.5
+> 2:11 wrong-form: expected `standard` or a scale like `1:2` behind `scale`, found `0.5` | for example `scale 1:2`
+---
+figure f
+    drawn as shaded
+> 2:13 missing-value: expected `tone`, `survey part`, `survey depth` or `survey facing` behind `as`, found `shaded` | for example `drawn as tone`
+---
+part can
+    color "#ff0000"
+> 2:5 unknown-word: `color` is not a word that stands here | `colour` stands in a material; a part takes its material by `made of`
+---
+part can
+    colour "#ff0000"
+> 2:5 misplaced-word: `colour` may not stand here | it stands in a material; a part takes its material by `made of`
 ---
 part can
     add sphere diameter 60mmm
