@@ -169,6 +169,10 @@ class _Explanation:
             return self.make("unknown-word", span, sentence, f"did you mean `{near}`?")
         if self.account.elements and not self.account.is_leftover:
             return self.other_word(item, span)
+        early = self.too_late(item.word)
+        if early:
+            hint = f"`{item.word}` comes before `{early}`"
+            return self.make("misplaced-word", span, f"`{item.word}` may not stand here", hint)
         homes = [PLACES[home] for home in self.words.homes.get(item.word, ())]
         if homes:
             hint = f"it stands {_listed(dict.fromkeys(homes))}{self.by_material(item.word)}"
@@ -199,6 +203,16 @@ class _Explanation:
         elif first == "diameter" and item.word == "radius":
             hint = f"sizes are diameters, twice the radius: {hint}"
         return self.make("missing-value", self.gap(span), sentence, hint)
+
+    def too_late(self, word: str) -> str:
+        """The word said already before which a word of the same shape should have stood, or ""."""
+        said = [before.word for before in self.raw.items[: self.at] if before.word]
+        shape = next((each for each in said if each in SHAPE_WORDS), "")
+        for pattern in self.words.places["shape"].by_word.get(shape, ()):
+            words = list(_literals(pattern.elements))
+            if word in words and word not in said:
+                return next((each for each in words[words.index(word) + 1 :] if each in said), "")
+        return ""
 
     def by_material(self, word: str) -> str:
         """The way from a part to a word of materials, to end a hint."""

@@ -24,7 +24,7 @@ from .patterns import Equals, Pattern, Slot, Starts, Vocabulary, vocabulary
 from .problems import Problem, Related, Severity
 from .scanner import Slip
 from .source import Span
-from .tree import Expression, Line, Name, Number, Reading, Scene, Text
+from .tree import Expression, Line, Name, Number, Reading, Scene, Text, Word
 from .values import read_items
 
 VERSION = 1
@@ -226,7 +226,10 @@ class _Scene:
             if later is None:
                 return
             reading = later
-        sentence = f"`{reading.word}` is a word of the language that is not drawn yet"
+        # Of the rows that share a word some may be drawn already: then the option behind the word tells them apart.
+        option = reading.values[0][1] if reading.values and reading.row != reading.word else None
+        shown = f"{reading.word} {option.text}" if isinstance(option, Word) else reading.word
+        sentence = f"`{shown}` is a word of the language that is not drawn yet"
         self.problems.append(Problem("not-drawn-yet", Severity.ERROR, reading.word_span, sentence, within=self.figure))
 
     def first_later(self, reading: Reading) -> Reading | None:

@@ -80,6 +80,14 @@ figure f
 > 2:13 missing-value: expected `tone`, `survey part`, `survey depth` or `survey facing` behind `as`, found `shaded` | for example `drawn as tone`
 ---
 part can
+    add cone diameter 20 mm length 15 mm top 8 mm
+> 2:42 misplaced-word: `top` may not stand here | `top` comes before `length`
+---
+figure f
+    drawn as lines
+> 2:5 not-drawn-yet: `drawn as lines` is a word of the language that is not drawn yet
+---
+part can
     color "#ff0000"
 > 2:5 unknown-word: `color` is not a word that stands here | `colour` stands in a material; a part takes its material by `made of`
 ---
