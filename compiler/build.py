@@ -37,8 +37,8 @@ class Model(Struct, frozen=True, eq=False):
 
     `things` are the parts and assemblies of the main file that have all parameters, `roots` the names of those that
     nothing else places. `viewpoints` and `lightings` stand by file and name, with problems that are not yet reported:
-    they concern the figures that use them. `is_whole` says that nothing has been reported. `sources` are the lines that
-    recipes refer to by row.
+    they concern the figures that use them. `is_whole` says that nothing has been reported but in figures. `sources` are
+    the lines that recipes refer to by row.
     `instantiate` gives the thing that a path or call of the main file names, raises Mistake, and adds what is wrong in
     its lines; it may add to `sources`.
     """
@@ -105,7 +105,7 @@ def build_model(files: Files, modules: Modules, settings: tuple[Setting, ...]) -
         finally:
             found.extend(problems.all()[before:])
 
-    is_whole = not problems.n_mistakes and not any(files.faults.values())
+    is_whole = not problems.n_mistakes and files.is_readable
     sources = instances.sources
     model = Model(files, modules, scopes, things, roots, viewpoints, lightings, is_whole, sources, instantiate)
     return model, problems.all()

@@ -31,7 +31,8 @@ Loader = Callable[[str], "bytes | Refusal"]
 class Files(Struct, frozen=True):
     """Parsed scenes and tables by file name, the texts they came from, and where each `see` leads.
 
-    `faults` are the lines of each scene that could not be read and have their problem already.
+    `faults` are the lines of each scene that could not be read and have their problem already; `is_readable` says that
+    there are none but in figures, whose own concern they are.
     """
 
     main: str
@@ -40,6 +41,7 @@ class Files(Struct, frozen=True):
     texts: Mapping[str, str]
     faults: Mapping[str, frozenset[int]]
     sees: Mapping[str, tuple[tuple[str, str, Span], ...]]
+    is_readable: bool = True
 
 
 POINT_TABLES = ("points over", "curve over", "relief")
@@ -76,7 +78,8 @@ def load(main: str, loader: Loader) -> tuple[Files | None, tuple[Problem, ...]]:
     reading = _Reading(loader)
     if not reading.read(main):
         return None, reading.problems.all()
-    files = Files(main, reading.scenes, reading.tables, reading.texts, reading.faults, reading.sees)
+    texts, faults, sees = reading.texts, reading.faults, reading.sees
+    files = Files(main, reading.scenes, reading.tables, texts, faults, sees, reading.is_readable)
     return files, reading.problems.all()
 
 
@@ -90,6 +93,7 @@ class _Reading:
         self.faults: dict[str, frozenset[int]] = {}
         self.sees: dict[str, tuple[tuple[str, str, Span], ...]] = {}
         self.refused: set[str] = set()
+        self.is_readable = True
 
     def read(self, main: str) -> bool:
         """Read a scene and what it sees, each file once; False if the main file gives no text."""
@@ -106,7 +110,9 @@ class _Reading:
             parsed, problems = read_scene(name, text)
             self.scenes[name] = parsed
             self.problems.extend(problems)
-            self.faults[name] = frozenset(problem.span.line for problem in problems if is_error(problem))
+            errors = [problem for problem in problems if is_error(problem)]
+            self.faults[name] = frozenset(problem.span.line for problem in errors)
+            self.is_readable = self.is_readable and all(problem.within for problem in errors)
             self.sees[name] = tuple(self._sees(parsed))
             pending.extend((seen, at) for _, seen, at in reversed(self.sees[name]))
             self._read_tables(parsed)

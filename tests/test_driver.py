@@ -142,6 +142,32 @@ def test_a_bad_figure_is_named_and_the_others_are_written(drum: Path, capsys: py
     assert files_below(drum.parent) == ["drum.plate", "figures/overview.png"]
 
 
+@pytest.mark.parametrize("line", ["drawn as lines", "items", "files pdf"])
+def test_what_is_not_drawn_yet_in_a_figure_stops_that_figure_only(
+    drum: Path, line: str, capsys: pytest.CaptureFixture[str]
+) -> None:
+    changed(drum, ("drawn as survey part\n    width 20 mm", f"{line}\n    width 20 mm"))
+    assert main(["draw", str(drum)]) == 1
+    out, err = capsys.readouterr()
+    assert [Path(line).name for line in out.splitlines()] == ["overview.png"]
+    assert "[not-drawn-yet]" in err and "in the figure close" in err and err.endswith("not written: close\n")
+    assert main(["draw", str(drum), "--figure", "overview", "--out", str(drum.parent / "one")]) == 0
+    assert main(["draw", str(drum), "--figure", "close", "--out", str(drum.parent / "two")]) == 1
+    assert files_below(drum.parent) == ["drum.plate", "figures/overview.png", "one/overview.png"]
+    assert main(["check", str(drum), "--figures"]) == 1
+
+
+def test_a_figure_of_a_file_seen_stops_none_of_the_scene(drum: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    scene_file = drum.parent / "more.plate"
+    seeing = 'platewright 1\n\nsee "drum.plate" as d\n\nfigure close\n    show d.drum\n    width 20 mm\n'
+    scene_file.write_text(seeing, encoding="utf-8")
+    changed(drum, ("drawn as survey part", "items"))
+    assert main(["draw", str(scene_file)]) == 1
+    out, err = capsys.readouterr()
+    assert [Path(line).name for line in out.splitlines()] == ["close.png"]
+    assert "[not-drawn-yet]" in err and "not written" not in err
+
+
 def test_a_bad_variant_is_named_and_the_others_are_written(drum: Path, capsys: pytest.CaptureFixture[str]) -> None:
     changed(drum, ("small flange = 72 mm", "small flange = 72 mm\n    tiny flange = 12 mm"))
     assert main(["draw", str(drum), "--all-variants", "--figure", "overview"]) == 1

@@ -72,7 +72,8 @@ def draw(wanted: Wanted, trace: Trace, report: Report) -> int:
             _draw_variant(variant, figures, run, steps)
     if run.failed:
         report.message(f"not written: {', '.join(run.failed)}")
-    return 1 if run.failed or session.findings.has_errors else 0
+    stops = session.findings.stops(figures) if wanted.figures else session.findings.has_errors
+    return 1 if run.failed or stops else 0
 
 
 def _draw_variant(variant: Variant | None, figures: tuple[str, ...], run: _Run, steps: Steps) -> None:

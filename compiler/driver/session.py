@@ -65,6 +65,10 @@ class Findings:
         """Whether any problem stops output."""
         return any(map(is_error, self.found))
 
+    def stops(self, figures: Sequence[str]) -> bool:
+        """Whether any problem stops one of these figures: one that concerns all, or is confined to one of them."""
+        return any(is_error(problem) and (not problem.within or problem.within in figures) for problem in self.found)
+
 
 def _with_variants(problem: Problem, variants: Sequence[Variant | None]) -> Problem:
     named = [variant for variant in variants if variant is not None]
@@ -135,7 +139,12 @@ class Session:
 
     def bad_figures(self, model: Model) -> frozenset[str]:
         """Figures that a problem found so far keeps from being made."""
-        return frozenset(problem.within for problem in (*self.opening, *model.problems) if is_error(problem))
+        problems = (*filter(self._is_of_main, self.opening), *model.problems)
+        return frozenset(problem.within for problem in problems if is_error(problem))
+
+    def _is_of_main(self, problem: Problem) -> bool:
+        """Whether a problem of the opening stands in the scene itself: figures of files it sees are not made."""
+        return self.project is not None and problem.span.file == self.project.main
 
     def texts(self, settings: Iterable[Setting] = ()) -> dict[str, str]:
         """Every text that a problem may point into: files, with marks where one is not UTF-8, and values of `--set`."""
