@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 
 import pytest
+from platewright.compiler import scene
 from platewright.compiler.graph import FeatureCopy, Solid
 from platewright.compiler.solids.recipe import (
     Bellows,
@@ -170,3 +171,36 @@ def test_a_tube_that_cuts_itself_is_found_by_check_at_its_line() -> None:
     assert run.codes == ["cuts-itself"]
     assert run.errors[0].span.line == 7
     assert "bends round a radius of 10 mm" in run.errors[0].sentence
+
+
+CEE = """outline cee
+    from (0, 0)
+    to (20 mm, 0)
+    to (20 mm, 5 mm)
+    to (5 mm, 5 mm)
+    to (5 mm, 15 mm)
+    to (20 mm, 15 mm)
+    to (20 mm, 20 mm)
+    to (0, 20 mm)
+"""
+LARGER = CEE.replace("cee", "other").replace("(20 mm", "(24 mm")
+TURNED = """outline other
+    from (20 mm, 0)
+    to (20 mm, 20 mm)
+    to (0, 20 mm)
+    to (0, 15 mm)
+    to (15 mm, 15 mm)
+    to (15 mm, 5 mm)
+    to (0, 5 mm)
+    to (0, 0)
+"""
+
+
+@pytest.mark.parametrize(("other", "codes"), [(LARGER, []), (TURNED, ["cuts-itself"])], ids=["larger", "turned"])
+def test_a_transition_between_outlines_that_are_not_convex_may_not_cut_itself(other: str, codes: list[str]) -> None:
+    text = CEE + other + "part p\n    add transition from cee to other length 30 mm\n"
+    run = built(text)
+    assert run.model is not None
+    found = scene.prove(run.model, run.meshes)
+    assert [problem.code for problem in found] == codes
+    assert all("near (" in problem.sentence for problem in found)

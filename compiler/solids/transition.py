@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 from platewright.backend.contract import PatchKind
 
-from .outline import OutlineFlaw, Polyline, faults, flatten
+from .outline import OutlineFlaw, Polyline, contact, extent, faults, flatten, oriented
 from .polyhedra import extrude
 from .recipe import ArcTo, Cone, Outline, Transition
 from .shell import Shell, shell
@@ -25,6 +25,10 @@ F64 = NDArray[np.float64]
 I64 = NDArray[np.int64]
 
 _CREASE = math.radians(1.0)
+CUTS = 32
+"""Heights, less one, at which a transition between outlines that are not convex is looked at for crossing itself."""
+COARSE_PARTS = 200.0
+"""The chord error of that look: the outline's size over this."""
 
 
 def transition_flaws(shape: Transition) -> tuple[OutlineFlaw, ...]:
@@ -36,6 +40,32 @@ def transition_flaws(shape: Transition) -> tuple[OutlineFlaw, ...]:
         if outline.holes:
             sentence = "an outline with holes cannot pass into another"
             return (OutlineFlaw("hole-without-partner", sentence, "cut the hole by a transition of its own"),)
+    return () if as_extrusion(shape) else _self_cut(shape)
+
+
+def _self_cut(shape: Transition) -> tuple[OutlineFlaw, ...]:
+    """A flaw where a cut across the transition crosses itself, at one of `CUTS` heights; none between convex outlines.
+
+    A cut runs through the rulings that join the outlines, each at the same share of its length.
+    """
+    (x0, y0), (x1, y1) = extent(oriented(shape.lower.outer, True))
+    rung = max(x1 - x0, y1 - y0) / COARSE_PARTS
+    lower, upper = _outer(shape.lower, rung), _outer(shape.upper, rung)
+    if _is_convex(lower) and _is_convex(upper):
+        return ()
+    one, other = _shares(lower), _shares(upper)
+    a, b = np.array(_rulings(one, other)).T
+    for k in range(1, CUTS):
+        share = k / CUTS
+        points = lower.points[a] * (1.0 - share) + upper.points[b] * share
+        apart = np.hypot(*(points - np.roll(points, 1, axis=0)).T) > 1e-9 * (x1 - x0)
+        points = points[apart]
+        none = np.zeros(len(points), np.int32)
+        met = contact([Polyline(points, none, (), np.zeros((len(points), 2, 2)))])
+        if met is not None:
+            place = f"({met[0]:.4g} mm, {met[1]:.4g} mm, {share * shape.length:.4g} mm)"
+            sentence = f"the transition would cut itself near {place}"
+            return (OutlineFlaw("cuts-itself", sentence, "turn one of the outlines, or go by an outline between them"),)
     return ()
 
 
@@ -103,9 +133,7 @@ def _joined(lower: Polyline, upper: Polyline, one: F64, other: F64, length: floa
     """
     n = len(one)
     vertices = np.concatenate((_at(lower.points, 0.0), _at(upper.points, length)))
-    places = np.concatenate((one, other))
-    # A millionth of a turn apart is together, so that rounding does not order chords that run in one direction.
-    order = np.lexsort((np.arange(len(places)) >= n, np.round(places, 6)))
+    order = _order(one, other)
     a = int(order[order < n][0])
     b = int(order[order >= n][0])
     faces, normals = [], []
@@ -124,6 +152,27 @@ def _joined(lower: Polyline, upper: Polyline, one: F64, other: F64, length: floa
             b = then
     straight = [loop.curves[row].is_line for loop in (lower, upper) for row in loop.curve.tolist()]
     return _shell(vertices, np.array(faces), np.array(normals), np.array(straight)[order], (lower, upper, length))
+
+
+def _order(one: F64, other: F64) -> NDArray[np.intp]:
+    """Chords of both loops, those of the second counted on, in the order of their places."""
+    places = np.concatenate((one, other))
+    # A millionth of a turn apart is together, so that rounding does not order chords that run in one direction.
+    return np.lexsort((np.arange(len(places)) >= len(one), np.round(places, 6)))
+
+
+def _rulings(one: F64, other: F64) -> list[tuple[int, int]]:
+    """Points of the first and second loop that are joined, in order round the transition."""
+    n, m, order = len(one), len(other), _order(one, other)
+    a, b = int(order[order < n][0]), int(order[order >= n][0]) - n
+    found = []
+    for chord in order.tolist():
+        if chord < n:
+            a = (chord + 1) % n
+        else:
+            b = (chord - n + 1) % m
+        found.append((a, b))
+    return found
 
 
 def _chord_normals(tangents: F64, ends: F64, apex: F64) -> tuple[F64, F64]:
