@@ -9,14 +9,14 @@ import numpy as np
 from platewright.backend.contract import F64, I32
 from platewright.lang import tree
 from platewright.lang.nearest import nearest
-from platewright.lang.problems import Problem
+from platewright.lang.problems import Problem, is_error
 from platewright.lang.source import Span
 from platewright.lang.units import AREA, LENGTH, MASS, NUMBER, VOLUME, Dimension
 
 from .arithmetic import COMPARISONS, compare, matched, same
 from .build import Model
 from .expressions import evaluate, truth
-from .flatten import Flattened, Mesher, flatten
+from .flatten import Flattened, Mesher, flatten, prove
 from .graph import Solid
 from .measure import area, least_clearance, volume
 from .mistakes import Mistake, Problems, mistake
@@ -43,14 +43,22 @@ ON_TRIANGLES = ("volume", "area", "mass")
 
 
 def judge_facts(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
-    """One error for each fact that does not hold. Cost: a mesh at its rung of facts for each part measured by volume,
-    area, mass or size; distances between marks need none."""
+    """One error for each fact that does not hold, or for what is wrong with the parts of its subject.
+
+    Cost: a mesh at the rung of proof for each part of a subject, and one at its rung of facts for each measured by
+    volume, area, mass or size; distances between marks need none.
+    """
     problems = Problems()
     for line in model.module.expectations:
         with problems.collecting():
             written = expression(line.head, "subject")
             assert isinstance(written, tree.Path)
-            measures = _Measures(find_subject(model, written, problems), model, mesher, problems)
+            subject = find_subject(model, written, problems)
+            flaws = tuple(filter(is_error, prove((subject.thing,), model.sources, mesher)))
+            problems.extend(flaws)
+            if flaws:
+                continue
+            measures = _Measures(subject, model, mesher, problems)
             inner = model.scope.inside({}, measures)
             for fact in line.lines:
                 with problems.collecting():

@@ -50,6 +50,7 @@ __all__ = [
     "Refusal",
     "Setting",
     "Variant",
+    "attempt",
     "build",
     "dump",
     "figure_names",
@@ -93,12 +94,18 @@ class FigureName(Struct, frozen=True):
 
 
 class Model(Struct, frozen=True, eq=False):
-    """One variant, evaluated. A figure with `with` lines has a model of its own."""
+    """One variant, evaluated. A figure with `with` lines has a model of its own.
+
+    `is_sound` says that nothing but figures has errors; where it does not, the model holds what could be made and
+    serves `prove` and `judge` alone. `known` are the places of what the opening has reported.
+    """
 
     built: Built
     specs: Mapping[str, tuple[Built, Spec]]
     figures: tuple[FigureName, ...]
     problems: tuple[Problem, ...]
+    is_sound: bool = True
+    known: frozenset[tuple[str, Span]] = frozenset()
 
 
 class Exported(Struct, frozen=True, eq=False):
@@ -137,6 +144,14 @@ def build(
 
     None where the scene has errors; errors within a figure leave that figure out and the rest whole.
     """
+    model, problems = attempt(project, variant, settings)
+    return model if model.is_sound else None, problems
+
+
+def attempt(
+    project: Project, variant: Variant | None = None, settings: tuple[Setting, ...] = ()
+) -> tuple[Model, tuple[Problem, ...]]:
+    """As `build`, but where the scene has errors the model of what could be made, for more problems in one run."""
     problems = Problems()
     given = _chosen(variant.settings if variant else (), _from_texts(settings, problems), problems)
     built, found = build_model(project.files, project.modules, given)
@@ -158,9 +173,8 @@ def build(
             specs[spec_or_none.name] = (built, spec_or_none)
             names.append(FigureName(spec_or_none.name, spec_or_none.span, spec_or_none.files))
     news = tuple(each for each in problems.all() if _is_news(each, project))
-    if not built.is_whole or any(is_error(each) and not each.within for each in news):
-        return None, news
-    return Model(built, specs, tuple(names), news), news
+    is_sound = built.is_whole and not any(is_error(each) and not each.within for each in news)
+    return Model(built, specs, tuple(names), news, is_sound, project.known), news
 
 
 def _is_news(problem: Problem, project: Project) -> bool:
@@ -178,21 +192,23 @@ def figure_names(project: Project) -> tuple[str, ...]:
 def prove(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
     """Problems that only meshing shows: outlines that cross themselves, parts that are empty, in pieces, or float.
 
-    Covers every part of the model and of those of its figures.
+    Covers every part of the model and of those of its figures; of a model that is not sound, what could be made,
+    and no word on what may touch or measure otherwise once it is whole.
     """
     problems = Problems()
     models = {id(model.built): model.built, **{id(built): built for built, _ in model.specs.values()}}
     for built in models.values():
         problems.extend(prove_things(tuple(built.things.values()), built.sources, mesher))
     # What a figure sets may lift parts off on purpose.
-    problems.extend(check_sizes(model.built.things[root] for root in model.built.roots))
-    problems.extend(check_contacts(tuple(model.built.things.values()), mesher))
+    if model.is_sound:
+        problems.extend(check_sizes(model.built.things[root] for root in model.built.roots))
+        problems.extend(check_contacts(tuple(model.built.things.values()), mesher))
     return problems.all()
 
 
 def judge(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
-    """Errors for facts that do not hold."""
-    return judge_facts(model.built, mesher)
+    """Errors for facts that do not hold. What holds a part that could not be made or proved is passed over."""
+    return tuple(each for each in judge_facts(model.built, mesher) if (each.code, each.span) not in model.known)
 
 
 def plan(

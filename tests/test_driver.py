@@ -266,6 +266,73 @@ def test_check_of_a_clean_scene_says_nothing(drum: Path, capsys: pytest.CaptureF
     assert capsys.readouterr() == ("", "")
 
 
+SEVERAL = """\
+platewright 1
+
+given
+    high = 10 mm range 5 mm .. 20 mm
+
+part hollow
+    add block (10 mm, 10 mm, high)
+    cut block (20 mm, 20 mm, 50 mm)
+
+part plug
+    add cylinder diameter 4 mm length high
+    made of bras
+
+part gone
+    add cylinder diameter 4 mm length high
+    cut cylinder diameter 40 mm length 90 mm
+
+part post
+    add block (2 mm, 2 mm, high)
+
+part far
+    add block (2 mm, 2 mm, high / 0)
+
+assembly pair
+    place hollow
+    place post at (0, 0, high)
+
+assembly fitting
+    place plug
+    place far at (90 mm, 0, 0)
+
+expect post
+    height(post) = 9 mm
+
+expect pair
+    height(pair) = 9 mm
+
+expect hollow
+    volume(hollow) > 1 mm3
+
+expect plug
+    height(plug) = 9 mm
+
+figure overview
+    show fitting
+    width 20 mm
+"""
+
+
+def test_mistakes_of_different_stages_are_told_in_one_run(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    path = tmp_path / "several.plate"
+    path.write_text(SEVERAL, encoding="utf-8")
+    assert main(["check", "--json", str(path)]) == 1
+    found = json.loads(capsys.readouterr().out)
+    problems = [(each["code"], SEVERAL.splitlines()[each["line"] - 1].strip()) for each in found["problems"]]
+    assert problems == [
+        ("empty-part", "cut block (20 mm, 20 mm, 50 mm)"),
+        ("unknown-name", "made of bras"),
+        ("empty-part", "cut cylinder diameter 40 mm length 90 mm"),
+        ("division-by-zero", "add block (2 mm, 2 mm, high / 0)"),
+        ("broken-fact", "height(post) = 9 mm"),
+    ]
+    assert main(["draw", str(path)]) == 1
+    assert files_below(tmp_path) == ["several.plate"]
+
+
 def test_problems_are_messages_as_text_and_results_for_machines(drum: Path, capsys: pytest.CaptureFixture[str]) -> None:
     changed(drum, ("place lid", "place ild"))
     assert main(["check", str(drum)]) == 1

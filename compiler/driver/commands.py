@@ -70,11 +70,13 @@ def check(
 def _check_variant(session: Session, variant: Variant | None, figures: bool) -> Model | None:
     from platewright.compiler.scene import judge, plan
 
-    model = session.build(variant)
+    model, is_sound = session.attempt(variant)
     if model is None:
         return None
     session.trace.stage = f"judging {title(variant)}"
     session.findings.add(judge(model, session.mesher), variant)
+    if not is_sound:
+        return None
     bad = session.bad_figures(model)
     for figure in model.figures if figures else ():
         if figure.name not in bad:

@@ -18,6 +18,9 @@ if TYPE_CHECKING:
 
 _MOST_NAMED_VARIANTS = 8
 
+_AMBIGUOUS = ("duplicate-name",)
+"""Codes of errors that leave two meanings, so that what is found by following one of them may not be meant."""
+
 
 class UsageError(Exception):
     """The command line asks for something that does not exist or makes no sense; the sentence says what."""
@@ -125,17 +128,26 @@ class Session:
 
     def build(self, variant: Variant | None = None, settings: tuple[Setting, ...] = ()) -> Model | None:
         """The model of one variant; None where an error of the opening or of the building concerns all of it."""
-        from platewright.compiler.scene import build, prove
+        model, is_sound = self.attempt(variant, settings)
+        return model if is_sound else None
+
+    def attempt(self, variant: Variant | None = None, settings: tuple[Setting, ...] = ()) -> tuple[Model | None, bool]:
+        """What could be made of one variant, proved, and whether it is free of errors that concern all of it.
+
+        None where nothing can be told of it: it has no text, or it may mean either of two things.
+        """
+        from platewright.compiler.scene import attempt, prove
 
         if self.project is None:
-            return None
+            return None, False
         self.trace.stage = f"building {title(variant)}"
-        model, problems = build(self.project, variant, settings)
-        if model is not None:
+        model, problems = attempt(self.project, variant, settings)
+        is_clear = not any(each.code in _AMBIGUOUS for each in (*self.opening, *problems) if is_error(each))
+        if is_clear:
             self.trace.stage = f"proving the parts of {title(variant)}"
             problems = (*problems, *names.problems(model.figures, "figure"), *prove(model, self.mesher))
         self.findings.add(problems, variant)
-        return None if any(map(_concerns_all, (*self.opening, *problems))) else model
+        return model if is_clear else None, not any(map(_concerns_all, (*self.opening, *problems)))
 
     def bad_figures(self, model: Model) -> frozenset[str]:
         """Figures that a problem found so far keeps from being made."""
