@@ -5,7 +5,7 @@ All of it is pure: files come from a loader, meshes from a mesher that may keep 
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 
 from msgspec import Struct
 from platewright.backend import contract
@@ -60,6 +60,7 @@ __all__ = [
     "open_scene",
     "plan",
     "prove",
+    "sources_of",
     "unused",
 ]
 
@@ -327,11 +328,18 @@ def _within(problem: Problem, figure: str) -> Problem:
     )
 
 
+def sources_of(settings: Iterable[Setting]) -> Iterator[tuple[str, Setting]]:
+    """Settings from outside the text, each with the file that spans in its value name, which no two share."""
+    numbers: dict[str, int] = {}
+    for name, text in settings:
+        numbers[name] = numbers.get(name, 0) + 1
+        yield f"--set {name}" + (f" ({numbers[name]})" if numbers[name] > 1 else ""), (name, text)
+
+
 def _from_texts(given: tuple[Setting, ...], problems: Problems) -> list[Assigned]:
     """Settings from outside the text, each with a span in a file named after the option."""
     found: list[Assigned] = []
-    for name, text in given:
-        file = f"--set {name}"
+    for file, (name, text) in sources_of(given):
         written, wrong = read_value(file, text)
         problems.extend(wrong)
         if written is not None and not wrong:

@@ -235,6 +235,11 @@ def test_figures_whose_files_would_fall_together_are_refused(drum: Path, capsys:
         (["export", "{scene}", "--of", "drum", "--to", "drum.stl", "--tolerance", "5"], "length"),
         (["export", "{scene}", "--of", "drum", "--to", "drum.stl", "--tolerance", "5 deg"], "length"),
         (["export", "{scene}", "--of", "drum", "--to", "drum.stl", "--tolerance", "0mm"], "length"),
+        (
+            ["export", "{scene}", "--of", "can", "--to", "c.stl", "--variant", "small", "--variant", "large"],
+            "only once",
+        ),
+        (["export", "{scene}", "--of", "can", "--of", "lid", "--to", "c.stl"], "only once"),
         (["redraw", "{scene}"], "invalid choice"),
         ([], "COMMAND"),
     ],
@@ -533,6 +538,32 @@ def test_a_reader_that_leaves_is_no_fault(drum: Path) -> None:
         done = subprocess.run(command, stdout=stream, stderr=subprocess.PIPE, timeout=60, check=False)
     assert done.returncode == 141
     assert done.stderr == b""
+
+
+@pytest.mark.skipif(not Path("/dev/full").exists(), reason="the system has no device that is always full")
+@pytest.mark.parametrize("arguments", [["list"], ["check", "--json"], ["draw"], ["--version"]])
+def test_results_that_cannot_be_written_are_no_fault(drum: Path, arguments: list[str]) -> None:
+    scene_file = [] if arguments == ["--version"] else [str(drum)]
+    command = [sys.executable, "-m", "platewright.compiler", *arguments, *scene_file]
+    with open("/dev/full", "wb") as full:
+        done = subprocess.run(command, stdout=full, stderr=subprocess.PIPE, text=True, timeout=60, check=False)
+    assert done.returncode == 1
+    assert done.stderr == "platewright: cannot write to standard output: No space left on device\n"
+
+
+def test_a_folder_that_cannot_be_written_is_named_once(drum: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    (drum.parent / "figures").write_text("in the way", encoding="utf-8")
+    assert main(["draw", str(drum)]) == 1
+    err = capsys.readouterr().err
+    assert err.count("cannot write") == 1
+    assert err.endswith("not written: overview, close\n")
+
+
+def test_a_parameter_set_twice_points_to_both_values(drum: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["draw", str(drum), "--set", "flange=80 mm", "--set", "flange=90 mm"]) == 1
+    err = capsys.readouterr().err
+    assert "`flange` is set twice [said-twice]\n 1 | 90 mm\n" in err
+    assert err[err.index("set here first") :].startswith("set here first\n 1 | 80 mm\n   | ^^^^^\n")
 
 
 def test_an_interruption_leaves_no_file_and_no_traceback(drum: Path) -> None:

@@ -11,7 +11,7 @@ from pathlib import Path
 from typing import Literal, TypeAlias
 
 from .crash import Trace, keep_fault
-from .report import Report, wants_colour
+from .report import Report, StreamError, wants_colour, write_results
 from .session import OutputError, UsageError
 
 DONE, PROBLEMS, USAGE, OUR_FAULT, INTERRUPTED, READER_GONE = 0, 1, 2, 3, 130, 141
@@ -29,15 +29,14 @@ def main(arguments: Sequence[str] | None = None) -> int:
     """Run one command and return the exit code. `arguments` follow the program's name, None for the process's own."""
     given = list(sys.argv[1:] if arguments is None else arguments)
     _speak_utf8()
-    try:
-        options = _parser().parse_args(given)
-    except SystemExit as leaving:
-        return leaving.code if isinstance(leaving.code, int) else USAGE
     is_watched = sys.stderr.isatty() and os.environ.get("TERM") != "dumb"
     report = Report(sys.stdout, sys.stderr, wants_colour(sys.stderr, os.environ), is_watched)
     trace = Trace()
     try:
+        options = _parser().parse_args(given)
         code: int = options.run(options, trace, report)
+    except SystemExit as leaving:
+        return leaving.code if isinstance(leaving.code, int) else USAGE
     except BrokenPipeError:
         return _leave_quietly()
     except KeyboardInterrupt:
@@ -45,6 +44,10 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except UsageError as fault:
         report.message(str(fault))
         return USAGE
+    except StreamError as fault:
+        _forget_results()
+        report.message(str(fault))
+        return PROBLEMS
     except OutputError as fault:
         report.message(str(fault))
         return PROBLEMS
@@ -62,10 +65,15 @@ def _speak_utf8() -> None:
 
 
 def _leave_quietly() -> int:
-    """The reader of a stream has gone: give the interpreter's last flush somewhere to go."""
+    """The reader of a stream has gone."""
+    _forget_results()
+    return READER_GONE
+
+
+def _forget_results() -> None:
+    """Give what is left of the results, which the interpreter flushes at its end, somewhere to go."""
     nowhere = os.open(os.devnull, os.O_WRONLY)
     os.dup2(nowhere, sys.stdout.fileno())
-    return READER_GONE
 
 
 def _own_up(fault: Exception, arguments: Sequence[str], trace: Trace, report: Report) -> int:
@@ -111,8 +119,17 @@ class _Version(argparse.Action):
     def __call__(self, parser: argparse.ArgumentParser, *_: object) -> None:
         from importlib.metadata import version
 
-        sys.stdout.write(f"platewright {version('platewright')}\n")
+        write_results(sys.stdout, f"platewright {version('platewright')}\n")
         parser.exit()
+
+
+class _Once(argparse.Action):
+    """Refuses an option said twice, of which one would be passed over without a word."""
+
+    def __call__(self, parser: argparse.ArgumentParser, options: argparse.Namespace, value: object, *_: object) -> None:
+        if getattr(options, self.dest) is not None:
+            parser.error(f"argument {self.option_strings[0]}: may be given only once")
+        setattr(options, self.dest, value)
 
 
 def _command(
@@ -208,12 +225,13 @@ def _add_export(commands: _Commands) -> None:
     parser = _command(commands, "export", does, _run_export)
     parser.epilog = _CAUTION
     _add_scene(parser)
-    parser.add_argument("--of", metavar="PATH", required=True, help="the part path, as `list` shows it")
+    of = "the part path, as `list` shows it"
+    parser.add_argument("--of", metavar="PATH", action=_Once, required=True, help=of)
     to = "the file; its suffix says the kind: .csv .stl .ply .obj .glb"
-    parser.add_argument("--to", metavar="FILE", type=Path, required=True, help=to)
+    parser.add_argument("--to", metavar="FILE", type=Path, action=_Once, required=True, help=to)
     tolerance = "the largest distance of a triangle from the true surface, as in --tolerance 0.05mm"
-    parser.add_argument("--tolerance", metavar="LENGTH", help=tolerance)
-    parser.add_argument("--variant", metavar="NAME", help="export from this variant")
+    parser.add_argument("--tolerance", metavar="LENGTH", action=_Once, help=tolerance)
+    parser.add_argument("--variant", metavar="NAME", action=_Once, help="export from this variant")
     _add_settings(parser)
 
 

@@ -125,7 +125,7 @@ def _write(content: Mapping[Path, bytes], run: _Run) -> bool:
     try:
         files.write_all(content)
     except OSError as fault:
-        run.report.message(f"cannot write {fault.filename or run.out}: {fault.strerror or fault}")
+        run.report.message_once(f"cannot write {fault.filename or run.out}: {fault.strerror or fault}")
         return False
     for path in content:
         run.report.result(str(path))

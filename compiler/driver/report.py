@@ -5,7 +5,7 @@ from __future__ import annotations
 import io
 import time
 from collections.abc import Iterator, Mapping, Sequence
-from contextlib import contextmanager, nullcontext
+from contextlib import AbstractContextManager, contextmanager, nullcontext
 from typing import TYPE_CHECKING, TextIO
 
 from platewright.lang.problems import Problem
@@ -29,6 +29,21 @@ def wants_colour(stream: TextIO, environment: Mapping[str, str]) -> bool:
     return environment.get("TERM") != "dumb" and stream.isatty()
 
 
+class StreamError(Exception):
+    """Standard output takes no results; the sentence says why."""
+
+
+def write_results(stream: TextIO, text: str) -> None:
+    """Write to standard output at once. Raises StreamError, or BrokenPipeError if its reader has gone."""
+    try:
+        stream.write(text)
+        stream.flush()
+    except BrokenPipeError:
+        raise
+    except OSError as fault:
+        raise StreamError(f"cannot write to standard output: {fault.strerror or fault}") from fault
+
+
 class Report:
     """The two streams of a run. Nothing else in the driver prints.
 
@@ -47,8 +62,12 @@ class Report:
         self.document(f"{line}\n")
 
     def document(self, text: str) -> None:
-        """A whole text as result, ending with a line feed: a dump, a list, problems for a machine."""
-        self._write(self._out, text)
+        """A whole text as result, ending with a line feed: a dump, a list, problems for a machine.
+
+        Raises StreamError if it cannot be written, BrokenPipeError if its reader has gone.
+        """
+        with self._aside():
+            write_results(self._out, text)
 
     def message(self, line: str) -> None:
         """One line to the person at the terminal."""
@@ -70,9 +89,12 @@ class Report:
             self._write(self._err, _coloured(text) if self._is_coloured else text)
 
     def _write(self, stream: TextIO, text: str) -> None:
-        with self._bar.aside() if self._bar is not None else nullcontext():
+        with self._aside():
             stream.write(text)
             stream.flush()
+
+    def _aside(self) -> AbstractContextManager[None]:
+        return self._bar.aside() if self._bar is not None else nullcontext()
 
     @contextmanager
     def progress(self, n_steps: int) -> Iterator[Steps]:

@@ -161,7 +161,9 @@ class Session:
     def texts(self, settings: Iterable[Setting] = ()) -> dict[str, str]:
         """Every text that a problem may point into: files, with marks where one is not UTF-8, and values of `--set`."""
         read = {name: content.decode("utf-8", "replace") for name, content in self.trace.sources.items()}
-        given = {f"--set {name}": value for name, value in settings}
+        from platewright.compiler.scene import sources_of
+
+        given = {file: value for file, (_, value) in sources_of(settings)}
         return read | (dict(self.project.texts) if self.project is not None else {}) | given
 
 
