@@ -11,8 +11,6 @@ import math
 
 FINEST = 1e-5
 COARSEST = 1e3
-FACTS = 0.005
-"""The rung of a whole model's triangles where no tolerance is stated (exports, dumps)."""
 FACTS_SHARE = 20_000.0
 """Every measured fact about a part (volumes, areas, expectations) is taken at the first rung of at most this part of
 the longest side of its box (`bounds.facts_rung`), never at that of a figure. A ball's volume then lacks less than 4
