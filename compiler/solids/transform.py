@@ -64,7 +64,8 @@ def facing(direction: Point3) -> Affine:
     """
     x, y, z = _unit(direction)
     level = math.hypot(x, y)
-    if level == 0.0:
+    # A tilt far below one rounding of z has no bearing: its quotients would be those of subnormal numbers.
+    if level < 2.0**-60:
         return IDENTITY if z > 0.0 else turn(180.0, (0.0, 1.0, 0.0))
     c, s = x / level, y / level
     return _about(((c * z, -s, x), (s * z, c, y), (-level, 0.0, z)), (0.0, 0.0, 0.0))
