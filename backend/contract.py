@@ -9,13 +9,13 @@ neither knows more of the other than this file. `VERSION` changes with any chang
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from enum import IntEnum
+from enum import IntEnum, StrEnum
 from typing import Literal, TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
 
-VERSION = 1
+VERSION = 2
 
 F64 = NDArray[np.float64]
 F32 = NDArray[np.float32]
@@ -247,12 +247,65 @@ class Lighting:
     exposure: float = 1.0
 
 
+class LineClass(StrEnum):
+    """What a line stands for, in the words of ISO 128-2, 128-3 and ISO 129-1. The value names groups in files."""
+
+    VISIBLE_OUTLINE = "visible-outline"  # only one of the two surfaces at it is seen
+    VISIBLE_EDGE = "visible-edge"  # both surfaces at it are seen
+    HIDDEN_OUTLINE = "hidden-outline"
+    HIDDEN_EDGE = "hidden-edge"
+    IMAGINARY_INTERSECTION = "imaginary-line-of-intersection"  # a tangent edge
+    THREAD_CREST = "crest-of-thread"
+    THREAD_ROOT = "root-of-thread"
+    SECTION_OUTLINE = "section-outline"
+    CUTTING_PLANE = "cutting-plane"
+    HATCHING = "hatching"
+    CENTRE_LINE = "centre-line"
+    ADJACENT_PART = "adjacent-part"
+    EXTREME_POSITION = "extreme-position"
+    BREAK_LINE = "break-line"
+    DETAIL_FRAME = "frame-of-detail"
+    TRACE_LINE = "trace-line"
+    LEADER = "leader"
+    DIMENSION = "dimension-line"
+    EXTENSION = "extension-line"
+    SHADING = "shading"  # strokes and dots that stand for tone
+
+
+DrawnAs = Literal["lines", "tints", "lines and tone", "stipple", "tone", "survey part", "survey depth", "survey facing"]
+
+
 @dataclass(frozen=True, slots=True)
 class Style:
-    """How a panel is drawn. Samples per pixel edge the tone picture; a survey takes one."""
+    """How a panel is drawn.
 
-    drawn_as: Literal["tone", "survey part", "survey depth", "survey facing"] = "tone"
+    `samples` per pixel edge the tone picture; a survey takes one. The rest is for line drawings: `wide` is the width
+    in mm of the line group's wide line, the narrow one is half of it (ISO 128-2); two surfaces that meet at
+    `sharp_angle` degrees or more between their normals have an edge; `hidden` draws hidden edges dashed; `tangent` the
+    imaginary lines of intersection; `is_pictorial` draws narrow the edges of which both surfaces are seen, otherwise
+    both kinds are wide; `gap` is the mm left free where a line passes behind another, 0 for none; `shade_lines` makes
+    outlines heavier on the side away from the light.
+    """
+
+    drawn_as: DrawnAs = "tone"
     samples: Literal[1, 4] = 4
+    wide: float = 0.35
+    sharp_angle: float = 30.0
+    hidden: bool = False
+    tangent: bool = True
+    centre_lines: bool = False
+    is_pictorial: bool = True
+    gap: float = 0.0
+    shade_lines: bool = False
+
+    @property
+    def narrow(self) -> float:
+        """Width in mm of the narrow line."""
+        return NARROW.get(self.wide, self.wide / 2)
+
+
+NARROW = {0.25: 0.13, 0.35: 0.18, 0.5: 0.25, 0.7: 0.35, 1.0: 0.5, 1.4: 0.7, 2.0: 1.0}
+"""Wide to narrow widths of the line groups of ISO 128-2, in mm."""
 
 
 class Emphasis(IntEnum):
@@ -267,7 +320,10 @@ class Emphasis(IntEnum):
 
 @dataclass(frozen=True, eq=False, slots=True)
 class Section:
-    """A cutting plane: the side its normal points to goes. `uncut` are rows of `Geometry.nodes` left whole."""
+    """A cutting plane: the side its normal points to is gone. `uncut` are rows of `Geometry.nodes` left whole.
+
+    The geometry has been cut already; its cut faces are `FaceOrigin.SECTION_CAP`, one patch for each plane of the cut.
+    """
 
     point: tuple[float, float, float]
     normal: tuple[float, float, float]
@@ -277,11 +333,15 @@ class Section:
 
 @dataclass(frozen=True, eq=False, slots=True)
 class SpaceCurve:
-    """A polyline in world mm, points (k,3) float64, to be drawn with its visibility and line class."""
+    """A polyline in world mm, points (k,3) float64, to be drawn with its visibility and line class.
+
+    With `is_hidden_by_parts` only what can be seen of it is drawn (a trace line), otherwise all of it (a centre line).
+    """
 
     points: F64
-    line_class: str
+    line_class: LineClass
     node: int = -1
+    is_hidden_by_parts: bool = True
 
 
 @dataclass(frozen=True, slots=True)
@@ -295,13 +355,45 @@ class Annotation:
 
 
 @dataclass(frozen=True, eq=False, slots=True)
+class CuttingPlaneLine:
+    """The trace of a cutting plane in the view it is seen edge-on in.
+
+    points (k,3) float64 world mm: its ends and, for a stepped plane, its corners; `sight` the unit direction of viewing
+    in world, along which the arrows point; `letter` stands at both ends.
+    """
+
+    points: F64
+    sight: tuple[float, float, float]
+    letter: str
+
+
+@dataclass(frozen=True, slots=True)
+class DetailFrame:
+    """A circle round what a detail shows: centre in world mm, diameter in mm on the page of this panel, letter."""
+
+    centre: tuple[float, float, float]
+    diameter: float
+    letter: str
+
+
+@dataclass(frozen=True, slots=True)
+class ViewArrow:
+    """A reference arrow of a view (ISO 128-3): tip in world mm, unit direction of viewing in world, letter."""
+
+    tip: tuple[float, float, float]
+    sight: tuple[float, float, float]
+    letter: str
+
+
+@dataclass(frozen=True, eq=False, slots=True)
 class Panel:
     """One view on the sheet.
 
     `geometry` is a row of `Job.geometries`; `place` (left, top, width, height) is its rectangle on the page in mm, y
     down;
     `displacement` (n_nodes,3) float64 mm moves each node's triangles before projection, None for none;
-    `emphasis` (n_nodes,) uint8 `Emphasis`, None for plain throughout.
+    `emphasis` (n_nodes,) uint8 `Emphasis`, None for plain throughout. `clip` (k,2) float64 is a convex polygon on the
+    page in mm that the view is cut to, besides its `place`; None for none.
     """
 
     name: str
@@ -315,6 +407,10 @@ class Panel:
     section: Section | None = None
     curves: tuple[SpaceCurve, ...] = ()
     annotations: tuple[Annotation, ...] = ()
+    clip: F64 | None = None
+    cutting_planes: tuple[CuttingPlaneLine, ...] = ()
+    detail_frames: tuple[DetailFrame, ...] = ()
+    arrows: tuple[ViewArrow, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -325,6 +421,9 @@ class Link:
     parent: int
     child: int
     letter: str = ""
+
+
+FileKind = Literal["svg", "pdf", "eps", "png", "tiff"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -341,6 +440,32 @@ class Page:
         sides = (self.width, self.height)
         columns, rows = (max(1, int(np.floor(side / 25.4 * self.resolution + 0.5))) for side in sides)
         return columns, rows
+
+
+@dataclass(frozen=True, slots=True)
+class Inscription:
+    """A text on the page that belongs to no part: a view's name, its scale, a letter.
+
+    `place` is mm on the page: the middle of the base line's stretch with `align` middle, else its left or right end;
+    `height` is that of capitals in mm.
+    """
+
+    text: str
+    place: tuple[float, float]
+    height: float
+    align: Literal["left", "middle", "right"] = "middle"
+
+
+@dataclass(frozen=True, slots=True)
+class ProjectionSymbol:
+    """The truncated cone that tells first-angle from third-angle projection (ISO 5456-2).
+
+    `place` is the left top corner in mm on the page, `height` that of the larger circle in mm.
+    """
+
+    method: Literal["first angle", "third angle"]
+    place: tuple[float, float]
+    height: float
 
 
 @dataclass(frozen=True, slots=True)
@@ -372,13 +497,15 @@ class Sheet:
     name: str
     page: Page
     panels: tuple[Panel, ...]
-    files: tuple[Literal["png", "tiff"], ...] = ("png",)
+    files: tuple[FileKind, ...] = ("png",)
     links: tuple[Link, ...] = ()
     title: str = ""
     alt: str = ""
     description: str = ""
     language: str = ""
     measures: tuple[MeasureWanted, ...] = ()
+    inscriptions: tuple[Inscription, ...] = ()
+    symbols: tuple[ProjectionSymbol, ...] = ()
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -450,6 +577,12 @@ def _verify_panel(panel: Panel, job: Job) -> None:
         _array(panel.displacement, np.float64, (len(geometry.nodes), 3), "displacement")
     if panel.emphasis is not None:
         _array(panel.emphasis, np.uint8, (len(geometry.nodes),), "emphasis")
+    if panel.clip is not None:
+        _array(panel.clip, np.float64, (None, 2), "clip")
+    for curve in panel.curves:
+        _array(curve.points, np.float64, (None, 3), "curve")
+    for plane in panel.cutting_planes:
+        _array(plane.points, np.float64, (None, 3), "cutting plane line")
 
 
 def _array(array: NDArray[np.generic], dtype: type[np.generic], shape: tuple[int | None, ...], name: str) -> None:

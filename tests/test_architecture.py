@@ -22,9 +22,9 @@ NAMESPACE = "platewright"
 FOLDERS = ("lang", "compiler", "backend")
 DRIVER = "compiler.driver"
 DOOR = ("backend.contract", "backend.camera")  # what of the backend the compiler may name: values and their makers
-KERNELS = "backend.raster"
+KERNELS = ("backend.raster.", "backend.lines.", "backend.converter.")
 HEAVY_FOR_LANG = ("numpy", "PIL", "numba", "manifold3d", "rich")
-SHIPPED_WITH = {"PIL": "pillow", "llvmlite": "numba"}
+SHIPPED_WITH = {"PIL": "pillow", "llvmlite": "numba", "fontTools": "fonttools"}
 
 
 @dataclass(frozen=True)
@@ -53,7 +53,7 @@ def faults(found: Import) -> Iterator[str]:
         top = found.target.split(".")[0]
         if here == "lang" and top in HEAVY_FOR_LANG:
             yield f"lang imports {top}"
-        if top == "numba" and found.runs_at_load and not found.owner.startswith(KERNELS + "."):
+        if top == "numba" and found.runs_at_load and not found.owner.startswith(KERNELS):
             yield "numba is imported on loading, outside the kernels"
         return
     if there == DRIVER and here != DRIVER:

@@ -1,0 +1,1 @@
+"""From a drawing to pixels: strokes, fills and glyphs with exact coverage, in bands."""

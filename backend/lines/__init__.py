@@ -1,0 +1,1 @@
+"""Line drawings: exact hidden lines in vector form."""
