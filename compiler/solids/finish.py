@@ -54,7 +54,7 @@ def finish(
         face_patch=row,
         face_origin=np.full(len(faces), FaceOrigin.SURFACE, np.uint8),
         face_source=face_source,
-        edge_kind=_edge_kinds(row, (one, other), closed, (one_met, other_met), corner),
+        edge_kind=edge_kinds(row, (one, other), closed, (one_met, other_met), corner),
         patches=describe(surfaces),
         closed=closed,
     )
@@ -175,7 +175,7 @@ def _middle_normals(triangles: F64, row: I32, surfaces: Surfaces) -> F64:
     return np.where((normal == 0.0).all(axis=1)[:, None], own, normal)
 
 
-def _edge_kinds(
+def edge_kinds(
     row: I32, paired: tuple[I64, I64], closed: bool, met: tuple[I64, I64], corner: F32
 ) -> NDArray[np.uint8]:
     """Kinds (m,3): `paired` are all sides that have a mate, `met` those where two patches met before merging."""
