@@ -48,7 +48,8 @@ class FaceOrigin(IntEnum):
     """Where a triangle comes from."""
 
     SURFACE = 0
-    SECTION_CAP = 1
+    SECTION_CAP = 1  # a cut face: hatched, and its rim is a section outline
+    BREAK = 2  # a face where material was broken away, as round a local section: its rim is a break line
 
 
 @dataclass(frozen=True, eq=False, slots=True)
