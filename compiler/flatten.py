@@ -29,6 +29,9 @@ _T = TypeVar("_T", bound=np.generic)
 Mesher = Callable[[Recipe, float], "tuple[Mesh | None, tuple[Flaw, ...]]"]
 """Builds the mesh of a recipe at a rung; a session puts its cache here."""
 
+Alter = Callable[[Entry, F64, Mesh], "Mesh | None"]
+"""What becomes of one placed copy's mesh, its placement (4,4) given: another mesh, the same, or nothing."""
+
 PROOF_PARTS = 200.0
 """A part is proved at a chord error of its largest side over this."""
 
@@ -41,11 +44,12 @@ class Flattened(Struct, frozen=True, eq=False):
 
 
 def flatten(
-    thing: Thing, name: str, rung: float | None, sources: Sequence[Span], mesher: Mesher
+    thing: Thing, name: str, rung: float | None, sources: Sequence[Span], mesher: Mesher, alter: Alter | None = None
 ) -> tuple[Flattened | None, tuple[Problem, ...]]:
     """Flatten a thing and all below it, root path `name`, with a chord error of at most `rung` mm in the world.
 
-    Without a rung each part is taken at its own rung of facts, which no figure changes.
+    Without a rung each part is taken at its own rung of facts, which no figure changes. `alter` may put other meshes in
+    the place of those of single copies; a node whose mesh it takes away stays, without triangles.
 
     None where a part has no mesh; the problems say why. Cost: one mesh for each part and rung, one pass over the
     placed triangles.
@@ -58,6 +62,8 @@ def flatten(
     meshes, of_entry, problems = _meshes(entries, rung, sources, mesher)
     if any(problem.severity is Severity.ERROR for problem in problems):
         return None, problems
+    if alter is not None:
+        meshes, of_entry = _altered(entries, placements, meshes, of_entry, alter)
     surfaces = list(dict.fromkeys(entry.thing.surface for entry in entries if isinstance(entry.thing, Solid)))
     nodes = _nodes(entries, placements, meshes, of_entry, surfaces)
     geometry = _placed(nodes, placements, meshes, of_entry, sources)
@@ -141,6 +147,24 @@ def _meshes(
         if row is not None:
             of_entry[number] = row
     return meshes, of_entry, tuple(problems)
+
+
+def _altered(
+    entries: Sequence[Entry], placements: F64, meshes: Sequence[Mesh], of_entry: dict[int, int], alter: Alter
+) -> tuple[list[Mesh], dict[int, int]]:
+    """Meshes still in use after an alteration, in the order of their first copies, and their rows by entry."""
+    rows: dict[str, int] = {}
+    kept: list[Mesh] = []
+    altered: dict[int, int] = {}
+    for number, row in of_entry.items():
+        mesh = alter(entries[number], placements[number], meshes[row])
+        if mesh is None:
+            continue
+        if mesh.key not in rows:
+            rows[mesh.key] = len(kept)
+            kept.append(mesh)
+        altered[number] = rows[mesh.key]
+    return kept, altered
 
 
 def _own_rungs(rung: float | None) -> Callable[[Solid, Affine], float]:
