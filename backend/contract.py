@@ -50,6 +50,7 @@ class FaceOrigin(IntEnum):
     SURFACE = 0
     SECTION_CAP = 1  # a cut face: hatched, and its rim is a section outline
     BREAK = 2  # a face where material was broken away, as round a local section: its rim is a break line
+    STEP = 3  # the riser between two planes of a stepped section: its rim is not drawn (ISO 128-3)
 
 
 @dataclass(frozen=True, eq=False, slots=True)
