@@ -6,7 +6,7 @@ is right-handed with z up; page points are mm to the right of the left edge and 
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from math import atan, cos, radians, sin, sqrt, tan
 from typing import Literal
 
@@ -120,6 +120,14 @@ def parallel(
     return Projection("parallel", matrix, None, view.sight, view.right, view.up, declared)
 
 
+def enlarged(projection: Projection, factor: float, origin: tuple[float, float] = (0.0, 0.0)) -> Projection:
+    """The same picture `factor` times as large, its page point (0, 0) moved to `origin` (mm)."""
+    matrix = projection.world_to_page.copy()
+    for row in (0, 1):
+        matrix[row] = factor * matrix[row] + origin[row] * matrix[3]
+    return replace(projection, world_to_page=matrix, scale=factor * projection.scale)
+
+
 def central(
     eye: ArrayLike,
     toward: ArrayLike,
@@ -154,6 +162,19 @@ def principal_distance_of_lens(lens: float, film_width: float, picture_width: fl
 def principal_distance_of_angle(angle: float, picture_width: float) -> float:
     """Principal distance on paper when `picture_width` (mm) is seen under `angle` degrees."""
     return 0.5 * picture_width / tan(radians(angle) / 2.0)
+
+
+def magnification(projection: Projection) -> float:
+    """The most that one model mm is enlarged to, mm on paper; of a central projection, in the plane through its target.
+
+    Parallel: the larger singular value of the map, in closed form.
+    """
+    if projection.kind == "central":
+        return projection.scale
+    across, down = projection.world_to_page[0, :3], projection.world_to_page[1, :3]
+    (ax, ay, az), (dx, dy, dz) = across, down
+    a, d, mixed = ax * ax + ay * ay + az * az, dx * dx + dy * dy + dz * dz, ax * dx + ay * dy + az * dz
+    return float(sqrt((a + d) / 2 + sqrt(((a - d) / 2) ** 2 + mixed * mixed)))
 
 
 def upper_left(view: Axes | Projection) -> Vector:

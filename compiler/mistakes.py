@@ -23,6 +23,13 @@ def mistake(
     return Mistake(Problem(code, Severity.ERROR, span, sentence, hint, related, within))
 
 
+def confined(problem: Problem, figure: str) -> Problem:
+    """The same problem, confined to a figure."""
+    return Problem(
+        problem.code, problem.severity, problem.span, problem.sentence, problem.hint, problem.related, figure
+    )
+
+
 class Problems:
     """Problems in the order found, each once."""
 

@@ -21,10 +21,10 @@ from .contacts import check_contacts, check_sizes
 from .dump import dump_graph, dump_tree, dump_triangles
 from .expect import judge_facts
 from .expressions import evaluate
-from .figures import default_figure, plan_figure, read_figure
+from .figure_reading import default_figure, read_figure
+from .figures import plan_figure
 from .flatten import Mesher, flatten
 from .flatten import prove as prove_things
-from .frames import Spec
 from .listing import Listing, list_scene
 from .mistakes import Problems, mistake
 from .modules import Declaration, Modules, gather
@@ -33,6 +33,7 @@ from .parameters import outermost
 from .project import Files, Loader, Refusal, load
 from .readings import settings
 from .solids.ladder import first_at_most
+from .specs import Spec
 from .subjects import find_subject
 from .usage import check_names
 from .variants import Variant, read_variants

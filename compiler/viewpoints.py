@@ -6,6 +6,7 @@ from typing import Literal, TypeAlias
 
 from msgspec import Struct
 from platewright.backend import camera
+from platewright.backend.contract import Projection
 from platewright.lang import tree
 from platewright.lang.problems import Related
 from platewright.lang.units import ANGLE
@@ -47,6 +48,19 @@ def standard(name: str) -> Viewpoint | None:
         if name == side:
             return Parallel(camera.orthographic(_side(side)))
     return Parallel(camera.isometric()) if name == "isometric" else None
+
+
+def unit_projection(viewpoint: Viewpoint, factor: float = 1.0, is_true: bool = False) -> Projection:
+    """The projection at a scale of `factor`, the world's origin or, in central projection, the target at (0, 0).
+
+    The scale holds along the axes, or with `is_true` in the picture plane; in central projection in the plane through
+    the target.
+    """
+    if isinstance(viewpoint, Central):
+        distance = sum((a - b) ** 2 for a, b in zip(viewpoint.toward, viewpoint.eye, strict=True)) ** 0.5
+        return camera.enlarged(camera.central(viewpoint.eye, viewpoint.toward, distance, (0.0, 0.0)), factor)
+    ratio = 1.0 if is_true else camera.along_axes(viewpoint.axes)
+    return camera.parallel(viewpoint.axes, factor * ratio, (0.0, 0.0), scale=factor)
 
 
 def read_viewpoint(line: tree.Line, scope: Scope, problems: Problems) -> Viewpoint | None:

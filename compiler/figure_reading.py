@@ -1,0 +1,187 @@
+"""What a figure says: from the lines of a `figure` declaration to its values, with defaults filled in."""
+
+from __future__ import annotations
+
+from typing import Literal, get_args
+
+from msgspec.structs import replace
+from platewright.backend.contract import FileKind
+from platewright.lang import tree
+from platewright.lang.nearest import nearest
+from platewright.lang.problems import Problem
+from platewright.lang.source import Span
+
+from . import limits
+from .build import Model
+from .expressions import evaluate, text
+from .graph import Solid, Thing
+from .lightings import DEFAULT, Sources
+from .mistakes import Mistake, Problems, confined, mistake
+from .modules import find_kind
+from .placement import positive_length
+from .readings import LATER, expression, optional, word
+from .scope import Scope, did_you_mean
+from .specs import Spec
+from .subjects import find_subject
+from .values import Proportion, kind_of
+from .viewpoints import STANDARD_SIDES, Viewpoint, standard
+
+FILE_KINDS: tuple[FileKind, ...] = get_args(FileKind)
+
+
+def read_figure(model: Model, line: tree.Line, name: str) -> tuple[Spec | None, tuple[Problem, ...]]:
+    """What a figure says. Problems are confined to the figure."""
+    reading = _Reading(model, line, name)
+    spec = reading.spec()
+    found = tuple(confined(problem, name) for problem in reading.problems.all())
+    return (None if reading.problems.has_errors else spec), found
+
+
+def default_figure(model: Model, span: Span) -> tuple[Spec | None, tuple[Problem, ...]]:
+    """The figure of a scene that declares none: its one unplaced thing, named after it."""
+    problems = Problems()
+    with problems.collecting():
+        root, thing = only_root(model, span)
+        viewpoint = standard("isometric")
+        assert viewpoint is not None
+        return Spec(root, thing, root, viewpoint, DEFAULT, thing.span), problems.all()
+    return None, problems.all()
+
+
+def only_root(model: Model, span: Span) -> tuple[str, Thing]:
+    """The one thing that nothing else places: the one assembly, else the one part. Raises Mistake."""
+    assemblies = [name for name in model.roots if not isinstance(model.things[name], Solid)]
+    candidates = assemblies or list(model.roots)
+    if not model.is_whole:
+        raise Mistake(None)
+    if len(candidates) == 1:
+        return candidates[0], model.things[candidates[0]]
+    if not candidates:
+        raise mistake("nothing-to-show", span, "there is no part or assembly to show")
+    names = ", ".join(f"`{name}`" for name in candidates)
+    sentence = f"nothing says which of these to show: {names}"
+    raise mistake("nothing-to-show", span, sentence, f"write a figure that says `show {candidates[0]}`")
+
+
+class _Reading:
+    """Reads one figure's lines."""
+
+    def __init__(self, model: Model, line: tree.Line, name: str) -> None:
+        self.model, self.line, self.name = model, line, name
+        self.problems = Problems()
+        self.scope: Scope = model.scope
+
+    def spec(self) -> Spec | None:
+        lines: dict[str, tree.Line] = {}
+        for line in self.line.lines:
+            if line.head.row not in LATER:
+                lines.setdefault(line.word, line)
+        if "size" in lines and "width" in lines:
+            self.problems.error("said-twice", lines["width"].head.word_span, "`size` states the width already")
+        found: Spec | None = None
+        with self.problems.collecting():
+            found = self._subject(lines.get("show"))
+        changes: dict[str, object] = {}
+        for each, line in lines.items():
+            with self.problems.collecting():
+                changes.update(self._read(each, line.head))
+        return replace(found, **changes) if found is not None else None
+
+    def _subject(self, line: tree.Line | None) -> Spec:
+        viewpoint, sources = standard("isometric"), DEFAULT
+        assert viewpoint is not None
+        if line is None:
+            root, thing = only_root(self.model, self.line.head.span)
+            return Spec(self.name, thing, root, viewpoint, sources, self.line.head.span)
+        view, lighting = optional(line.head, "viewpoint"), optional(line.head, "lighting")
+        with self.problems.collecting():
+            if isinstance(view, tree.Path):
+                viewpoint = self._viewpoint(view)
+        with self.problems.collecting():
+            if isinstance(lighting, tree.Path):
+                sources = self._lighting(lighting)
+        written = expression(line.head, "subject")
+        assert isinstance(written, (tree.Path, tree.Call))
+        subject = find_subject(self.model, written, self.problems)
+        return Spec(self.name, subject.thing, subject.path, viewpoint, sources, self.line.head.span)
+
+    def _viewpoint(self, path: tree.Path) -> Viewpoint:
+        module = self.model.module
+        if len(path.steps) == 1 and path.dotted not in module.names:
+            found = standard(path.dotted)
+            if found is not None:
+                return found
+            if path.dotted in module.broken:
+                raise Mistake(None)
+            declared = (name for name, each in module.names.items() if each.kind == "viewpoint")
+            near = nearest(path.dotted, [*declared, *STANDARD_SIDES, "isometric"])
+            hint = did_you_mean(near) or "declare it with `viewpoint`, or take front, top, isometric …"
+            raise mistake("unknown-name", path.span, f"there is no viewpoint `{path.dotted}`", hint)
+        here, declaration = find_kind(self.model.modules, module, path, ("viewpoint",))
+        described = self.model.viewpoints[here.file, declaration.name]
+        self.problems.extend(described.problems)
+        if described.value is None:
+            raise Mistake(None)
+        return described.value
+
+    def _lighting(self, path: tree.Path) -> Sources:
+        here, declaration = find_kind(self.model.modules, self.model.module, path, ("lighting",))
+        described = self.model.lightings[here.file, declaration.name]
+        self.problems.extend(described.problems)
+        if described.value is None:
+            raise Mistake(None)
+        return described.value
+
+    def _read(self, each: str, head: tree.Reading) -> dict[str, object]:
+        match each:
+            case "width":
+                at_most = optional(head, "height")
+                return {
+                    "width": self._paper(expression(head, "width"), "width"),
+                    "at_most": self._paper(at_most, "height") if at_most is not None else None,
+                }
+            case "size":
+                width, height = expression(head, "width"), expression(head, "height")
+                return {"width": self._paper(width, "width"), "height": self._paper(height, "height")}
+            case "scale":
+                return {"scale": self._scale(optional(head, "scale"))}
+            case "true projection":
+                return {"true_projection": True}
+            case "margin":
+                return {"margin": positive_length(expression(head, "margin"), self.scope, "margin", zero=True)}
+            case "drawn as":
+                return {"drawn_as": word(head, "style")}
+            case "files":
+                return {"files": self._files(head)}
+            case "title" | "alt" | "description":
+                return {each: text(expression(head, "text"), self.scope)}
+        return {}
+
+    def _paper(self, written: tree.Expression, what: str) -> float:
+        value = positive_length(written, self.scope, what)
+        if value > limits.PAPER_MM:
+            raise mistake("out-of-range", written.span, f"{what}: more than {limits.PAPER_MM:g} mm of paper, the limit")
+        return value
+
+    def _scale(self, written: tree.Expression | None) -> float | Literal["standard"]:
+        if written is None:
+            return "standard"
+        value = evaluate(written, self.scope)
+        if not isinstance(value, Proportion):
+            raise mistake("wrong-kind", written.span, f"expected a scale such as `1:2`, found {kind_of(value)}")
+        if value.first <= 0 or value.second <= 0:
+            raise mistake("out-of-range", written.span, "the numbers of a scale are above 0")
+        return value.first / value.second
+
+    def _files(self, head: tree.Reading) -> tuple[FileKind, ...]:
+        wanted = head.get("files")
+        found: list[FileKind] = []
+        for each in wanted if isinstance(wanted, tuple) else ():
+            if not isinstance(each, tree.Path):
+                continue
+            kind = each.dotted
+            if kind not in FILE_KINDS:
+                hint = did_you_mean(nearest(kind, FILE_KINDS)) or ", ".join(FILE_KINDS[:-1]) + f" or {FILE_KINDS[-1]}"
+                self.problems.error("unknown-name", each.span, f"there is no kind of file called `{kind}`", hint)
+            found += [drawable for drawable in FILE_KINDS if drawable == kind]
+        return tuple(dict.fromkeys(found))

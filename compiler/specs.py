@@ -1,0 +1,40 @@
+"""What a figure says, with its values fixed and its defaults filled in."""
+
+from __future__ import annotations
+
+from typing import Literal
+
+from msgspec import Struct
+from platewright.backend.contract import DrawnAs, FileKind
+from platewright.lang.source import Span
+
+from .graph import Thing
+from .lightings import Sources
+from .viewpoints import Viewpoint
+
+MARGIN_MM = 2.0
+
+DEFAULT_STYLE: DrawnAs = "tone"
+"""The manner of drawing of a figure that names none."""
+
+
+class Spec(Struct, frozen=True):
+    """One figure. Lengths are mm on paper."""
+
+    name: str
+    subject: Thing
+    path: str
+    viewpoint: Viewpoint
+    sources: Sources
+    span: Span
+    width: float | None = None
+    at_most: float | None = None
+    height: float | None = None
+    scale: float | Literal["standard"] | None = None
+    true_projection: bool = False
+    margin: float = MARGIN_MM
+    drawn_as: DrawnAs = DEFAULT_STYLE
+    files: tuple[FileKind, ...] = ("png",)
+    title: str = ""
+    alt: str = ""
+    description: str = ""
