@@ -7,7 +7,7 @@ from collections.abc import Callable
 from msgspec import Struct, field
 from platewright.lang import tree
 from platewright.lang.source import Span
-from platewright.lang.units import LENGTH, NUMBER
+from platewright.lang.units import NUMBER
 
 from . import limits
 from .expressions import quantity
@@ -17,8 +17,7 @@ from .readings import expression, optional, word
 from .scope import Scope
 from .solids.recipe import Helix, Point3, SpaceArcTo, SpaceLineTo, SpacePath, SpaceSplineTo
 from .solids.spine import PathFlaw, trace
-from .tables import Table
-from .values import Quantity
+from .tables import Table, points_in
 
 TableOf = Callable[[tree.Reading], Table]
 
@@ -83,7 +82,9 @@ class _Way(Struct):
 
     def _stretches(self, line: tree.Line) -> None:
         reading = line.head
-        over = [] if reading.get("table") is None else lengths_of(self.table_of(reading), ("x", "y", "z"))
+        over: list[Point3] = []
+        if reading.get("table") is not None:
+            over = [(x, y, z) for x, y, z in points_in(self.table_of(reading), ("x", "y", "z"))]
         if self.start is None and not over:
             hint = "write `from (0, 0, 0)` above it"
             raise mistake("open-path", reading.word_span, f"expected `from` first, found `{line.word}`", hint)
@@ -127,26 +128,3 @@ def turns_of(reading: tree.Reading, scope: Scope) -> float:
     if turns > limits.TURNS:
         raise mistake("too-much", written.span, f"turns: {turns:g} are more than {limits.TURNS:,}, the limit")
     return turns
-
-
-def lengths_of(table: Table, axes: tuple[str, str, str]) -> list[Point3]:
-    """The points of a table of three columns of lengths. Raises Mistake."""
-    if len(table.columns) != len(axes):
-        sentence = f"expected three columns of lengths, found {len(table.columns)}"
-        raise mistake("bad-table", table.header[0].to(table.header[-1]), sentence, "such as `x mm,y mm,z mm`")
-    points: list[Point3] = []
-    for row, spans in zip(table.rows, table.cell_spans, strict=True):
-        lengths = []
-        for value, span, header, axis in zip(row, spans, table.header, axes, strict=True):
-            if value is None:
-                raise mistake("bad-table", span, "this cell is empty, and a point needs all its lengths")
-            if not isinstance(value, Quantity) or value.dimension != LENGTH:
-                hint = f"write the unit behind its name: `{axis} mm`"
-                raise mistake("bad-table", header, "this column is no length", hint)
-            if abs(value.value) > limits.LARGEST_MM:
-                raise mistake("out-of-range", span, f"this lies further than {limits.LARGEST_MM:g} mm, the limit")
-            lengths.append(value.value)
-        points.append((lengths[0], lengths[1], lengths[2]))
-    if not points:
-        raise mistake("bad-table", table.header[0], "the table has no points")
-    return points

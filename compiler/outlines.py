@@ -21,8 +21,7 @@ from .solids.curve import end_tangents
 from .solids.outline import closed
 from .solids.plane import Corner, PlaneFlaw
 from .solids.recipe import ArcTo, EllipseTo, LineTo, Loop, Outline, Point2, SplineTo, Stretch
-from .tables import Table
-from .values import Quantity
+from .tables import Table, points_in
 
 WHOLE = ("circle", "ellipse", "parallel to")
 """Lines that are a whole loop."""
@@ -294,28 +293,7 @@ def _spline(start: Point2, points: list[Point2], tangent: Point2 | None, line: t
 
 
 def _table_points(reading: tree.Reading, around: Around) -> list[Point2]:
-    """The points of a table of two columns of lengths. Raises Mistake."""
-    table = around.table(reading)
-    if len(table.columns) != 2:
-        sentence = f"expected two columns of lengths, found {len(table.columns)}"
-        raise mistake("bad-table", table.header[0].to(table.header[-1]), sentence, "such as `x mm,y mm`")
-    points: list[Point2] = []
-    for row, spans in zip(table.rows, table.cell_spans, strict=True):
-        lengths = []
-        for value, span, header in zip(row, spans, table.header, strict=True):
-            if value is None:
-                raise mistake("bad-table", span, "this cell is empty, and a point needs both its lengths")
-            if not isinstance(value, Quantity) or value.dimension != LENGTH:
-                sentence = "this column is no length"
-                raise mistake("bad-table", header, sentence, "write the unit behind its name: `x mm`")
-            if abs(value.value) > limits.LARGEST_MM:
-                sentence = f"this lies further than {limits.LARGEST_MM:g} mm, the limit"
-                raise mistake("out-of-range", span, sentence)
-            lengths.append(value.value)
-        points.append((lengths[0], lengths[1]))
-    if not points:
-        raise mistake("bad-table", table.header[0], "the table has no points")
-    return points
+    return [(x, y) for x, y in points_in(around.table(reading), ("x", "y"))]
 
 
 def _parallel(line: tree.Line, scope: Scope, around: Around) -> Outline:

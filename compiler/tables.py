@@ -12,12 +12,13 @@ from platewright.lang import units
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Problem, Related
 from platewright.lang.source import Span
+from platewright.lang.units import LENGTH
 
 from . import limits
 from .expressions import literal
 from .mistakes import Mistake, Problems, mistake
 from .scope import did_you_mean
-from .values import Value, shortened
+from .values import Quantity, Value, shortened
 
 
 class Table(Struct, frozen=True):
@@ -41,6 +42,7 @@ class _Record(Struct, frozen=True):
 
 
 _NUMBER = re.compile(r"[+-]?\d{1,40}(\.\d{1,40})?([eE][+-]?\d{1,9})?")
+_NUMBERS = {2: "two", 3: "three"}
 _UNFIT = re.compile(r'[\[\]"]')
 
 
@@ -55,6 +57,31 @@ def read_table(file: str, text: str, is_labelled: bool = True) -> tuple[Table | 
     with problems.collecting():
         table = _table(file, _read(file, text), problems, is_labelled)
     return (None if problems.has_errors else table), problems.all()
+
+
+def points_in(table: Table, axes: tuple[str, ...]) -> list[tuple[float, ...]]:
+    """The points, mm, of a table with a column of lengths for each axis. Raises Mistake."""
+    if len(table.columns) != len(axes):
+        sentence = f"expected {_NUMBERS[len(axes)]} columns of lengths, found {len(table.columns)}"
+        hint = f"such as `{','.join(f'{axis} mm' for axis in axes)}`"
+        raise mistake("bad-table", table.header[0].to(table.header[-1]), sentence, hint)
+    points = [
+        tuple(_length(*cell) for cell in zip(row, spans, table.header, axes, strict=True))
+        for row, spans in zip(table.rows, table.cell_spans, strict=True)
+    ]
+    if not points:
+        raise mistake("bad-table", table.header[0], "the table has no points")
+    return points
+
+
+def _length(value: Value | None, span: Span, header: Span, axis: str) -> float:
+    if value is None:
+        raise mistake("bad-table", span, "this cell is empty, and a point needs all its lengths")
+    if not isinstance(value, Quantity) or value.dimension != LENGTH:
+        raise mistake("bad-table", header, "this column is no length", f"write the unit behind its name: `{axis} mm`")
+    if abs(value.value) > limits.LARGEST_MM:
+        raise mistake("out-of-range", span, f"this lies further than {limits.LARGEST_MM:g} mm, the limit")
+    return value.value
 
 
 def _table(file: str, records: tuple[_Record, ...], problems: Problems, is_labelled: bool) -> Table:

@@ -242,3 +242,15 @@ def test_edges_of_shapes(shape: str, volume: float, clause: str) -> None:
 def test_edges_and_tapers_that_do_not_fit_are_told(shape: str, code: str) -> None:
     run = checked(f"outline o\n{SQUARE}\npart p\n    add {shape}\n")
     assert [(problem.code, problem.span.line) for problem in run.errors] == [(code, 8)], run.sentences
+
+
+@pytest.mark.parametrize("axes", ["x mm,y", "x,y mm", "x mm,y mm,z"])
+def test_a_column_without_unit_is_named_for_outlines_and_paths_alike(axes: str) -> None:
+    bare = next(column for column in axes.split(",") if "mm" not in column)
+    table = f"{axes}\n" + "\n".join(",".join("0" for _ in axes.split(",")) for _ in range(3)) + "\n"
+    use = "add extrude o by 5 mm" if len(axes.split(",")) == 2 else "add tube along o diameter 1 mm"
+    kind = "outline" if len(axes.split(",")) == 2 else "path"
+    run = built(f'{kind} o\n    points over "p.csv"\npart p\n    {use}\n', {"p.csv": table})
+    assert [(each.code, each.hint) for each in run.errors] == [
+        ("bad-table", f"write the unit behind its name: `{bare} mm`")
+    ]
