@@ -1,0 +1,230 @@
+"""The areas of the page on which each part is seen: the planar arrangement of the visible lines, each face labelled.
+
+Lines that close areas, drawn or not, are extended by a hair where they end free, noded, and made into faces; the part
+under one point of a face is the part of the whole face. Areas of one patch become one outline; a border that two
+regions share has the same points in both, so fills meet without a seam. Clean curves of smooth outlines take no part:
+the outline of the triangles stands for them, so that areas close and agree with what hides what.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Collection, Iterator, Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any, TypeAlias
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..contract import F64, I32, FaceOrigin, LineClass
+from .model import Bools, Candidates, Pieces, Region, View, number_of
+
+if TYPE_CHECKING:
+    from .visibility import Occluders
+
+I64 = NDArray[np.int64]
+Polygons: TypeAlias = NDArray[np.object_]
+Rings: TypeAlias = tuple[F64, ...]
+FacesUnder: TypeAlias = Callable[[F64], I32]
+
+EXTENSION_MM = 0.01
+"""How far a line that ends free runs on, past the line that hides the rest of it."""
+LEAST_AREA_MM2 = 1e-3
+"""Faces of the arrangement smaller than this go to a neighbour."""
+SIMPLIFY_MM = 5e-3
+"""A point goes if its triangle with its neighbours is smaller than this squared (Visvalingam and Whyatt 1993); the
+outlines of machine parts then move by less than 0.002 mm."""
+_STEPS_PER_MM = 2.0**20  # points lie on this lattice before they are noded, so equal points are equal bits
+_ROW = 1 << 32
+_BORDERS = tuple(
+    number_of(line_class)
+    for line_class in (
+        LineClass.VISIBLE_OUTLINE,
+        LineClass.VISIBLE_EDGE,
+        LineClass.SECTION_OUTLINE,
+        LineClass.IMAGINARY_INTERSECTION,
+    )
+)
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class Polylines:
+    """Lines on the page: points (n,2) float64 mm, and line (n,) int32, the line each point stands in, ascending."""
+
+    points: F64
+    line: I32
+
+
+def regions_of(view: View, pieces: Pieces, candidates: Candidates, occluders: Occluders) -> tuple[Region, ...]:
+    """Return the visible regions, one for each connected area of one patch of one part.
+
+    They cover what is seen without gaps or overlaps; they stand in the order of part paths, then patches, then from
+    the top of the page down. Cost: near linear in the visible pieces; 0.1 s for those of 250 000 triangles.
+    """
+    from .queries import front_face
+
+    return regions_within(view, borders_of(pieces, candidates), lambda xy: front_face(view, occluders, xy))
+
+
+def borders_of(pieces: Pieces, candidates: Candidates) -> Polylines:
+    """Return the visible pieces that bound areas, put together where just two meet, free ends extended."""
+    is_border = np.isin(candidates.line_class, _BORDERS) & (candidates.patch < 0) & ~candidates.is_plain
+    rows = np.flatnonzero(pieces.is_visible & is_border[pieces.segment])
+    ends = np.stack([pieces.start[rows, :2], pieces.end[rows, :2]], axis=1)
+    lattice = np.rint(ends * _STEPS_PER_MM).astype(np.int64)
+    long = (lattice[:, 0] != lattice[:, 1]).any(axis=1)
+    rows, lattice = rows[long], lattice[long]
+    is_cut = np.stack([pieces.span[rows, 0] > 0.0, pieces.span[rows, 1] < 1.0], axis=1)
+    return _polylines(lattice, is_cut)
+
+
+def regions_within(view: View, borders: Polylines, faces_under: FacesUnder) -> tuple[Region, ...]:
+    """Return the regions that lines enclose; `faces_under` gives the view face at page points (k,2), -1 for none.
+
+    Lines need not be noded. Dangling ends are no borders.
+    """
+    import shapely
+
+    if not len(borders.points):
+        return ()
+    lines = shapely.linestrings(borders.points, indices=borders.line)
+    noded = shapely.get_parts(shapely.unary_union(lines))
+    faces = shapely.get_parts(shapely.polygonize(noded))
+    labels = _labels(faces, faces_under(_points_within(faces)), view)
+    _merge_small(faces, labels)
+    rows = np.flatnonzero(labels[:, 0] >= 0)
+    return _regions(faces[rows], labels[rows], view)
+
+
+def parts_of(regions: Sequence[Region]) -> tuple[Region, ...]:
+    """Return regions of whole parts, the patches of a part taken together and caps apart from its own surface."""
+    groups: dict[tuple[int, bool], list[Region]] = {}
+    for region in regions:
+        groups.setdefault((region.node, region.is_cap), []).append(region)
+    return tuple(
+        Region(rings, node, -1, is_cap, area)
+        for (node, is_cap), members in groups.items()
+        for rings, area in _united(members)
+    )
+
+
+def visible_regions_of(regions: Sequence[Region], nodes: Collection[int]) -> tuple[Rings, ...]:
+    """Return the polygons on which any of these rows of nodes is seen, each an outer ring and its holes."""
+    return tuple(rings for rings, _ in _united([region for region in regions if region.node in nodes]))
+
+
+def polygon_of(region: Region) -> Any:
+    """Return the region as a shapely polygon."""
+    import shapely
+
+    return shapely.Polygon(region.rings[0], region.rings[1:])
+
+
+def rings_of(polygon: Any) -> Rings:
+    """Return the rings of a shapely polygon, the outer one first, each (k,2) float64 with its first point once."""
+    import shapely
+
+    rings = (shapely.get_exterior_ring(polygon), *polygon.interiors)
+    return tuple(np.ascontiguousarray(shapely.get_coordinates(ring)[:-1]) for ring in rings)
+
+
+def _polylines(lattice: I64, is_cut: Bools) -> Polylines:
+    """Join segments (k,2,2) on the lattice at points where two ends meet, but not where visibility cut them off."""
+    from .chaining import walked
+
+    keys = (lattice[..., 0] * _ROW + lattice[..., 1]).reshape(-1)
+    joint = np.unique(keys, return_inverse=True)[1].reshape(-1)
+    cut = np.flatnonzero(is_cut.reshape(-1))
+    n_joints = int(joint.max(initial=-1)) + 1
+    meeting = np.bincount(np.delete(joint, cut), minlength=n_joints)
+    is_free = is_cut.reshape(-1) | (meeting[joint] == 1)
+    joint[cut] = n_joints + np.arange(len(cut))
+    order, turned, chain = walked(joint.reshape(-1, 2).astype(np.int32), n_joints + len(cut))
+    ends = _extended(lattice / _STEPS_PER_MM, is_free.reshape(-1, 2))[order]
+    ends[turned] = ends[turned, ::-1]
+    first = np.flatnonzero(np.diff(chain, prepend=-1))
+    points = np.insert(ends[:, 1], first, ends[first, 0], axis=0)
+    return Polylines(points, np.insert(chain, first, chain[first]))
+
+
+def _extended(segments: F64, is_free: Bools) -> F64:
+    along = segments[:, 1] - segments[:, 0]
+    step = along * (EXTENSION_MM / np.hypot(along[:, 0], along[:, 1]))[:, None]
+    ends = segments + np.stack([-step, step], axis=1) * is_free[:, :, None]
+    return np.asarray(np.rint(ends * _STEPS_PER_MM) / _STEPS_PER_MM)
+
+
+def _points_within(faces: Polygons) -> F64:
+    import shapely
+
+    return np.asarray(shapely.get_coordinates(shapely.point_on_surface(faces)))
+
+
+def _labels(faces: Polygons, seen: I32, view: View) -> I64:
+    """Node, patch and whether it is a cap (k,3) int64 of the faces of an arrangement; -1 where nothing is seen."""
+    origin = view.geometry.face_origin[view.face_row[seen]]
+    labels = np.column_stack([view.face_node[seen], view.face_patch[seen], origin == FaceOrigin.SECTION_CAP])
+    labels = labels.astype(np.int64)
+    labels[seen < 0] = -1
+    return labels
+
+
+def _merge_small(faces: Polygons, labels: I64) -> None:
+    """Give each face that is too small the label of the larger neighbour it has the longest border with."""
+    import shapely
+
+    areas = shapely.area(faces)
+    small = np.flatnonzero(areas < LEAST_AREA_MM2)
+    if not small.size:
+        return
+    waiting = set(small.tolist())
+    borders = _borders_between(faces, small)
+    while waiting:
+        settled = [row for row in waiting if any(other not in waiting for other, _ in borders[row])]
+        for row in settled:
+            known = [(length, -other) for other, length in borders[row] if other not in waiting]
+            labels[row] = labels[-max(known)[1]]
+        if not settled:
+            return
+        waiting.difference_update(settled)
+
+
+def _borders_between(faces: Polygons, rows: I64) -> dict[int, list[tuple[int, float]]]:
+    """For each of `rows` the faces it has a border with, and the length of the border in mm."""
+    import shapely
+
+    of, other = shapely.STRtree(faces).query(faces[rows], predicate="touches")
+    shared = shapely.length(shapely.intersection(shapely.boundary(faces[rows[of]]), shapely.boundary(faces[other])))
+    borders: dict[int, list[tuple[int, float]]] = {row: [] for row in rows.tolist()}
+    for row, neighbour, length in zip(rows[of].tolist(), other.tolist(), shared.tolist(), strict=True):
+        if length > 0.0:
+            borders[row].append((neighbour, length))
+    return borders
+
+
+def _regions(faces: Polygons, labels: I64, view: View) -> tuple[Region, ...]:
+    """Unite faces of one label, drop points that do not matter, and put all in their order."""
+    import shapely
+
+    keys, group = np.unique(labels, axis=0, return_inverse=True)
+    order = np.argsort(group.reshape(-1), kind="stable")
+    members = np.split(faces[order], np.cumsum(np.bincount(group.reshape(-1)))[:-1])
+    united = [each if len(each) == 1 else shapely.get_parts(shapely.coverage_union_all(each)) for each in members]
+    owner = np.repeat(np.arange(len(keys)), [len(each) for each in united])
+    outlines = shapely.coverage_simplify(np.concatenate(united), SIMPLIFY_MM) if len(united) else np.empty(0, object)
+    outlines = shapely.normalize(outlines)
+    boxes = np.round(shapely.bounds(outlines), 3) if len(outlines) else np.empty((0, 4))
+    paths = [view.geometry.nodes[node].path for node in keys[:, 0].tolist()]
+    rows = sorted(range(len(outlines)), key=lambda k: (paths[owner[k]], *keys[owner[k], 1:], *boxes[k, [1, 0, 3, 2]]))
+    areas = shapely.area(outlines)
+    return tuple(
+        Region(rings_of(outlines[k]), int(keys[owner[k], 0]), int(keys[owner[k], 1]), bool(keys[owner[k], 2]), areas[k])
+        for k in rows
+    )
+
+
+def _united(regions: Sequence[Region]) -> Iterator[tuple[Rings, float]]:
+    import shapely
+
+    whole = shapely.coverage_union_all([polygon_of(region) for region in regions])
+    for polygon in shapely.get_parts(shapely.normalize(whole)):
+        yield rings_of(polygon), float(polygon.area)
