@@ -21,6 +21,7 @@ from .modules import find_kind
 from .placement import positive_length
 from .readings import LATER, expression, optional, word
 from .scope import Scope, did_you_mean
+from .section_reading import read_cuts
 from .specs import Spec
 from .subjects import find_subject
 from .values import Proportion, kind_of
@@ -82,6 +83,8 @@ class _Reading:
         with self.problems.collecting():
             found = self._subject(lines.get("show"))
         changes: dict[str, object] = {}
+        if found is not None:
+            changes["cuts"] = read_cuts(self.line.lines, found.subject, self.scope, self.problems)
         for each, line in lines.items():
             with self.problems.collecting():
                 changes.update(self._read(each, line.head))

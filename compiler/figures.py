@@ -22,13 +22,20 @@ from .frames import RESOLUTION_DPI, Frame, content, frame_of, held_frame
 from .layout import Box
 from .lightings import lights_for
 from .mistakes import Mistake, Problems, confined, mistake
+from .sections import Opening, away_of, cutter_of, facing, letter_of, trace_of
 from .solids.ladder import COARSEST, first_at_most
 from .specs import Spec
 from .viewpoints import Central, Parallel, unit_projection
-from .views import View, views_of
+from .views import View, cuts_of, views_of
 
 ERROR_ON_PAPER_MM = 0.02
 """The chord error on paper that a figure's rung keeps to, at its nearest point."""
+
+TRACE_PAST_MM = 6.0
+"""How far on paper a cutting-plane line runs past what it cuts."""
+
+TRACE_FREE_MM = 13.0
+"""Paper that the end of a cutting-plane line takes, with its letter."""
 
 LEAST_ON_PAPER_MM = 0.05
 """A subject smaller than this on paper is not drawn: about a dot at 500 to the inch."""
@@ -60,15 +67,18 @@ class _Planner:
 
     def __init__(self, model: Model, spec: Spec, mesher: Mesher, problems: Problems) -> None:
         self.model, self.spec, self.mesher, self.problems = model, spec, mesher, problems
-        self.shapes: dict[float, Flattened] = {}
+        self.shapes: dict[tuple[float, tuple[int, ...]], Flattened] = {}
+        self.sights: dict[int, tuple[float, float, float]] = {}
+        self.corners, _ = box_corners(spec.subject, spec.path)
 
     def job(self, resolution: float, measures: bool) -> contract.Job:
         spec = self.spec
-        corners, _ = box_corners(spec.subject, spec.path)
+        corners = self.corners
         shots = [
             _Shot(view, unit_projection(view.viewpoint, view.factor, spec.true_projection), COARSEST)
             for view in views_of(spec)
         ]
+        self.sights = {number: shot.unit.sight for shot in shots for number in shot.view.cuts}
         frame = self._frame(shots, lambda shot: corners)
         shots = self._finer(shots, frame, lambda shot: corners)
         frame = self._frame(shots, self._vertices)
@@ -83,16 +93,23 @@ class _Planner:
 
     def _shape(self, shot: _Shot) -> Flattened:
         """What a view shows, as triangles. Raises Mistake, without a problem of its own, where a part has none."""
-        key = shot.rung
+        key = (shot.rung, shot.view.cuts)
         if key not in self.shapes:
-            spec = self.spec
-            flattened, problems = flatten(spec.subject, spec.path, shot.rung, self.model.sources, self.mesher)
+            spec, opening = self.spec, self._opening(shot)
+            alter = opening.alter if opening.cutters else None
+            flattened, problems = flatten(spec.subject, spec.path, shot.rung, self.model.sources, self.mesher, alter)
             # Warnings about parts are the scene's, and `prove` has given them.
             self.problems.extend(tuple(problem for problem in problems if is_error(problem)))
-            if flattened is None:
+            opening.judge(cuts_of(shot.view, spec), self.problems)
+            if flattened is None or self.problems.has_errors:
                 raise Mistake(None)
             self.shapes[key] = flattened
         return self.shapes[key]
+
+    def _opening(self, shot: _Shot) -> Opening:
+        cuts, sight = cuts_of(shot.view, self.spec), shot.unit.sight
+        cutters = tuple(cutter_of(cut, away_of(cut, sight), self.corners) for cut in cuts)
+        return Opening(cutters, frozenset(self.spec.uncut))
 
     def _finer(self, shots: Sequence[_Shot], frame: Frame, points: Callable[[_Shot], F64]) -> list[_Shot]:
         return [_Shot(each.view, each.unit, min(each.rung, self._rung(each, frame, points(each)))) for each in shots]
@@ -123,7 +140,16 @@ class _Planner:
             low = (float(middle[0, 0]) - reach, float(middle[0, 1]) - reach)
             high = (low[0] + 2 * reach, low[1] + 2 * reach)
         axes = (unit.right, unit.up) if view.window is None and isinstance(viewpoint, Parallel) else None
-        return Box(low, high, view.column, view.row, axes)
+        return Box(low, high, view.column, view.row, axes, self._around(view, unit))
+
+    def _around(self, view: View, unit: contract.Projection) -> tuple[float, float, float, float]:
+        """Paper kept free round a view for the ends of its cutting-plane lines."""
+        aside = upright = 0.0
+        for number in view.traces:
+            along = np.cross(facing(self.spec.cuts[number]), unit.sight)
+            across, up = abs(float(along @ np.array(unit.right))), abs(float(along @ np.array(unit.up)))
+            aside, upright = max(aside, across * TRACE_FREE_MM), max(upright, up * TRACE_FREE_MM)
+        return (aside, upright, aside, upright)
 
     def _rung(self, shot: _Shot, frame: Frame, points: F64) -> float:
         magnification, viewpoint = frame.scale * camera.magnification(shot.unit), shot.view.viewpoint
@@ -169,7 +195,40 @@ class _Planner:
         target = (float(middle[0]), float(middle[1]), float(middle[2]))
         style = contract.Style(spec.drawn_as, 4 if spec.drawn_as == "tone" else 1)
         lighting = lights_for(spec.sources, projection, target)
-        return contract.Panel(view.name, row, projection, place, style, lighting)
+        return contract.Panel(
+            view.name,
+            row,
+            projection,
+            place,
+            style,
+            lighting,
+            section=self._section(view, projection, geometry),
+            cutting_planes=self._traces(view, projection, geometry),
+        )
+
+    def _section(
+        self, view: View, projection: contract.Projection, geometry: contract.Geometry
+    ) -> contract.Section | None:
+        """What is said of a view's first section."""
+        if not view.cuts:
+            return None
+        cut = self.spec.cuts[view.cuts[0]]
+        away, opening = away_of(cut, projection.sight), Opening((), frozenset(self.spec.uncut))
+        uncut = tuple(row for row, node in enumerate(geometry.nodes) if opening.is_whole(node.path))
+        return contract.Section(cut.plane.through, away, uncut, letter_of(view.cuts[0]))
+
+    def _traces(
+        self, view: View, projection: contract.Projection, geometry: contract.Geometry
+    ) -> tuple[contract.CuttingPlaneLine, ...]:
+        """Cutting-plane lines of the sections that other views show."""
+        found: list[contract.CuttingPlaneLine] = []
+        for number in view.traces:
+            cut = self.spec.cuts[number]
+            away = away_of(cut, self.sights[number])
+            points = trace_of(cut, away, projection.sight, geometry.vertices, TRACE_PAST_MM / projection.scale)
+            seen = (-away[0], -away[1], -away[2])
+            found.append(contract.CuttingPlaneLine(points, seen, letter_of(number)))
+        return tuple(found)
 
     def _seen(self, projection: contract.Projection, place: tuple[float, float, float, float], vertices: F64) -> None:
         """A view with nothing in it is a problem; one whose subject leaves its place says so."""

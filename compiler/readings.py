@@ -45,6 +45,14 @@ def settings(reading: tree.Reading, slot: str = "settings") -> tuple[tree.Settin
     return tuple(each for each in value if isinstance(each, tree.Setting))
 
 
+def listed(reading: tree.Reading, slot: str) -> tuple[tree.Expression, ...]:
+    """The expressions that a slot joins by commas, none where it was left out."""
+    value = reading.get(slot)
+    if not isinstance(value, tuple):
+        return ()
+    return tuple(each for each in value if isinstance(each, tree.Expression))
+
+
 def parameters(line: tree.Line) -> tuple[tree.Parameter, ...]:
     """The parameters of a declaration, none where it has none."""
     value = line.head.get("parameters")

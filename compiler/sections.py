@@ -61,7 +61,7 @@ def letter_of(number: int) -> str:
 
 def away_of(cut: Cut, sight: Point) -> Point:
     """The unit direction from the cut into what goes, for a unit direction of sight. Raises Mistake if edge-on."""
-    normal = _facing(cut)
+    normal = facing(cut)
     toward = -_dot(normal, sight) if cut.keeping is None else -_dot(normal, cut.keeping)
     if abs(toward) < EDGE_ON:
         seen = "seen edge-on" if cut.keeping is None else "square to the side to be kept"
@@ -99,7 +99,7 @@ class Opening:
     def alter(self, entry: Entry, placement: F64, mesh: Mesh) -> Mesh | None:
         """The mesh that is left of one copy; see `flatten.Alter`."""
         left: Mesh | None = mesh
-        if not self.is_whole(entry):
+        if not self.is_whole(entry.path):
             if not mesh.closed:
                 self.open.append(entry)
                 return mesh
@@ -109,9 +109,9 @@ class Opening:
         self.n_left += left is not None
         return left
 
-    def is_whole(self, entry: Entry) -> bool:
-        """Whether a copy stays whole: it, or something it is in, is listed, or its part says `uncut`."""
-        return any(each in self.whole for each in _and_above(entry.path))
+    def is_whole(self, path: str) -> bool:
+        """Whether what stands at a path stays whole: it, or something it is in, is listed."""
+        return any(each in self.whole for each in _and_above(path))
 
     def judge(self, cuts: tuple[Cut, ...], problems: Problems) -> None:
         """Report what came of the cuts: nothing left, nothing met, or parts that could not be cut."""
@@ -209,7 +209,7 @@ def _patch(cut: Cut, away: Point, reach: float) -> Cutter:
     return Cutter(tuple(profile), cut.plane.through, u, v, 0.0, 4.0 * reach, (*sides, _CAP, _BREAK))
 
 
-def _facing(cut: Cut) -> Point:
+def facing(cut: Cut) -> Point:
     """A unit normal of the cut; of a stepped one, that of a plane through its ends along its axis."""
     if cut.kind != "stepped":
         return cut.plane.normal

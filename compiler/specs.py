@@ -10,6 +10,7 @@ from platewright.lang.source import Span
 
 from .graph import Thing
 from .lightings import Sources
+from .sections import Cut
 from .viewpoints import Viewpoint
 
 MARGIN_MM = 2.0
@@ -19,7 +20,7 @@ DEFAULT_STYLE: DrawnAs = "tone"
 
 
 class Spec(Struct, frozen=True):
-    """One figure. Lengths are mm on paper."""
+    """One figure. Lengths are mm on paper. `uncut` are paths of what sections leave whole, with all below it."""
 
     name: str
     subject: Thing
@@ -38,3 +39,5 @@ class Spec(Struct, frozen=True):
     title: str = ""
     alt: str = ""
     description: str = ""
+    cuts: tuple[Cut, ...] = ()
+    uncut: tuple[str, ...] = ()

@@ -307,11 +307,40 @@ FIGURE_ROWS: tuple[Row, ...] = (
     ),
     Row(
         "section across",
-        "section across <plane:axis> [at <at:any>] [keeping <keeping:any>]",
+        "section across <plane:axis> [at <at:any>] [keeping <keeping:direction>]",
         ("figure",),
-        "cuts the subject by a plane",
+        "cuts the subject by a plane, at a length along its normal or at a mark; the side toward the eye goes",
         "section across y at 0",
-        later=True,
+    ),
+    Row(
+        "half section across",
+        "half section across <plane:axis> [at <at:any>] beside <side:direction> [past <past:any>] "
+        "[keeping <keeping:direction>]",
+        ("figure",),
+        "cuts away a quarter: before one plane and beside another",
+        "half section across y at 0 beside x past 0",
+    ),
+    Row(
+        "stepped section along",
+        "stepped section along <axis:axis> through <corners:list> [keeping <keeping:direction>]",
+        ("figure",),
+        "cuts by planes along one axis, through points or marks in turn",
+        "stepped section along z through (-40 mm, 0, 0), (0, 0, 0), (0, 15 mm, 0), (40 mm, 15 mm, 0)",
+    ),
+    Row(
+        "local section across",
+        "local section across <plane:axis> [at <at:any>] round <mark:any> diameter <diameter:length> "
+        "[keeping <keeping:direction>]",
+        ("figure",),
+        "breaks a patch out round a mark, down to a plane",
+        "local section across y at 0 round (0, 0, 40 mm) diameter 30 mm",
+    ),
+    Row(
+        "uncut",
+        "uncut <parts:list>",
+        ("figure",),
+        "leaves parts whole in sections, as shafts and fasteners are by custom",
+        "uncut cap_screws",
     ),
     Row(
         "detail of",

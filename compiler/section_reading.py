@@ -1,0 +1,126 @@
+"""What a figure says of sections: the lines that cut its subject, and what stays whole."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from itertools import pairwise
+
+from platewright.lang import tree
+from platewright.lang.units import LENGTH
+
+from .expressions import evaluate
+from .graph import Point, Thing
+from .mistakes import Problems, mistake
+from .paths import Placed, follow
+from .placement import AXES, direction, positive_length
+from .readings import expression, listed, optional
+from .scope import Scope
+from .sections import Cut, Plane
+from .values import Quantity, Vector, kind_of
+
+ROWS = ("section across", "half section across", "stepped section along", "local section across")
+"""Rows of the vocabulary that each make one cut."""
+
+_ORIGIN = (0.0, 0.0, 0.0)
+
+
+def read_cuts(lines: Sequence[tree.Line], subject: Thing, scope: Scope, problems: Problems) -> tuple[Cut, ...]:
+    """The cuts among a figure's lines, in their order. Paths begin in the subject."""
+    found: list[Cut] = []
+    for line in lines:
+        if line.head.row in ROWS:
+            with problems.collecting():
+                found.append(_Reader(line.head, subject, scope).cut())
+    return tuple(found)
+
+
+class _Reader:
+    """Reads one line that cuts."""
+
+    def __init__(self, head: tree.Reading, subject: Thing, scope: Scope) -> None:
+        self.head, self.subject, self.scope = head, subject, scope
+
+    def cut(self) -> Cut:
+        head = self.head
+        keeping = optional(head, "keeping")
+        kept = direction(keeping, self.scope) if keeping is not None else None
+        match head.row:
+            case "stepped section along":
+                axis = self._direction("axis")
+                return Cut("stepped", Plane(axis, _ORIGIN), head.span, None, self._corners(axis), 0.0, kept)
+            case "half section across":
+                side = self._direction("side")
+                beside = Plane(side, self._place("past", side))
+                return Cut("half", self._plane(), head.span, beside, (), 0.0, kept)
+            case "local section across":
+                return self._local(kept)
+            case _:
+                return Cut("full", self._plane(), head.span, None, (), 0.0, kept)
+
+    def _plane(self) -> Plane:
+        normal = self._direction("plane")
+        return Plane(normal, self._place("at", normal))
+
+    def _local(self, kept: Point | None) -> Cut:
+        plane = self._plane()
+        middle = self._point(expression(self.head, "mark"))
+        n = plane.normal
+        off = sum((a - b) * c for a, b, c in zip(middle, plane.through, n, strict=True))
+        on_plane = (middle[0] - off * n[0], middle[1] - off * n[1], middle[2] - off * n[2])
+        diameter = positive_length(expression(self.head, "diameter"), self.scope, "diameter")
+        return Cut("local", Plane(n, on_plane), self.head.span, None, (), diameter, kept)
+
+    def _direction(self, slot: str) -> Point:
+        """An axis, a direction, or a mark's or feature's axis."""
+        written = expression(self.head, slot)
+        if isinstance(written, tree.Path) and not (len(written.steps) == 1 and written.steps[0].name in AXES):
+            value = self._below(written)
+            if not (isinstance(value, Vector) and value.dimension != LENGTH):
+                hint = "a mark set `along` something, and a feature, have an `axis`"
+                raise mistake("wrong-kind", written.span, f"`{written.dotted}` is no direction", hint)
+            x, y, z = value.components
+            return (x, y, z)
+        return direction(written, self.scope)
+
+    def _place(self, slot: str, along: Point) -> Point:
+        """A point of the plane: a mark's, or a length along its normal from the origin."""
+        written = optional(self.head, slot)
+        if written is None:
+            return _ORIGIN
+        if isinstance(written, tree.Path) and self.scope.find(written.steps[0].name) is None:
+            return self._point(written)
+        value = evaluate(written, self.scope)
+        if isinstance(value, Vector) and len(value.components) == 3 and value.dimension == LENGTH:
+            return self._point(written)
+        if not isinstance(value, Quantity) or (value.dimension != LENGTH and value.value != 0):
+            hint = "a length such as `12 mm`, or a mark"
+            raise mistake("wrong-kind", written.span, f"expected where the plane lies, found {kind_of(value)}", hint)
+        return (along[0] * value.value, along[1] * value.value, along[2] * value.value)
+
+    def _point(self, written: tree.Expression) -> Point:
+        if isinstance(written, tree.Path) and self.scope.find(written.steps[0].name) is None:
+            value = self._below(written)
+        else:
+            value = evaluate(written, self.scope)
+        if not (isinstance(value, Vector) and len(value.components) == 3 and value.dimension == LENGTH):
+            raise mistake("wrong-kind", written.span, "expected a point or a mark", "such as `(0, 0, 5 mm)`")
+        x, y, z = value.components
+        return (x, y, z)
+
+    def _below(self, written: tree.Path) -> object:
+        value = follow(self.subject, written.steps, self.scope)
+        if isinstance(value, Placed):
+            # A placed thing stands for its own origin.
+            return Vector(tuple(row[3] for row in value.placement), LENGTH)
+        return value
+
+    def _corners(self, axis: Point) -> tuple[Point, ...]:
+        points = tuple(self._point(each) for each in listed(self.head, "corners"))
+        if len(points) < 2:
+            raise mistake("missing-value", self.head.span, "a stepped section runs through two points at least")
+        for one, other in pairwise(points):
+            apart = tuple(b - a for a, b in zip(one, other, strict=True))
+            along = sum(a * b for a, b in zip(apart, axis, strict=True))
+            if sum((a - along * b) ** 2 for a, b in zip(apart, axis, strict=True)) < 1e-12:
+                raise mistake("wrong-form", self.head.span, "two points of this section lie behind each other")
+        return points
