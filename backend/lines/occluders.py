@@ -1,0 +1,75 @@
+"""What hides lines: the triangles toward the viewer, in a tree over the page."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ..contract import F64, I32
+from .model import View
+from .tree import LEAF, bounds, fill_leaves, fill_tree, in_order, morton_codes
+from .view import in_blocks
+
+_PAD = 1e-4  # mm on paper: boxes reach further than any triangle with its tolerance does
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class Occluders:
+    """Triangles that hide, in Morton order, and the boxes of an implicit tree over them (see `tree`).
+
+    boxes (2 n_leaves - 1, 5) float64, corners (k,9) float64 view points, labels (k,6) int32: three vertices, view face,
+    node, patch. rank (n_nodes,) int32: order of the nodes' paths, by which ties are decided.
+    """
+
+    boxes: F64
+    corners: F64
+    labels: I32
+    n_leaves: int
+    rank: I32
+
+    def __len__(self) -> int:
+        return len(self.labels)
+
+
+def occluders_of(view: View, threads: int | None = None) -> Occluders:
+    """The occluders of a view: front faces, of open parts both sides; faces of ghosts, for their own part only.
+
+    Cost: one sort of the faces by Morton code; about 0.2 kB a triangle.
+    """
+    rank = _ranks(view)
+    is_open = np.array([not node.closed for node in view.geometry.nodes], np.bool_)
+    chosen = np.flatnonzero((view.facing > 0) | ((view.facing < 0) & is_open[view.face_node])).astype(np.int32)
+    n = len(chosen)
+    if not n:
+        return Occluders(np.empty((0, 5)), np.empty((0, 9)), np.empty((0, 6), np.int32), 0, rank)
+    box = bounds(view.points, view.faces, chosen)
+    code = np.empty(n, np.uint64)
+
+    def encode(begin: int, end: int) -> None:
+        morton_codes(view.points, view.faces, chosen, box, begin, end, code)
+
+    in_blocks(encode, n, threads)
+    order = in_order(code, chosen)
+    n_leaves = 1
+    while n_leaves * LEAF < n:
+        n_leaves *= 2
+    boxes, corners, labels = np.empty((2 * n_leaves - 1, 5)), np.empty((n, 9)), np.empty((n, 6), np.int32)
+
+    def fill(begin: int, end: int) -> None:
+        fill_leaves(
+            view.points, view.faces, view.face_node, view.face_patch, view.facing, view.is_occluder, order, n_leaves,
+            _PAD, begin, end, boxes, corners, labels,
+        )  # fmt: skip
+
+    in_blocks(fill, n_leaves, threads, 1 << 13)
+    fill_tree(boxes, n_leaves)
+    return Occluders(boxes, corners, labels, n_leaves, rank)
+
+
+def _ranks(view: View) -> I32:
+    nodes = view.geometry.nodes
+    order = sorted(range(len(nodes)), key=lambda row: (nodes[row].path, row))
+    rank = np.empty(len(nodes), np.int32)
+    rank[order] = np.arange(len(nodes), dtype=np.int32)
+    return rank

@@ -1,0 +1,118 @@
+"""Kernels of the tree over projected triangles: Morton order (Morton 1966) and an implicit binary tree of boxes.
+
+A tree of n leaves, a power of two, has its inner boxes at 0 .. n - 2, the children of q at 2q + 1 and 2q + 2, and its
+leaves behind them; leaf j holds an even share of the triangles in Morton order.
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+
+from .compiled import kernel
+
+LEAF = 4  # triangles in a leaf at most
+_BITS = 22  # of each coordinate in a Morton code
+_RADIX = 11
+
+
+@kernel
+def bounds(points: Any, faces: Any, chosen: Any) -> Any:
+    """Least x, y and greatest x, y (4,) of the middles of the boxes of the chosen faces."""
+    found = np.array([np.inf, np.inf, -np.inf, -np.inf])
+    for i in range(len(chosen)):
+        a, b, c = faces[chosen[i], 0], faces[chosen[i], 1], faces[chosen[i], 2]
+        for k in range(2):
+            p, q, r = points[a, k], points[b, k], points[c, k]
+            middle = 0.5 * (min(p, min(q, r)) + max(p, max(q, r)))
+            found[k] = min(found[k], middle)
+            found[2 + k] = max(found[2 + k], middle)
+    return found
+
+
+@kernel
+def morton_codes(points: Any, faces: Any, chosen: Any, box: Any, begin: int, end: int, code: Any) -> None:
+    """Morton codes (k,) uint64 of the chosen faces begin .. end."""
+    size = max(box[2] - box[0], box[3] - box[1])
+    scale = ((1 << _BITS) - 1) / size if size > 0.0 else 0.0
+    for i in range(begin, end):
+        a, b, c = faces[chosen[i], 0], faces[chosen[i], 1], faces[chosen[i], 2]
+        interleaved = np.uint64(0)
+        for k in range(2):
+            p, q, r = points[a, k], points[b, k], points[c, k]
+            middle = 0.5 * (min(p, min(q, r)) + max(p, max(q, r)))
+            m = np.uint64((middle - box[k]) * scale)
+            m = (m | (m << np.uint64(16))) & np.uint64(0x0000FFFF0000FFFF)
+            m = (m | (m << np.uint64(8))) & np.uint64(0x00FF00FF00FF00FF)
+            m = (m | (m << np.uint64(4))) & np.uint64(0x0F0F0F0F0F0F0F0F)
+            m = (m | (m << np.uint64(2))) & np.uint64(0x3333333333333333)
+            m = (m | (m << np.uint64(1))) & np.uint64(0x5555555555555555)
+            interleaved |= m << np.uint64(k)
+        code[i] = interleaved
+
+
+@kernel
+def in_order(code: Any, chosen: Any) -> Any:
+    """The chosen faces in rising order of their codes, equal ones as they were (least significant digit first)."""
+    n = len(code)
+    n_passes = (2 * _BITS + _RADIX - 1) // _RADIX
+    codes, spare_codes = code, np.empty_like(code)
+    faces, spare = chosen.copy(), np.empty_like(chosen)
+    count = np.zeros((n_passes, (1 << _RADIX) + 1), np.int64)
+    mask = np.uint64((1 << _RADIX) - 1)
+    for i in range(n):
+        for p in range(n_passes):
+            count[p, ((codes[i] >> np.uint64(_RADIX * p)) & mask) + np.uint64(1)] += 1
+    for p in range(n_passes):
+        for d in range(1 << _RADIX):
+            count[p, d + 1] += count[p, d]
+        for i in range(n):
+            digit = (codes[i] >> np.uint64(_RADIX * p)) & mask
+            q = count[p, digit]
+            count[p, digit] = q + 1
+            spare_codes[q], spare[q] = codes[i], faces[i]
+        codes, spare_codes = spare_codes, codes
+        faces, spare = spare, faces
+    return faces
+
+
+@kernel
+def fill_leaves(
+    points: Any, faces: Any, face_node: Any, face_patch: Any, facing: Any, is_occluder: Any, order: Any, n_leaves: int,
+    pad: Any, begin: int, end: int, boxes: Any, corners: Any, labels: Any,
+) -> None:  # fmt: skip
+    """Boxes of the leaves begin .. end, and their triangles side by side.
+
+    boxes (2n-1,5): least x, y, greatest x, y, least depth. corners (k,9): x, y, depth of three corners that turn left
+    on the page (y down: against the clock as printed). labels (k,6) int32: their vertices, face, node, and patch, the
+    patch as -1 - patch where the triangle hides only its own part.
+    """
+    n = len(order)
+    for leaf in range(begin, end):
+        left, top, right, bottom, near = np.inf, np.inf, -np.inf, -np.inf, np.inf
+        for i in range(leaf * n // n_leaves, (leaf + 1) * n // n_leaves):
+            t = order[i]
+            for k in range(3):
+                # A triangle seen from its back is turned over.
+                v = faces[t, k] if facing[t] > 0 else faces[t, 2 - k]
+                labels[i, k] = v
+                x, y, z = points[v, 0], points[v, 1], points[v, 2]
+                corners[i, 3 * k], corners[i, 3 * k + 1], corners[i, 3 * k + 2] = x, y, z
+                left, right = min(left, x), max(right, x)
+                top, bottom = min(top, y), max(bottom, y)
+                near = min(near, z)
+            labels[i, 3], labels[i, 4] = t, face_node[t]
+            labels[i, 5] = face_patch[t] if is_occluder[t] else -1 - face_patch[t]
+        q = n_leaves - 1 + leaf
+        boxes[q, 0], boxes[q, 1], boxes[q, 2], boxes[q, 3] = left - pad, top - pad, right + pad, bottom + pad
+        boxes[q, 4] = near
+
+
+@kernel
+def fill_tree(boxes: Any, n_leaves: int) -> None:
+    """Boxes of the inner nodes from those of the leaves."""
+    for q in range(n_leaves - 2, -1, -1):
+        a, b = 2 * q + 1, 2 * q + 2
+        for k in range(5):
+            boxes[q, k] = max(boxes[a, k], boxes[b, k]) if k == 2 or k == 3 else min(boxes[a, k], boxes[b, k])

@@ -1,0 +1,63 @@
+"""Which stretches of lines are seen."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from ..contract import F64, I32, U8, LineClass
+from .clip import HIDDEN, NORMAL, PLAIN, cut_segments
+from .model import Bools, Candidates, Pieces, View, number_of
+from .occluders import Occluders, occluders_of
+from .view import in_blocks
+
+_BLOCK = 512
+
+
+def cut(view: View, candidates: Candidates, threads: int | None = None, occluders: Occluders | None = None) -> Pieces:
+    """Cut candidates where they pass behind a surface.
+
+    Exact up to `view.tolerance`, in central and parallel projection alike. A line that lies in a surface is seen, from
+    every viewpoint: so is the seam of flush parts. Candidates of a hidden class come as one hidden piece, plain ones as
+    one seen piece. The result does not depend on the number of threads. `occluders` are those of the view if they are
+    known already. Cost: O(log n) and the triangles before it for each segment.
+    """
+    tree = occluders_of(view, threads) if occluders is None else occluders
+    treat = _treatment(candidates)
+    is_central = view.projection.kind == "central"
+
+    def work(begin: int, end: int) -> tuple[I32, F64, Bools]:
+        found: tuple[I32, F64, Bools] = cut_segments(
+            tree.boxes, tree.corners, tree.labels, tree.n_leaves, candidates.start, candidates.end,
+            candidates.vertices, candidates.faces, candidates.node, candidates.patch, candidates.allowance, treat,
+            view.tolerance.depth_mm, view.tolerance.sideways_mm, is_central, begin, end,
+        )  # fmt: skip
+        return found
+
+    found = in_blocks(work, len(candidates), threads, _BLOCK)
+    if not found:
+        nothing = np.empty((0, 3))
+        return Pieces(np.empty(0, np.int32), np.empty((0, 2)), np.empty(0, np.bool_), nothing, nothing)
+    segment, span = np.concatenate([each[0] for each in found]), np.concatenate([each[1] for each in found])
+    start, end = candidates.start[segment], candidates.end[segment]
+    return Pieces(
+        segment,
+        span,
+        np.concatenate([each[2] for each in found]),
+        between(start, end, span[:, 0]),
+        between(start, end, span[:, 1]),
+    )
+
+
+def between(start: F64, end: F64, share: F64) -> F64:
+    """Points (p,3) at shares (p,) of the way from start to end, exactly the ends at 0 and 1."""
+    points = start + (end - start) * share[:, None]
+    is_last = share == 1.0
+    points[is_last] = end[is_last]
+    return points
+
+
+def _treatment(candidates: Candidates) -> U8:
+    treat = np.where(candidates.is_plain, PLAIN, NORMAL).astype(np.uint8)
+    for line_class in (LineClass.HIDDEN_EDGE, LineClass.HIDDEN_OUTLINE):
+        treat[candidates.line_class == number_of(line_class)] = HIDDEN
+    return treat
