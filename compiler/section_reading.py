@@ -12,7 +12,7 @@ from .expressions import evaluate
 from .graph import Point, Thing
 from .mistakes import Problems, mistake
 from .paths import Placed, follow
-from .placement import AXES, direction, positive_length
+from .placement import AXES, direction, point, positive_length
 from .readings import expression, listed, optional
 from .scope import Scope
 from .sections import Cut, Plane
@@ -98,12 +98,11 @@ class _Reader:
         return (along[0] * value.value, along[1] * value.value, along[2] * value.value)
 
     def _point(self, written: tree.Expression) -> Point:
-        if isinstance(written, tree.Path) and self.scope.find(written.steps[0].name) is None:
-            value = self._below(written)
-        else:
-            value = evaluate(written, self.scope)
-        if not (isinstance(value, Vector) and len(value.components) == 3 and value.dimension == LENGTH):
-            raise mistake("wrong-kind", written.span, "expected a point or a mark", "such as `(0, 0, 5 mm)`")
+        if not isinstance(written, tree.Path) or self.scope.find(written.steps[0].name) is not None:
+            return point(written, self.scope)
+        value = self._below(written)
+        if not (isinstance(value, Vector) and value.dimension == LENGTH):
+            raise mistake("wrong-kind", written.span, f"`{written.dotted}` is no point", "name a mark or a feature")
         x, y, z = value.components
         return (x, y, z)
 
