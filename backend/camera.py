@@ -16,11 +16,13 @@ from numpy.typing import ArrayLike
 from .contract import F64, Projection
 
 Vector = tuple[float, float, float]
+Drawn = tuple[float, float]
 Side = Literal["front", "rear", "left", "right", "top", "bottom"]
 
 TRUE_ISOMETRIC_ELEVATION = float(np.degrees(atan(1.0 / sqrt(2.0))))
 ISOMETRIC_FORESHORTENING = sqrt(2.0 / 3.0)
 _VERTICAL = 1e-9
+_SQUARE = 1e-12  # singular values this near to each other, relatively, make a projection square to its picture plane
 
 # Sight and up. The bottom view keeps +x to the right, as the third-angle arrangement (ISO 5456-2) asks when it
 # stands below the front view; its up is then -y, the front of the object at the top.
@@ -80,6 +82,66 @@ def direction(azimuth: float, elevation: float) -> Axes:
     """Return the view from a bearing, degrees: azimuth 0 is the front, 90 the right; elevation above the horizon."""
     a, e = radians(azimuth), radians(elevation)
     return axes((-sin(a) * cos(e), cos(a) * cos(e), -sin(e)))
+
+
+def drawn_axes(x: Drawn, y: Drawn, z: Drawn, origin: tuple[float, float] = (0.0, 0.0)) -> Projection:
+    """Parallel projection by where units along the world axes are drawn: mm on paper to the right and up.
+
+    Whether it is square to the picture plane or oblique follows from the six numbers (Pohlke's theorem): projectors run
+    along the direction that is drawn as a point. Two planes are drawn in their true shape, at the lesser of the map's
+    singular values; the picture plane is the one more nearly square to y.
+    Depth is 0 at the world's origin, which lands on page point `origin` (mm), and is measured along the projectors.
+    `scale` is 1. Raises ValueError where the axes are drawn along one line, or mirrored.
+    """
+    across, upward = np.array((x[0], y[0], z[0])), np.array((x[1], y[1], z[1]))
+    sight = -_unit(np.cross(across, upward))
+    matrix = np.zeros((4, 4))
+    matrix[0, :3], matrix[1, :3], matrix[3, 3] = across, -upward, 1.0
+    matrix[0, 3], matrix[1, 3] = origin
+    plane = _picture_plane(across, upward, sight)
+    normal = np.array(plane.sight)
+    matrix[2, :3] = normal / float(normal @ sight)
+    return Projection("parallel", matrix, None, _vector(sight), plane.right, plane.up, 1.0)
+
+
+def _picture_plane(across: F64, upward: F64, sight: F64) -> Axes:
+    """Axes of the plane that a map with these rows draws in its true shape, and its normal away from the viewer.
+
+    With the map's singular values s1 >= s2, vectors v1, v2 and the null direction n, that plane holds v2 and a unit
+    vector of the span of v1 and n whose part along v1 is s2/s1.
+    """
+    right, up = across, upward
+    a, d, mixed = float(across @ across), float(upward @ upward), float(across @ upward)
+    lesser = (a + d) / 2 - sqrt(((a - d) / 2) ** 2 + mixed * mixed)
+    greater = (a + d) / 2 + sqrt(((a - d) / 2) ** 2 + mixed * mixed)
+    if greater - lesser <= _SQUARE * greater:
+        return axes(sight, upward)
+    turn = 0.5 * float(np.arctan2(2 * mixed, a - d))
+    first, second = cos(turn) * right + sin(turn) * up, -sin(turn) * right + cos(turn) * up
+    long, short = _unit(first), _unit(second)
+    share = sqrt(lesser / greater)
+    planes = []
+    for side in (1.0, -1.0):
+        leaning = share * long + side * sqrt(1.0 - share * share) * sight
+        right, up = cos(turn) * leaning - sin(turn) * short, sin(turn) * leaning + cos(turn) * short
+        planes.append((abs(float(np.cross(right, up)[1])), right, up))
+    _, right, up = max(planes, key=lambda each: each[0])
+    return Axes(_vector(right), _vector(up), _vector(-np.cross(right, up)))
+
+
+def oblique(plane: Axes, depth: Drawn) -> Projection:
+    """Oblique projection onto a picture plane that is drawn undistorted (ISO 5456-3: cavalier, cabinet, planometric).
+
+    `depth` is where a unit away from the viewer is drawn, mm to the right and up at scale 1. Depth is measured along
+    the projectors, 0 in the plane through the world's origin, which lands on page point (0, 0).
+    """
+    right, up, away = (np.array(each) for each in (plane.right, plane.up, plane.sight))
+    sight = _unit(away - depth[0] * right - depth[1] * up)
+    matrix = np.zeros((4, 4))
+    matrix[0, :3], matrix[1, :3] = right + depth[0] * away, -(up + depth[1] * away)
+    matrix[2, :3] = away / float(away @ sight)
+    matrix[3, 3] = 1.0
+    return Projection("parallel", matrix, None, _vector(sight), plane.right, plane.up, 1.0)
 
 
 def foreshortening(view: Axes) -> Vector:

@@ -17,10 +17,11 @@ from .mistakes import Problems
 from .modules import THINGS, Declaration, Module, Modules
 from .parameters import Setting, module_scope, outermost
 from .project import Files
+from .projections import Viewpoint
 from .readings import parameters
 from .records import Tables
 from .scope import Scope
-from .viewpoints import Viewpoint, read_viewpoint
+from .viewpoints import read_viewpoint
 
 _Read = TypeVar("_Read")
 

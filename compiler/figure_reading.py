@@ -19,13 +19,13 @@ from .lightings import DEFAULT, Sources
 from .mistakes import Mistake, Problems, confined, mistake
 from .modules import find_kind
 from .placement import positive_length
+from .projections import Viewpoint, standard, standard_names
 from .readings import LATER, expression, optional, word
 from .scope import Scope, did_you_mean
 from .section_reading import read_cuts
 from .specs import Spec
 from .subjects import find_subject
 from .values import Proportion, kind_of
-from .viewpoints import STANDARD_SIDES, Viewpoint, standard
 
 FILE_KINDS: tuple[FileKind, ...] = get_args(FileKind)
 
@@ -117,7 +117,7 @@ class _Reading:
             if path.dotted in module.broken:
                 raise Mistake(None)
             declared = (name for name, each in module.names.items() if each.kind == "viewpoint")
-            near = nearest(path.dotted, [*declared, *STANDARD_SIDES, "isometric"])
+            near = nearest(path.dotted, [*declared, *standard_names()])
             hint = did_you_mean(near) or "declare it with `viewpoint`, or take front, top, isometric …"
             raise mistake("unknown-name", path.span, f"there is no viewpoint `{path.dotted}`", hint)
         here, declaration = find_kind(self.model.modules, module, path, ("viewpoint",))

@@ -22,10 +22,10 @@ from .frames import RESOLUTION_DPI, Frame, content, frame_of, held_frame
 from .layout import Box
 from .lightings import lights_for
 from .mistakes import Mistake, Problems, confined, mistake
+from .projections import Central, Parallel, unit_projection
 from .sections import Opening, away_of, cutter_of, facing, letter_of, trace_of
 from .solids.ladder import COARSEST, first_at_most
 from .specs import Spec
-from .viewpoints import Central, Parallel, unit_projection
 from .views import View, cuts_of, views_of
 
 ERROR_ON_PAPER_MM = 0.02
@@ -130,7 +130,7 @@ class _Planner:
         if not np.isfinite(low[0]):
             raise mistake("nothing-in-view", self.spec.span, "the subject lies behind the eye")
         if isinstance(viewpoint, Central):
-            is_held = viewpoint.angle is not None or viewpoint.lens is not None or isinstance(self.spec.scale, float)
+            is_held = viewpoint.is_held or isinstance(self.spec.scale, float)
             if not is_ahead and not is_held:
                 sentence = "part of the subject lies behind the eye, so it cannot be fitted"
                 raise mistake("nothing-in-view", self.spec.span, sentence, "move the eye off, or state a `lens`")
@@ -155,7 +155,7 @@ class _Planner:
         magnification, viewpoint = frame.scale * camera.magnification(shot.unit), shot.view.viewpoint
         if isinstance(viewpoint, Central):
             _, depth = camera.to_page(shot.unit, points)
-            distance = float(np.linalg.norm(np.subtract(viewpoint.toward, viewpoint.eye)))
+            distance = viewpoint.distance
             # Points nearer than a twentieth of the way to the target do not drive the chord error: it would grow
             # without bound.
             nearest_mm = max(float((-1.0 / depth[np.isfinite(depth)]).min()), distance / 20)

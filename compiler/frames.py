@@ -12,8 +12,8 @@ from platewright.backend.contract import F64, Projection
 from . import layout, limits
 from .layout import Box, Spot
 from .mistakes import mistake
+from .projections import Central
 from .specs import Spec
-from .viewpoints import Central
 
 WIDTH_MM, RESOLUTION_DPI = 84.0, 600.0
 
@@ -117,23 +117,24 @@ def held_frame(spec: Spec, viewpoint: Central, box: Box) -> Frame | None:
     `box` is that of the content at a scale of 1 in the plane through the target. The eye's axis meets the middle of
     the page. Raises Mistake where a scale is stated as well.
     """
-    if viewpoint.angle is None and viewpoint.lens is None and not isinstance(spec.scale, float):
+    if not viewpoint.is_held and not isinstance(spec.scale, float):
         return None
     width = spec.width if spec.width is not None else WIDTH_MM
-    distance = float(np.linalg.norm(np.subtract(viewpoint.toward, viewpoint.eye)))
+    distance = viewpoint.distance
     scale = _held_distance(spec, viewpoint, width, distance) / distance
     room = spec.height if spec.height is not None else spec.at_most
     tall = (box.high[1] - box.low[1]) * scale + 2 * spec.margin
     height = spec.height if spec.height is not None else min(tall, room if room is not None else np.inf)
     _check_page(spec, width, height)
     height = max(float(height), LEAST_MM)
-    across = 0.0 if spec.height is not None else scale * (box.low[1] + box.high[1]) / 2
-    return Frame(width, height, scale, (Spot((width / 2, height / 2 - across), (0.0, 0.0, width, height)),))
+    aside, upward = (each * width / viewpoint.film for each in viewpoint.shift)
+    down = upward if spec.height is not None else -scale * (box.low[1] + box.high[1]) / 2
+    return Frame(width, height, scale, (Spot((width / 2 - aside, height / 2 + down), (0.0, 0.0, width, height)),))
 
 
 def _held_distance(spec: Spec, viewpoint: Central, width: float, distance: float) -> float:
     """The principal distance on paper that a lens, an angle of view or a scale fixes. Raises Mistake if two do."""
-    if spec.scale is not None and (viewpoint.angle is not None or viewpoint.lens is not None):
+    if spec.scale is not None and viewpoint.is_held:
         sentence = "the viewpoint's field of view fixes the size already; a `scale` cannot hold as well"
         raise mistake("said-twice", spec.span, sentence, "leave out the `scale`, or the `lens` or `angle of view`")
     if viewpoint.angle is not None:

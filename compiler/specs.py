@@ -10,8 +10,8 @@ from platewright.lang.source import Span
 
 from .graph import Thing
 from .lightings import Sources
+from .projections import Viewpoint
 from .sections import Cut
-from .viewpoints import Viewpoint
 
 MARGIN_MM = 2.0
 

@@ -6,9 +6,9 @@ from msgspec import Struct
 from msgspec.structs import replace
 
 from .mistakes import mistake
+from .projections import Viewpoint, unit_projection
 from .sections import EDGE_ON, Cut, facing, letter_of
 from .specs import Spec
-from .viewpoints import Viewpoint, unit_projection
 
 Point = tuple[float, float, float]
 
