@@ -7,7 +7,8 @@ import numpy as np
 from ..contract import F64, I32, U8, LineClass
 from .clip import HIDDEN, NORMAL, PLAIN, cut_segments
 from .model import Bools, Candidates, Pieces, View, number_of
-from .occluders import Occluders, occluders_of
+from .occluders import Occluders as Occluders
+from .occluders import occluders_of
 from .view import in_blocks
 
 _BLOCK = 512
