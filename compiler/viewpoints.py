@@ -67,7 +67,11 @@ def _axonometric(reading: tree.Reading, scope: Scope) -> Viewpoint | None:
         case "isometric from":
             return projections.isometric(corner)
         case "dimetric from":
-            return projections.exact_dimetric(corner) if word(reading, "angles") else projections.dimetric(corner)
+            return (
+                projections.exact_dimetric(corner)
+                if word(reading, "angles") == "exact"
+                else projections.dimetric(corner)
+            )
         case "trimetric from":
             turned = _acute(reading, "turned", scope, projections.TURNED_DEG)
             return projections.trimetric(corner, turned, _acute(reading, "raised", scope, projections.RAISED_DEG))
@@ -75,7 +79,7 @@ def _axonometric(reading: tree.Reading, scope: Scope) -> Viewpoint | None:
             length = 1.0 if reading.word == "cavalier from" else 0.5
             return projections.cavalier(corner, _acute(reading, "angle", scope, projections.RECEDING_DEG), length)
         case "planometric from":
-            height = projections.SHORTENED if word(reading, "heights") else 1.0
+            height = projections.SHORTENED if word(reading, "heights") == "shortened" else 1.0
             return projections.planometric(corner, _acute(reading, "turned", scope, projections.PLAN_DEG), height)
     return None
 

@@ -134,7 +134,7 @@ VIEWPOINT_ROWS: tuple[Row, ...] = (
     ),
     Row(
         "dimetric from",
-        f"dimetric {_THREE_SIDES} [<angles:exact>]",
+        f"dimetric {_THREE_SIDES} [<angles:exact|conventional>]",
         ("viewpoint",),
         "axes at 7 and 42 deg, the second halved, by convention; `exact` is square to the picture plane",
         "dimetric from front right above",
@@ -166,7 +166,7 @@ VIEWPOINT_ROWS: tuple[Row, ...] = (
     ),
     Row(
         "planometric from",
-        f"planometric {_THREE_SIDES} [turned <turned:angle>] [heights <heights:shortened>]",
+        f"planometric {_THREE_SIDES} [turned <turned:angle>] [heights <heights:full|shortened>]",
         ("viewpoint",),
         "oblique, the plan undistorted and turned by 45 deg or as stated; heights in full or by two thirds",
         "planometric from front right above turned 30 deg",

@@ -63,7 +63,10 @@ EVERYDAY_SHAPES: Mapping[str, str] = MappingProxyType(
     }
 )
 
-STANDARD_VIEWPOINTS: tuple[str, ...] = ("front", "rear", "left", "right", "top", "bottom", "isometric")
+STANDARD_VIEWPOINTS: tuple[str, ...] = (
+    *("front", "rear", "left", "right", "top", "bottom"),
+    *("isometric", "dimetric", "trimetric", "cavalier", "cabinet", "planometric"),
+)
 
 # What a slot of each kind takes, for messages and the reference.
 KINDS: Mapping[str, str] = MappingProxyType(
