@@ -17,7 +17,7 @@ from ..contract import F32, F64, I32, U8, EdgeKind, LineClass, PatchKind
 from .chaining import walked
 from .compiled import kernel
 from .model import Candidates, View
-from .segments import along_sight, candidates, dot, length, none, to_view
+from .segments import along_sight, candidates, dot, fixed, length, none, shifts, to_view
 from .tangency import Touched, bends_away, chord_crossing, lifted, turning
 
 CHORD_MM = 0.004
@@ -79,7 +79,7 @@ def contours_of(view: View) -> Candidates:
     if not len(kept):
         return none()
     turns, ends = turns.take(kept), ends[kept]
-    order, turned, chain = walked(ends, len(crossings.low))
+    order, turned, chain = walked(fixed(ends), len(crossings.low))
     turns, ends = turns.take(order), ends[order]
     ends = np.where(turned[:, None], ends[:, ::-1], ends)
     return _drawn(view, turns, crossings, ends, chain)
@@ -94,7 +94,8 @@ def _turns(view: View) -> _Turns:
     sight = np.array(view.projection.sight if view.projection.eye is None else view.projection.eye)
     is_central = view.projection.eye is not None
     faces = np.empty(len(view.faces), np.int32)
-    n = _near_turn(view.faces, view.world, view.corner_normals, view.face_patch, patches.kind, sight, is_central, faces)
+    arrays = view.faces, view.world, view.corner_normals, view.face_patch, patches.kind, sight
+    n = _near_turn(*map(fixed, arrays), is_central, faces)
     faces = faces[:n].copy()
     corner = view.faces[faces]
     touched = _touched(view, faces)
@@ -151,7 +152,7 @@ def _interpolated(view: View, faces: I32) -> F64:
 def _touched(view: View, faces: I32) -> Touched:
     """The patches of faces, where displaced parts have them. FREE where it cannot be told where that is."""
     patches, rows = view.geometry.patches, view.face_patch[faces]
-    shift, is_known = _shifts(view, faces)
+    shift, is_known = shifts(view, faces)
     size = patches.size[rows].copy()
     is_cone = patches.kind[rows] == PatchKind.CONE
     size[is_cone, 0] = np.tan(np.radians(size[is_cone, 0]))
@@ -168,20 +169,6 @@ def _touched(view: View, faces: I32) -> Touched:
         sight,
         eye is not None,
     )
-
-
-def _shifts(view: View, faces: I32) -> tuple[F64, NDArray[np.bool_]]:
-    """How far the node of each face is displaced (k,3), read off its first face that the near plane left whole."""
-    geometry = view.geometry
-    moved = view.world[view.faces[faces]] - geometry.vertices[geometry.faces[view.face_row[faces]]]
-    spread = np.abs(moved - moved[:, :1]).max(axis=(1, 2))
-    size = np.abs(view.world[view.faces[faces]]).max(axis=(1, 2))
-    whole = np.flatnonzero(spread <= 1e-12 * (size + np.abs(moved).max(axis=(1, 2))))
-    nodes, first = np.unique(view.face_node[faces[whole]], return_index=True)
-    shift, is_known = np.zeros((len(geometry.nodes), 3)), np.zeros(len(geometry.nodes), np.bool_)
-    shift[nodes], is_known[nodes] = moved[whole[first], 0], True
-    node = view.face_node[faces]
-    return shift[node], is_known[node]
 
 
 # --- pieces and the points between them

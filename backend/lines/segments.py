@@ -2,11 +2,22 @@
 
 from __future__ import annotations
 
-import numpy as np
-from numpy.typing import ArrayLike
+from typing import TypeVar
 
-from ..contract import F64, LineClass, Projection
-from .model import Candidates, View, number_of
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from ..contract import F64, I32, LineClass, Projection
+from .model import Bools, Candidates, View, number_of
+
+_T = TypeVar("_T", bound=np.generic)
+
+
+def fixed(array: NDArray[_T]) -> NDArray[_T]:
+    """The same array, contiguous and read-only: kernels are compiled once, whoever made their arguments."""
+    result = np.ascontiguousarray(array).view()
+    result.flags.writeable = False
+    return result
 
 
 def to_view(projection: Projection, world: F64) -> F64:
@@ -87,3 +98,19 @@ def none() -> Candidates:
 def placed(view: View, start: F64, end: F64, line_class: LineClass, **columns: ArrayLike) -> Candidates:
     """Candidates from world points (s,3); columns as in `candidates`."""
     return candidates(to_view(view.projection, start), to_view(view.projection, end), line_class, **columns)
+
+
+def shifts(view: View, faces: I32) -> tuple[F64, Bools]:
+    """How far the node of each face is displaced (k,3) mm, and whether that is known (k,).
+
+    Read off the first of these faces of the node that the near plane left whole.
+    """
+    geometry = view.geometry
+    moved = view.world[view.faces[faces]] - geometry.vertices[geometry.faces[view.face_row[faces]]]
+    size = np.abs(view.world[view.faces[faces]]).max(axis=(1, 2)) + np.abs(moved).max(axis=(1, 2))
+    whole = np.flatnonzero(np.abs(moved - moved[:, :1]).max(axis=(1, 2)) <= 1e-12 * size)
+    nodes, first = np.unique(view.face_node[faces[whole]], return_index=True)
+    shift, is_known = np.zeros((len(geometry.nodes), 3)), np.zeros(len(geometry.nodes), np.bool_)
+    shift[nodes], is_known[nodes] = moved[whole[first], 0], True
+    node = view.face_node[faces]
+    return shift[node], is_known[node]

@@ -1,0 +1,126 @@
+"""Where parts lie flush, and the crossings of their triangles are no lines."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ..contract import F64, I32, PatchKind
+from .model import Bools, View
+from .segments import dot, length, shifts
+
+_SAME = 1e-9
+"""Two surfaces within this angle and this part of their size are one."""
+_SAGITTA = 0.25
+"""Of a chord's square over the radius, twice the most that two chord polygons of one circle stand apart."""
+
+
+def is_flush(view: View, faces: I32, points: F64, near: float) -> Bools:
+    """Whether segments (k,2,3), in which faces (k,2) of two parts cross, are no lines of penetration.
+
+    They are none on surfaces that are offsets of each other, such as a pin and its hole: only their facets cross. Nor
+    where patches p and r cross and the part of r ends r at a patch on the very surface of p, as where a pin leaves its
+    hole: that edge is drawn as an edge, once. Cost: some patches of both parts for each pair of patches that cross.
+    """
+    result = np.zeros(len(faces), np.bool_)
+    sides = view.face_patch[faces].astype(np.int64)
+    shift, _ = shifts(view, faces.ravel())
+    shift = shift.reshape(-1, 2, 3)
+    _, of_pair = np.unique(sides[:, 0] * len(view.geometry.patches.kind) + sides[:, 1], return_inverse=True)
+    order = np.argsort(of_pair, kind="stable")
+    for rows in np.split(order, np.flatnonzero(np.diff(of_pair[order])) + 1):
+        first, middle = int(rows[0]), points[rows].mean(axis=1)
+        for own, other in ((0, 1), (1, 0)):
+            p, r = int(sides[first, own]), int(sides[first, other])
+            some = _patches_of(view, int(view.face_node[faces[first, other]]))
+            gap = _gap(view, p, some, shift[first, other] - shift[first, own])
+            result[rows] |= bool(_is_offset(view, p, some, gap, near)[some == r].any())
+            for q in some[_is_same(view, p, some, gap, near)]:
+                result[rows] |= _is_along(view, r, int(q), middle, _slack(view, p), near)
+    return result
+
+
+def _patches_of(view: View, node: int) -> I32:
+    start, mesh = int(view.geometry.patch_start[node]), view.geometry.nodes[node].mesh
+    return np.arange(start, start + len(view.geometry.meshes[mesh].patches.kind), dtype=np.int32)
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class _Gap:
+    """From a patch to others: along its axis, beside it, in all (k,) mm; whether they are of one kind and parallel."""
+
+    along: F64
+    beside: F64
+    far: F64
+    is_alike: Bools
+
+
+def _gap(view: View, patch: int, some: I32, shift: F64) -> _Gap:
+    patches = view.geometry.patches
+    frame, own = patches.frame[some], patches.frame[patch]
+    origin = frame[:, 0] + shift - own[0]
+    along = dot(origin, own[3])
+    kind = patches.kind[patch]
+    is_parallel = 1.0 - np.abs(dot(frame[:, 3], own[3])) <= _SAME
+    is_alike = (patches.kind[some] == kind) & (kind != PatchKind.FREE) & (is_parallel | (kind == PatchKind.SPHERE))
+    return _Gap(along, length(origin - along[:, None] * own[3]), length(origin), is_alike)
+
+
+def _close(view: View, patch: int, gap: _Gap, near: float) -> F64:
+    return np.asarray(near + _SAME * (gap.far + view.geometry.patches.size[patch, 0]))
+
+
+def _is_offset(view: View, patch: int, some: I32, gap: _Gap, near: float) -> Bools:
+    """Parallel planes, coaxial cylinders, concentric spheres, cones of one angle round one axis, tori of one circle."""
+    patches, close = view.geometry.patches, _close(view, patch, gap, near)
+    kind = patches.kind[patch]
+    is_first_size = np.abs(patches.size[some, 0] - patches.size[patch, 0]) <= close
+    is_turned = dot(patches.frame[some, 3], patches.frame[patch, 3]) < 0.0
+    if kind == PatchKind.PLANE:
+        return gap.is_alike
+    if kind == PatchKind.CYLINDER:
+        return gap.is_alike & (gap.beside <= close)
+    if kind == PatchKind.CONE:
+        return gap.is_alike & (gap.beside <= close) & is_first_size & ~is_turned
+    is_placed = gap.is_alike & (gap.far <= close)
+    return is_placed if kind == PatchKind.SPHERE else is_placed & is_first_size
+
+
+def _is_same(view: View, patch: int, some: I32, gap: _Gap, near: float) -> Bools:
+    """Patches on the very surface of another, whichever side of it is solid."""
+    patches, close = view.geometry.patches, _close(view, patch, gap, near)
+    kind = patches.kind[patch]
+    is_sized = np.abs(patches.size[some] - patches.size[patch]).max(axis=1) <= close
+    is_level = np.abs(gap.along) <= close if kind in (PatchKind.PLANE, PatchKind.CONE) else True
+    return np.asarray(_is_offset(view, patch, some, gap, near) & is_sized & is_level)
+
+
+def _slack(view: View, patch: int) -> float:
+    """Share of a chord's square by which chords may leave a patch: `_SAGITTA` over its radius."""
+    size = view.geometry.patches.size[patch]
+    kind = view.geometry.patches.kind[patch]
+    if kind in (PatchKind.PLANE, PatchKind.CONE):
+        return 0.0 if kind == PatchKind.PLANE else _SAGITTA
+    return _SAGITTA / float(size[1] if kind == PatchKind.TORUS else size[0])
+
+
+def _is_along(view: View, patch: int, other: int, middle: F64, slack: float, near: float) -> Bools:
+    """Whether points (k,3) lie on sides that two patches share, within what chords leave."""
+    edges = _shared_sides(view, patch, other)
+    if not len(edges):
+        return np.zeros(len(middle), np.bool_)
+    start, along = view.world[edges[:, 0]], view.world[edges[:, 1]] - view.world[edges[:, 0]]
+    square = dot(along, along)
+    away = middle[:, None] - start
+    share = np.clip(dot(away, along[None]) / np.where(square > 0.0, square, 1.0), 0.0, 1.0)
+    off = length(away - share[:, :, None] * along)
+    return np.asarray((off <= 4.0 * near + slack * square).any(axis=1))
+
+
+def _shared_sides(view: View, patch: int, other: int) -> I32:
+    """Sides (k,2) of triangles of one patch whose two ends are corners of the other as well."""
+    own = view.faces[view.face_patch == patch]
+    corners = np.unique(view.faces[view.face_patch == other])
+    sides = np.concatenate([own[:, [k, (k + 1) % 3]] for k in range(3)])
+    return sides[np.isin(sides, corners).all(axis=1)]
