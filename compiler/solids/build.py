@@ -10,6 +10,7 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
+from typing import NamedTuple
 
 import manifold3d
 import numpy as np
@@ -18,18 +19,19 @@ from numpy.typing import NDArray
 from platewright.backend.contract import Mesh
 
 from . import transform
+from .blank import Blank, Blanks, blank, imported
 from .finish import finish
 from .flaw import Flaw, SolidError
 from .ladder import MAX_COPIES, MAX_DEPTH, MAX_TRIANGLES
-from .levels import Levels, axis_planes
+from .levels import Levels
+from .provenance import Leaf, stand_apart, traced
 from .recipe import Affine, Placed, Primitive, Recipe
 from .shell import Shell
-from .surfaces import Surfaces, concatenate, place, placed_normals
-from .tessellate import count_triangles, problems_of, rise, tessellate
-from .topology import SPECK, in_use, without_specks
+from .surfaces import place, placed_normals
+from .tessellate import count_triangles, problems_of, rise
+from .topology import SPECK
 
 F64 = NDArray[np.float64]
-I64 = NDArray[np.int64]
 
 BUILD_VERSION = 1
 """Part of every mesh's key; changes when the same recipe gives other triangles."""
@@ -38,28 +40,39 @@ VOLUME_SLACK = 1e-9
 
 
 def build(recipe: Recipe, rung: float) -> tuple[Mesh | None, tuple[Flaw, ...]]:
-    """Build one part at a chord error of `rung` mm, in the part's frame.
+    """Build one part at a chord error of `rung` mm, in the part's frame: `combine`, finished.
 
     Returns None with at least one error among the flaws, or a mesh with warnings at most. Flaws: `too-large`,
     `nothing-to-cut`, `empty-part`, `several-pieces` (warning), `boolean-failed`, and those of outlines
     (`no-area`, `outline-crosses-itself`, `hole-outside`, `negative-radius`) and `torus-meets-itself`.
     SolidError means that the recipe should have been refused before. The same recipe and rung give the same bytes.
     """
+    mesh, flaws = combine(recipe, rung, blank)
+    return None if mesh is None else mesh(), flaws
+
+
+def combine(recipe: Recipe, rung: float, blanks: Blanks) -> tuple[Callable[[], Mesh] | None, tuple[Flaw, ...]]:
+    """All of `build` but for the mesh, which is worked out when it is called for. Flaws and bytes are those of `build`,
+    whatever keeps the `blanks` that are asked for.
+    """
     flaws = _before(recipe, rung)
     if flaws:
         return None, flaws
     only = _only_shape(recipe)
     if only is not None:
-        return _from_shell(key_of(recipe, rung), only, rung), ()
-    workshop = _Workshop(rung)
-    whole = workshop.make(recipe, 1.0)
-    surfaces = [] if whole.manifold.is_empty() else whole.manifold.decompose()
-    pieces = [piece for piece in surfaces if not _is_speck(piece, whole.manifold)]
-    flaws = (*workshop.flaws, *_after(whole, pieces, recipe))
+        placed, alone = only
+        shell = blanks(alone, rung / transform.largest_scale(placed.placements[0])).shell
+        return lambda: _from_shell(key_of(recipe, rung), placed, shell), ()
+    workshop = _Workshop(rung, blanks)
+    whole = workshop.make(recipe, 1.0, is_outermost=True)
+    surfaces = [] if whole.manifold.is_empty() else [_Piece.of(each) for each in whole.manifold.decompose()]
+    speck = SPECK * _size(whole.manifold)
+    pieces = [each for each in surfaces if not abs(each.volume) <= speck * each.area]
+    flaws = (*workshop.flaws, *_after(whole, pieces, len(surfaces) == 1, recipe))
     if any(flaw.is_error for flaw in flaws):
         return None, flaws
     has_specks = len(pieces) < len(surfaces)
-    return _from_manifold(key_of(recipe, rung), whole.manifold, workshop.leaves, has_specks), flaws
+    return lambda: traced(key_of(recipe, rung), whole.manifold, workshop.leaves, has_specks), flaws
 
 
 def key_of(recipe: Recipe, rung: float) -> str:
@@ -67,13 +80,15 @@ def key_of(recipe: Recipe, rung: float) -> str:
     return hashlib.sha256(f"{BUILD_VERSION} {rung!r} {recipe!r}".encode()).hexdigest()
 
 
-@dataclass(frozen=True, eq=False, slots=True)
-class _Leaf:
-    """An original of the boolean kernel: run `number` is a placed copy of it."""
+class _Piece(NamedTuple):
+    """A connected surface of a solid: the volume that it encloses, negative for a cavity, and its area."""
 
-    number: int
-    source: int
-    shell: Shell
+    volume: float
+    area: float
+
+    @classmethod
+    def of(cls, solid: Manifold) -> _Piece:
+        return cls(solid.volume(), solid.surface_area())
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -115,23 +130,26 @@ class _Group:
 
 @dataclass(slots=True)
 class _Workshop:
-    """One evaluation: shells by shape and scale, bodies by recipe and scale, leaves in the order made."""
+    """One evaluation: blanks by shape and scale, bodies by recipe and scale, leaves in the order made."""
 
     rung: float
-    leaves: list[_Leaf] = field(default_factory=list)
+    blanks: Blanks
+    leaves: list[Leaf] = field(default_factory=list)
     flaws: list[Flaw] = field(default_factory=list)
-    _shells: dict[tuple[Primitive, float], tuple[Shell, float]] = field(default_factory=dict)
+    _blanks: dict[tuple[Primitive, float], Blank] = field(default_factory=dict)
+    _sharing: dict[int, list[Leaf]] = field(default_factory=dict)
     _bodies: dict[tuple[int, float], _Body] = field(default_factory=dict)
 
-    def make(self, recipe: Recipe, grown: float) -> _Body:
+    def make(self, recipe: Recipe, grown: float, *, is_outermost: bool = False) -> _Body:
         """The solid of a recipe that will be scaled by `grown` at most when it reaches the part."""
         if (id(recipe), grown) not in self._bodies:
-            self._bodies[id(recipe), grown] = self._made(recipe, grown)
+            self._bodies[id(recipe), grown] = self._made(recipe, grown, is_outermost)
         return self._bodies[id(recipe), grown]
 
-    def _made(self, recipe: Recipe, grown: float) -> _Body:
+    def _made(self, recipe: Recipe, grown: float, is_outermost: bool) -> _Body:
         steps = [
-            (s.operation, [group for placed in s.placed for group in self._groups(placed, grown)]) for s in recipe.steps
+            (step.operation, [group for placed in step.placed for group in self._groups(placed, grown, is_outermost)])
+            for step in recipe.steps
         ]
         levels = Levels([(group.body.planes, group.placements) for _, groups in steps for group in groups])
         box = _common_box([group.box() for _, groups in steps for group in groups])
@@ -168,17 +186,18 @@ class _Workshop:
             )
         return best
 
-    def _groups(self, placed: Placed, grown: float) -> Iterator[_Group]:
+    def _groups(self, placed: Placed, grown: float, is_outermost: bool) -> Iterator[_Group]:
         """The shape at its placements, one group for each scale: what grows needs a finer division."""
         if not placed.placements:
             return
         lift = -rise(placed.shape) / 2 if placed.centred and not isinstance(placed.shape, Recipe) else 0.0
         placements = settled(placed.placements, lift)
         scales = transform.largest_scales(placements)
-        for scale in np.unique(scales):
-            yield _Group(self._body(placed, grown * float(scale)), placements[scales == scale])
+        for scale in sorted(set(scales.tolist())):
+            some = placements[scales == scale]
+            yield _Group(self._body(placed, some, grown * scale, is_outermost), some)
 
-    def _body(self, placed: Placed, grown: float) -> _Body:
+    def _body(self, placed: Placed, placements: F64, grown: float, is_outermost: bool) -> _Body:
         shape = placed.shape
         if isinstance(shape, Recipe):
             body = self.make(shape, grown)
@@ -186,14 +205,28 @@ class _Workshop:
                 sentence = "nothing is left of the part that is used here"
                 self.flaws.append(Flaw("empty-part", placed.source, sentence, "look at its cuts"))
             return body
-        if (shape, grown) not in self._shells:
-            shell = tessellate(shape, self.rung / grown)
-            self._shells[shape, grown] = shell, _volume(shell)
-        shell, volume = self._shells[shape, grown]
-        number = Manifold.reserve_ids(1)
-        self.leaves.append(_Leaf(number, placed.source, shell))
-        box = np.array((shell.vertices.min(axis=0), shell.vertices.max(axis=0)))
-        return _Body(_import(shell, number), axis_planes(shell.surfaces), (volume, volume), box)
+        if (shape, grown) not in self._blanks:
+            self._blanks[shape, grown] = self.blanks(shape, self.rung / grown)
+        made = self._blanks[shape, grown]
+        solid = self._solid(made, placed.source, placements, is_outermost)
+        return _Body(solid, made.planes, (made.volume, made.volume), made.box)
+
+    def _solid(self, made: Blank, source: int, placements: F64, is_outermost: bool) -> Manifold:
+        """The blank as the kernel has it, noted as a leaf. It is imported again where two lines could not be told
+        apart: by its place a copy is known only in the frame of the whole part, and only if it is not made anew.
+        """
+        solid, number = made.solid
+        leaf = Leaf(number, source, made.shell, placements)
+        may_share = is_outermost and made.shell.normals is None
+        if number not in self._sharing:
+            self._sharing[number] = [leaf] if may_share else []
+        elif may_share and self._sharing[number] and stand_apart(leaf, self._sharing[number]):
+            self._sharing[number].append(leaf)
+        else:
+            number = Manifold.reserve_ids(1)
+            solid, leaf = imported(made.shell, number), Leaf(number, source, made.shell, placements)
+        self.leaves.append(leaf)
+        return solid
 
 
 def settled(placements: Sequence[Affine], lift: float = 0.0) -> F64:
@@ -279,18 +312,18 @@ def _all_placed(recipe: Recipe, seen: set[int]) -> Iterator[Placed]:
                 yield from _all_placed(placed.shape, seen)
 
 
-def _only_shape(recipe: Recipe) -> Placed | None:
+def _only_shape(recipe: Recipe) -> tuple[Placed, Primitive] | None:
     """The one shape that the recipe adds, if that is all it does: no boolean is needed."""
     placed = [placed for step in recipe.steps for placed in step.placed]
-    alone = len(placed) == 1 and len(placed[0].placements) == 1 and not isinstance(placed[0].shape, Recipe)
-    return placed[0] if alone else None
+    if len(placed) != 1 or len(placed[0].placements) != 1 or isinstance(placed[0].shape, Recipe):
+        return None
+    return placed[0], placed[0].shape
 
 
-def _from_shell(key: str, placed: Placed, rung: float) -> Mesh:
+def _from_shell(key: str, placed: Placed, shell: Shell) -> Mesh:
     assert not isinstance(placed.shape, Recipe)
     placement = placed.placements[0]
     lift = -rise(placed.shape) / 2 if placed.centred else 0.0
-    shell = tessellate(placed.shape, rung / transform.largest_scale(placement))
     (array,) = settled((placement,), lift)
     placement = transform.from_matrix(array)
     faces = shell.faces if transform.determinant(placement) > 0.0 else np.ascontiguousarray(shell.faces[:, ::-1])
@@ -301,42 +334,6 @@ def _from_shell(key: str, placed: Placed, rung: float) -> Mesh:
         normals = shell.normals if faces is shell.faces else shell.normals[:, ::-1]
         free = placed_normals(array, normals)
     return finish(key, vertices, faces, shell.face_surface, source, place(shell.surfaces, array), free)
-
-
-def _import(shell: Shell, number: int) -> Manifold:
-    properties, faces, copies = _with_normals(shell)
-    mesh = manifold3d.Mesh64(
-        vert_properties=properties,
-        tri_verts=faces.astype(np.uint64),
-        merge_from_vert=np.flatnonzero(copies != np.arange(len(copies))).astype(np.uint64),
-        merge_to_vert=copies[copies != np.arange(len(copies))].astype(np.uint64),
-        run_index=np.array([0, faces.size], np.uint64),
-        run_original_id=np.array([number], np.uint32),
-        face_id=shell.face_surface.astype(np.uint64),
-    )
-    solid = Manifold(mesh)
-    if solid.status() != manifold3d.Error.NoError:
-        raise SolidError(f"a shell is not closed: {solid.status()}")
-    return solid
-
-
-def _with_normals(shell: Shell) -> tuple[F64, I64, I64]:
-    """Vertices as the kernel takes them (n,3), or (n,6) with normals that it carries over cuts; the faces in them; and
-    for each the first that stands at its place. A vertex where free patches meet stands once for each normal.
-    """
-    if shell.normals is None:
-        return shell.vertices, shell.faces.astype(np.int64), np.arange(len(shell.vertices))
-    corner = shell.faces.astype(np.int64).ravel()
-    normals = np.round(shell.normals.reshape(-1, 3), 12) + 0.0
-    order = np.lexsort((normals[:, 2], normals[:, 1], normals[:, 0], corner))
-    ordered, by_vertex = normals[order], corner[order]
-    is_new = np.ones(len(order), np.bool_)
-    is_new[1:] = (by_vertex[1:] != by_vertex[:-1]) | (ordered[1:] != ordered[:-1]).any(axis=1)
-    faces = np.empty(len(order), np.int64)
-    faces[order] = np.cumsum(is_new) - 1
-    vertex = by_vertex[is_new]
-    first = np.searchsorted(vertex, vertex)
-    return np.concatenate((shell.vertices[vertex], ordered[is_new]), axis=1), faces.reshape(-1, 3), first
 
 
 def _moved(solid: Manifold, placement: F64) -> Manifold:
@@ -386,12 +383,7 @@ def _volume_bounds(low: float, high: float, operation: str, groups: list[_Group]
     return 0.0, min(high, total)
 
 
-def _volume(shell: Shell) -> float:
-    a, b, c = (shell.vertices[shell.faces[:, k]] for k in range(3))
-    return float((a * np.cross(b, c)).sum() / 6.0)
-
-
-def _after(body: _Body, pieces: list[Manifold], recipe: Recipe) -> Iterator[Flaw]:
+def _after(body: _Body, pieces: list[_Piece], is_one: bool, recipe: Recipe) -> Iterator[Flaw]:
     """What can only be said of the finished solid and its connected surfaces."""
     solid = body.manifold
     if solid.status() != manifold3d.Error.NoError:
@@ -402,21 +394,23 @@ def _after(body: _Body, pieces: list[Manifold], recipe: Recipe) -> Iterator[Flaw
         yield _empty(recipe)
         return
     low, high = body.volume
-    volume, slack = solid.volume(), VOLUME_SLACK * high
+    volume, slack = pieces[0].volume if is_one else solid.volume(), VOLUME_SLACK * high
     if not low - slack <= volume <= high + slack:
         found = f"{volume:.6g} mm3 is left, between {low:.6g} and {high:.6g} expected"
         yield Flaw("boolean-failed", -1, f"the shapes could not be combined: {found}", "please report it")
     # A cavity is a surface of its own with a negative volume; only what has a positive one is a piece.
-    n = sum(1 for piece in pieces if piece.volume() > 0.0)
+    n = sum(1 for piece in pieces if piece.volume > 0.0)
     if n > 1:
         hint = "let its shapes overlap, or make a part of each"
         yield Flaw("several-pieces", -1, f"the part falls into {n} pieces", hint, is_error=False)
 
 
-def _is_speck(piece: Manifold, solid: Manifold) -> bool:
-    """Whether a connected surface is what rounding leaves between faces that should have met."""
-    box = np.array(solid.bounding_box()).reshape(2, 3)
-    return bool(abs(piece.volume()) <= SPECK * np.ptp(box, axis=0).max() * piece.surface_area())
+def _size(solid: Manifold) -> float:
+    """The longest side of the box; 0 of nothing."""
+    if solid.is_empty():
+        return 0.0
+    x0, y0, z0, x1, y1, z1 = solid.bounding_box()
+    return float(max(x1 - x0, y1 - y0, z1 - z0))
 
 
 def _empty(recipe: Recipe) -> Flaw:
@@ -426,55 +420,3 @@ def _empty(recipe: Recipe) -> Flaw:
     verb = "cutting" if last.operation == "cut" else "keeping"
     sentence = f"nothing is left of the part after {verb} this"
     return Flaw("empty-part", last.placed[0].source, sentence, "check where it stands and how large it is")
-
-
-def _from_manifold(key: str, solid: Manifold, leaves: list[_Leaf], has_specks: bool) -> Mesh:
-    mesh = solid.to_mesh64()
-    faces, free = np.asarray(mesh.tri_verts).astype(np.int32), None
-    if np.shape(mesh.vert_properties)[1] > 3:
-        free = np.asarray(mesh.vert_properties)[:, 3:6][faces]
-        same = np.arange(len(mesh.vert_properties), dtype=np.int32)
-        same[np.asarray(mesh.merge_from_vert, np.int64)] = np.asarray(mesh.merge_to_vert, np.int32)
-        faces = same[faces]
-    run_index = np.array(mesh.run_index, np.int64) // 3
-    lengths = run_index[1:] - run_index[:-1]
-    numbers = np.array([leaf.number for leaf in leaves], np.int64)
-    originals = np.array(mesh.run_original_id, np.int64)
-    leaf_of_run = np.searchsorted(numbers, originals).clip(max=len(numbers) - 1)
-    # A run without triangles may be that of the box round what is kept.
-    if (lengths[numbers[leaf_of_run] != originals] > 0).any():
-        raise SolidError("a face of no shape of the recipe")
-    sizes = np.array([len(leaf.shell.surfaces) for leaf in leaves], np.int64)
-    first_of_leaf = np.cumsum(sizes) - sizes
-    size_of_run = sizes[leaf_of_run]
-    first_of_run = np.cumsum(size_of_run) - size_of_run
-    # One row of surfaces for every run and every surface of its original.
-    run_of_row = np.repeat(np.arange(len(lengths)), size_of_run)
-    within = np.arange(len(run_of_row)) - first_of_run[run_of_row]
-    local = concatenate([leaf.shell.surfaces for leaf in leaves]).take(first_of_leaf[leaf_of_run[run_of_row]] + within)
-    placements = np.asarray(mesh.run_transform).transpose(0, 2, 1)[run_of_row]
-    placed = place(local, placements)
-    behind = (np.array(mesh.run_flags, np.uint8) & 1).astype(np.bool_)[run_of_row]
-    rows = np.repeat(first_of_run, lengths) + np.array(mesh.face_id, np.int64)
-    sources = np.array([leaf.source for leaf in leaves], np.int32)[leaf_of_run]
-    vertices = np.ascontiguousarray(mesh.vert_properties[:, :3]) + 0.0
-    if free is not None:
-        vertices, faces = in_use(vertices, faces)
-        run = np.repeat(np.arange(len(lengths)), lengths)
-        turned = np.asarray(mesh.run_transform).transpose(0, 2, 1)[run]
-        side = np.where(np.array(mesh.run_flags, np.uint8) & 1, -1.0, 1.0)[run]
-        free = placed_normals(turned[:, None], free) * side[:, None, None]
-    rows, sources = rows.astype(np.int32), np.repeat(sources, lengths)
-    if has_specks:
-        kept = without_specks(vertices, faces)
-        vertices, faces, rows, sources = *in_use(vertices, faces[kept]), rows[kept], sources[kept]
-        free = None if free is None else free[kept]
-    return finish(
-        key,
-        vertices,
-        faces,
-        rows,
-        sources,
-        Surfaces(placed.kind, placed.affine, placed.ratio, placed.flipped ^ behind),
-        free,
-    )

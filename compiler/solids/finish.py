@@ -8,7 +8,7 @@ from platewright.backend.contract import EdgeKind, FaceOrigin, Mesh, PatchKind
 
 from .flaw import SolidError
 from .surfaces import SAME_SURFACE, Surfaces, describe, normals, plane_normals
-from .topology import paired_sides
+from .topology import first_seen, paired_sides
 
 F64 = NDArray[np.float64]
 I32 = NDArray[np.int32]
@@ -37,8 +37,8 @@ def finish(
     """
     row, surfaces = _in_use(face_surface, surfaces)
     one, other, closed = paired_sides(faces, len(vertices))
-    met = np.flatnonzero(row[one // 3] != row[other // 3])
-    one_met, other_met = one[met], other[met]
+    met = np.flatnonzero(row.take(one // 3) != row.take(other // 3))
+    one_met, other_met = one.take(met), other.take(met)
     row, surfaces = _merge(row, surfaces, one_met // 3, other_met // 3, float(np.abs(vertices).max(initial=0.0)))
     corner = _corner_normals(vertices, faces, row, surfaces)
     free = np.flatnonzero(surfaces.kind[row] == PatchKind.FREE)
@@ -63,6 +63,8 @@ def finish(
 def _in_use(face_surface: I32, surfaces: Surfaces) -> tuple[I32, Surfaces]:
     used = np.zeros(len(surfaces), np.bool_)
     used[face_surface] = True
+    if used.all():
+        return face_surface, surfaces
     number = np.cumsum(used, dtype=np.int32) - np.int32(1)
     return number[face_surface], surfaces.take(np.flatnonzero(used))
 
@@ -71,25 +73,28 @@ def _merge(row: I32, surfaces: Surfaces, face: I64, neighbour: I64, size: float)
     """Join neighbouring patches on one surface; renumber by first triangle."""
     n = len(surfaces)
     one, other = row[face].astype(np.int64), row[neighbour].astype(np.int64)
-    pairs = np.unique(np.minimum(one, other) * n + np.maximum(one, other))
+    pairs = np.sort(np.minimum(one, other) * n + np.maximum(one, other))
+    pairs = pairs[np.flatnonzero(np.diff(pairs, prepend=-1))]
     low, high = pairs // n, pairs % n
-    same = _same(surfaces, low, high, size)
-    root = np.arange(n)
-    for a, b in zip(low[same].tolist(), high[same].tolist(), strict=True):
+    same = np.flatnonzero(_same(surfaces, low, high, size))
+    if len(same):
+        row = _joined(n, low[same], high[same])[row]
+    number, kept = first_seen(row, n)
+    return number.astype(np.int32), surfaces.take(kept)
+
+
+def _joined(n: int, low: I64, high: I64) -> I32:
+    """For each of n the least that it is joined to by pairs (k,) and (k,)."""
+    root = np.arange(n, dtype=np.int32)
+    for a, b in zip(low.tolist(), high.tolist(), strict=True):
         a, b = _root(root, a), _root(root, b)
         root[max(a, b)] = min(a, b)
     for k in range(n):
         root[k] = root[root[k]]
-    row = root[row].astype(np.int32)
-    first = np.full(n, len(row))
-    np.minimum.at(first, row, np.arange(len(row)))
-    kept = np.argsort(first, kind="stable")[: np.count_nonzero(first < len(row))]
-    number = np.empty(n, np.int32)
-    number[kept] = np.arange(len(kept), dtype=np.int32)
-    return number[row], surfaces.take(kept)
+    return root
 
 
-def _root(root: NDArray[np.intp], k: int) -> int:
+def _root(root: I32, k: int) -> int:
     while root[k] != k:
         root[k] = root[root[k]]
         k = int(root[k])
@@ -132,30 +137,30 @@ def _same_curved(
 
 def _corner_normals(vertices: F64, faces: I32, row: I32, surfaces: Surfaces) -> F32:
     """Exact normals (m,3,3). Where a surface has none, the normal at the middle of the triangle, else its own."""
-    flat_rows = surfaces.kind == PatchKind.PLANE
-    flat = flat_rows[row]
-    corner = np.empty((len(faces), 3, 3), np.float32)
-    if flat.any():
-        every = np.zeros((len(surfaces), 3), np.float32)
-        every[flat_rows] = plane_normals(surfaces.take(np.flatnonzero(flat_rows)))
-        corner[:] = every[row][:, None]
-    curved = np.flatnonzero(~flat & (surfaces.kind != PatchKind.FREE)[row])
+    flat = np.flatnonzero(surfaces.kind == PatchKind.PLANE)
+    curved = np.flatnonzero(((surfaces.kind != PatchKind.PLANE) & (surfaces.kind != PatchKind.FREE))[row])
+    # One row for every surface, then one for every vertex: most vertices lie on one curved patch and are worked out
+    # once; those on several, again for each corner.
+    table = np.zeros((len(surfaces) + len(vertices), 3), np.float32)
+    table[flat] = plane_normals(surfaces.take(flat))
+    at = np.repeat(row, 3)
     if not len(curved):
-        return corner
-    # Most vertices lie on one curved patch and are worked out once; those on several, again for each corner.
-    used, of_row = faces[curved], row[curved]
+        return table.take(at, axis=0).reshape(-1, 3, 3)
+    used, of_row = faces.take(curved, axis=0).ravel(), np.repeat(row[curved], 3)
     vertex_row = np.full(len(vertices), -1, np.int32)
-    vertex_row[used] = of_row[:, None]
+    vertex_row[used] = of_row
     known = np.flatnonzero(vertex_row >= 0)
-    at_vertex = np.empty((len(vertices), 3), np.float32)
-    at_vertex[known] = normals(surfaces, vertex_row[known], vertices[known])
-    some = at_vertex[used]
-    face, k = np.nonzero(vertex_row[used] != of_row[:, None])
-    some[face, k] = normals(surfaces, of_row[face], vertices[used[face, k]])
-    if np.isin(surfaces.kind, (PatchKind.CONE, PatchKind.TORUS)).any():
-        face, k = np.nonzero((some == 0.0).all(axis=2))
-        some[face, k] = _middle_normals(vertices[used[face]], of_row[face], surfaces)
-    corner[curved] = some
+    table[len(surfaces) + known] = normals(surfaces, vertex_row[known], vertices.take(known, axis=0))
+    at.reshape(-1, 3)[curved] = used.reshape(-1, 3) + np.int32(len(surfaces))
+    corner = table.take(at, axis=0).reshape(-1, 3, 3)
+    again = np.flatnonzero(vertex_row.take(used) != of_row)
+    if len(again):
+        corner[curved[again // 3], again % 3] = normals(surfaces, of_row[again], vertices[used[again]])
+    if ((surfaces.kind == PatchKind.CONE) | (surfaces.kind == PatchKind.TORUS)).any():
+        face, k = np.nonzero((corner[curved] == 0.0).all(axis=2))
+        if len(face):
+            face = curved[face]
+            corner[face, k] = _middle_normals(vertices[faces[face]], row[face], surfaces)
     return corner
 
 
@@ -175,19 +180,28 @@ def _middle_normals(triangles: F64, row: I32, surfaces: Surfaces) -> F64:
     return np.where((normal == 0.0).all(axis=1)[:, None], own, normal)
 
 
-def edge_kinds(
-    row: I32, paired: tuple[I64, I64], closed: bool, met: tuple[I64, I64], corner: F32
-) -> NDArray[np.uint8]:
+def edge_kinds(row: I32, paired: tuple[I64, I64], closed: bool, met: tuple[I64, I64], corner: F32) -> NDArray[np.uint8]:
     """Kinds (m,3): `paired` are all sides that have a mate, `met` those where two patches met before merging."""
     kind = np.full(3 * len(row), EdgeKind.INSIDE if closed else EdgeKind.BORDER, np.uint8)
     if not closed:
         kind[np.concatenate(paired)] = EdgeKind.INSIDE
-    apart = row[met[0] // 3] != row[met[1] // 3]
-    one, other = met[0][apart], met[1][apart]
-    face, k, face2, k2 = one // 3, one % 3, other // 3, other % 3
+    apart = np.flatnonzero(row.take(met[0] // 3) != row.take(met[1] // 3))
+    one, other = met[0].take(apart), met[1].take(apart)
     # A side's far end is the near end of its mate.
-    near = (corner[face, k].astype(np.float64) * corner[face2, (k2 + 1) % 3]).sum(axis=1)
-    far = (corner[face, (k + 1) % 3].astype(np.float64) * corner[face2, k2]).sum(axis=1)
+    at_side = corner.reshape(-1, 3)
+    near = _dot(at_side.take(one, axis=0), at_side.take(_next(other), axis=0))
+    far = _dot(at_side.take(_next(one), axis=0), at_side.take(other, axis=0))
     tangent = np.minimum(near, far) >= np.cos(np.radians(TANGENT_WITHIN))
     kind[one] = kind[other] = np.where(tangent, EdgeKind.TANGENT, EdgeKind.SHARP)
     return kind.reshape(-1, 3)
+
+
+def _next(side: I64) -> I64:
+    """The side of the same triangle that begins where each (k,) ends."""
+    return np.where(side % 3 == 2, side - 2, side + 1)
+
+
+def _dot(a: F32, b: F32) -> F64:
+    product = a.astype(np.float64) * b
+    total: F64 = product[:, 0] + product[:, 1] + product[:, 2]
+    return total
