@@ -22,7 +22,7 @@ from .placement import positive_length
 from .projections import Viewpoint, standard, standard_names
 from .readings import LATER, expression, optional, word
 from .scope import Scope, did_you_mean
-from .section_reading import read_cuts
+from .section_reading import read_cuts, read_details
 from .specs import Spec
 from .subjects import find_subject
 from .values import Proportion, kind_of
@@ -85,6 +85,7 @@ class _Reading:
         changes: dict[str, object] = {}
         if found is not None:
             changes["cuts"] = read_cuts(self.line.lines, found.subject, self.scope, self.problems)
+            changes["details"] = read_details(self.line.lines, found.subject, found.path, self.scope, self.problems)
         for each, line in lines.items():
             with self.problems.collecting():
                 changes.update(self._read(each, line.head))

@@ -7,6 +7,7 @@ rungs the exact extents. Views that show the same triangles share them.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 
 import numpy as np
 from msgspec import Struct
@@ -18,7 +19,7 @@ from . import limits
 from .build import Model
 from .extent import box_corners
 from .flatten import Flattened, Mesher, flatten
-from .frames import RESOLUTION_DPI, Frame, content, frame_of, held_frame
+from .frames import RESOLUTION_DPI, WIDTH_MM, Frame, content, frame_of, held_frame
 from .layout import Box
 from .lightings import lights_for
 from .mistakes import Mistake, Problems, confined, mistake
@@ -30,6 +31,9 @@ from .views import View, cuts_of, views_of
 
 ERROR_ON_PAPER_MM = 0.02
 """The chord error on paper that a figure's rung keeps to, at its nearest point."""
+
+TITLE_SHARE = 2.0
+"""Paper that a view's title takes above it, over the height of its letters."""
 
 TRACE_PAST_MM = 6.0
 """How far on paper a cutting-plane line runs past what it cuts."""
@@ -143,13 +147,14 @@ class _Planner:
         return Box(low, high, view.column, view.row, axes, self._around(view, unit))
 
     def _around(self, view: View, unit: contract.Projection) -> tuple[float, float, float, float]:
-        """Paper kept free round a view for the ends of its cutting-plane lines."""
+        """Paper kept free round a view for its title and the ends of its cutting-plane lines."""
         aside = upright = 0.0
+        above = title_height(self.spec.width or WIDTH_MM) * TITLE_SHARE if view.title else 0.0
         for number in view.traces:
             along = np.cross(facing(self.spec.cuts[number]), unit.sight)
             across, up = abs(float(along @ np.array(unit.right))), abs(float(along @ np.array(unit.up)))
             aside, upright = max(aside, across * TRACE_FREE_MM), max(upright, up * TRACE_FREE_MM)
-        return (aside, upright, aside, upright)
+        return (aside, upright + above, aside, upright)
 
     def _rung(self, shot: _Shot, frame: Frame, points: F64) -> float:
         magnification, viewpoint = frame.scale * camera.magnification(shot.unit), shot.view.viewpoint
@@ -171,14 +176,29 @@ class _Planner:
             raise mistake("too-much", spec.span, sentence, "a smaller size or a lower resolution")
         shapes = list({id(each): each for each in map(self._shape, shots)}.values())
         panels: list[contract.Panel] = []
+        inscriptions: list[contract.Inscription] = []
         for shot, spot in zip(shots, frame.spots, strict=True):
             shape = self._shape(shot)
             projection = camera.enlarged(shot.unit, frame.scale, spot.origin)
-            self._seen(projection, spot.place, shape.geometry.vertices)
+            if shot.view.window is None:
+                self._seen(projection, spot.place, shape.geometry.vertices)
             panels.append(self._panel(shot.view, projection, spot.place, shape.geometry, shapes.index(shape)))
+            if shot.view.title:
+                inscriptions.append(self._title(shot.view, projection, shape.geometry.vertices, frame))
+        panels[0] = replace(panels[0], detail_frames=self._detail_frames(shots, panels[0].projection))
         wanted = _measured(shapes[0].geometry) if measures else ()
         sheet = contract.Sheet(
-            spec.name, page, tuple(panels), spec.files, (), spec.title, spec.alt, spec.description, "", wanted
+            spec.name,
+            page,
+            tuple(panels),
+            spec.files,
+            self._links(shots),
+            spec.title,
+            spec.alt,
+            spec.description,
+            "",
+            wanted,
+            tuple(inscriptions),
         )
         return contract.Job(tuple(shape.geometry for shape in shapes), shapes[0].materials, sheet)
 
@@ -203,8 +223,50 @@ class _Planner:
             style,
             lighting,
             section=self._section(view, projection, geometry),
+            clip=_circle(projection, view),
+            detail_frames=_frame_round(projection, view),
             cutting_planes=self._traces(view, projection, geometry),
         )
+
+    def _links(self, shots: Sequence[_Shot]) -> tuple[contract.Link, ...]:
+        """Which panel is the parent of which section or detail."""
+        found: list[contract.Link] = []
+        for child, shot in enumerate(shots):
+            if shot.view.window is not None:
+                found.append(contract.Link("detail", 0, child, shot.view.window.letter))
+                continue
+            for number in shot.view.cuts:
+                parents = [row for row, other in enumerate(shots) if number in other.view.traces]
+                found += [contract.Link("section", parent, child, letter_of(number)) for parent in parents]
+        return tuple(found)
+
+    def _detail_frames(
+        self, shots: Sequence[_Shot], projection: contract.Projection
+    ) -> tuple[contract.DetailFrame, ...]:
+        windows = [shot.view.window for shot in shots if shot.view.window is not None]
+        return tuple(
+            contract.DetailFrame(each.centre, each.diameter * projection.scale, each.letter) for each in windows
+        )
+
+    def _title(self, view: View, projection: contract.Projection, vertices: F64, frame: Frame) -> contract.Inscription:
+        """The name of a view, above its content; that of a detail with its scale."""
+        text, window = view.title, view.window
+        if window is not None:
+            middle, _ = camera.to_page(projection, np.array([window.centre]))
+            across, top = float(middle[0, 0]), float(middle[0, 1]) - window.diameter / 2 * projection.scale
+            text += f" ({self._scale_text(view, frame)})"
+        else:
+            low, high, _ = content(projection, vertices)
+            across, top = (low[0] + high[0]) / 2, low[1]
+        height = title_height(frame.width)
+        return contract.Inscription(text, (across, top - height * 0.8), height)
+
+    def _scale_text(self, view: View, frame: Frame) -> str:
+        """A scale as ISO 5455 writes it where the figure states one, else how many times the view is enlarged."""
+        if self.spec.scale is None:
+            return f"{view.factor:g}×"
+        scale = frame.scale * view.factor
+        return f"{scale:.4g}:1" if scale >= 1 else f"1:{1 / scale:.4g}"
 
     def _section(
         self, view: View, projection: contract.Projection, geometry: contract.Geometry
@@ -249,6 +311,31 @@ class _Planner:
             sentence = "the subject reaches past the edge of the page"
             hint = "a shorter lens, a wider angle of view, or an eye further off"
             self.problems.warn("cropped", self.spec.span, sentence, hint)
+
+
+def title_height(width: float) -> float:
+    """Height in mm of the letters that name views on a page of this width: one step of ISO 3098 above its letters."""
+    return 3.5 if width <= 100.0 else 5.0
+
+
+def _frame_round(projection: contract.Projection, view: View) -> tuple[contract.DetailFrame, ...]:
+    """The circle round a detail itself, which needs no letter."""
+    if view.window is None:
+        return ()
+    return (contract.DetailFrame(view.window.centre, view.window.diameter * projection.scale, ""),)
+
+
+_N_CLIP = 96
+
+
+def _circle(projection: contract.Projection, view: View) -> F64 | None:
+    """The circle on the page that a detail is cut to, as a polygon."""
+    if view.window is None:
+        return None
+    middle, _ = camera.to_page(projection, np.array([view.window.centre]))
+    radius = view.window.diameter / 2 * projection.scale
+    turn = np.radians(np.arange(_N_CLIP) * (360.0 / _N_CLIP))
+    return np.asarray(middle[0] + radius * np.stack((np.cos(turn), np.sin(turn)), axis=1))
 
 
 def _measured(geometry: contract.Geometry) -> tuple[contract.MeasureWanted, ...]:

@@ -6,9 +6,10 @@ from collections.abc import Sequence
 from itertools import pairwise
 
 from platewright.lang import tree
-from platewright.lang.units import LENGTH
+from platewright.lang.units import LENGTH, NUMBER
 
-from .expressions import evaluate
+from .expressions import evaluate, quantity
+from .extent import box_corners
 from .graph import Point, Thing
 from .mistakes import Problems, mistake
 from .paths import Placed, follow
@@ -16,12 +17,19 @@ from .placement import AXES, direction, point, positive_length
 from .readings import expression, listed, optional
 from .scope import Scope
 from .sections import Cut, Plane
+from .specs import Detail
 from .values import Quantity, Vector, kind_of
 
 ROWS = ("section across", "half section across", "stepped section along", "local section across")
 """Rows of the vocabulary that each make one cut."""
 
 _ORIGIN = (0.0, 0.0, 0.0)
+
+MOST_ENLARGED = 1000.0
+"""The limit on how many times a detail is enlarged."""
+
+DETAIL_SHARE = 0.15
+"""Diameter of what a detail shows, over the subject's largest side, where none is stated."""
 
 
 def read_cuts(lines: Sequence[tree.Line], subject: Thing, scope: Scope, problems: Problems) -> tuple[Cut, ...]:
@@ -31,6 +39,18 @@ def read_cuts(lines: Sequence[tree.Line], subject: Thing, scope: Scope, problems
         if line.head.row in ROWS:
             with problems.collecting():
                 found.append(_Reader(line.head, subject, scope).cut())
+    return tuple(found)
+
+
+def read_details(
+    lines: Sequence[tree.Line], subject: Thing, name: str, scope: Scope, problems: Problems
+) -> tuple[Detail, ...]:
+    """The details among a figure's lines, in their order. Paths begin in the subject."""
+    found: list[Detail] = []
+    for line in lines:
+        if line.head.row == "detail of":
+            with problems.collecting():
+                found.append(_Reader(line.head, subject, scope).detail(name))
     return tuple(found)
 
 
@@ -56,6 +76,22 @@ class _Reader:
                 return self._local(kept)
             case _:
                 return Cut("full", self._plane(), head.span, None, (), 0.0, kept)
+
+    def detail(self, name: str) -> Detail:
+        head = self.head
+        centre = self._point(expression(head, "mark"))
+        written = expression(head, "times")
+        times = quantity(written, self.scope, NUMBER)
+        if not 1.0 < times <= MOST_ENLARGED:
+            sentence = f"expected an enlargement above 1, to {MOST_ENLARGED:g}, found {times:g}"
+            raise mistake("out-of-range", written.span, sentence)
+        across = optional(head, "diameter")
+        if across is not None:
+            diameter = positive_length(across, self.scope, "diameter")
+        else:
+            corners, _ = box_corners(self.subject, name)
+            diameter = float((corners.max(axis=0) - corners.min(axis=0)).max()) * DETAIL_SHARE
+        return Detail(centre, diameter, times, head.span)
 
     def _plane(self) -> Plane:
         normal = self._direction("plane")

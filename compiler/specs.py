@@ -19,6 +19,15 @@ DEFAULT_STYLE: DrawnAs = "tone"
 """The manner of drawing of a figure that names none."""
 
 
+class Detail(Struct, frozen=True):
+    """What one detail shows, enlarged by `times`: a circle in the view's plane, world mm."""
+
+    centre: tuple[float, float, float]
+    diameter: float
+    times: float
+    span: Span
+
+
 class Spec(Struct, frozen=True):
     """One figure. Lengths are mm on paper. `uncut` are paths of what sections leave whole, with all below it."""
 
@@ -41,3 +50,4 @@ class Spec(Struct, frozen=True):
     description: str = ""
     cuts: tuple[Cut, ...] = ()
     uncut: tuple[str, ...] = ()
+    details: tuple[Detail, ...] = ()

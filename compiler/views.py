@@ -7,17 +7,18 @@ from msgspec.structs import replace
 
 from .mistakes import mistake
 from .projections import Viewpoint, unit_projection
-from .sections import EDGE_ON, Cut, facing, letter_of
+from .sections import EDGE_ON, LETTERS, Cut, facing, letter_of
 from .specs import Spec
 
 Point = tuple[float, float, float]
 
 
 class Window(Struct, frozen=True):
-    """A round piece of a view: its middle in world mm and its diameter in model mm."""
+    """A round piece of a view: its middle in world mm, its diameter in model mm, its letter."""
 
     centre: Point
     diameter: float
+    letter: str = ""
 
 
 class View(Struct, frozen=True):
@@ -41,7 +42,35 @@ class View(Struct, frozen=True):
 
 def views_of(spec: Spec) -> tuple[View, ...]:
     """The views that a figure asks for, the main one first. Raises Mistake."""
-    return sectioned((View(spec.path, spec.viewpoint),), spec)
+    return detailed(sectioned((View(spec.path, spec.viewpoint),), spec), spec)
+
+
+def detailed(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
+    """Views with those of a figure's details beside them, in a column; each shows what the main view does."""
+    main, column = views[0], max(view.column for view in views) + 1
+    found = list(views)
+    for row, detail in enumerate(spec.details):
+        letter = detail_letter(row)
+        name = f"{main.name} {letter}"
+        window = Window(detail.centre, detail.diameter, letter)
+        found.append(
+            replace(
+                main,
+                name=name,
+                column=column,
+                row=row,
+                factor=main.factor * detail.times,
+                window=window,
+                title=letter,
+                traces=(),
+            )
+        )
+    return tuple(found)
+
+
+def detail_letter(number: int) -> str:
+    """The letter of a figure's detail, counted from 0: from the end of the alphabet (common practice)."""
+    return letter_of(len(LETTERS) - 1 - number) if number < len(LETTERS) else letter_of(number)
 
 
 def sectioned(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:

@@ -355,11 +355,10 @@ FIGURE_ROWS: tuple[Row, ...] = (
     ),
     Row(
         "detail of",
-        "detail of <mark:path> enlarged <times:number> [diameter <diameter:length>]",
+        "detail of <mark:any> enlarged <times:number> [diameter <diameter:length>]",
         ("figure",),
-        "an enlarged view of what lies round a mark",
+        "an enlarged view of what lies round a mark, beside the others, with its frame and letter in the first",
         "detail of funnel.rim_left enlarged 5 diameter 12 mm",
-        later=True,
     ),
     Row(
         "highlight",

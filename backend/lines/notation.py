@@ -158,9 +158,11 @@ def _detail_frame(
 ) -> list[Mark]:
     centre = to_page(projection, np.array([frame.centre]))[0]
     radius = frame.diameter / 2
-    aside = np.array((cos(radians(-45.0)), sin(radians(-45.0))))
-    letter = _letter(frame.letter, centre + aside * (radius + height * 0.95), lettering, height)
-    return [Stroke(circle(_point(centre), radius), style.narrow, LineClass.DETAIL_FRAME), letter]
+    found: list[Mark] = [Stroke(circle(_point(centre), radius), style.narrow, LineClass.DETAIL_FRAME)]
+    if frame.letter:
+        aside = np.array((cos(radians(-45.0)), sin(radians(-45.0))))
+        found.append(_letter(frame.letter, centre + aside * (radius + height * 0.95), lettering, height))
+    return found
 
 
 def _letter(text: str, middle: F64, lettering: Lettering, height: float) -> Words:
