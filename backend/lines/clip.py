@@ -167,14 +167,22 @@ def _add(spans: Any, n: int, low: Any, high: Any, gap: Any) -> int:
 
 
 @kernel
+def _wider(rows: Any, room: int) -> Any:
+    """The rows (n,2) with room for more."""
+    wider = np.empty((room, 2), rows.dtype)
+    for k in range(len(rows)):
+        wider[k, 0], wider[k, 1] = rows[k, 0], rows[k, 1]
+    return wider
+
+
+@kernel
 def cut_segments(
     boxes: Any, corners: Any, labels: Any, n_leaves: int, start: Any, end: Any, vertices: Any, faces: Any, node: Any,
     patch: Any, allowance: Any, treat: Any, depth_mm: Any, sideways_mm: Any, is_central: bool, begin: int, last: int,
 ) -> Any:  # fmt: skip
-    """Pieces of the segments begin .. last: segment (p,) int32, span (p,2), is it seen (p,) bool, in their order."""
-    segment = np.empty(2 * (last - begin) + 64, np.int32)
-    span = np.empty((len(segment), 2))
-    seen = np.empty(len(segment), np.bool_)
+    """Pieces of the segments begin .. last in their order: segment and 1 if seen (p,2) int32, span (p,2) float64."""
+    span = np.empty((2 * (last - begin) + 64, 2))
+    label = np.empty((len(span), 2), np.int32)
     spans = np.empty((64, 2))
     stack = np.empty(_STACK, np.int32)
     n_triangles = len(labels)
@@ -235,18 +243,14 @@ def cut_segments(
                     )  # fmt: skip
                     if low < high:
                         if n_hidden == len(spans):
-                            wider = np.empty((2 * n_hidden, 2))
-                            wider[:n_hidden] = spans
-                            spans = wider
+                            spans = _wider(spans, 2 * n_hidden)
                         n_hidden = _add(spans, n_hidden, low, high, gap)
                         if n_hidden == 1 and spans[0, 0] <= 0.0 and spans[0, 1] >= 1.0:
                             height = 0
                             break
-        if n + 2 * n_hidden + 1 > len(segment):
-            room = 2 * (n + 2 * n_hidden + 1)
-            more_segment, more_span, more_seen = np.empty(room, np.int32), np.empty((room, 2)), np.empty(room, np.bool_)
-            more_segment[:n], more_span[:n], more_seen[:n] = segment[:n], span[:n], seen[:n]
-            segment, span, seen = more_segment, more_span, more_seen
+        if n + 2 * n_hidden + 1 > len(span):
+            span = _wider(span, 2 * (n + 2 * n_hidden + 1))
+            label = _wider(label, len(span))
         at = 0.0
         for k in range(n_hidden + 1):
             low, high = (spans[k, 0], spans[k, 1]) if k < n_hidden else (1.0, 1.0)
@@ -255,10 +259,10 @@ def cut_segments(
                     continue
                 low, high = (0.0 if low < _ROUNDING else low), (1.0 if high > 1.0 - _ROUNDING else high)
             if low > at:
-                segment[n], span[n, 0], span[n, 1], seen[n] = s, at, low, True
+                label[n, 0], label[n, 1], span[n, 0], span[n, 1] = s, 1, at, low
                 n += 1
             if high > low:
-                segment[n], span[n, 0], span[n, 1], seen[n] = s, low, high, False
+                label[n, 0], label[n, 1], span[n, 0], span[n, 1] = s, 0, low, high
                 n += 1
             at = high
-    return segment[:n].copy(), span[:n].copy(), seen[:n].copy()
+    return label[:n].copy(), span[:n].copy()

@@ -6,7 +6,7 @@ import numpy as np
 
 from ..contract import F64, I32, U8, LineClass
 from .clip import HIDDEN, NORMAL, PLAIN, cut_segments
-from .model import Bools, Candidates, Pieces, View, number_of
+from .model import Candidates, Pieces, View, number_of
 from .occluders import Occluders as Occluders
 from .occluders import occluders_of
 from .view import in_blocks
@@ -26,8 +26,8 @@ def cut(view: View, candidates: Candidates, threads: int | None = None, occluder
     treat = _treatment(candidates)
     is_central = view.projection.kind == "central"
 
-    def work(begin: int, end: int) -> tuple[I32, F64, Bools]:
-        found: tuple[I32, F64, Bools] = cut_segments(
+    def work(begin: int, end: int) -> tuple[I32, F64]:
+        found: tuple[I32, F64] = cut_segments(
             tree.boxes, tree.corners, tree.labels, tree.n_leaves, candidates.start, candidates.end,
             candidates.vertices, candidates.faces, candidates.node, candidates.patch, candidates.allowance, treat,
             view.tolerance.depth_mm, view.tolerance.sideways_mm, is_central, begin, end,
@@ -38,12 +38,13 @@ def cut(view: View, candidates: Candidates, threads: int | None = None, occluder
     if not found:
         nothing = np.empty((0, 3))
         return Pieces(np.empty(0, np.int32), np.empty((0, 2)), np.empty(0, np.bool_), nothing, nothing)
-    segment, span = np.concatenate([each[0] for each in found]), np.concatenate([each[1] for each in found])
+    label, span = np.concatenate([each[0] for each in found]), np.concatenate([each[1] for each in found])
+    segment = np.ascontiguousarray(label[:, 0])
     start, end = candidates.start[segment], candidates.end[segment]
     return Pieces(
         segment,
         span,
-        np.concatenate([each[2] for each in found]),
+        label[:, 1] != 0,
         between(start, end, span[:, 0]),
         between(start, end, span[:, 1]),
     )
