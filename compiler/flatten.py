@@ -19,6 +19,7 @@ from .graph import Assembly, Entry, Solid, Thing, bracketed, walk
 from .materials import Surface, linear
 from .mistakes import Problems, mistake
 from .solids.bounds import bounds, facts_rung
+from .solids.coarse import coarse_surfaces
 from .solids.flaw import Flaw
 from .solids.ladder import COARSEST, first_at_most
 from .solids.recipe import Affine, Recipe
@@ -138,7 +139,7 @@ def _meshes(
             continue
         key = (id(solid), own_rung(solid, entry.placement))
         if key not in rows:
-            mesh, flaws = mesher(solid.recipe, key[1])
+            mesh, flaws = _meshed(solid, key[1], mesher)
             problems.update((problem_of(flaw, solid, sources), None) for flaw in flaws)
             rows[key] = None if mesh is None else len(meshes)
             if mesh is not None:
@@ -147,6 +148,12 @@ def _meshes(
         if row is not None:
             of_entry[number] = row
     return meshes, of_entry, tuple(problems)
+
+
+def _meshed(solid: Solid, rung: float, mesher: Mesher) -> tuple[Mesh | None, tuple[Flaw, ...]]:
+    """The mesh of a solid at a rung and its flaws, with a warning where it stays coarser."""
+    mesh, flaws = mesher(solid.recipe, rung)
+    return mesh, flaws if mesh is None else (*flaws, *coarse_surfaces(solid.recipe, rung))
 
 
 def _altered(
@@ -432,7 +439,7 @@ def prove(things: Sequence[Thing], sources: Sequence[Span], mesher: Mesher) -> t
     """
     problems: dict[Problem, None] = {}
     for solid in _solids(things):
-        _, flaws = mesher(solid.recipe, proof_rung(solid))
+        _, flaws = _meshed(solid, proof_rung(solid), mesher)
         problems.update((problem_of(flaw, solid, sources), None) for flaw in flaws)
     return tuple(problems)
 

@@ -23,7 +23,7 @@ from .readings import LATER, expression, name
 from .scope import Scope
 from .shapes import OUTLINED, diameter, height, read_shape, with_edges
 from .sheets import SHEETS, read_sheet
-from .solids.recipe import Affine, Envelope, Placed, Primitive, Recipe, Step
+from .solids.recipe import Affine, Edged, Envelope, Placed, Primitive, Recipe, Revolve, Step
 from .solids.transform import IDENTITY, compose, determinant
 from .threads import threads_of
 from .turns import labels, placements, turns
@@ -167,6 +167,7 @@ class _Part:
             raise Mistake(None)
         shape, own, n_shapes, n_levels = self._made(reading, scope, is_cut)
         shape = with_edges(shape, line.clauses, scope)
+        self._sharp(shape, line)
         places = placements(line, scope, self.axes, own)
         self._count(len(outer) * len(places) * n_shapes, n_levels, line)
         if outer != (IDENTITY,):
@@ -178,6 +179,15 @@ class _Part:
             clause = next(each for each in line.clauses if each.word == "centred")
             raise mistake("wrong-form", clause.span, "`centred` goes with shapes; a part stands where its lines put it")
         return Placed(shape, places, self.things.source(line.span), centred)
+
+    def _sharp(self, shape: Primitive | Recipe, line: tree.Line) -> None:
+        """Warn of edges that `rounded` and `chamfered` do not make."""
+        if not isinstance(shape, Edged) or not isinstance(shape.shape, Revolve) or shape.shape.angle == 360.0:
+            return
+        clause = next(each for each in line.clauses if each.word == shape.kind)
+        sentence = f"`{shape.kind}` leaves the edges round the two plane ends of a part of a turn sharp"
+        hint = 'say `accept "sharp-ends"` where they may be, or cut the ends with a shape that has the edges wanted'
+        self.things.problems.warn("sharp-ends", clause.span, sentence, hint)
 
     def _count(self, n_shapes: int, n_levels: int, line: tree.Line) -> None:
         self.n_shapes += n_shapes

@@ -70,6 +70,8 @@ CODES: Mapping[str, str] = MappingProxyType(
         "tiny-model": "a whole model is smaller than 0.1 mm",
         "huge-model": "a whole model is larger than 100 m",
         "accepts-nothing": "a warning is accepted that there is none of",
+        "coarse-surface": "a relief or surface stays further from its function than asked",
+        "sharp-ends": "edges are made on a shape that keeps some of them sharp",
         "nothing-to-cut": "a part is cut before it has a shape",
         "coincident-copies": "copies lie on each other",
         "boolean-failed": "shapes could not be joined or cut",

@@ -155,3 +155,52 @@ def test_a_scene_accepts_for_what_it_sees() -> None:
     (found,) = scene.prove(run, Meshes())
     assert found.code == "several-pieces" and found.span.file == "b.plate"
     assert [each.covers(found) for each in project.acceptances] == [True]
+
+
+RIM = """platewright 1
+
+outline rim
+    from (10 mm, 0)
+    to (18 mm, 0)
+    to (18 mm, 6 mm)
+    to (10 mm, 6 mm)
+
+part segment
+    add revolve rim through 120 deg rounded 1 mm
+"""
+
+
+@pytest.mark.parametrize(
+    ("text", "expected"),
+    [
+        (RIM, [(10, "sharp-ends")]),
+        (RIM.replace("rounded", "chamfered"), [(10, "sharp-ends")]),
+        (RIM.replace("through 120 deg ", ""), []),
+        (RIM.replace("120 deg", "360 deg"), []),
+        (RIM.replace(" rounded 1 mm", ""), []),
+        (RIM + '    accept "sharp-ends"\n', []),
+    ],
+)
+def test_plane_ends_of_a_part_of_a_turn_stay_sharp_and_it_is_said(
+    text: str, expected: list[tuple[int, str]], tmp_path: Path
+) -> None:
+    assert said(text, tmp_path) == expected
+
+
+RELIEF = """platewright 1
+
+part hill
+    add relief z = 5 mm + (3 mm if x > 3.3333 mm else 0) over (40 mm, 30 mm)
+"""
+
+
+@pytest.mark.parametrize(
+    ("text", "expected"),
+    [
+        (RELIEF, [(4, "coarse-surface")]),
+        (RELIEF.replace("(3 mm if x > 3.3333 mm else 0)", "x / 10"), []),
+        (RELIEF + '    accept "coarse-surface"\n', []),
+    ],
+)
+def test_a_relief_that_no_grid_follows_is_said(text: str, expected: list[tuple[int, str]], tmp_path: Path) -> None:
+    assert said(text, tmp_path) == expected

@@ -15,11 +15,13 @@ import numpy as np
 from numpy.typing import NDArray
 from platewright.backend.contract import PatchKind
 
+from .crossing import crossing
 from .fields import values
 from .flaw import SolidError
 from .outline import OutlineFlaw
 from .recipe import Grid, ParametricSurface, Relief
 from .shell import Shell, shell
+from .spine import spelled
 from .surfaces import plane, surfaces
 
 F64 = NDArray[np.float64]
@@ -31,6 +33,10 @@ PROBES = 65
 """Samples a side on which flaws, boxes and derivatives are judged."""
 MOST_CELLS = 512
 """Cells a side; a function that would need more is coarser than the chord error asks."""
+_LINES = 32
+"""Along which a sheet is looked at for folds, each at the steps of its finest division."""
+_JUDGED = 30_000
+"""Triangles on which a sheet is judged at most."""
 CLOSES = 1e-9
 """Of its size: opposite ends of a surface that are nearer than this are one."""
 _STEP = 1e-5
@@ -81,15 +87,38 @@ def sheet_flaws(shape: Relief | ParametricSurface) -> tuple[OutlineFlaw, ...]:
         if np.abs(ends[0] - ends[1]).max() <= CLOSES * size and (sides[0] * sides[1]).sum(axis=-1).min() < 0.0:
             sentence = "this surface closes on itself turned over, so that it has no two sides"
             return (OutlineFlaw("no-value", sentence, "leave a small gap where it would close"),)
-    if _folds(points, normals, shape.thickness):
-        sentence = "this sheet would cut itself: it bends tighter than half its thickness"
-        return (OutlineFlaw("cuts-itself", sentence, "make it thinner, or the bend wider"),)
+    for n, m in ((MOST_CELLS, _LINES), (_LINES, MOST_CELLS)):
+        fold = _fold(_grid(surface_of(shape), n, m), _normals(shape, n, m), shape.thickness)
+        if fold is not None:
+            sentence = (
+                f"this sheet would cut itself near {spelled(fold)}, where it bends tighter than half its thickness"
+            )
+            return (OutlineFlaw("cuts-itself", sentence, "make it thinner, or the bend wider"),)
+    met = _crossing(shape, size)
+    if met is not None:
+        sentence = f"this sheet would cut itself near {spelled(met)}, where far stretches of it meet"
+        return (OutlineFlaw("cuts-itself", sentence, "make it thinner, or lead it further round"),)
     return ()
+
+
+def _crossing(shape: ParametricSurface, size: float) -> F64 | None:
+    """Where the sides and rims of a sheet cross, at a chord error that follows from its size and thickness."""
+    n, m, _ = _divisions(shape, min(size / 200.0, shape.thickness / 4.0))
+    over = max(1.0, math.sqrt(4.0 * n * m / _JUDGED))
+    made = _sheet(shape, math.ceil(n / over), math.ceil(m / over))
+    return crossing(made.vertices, made.faces)
+
+
+def strays(shape: Relief | ParametricSurface, rung: float) -> float:
+    """How far the triangles at a chord error of `rung` mm lie from the function: more than it where `MOST_CELLS` are
+    too few, or a step or an edge of the function leaves no number enough.
+    """
+    return _divisions(shape, rung)[2]
 
 
 def count_triangles(shape: Relief | ParametricSurface, rung: float) -> int:
     """At most, once it has no flaws."""
-    n, m = _divisions(shape, rung)
+    n, m, _ = _divisions(shape, rung)
     return 2 * n * m * 2 + 4 * (n + m)
 
 
@@ -107,7 +136,7 @@ def bounds(shape: Relief | ParametricSurface) -> tuple[F64, F64]:
 
 def sheet(shape: Relief | ParametricSurface, rung: float) -> Shell:
     """The closed solid at a chord error of `rung` mm: FREE above (and below), planes or FREE round the rim."""
-    n, m = _divisions(shape, rung)
+    n, m, _ = _divisions(shape, rung)
     return _relief(shape, n, m) if isinstance(shape, Relief) else _sheet(shape, n, m)
 
 
@@ -132,14 +161,15 @@ def _normals(shape: Relief | ParametricSurface, n: int, m: int) -> F64:
     return np.where(there[..., None], normal / np.where(there, length, 1.0)[..., None], 0.0)
 
 
-def _folds(points: F64, normals: F64, thickness: float) -> bool:
-    """Whether a cell turns over as it is moved out by half the thickness, on either side."""
+def _fold(points: F64, normals: F64, thickness: float) -> F64 | None:
+    """Where a cell turns over as it is moved out by half the thickness, on either side; None if nowhere."""
     for side in (-0.5, 0.5):
         moved = points + side * thickness * normals
         for axis in (0, 1):
-            if ((np.diff(moved, axis=axis) * np.diff(points, axis=axis)).sum(axis=-1) <= 0.0).any():
-                return True
-    return False
+            forward = (np.diff(moved, axis=axis) * np.diff(points, axis=axis)).sum(axis=-1)
+            if (forward <= 0.0).any():
+                return np.asarray(points[np.unravel_index(int(forward.argmin()), forward.shape)])
+    return None
 
 
 def _knots(shape: Relief | ParametricSurface) -> tuple[int, int]:
@@ -149,15 +179,15 @@ def _knots(shape: Relief | ParametricSurface) -> tuple[int, int]:
     return 1, 1
 
 
-def _divisions(shape: Relief | ParametricSurface, rung: float) -> tuple[int, int]:
-    """Cells along u and v."""
+def _divisions(shape: Relief | ParametricSurface, rung: float) -> tuple[int, int, float]:
+    """Cells along u and v, and how far from the function their triangles are."""
     knots = _knots(shape)
     if knots != (1, 1):
-        return knots
+        return (*knots, 0.0)
     surface, swell = surface_of(shape), 1.0
     points = _grid(surface, PROBES - 1, PROBES - 1)
     if not np.isfinite(points).all():
-        return 1, 1
+        return 1, 1, 0.0
     uu, vv = (float(np.sqrt((np.diff(points, 2, axis=k) ** 2).sum(axis=-1)).max()) * (PROBES - 1) ** 2 for k in (1, 0))
     uv = float(np.sqrt((np.diff(np.diff(points, axis=0), axis=1) ** 2).sum(axis=-1)).max()) * (PROBES - 1) ** 2
     # A third of the error for each of the three terms.
@@ -170,7 +200,7 @@ def _divisions(shape: Relief | ParametricSurface, rung: float) -> tuple[int, int
         cells = min(MOST_CELLS, math.ceil(n * swell)), min(MOST_CELLS, math.ceil(m * swell))
         off = _off(surface, *cells)
         if off <= rung or off > 0.9 * before or min(cells) >= MOST_CELLS:
-            return cells
+            return (*cells, off)
         before, swell = off, swell * 1.4
 
 

@@ -125,7 +125,7 @@ def count_triangles(shape: Primitive, rung: float) -> int:
     if isinstance(shape, Torus):
         return 2 * divisions((shape.diameter + shape.tube) / 2, rung) * divisions(shape.tube / 2, rung)
     if isinstance(shape, Relief | ParametricSurface):
-        return 0 if sheets.sheet_flaws(shape) else sheets.count_triangles(shape, rung)
+        return sheets.count_triangles(shape, rung)
     if isinstance(shape, Envelope):
         inside = ((each, count_triangles(_primitive(each), rung / _scale(each))) for each in shape.placed)
         return sum(len(each.placements) * n for each, n in inside)

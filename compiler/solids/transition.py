@@ -15,20 +15,20 @@ import numpy as np
 from numpy.typing import NDArray
 from platewright.backend.contract import PatchKind
 
-from .outline import OutlineFlaw, Polyline, contact, extent, faults, flatten, oriented
+from .crossing import crossing
+from .outline import OutlineFlaw, Polyline, extent, faults, flatten, oriented
 from .polyhedra import extrude
 from .recipe import ArcTo, Cone, Outline, Transition
 from .shell import Shell, shell
+from .spine import spelled
 from .surfaces import free, plane, surfaces
 
 F64 = NDArray[np.float64]
 I64 = NDArray[np.int64]
 
 _CREASE = math.radians(1.0)
-CUTS = 32
-"""Heights, less one, at which a transition between outlines that are not convex is looked at for crossing itself."""
 COARSE_PARTS = 200.0
-"""The chord error of that look: the outline's size over this."""
+"""Transitions between outlines that are not convex are judged at the outline's size over this as chord error."""
 
 
 def transition_flaws(shape: Transition) -> tuple[OutlineFlaw, ...]:
@@ -44,29 +44,20 @@ def transition_flaws(shape: Transition) -> tuple[OutlineFlaw, ...]:
 
 
 def _self_cut(shape: Transition) -> tuple[OutlineFlaw, ...]:
-    """A flaw where a cut across the transition crosses itself, at one of `CUTS` heights; none between convex outlines.
-
-    A cut runs through the rulings that join the outlines, each at the same share of its length.
+    """A flaw where triangles between the outlines cross; none between convex outlines. The ends cannot cross: they are
+    the outlines, and all between lies between their planes.
     """
     (x0, y0), (x1, y1) = extent(oriented(shape.lower.outer, True))
     rung = max(x1 - x0, y1 - y0) / COARSE_PARTS
     lower, upper = _outer(shape.lower, rung), _outer(shape.upper, rung)
     if _is_convex(lower) and _is_convex(upper):
         return ()
-    one, other = _shares(lower), _shares(upper)
-    a, b = np.array(_rulings(one, other)).T
-    for k in range(1, CUTS):
-        share = k / CUTS
-        points = lower.points[a] * (1.0 - share) + upper.points[b] * share
-        apart = np.hypot(*(points - np.roll(points, 1, axis=0)).T) > 1e-9 * (x1 - x0)
-        points = points[apart]
-        none = np.zeros(len(points), np.int32)
-        met = contact([Polyline(points, none, (), np.zeros((len(points), 2, 2)))])
-        if met is not None:
-            place = f"({met[0]:.4g} mm, {met[1]:.4g} mm, {share * shape.length:.4g} mm)"
-            sentence = f"the transition would cut itself near {place}"
-            return (OutlineFlaw("cuts-itself", sentence, "turn one of the outlines, or go by an outline between them"),)
-    return ()
+    made = _joined(lower, upper, _shares(lower), _shares(upper), shape.length)
+    met = crossing(made.vertices, made.faces[: len(lower.points) + len(upper.points)])
+    if met is None:
+        return ()
+    sentence = f"the transition would cut itself near {spelled(met)}"
+    return (OutlineFlaw("cuts-itself", sentence, "turn one of the outlines, or go by an outline between them"),)
 
 
 def as_extrusion(shape: Transition) -> bool:
@@ -159,20 +150,6 @@ def _order(one: F64, other: F64) -> NDArray[np.intp]:
     places = np.concatenate((one, other))
     # A millionth of a turn apart is together, so that rounding does not order chords that run in one direction.
     return np.lexsort((np.arange(len(places)) >= len(one), np.round(places, 6)))
-
-
-def _rulings(one: F64, other: F64) -> list[tuple[int, int]]:
-    """Points of the first and second loop that are joined, in order round the transition."""
-    n, m, order = len(one), len(other), _order(one, other)
-    a, b = int(order[order < n][0]), int(order[order >= n][0]) - n
-    found = []
-    for chord in order.tolist():
-        if chord < n:
-            a = (chord + 1) % n
-        else:
-            b = (chord - n + 1) % m
-        found.append((a, b))
-    return found
 
 
 def _chord_normals(tangents: F64, ends: F64, apex: F64) -> tuple[F64, F64]:

@@ -12,7 +12,7 @@ import math
 import numpy as np
 import pytest
 from platewright.backend.contract import EdgeKind, Mesh, PatchKind
-from platewright.compiler import measure
+from platewright.compiler import measure, scene
 from platewright.compiler.solids import transform
 from platewright.compiler.solids.bounds import bounds
 from platewright.compiler.solids.build import build
@@ -29,9 +29,10 @@ from platewright.compiler.solids.recipe import (
     Sphere,
 )
 from platewright.compiler.solids.tessellate import count_triangles, tessellate
+from platewright.lang.problems import Severity
 from scipy.spatial import ConvexHull
 from support.recipes import add, check_mesh, cut, made
-from support.scenes import checked, clean, exported
+from support.scenes import built, checked, clean, exported
 
 PI = math.pi
 RUNGS = (0.1, 0.05, 0.02, 0.01)
@@ -214,7 +215,12 @@ part sheet
 
 
 def test_functions_of_the_author_are_followed_into_the_relief() -> None:
-    mesh = exported(SCENE.format(""), "wave", 0.02).geometry
+    run = built(SCENE.format(""))
+    assert run.model is not None
+    found, problems = scene.geometry(run.model, "wave", run.meshes, 0.02)
+    assert found is not None
+    assert [(problem.code, problem.severity) for problem in problems] == [("coarse-surface", Severity.WARNING)]
+    mesh = found.geometry
     top = mesh.vertices[mesh.vertices[:, 2] > 1.0]
     x, z = top[:, 0], top[:, 2]
     smooth = x < 4.0
