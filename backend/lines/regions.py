@@ -19,7 +19,7 @@ from ..contract import F64, I32, FaceOrigin, LineClass
 from .model import Bools, Candidates, Pieces, Region, View, number_of
 
 if TYPE_CHECKING:
-    from .visibility import Occluders
+    from .occluders import Occluders
 
 I64 = NDArray[np.int64]
 Polygons: TypeAlias = NDArray[np.object_]
@@ -136,21 +136,31 @@ def _polylines(lattice: I64, is_cut: Bools) -> Polylines:
     cut = np.flatnonzero(is_cut.reshape(-1))
     n_joints = int(joint.max(initial=-1)) + 1
     meeting = np.bincount(np.delete(joint, cut), minlength=n_joints)
-    is_free = is_cut.reshape(-1) | (meeting[joint] == 1)
+    is_free = (is_cut.reshape(-1) | (meeting[joint] == 1)).reshape(-1, 2)
     joint[cut] = n_joints + np.arange(len(cut))
     order, turned, chain = walked(joint.reshape(-1, 2).astype(np.int32), n_joints + len(cut))
-    ends = _extended(lattice / _STEPS_PER_MM, is_free.reshape(-1, 2))[order]
-    ends[turned] = ends[turned, ::-1]
+    ends, is_free = (lattice / _STEPS_PER_MM)[order], is_free[order]
+    ends[turned], is_free[turned] = ends[turned, ::-1], is_free[turned, ::-1]
     first = np.flatnonzero(np.diff(chain, prepend=-1))
-    points = np.insert(ends[:, 1], first, ends[first, 0], axis=0)
-    return Polylines(points, np.insert(chain, first, chain[first]))
+    last = np.append(first[1:], len(chain)) - 1
+    lines = Polylines(np.insert(ends[:, 1], first, ends[first, 0], axis=0), np.insert(chain, first, chain[first]))
+    return _extended(lines, is_free[first, 0], is_free[last, 1])
 
 
-def _extended(segments: F64, is_free: Bools) -> F64:
-    along = segments[:, 1] - segments[:, 0]
-    step = along * (EXTENSION_MM / np.hypot(along[:, 0], along[:, 1]))[:, None]
-    ends = segments + np.stack([-step, step], axis=1) * is_free[:, :, None]
-    return np.asarray(np.rint(ends * _STEPS_PER_MM) / _STEPS_PER_MM)
+def _extended(lines: Polylines, starts_free: Bools, ends_free: Bools) -> Polylines:
+    """Lines with their free ends moved on, in the direction of the last `EXTENSION_MM` rather than of a stub."""
+    points, n = lines.points, len(lines.points)
+    run = np.append(0.0, np.cumsum(np.hypot(*np.diff(points, axis=0).T)))
+    first = np.flatnonzero(np.diff(lines.line, prepend=-1))
+    last = np.append(first[1:], n) - 1
+    inner = np.minimum(np.searchsorted(run, run[first] + EXTENSION_MM), last)
+    outer = np.maximum(np.searchsorted(run, run[last] - EXTENSION_MM, side="right") - 1, first)
+    at, back = np.concatenate([first, last]), np.concatenate([inner, outer])
+    is_moved = np.concatenate([starts_free, ends_free]) & (points[at] != points[back]).any(axis=1)
+    at, along = at[is_moved], (points[at] - points[back])[is_moved]
+    moved = points.copy()
+    moved[at] += along * (EXTENSION_MM / np.hypot(along[:, 0], along[:, 1]))[:, None]
+    return Polylines(np.rint(moved * _STEPS_PER_MM) / _STEPS_PER_MM, lines.line)
 
 
 def _points_within(faces: Polygons) -> F64:
@@ -223,6 +233,9 @@ def _regions(faces: Polygons, labels: I64, view: View) -> tuple[Region, ...]:
 
 
 def _united(regions: Sequence[Region]) -> Iterator[tuple[Rings, float]]:
+    if len(regions) == 1:
+        yield regions[0].rings, regions[0].area
+        return
     import shapely
 
     whole = shapely.coverage_union_all([polygon_of(region) for region in regions])
