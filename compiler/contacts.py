@@ -1,12 +1,12 @@
 """What stands oddly in a model: a part that touches nothing it is placed with, a model of no likely size.
 
-Judged on the meshes of the proof, so nearer than their chord errors counts as touching. Boxes decide first; the true
-gap is asked for only where they meet. The work is bounded, and what a bound leaves open is not reported.
+Judged on the meshes of the proof, so nearer than their chord errors counts as touching. Boxes decide first; meshes are
+finished and gaps measured only where they meet. The work is bounded, and what a bound leaves open is not reported.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
 
 import manifold3d
 import numpy as np
@@ -15,10 +15,10 @@ from numpy.typing import NDArray
 from platewright.backend.contract import PatchKind
 from platewright.lang.problems import Problem
 
-from .flatten import Mesher, proof_rung
+from .flatten import Prover, proof_rung
 from .graph import Assembly, Occurrence, Solid, Thing
 from .mistakes import Problems
-from .solids.bounds import bounds
+from .solids.recipe import Point3, Recipe
 from .solids.transform import largest_scale
 
 F64 = NDArray[np.float64]
@@ -37,9 +37,9 @@ _FLUSH = 1e-6
 """Of its size: flat parts nearer than this touch."""
 
 
-def check_sizes(roots: Iterable[Thing]) -> tuple[Problem, ...]:
+def check_sizes(roots: Iterable[Thing], leaves: Leaves) -> tuple[Problem, ...]:
     """Warnings for whole models under 0.1 mm or over 100 m."""
-    problems, leaves = Problems(), _Leaves()
+    problems = Problems()
     for root in roots:
         found = leaves.of(root)
         reach = float((found.high.max(axis=0) - found.low.min(axis=0)).max()) if len(found.solids) else 1.0
@@ -51,12 +51,12 @@ def check_sizes(roots: Iterable[Thing]) -> tuple[Problem, ...]:
     return problems.all()
 
 
-def check_contacts(things: Sequence[Thing], mesher: Mesher) -> tuple[Problem, ...]:
+def check_contacts(things: Sequence[Thing], leaves: Leaves, mesher: Prover) -> tuple[Problem, ...]:
     """Warnings for copies that touch nothing else placed in their assembly, one for each `place` line, or one for all.
 
     Cost: boxes of all copies, and at most `MOST_GAPS` gaps between meshes of the proof.
     """
-    problems, contacts = Problems(), _Contacts(mesher)
+    problems, contacts = Problems(), _Contacts(mesher, leaves)
     hint = 'move it, or say `accept "floating-part"` where it is meant'
     for assembly in _assemblies(things):
         floating = list(contacts.floating(assembly))
@@ -96,9 +96,13 @@ class _Placed(Struct, frozen=True, eq=False):
     high: F64
 
 
-class _Leaves(Struct):
-    """The solids below things, worked out once for each thing. Things hold each other at most `limits.NESTING` deep."""
+class Leaves(Struct):
+    """The solids below things, worked out once for each thing. Things hold each other at most `limits.NESTING` deep.
 
+    `box` gives the box of a recipe.
+    """
+
+    box: Callable[[Recipe], tuple[Point3, Point3]]
     known: dict[int, _Placed] = field(default_factory=dict)
 
     def of(self, thing: Thing) -> _Placed:
@@ -108,7 +112,7 @@ class _Leaves(Struct):
         return self.known[id(thing)]
 
     def _solid(self, solid: Solid) -> _Placed:
-        low, high = bounds(solid.recipe)
+        low, high = self.box(solid.recipe)
         return _Placed((solid,), np.eye(3, 4)[None], np.array([low]), np.array([high]))
 
     def _assembly(self, assembly: Assembly) -> _Placed:
@@ -131,8 +135,8 @@ class _Leaves(Struct):
 
 
 class _Contacts(Struct):
-    mesher: Mesher
-    leaves: _Leaves = field(default_factory=_Leaves)
+    mesher: Prover
+    leaves: Leaves
     gaps: int = MOST_GAPS
     boxes: int = MOST_BOXES
     known: dict[tuple[int, int, bytes], bool] = field(default_factory=dict)
@@ -148,7 +152,7 @@ class _Contacts(Struct):
             return
         low = np.array([each.low.min(axis=0) for each in placed])
         high = np.array([each.high.max(axis=0) for each in placed])
-        reach = np.array([max(self._near(solid) for solid in set(each.solids)) for each in placed])
+        reach = np.array([max(self._nearest(solid) for solid in set(each.solids)) for each in placed])
         touches = np.zeros(len(copies), np.bool_)
         for k in range(len(copies)):
             if touches[k]:
@@ -168,10 +172,13 @@ class _Contacts(Struct):
         self.boxes -= len(placed)
         if self.boxes < 0:
             return -1
-        near = reach[k] + reach
-        meets = (low <= high[k] + near[:, None]).all(axis=1) & (high >= low[k] - near[:, None]).all(axis=1)
+        meets = _meets(low, high, low[k], high[k], reach[k] + reach)
         meets[k] = False
         others = np.flatnonzero(meets)
+        if not len(others):
+            return None
+        near = np.array([self._nearness(placed[other]) for other in others.tolist()]) + self._nearness(placed[k])
+        others = others[_meets(low[others], high[others], low[k], high[k], near)]
         shared = np.minimum(high[others], high[k]) - np.maximum(low[others], low[k])
         others = others[np.argsort(-shared.min(axis=1), kind="stable")]
         for other in others[:MOST_NEIGHBOURS].tolist():
@@ -184,8 +191,7 @@ class _Contacts(Struct):
         also = np.array([self._near(solid) for solid in other.solids])
         tested = 0
         for k in range(len(one.solids)):
-            reach = (near[k] + also)[:, None]
-            meets = (other.low <= one.high[k] + reach).all(axis=1) & (other.high >= one.low[k] - reach).all(axis=1)
+            meets = _meets(other.low, other.high, one.low[k], one.high[k], near[k] + also)
             for j in np.flatnonzero(meets).tolist():
                 tested += 1
                 if tested > MOST_NEIGHBOURS or self._meet(one, k, other, j):
@@ -210,13 +216,23 @@ class _Contacts(Struct):
             self.known[key] = bool(gap <= near)
         return self.known[key]
 
+    def _nearness(self, placed: _Placed) -> float:
+        return max(self._near(solid) for solid in set(placed.solids))
+
     def _near(self, solid: Solid) -> float:
+        """How near another may be to touch it."""
         return self._solid(solid)[1]
+
+    def _nearest(self, solid: Solid) -> float:
+        """At least `_near`, for which no mesh need be finished."""
+        low, high = self.leaves.box(solid.recipe)
+        size = max(b - a for a, b in zip(low, high, strict=True))
+        return max(2.0 * proof_rung(solid.recipe, self.mesher), 2.0 * _FLUSH * size)
 
     def _solid(self, solid: Solid) -> tuple[manifold3d.Manifold | None, float]:
         """A solid as the boolean kernel has it, and how near another may be to touch it."""
         if id(solid) not in self.solids:
-            rung = proof_rung(solid)
+            rung = proof_rung(solid.recipe, self.mesher)
             mesh, _ = self.mesher(solid.recipe, rung)
             made, near = None, rung
             if mesh is not None:
@@ -231,3 +247,9 @@ class _Contacts(Struct):
 def _scale(placement: F64) -> float:
     a, b, c = placement.tolist()
     return largest_scale((tuple(a), tuple(b), tuple(c)))
+
+
+def _meets(low: F64, high: F64, other_low: F64, other_high: F64, near: F64) -> NDArray[np.bool_]:
+    """Which boxes (k,3) another one meets, or passes within `near` (k,)."""
+    reach = near[:, None]
+    return np.asarray((low <= other_high + reach).all(axis=1) & (high >= other_low - reach).all(axis=1))

@@ -16,7 +16,7 @@ from platewright.lang.units import AREA, LENGTH, MASS, NUMBER, VOLUME, Dimension
 from .arithmetic import COMPARISONS, compare, matched, same
 from .build import Model
 from .expressions import evaluate, truth
-from .flatten import Flattened, Mesher, flatten, prove
+from .flatten import Flattened, Mesher, Prover, flatten, prove
 from .graph import Solid
 from .measure import area, least_clearance, volume
 from .mistakes import Mistake, Problems, mistake
@@ -42,10 +42,10 @@ or mass is among them, for these are measured on triangles (`solids.bounds.facts
 ON_TRIANGLES = ("volume", "area", "mass")
 
 
-def judge_facts(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
+def judge_facts(model: Model, mesher: Prover) -> tuple[Problem, ...]:
     """One error for each fact that does not hold, or for what is wrong with the parts of its subject.
 
-    Cost: a mesh at the rung of proof for each part of a subject, and one at its rung of facts for each measured by
+    Cost: a boolean at the rung of proof for each part of a subject, and one at its rung of facts for each measured by
     volume, area, mass or size; distances between marks need none.
     """
     problems = Problems()

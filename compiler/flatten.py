@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Callable, Sequence
-from typing import TypeVar
+from typing import Protocol, TypeVar
 
 import numpy as np
 from msgspec import Struct
@@ -18,11 +18,11 @@ from . import limits
 from .graph import Assembly, Entry, Solid, Thing, bracketed, walk
 from .materials import Surface, linear
 from .mistakes import Problems, mistake
-from .solids.bounds import bounds, facts_rung
+from .solids.bounds import facts_rung
 from .solids.coarse import coarse_surfaces
 from .solids.flaw import Flaw
 from .solids.ladder import COARSEST, first_at_most
-from .solids.recipe import Affine, Recipe
+from .solids.recipe import Affine, Point3, Recipe
 from .solids.transform import determinant, largest_scale, matrix
 
 _T = TypeVar("_T", bound=np.generic)
@@ -32,6 +32,20 @@ Mesher = Callable[[Recipe, float], "tuple[Mesh | None, tuple[Flaw, ...]]"]
 
 Alter = Callable[[Entry, F64, Mesh], "Mesh | None"]
 """What becomes of one placed copy's mesh, its placement (4,4) given: another mesh, the same, or nothing."""
+
+
+class Prover(Protocol):
+    """A mesher that can also tell less of a recipe, for less."""
+
+    def __call__(self, recipe: Recipe, rung: float) -> tuple[Mesh | None, tuple[Flaw, ...]]:
+        """The mesh at a chord error in mm, or None; and the flaws."""
+
+    def flaws(self, recipe: Recipe, rung: float) -> tuple[Flaw, ...]:
+        """The flaws alone."""
+
+    def box(self, recipe: Recipe) -> tuple[Point3, Point3]:
+        """The box round the solid, `solids.bounds.bounds`."""
+
 
 PROOF_PARTS = 200.0
 """A part is proved at a chord error of its largest side over this."""
@@ -432,21 +446,24 @@ def _key(nodes: Sequence[contract.Node], placements: F64, meshes: Sequence[Mesh]
     return content.hexdigest()
 
 
-def prove(things: Sequence[Thing], sources: Sequence[Span], mesher: Mesher) -> tuple[Problem, ...]:
-    """Problems of every solid below `things`, found by meshing each once at a coarse rung of its own size.
+def prove(things: Sequence[Thing], sources: Sequence[Span], prover: Prover) -> tuple[Problem, ...]:
+    """Problems of every solid below `things`, found by putting each together once at a coarse rung of its own size.
 
-    Cost: a coarse mesh for each solid; nothing is placed.
+    Cost: a coarse boolean for each solid; nothing is placed, no mesh is finished.
     """
     problems: dict[Problem, None] = {}
     for solid in _solids(things):
-        _, flaws = _meshed(solid, proof_rung(solid), mesher)
+        rung = proof_rung(solid.recipe, prover)
+        flaws = prover.flaws(solid.recipe, rung)
+        if not any(flaw.is_error for flaw in flaws):
+            flaws = (*flaws, *coarse_surfaces(solid.recipe, rung))
         problems.update((problem_of(flaw, solid, sources), None) for flaw in flaws)
     return tuple(problems)
 
 
-def proof_rung(solid: Solid) -> float:
+def proof_rung(recipe: Recipe, prover: Prover) -> float:
     """The chord error in mm at which a part is proved."""
-    low, high = bounds(solid.recipe)
+    low, high = prover.box(recipe)
     reach = max(b - a for a, b in zip(low, high, strict=True))
     return first_at_most(reach / PROOF_PARTS) if reach > 0 else COARSEST
 

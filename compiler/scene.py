@@ -17,13 +17,13 @@ from platewright.lang.source import Span
 from .acceptance import Acceptance, read_acceptances, unused
 from .build import Model as Built
 from .build import build_model
-from .contacts import check_contacts, check_sizes
+from .contacts import Leaves, check_contacts, check_sizes
 from .dump import dump_graph, dump_tree, dump_triangles
 from .expect import judge_facts
 from .expressions import evaluate
 from .figure_reading import default_figure, read_figure
 from .figures import plan_figure
-from .flatten import Mesher, flatten
+from .flatten import Mesher, Prover, flatten
 from .flatten import prove as prove_things
 from .listing import Listing, list_scene
 from .mistakes import Problems, mistake
@@ -191,7 +191,7 @@ def figure_names(project: Project) -> tuple[str, ...]:
     return tuple(project.modules[project.main].figures)
 
 
-def prove(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
+def prove(model: Model, mesher: Prover) -> tuple[Problem, ...]:
     """Problems that only meshing shows: outlines that cross themselves, parts that are empty, in pieces, or float.
 
     Covers every part of the model and of those of its figures; of a model that is not sound, what could be made,
@@ -203,12 +203,13 @@ def prove(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
         problems.extend(prove_things(tuple(built.things.values()), built.sources, mesher))
     # What a figure sets may lift parts off on purpose.
     if model.is_sound:
-        problems.extend(check_sizes(model.built.things[root] for root in model.built.roots))
-        problems.extend(check_contacts(tuple(model.built.things.values()), mesher))
+        leaves = Leaves(mesher.box)
+        problems.extend(check_sizes([model.built.things[root] for root in model.built.roots], leaves))
+        problems.extend(check_contacts(tuple(model.built.things.values()), leaves, mesher))
     return problems.all()
 
 
-def judge(model: Model, mesher: Mesher) -> tuple[Problem, ...]:
+def judge(model: Model, mesher: Prover) -> tuple[Problem, ...]:
     """Errors for facts that do not hold. What holds a part that could not be made or proved is passed over."""
     return tuple(each for each in judge_facts(model.built, mesher) if (each.code, each.span) not in model.known)
 

@@ -31,9 +31,9 @@ class Kept:
 
 
 def made_with(blanks: Kept, recipe: Recipe) -> Mesh:
-    mesh, flaws = combine(recipe, RUNG, blanks)
-    assert mesh is not None and not any(flaw.is_error for flaw in flaws)
-    return mesh()
+    unfinished, flaws = combine(recipe, RUNG, blanks)
+    assert unfinished is not None and not any(flaw.is_error for flaw in flaws)
+    return unfinished.mesh()
 
 
 def alike(one: Mesh | None, other: Mesh) -> bool:
@@ -105,11 +105,11 @@ def test_kept_blanks_change_no_byte() -> None:
 
 def test_the_mesh_may_be_asked_for_later_and_again() -> None:
     recipe = Recipe((add(PLATE), cut(HOLE, move((0.0, 0.0, -3.0)))))
-    mesh, flaws = combine(recipe, RUNG, blank)
-    assert mesh is not None and flaws == ()
+    unfinished, flaws = combine(recipe, RUNG, blank)
+    assert unfinished is not None and flaws == ()
     build(Recipe((add(Sphere(6.0)), cut(HOLE))), RUNG)
     expected, _ = build(recipe, RUNG)
-    assert alike(expected, mesh()) and alike(expected, mesh())
+    assert alike(expected, unfinished.mesh()) and alike(expected, unfinished.mesh())
 
 
 @pytest.mark.parametrize("shape", [PLATE, HOLE, Sphere(5.0)])

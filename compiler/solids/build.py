@@ -47,12 +47,19 @@ def build(recipe: Recipe, rung: float) -> tuple[Mesh | None, tuple[Flaw, ...]]:
     (`no-area`, `outline-crosses-itself`, `hole-outside`, `negative-radius`) and `torus-meets-itself`.
     SolidError means that the recipe should have been refused before. The same recipe and rung give the same bytes.
     """
-    mesh, flaws = combine(recipe, rung, blank)
-    return None if mesh is None else mesh(), flaws
+    unfinished, flaws = combine(recipe, rung, blank)
+    return None if unfinished is None else unfinished.mesh(), flaws
 
 
-def combine(recipe: Recipe, rung: float, blanks: Blanks) -> tuple[Callable[[], Mesh] | None, tuple[Flaw, ...]]:
-    """All of `build` but for the mesh, which is worked out when it is called for. Flaws and bytes are those of `build`,
+class Unfinished(NamedTuple):
+    """A sound solid, put together: about as many triangles as its mesh will have, and what makes that mesh."""
+
+    n_faces: int
+    mesh: Callable[[], Mesh]
+
+
+def combine(recipe: Recipe, rung: float, blanks: Blanks) -> tuple[Unfinished | None, tuple[Flaw, ...]]:
+    """All of `build` but for the mesh, which is made when it is called for. Flaws and bytes are those of `build`,
     whatever keeps the `blanks` that are asked for.
     """
     flaws = _before(recipe, rung)
@@ -62,7 +69,7 @@ def combine(recipe: Recipe, rung: float, blanks: Blanks) -> tuple[Callable[[], M
     if only is not None:
         placed, alone = only
         shell = blanks(alone, rung / transform.largest_scale(placed.placements[0])).shell
-        return lambda: _from_shell(key_of(recipe, rung), placed, shell), ()
+        return Unfinished(len(shell.faces), lambda: _from_shell(key_of(recipe, rung), placed, shell)), ()
     workshop = _Workshop(rung, blanks)
     whole = workshop.make(recipe, 1.0, is_outermost=True)
     surfaces = [] if whole.manifold.is_empty() else [_Piece.of(each) for each in whole.manifold.decompose()]
@@ -72,7 +79,8 @@ def combine(recipe: Recipe, rung: float, blanks: Blanks) -> tuple[Callable[[], M
     if any(flaw.is_error for flaw in flaws):
         return None, flaws
     has_specks = len(pieces) < len(surfaces)
-    return lambda: traced(key_of(recipe, rung), whole.manifold, workshop.leaves, has_specks), flaws
+    solid, leaves = whole.manifold, tuple(workshop.leaves)
+    return Unfinished(solid.num_tri(), lambda: traced(key_of(recipe, rung), solid, leaves, has_specks)), flaws
 
 
 def key_of(recipe: Recipe, rung: float) -> str:

@@ -7,9 +7,10 @@ from dataclasses import dataclass, field
 
 from platewright.backend import contract
 from platewright.compiler import scene
+from platewright.compiler.solids.bounds import bounds
 from platewright.compiler.solids.build import build
 from platewright.compiler.solids.flaw import Flaw
-from platewright.compiler.solids.recipe import Recipe
+from platewright.compiler.solids.recipe import Point3, Recipe
 from platewright.lang.problems import Problem, is_error
 
 MAIN = "scene.plate"
@@ -27,6 +28,12 @@ class Meshes:
         if (recipe, rung) not in self.kept:
             self.kept[recipe, rung] = build(recipe, rung)
         return self.kept[recipe, rung]
+
+    def flaws(self, recipe: Recipe, rung: float) -> tuple[Flaw, ...]:
+        return self(recipe, rung)[1]
+
+    def box(self, recipe: Recipe) -> tuple[Point3, Point3]:
+        return bounds(recipe)
 
 
 @dataclass
