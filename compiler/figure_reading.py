@@ -10,24 +10,30 @@ from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Problem
 from platewright.lang.source import Span
+from platewright.lang.units import NUMBER
 
 from . import limits
 from .build import Model
-from .expressions import evaluate, text
+from .emphasis import read_stresses
+from .expressions import evaluate, quantity, text
 from .graph import Solid, Thing
 from .lightings import DEFAULT, Sources
 from .mistakes import Mistake, Problems, confined, mistake
 from .modules import find_kind
 from .placement import positive_length
-from .projections import Viewpoint, standard, standard_names
-from .readings import LATER, expression, optional, word
+from .projections import standard
+from .readings import LATER, expression, optional
 from .scope import Scope, did_you_mean
-from .section_reading import read_cuts, read_details
+from .section_reading import read_cuts, read_details, read_interruptions
 from .specs import Spec
+from .styles import read_manner
 from .subjects import find_subject
 from .values import Proportion, kind_of
+from .view_reading import find_viewpoint, read_views
 
 FILE_KINDS: tuple[FileKind, ...] = get_args(FileKind)
+
+MOST_EXPLODED = 100.0
 
 
 def read_figure(model: Model, line: tree.Line, name: str) -> tuple[Spec | None, tuple[Problem, ...]]:
@@ -85,7 +91,12 @@ class _Reading:
         changes: dict[str, object] = {}
         if found is not None:
             changes["cuts"] = read_cuts(self.line.lines, found.subject, self.scope, self.problems)
+            changes["interruptions"] = read_interruptions(self.line.lines, found.subject, self.scope, self.problems)
             changes["details"] = read_details(self.line.lines, found.subject, found.path, self.scope, self.problems)
+            changes["stresses"] = read_stresses(self.line.lines, found.subject, found.path, self.scope, self.problems)
+            views = read_views(self.model, self.line.lines, found.subject, self.problems)
+            changes["view_set"], changes["looks"] = views.of_set, views.looks
+        changes["manner"] = read_manner(self.line.lines, self.scope, self.problems)
         for each, line in lines.items():
             with self.problems.collecting():
                 changes.update(self._read(each, line.head))
@@ -100,7 +111,7 @@ class _Reading:
         view, lighting = optional(line.head, "viewpoint"), optional(line.head, "lighting")
         with self.problems.collecting():
             if isinstance(view, tree.Path):
-                viewpoint = self._viewpoint(view)
+                viewpoint = find_viewpoint(self.model, view, self.problems)
         with self.problems.collecting():
             if isinstance(lighting, tree.Path):
                 sources = self._lighting(lighting)
@@ -108,25 +119,6 @@ class _Reading:
         assert isinstance(written, (tree.Path, tree.Call))
         subject = find_subject(self.model, written, self.problems)
         return Spec(self.name, subject.thing, subject.path, viewpoint, sources, self.line.head.span)
-
-    def _viewpoint(self, path: tree.Path) -> Viewpoint:
-        module = self.model.module
-        if len(path.steps) == 1 and path.dotted not in module.names:
-            found = standard(path.dotted)
-            if found is not None:
-                return found
-            if path.dotted in module.broken:
-                raise Mistake(None)
-            declared = (name for name, each in module.names.items() if each.kind == "viewpoint")
-            near = nearest(path.dotted, [*declared, *standard_names()])
-            hint = did_you_mean(near) or "declare it with `viewpoint`, or take front, top, isometric …"
-            raise mistake("unknown-name", path.span, f"there is no viewpoint `{path.dotted}`", hint)
-        here, declaration = find_kind(self.model.modules, module, path, ("viewpoint",))
-        described = self.model.viewpoints[here.file, declaration.name]
-        self.problems.extend(described.problems)
-        if described.value is None:
-            raise Mistake(None)
-        return described.value
 
     def _lighting(self, path: tree.Path) -> Sources:
         here, declaration = find_kind(self.model.modules, self.model.module, path, ("lighting",))
@@ -153,8 +145,8 @@ class _Reading:
                 return {"true_projection": True}
             case "margin":
                 return {"margin": positive_length(expression(head, "margin"), self.scope, "margin", zero=True)}
-            case "drawn as":
-                return {"drawn_as": word(head, "style")}
+            case "exploded":
+                return {"exploded": self._factor(optional(head, "factor"))}
             case "files":
                 return {"files": self._files(head)}
             case "title" | "alt" | "description":
@@ -166,6 +158,16 @@ class _Reading:
         if value > limits.PAPER_MM:
             raise mistake("out-of-range", written.span, f"{what}: more than {limits.PAPER_MM:g} mm of paper, the limit")
         return value
+
+    def _factor(self, written: tree.Expression | None) -> float:
+        """How far an exploded figure moves things, in parts of what they state."""
+        if written is None:
+            return 1.0
+        factor = quantity(written, self.scope, NUMBER)
+        if not 0 <= factor <= MOST_EXPLODED:
+            sentence = f"expected a factor from 0 to {MOST_EXPLODED:g}, found {factor:g}"
+            raise mistake("out-of-range", written.span, sentence)
+        return factor
 
     def _scale(self, written: tree.Expression | None) -> float | Literal["standard"]:
         if written is None:

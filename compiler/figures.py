@@ -10,23 +10,30 @@ from collections.abc import Callable, Sequence
 from dataclasses import replace
 
 import numpy as np
-from msgspec import Struct
+from msgspec import Struct, structs
 from platewright.backend import camera, contract
 from platewright.backend.contract import F64
 from platewright.lang.problems import Problem, is_error
 
 from . import limits
 from .build import Model
+from .emphasis import emphasis_of
+from .explosion import Explosion, explode, moved, trace_lines
 from .extent import box_corners
-from .flatten import Flattened, Mesher, flatten
+from .filling import report_filling
+from .flatten import Flattened, Mesher, flatten, walked
 from .frames import RESOLUTION_DPI, WIDTH_MM, Frame, content, frame_of, held_frame
+from .graph import Entry, Point
+from .interruptions import Interrupting
 from .layout import Box
 from .lightings import lights_for
 from .mistakes import Mistake, Problems, confined, mistake
-from .projections import Central, Parallel, unit_projection
+from .projections import Central, Parallel, is_pictorial, unit_projection
 from .sections import Opening, away_of, cutter_of, facing, letter_of, trace_of
+from .signs import paper_for_arrows, strip_for_symbol, symbol_of, view_arrow
 from .solids.ladder import COARSEST, first_at_most
 from .specs import Spec
+from .styles import style_of
 from .views import View, cuts_of, views_of
 
 ERROR_ON_PAPER_MM = 0.02
@@ -50,10 +57,9 @@ def plan_figure(
 ) -> tuple[contract.Job | None, tuple[Problem, ...]]:
     """The job that draws a figure. Cost: one or two flattenings a geometry, and a pass over the vertices a view."""
     problems = Problems()
-    planner = _Planner(model, spec, mesher, problems)
     job: contract.Job | None = None
     with problems.collecting():
-        job = planner.job(resolution or RESOLUTION_DPI, measures)
+        job = _Planner(model, spec, mesher, problems).job(resolution or RESOLUTION_DPI, measures)
     found = tuple(confined(problem, spec.name) for problem in problems.all())
     return (None if problems.has_errors else job), found
 
@@ -71,13 +77,15 @@ class _Planner:
 
     def __init__(self, model: Model, spec: Spec, mesher: Mesher, problems: Problems) -> None:
         self.model, self.spec, self.mesher, self.problems = model, spec, mesher, problems
-        self.shapes: dict[tuple[float, tuple[int, ...]], Flattened] = {}
+        self.shapes: dict[tuple[float, tuple[int, ...], Point | None], Flattened] = {}
         self.sights: dict[int, tuple[float, float, float]] = {}
-        self.corners, _ = box_corners(spec.subject, spec.path)
+        self.corners, owners = box_corners(spec.subject, spec.path)
+        self.explosion = self._explosion()
+        self.reach = self.corners if self.explosion is None else self.corners + self.explosion.shifts[owners]
 
     def job(self, resolution: float, measures: bool) -> contract.Job:
         spec = self.spec
-        corners = self.corners
+        corners = self.reach
         shots = [
             _Shot(view, unit_projection(view.viewpoint, view.factor, spec.true_projection), COARSEST)
             for view in views_of(spec)
@@ -92,19 +100,54 @@ class _Planner:
             frame = self._frame(shots, self._vertices)
         return self._sheet(shots, frame, resolution, measures)
 
+    def _explosion(self) -> Explosion | None:
+        """How things are moved; None where nothing is, so that the figure is the assembled one."""
+        spec = self.spec
+        if not spec.exploded:
+            return None
+        explosion = explode(walked(spec.subject, spec.path)[0], spec.exploded)
+        if not explosion.moves:
+            sentence = f"nothing in `{spec.path}` explodes, so the figure shows it assembled"
+            self.problems.warn(
+                "no-effect", spec.span, sentence, "give placed things `explodes`, such as `explodes 40 mm`"
+            )
+            return None
+        if len(explosion.moves) > limits.TRACES:
+            sentence = f"{len(explosion.moves):,} things explode by themselves; {limits.TRACES:,} is the limit"
+            raise mistake("too-much", spec.span, sentence, "let what holds them explode as one")
+        return explosion
+
     def _vertices(self, shot: _Shot) -> F64:
-        return self._shape(shot).geometry.vertices
+        return self._moved(self._shape(shot).geometry)
+
+    def _moved(self, geometry: contract.Geometry) -> F64:
+        return geometry.vertices if self.explosion is None else moved(geometry, self.explosion.shifts)
 
     def _shape(self, shot: _Shot) -> Flattened:
         """What a view shows, as triangles. Raises Mistake, without a problem of its own, where a part has none."""
-        key = (shot.rung, shot.view.cuts)
+        key = (shot.rung, shot.view.cuts, shot.unit.sight if self.spec.interruptions or shot.view.cuts else None)
         if key not in self.shapes:
             spec, opening = self.spec, self._opening(shot)
-            alter = opening.alter if opening.cutters else None
-            flattened, problems = flatten(spec.subject, spec.path, shot.rung, self.model.sources, self.mesher, alter)
+            interrupting = Interrupting(spec.interruptions, shot.unit.sight, self.corners)
+
+            def alter(entry: Entry, placement: F64, mesh: contract.Mesh) -> contract.Mesh | None:
+                left = opening.alter(entry, placement, mesh) if opening.cutters else mesh
+                return interrupting.alter(entry, placement, left) if left is not None else None
+
+            flattened, problems = flatten(
+                spec.subject,
+                spec.path,
+                shot.rung,
+                self.model.sources,
+                self.mesher,
+                alter if opening.cutters or spec.interruptions else None,
+            )
             # Warnings about parts are the scene's, and `prove` has given them.
             self.problems.extend(tuple(problem for problem in problems if is_error(problem)))
             opening.judge(cuts_of(shot.view, spec), self.problems)
+            for each, n_broken in zip(spec.interruptions, interrupting.n_broken, strict=True):
+                if not n_broken:
+                    self.problems.error("section-misses", each.span, "no part reaches through the stretch left out")
             if flattened is None or self.problems.has_errors:
                 raise Mistake(None)
             self.shapes[key] = flattened
@@ -119,13 +162,25 @@ class _Planner:
         return [_Shot(each.view, each.unit, min(each.rung, self._rung(each, frame, points(each)))) for each in shots]
 
     def _frame(self, shots: Sequence[_Shot], points: Callable[[_Shot], F64]) -> Frame:
-        boxes = [self._box(shot.view, shot.unit, points(shot)) for shot in shots]
+        boxes = self._boxes(shots, points)
         main = shots[0].view.viewpoint
         if isinstance(main, Central) and len(shots) == 1:
             held = held_frame(self.spec, main, boxes[0])
             if held is not None:
                 return held
+        frame = frame_of(self.spec, boxes)
+        view_set = self.spec.view_set
+        if view_set is None or symbol_of(view_set.method, boxes, frame, self.spec.margin) is not None:
+            return frame
+        last, strip = max(box.row for box in boxes), strip_for_symbol(frame.width)
+        boxes = [
+            structs.replace(box, around=(*box.around[:3], box.around[3] + strip)) if box.row == last else box
+            for box in boxes
+        ]
         return frame_of(self.spec, boxes)
+
+    def _boxes(self, shots: Sequence[_Shot], points: Callable[[_Shot], F64]) -> list[Box]:
+        return [self._box(shot.view, shot.unit, points(shot)) for shot in shots]
 
     def _box(self, view: View, unit: contract.Projection, points: F64) -> Box:
         """The box of a view. Raises Mistake for a subject behind the eye to which the view would be fitted."""
@@ -154,7 +209,11 @@ class _Planner:
             along = np.cross(facing(self.spec.cuts[number]), unit.sight)
             across, up = abs(float(along @ np.array(unit.right))), abs(float(along @ np.array(unit.up)))
             aside, upright = max(aside, across * TRACE_FREE_MM), max(upright, up * TRACE_FREE_MM)
-        return (aside, upright + above, aside, upright)
+        free = (aside, upright, aside, upright)
+        if view.is_main:
+            arrows = paper_for_arrows(self.spec.looks, unit, title_height(self.spec.width or WIDTH_MM))
+            free = (max(aside, arrows[0]), max(upright, arrows[1]), max(aside, arrows[2]), max(upright, arrows[3]))
+        return (free[0], free[1] + above, free[2], free[3])
 
     def _rung(self, shot: _Shot, frame: Frame, points: F64) -> float:
         magnification, viewpoint = frame.scale * camera.magnification(shot.unit), shot.view.viewpoint
@@ -180,12 +239,23 @@ class _Planner:
         for shot, spot in zip(shots, frame.spots, strict=True):
             shape = self._shape(shot)
             projection = camera.enlarged(shot.unit, frame.scale, spot.origin)
+            vertices = self._moved(shape.geometry)
             if shot.view.window is None:
-                self._seen(projection, spot.place, shape.geometry.vertices)
-            panels.append(self._panel(shot.view, projection, spot.place, shape.geometry, shapes.index(shape)))
+                self._seen(projection, spot.place, vertices)
+            panels.append(self._panel(shot.view, projection, spot.place, shape.geometry, shapes.index(shape), frame))
             if shot.view.title:
-                inscriptions.append(self._title(shot.view, projection, shape.geometry.vertices, frame))
-        panels[0] = replace(panels[0], detail_frames=self._detail_frames(shots, panels[0].projection))
+                inscriptions.append(self._title(shot.view, projection, vertices, frame))
+        panels[0] = replace(
+            panels[0],
+            detail_frames=self._detail_frames(shots, panels[0].projection),
+            arrows=tuple(
+                view_arrow(look, panels[0].projection, self._vertices(shots[0]), title_height(frame.width))
+                for look in spec.looks
+            ),
+        )
+        boxes = self._boxes(shots, self._vertices)
+        symbol = None if spec.view_set is None else symbol_of(spec.view_set.method, boxes, frame, spec.margin)
+        report_filling(spec, boxes, frame, self._vertices(shots[0]), self.problems)
         wanted = _measured(shapes[0].geometry) if measures else ()
         sheet = contract.Sheet(
             spec.name,
@@ -199,6 +269,7 @@ class _Planner:
             "",
             wanted,
             tuple(inscriptions),
+            () if symbol is None else (symbol,),
         )
         return contract.Job(tuple(shape.geometry for shape in shapes), shapes[0].materials, sheet)
 
@@ -209,11 +280,17 @@ class _Planner:
         place: tuple[float, float, float, float],
         geometry: contract.Geometry,
         row: int,
+        frame: Frame,
     ) -> contract.Panel:
         spec = self.spec
+        emphasis = emphasis_of(
+            spec.stresses, [node.path for node in geometry.nodes], [node.parent for node in geometry.nodes]
+        )
+        self._shown(geometry, emphasis)
+        curves = trace_lines(self.explosion, geometry, emphasis) if self.explosion is not None else ()
         middle = (geometry.vertices.min(axis=0) + geometry.vertices.max(axis=0)) / 2
         target = (float(middle[0]), float(middle[1]), float(middle[2]))
-        style = contract.Style(spec.drawn_as, 4 if spec.drawn_as == "tone" else 1)
+        style = style_of(spec.manner, frame.width, is_pictorial(view.viewpoint))
         lighting = lights_for(spec.sources, projection, target)
         return contract.Panel(
             view.name,
@@ -222,17 +299,29 @@ class _Planner:
             place,
             style,
             lighting,
+            displacement=self.explosion.shifts if self.explosion is not None else None,
+            emphasis=emphasis,
+            curves=curves,
             section=self._section(view, projection, geometry),
             clip=_circle(projection, view),
             detail_frames=_frame_round(projection, view),
             cutting_planes=self._traces(view, projection, geometry),
         )
 
+    def _shown(self, geometry: contract.Geometry, emphasis: contract.U8 | None) -> None:
+        """Raises Mistake where everything is hidden."""
+        if emphasis is None:
+            return
+        shown = emphasis[[row for row, node in enumerate(geometry.nodes) if node.mesh >= 0]]
+        if len(shown) and bool((shown == contract.Emphasis.HIDE).all()):
+            span = self.spec.stresses[-1].span
+            raise mistake("nothing-to-show", span, f"everything in `{self.spec.path}` is hidden", "hide less")
+
     def _links(self, shots: Sequence[_Shot]) -> tuple[contract.Link, ...]:
         """Which panel is the parent of which section or detail."""
         found: list[contract.Link] = []
         for child, shot in enumerate(shots):
-            if shot.view.window is not None:
+            if shot.view.window is not None and shot.view.window.letter:
                 found.append(contract.Link("detail", 0, child, shot.view.window.letter))
                 continue
             for number in shot.view.cuts:
@@ -243,7 +332,7 @@ class _Planner:
     def _detail_frames(
         self, shots: Sequence[_Shot], projection: contract.Projection
     ) -> tuple[contract.DetailFrame, ...]:
-        windows = [shot.view.window for shot in shots if shot.view.window is not None]
+        windows = [each.view.window for each in shots if each.view.window is not None and each.view.window.letter]
         return tuple(
             contract.DetailFrame(each.centre, each.diameter * projection.scale, each.letter) for each in windows
         )
@@ -254,7 +343,7 @@ class _Planner:
         if window is not None:
             middle, _ = camera.to_page(projection, np.array([window.centre]))
             across, top = float(middle[0, 0]), float(middle[0, 1]) - window.diameter / 2 * projection.scale
-            text += f" ({self._scale_text(view, frame)})"
+            text += f" ({self._scale_text(view, frame)})" if window.letter else ""
         else:
             low, high, _ = content(projection, vertices)
             across, top = (low[0] + high[0]) / 2, low[1]

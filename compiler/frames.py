@@ -92,10 +92,15 @@ def _check_page(spec: Spec, width: float, height: float) -> None:
 
 def largest_standard(spec: Spec, limit: float) -> float:
     """The largest standard scale that is not above `limit`. Raises Mistake if none is."""
-    fitting = [each for each in STANDARD_SCALES if each <= limit * (1 + 1e-12)]
-    if not fitting:
+    scale = standard_below(limit)
+    if scale is None:
         raise mistake("out-of-range", spec.span, "no standard scale is small enough for this page")
-    return fitting[0]
+    return scale
+
+
+def standard_below(limit: float) -> float | None:
+    """The largest standard scale that is not above `limit`, None if none is."""
+    return next((each for each in STANDARD_SCALES if each <= limit * (1 + 1e-12)), None)
 
 
 def content(projection: Projection, points: F64) -> tuple[tuple[float, float], tuple[float, float], bool]:

@@ -5,6 +5,9 @@ Each is named in the message that enforces it.
 
 from __future__ import annotations
 
+TRACES = 5_000
+"""Things of one exploded figure that move by themselves, each with a trace line."""
+
 TURNS = 500
 """Turns of a helix or a spring."""
 

@@ -59,6 +59,10 @@ class Problems:
         """Report a warning."""
         self.add(Problem(code, Severity.WARNING, span, sentence, hint, related))
 
+    def note(self, code: str, span: Span, sentence: str, hint: str = "") -> None:
+        """Tell something that is neither wrong nor a likely slip."""
+        self.add(Problem(code, Severity.NOTE, span, sentence, hint))
+
     def collecting(self) -> _Collecting:
         """Turn a mistake raised inside a `with` block into a collected problem, and go on after the block."""
         return _Collecting(self)

@@ -84,7 +84,7 @@ def _which(name: str, labels: Sequence[str], step: tree.Step, scope: Scope) -> i
             return 0
         hint = f"such as `{bracketed(name, labels[0])}`"
         raise mistake("which-copy", step.span, f"there are {len(labels)} of `{name}`; brackets say which", hint)
-    label = _label(step.index, labels, scope)
+    label = label_of(step.index, labels, scope)
     if label in labels:
         return labels.index(label)
     if labels == [""]:
@@ -94,7 +94,7 @@ def _which(name: str, labels: Sequence[str], step: tree.Step, scope: Scope) -> i
     raise mistake("which-copy", step.span, f"{sentence}[{labels[-1]}]", did_you_mean(f"{name}[{near}]" if near else ""))
 
 
-def _label(index: tree.Expression, labels: Sequence[str], scope: Scope) -> str:
+def label_of(index: tree.Expression, labels: Sequence[str], scope: Scope) -> str:
     """What the brackets say: the name of a table row as it stands, or a value."""
     if isinstance(index, tree.Path) and (index.dotted in labels or scope.find(index.dotted) is None):
         return index.dotted

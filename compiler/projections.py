@@ -129,6 +129,11 @@ def along(sight: Point) -> Parallel:
     return Parallel(view, camera.along_axes(view), min(abs(each) for each in view.sight) > 1e-9)
 
 
+def square_to(sight: Point) -> Parallel:
+    """The orthographic view along a direction: a principal or an auxiliary one."""
+    return Parallel(camera.axes(sight), is_pictorial=False)
+
+
 def isometric(corner: Corner) -> Parallel:
     """All axes equally foreshortened, drawn at 30, 30 and 90 degrees."""
     view = camera.axes(corner.signs)

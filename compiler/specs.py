@@ -5,18 +5,19 @@ from __future__ import annotations
 from typing import Literal
 
 from msgspec import Struct
-from platewright.backend.contract import DrawnAs, FileKind
+from platewright.backend.contract import FileKind
 from platewright.lang.source import Span
 
+from .emphasis import Stress
 from .graph import Thing
+from .interruptions import Interruption
 from .lightings import Sources
 from .projections import Viewpoint
 from .sections import Cut
+from .styles import Manner
+from .view_sets import Look, ViewSet
 
 MARGIN_MM = 2.0
-
-DEFAULT_STYLE: DrawnAs = "tone"
-"""The manner of drawing of a figure that names none."""
 
 
 class Detail(Struct, frozen=True):
@@ -29,7 +30,10 @@ class Detail(Struct, frozen=True):
 
 
 class Spec(Struct, frozen=True):
-    """One figure. Lengths are mm on paper. `uncut` are paths of what sections leave whole, with all below it."""
+    """One figure. Lengths are mm on paper.
+
+    `uncut` are paths of what sections leave whole, with all below it. `exploded` is the factor on every `explodes`.
+    """
 
     name: str
     subject: Thing
@@ -43,11 +47,16 @@ class Spec(Struct, frozen=True):
     scale: float | Literal["standard"] | None = None
     true_projection: bool = False
     margin: float = MARGIN_MM
-    drawn_as: DrawnAs = DEFAULT_STYLE
+    manner: Manner = Manner()
     files: tuple[FileKind, ...] = ("png",)
     title: str = ""
     alt: str = ""
     description: str = ""
     cuts: tuple[Cut, ...] = ()
     uncut: tuple[str, ...] = ()
+    exploded: float | None = None
+    stresses: tuple[Stress, ...] = ()
+    view_set: ViewSet | None = None
+    looks: tuple[Look, ...] = ()
     details: tuple[Detail, ...] = ()
+    interruptions: tuple[Interruption, ...] = ()

@@ -36,13 +36,40 @@ class View(Struct, frozen=True):
     factor: float = 1.0
     window: Window | None = None
     title: str = ""
+    is_main: bool = False
     cuts: tuple[int, ...] = ()
     traces: tuple[int, ...] = ()
 
 
 def views_of(spec: Spec) -> tuple[View, ...]:
     """The views that a figure asks for, the main one first. Raises Mistake."""
-    return detailed(sectioned((View(spec.path, spec.viewpoint),), spec), spec)
+    views = _of_set(spec) if spec.view_set is not None else (View(spec.path, spec.viewpoint, is_main=True),)
+    return detailed((*sectioned(views, spec), *_looks(views, spec)), spec)
+
+
+def _of_set(spec: Spec) -> tuple[View, ...]:
+    """The views of a set, the front view first; where they stand says which they are."""
+    assert spec.view_set is not None
+    return tuple(
+        View(f"{spec.path} {each.name}", each.viewpoint, each.column, each.row, is_main=each.name == "front")
+        for each in spec.view_set.views
+    )
+
+
+def _looks(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
+    """Views by reference arrow, to the right of the others, each under its letter."""
+    column = max(view.column for view in views) + 1
+    found: list[View] = []
+    taken = {letter_of(number) for number in range(len(spec.cuts))}
+    taken |= {detail_letter(number) for number in range(len(spec.details))}
+    for number, look in enumerate(spec.looks):
+        if look.letter in taken:
+            sentence = f"the letter {look.letter} stands for a section or a detail of this figure already"
+            raise mistake("said-twice", look.span, sentence, "take another letter for the view")
+        window = None if look.window is None else Window(look.window[0], look.window[1])
+        name = f"{spec.path} {look.letter}"
+        found.append(View(name, look.viewpoint, column + number, 0, 1.0, window, look.letter))
+    return tuple(found)
 
 
 def detailed(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
@@ -60,6 +87,7 @@ def detailed(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
                 column=column,
                 row=row,
                 factor=main.factor * detail.times,
+                is_main=False,
                 window=window,
                 title=letter,
                 traces=(),

@@ -333,7 +333,7 @@ SCENES = [
     Hostile(
         "a kind of file unheard of", BALL + "figure f\n    files png, jpgg\n", ("unknown-name",), "no kind of file"
     ),
-    Hostile("a file not drawn yet", BALL + "figure f\n    files pdf\n", ("not-drawn-yet",), "not drawn yet"),
+    Hostile("a word not drawn yet", BALL + "figure f\n    scale bar 50 mm\n", ("not-drawn-yet",), "not drawn yet"),
     Hostile(
         "a figure with a parameter that is none",
         BALL + "figure f\n    with size = 4 mm\n",

@@ -142,7 +142,7 @@ def test_a_bad_figure_is_named_and_the_others_are_written(drum: Path, capsys: py
     assert files_below(drum.parent) == ["drum.plate", "figures/overview.png"]
 
 
-@pytest.mark.parametrize("line", ["drawn as lines", "items", "files pdf"])
+@pytest.mark.parametrize("line", ["scale bar 20 mm", "items"])
 def test_what_is_not_drawn_yet_in_a_figure_stops_that_figure_only(
     drum: Path, line: str, capsys: pytest.CaptureFixture[str]
 ) -> None:

@@ -77,15 +77,15 @@ figure f
 ---
 figure f
     drawn as shaded
-> 2:13 missing-value: expected `tone`, `survey part`, `survey depth` or `survey facing` behind `as`, found `shaded` | for example `drawn as tone`
+> 2:13 missing-value: expected `lines`, `lines and tone`, `tints`, `stipple`, `tone`, `survey part`, `survey depth` or `survey facing` behind `as`, found `shaded` | for example `drawn as lines and tone`
 ---
 part can
     add cone diameter 20 mm length 15 mm top 8 mm
 > 2:42 misplaced-word: `top` may not stand here | `top` comes before `length`
 ---
 figure f
-    drawn as lines
-> 2:5 not-drawn-yet: `drawn as lines` is a word of the language that is not drawn yet
+    receiver journal
+> 2:5 not-drawn-yet: `receiver` is a word of the language that is not drawn yet
 ---
 part can
     color "#ff0000"
