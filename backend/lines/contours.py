@@ -16,9 +16,9 @@ from numpy.typing import NDArray
 from ..contract import F32, F64, I32, U8, EdgeKind, LineClass, PatchKind
 from .chaining import walked
 from .compiled import kernel
-from .model import Candidates, View
+from .model import Bools, Candidates, View
 from .segments import along_sight, candidates, dot, fixed, length, none, shifts, to_view
-from .tangency import Touched, bends_away, chord_crossing, lifted, turning
+from .tangency import Surfaces, bends_away, chord_crossing, lifted, surfaces_of, turning
 
 CHORD_MM = 0.004
 """Chords of curved outlines stay this near to them on paper, mm."""
@@ -34,17 +34,16 @@ _STRAIGHT = (PatchKind.CYLINDER, PatchKind.CONE)
 class _Turns:
     """Triangles that may hold an outline.
 
-    face (k,) view faces; corner (k,3) rows of the view's points; value (k,3) n.v at them; patch (k,); touched the
-    patch of each; kind (k,) as traced.
+    face (k,) view faces; corner (k,3) rows of the view's points; value (k,3) n.v at them; patch (k,).
     """
 
     face: I32
     corner: I32
     value: F64
-    touched: Touched
+    patch: I32
 
-    def take(self, rows: NDArray[np.integer] | NDArray[np.bool_]) -> _Turns:
-        return _Turns(self.face[rows], self.corner[rows], self.value[rows], self.touched.take(rows))
+    def take(self, rows: NDArray[np.integer]) -> _Turns:
+        return _Turns(self.face[rows], self.corner[rows], self.value[rows], self.patch[rows])
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -70,10 +69,11 @@ def contours_of(view: View) -> Candidates:
     the outline stands that much deeper instead and its own surface hides it for certain.
     Cost: one pass over the corner normals, then linear in the triangles that outlines run in.
     """
-    turns = _pieces(_turns(view))
+    surfaces = _surfaces(view)
+    turns = _pieces(_turns(view, surfaces))
     if not len(turns.face):
         return none()
-    crossings, ends = _crossings(view, turns)
+    crossings, ends = _crossings(view, surfaces, turns)
     is_point = ends[:, 0] == ends[:, 1]
     kept = np.flatnonzero(~(is_point | _is_sharp_side(view, turns, crossings, ends)))
     if not len(kept):
@@ -82,29 +82,36 @@ def contours_of(view: View) -> Candidates:
     order, turned, chain = walked(fixed(ends), len(crossings.low))
     turns, ends = turns.take(order), ends[order]
     ends = np.where(turned[:, None], ends[:, ::-1], ends)
-    return _drawn(view, turns, crossings, ends, chain)
+    return _drawn(view, surfaces, turns, crossings, ends, chain)
 
 
 # --- which triangles
 
 
-def _turns(view: View) -> _Turns:
-    """Triangles of curved patches on whose corners n.v has, or may have, both signs."""
+def _surfaces(view: View) -> Surfaces:
+    """The surfaces of all patches, where displaced parts have them."""
     patches = view.geometry.patches
+    counts = np.diff(view.geometry.patch_start, append=len(patches.kind))
+    return surfaces_of(patches, np.repeat(shifts(view), counts, axis=0), view.projection)
+
+
+def _turns(view: View, surfaces: Surfaces) -> _Turns:
+    """Triangles of curved patches on whose corners n.v has, or may have, both signs."""
     sight = np.array(view.projection.sight if view.projection.eye is None else view.projection.eye)
-    is_central = view.projection.eye is not None
     faces = np.empty(len(view.faces), np.int32)
-    arrays = view.faces, view.world, view.corner_normals, view.face_patch, patches.kind, sight
-    n = _near_turn(*map(fixed, arrays), is_central, faces)
+    n = _near_turn(
+        fixed(view.faces), fixed(view.world), fixed(view.corner_normals), fixed(view.face_patch), fixed(surfaces.kind),
+        sight, surfaces.is_central, faces,
+    )  # fmt: skip
     faces = faces[:n].copy()
-    corner = view.faces[faces]
-    touched = _touched(view, faces)
-    value = _interpolated(view, faces)
-    rows = np.flatnonzero(touched.kind != PatchKind.FREE)
-    some = touched.take(rows)
+    corner, patch = view.faces[faces], view.face_patch[faces]
+    value = np.empty((n, 3))
+    is_free = surfaces.kind[patch] == PatchKind.FREE
+    free, exact = np.flatnonzero(is_free), np.flatnonzero(~is_free)
+    value[free] = _interpolated(view, faces[free])
     for k in range(3):
-        value[rows, k] = turning(some, view.world[corner[rows, k]])
-    return _Turns(faces, corner, value, touched)
+        value[exact, k] = turning(surfaces, patch[exact], view.world[corner[exact, k]])
+    return _Turns(faces, corner, value, patch)
 
 
 @kernel
@@ -149,28 +156,6 @@ def _interpolated(view: View, faces: I32) -> F64:
     return value
 
 
-def _touched(view: View, faces: I32) -> Touched:
-    """The patches of faces, where displaced parts have them. FREE where it cannot be told where that is."""
-    patches, rows = view.geometry.patches, view.face_patch[faces]
-    shift, is_known = shifts(view, faces)
-    size = patches.size[rows].copy()
-    is_cone = patches.kind[rows] == PatchKind.CONE
-    size[is_cone, 0] = np.tan(np.radians(size[is_cone, 0]))
-    frame = patches.frame[rows]
-    origin = frame[:, 0] + shift
-    eye = view.projection.eye
-    sight = np.broadcast_to(np.array(view.projection.sight), origin.shape) if eye is None else np.array(eye) - origin
-    return Touched(
-        np.where(is_known, patches.kind[rows], PatchKind.FREE).astype(np.uint8),
-        origin,
-        frame[:, 3],
-        size,
-        np.where(patches.inward[rows], -1.0, 1.0),
-        sight,
-        eye is not None,
-    )
-
-
 # --- pieces and the points between them
 
 
@@ -183,10 +168,10 @@ def _pieces(turns: _Turns) -> _Turns:
     odd = np.argmax(away == (n_away == 1)[:, None], axis=1)
     around = (odd[:, None] + np.arange(3)) % 3
     rows = np.arange(len(odd))[:, None]
-    return _Turns(turns.face, turns.corner[rows, around], turns.value[rows, around], turns.touched)
+    return _Turns(turns.face, turns.corner[rows, around], turns.value[rows, around], turns.patch)
 
 
-def _crossings(view: View, turns: _Turns) -> tuple[_Crossings, I32]:
+def _crossings(view: View, surfaces: Surfaces, turns: _Turns) -> tuple[_Crossings, I32]:
     """All crossings, and those (k,2) that each piece runs between."""
     n = len(turns.face)
     a, b = np.tile(turns.corner[:, 0], 2), turns.corner[:, 1:].T.ravel()
@@ -196,26 +181,33 @@ def _crossings(view: View, turns: _Turns) -> tuple[_Crossings, I32]:
     is_turned = a > b
     low, high = np.where(is_turned, b, a), np.where(is_turned, a, b)
     at_low, at_high = np.where(is_turned, at_b, at_a), np.where(is_turned, at_a, at_b)
-    patch = np.tile(view.face_patch[turns.face], 2).astype(np.int64)
-    sides, of_side = np.unique(low.astype(np.int64) * len(view.points) + high, return_inverse=True)
-    keys = of_side.astype(np.int64) * len(view.geometry.patches.kind) + patch
+    patch = np.tile(turns.patch, 2)
+    of_side = np.unique(low.astype(np.int64) * len(view.points) + high, return_inverse=True)[1]
+    keys = of_side.astype(np.int64) * len(surfaces.kind) + patch
     _, first, joint = np.unique(keys, return_index=True, return_inverse=True)
-    touched = turns.touched.take(first % n)
-    chord = _on_chords(view, touched, low[first], high[first], at_low[first], at_high[first])
-    exact = lifted(touched, chord)
+    is_end = np.bincount(joint) == 1
+    sides_of = low[first], high[first], at_low[first], at_high[first], is_end
+    chord = _on_chords(view, surfaces, patch[first], *sides_of)
+    exact = lifted(surfaces, patch[first], chord)
     crossings = _Crossings(low[first].astype(np.int32), high[first].astype(np.int32), chord, exact)
     return crossings, np.ascontiguousarray(joint.reshape(2, n).T, np.int32)
 
 
-def _on_chords(view: View, touched: Touched, low: I32, high: I32, at_low: F64, at_high: F64) -> F64:
+def _on_chords(
+    view: View, surfaces: Surfaces, patch: I32, low: I32, high: I32, at_low: F64, at_high: F64, is_end: Bools
+) -> F64:
+    """World points (c,3) on sides: exact where an outline ends, otherwise near enough to be lifted."""
     chord = view.world[low].copy()
     rows = np.flatnonzero(low != high)
+    share = at_low[rows] / (at_low[rows] - at_high[rows])
+    chord[rows] += share[:, None] * (view.world[high[rows]] - view.world[low[rows]])
+    rows = np.flatnonzero((low != high) & is_end)
     between = (view.world[low[rows]], view.world[high[rows]], at_low[rows], at_high[rows])
-    chord[rows] = chord_crossing(touched.take(rows), *between)
+    chord[rows] = chord_crossing(surfaces, patch[rows], *between)
     return chord
 
 
-def _is_sharp_side(view: View, turns: _Turns, crossings: _Crossings, ends: I32) -> NDArray[np.bool_]:
+def _is_sharp_side(view: View, turns: _Turns, crossings: _Crossings, ends: I32) -> Bools:
     """Whether a piece is a whole side of its triangle where the patch ends sharply: an edge already, not an outline."""
     is_side = (crossings.low == crossings.high)[ends].all(axis=1)
     side = np.argmax(view.faces[turns.face] == turns.corner[:, 1:2], axis=1)
@@ -226,27 +218,27 @@ def _is_sharp_side(view: View, turns: _Turns, crossings: _Crossings, ends: I32) 
 # --- what is drawn
 
 
-def _drawn(view: View, turns: _Turns, crossings: _Crossings, ends: I32, chain: I32) -> Candidates:
+def _drawn(view: View, surfaces: Surfaces, turns: _Turns, crossings: _Crossings, ends: I32, chain: I32) -> Candidates:
     """Candidates of pieces in the order of their chains."""
     is_end = np.bincount(ends.ravel(), minlength=len(crossings.low)) == 1
     points = np.where(is_end[:, None], crossings.chord, crossings.exact)
     vertex = np.where(crossings.low == crossings.high, crossings.low, -1).astype(np.int32)
-    is_straight = np.isin(turns.touched.kind, _STRAIGHT)
-    is_apex = (turns.touched.kind == PatchKind.CONE) & (vertex[ends[:, 0]] >= 0)
-    run = _runs(chain, is_straight & ~is_apex)
+    kind = surfaces.kind[turns.patch]
+    is_apex = (kind == PatchKind.CONE) & (vertex[ends[:, 0]] >= 0)
+    run = _runs(chain, np.isin(kind, _STRAIGHT) & ~is_apex)
     first = np.flatnonzero(np.diff(run, prepend=-1))
     last = np.append(first[1:], len(run)) - 1
     start, end = points[ends[first, 0]], points[ends[last, 1]]
-    number = _chords(view, turns.touched.take(first), start, end)
+    number = _chords(view, surfaces, turns.patch[first], start, end)
     rows = np.repeat(np.arange(len(first)), number)
     step = np.arange(len(rows)) - np.repeat(np.cumsum(number) - number, number)
-    touched = turns.touched.take(first[rows])
-    along = _between(touched, start[rows], end[rows], step / number[rows])
+    patch = turns.patch[first[rows]]
+    along = _between(surfaces, patch, start[rows], end[rows], step / number[rows])
     beyond = np.where((step + 1 == number[rows])[:, None], end[rows], np.roll(along, -1, axis=0))
     vertices = np.stack((vertex[ends[first, 0]][rows], vertex[ends[last, 1]][rows]), axis=1)
     vertices[step > 0, 0], vertices[step + 1 < number[rows], 1] = -1, -1
     faces = np.stack((turns.face[first], np.where(first == last, -1, turns.face[last])), axis=1)[rows]
-    depth, allowance = _depths(view, touched, faces[:, 0], 0.5 * (along + beyond))
+    depth, allowance = _depths(view, surfaces, patch, faces[:, 0], 0.5 * (along + beyond))
     seen = _seen(view, along, vertices[:, 0], depth), _seen(view, beyond, vertices[:, 1], depth)
     return candidates(
         *seen,
@@ -255,43 +247,44 @@ def _drawn(view: View, turns: _Turns, crossings: _Crossings, ends: I32, chain: I
         chain=chain[first][rows],
         faces=faces,
         vertices=vertices,
-        patch=view.face_patch[faces[:, 0]],
+        patch=patch,
         allowance=allowance,
     )
 
 
-def _runs(chain: I32, goes_straight_on: NDArray[np.bool_]) -> NDArray[np.intp]:
+def _runs(chain: I32, goes_straight_on: Bools) -> NDArray[np.intp]:
     """Numbers (k,) of the pieces that are drawn as one: all of a straight outline, on a cone up to its apex."""
     goes_on = np.zeros(len(chain), np.bool_)
     goes_on[1:] = (chain[1:] == chain[:-1]) & goes_straight_on[1:]
     return np.cumsum(~goes_on) - 1
 
 
-def _chords(view: View, touched: Touched, start: F64, end: F64) -> NDArray[np.intp]:
+def _chords(view: View, surfaces: Surfaces, patch: I32, start: F64, end: F64) -> NDArray[np.intp]:
     """Into how many chords (k,) each piece goes: the sagitta falls with their square."""
     middle = 0.5 * (start + end)
-    off = to_view(view.projection, lifted(touched, middle)) - to_view(view.projection, middle)
+    off = to_view(view.projection, lifted(surfaces, patch, middle)) - to_view(view.projection, middle)
     sagitta = np.sqrt(off[:, 0] * off[:, 0] + off[:, 1] * off[:, 1])
     return np.clip(np.ceil(np.sqrt(sagitta / CHORD_MM)), 1, _MOST_CHORDS).astype(np.intp)
 
 
-def _between(touched: Touched, start: F64, end: F64, share: F64) -> F64:
+def _between(surfaces: Surfaces, patch: I32, start: F64, end: F64, share: F64) -> F64:
     """Points of outlines at a share of the way; at 0 the start itself."""
     points = start + share[:, None] * (end - start)
     rows = np.flatnonzero(share > 0.0)
     if len(rows):
-        points[rows] = lifted(touched.take(rows), points[rows])
+        points[rows] = lifted(surfaces, patch[rows], points[rows])
     return points
 
 
-def _depths(view: View, touched: Touched, faces: I32, middle: F64) -> tuple[F64, F64]:
+def _depths(view: View, surfaces: Surfaces, patch: I32, faces: I32, middle: F64) -> tuple[F64, F64]:
     """How much deeper each segment stands, and its allowance, both (s,) in mm of model; see `contours_of`."""
     corners = view.world[view.faces[faces]]
     longest = np.stack([length(corners[:, k] - corners[:, k - 1]) for k in range(3)]).max(axis=0)
-    is_bent = touched.kind == PatchKind.TORUS
-    is_quadric = ~is_bent & (touched.kind != PatchKind.FREE)
+    kind = surfaces.kind[patch]
+    is_bent = kind == PatchKind.TORUS
+    is_quadric = ~is_bent & (kind != PatchKind.FREE)
     is_solid = np.array([node.closed for node in view.geometry.nodes], np.bool_)[view.face_node[faces]]
-    is_inside = is_bent & is_solid & ~bends_away(touched, middle)
+    is_inside = is_bent & is_solid & ~bends_away(surfaces, patch, middle)
     allowance = np.where(is_quadric, NEVER_HIDES, np.where(is_inside, 0.0, longest))
     return np.where(is_inside, longest, 0.0), allowance
 

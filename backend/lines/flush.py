@@ -25,16 +25,16 @@ def is_flush(view: View, faces: I32, points: F64, near: float) -> Bools:
     """
     result = np.zeros(len(faces), np.bool_)
     sides = view.face_patch[faces].astype(np.int64)
-    shift, _ = shifts(view, faces.ravel())
-    shift = shift.reshape(-1, 2, 3)
+    shift = shifts(view)
     _, of_pair = np.unique(sides[:, 0] * len(view.geometry.patches.kind) + sides[:, 1], return_inverse=True)
     order = np.argsort(of_pair, kind="stable")
     for rows in np.split(order, np.flatnonzero(np.diff(of_pair[order])) + 1):
         first, middle = int(rows[0]), points[rows].mean(axis=1)
         for own, other in ((0, 1), (1, 0)):
             p, r = int(sides[first, own]), int(sides[first, other])
-            some = _patches_of(view, int(view.face_node[faces[first, other]]))
-            gap = _gap(view, p, some, shift[first, other] - shift[first, own])
+            own_node, other_node = view.face_node[faces[first, [own, other]]]
+            some = _patches_of(view, int(other_node))
+            gap = _gap(view, p, some, shift[other_node] - shift[own_node])
             result[rows] |= bool(_is_offset(view, p, some, gap, near)[some == r].any())
             for q in some[_is_same(view, p, some, gap, near)]:
                 result[rows] |= _is_along(view, r, int(q), middle, _slack(view, p), near)
@@ -80,11 +80,11 @@ def _is_offset(view: View, patch: int, some: I32, gap: _Gap, near: float) -> Boo
     if kind == PatchKind.PLANE:
         return gap.is_alike
     if kind == PatchKind.CYLINDER:
-        return gap.is_alike & (gap.beside <= close)
+        return np.asarray(gap.is_alike & (gap.beside <= close))
     if kind == PatchKind.CONE:
-        return gap.is_alike & (gap.beside <= close) & is_first_size & ~is_turned
+        return np.asarray(gap.is_alike & (gap.beside <= close) & is_first_size & ~is_turned)
     is_placed = gap.is_alike & (gap.far <= close)
-    return is_placed if kind == PatchKind.SPHERE else is_placed & is_first_size
+    return np.asarray(is_placed if kind == PatchKind.SPHERE else is_placed & is_first_size)
 
 
 def _is_same(view: View, patch: int, some: I32, gap: _Gap, near: float) -> Bools:

@@ -8,6 +8,7 @@ touch, or lie flush, never cross, while one that is cut through along its own ed
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ..contract import F64, I32, U8
 from .compiled import kernel
@@ -32,7 +33,7 @@ def node_boxes(world: F64, faces: I32, face_node: I32, n_nodes: int) -> F64:
 
 
 @kernel
-def codes(world: F64, faces: I32, rows: I32, box: F64) -> F64:
+def codes(world: F64, faces: I32, rows: I32, box: F64) -> NDArray[np.uint64]:
     """Places (k,) of the faces `rows` on a Morton curve through the box: neighbours in space are near in it."""
     result = np.empty(len(rows), np.uint64)
     for i in range(len(rows)):
@@ -52,7 +53,7 @@ def codes(world: F64, faces: I32, rows: I32, box: F64) -> F64:
 
 @kernel
 def tree(world: F64, faces: I32, rows: I32, boxes: F64) -> None:
-    """Fill `boxes` (2p,6), a heap whose root is row 1 and whose leaves, from row p on, hold LEAF faces of `rows` each."""
+    """Fill `boxes` (2p,6), a heap: its root is row 1, and its leaves from row p on hold LEAF faces of `rows` each."""
     p = len(boxes) // 2
     boxes[:, :3], boxes[:, 3:] = np.inf, -np.inf
     for i in range(len(rows)):
@@ -133,9 +134,7 @@ def _through_plane(world: F64, faces: I32, f: int, height: F64, points: F64, key
 
 
 @kernel
-def _meet(
-    world: F64, faces: I32, f: int, g: int, normals: F64, near: float, heights: F64, ends: F64, keys: I32
-) -> int:
+def _meet(world: F64, faces: I32, f: int, g: int, normals: F64, near: float, heights: F64, ends: F64, keys: I32) -> int:
     """The segment in which faces f and g cross: which two of the four points `ends` (4,3) it runs between, as a number
     4 * first + second, or -1. Points 0 and 1 are on sides of f, 2 and 3 on sides of g; `keys` (4,2) are those sides.
     """

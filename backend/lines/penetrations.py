@@ -7,6 +7,7 @@ from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ..contract import F64, I32, LineClass
 from .chaining import walked
@@ -58,7 +59,7 @@ class _Hits:
     points: F64
     keys: I32
 
-    def take(self, rows: I32) -> _Hits:
+    def take(self, rows: NDArray[np.integer]) -> _Hits:
         return _Hits(self.faces[rows], self.points[rows], self.keys[rows])
 
 
@@ -111,10 +112,8 @@ def _hits(view: View, boxes: F64, pairs: I32, nears: F64, threads: int) -> _Hits
         own[:] = own[np.argsort(codes(world, faces, fixed(own), fixed(boxes[node])), kind="stable")]
         tree(world, faces, fixed(own), trees[tree_start[node] : tree_start[node + 1]])
 
-    shared = np.concatenate(
-        (np.maximum(boxes[pairs[:, 0], :3], boxes[pairs[:, 1], :3]), np.minimum(boxes[pairs[:, 0], 3:], boxes[pairs[:, 1], 3:])),
-        axis=1,
-    )  # fmt: skip
+    one, two = boxes[pairs[:, 0]], boxes[pairs[:, 1]]
+    shared = np.hstack((np.maximum(one[:, :3], two[:, :3]), np.minimum(one[:, 3:], two[:, 3:])))
     patches = view.geometry.patches
 
     def crossed(some: slice) -> _Hits:
@@ -123,11 +122,11 @@ def _hits(view: View, boxes: F64, pairs: I32, nears: F64, threads: int) -> _Hits
             hits = _Hits(
                 np.empty((capacity, 2), np.int32), np.empty((capacity, 2, 3)), np.empty((capacity, 2, 3), np.int32)
             )
-            given = (
-                world, faces, view.face_patch, patches.kind, patches.frame, pairs[some], shared[some],
-                nears[some], rows, row_start, trees, tree_start,
+            n = crossings(
+                world, faces, fixed(view.face_patch), fixed(patches.kind), fixed(patches.frame), fixed(pairs[some]),
+                fixed(shared[some]), fixed(nears[some]), fixed(rows), fixed(row_start), fixed(trees),
+                fixed(tree_start), hits.faces, hits.points, hits.keys,
             )  # fmt: skip
-            n = crossings(*map(fixed, given), hits.faces, hits.points, hits.keys)
             if n <= capacity:
                 return hits.take(np.arange(n, dtype=np.int32))
             capacity = n

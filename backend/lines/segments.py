@@ -7,8 +7,9 @@ from typing import TypeVar
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from ..contract import F64, I32, LineClass, Projection
-from .model import Bools, Candidates, View, number_of
+from ..contract import F64, LineClass, Projection
+from .model import Candidates, View, number_of
+from .near import NEAR
 
 _T = TypeVar("_T", bound=np.generic)
 
@@ -38,7 +39,7 @@ def along_sight(projection: Projection, world: F64) -> F64:
     """Lines of sight (k,3) to world points (k,3): from the eye, in mm; in parallel projection the unit projector."""
     if projection.eye is None:
         return np.broadcast_to(np.array(projection.sight), world.shape)
-    return world - np.array(projection.eye)
+    return np.asarray(world - np.array(projection.eye))
 
 
 def dot(a: F64, b: F64) -> F64:
@@ -48,13 +49,13 @@ def dot(a: F64, b: F64) -> F64:
 
 def length(a: F64) -> F64:
     """Lengths of rows."""
-    return np.sqrt(dot(a, a))
+    return np.asarray(np.sqrt(dot(a, a)))
 
 
 def unit(a: F64) -> F64:
     """Rows of length 1; zeros stay zeros."""
     size = length(a)
-    return a / np.where(size > 0.0, size, 1.0)[..., None]
+    return np.asarray(a / np.where(size > 0.0, size, 1.0)[..., None])
 
 
 def candidates(
@@ -72,7 +73,7 @@ def candidates(
     """Drawn candidates from view points (s,3); what is given once holds for all rows."""
     n = len(start)
 
-    def column(value: ArrayLike, dtype: type[np.generic], width: tuple[int, ...] = ()) -> np.ndarray:  # type: ignore[type-arg]
+    def column(value: ArrayLike, dtype: type[_T], width: tuple[int, ...] = ()) -> NDArray[_T]:
         return np.array(np.broadcast_to(np.asarray(value, dtype), (n, *width)))
 
     return Candidates(
@@ -96,21 +97,20 @@ def none() -> Candidates:
 
 
 def placed(view: View, start: F64, end: F64, line_class: LineClass, **columns: ArrayLike) -> Candidates:
-    """Candidates from world points (s,3); columns as in `candidates`."""
+    """Candidates from world points (s,3); columns as in `candidates`. What comes too near the eye is left out whole."""
+    is_before = (weight(view.projection, start) >= NEAR) & (weight(view.projection, end) >= NEAR)
+    if not is_before.all():
+        kept = np.flatnonzero(is_before)
+        columns = {name: np.asarray(column)[kept] if np.ndim(column) else column for name, column in columns.items()}
+        start, end = start[kept], end[kept]
     return candidates(to_view(view.projection, start), to_view(view.projection, end), line_class, **columns)
 
 
-def shifts(view: View, faces: I32) -> tuple[F64, Bools]:
-    """How far the node of each face is displaced (k,3) mm, and whether that is known (k,).
-
-    Read off the first of these faces of the node that the near plane left whole.
-    """
+def shifts(view: View) -> F64:
+    """How far each node is displaced (n_nodes,3), mm: read off its first vertex, which a view keeps in its row."""
     geometry = view.geometry
-    moved = view.world[view.faces[faces]] - geometry.vertices[geometry.faces[view.face_row[faces]]]
-    size = np.abs(view.world[view.faces[faces]]).max(axis=(1, 2)) + np.abs(moved).max(axis=(1, 2))
-    whole = np.flatnonzero(np.abs(moved - moved[:, :1]).max(axis=(1, 2)) <= 1e-12 * size)
-    nodes, first = np.unique(view.face_node[faces[whole]], return_index=True)
-    shift, is_known = np.zeros((len(geometry.nodes), 3)), np.zeros(len(geometry.nodes), np.bool_)
-    shift[nodes], is_known[nodes] = moved[whole[first], 0], True
-    node = view.face_node[faces]
-    return shift[node], is_known[node]
+    first = np.array([node.vertex_range[0] for node in geometry.nodes], np.intp)
+    result = np.zeros((len(first), 3))
+    rows = np.flatnonzero([node.mesh >= 0 for node in geometry.nodes])
+    result[rows] = view.world[first[rows]] - geometry.vertices[first[rows]]
+    return result

@@ -11,9 +11,9 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
-from ..contract import F64, PatchKind
+from ..contract import F64, I32, U8, Patches, PatchKind, Projection
+from .model import Bools
 from .segments import dot, length, unit
 
 ZERO = 1e-9
@@ -23,15 +23,15 @@ _END_ON = 1e-6
 
 
 @dataclass(frozen=True, eq=False, slots=True)
-class Touched:
-    """Patches of curved kinds as they are seen, one row for each thing asked about.
+class Surfaces:
+    """Patches as they are seen, one row each.
 
-    kind (k,); origin, x, y, z (k,3) the frame; size (k,2) of `contract.Patches`, of a cone the tangent of its half
-    angle; side (k,) -1 where the solid lies outside, else 1; sight (k,3) the unit direction of sight, or in central
-    projection the eye seen from the origin, mm; is_central.
+    kind (p,) `PatchKind`; origin, z (p,3) of the frame; size (p,2) of `contract.Patches`, of a cone the tangent of its
+    half angle; side (p,) -1 where the solid lies outside, else 1; sight (p,3) the unit direction of sight, or in
+    central projection the eye seen from the origin, mm; is_central.
     """
 
-    kind: NDArray[np.uint8]
+    kind: U8
     origin: F64
     z: F64
     size: F64
@@ -39,101 +39,108 @@ class Touched:
     sight: F64
     is_central: bool
 
-    def take(self, rows: NDArray[np.integer] | NDArray[np.bool_]) -> Touched:
-        """The rows asked for, in that order."""
-        columns = (self.kind, self.origin, self.z, self.size, self.side, self.sight)
-        return Touched(*(column[rows] for column in columns), self.is_central)
+
+def surfaces_of(patches: Patches, shift: F64, projection: Projection) -> Surfaces:
+    """The surfaces of patches displaced by `shift` (p,3) mm."""
+    origin = patches.frame[:, 0] + shift
+    size = patches.size.copy()
+    is_cone = patches.kind == PatchKind.CONE
+    size[is_cone, 0] = np.tan(np.radians(size[is_cone, 0]))
+    eye = projection.eye
+    sight = np.broadcast_to(np.array(projection.sight), origin.shape) if eye is None else np.array(eye) - origin
+    side = np.where(patches.inward, -1.0, 1.0)
+    return Surfaces(patches.kind, origin, patches.frame[:, 3], size, side, sight, eye is not None)
 
 
-def turning(touched: Touched, points: F64) -> F64:
-    """A multiple of n.v (k,) for points (k,3) on or near each patch: above zero where it faces away, 0 at a touch.
-
-    Linear in the point but on a torus. Between -1 and 1 or so.
+def turning(surfaces: Surfaces, row: I32, points: F64) -> F64:
+    """A multiple of n.v (k,) for points (k,3) on or near surface `row` (k,): above zero where it faces away, 0 at a
+    touch, 1 on planes and free surfaces. Linear in the point but on a torus. Between -1 and 1 or so.
     """
-    q = points - touched.origin
-    height = dot(q, touched.z)
-    across = q - height[:, None] * touched.z
-    along = dot(touched.sight, touched.z)
-    sight_across = touched.sight - along[:, None] * touched.z
-    result = np.ones(len(q))
-    for kind, of_kind in (
+    result = np.ones(len(row))
+    kind = surfaces.kind[row]
+    for each, of_kind in (
         (PatchKind.CYLINDER, _of_cylinder),
         (PatchKind.CONE, _of_cone),
         (PatchKind.SPHERE, _of_sphere),
         (PatchKind.TORUS, _of_torus),
     ):
-        rows = np.flatnonzero(touched.kind == kind)
-        if len(rows):
-            arrays = (q[rows], height[rows], across[rows], along[rows], sight_across[rows])
-            result[rows] = of_kind(touched.take(rows), *arrays)
-    return np.where(np.abs(result) < ZERO, 0.0, result * touched.side)
+        some = np.flatnonzero(kind == each)
+        if len(some):
+            result[some] = of_kind(surfaces, row[some], points[some] - surfaces.origin[row[some]])
+    return np.where(np.abs(result) < ZERO, 0.0, result * surfaces.side[row])
 
 
-def _of_cylinder(touched: Touched, q: F64, height: F64, across: F64, along: F64, sight: F64) -> F64:
-    radius, size = touched.size[:, 0], length(sight)
-    value = dot(across, sight)
-    if touched.is_central:
+def _split(surfaces: Surfaces, row: I32, q: F64) -> tuple[F64, F64]:
+    """Height along the axis (k,) and what is across it (k,3)."""
+    axis = surfaces.z[row]
+    height = dot(q, axis)
+    return height, q - height[:, None] * axis
+
+
+def _of_cylinder(surfaces: Surfaces, row: I32, q: F64) -> F64:
+    radius = surfaces.size[row, 0]
+    _, sight = _split(surfaces, row, surfaces.sight[row])
+    size, value = length(sight), dot(q, sight)
+    if surfaces.is_central:
         # An eye inside the cylinder sees all of its wall from one side.
         return np.where(size > radius, (radius * radius - value) / (radius * np.where(size > radius, size, 1.0)), 1.0)
     return np.where(size > _END_ON, value / (radius * np.where(size > _END_ON, size, 1.0)), 1.0)
 
 
-def _of_cone(touched: Touched, q: F64, height: F64, across: F64, along: F64, sight: F64) -> F64:
-    slope = touched.size[:, 0]
-    value = dot(across, sight) - slope * slope * height * along
-    # All tangent planes pass through the apex, so the eye counts as a direction from there.
-    scale = length(q) * slope * length(touched.sight)
-    value = np.where(np.abs(value) <= ZERO * scale, 0.0, value)
-    return (-value if touched.is_central else value) / _mean_scale(touched)
+def _of_cone(surfaces: Surfaces, row: I32, q: F64) -> F64:
+    slope = surfaces.size[row, 0]
+    along, sight = _split(surfaces, row, surfaces.sight[row])
+    value = dot(q, sight) - slope * slope * dot(q, surfaces.z[row]) * along
+    # All tangent planes pass through the apex, so the eye counts as a direction from there. The divisor is the same
+    # for all points of a patch, so that its function stays linear.
+    scale = slope * length(surfaces.sight[row])
+    value = np.where(np.abs(value) <= ZERO * scale * length(q), 0.0, value)
+    return np.asarray((-value if surfaces.is_central else value) / scale)
 
 
-def _mean_scale(touched: Touched) -> F64:
-    """A length that is the same for all points of a patch, so that its function stays linear."""
-    return touched.size[:, 0] * length(touched.sight)
-
-
-def _of_sphere(touched: Touched, q: F64, height: F64, across: F64, along: F64, sight: F64) -> F64:
-    radius, value = touched.size[:, 0], dot(q, touched.sight)
-    if not touched.is_central:
-        return value / radius
-    far = length(touched.sight)
+def _of_sphere(surfaces: Surfaces, row: I32, q: F64) -> F64:
+    radius, value = surfaces.size[row, 0], dot(q, surfaces.sight[row])
+    if not surfaces.is_central:
+        return np.asarray(value / radius)
+    far = length(surfaces.sight[row])
     return np.where(far > radius, (radius * radius - value) / (radius * np.where(far > radius, far, 1.0)), 1.0)
 
 
-def _of_torus(touched: Touched, q: F64, height: F64, across: F64, along: F64, sight: F64) -> F64:
-    normal, foot = _torus_normal(touched, height, across)
-    if not touched.is_central:
-        return dot(normal, touched.sight)
-    return dot(normal, unit(foot - touched.sight))
+def _of_torus(surfaces: Surfaces, row: I32, q: F64) -> F64:
+    normal, foot, _ = _on_tube(surfaces, row, q)
+    sight = surfaces.sight[row]
+    return dot(normal, unit(foot - sight) if surfaces.is_central else sight)
 
 
-def _torus_normal(touched: Touched, height: F64, across: F64) -> tuple[F64, F64]:
-    """Unit normal of the tube and the point of the torus nearest to a point, from the origin."""
-    ring = touched.size[:, 0, None] * unit(across)
-    normal = unit(across - ring + height[:, None] * touched.z)
-    return normal, ring + touched.size[:, 1, None] * normal
+def _on_tube(surfaces: Surfaces, row: I32, q: F64) -> tuple[F64, F64, F64]:
+    """Of a torus, near points from its origin: unit normal, foot of the normal, unit direction away from the axis."""
+    height, across = _split(surfaces, row, q)
+    outward = unit(across)
+    ring = surfaces.size[row, 0, None] * outward
+    normal = unit(across - ring + height[:, None] * surfaces.z[row])
+    return normal, ring + surfaces.size[row, 1, None] * normal, outward
 
 
-def chord_crossing(touched: Touched, low: F64, high: F64, at_low: F64, at_high: F64) -> F64:
+def chord_crossing(surfaces: Surfaces, row: I32, low: F64, high: F64, at_low: F64, at_high: F64) -> F64:
     """Points (k,3) where the function is zero on chords from low to high, whose ends lie on either side of it."""
     share = at_low / (at_low - at_high)
-    rows = np.flatnonzero(touched.kind == PatchKind.TORUS)
-    if len(rows):
-        share[rows] = _torus_root(touched.take(rows), low[rows], high[rows], at_low[rows], at_high[rows])
+    some = np.flatnonzero(surfaces.kind[row] == PatchKind.TORUS)
+    if len(some):
+        share[some] = _torus_root(surfaces, row[some], low[some], high[some], at_low[some], at_high[some])
     return low + share[:, None] * (high - low)
 
 
 _STEPS = 40
 
 
-def _torus_root(touched: Touched, low: F64, high: F64, at_low: F64, at_high: F64) -> F64:
+def _torus_root(surfaces: Surfaces, row: I32, low: F64, high: F64, at_low: F64, at_high: F64) -> F64:
     """Bracketed secant steps, the value of an end that stays halved (the Illinois rule; Dowell and Jarratt 1971)."""
     a, b = np.zeros(len(low)), np.ones(len(low))
-    fa, fb = at_low.copy(), at_high.copy()
+    fa, fb = at_low, at_high
     root = a
     for _ in range(_STEPS):
         root = a + (b - a) * (fa / (fa - fb))
-        value = turning(touched, low + root[:, None] * (high - low))
+        value = turning(surfaces, row, low + root[:, None] * (high - low))
         is_low = (value >= 0.0) == (fa >= 0.0)
         fa, fb = np.where(is_low, value, 0.5 * fa), np.where(is_low, 0.5 * fb, value)
         a, b = np.where(is_low, root, a), np.where(is_low, b, root)
@@ -142,44 +149,42 @@ def _torus_root(touched: Touched, low: F64, high: F64, at_low: F64, at_high: F64
     return root
 
 
-def lifted(touched: Touched, points: F64) -> F64:
+def lifted(surfaces: Surfaces, row: I32, points: F64) -> F64:
     """The points (k,3) of the exact outline near points on chords: on spheres and tori, others are left alone."""
     result = points.copy()
-    rows = np.flatnonzero(touched.kind == PatchKind.SPHERE)
-    if len(rows):
-        result[rows] = _on_circle(touched.take(rows), points[rows])
-    rows = np.flatnonzero(touched.kind == PatchKind.TORUS)
-    if len(rows):
-        result[rows] = _on_torus(touched.take(rows), points[rows])
+    kind = surfaces.kind[row]
+    for each, onto in ((PatchKind.SPHERE, _on_circle), (PatchKind.TORUS, _on_torus)):
+        some = np.flatnonzero(kind == each)
+        if len(some):
+            origin = surfaces.origin[row[some]]
+            result[some] = origin + onto(surfaces, row[some], points[some] - origin)
     return result
 
 
-def _on_circle(touched: Touched, points: F64) -> F64:
-    radius, q = touched.size[:, 0], points - touched.origin
-    axis, size = unit(touched.sight), length(touched.sight)
-    share = radius / size if touched.is_central else np.zeros(len(radius))
+def _on_circle(surfaces: Surfaces, row: I32, q: F64) -> F64:
+    radius, sight = surfaces.size[row, 0], surfaces.sight[row]
+    axis = unit(sight)
+    share = radius / length(sight) if surfaces.is_central else np.zeros(len(radius))
     centre = (radius * share)[:, None] * axis
-    q = q - centre
-    flat = q - dot(q, axis)[:, None] * axis
-    return touched.origin + centre + (radius * np.sqrt(1.0 - share * share))[:, None] * unit(flat)
+    flat = q - centre - dot(q - centre, axis)[:, None] * axis
+    return np.asarray(centre + (radius * np.sqrt(1.0 - share * share))[:, None] * unit(flat))
 
 
-_NEWTON_STEPS = 5
+_NEWTON_STEPS = 4
 
 
-def _on_torus(touched: Touched, points: F64) -> F64:
+def _on_torus(surfaces: Surfaces, row: I32, q: F64) -> F64:
     """Newton's steps within the surface, against the gradient of n.v, which is the shape operator times v."""
-    q = points - touched.origin
-    reach = touched.size[:, 1]
+    reach = 0.5 * surfaces.size[row, 1]
     for _ in range(_NEWTON_STEPS):
-        seen = _seen_on_torus(touched, q)
-        gradient = seen.gradient
-        steepness = dot(gradient, gradient)
-        is_fair = steepness > 1e-12 / (reach * reach)
-        step = np.where(is_fair, -seen.value / np.where(is_fair, steepness, 1.0), 0.0)
-        step = np.clip(step * np.sqrt(steepness), -0.5 * reach, 0.5 * reach)
-        q = seen.foot + step[:, None] * unit(gradient)
-    return touched.origin + _seen_on_torus(touched, q).foot
+        seen = _seen_on_torus(surfaces, row, q)
+        steepness = dot(seen.gradient, seen.gradient)
+        is_fair = steepness * reach * reach > 1e-12
+        share = np.where(is_fair, -seen.value / np.where(is_fair, steepness, 1.0), 0.0)
+        size = np.abs(share) * np.sqrt(steepness)
+        share = share * np.where(size > reach, reach / np.where(size > reach, size, 1.0), 1.0)
+        q = seen.foot + share[:, None] * seen.gradient
+    return _on_tube(surfaces, row, q)[1]
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -190,34 +195,30 @@ class _Seen:
     curvature: F64
 
 
-def _seen_on_torus(touched: Touched, q: F64) -> _Seen:
+def _seen_on_torus(surfaces: Surfaces, row: I32, q: F64) -> _Seen:
     """At the foot of q: n.v, its gradient in the surface, and the normal curvature along v (a torus has the curvatures
     1/r round its tube and (rho - R)/(r rho) along its parallels).
     """
-    height = dot(q, touched.z)
-    across = q - height[:, None] * touched.z
-    normal, foot = _torus_normal(touched, height, across)
-    v = unit(foot - touched.sight) if touched.is_central else touched.sight
-    foot_height = dot(foot, touched.z)
-    outward = unit(foot - foot_height[:, None] * touched.z)
-    rho, ring, tube = dot(foot, outward), touched.size[:, 0], touched.size[:, 1]
-    parallel = np.cross(touched.z, outward)
-    value = dot(normal, v)
-    v_parallel = dot(v, parallel)
+    normal, foot, outward = _on_tube(surfaces, row, q)
+    sight = surfaces.sight[row]
+    v = unit(foot - sight) if surfaces.is_central else sight
+    ring, tube = surfaces.size[row, 0], surfaces.size[row, 1]
+    rho = dot(foot, outward)
+    parallel = np.cross(surfaces.z[row], outward)
+    value, v_parallel = dot(normal, v), dot(v, parallel)
     v_round = v - value[:, None] * normal - v_parallel[:, None] * parallel
     bend = (rho - ring) / (tube * np.where(np.abs(rho) > ZERO * ring, rho, ZERO * ring))
     gradient = v_round / tube[:, None] + (v_parallel * bend)[:, None] * parallel
     return _Seen(foot, value, gradient, dot(v_round, v_round) / tube + v_parallel * v_parallel * bend)
 
 
-def bends_away(touched: Touched, points: F64) -> NDArray[np.bool_]:
+def bends_away(surfaces: Surfaces, row: I32, points: F64) -> Bools:
     """Whether the surface falls behind the line of sight that touches it at outline points (k,3), so that the solid it
     bounds does not hide the touch. Cylinders, cones, spheres: where the solid lies inside.
     """
-    result = touched.side > 0.0
-    rows = np.flatnonzero(touched.kind == PatchKind.TORUS)
-    if len(rows):
-        torus = touched.take(rows)
-        result[rows] = _seen_on_torus(torus, points[rows] - torus.origin).curvature * torus.side >= 0.0
+    result = surfaces.side[row] > 0.0
+    some = np.flatnonzero(surfaces.kind[row] == PatchKind.TORUS)
+    if len(some):
+        seen = _seen_on_torus(surfaces, row[some], points[some] - surfaces.origin[row[some]])
+        result[some] = seen.curvature * surfaces.side[row[some]] >= 0.0
     return result
-
