@@ -10,6 +10,7 @@ from platewright.backend.contract import EdgeKind, PatchKind
 from platewright.compiler.solids.along import ALONG
 from platewright.compiler.solids.bounds import bounds
 from platewright.compiler.solids.build import build
+from platewright.compiler.solids.crossing import crossing
 from platewright.compiler.solids.recipe import (
     Bellows,
     Block,
@@ -51,6 +52,7 @@ GOOD: list[Primitive] = [
     Spring(20.0, 2.0, 12.0, 27.0, True),
     Sweep(STRIP, HOSE),
     Sweep(STRIP, LOOP),
+    Sweep(STRIP, LOOP, -360.0),
     Sweep(STRIP, MIXED),
     Sweep(STRIP, FRAME),
     Sweep(STRIP, SpacePath((10.0, 0.0, 0.0), (Helix(20.0, 12.0, 3.0),)), 90.0),
@@ -68,6 +70,8 @@ def test_good_ones_are_sound_and_none_is_refused(shape: Primitive) -> None:
     mesh = made(add(shape), rung=0.1)
     check_mesh(mesh, 0.1)
     assert len(mesh.faces) <= count_triangles(shape, 0.1)
+    shell = tessellate(shape, 0.1)
+    assert crossing(shell.vertices, shell.faces) is None
     low, high = bounds(Recipe((add(shape),)))
     size = max(b - a for a, b in zip(low, high, strict=True))
     assert (mesh.vertices.min(axis=0) >= np.array(low) - 2e-3 * size).all()
@@ -100,6 +104,23 @@ def test_a_body_that_would_cut_itself_is_refused_with_the_place(shape: Primitive
     assert [found.code for found in flaws] == ["cuts-itself"]
     assert place in flaws[0].sentence
     assert "mm" in flaws[0].sentence and flaws[0].hint
+
+
+@pytest.mark.parametrize(
+    ("twist", "closes"), [(0.0, True), (360.0, True), (-720.0, True), (45.0, False), (180.0, False)]
+)
+def test_a_twist_along_a_closed_path_takes_whole_turns(twist: float, closes: bool) -> None:
+    """Anything else would leave a jump where the path closes, or a fold."""
+    codes = [found.code for found in problems_of(Sweep(STRIP, LOOP, twist))]
+    assert codes == ([] if closes else ["twist-does-not-close"])
+    assert problems_of(Sweep(STRIP, HOSE, twist)) == ()
+
+
+@pytest.mark.parametrize("rung", [0.1, 0.01])
+def test_triangles_of_twisted_sweeps_are_not_counted_many_times_over(rung: float) -> None:
+    shape = Sweep(STRIP, SpacePath((10.0, 0.0, 0.0), (Helix(20.0, 12.0, 3.0),)), 90.0)
+    made_of = len(tessellate(shape, rung).faces)
+    assert made_of <= count_triangles(shape, rung) <= 1.5 * made_of
 
 
 @pytest.mark.parametrize("gap", [0.2, 0.05, -0.2, -1.0])

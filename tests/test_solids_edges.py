@@ -12,12 +12,14 @@ from platewright.backend.contract import EdgeKind, PatchKind
 from platewright.compiler import measure
 from platewright.compiler.solids.bounds import bounds
 from platewright.compiler.solids.build import build
+from platewright.compiler.solids.plane import Corner, with_corners
 from platewright.compiler.solids.recipe import (
     Block,
     Cone,
     Cylinder,
     Edged,
     Extrude,
+    Loop,
     Outline,
     Primitive,
     Prism,
@@ -121,6 +123,12 @@ def test_walls_of_a_rimmed_extrusion_share_vertices_with_a_pin() -> None:
     assert len(wall) >= 2 * len(ring) - 2 and apart.max() < 1e-9
 
 
+def rounded_inside(radius: float) -> Loop:
+    """An angle with its inner corner rounded."""
+    corners = polygon((0.0, 0.0), (60.0, 0.0), (60.0, 10.0), (10.0, 10.0), (10.0, 60.0), (0.0, 60.0))
+    return with_corners(corners, [Corner("rounded", radius) if k == 3 else None for k in range(6)])
+
+
 @pytest.mark.parametrize(
     ("shape", "code"),
     [
@@ -128,6 +136,8 @@ def test_walls_of_a_rimmed_extrusion_share_vertices_with_a_pin() -> None:
         (Extrude(plain(rectangle(9.0, 9.0), circle(0.0, 0.0, 3.0)), 9.0, 20.0), "taper-too-large"),
         (Extrude(plain(ellipse(9.0, 2.0)), 9.0, 20.0), "taper-too-large"),
         (Edged(Extrude(plain(ELL), 5.0), "rounded", 2.6), "corner-too-large"),
+        # The rim leans out, and its arc bulges further than both of its ends, past what the inner corner bears.
+        (Edged(Extrude(plain(rounded_inside(4.0)), 20.0, -12.0), "rounded", 1.0), "corner-too-large"),
         (Edged(Extrude(plain(SLOT), 50.0), "rounded", 6.0), "corner-too-large"),
         (Edged(Extrude(plain(rectangle(9.0, 9.0), circle(0.0, 0.0, 4.0)), 9.0), "chamfered", 0.3), "corner-too-large"),
         (Edged(Block((4.0, 4.0, 1.0)), "rounded", 0.5), "corner-too-large"),

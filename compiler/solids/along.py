@@ -63,7 +63,7 @@ def count_along(shape: Along, rung: float) -> int:
     k = _chords(outline, rung)
     if isinstance(shape, Sweep) and turned:
         # The chords of a twisted section are short: `sweep.body` divides them.
-        k += math.ceil(8.0 * reach * divisions(reach, rung) / (4.0 * rung * math.tau))
+        k += math.ceil(_perimeter(outline, rung) * math.tau / (4.0 * rung * divisions(reach, rung)))
     return 2 * k * n + 4 * k
 
 
@@ -101,6 +101,11 @@ def shifted(inner: Shell, by: Point2) -> Shell:
 def _chords(outline: Outline, rung: float) -> int:
     loops = [oriented(loop, k == 0) for k, loop in enumerate((outline.outer, *outline.holes))]
     return sum(count_chords(curves, rung) for curves in loops)
+
+
+def _perimeter(outline: Outline, rung: float) -> float:
+    chords = (np.roll(loop.points, -1, axis=0) - loop.points for loop in flatten(outline, rung))
+    return sum(float(np.hypot(*each.T).sum()) for each in chords)
 
 
 def _reach(outline: Outline) -> float:

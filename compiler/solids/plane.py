@@ -202,7 +202,7 @@ def inset(curves: Sequence[Curve], distance: float) -> tuple[Curve, ...]:
     n = len(curves)
     moved = [curve if curve.is_free else _moved(curve, distance) for curve in curves]
     if any(each is None for each in moved):
-        raise PlaneFlaw("parallel-vanishes", f"an arc of the outline has a smaller radius than {abs(distance):.6g} mm")
+        raise PlaneFlaw("parallel-vanishes", f"an arc of the outline has no larger radius than {abs(distance):.6g} mm")
     offset = [each for each in moved if each is not None]
     if n == 1:
         return tuple(offset)

@@ -33,6 +33,8 @@ _TURN = math.radians(150.0)
 two normal discs share a point, its distance to the curve has two minima, and between them the curve leaves the ball of
 that radius round the point and comes back to it. Some of the half turn is kept as a margin.
 """
+_WHOLE = 1e-9
+"""Degrees off a whole turn that are rounding."""
 _MOST_POINTS = 1_000_000  # of all sections; with more of them the chord error is coarser
 
 
@@ -47,7 +49,7 @@ def flaws_along(shape: Sweep | Tube | Spring | Bellows) -> tuple[OutlineFlaw, ..
         sentence = f"the bore of {shape.bore:.6g} mm leaves no wall in a tube of {shape.diameter:.6g} mm"
         return (OutlineFlaw("no-wall", sentence, "make the bore smaller"),)
     if isinstance(shape, Sweep):
-        wrong = faults(outline, False)
+        wrong = faults(outline, False) or _does_not_close(shape, found)
         if wrong:
             return wrong
     reach = reach_from_path(flatten(outline, 0.02 * _extent(shape)))
@@ -76,6 +78,14 @@ def _extent(shape: Sweep | Tube | Spring) -> float:
         return shape.wire / 2
     outer = shape.outline.outer
     return max(math.hypot(*outer.start), *(math.hypot(*stretch.end) for stretch in outer.stretches))
+
+
+def _does_not_close(shape: Sweep, found: Trace) -> tuple[OutlineFlaw, ...]:
+    """A twist that does not bring the section back onto itself where its path closes."""
+    if not found.is_closed or abs(math.remainder(shape.twist, 360.0)) <= _WHOLE:
+        return ()
+    sentence = f"a twist of {shape.twist:.6g} deg does not bring the section back onto itself where the path closes"
+    return (OutlineFlaw("twist-does-not-close", sentence, "twist it by whole turns, `360 deg`, or open the path"),)
 
 
 def _bellows_flaws(shape: Bellows) -> tuple[OutlineFlaw, ...]:

@@ -67,7 +67,8 @@ def loops_of(shape: Extrude) -> list[tuple[Curve, ...]]:
 def check(shape: Extrude, rim: Corner | None) -> None:
     """Raise PlaneFlaw unless the outline bears the insets of its wall."""
     wall = profile(shape, rim)
-    insets = {curve.start[0] for curve in wall} | {wall[-1].end[0]}
+    # The arc of a rim may bulge further than its ends.
+    insets = {end[0] for curve in wall for end in (curve.start, curve.end, *extent((curve,)))}
     for distance in sorted(insets - {0.0}):
         lines = []
         for k, loop in enumerate(loops_of(shape)):
