@@ -19,8 +19,8 @@ from .drawing import Arc, Cubics, Lines, Path, Piece, Point, Words
 Letters: TypeAlias = Callable[[str, float, Literal["sans", "sans bold"]], tuple[Path, ...]]
 """Outlines of a text by its capitals' height and face: page mm, base line from (0,0) to the right, nonzero rule."""
 
-CUBIC_STEP = math.radians(45.0)
-"""Longest stretch of an ellipse that one cubic stands for: it strays by 4.2e-6 of the radius."""
+CUBIC_STEP = math.radians(45.0) + 1e-9
+"""Longest stretch of an ellipse, in radians, that one cubic stands for: it strays by 4.2e-6 of the radius."""
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -155,7 +155,8 @@ def _halved(ends: F64, is_large: bool, is_clockwise: bool, least_cosine: float) 
 
 def _unit(vectors: F64) -> F64:
     lengths: F64 = np.sqrt(vectors[:, :1] * vectors[:, :1] + vectors[:, 1:] * vectors[:, 1:])
-    return vectors / lengths
+    units: F64 = vectors / lengths
+    return units
 
 
 def _mapped(matrix: F64, vectors: F64) -> F64:

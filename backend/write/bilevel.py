@@ -15,12 +15,14 @@ if TYPE_CHECKING:
     from ..converter import Bits
 
 _PHOTOMETRIC, _WHITE_IS_ZERO = 262, 0
+_SAMPLES_A_PIXEL = 277
 
 
 def group4_bytes(bits: Bits, dpi: float) -> bytes:
     """A TIFF with one bit a pixel. No date, software or host tag. Cost: about 1 ns a pixel."""
     out = io.BytesIO()
-    _picture(bits).save(out, "TIFF", compression="group4", dpi=(dpi, dpi), tiffinfo={_PHOTOMETRIC: _WHITE_IS_ZERO})
+    tags = {_PHOTOMETRIC: _WHITE_IS_ZERO, _SAMPLES_A_PIXEL: 1}
+    _picture(bits).save(out, "TIFF", compression="group4", dpi=(dpi, dpi), tiffinfo=tags)
     return out.getvalue()
 
 
