@@ -46,7 +46,7 @@ def of_thing(thing: Thing) -> Symmetry:
 
 def coincide(placements: Sequence[Affine], kind: Symmetry) -> bool:
     """Whether any two of the placements put a thing of this symmetry in one place, to a millionth of a millimetre."""
-    return len(placements) > 1 and len(np.unique(_keys(placements, kind), axis=0)) < len(placements)
+    return len(placements) > 1 and len({row.tobytes() for row in _keys(placements, kind)}) < len(placements)
 
 
 def shared_lines(placed: Sequence[tuple[int, Affine]], kind: Symmetry) -> list[tuple[int, int]]:

@@ -160,7 +160,9 @@ class _Workshop:
             for step in recipe.steps
         ]
         levels = Levels([(group.body.planes, group.placements) for _, groups in steps for group in groups])
-        box = _common_box([group.box() for _, groups in steps for group in groups])
+        # Of the whole part nobody asks for planes, and for a box only what is kept.
+        needs_box = not is_outermost or any(operation == "keep" for operation, _ in steps)
+        box = _common_box([group.box() for _, groups in steps for group in groups] if needs_box else [])
         solid, low, high, n = Manifold(), 0.0, 0.0, 0
         for operation, groups in steps:
             if not groups:
@@ -171,7 +173,7 @@ class _Workshop:
                 n += 1
             solid = self._kept(solid, operands, box) if operation == "keep" else _combined(solid, operation, operands)
             low, high = _volume_bounds(low, high, operation, groups)
-        return _Body(solid, levels.planes(), (low, high), box)
+        return _Body(solid, np.zeros((0, 6)) if is_outermost else levels.planes(), (low, high), box)
 
     def _kept(self, solid: Manifold, operands: list[Manifold], box: F64) -> Manifold:
         """What remains when the rest of a box round everything is cut away: the intersection leaves sheets of no

@@ -30,22 +30,26 @@ def axis_planes(surfaces: Surfaces) -> F64:
 
 
 def placed_heights(planes: F64, placements: F64) -> tuple[F64, NDArray[np.int64], NDArray[np.bool_]]:
-    """Planes (k,6) under placements (n,3,4): heights (n,k) mm, the axis (n,k) that each is square to or -1, and
-    whether it is square without any residue (n,k).
+    """Planes (k,6), each under a placement (k,3,4): heights (k,) mm, the axis (k,) that each is square to or -1, and
+    whether it is square without any residue (k,).
     """
-    linear, shift = placements[:, None, :, :3], placements[:, None, :, 3]
+    n = [planes[:, k] for k in range(3)]
     # Normals turn with the cofactors: the cross products of the rows.
-    cofactor = np.cross(np.roll(linear, -1, axis=2), np.roll(linear, -2, axis=2))
-    normal = (cofactor * planes[None, :, None, :3]).sum(axis=3)
-    normal /= np.maximum(np.abs(normal).max(axis=2, keepdims=True), 1e-300)
-    axis = np.abs(normal).argmax(axis=2)
+    a = [[placements[:, i, k] for k in range(3)] for i in range(3)]
+    normal = np.empty((len(planes), 3))
+    point = np.empty((len(planes), 3))
+    for i in range(3):
+        b, c = a[(i + 1) % 3], a[(i + 2) % 3]
+        x, y, z = (b[(k + 1) % 3] * c[(k + 2) % 3] - b[(k + 2) % 3] * c[(k + 1) % 3] for k in range(3))
+        normal[:, i] = x * n[0] + y * n[1] + z * n[2]
+        point[:, i] = a[i][0] * planes[:, 3] + a[i][1] * planes[:, 4] + a[i][2] * planes[:, 5] + placements[:, i, 3]
     off = np.abs(normal)
-    np.put_along_axis(off, axis[..., None], 0.0, axis=2)
-    residue = off.max(axis=2, initial=0.0)
-    x, y, z = (planes[None, :, None, k] for k in (3, 4, 5))
-    point = linear[..., 0] * x + linear[..., 1] * y + linear[..., 2] * z + shift
-    heights = np.take_along_axis(point, axis[..., None], axis=2)[..., 0]
-    return heights, np.where(residue <= _SQUARE, axis, -1), residue == 0.0
+    off /= np.maximum(off.max(axis=1, initial=0.0), 1e-300)[:, None]
+    axis = off.argmax(axis=1)
+    here = np.arange(len(planes))
+    off[here, axis] = 0.0
+    residue = off.max(axis=1, initial=0.0)
+    return point[here, axis], np.where(residue <= _SQUARE, axis, -1), residue == 0.0
 
 
 class Levels:
@@ -53,21 +57,25 @@ class Levels:
 
     def __init__(self, groups: Sequence[tuple[F64, F64]]) -> None:
         """`groups` are planes (k,6) and the placements (n,3,4) of the body that has them. Cost: a sort of heights."""
-        self._found = [placed_heights(planes, placements) for planes, placements in groups]
-        largest = [np.abs(heights[axis >= 0]).max(initial=0.0) for heights, axis, _ in self._found]
-        self._tolerance = TOGETHER * max(largest, default=0.0)
-        self._by_axis = [
-            self._together(np.concatenate([h[axis == k] for h, axis, _ in self._found] or [np.zeros(0)]))
-            for k in range(3)
-        ]
+        self._shapes = [(len(placements), len(planes)) for planes, placements in groups]
+        self._starts = [0]
+        for n, k in self._shapes:
+            self._starts.append(self._starts[-1] + n * k)
+        planes = [np.tile(planes, (len(placements), 1)) for planes, placements in groups]
+        placed = [placements.repeat(len(planes), axis=0) for planes, placements in groups]
+        heights, axis, exact = placed_heights(
+            np.concatenate([np.zeros((0, 6)), *planes]), np.concatenate([np.zeros((0, 3, 4)), *placed])
+        )
+        self._tolerance = TOGETHER * float(np.abs(heights[axis >= 0]).max(initial=0.0))
+        self._by_axis = [self._together(heights[axis == k]) for k in range(3)]
+        self._is_off = (axis >= 0) & ~exact
+        for k in range(3):
+            self._is_off |= (axis == k) & (self._nearest(k, heights) != heights)
 
     def to_correct(self, group: int) -> NDArray[np.bool_]:
         """Which placements (n,) of a group put a plane beside its level."""
-        heights, axis, exact = self._found[group]
-        wrong = (axis >= 0) & ~exact
-        for k in range(3):
-            wrong |= (axis == k) & (self._nearest(k, heights) != heights)
-        return np.asarray(wrong.any(axis=1))
+        is_off = self._is_off[self._starts[group] : self._starts[group + 1]]
+        return np.asarray(is_off.reshape(self._shapes[group]).any(axis=1))
 
     def correct(self, points: F64) -> F64:
         """Points (n,3) with every coordinate that is a rounding error off a level set to it."""
@@ -79,14 +87,13 @@ class Levels:
         return np.array(rows).reshape(-1, 6)
 
     def _together(self, heights: F64) -> F64:
-        ordered = np.unique(heights)
-        if not len(ordered):
-            return ordered
-        starts = np.flatnonzero(np.diff(ordered, prepend=-np.inf) > self._tolerance)
+        ordered = np.sort(heights)
+        is_start = np.ones(len(ordered), np.bool_)
+        is_start[1:] = ordered[1:] - ordered[:-1] > self._tolerance
         decimal = np.round(ordered, 6) + 0.0
         near = np.abs(decimal - ordered) <= self._tolerance
-        levels = ordered[starts]
-        cluster = np.cumsum(np.diff(ordered, prepend=-np.inf) > self._tolerance) - 1
+        levels = ordered[is_start]
+        cluster = np.cumsum(is_start) - 1
         levels[cluster[near]] = decimal[near]
         return levels
 

@@ -168,7 +168,7 @@ def ring_divisions(loops: list[Polyline], rung: float) -> list[NDArray[np.int64]
         rho = _radii(loop)
         within = loop.curve == np.roll(loop.curve, 1)
         reach = rho.copy()
-        for row in np.unique(loop.curve[within]):
+        for row in sorted(set(loop.curve[within].tolist())):
             on_curve = loop.curve == row
             on_curve |= np.roll(on_curve, 1)
             largest = float(rho[on_curve].max())
@@ -176,7 +176,7 @@ def ring_divisions(loops: list[Polyline], rung: float) -> list[NDArray[np.int64]
             if all(divisions(float(r), rung) == divisions(largest, rung) for r in ends if r > 0.0):
                 reach[within & (loop.curve == row)] = largest
         wanted.append(np.where(rho == 0.0, 0.0, reach))
-    every = np.unique(np.concatenate(wanted))
+    every = np.array(sorted(set(np.concatenate(wanted).tolist())))
     every = every[every > 0.0]
     number, n = {0.0: 1}, 0
     for k in range(len(every) - 1, -1, -1):
