@@ -74,6 +74,8 @@ def _pairs(boxes: F64) -> tuple[I32, F64]:
     full = full[np.argsort(boxes[full, 0], kind="stable")]
     reach = np.searchsorted(boxes[full, 0], boxes[full, 3], side="right")
     counts = np.maximum(reach - np.arange(len(full)) - 1, 0)
+    if not counts.any():
+        return np.empty((0, 2), np.int32), np.empty(0)
     found = []
     # In batches, for where many parts lie one above the other.
     cuts = np.searchsorted(np.cumsum(counts), np.arange(_BATCH, int(counts.sum()) + _BATCH, _BATCH), side="left") + 1

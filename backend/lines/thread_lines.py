@@ -24,14 +24,16 @@ little past the upright centre line and ends a little before the level one (comm
 _SAME = 1e-6
 _EDGE_ON = 0.02
 """Cosine between sight and axis below which circles about the axis are seen edge-on and add nothing."""
+_CHAMFER = 2.5
+"""Pitches that a chamfer takes of a thread at most (common practice)."""
 _ALLOWANCE = 0.08
 """Of the crest's radius: a chord of eight to the circle leaves it by no more, so its facets never hide its lines."""
 
 
 @dataclass(frozen=True, eq=False, slots=True)
 class _Threaded:
-    """A thread where it stands: origin and unit axis, world; radii of crest and root mm; its wall; the faces cut
-    through the part, as (normal, distance from the origin, triangles).
+    """A thread where it stands: origin and unit axis, world; radii of crest and root; how much a chamfer may take of its
+    length, mm; its wall; the faces cut through the part, as (normal, distance from the origin, triangles).
     """
 
     node: int
@@ -42,6 +44,7 @@ class _Threaded:
     crest: float
     root: float
     is_internal: bool
+    chamfer: float
     wall: Wall
     cuts: tuple[tuple[F64, float, Wall], ...]
 
@@ -84,7 +87,8 @@ def _threaded(view: View, node: int, thread: Thread, faces: I32, shift: F64) -> 
     patch = int(view.face_patch[of_crest[is_within]].min())
     cuts = tuple(_cuts(view, faces, origin, axis))
     return _Threaded(
-        node, patch, origin, axis, thread.length, crest / 2.0, root / 2.0, thread.internal, stands, cuts
+        node, patch, origin, axis, thread.length, crest / 2.0, root / 2.0, thread.internal, _CHAMFER * thread.pitch,
+        stands, cuts,
     )  # fmt: skip
 
 
@@ -106,6 +110,8 @@ def _lines(view: View, of: _Threaded) -> list[Candidates]:
         (of.length, of.axis, bool(of.wall.heights.max() > of.length * (1.0 + _SAME))),
     ):
         found += _limit(view, of, height) if goes_on else _root_circle(view, of, height, normal)
+        if goes_on or of.is_internal:
+            found += _limit_on_cuts(view, of, height)
     for normal, distance, _ in of.cuts:
         height = distance * float(dot(normal, of.axis))
         if 1.0 - abs(float(dot(normal, of.axis))) < _SAME and 0.0 < height < of.length:
@@ -155,11 +161,9 @@ def _before(view: View, of: _Threaded, touch: F64) -> F64:
 
 
 def _root_lines_on_cuts(view: View, of: _Threaded) -> list[Candidates]:
-    """Where faces cut along the axis meet the root; and from crest to root at the limit of an internal thread."""
+    """Where faces cut along the axis meet the root."""
     found = []
-    for normal, distance, face in of.cuts:
-        if abs(float(dot(normal, of.axis))) > _SAME or abs(distance) >= of.root * (1.0 - _SAME):
-            continue
+    for normal, distance, face in _cuts_along(of, of.root):
         across = np.cross(normal, of.axis)
         offset = float(np.sqrt(of.root * of.root - distance * distance))
         for side in (offset, -offset):
@@ -168,34 +172,62 @@ def _root_lines_on_cuts(view: View, of: _Threaded) -> list[Candidates]:
                 if high - low > _SAME * of.length:
                     ends = (base + low * of.axis)[None], (base + high * of.axis)[None]
                     found.append(_candidates(view, of, *ends, LineClass.THREAD_ROOT))
-            if of.is_internal and abs(distance) < of.crest and of.wall.heights.max() > of.length * (1.0 + _SAME):
-                inner = float(np.sqrt(of.crest * of.crest - distance * distance)) * (1.0 if side > 0.0 else -1.0)
-                limit = base + of.length * of.axis
-                ends = (limit + (inner - side) * across)[None], limit[None]
-                found.append(_candidates(view, of, *ends, LineClass.THREAD_CREST))
     return found
+
+
+def _limit_on_cuts(view: View, of: _Threaded, height: float) -> list[Candidates]:
+    """On faces cut along the axis, the end of a thread within the part is a line between crest and root."""
+    found, near = [], _SAME * of.length
+    for normal, distance, face in _cuts_along(of, min(of.crest, of.root)):
+        across = np.cross(normal, of.axis)
+        base = of.origin + distance * normal + height * of.axis
+        ends = [float(np.sqrt(radius * radius - distance * distance)) for radius in (of.crest, of.root)]
+        for side in (1.0, -1.0):
+            there = along_face(face, across, side * 0.5 * (ends[0] + ends[1]))
+            if ((there[:, 0] < height - near) & (there[:, 1] > height + near)).any():
+                points = [(base + side * end * across)[None] for end in ends]
+                found.append(_candidates(view, of, points[0], points[1], LineClass.THREAD_CREST))
+    return found
+
+
+def _cuts_along(of: _Threaded, radius: float) -> list[tuple[F64, float, Wall]]:
+    """Faces cut along the axis within a distance of it."""
+    return [
+        each for each in of.cuts if abs(float(dot(each[0], of.axis))) < _SAME and abs(each[1]) < radius * (1.0 - _SAME)
+    ]
 
 
 # --- round the axis
 
 
 def _root_circle(view: View, of: _Threaded, height: float, normal: F64) -> list[Candidates]:
-    """Three quarters of the root's circle at an end of the thread that is turned to the viewer."""
+    """Three quarters of the root's circle at an end of the thread that is turned to the viewer, where the crest reaches
+    it but for a chamfer.
+    """
     centre = of.origin + height * of.axis
     v = unit(along_sight(view.projection, centre[None])[0])
     if -float(dot(normal, v)) < _EDGE_ON:
         return []
     right = np.array(view.projection.right)
     x = unit(right - dot(right, normal) * normal)
-    return _arc(view, of, centre, x, np.cross(normal, x), ROOT_ARC, of.root, (0.0, of.length), LineClass.THREAD_ROOT)
+    between = height - of.chamfer, height + of.chamfer
+    return _arc(view, of, centre, x, np.cross(normal, x), ROOT_ARC, of.root, between, LineClass.THREAD_ROOT)
 
 
 def _limit(view: View, of: _Threaded, height: float) -> list[Candidates]:
-    """The line round the crest where the thread ends and its cylinder goes on."""
-    x = unit(of.wall.corners[0, 0] - of.wall.heights[0, 0] * of.axis)
+    """The line round the crest where the thread ends and its cylinder goes on; of an internal one round its root too.
+
+    None where it would be a circle over the circle of the cylinder.
+    """
     centre = of.origin + height * of.axis
-    y = np.cross(of.axis, x)
-    return _arc(view, of, centre, x, y, (0.0, 360.0), of.crest, (height, height), LineClass.THREAD_CREST)
+    v = unit(along_sight(view.projection, centre[None])[0])
+    if float(length(np.cross(v, of.axis))) < _EDGE_ON:
+        return []
+    x = unit(of.wall.corners[0, 0] - of.wall.heights[0, 0] * of.axis)
+    y, between = np.cross(of.axis, x), (height, height)
+    radii = (of.crest, of.root) if of.is_internal else (of.crest,)
+    ways = centre, x, y, (0.0, 360.0)
+    return [arc for radius in radii for arc in _arc(view, of, *ways, radius, between, LineClass.THREAD_CREST)]
 
 
 def _arc(
