@@ -121,7 +121,8 @@ def outlined(words: Words, letters: Letters) -> tuple[Path, ...]:
     turn, origin = np.array(((cos, -sin), (sin, cos))), np.array(words.origin)
 
     def placed(points: F64) -> F64:
-        return _mapped(turn, points) + origin
+        moved: F64 = _mapped(turn, points) + origin
+        return moved
 
     paths = []
     for path in map(without_arcs, letters(words.text, words.height, words.face)):
