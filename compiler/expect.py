@@ -6,7 +6,6 @@ import math
 from collections.abc import Sequence
 
 import numpy as np
-from platewright.backend.contract import F64, I32
 from platewright.lang import tree
 from platewright.lang.nearest import nearest
 from platewright.lang.problems import Problem, is_error
@@ -18,7 +17,7 @@ from .build import Model
 from .expressions import evaluate, truth
 from .flatten import Flattened, Mesher, Prover, flatten, prove
 from .graph import Solid
-from .measure import area, least_clearance, volume
+from .measure import Body, area, least_clearance, volume
 from .mistakes import Mistake, Problems, mistake
 from .modules import names_in
 from .paths import Placed, follow
@@ -73,6 +72,7 @@ class _Measures:
         self.name, self.thing = subject.name, subject.thing
         self.model, self.mesher, self.problems = model, mesher, problems
         self.flattened: dict[int, Flattened] = {}
+        self.bodies: dict[tuple[int, Affine], list[Body]] = {}
 
     def value(self, path: tree.Path) -> Value | None:
         steps = self._steps(path)
@@ -171,13 +171,17 @@ class _Measures:
         one, other = (self._placed("clearance", each) for each in call.positional)
         if any(f"{a.path}.".startswith(f"{b.path}.") or not b.path for a, b in ((one, other), (other, one))):
             raise mistake("wrong-parameters", call.span, "one of these is part of the other, so there is no gap")
-        sides = [
-            _solids(self._geometry(placed, written), placed.placement)
-            for placed, written in zip((one, other), call.positional, strict=True)
-        ]
+        sides = [self._bodies(placed, each) for placed, each in zip((one, other), call.positional, strict=True)]
         if len(sides[0]) * len(sides[1]) > MAX_PAIRS:
             raise mistake("too-much", call.span, f"more than {MAX_PAIRS:,} pairs of parts lie between these, the limit")
         return Quantity(least_clearance(sides[0], sides[1]), LENGTH)
+
+    def _bodies(self, placed: Placed, written: tree.Expression) -> list[Body]:
+        """The solids of one placed thing, once. Raises Mistake if it holds no parts."""
+        key = id(placed.thing), placed.placement
+        if key not in self.bodies:
+            self.bodies[key] = _bodies(self._geometry(placed, written), placed.placement)
+        return self.bodies[key]
 
     def _geometry(self, placed: Placed, written: tree.Expression) -> Flattened:
         """One thing flattened in its own frame, once. Raises Mistake if it holds no parts."""
@@ -196,7 +200,7 @@ class _Measures:
 _DIMENSIONS: dict[str, Dimension] = {"volume": VOLUME, "area": AREA, "mass": MASS}
 
 
-def _solids(flattened: Flattened, placement: Affine) -> list[tuple[F64, I32]]:
+def _bodies(flattened: Flattened, placement: Affine) -> list[Body]:
     """Vertices, placed, and faces of every solid."""
     geometry, found = flattened.geometry, []
     for node in geometry.nodes:
@@ -205,7 +209,7 @@ def _solids(flattened: Flattened, placement: Affine) -> list[tuple[F64, I32]]:
             faces = geometry.faces[slice(*node.face_range)] - np.int32(start)
             turned_over = determinant(placement) < 0
             vertices = apply(placement, geometry.vertices[start:stop])
-            found.append((vertices, faces[:, ::-1] if turned_over else faces))
+            found.append(Body(vertices, faces[:, ::-1] if turned_over else faces))
     return found
 
 

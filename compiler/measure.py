@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from functools import cached_property
 
 import manifold3d
 import numpy as np
@@ -89,42 +90,53 @@ def clearance(vertices: F64, faces: Faces, other_vertices: F64, other_faces: Fac
     ValueError if either is not closed. Cost grows with the triangles that lie nearer to the other solid than the
     first few vertices do.
     """
-    return least_clearance([(vertices, faces)], [(other_vertices, other_faces)])
+    return least_clearance([Body(vertices, faces)], [Body(other_vertices, other_faces)])
 
 
-def least_clearance(ones: Sequence[tuple[F64, Faces]], others: Sequence[tuple[F64, Faces]]) -> float:
+class Body:
+    """A closed solid whose distances are asked for, perhaps more than once: what they are worked out from is kept."""
+
+    def __init__(self, vertices: F64, faces: Faces) -> None:
+        self.vertices, self.faces = vertices, faces
+
+    @cached_property
+    def box(self) -> F64:
+        """The box (2,3)."""
+        return np.array((self.vertices.min(axis=0), self.vertices.max(axis=0)))
+
+    @cached_property
+    def some(self) -> F64:
+        """A few of the vertices."""
+        return self.vertices[:: max(1, len(self.vertices) // _SAMPLE)]
+
+    @cached_property
+    def solid(self) -> manifold3d.Manifold:
+        """As the boolean kernel has it. ValueError if it is not closed."""
+        mesh = manifold3d.Mesh64(np.ascontiguousarray(self.vertices), np.ascontiguousarray(self.faces, np.uint64))
+        solid = manifold3d.Manifold(mesh)
+        if solid.status() != manifold3d.Error.NoError:
+            raise ValueError(f"not a closed solid: {solid.status().name}")
+        return solid
+
+
+def least_clearance(ones: Sequence[Body], others: Sequence[Body]) -> float:
     """Least distance in mm between any of some closed solids and any of others, as `clearance`.
 
     Pairs are taken by the distance of their boxes, nearest first, and only while that is less than the least found.
     """
-    boxes, other_boxes = (np.array([(v.min(axis=0), v.max(axis=0)) for v, _ in each]) for each in (ones, others))
+    boxes, other_boxes = (np.array([body.box for body in each]) for each in (ones, others))
     apart = np.maximum(boxes[:, None, 0] - other_boxes[None, :, 1], other_boxes[None, :, 0] - boxes[:, None, 1])
     gaps = np.sqrt((np.maximum(apart, 0.0) ** 2).sum(axis=2))
-    solids: dict[tuple[int, int], manifold3d.Manifold] = {}
-
-    def solid(side: int, row: int) -> manifold3d.Manifold:
-        if (side, row) not in solids:
-            solids[side, row] = _solid(*(ones, others)[side][row])
-        return solids[side, row]
-
     least = math.inf
     for pair in np.argsort(gaps, axis=None, kind="stable"):
-        one, other = (int(each) for each in np.unravel_index(pair, gaps.shape))
-        if gaps[one, other] >= least or least == 0.0:
+        row, column = (int(each) for each in np.unravel_index(pair, gaps.shape))
+        if gaps[row, column] >= least or least == 0.0:
             break
-        some, far = (v[:: max(1, len(v) // _SAMPLE)] for v in (ones[one][0], others[other][0]))
-        reach = float(np.sqrt(((some[:, None] - far[None]) ** 2).sum(axis=2).min()))
+        one, other = ones[row], others[column]
+        reach = float(np.sqrt(((one.some[:, None] - other.some[None]) ** 2).sum(axis=2).min()))
         reach = min(reach, least) * (1.0 + 1e-9) + 1e-9
-        least = min(least, float(solid(0, one).min_gap(solid(1, other), reach)))
+        least = min(least, float(one.solid.min_gap(other.solid, reach)))
     return least
-
-
-def _solid(vertices: F64, faces: Faces) -> manifold3d.Manifold:
-    mesh = manifold3d.Mesh64(np.ascontiguousarray(vertices), np.ascontiguousarray(faces, np.uint64))
-    solid = manifold3d.Manifold(mesh)
-    if solid.status() != manifold3d.Error.NoError:
-        raise ValueError(f"not a closed solid: {solid.status().name}")
-    return solid
 
 
 def _middle(vertices: F64) -> F64:

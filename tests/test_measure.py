@@ -71,6 +71,16 @@ def test_clearance_between_faces_sides_and_corners(block: Mesh) -> None:
     assert gap(1.0, 0.0, 0.0) == 0.0
 
 
+def test_bodies_are_imported_once_for_all_clearances(block: Mesh) -> None:
+    """Three equal blocks along x; the middle one is asked for twice, the last one only at the end."""
+    bodies = [measure.Body(block.vertices + np.array((x, 0.0, 0.0)), block.faces) for x in (0.0, 5.0, 12.0)]
+    assert measure.least_clearance(bodies[:1], bodies[1:]) == pytest.approx(5.0 - np.ptp(block.vertices[:, 0]))
+    kept = bodies[1].solid
+    assert "solid" not in vars(bodies[2])
+    assert measure.least_clearance(bodies[1:2], bodies[2:]) == pytest.approx(7.0 - np.ptp(block.vertices[:, 0]))
+    assert bodies[1].solid is kept
+
+
 def test_clearance_of_one_solid_within_another_is_none() -> None:
     outer, inner = made(add(Block((9.0, 9.0, 9.0)))), made(add(Block((1.0, 1.0, 1.0)), transform.translate((0, 0, 4))))
     assert measure.clearance(outer.vertices, outer.faces, inner.vertices, inner.faces) == 0.0
