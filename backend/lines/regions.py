@@ -35,6 +35,7 @@ SIMPLIFY_MM = 5e-3
 outlines of machine parts then move by less than 0.002 mm."""
 _STEPS_PER_MM = 2.0**20  # points lie on this lattice before they are noded, so equal points are equal bits
 _ROW = 1 << 32
+_STUB_MM, _BAR_MM = 1e-3, 1e-3
 _BORDERS = tuple(
     number_of(line_class)
     for line_class in (
@@ -42,6 +43,7 @@ _BORDERS = tuple(
         LineClass.VISIBLE_EDGE,
         LineClass.SECTION_OUTLINE,
         LineClass.IMAGINARY_INTERSECTION,
+        LineClass.BREAK_LINE,
     )
 )
 
@@ -90,9 +92,10 @@ def regions_within(view: View, borders: Polylines, faces_under: FacesUnder) -> t
     noded = shapely.get_parts(shapely.unary_union(lines))
     faces = shapely.get_parts(shapely.polygonize(noded))
     labels = _labels(faces, faces_under(_points_within(faces)), view)
-    _merge_small(faces, labels)
+    areas, labels = _united_by(faces, labels)
+    areas, labels = _united_by(areas, _of_neighbours(areas, labels))
     rows = np.flatnonzero(labels[:, 0] >= 0)
-    return _regions(faces[rows], labels[rows], view)
+    return _regions(areas[rows], labels[rows], view)
 
 
 def parts_of(regions: Sequence[Region]) -> tuple[Region, ...]:
@@ -148,19 +151,29 @@ def _polylines(lattice: I64, is_cut: Bools) -> Polylines:
 
 
 def _extended(lines: Polylines, starts_free: Bools, ends_free: Bools) -> Polylines:
-    """Lines with their free ends moved on, in the direction of the last `EXTENSION_MM` rather than of a stub."""
+    """Lines with their free ends moved on, and a short bar across each new end, for lines nearly along this one.
+
+    The direction is that of the last `_STUB_MM` or more: visibility may have left a stub of any direction.
+    """
     points, n = lines.points, len(lines.points)
     run = np.append(0.0, np.cumsum(np.hypot(*np.diff(points, axis=0).T)))
     first = np.flatnonzero(np.diff(lines.line, prepend=-1))
     last = np.append(first[1:], n) - 1
-    inner = np.minimum(np.searchsorted(run, run[first] + EXTENSION_MM), last)
-    outer = np.maximum(np.searchsorted(run, run[last] - EXTENSION_MM, side="right") - 1, first)
+    inner = np.minimum(np.searchsorted(run, run[first] + _STUB_MM), last)
+    outer = np.maximum(np.searchsorted(run, run[last] - _STUB_MM, side="right") - 1, first)
     at, back = np.concatenate([first, last]), np.concatenate([inner, outer])
     is_moved = np.concatenate([starts_free, ends_free]) & (points[at] != points[back]).any(axis=1)
     at, along = at[is_moved], (points[at] - points[back])[is_moved]
+    along /= np.hypot(along[:, 0], along[:, 1])[:, None]
     moved = points.copy()
-    moved[at] += along * (EXTENSION_MM / np.hypot(along[:, 0], along[:, 1]))[:, None]
-    return Polylines(np.rint(moved * _STEPS_PER_MM) / _STEPS_PER_MM, lines.line)
+    moved[at] += along * EXTENSION_MM
+    moved = np.rint(moved * _STEPS_PER_MM) / _STEPS_PER_MM
+    across = _BAR_MM * along[:, ::-1] * (-1.0, 1.0)
+    bars = np.stack([moved[at] - across, moved[at], moved[at] + across], axis=1)
+    rows = len(first) + np.repeat(np.arange(len(at)), 3)
+    return Polylines(
+        np.concatenate([moved, bars.reshape(-1, 2)]), np.concatenate([lines.line, rows]).astype(lines.line.dtype)
+    )
 
 
 def _points_within(faces: Polygons) -> F64:
@@ -178,32 +191,41 @@ def _labels(faces: Polygons, seen: I32, view: View) -> I64:
     return labels
 
 
-def _merge_small(faces: Polygons, labels: I64) -> None:
-    """Give each face that is too small the label of the larger neighbour it has the longest border with."""
+def _united_by(areas: Polygons, labels: I64) -> tuple[Polygons, I64]:
+    """Unite what touches and has one label; parts of it that do not touch stay apart."""
     import shapely
 
-    areas = shapely.area(faces)
-    small = np.flatnonzero(areas < LEAST_AREA_MM2)
-    if not small.size:
-        return
+    if not len(areas):
+        return areas, labels
+    keys, group = np.unique(labels, axis=0, return_inverse=True)
+    order = np.argsort(group.reshape(-1), kind="stable")
+    members = np.split(areas[order], np.cumsum(np.bincount(group.reshape(-1)))[:-1])
+    united = [each if len(each) == 1 else shapely.get_parts(shapely.coverage_union_all(each)) for each in members]
+    return np.concatenate(united), np.repeat(keys, [len(each) for each in united], axis=0)
+
+
+def _of_neighbours(areas: Polygons, labels: I64) -> I64:
+    """Labels in which each area that is too small has that of the neighbour it has the longest border with."""
+    import shapely
+
+    small = np.flatnonzero(shapely.area(areas) < LEAST_AREA_MM2)
+    borders = _borders_between(areas, small)
+    changed = labels.copy()
     waiting = set(small.tolist())
-    borders = _borders_between(faces, small)
-    while waiting:
-        settled = [row for row in waiting if any(other not in waiting for other, _ in borders[row])]
+    while settled := [row for row in sorted(waiting) if any(other not in waiting for other, _ in borders[row])]:
         for row in settled:
-            known = [(length, -other) for other, length in borders[row] if other not in waiting]
-            labels[row] = labels[-max(known)[1]]
-        if not settled:
-            return
+            _, other = max((length, -other) for other, length in borders[row] if other not in waiting)
+            changed[row] = changed[-other]
         waiting.difference_update(settled)
+    return changed
 
 
-def _borders_between(faces: Polygons, rows: I64) -> dict[int, list[tuple[int, float]]]:
-    """For each of `rows` the faces it has a border with, and the length of the border in mm."""
+def _borders_between(areas: Polygons, rows: I64) -> dict[int, list[tuple[int, float]]]:
+    """For each of `rows` the areas it has a border with, and the length of the border in mm."""
     import shapely
 
-    of, other = shapely.STRtree(faces).query(faces[rows], predicate="touches")
-    shared = shapely.length(shapely.intersection(shapely.boundary(faces[rows[of]]), shapely.boundary(faces[other])))
+    of, other = shapely.STRtree(areas).query(areas[rows], predicate="touches")
+    shared = shapely.length(shapely.intersection(shapely.boundary(areas[rows[of]]), shapely.boundary(areas[other])))
     borders: dict[int, list[tuple[int, float]]] = {row: [] for row in rows.tolist()}
     for row, neighbour, length in zip(rows[of].tolist(), other.tolist(), shared.tolist(), strict=True):
         if length > 0.0:
@@ -211,24 +233,19 @@ def _borders_between(faces: Polygons, rows: I64) -> dict[int, list[tuple[int, fl
     return borders
 
 
-def _regions(faces: Polygons, labels: I64, view: View) -> tuple[Region, ...]:
-    """Unite faces of one label, drop points that do not matter, and put all in their order."""
+def _regions(areas: Polygons, labels: I64, view: View) -> tuple[Region, ...]:
+    """Areas with the points that do not matter left out, in their order."""
     import shapely
 
-    keys, group = np.unique(labels, axis=0, return_inverse=True)
-    order = np.argsort(group.reshape(-1), kind="stable")
-    members = np.split(faces[order], np.cumsum(np.bincount(group.reshape(-1)))[:-1])
-    united = [each if len(each) == 1 else shapely.get_parts(shapely.coverage_union_all(each)) for each in members]
-    owner = np.repeat(np.arange(len(keys)), [len(each) for each in united])
-    outlines = shapely.coverage_simplify(np.concatenate(united), SIMPLIFY_MM) if len(united) else np.empty(0, object)
-    outlines = shapely.normalize(outlines)
-    boxes = np.round(shapely.bounds(outlines), 3) if len(outlines) else np.empty((0, 4))
-    paths = [view.geometry.nodes[node].path for node in keys[:, 0].tolist()]
-    rows = sorted(range(len(outlines)), key=lambda k: (paths[owner[k]], *keys[owner[k], 1:], *boxes[k, [1, 0, 3, 2]]))
-    areas = shapely.area(outlines)
+    if not len(areas):
+        return ()
+    outlines = shapely.normalize(shapely.coverage_simplify(areas, SIMPLIFY_MM))
+    size = shapely.area(outlines).tolist()
+    boxes = np.round(shapely.bounds(outlines), 3)
+    paths = [view.geometry.nodes[node].path for node in labels[:, 0].tolist()]
+    rows = sorted(range(len(outlines)), key=lambda k: (paths[k], *labels[k, 1:], *boxes[k, [1, 0, 3, 2]]))
     return tuple(
-        Region(rings_of(outlines[k]), int(keys[owner[k], 0]), int(keys[owner[k], 1]), bool(keys[owner[k], 2]), areas[k])
-        for k in rows
+        Region(rings_of(outlines[k]), int(labels[k, 0]), int(labels[k, 1]), bool(labels[k, 2]), size[k]) for k in rows
     )
 
 
