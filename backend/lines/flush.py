@@ -119,8 +119,13 @@ def _is_along(view: View, patch: int, other: int, middle: F64, slack: float, nea
 
 
 def _shared_sides(view: View, patch: int, other: int) -> I32:
-    """Sides (k,2) of triangles of one patch whose two ends are corners of the other as well."""
-    own = view.faces[view.face_patch == patch]
-    corners = np.unique(view.faces[view.face_patch == other])
-    sides = np.concatenate([own[:, [k, (k + 1) % 3]] for k in range(3)])
-    return sides[np.isin(sides, corners).all(axis=1)]
+    """Sides (k,2) of triangles in which two patches meet."""
+    own, others = (_sides(view.faces[view.face_patch == row]) for row in (patch, other))
+    key, its = (sides[:, 0].astype(np.int64) * len(view.points) + sides[:, 1] for sides in (own, others))
+    return own[np.isin(key, its)]
+
+
+def _sides(faces: I32) -> I32:
+    """All sides (3m,2) of triangles, the vertex of the lower row first."""
+    sides = np.concatenate([faces[:, [k, (k + 1) % 3]] for k in range(3)])
+    return np.sort(sides, axis=1)

@@ -32,8 +32,8 @@ _ALLOWANCE = 0.08
 
 @dataclass(frozen=True, eq=False, slots=True)
 class _Threaded:
-    """A thread where it stands: origin and unit axis, world; radii of crest and root; how much a chamfer may take of its
-    length, mm; its wall; the faces cut through the part, as (normal, distance from the origin, triangles).
+    """A thread where it stands: origin and unit axis, world; radii of crest and root, and how much of its length a
+    chamfer may take, mm; its wall; the faces cut through the part, as (normal, distance from the origin, triangles).
     """
 
     node: int
