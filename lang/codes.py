@@ -67,6 +67,7 @@ CODES: Mapping[str, str] = MappingProxyType(
         "empty-assembly": "nothing is placed in an assembly",
         "several-pieces": "a part falls into several pieces",
         "floating-part": "a part touches nothing else that its assembly places",
+        "unjudged-contacts": "more things may touch than can be judged",
         "tiny-model": "a whole model is smaller than 0.1 mm",
         "huge-model": "a whole model is larger than 100 m",
         "accepts-nothing": "a warning is accepted that there is none of",

@@ -204,3 +204,33 @@ part hill
 )
 def test_a_relief_that_no_grid_follows_is_said(text: str, expected: list[tuple[int, str]], tmp_path: Path) -> None:
     assert said(text, tmp_path) == expected
+
+
+FIELD = """platewright 1
+
+part tray
+    add block (1000 mm, 1000 mm, 4 mm)
+
+part pin
+    add cylinder diameter 4 mm length 10 mm
+
+part post
+    add cylinder diameter 20 mm length 30 mm
+
+assembly bed
+    place tray
+    place post at (0, 0, 4 mm)
+    place pin at (i * 10 mm + 15 mm, -455 mm, 4 mm) row 90 by (0, 10 mm, 0) for i from 1 to 20
+"""
+
+
+def test_in_a_model_of_many_copies_what_is_lost_is_found_and_what_is_not_judged_is_said(tmp_path: Path) -> None:
+    """1 800 pins on a tray are more gaps than are measured; but those of single things come first, and that nothing
+    is near the one above takes none.
+    """
+    beside = "    place pin as beside at (9 mm, 9 mm, 4.5 mm)\n"
+    lost = "    place pin as lost at (0, 0, 100 mm)\n"
+    expected = [(12, "unjudged-contacts"), (16, "floating-part"), (17, "floating-part")]
+    assert said(FIELD + beside + lost, tmp_path) == expected
+    assert said(FIELD + '    accept "unjudged-contacts"\n', tmp_path) == []
+    assert said(FIELD.replace("row 90", "row 9"), tmp_path) == []

@@ -8,18 +8,15 @@ are judged by the side opposite to it, those that share a side by whether one is
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-
 import numpy as np
 from numpy.typing import NDArray
+
+from .boxes import meeting
 
 F64 = NDArray[np.float64]
 I64 = NDArray[np.int64]
 Mask = NDArray[np.bool_]
 
-_LEAF = 8
-_BLOCK = 200_000
-"""Pairs judged together."""
 _TOUCH = 1e-9
 """Of the size of the whole: nearer than this is touching."""
 _PARALLEL = 1e-10
@@ -34,65 +31,13 @@ def crossing(vertices: F64, faces: NDArray[np.integer]) -> F64 | None:
     rows = np.asarray(faces, np.int64)
     corners = np.asarray(vertices, np.float64)[rows]
     near = _TOUCH * float(np.ptp(corners.reshape(-1, 3), axis=0).max())
-    for one, other in _close(corners, near):
+    for one, other in meeting(corners.min(axis=1), corners.max(axis=1) + near):
         met = _met(corners, rows, one, other, near)
         if met.any():
             a, b = corners[one[met][0]], corners[other[met][0]]
             low, high = np.maximum(a.min(axis=0), b.min(axis=0)), np.minimum(a.max(axis=0), b.max(axis=0))
             return np.asarray((low + high) / 2.0)
     return None
-
-
-def _close(corners: F64, near: float) -> Iterator[tuple[I64, I64]]:
-    """Blocks of pairs of triangles whose boxes meet, each pair once: a tree of boxes against itself, level by level."""
-    order = _in_space(corners)
-    low, high = corners[order].min(axis=1), corners[order].max(axis=1) + near
-    leaves = 1 << max(0, (len(order) - 1) // _LEAF).bit_length()
-    boxes = [_boxes(low, high, leaves)]
-    while len(boxes[-1][0]) > 1:
-        boxes.append((boxes[-1][0].reshape(-1, 2, 3).min(axis=1), boxes[-1][1].reshape(-1, 2, 3).max(axis=1)))
-    pairs = np.zeros((1, 2), np.int64)
-    for level_low, level_high in boxes[-2::-1]:
-        first, second = pairs[:, 0], pairs[:, 1]
-        pairs = np.concatenate([np.stack((2 * first + i, 2 * second + j), 1) for i in (0, 1) for j in (0, 1)])
-        pairs = pairs[pairs[:, 0] <= pairs[:, 1]]
-        pairs = pairs[_overlap(level_low, level_high, pairs[:, 0], pairs[:, 1])]
-    i, j = (each.ravel() for each in np.meshgrid(np.arange(_LEAF), np.arange(_LEAF), indexing="ij"))
-    step = max(1, _BLOCK // len(i))
-    for start in range(0, len(pairs), step):
-        some = pairs[start : start + step] * _LEAF
-        one, other = (some[:, :1] + i).ravel(), (some[:, 1:] + j).ravel()
-        there = (one < other) & (other < len(order))
-        one, other = one[there], other[there]
-        meet = _overlap(low, high, one, other)
-        yield order[one[meet]], order[other[meet]]
-
-
-def _in_space(corners: F64) -> I64:
-    """Triangles in the order of a curve that fills space (Morton), so that neighbours in it are neighbours."""
-    middle = corners.mean(axis=1)
-    low, size = middle.min(axis=0), float(np.ptp(middle, axis=0).max())
-    cell = ((middle - low) / (size if size > 0.0 else 1.0) * 1023.0).astype(np.int64)
-    code = np.zeros(len(cell), np.int64)
-    for bit in range(10):
-        for axis in range(3):
-            code |= ((cell[:, axis] >> bit) & 1) << (3 * bit + axis)
-    return np.argsort(code, kind="stable")
-
-
-def _boxes(low: F64, high: F64, leaves: int) -> tuple[F64, F64]:
-    """Boxes of runs of `_LEAF` triangles; empty ones, which meet nothing, to fill up."""
-    lows, highs = np.full((leaves * _LEAF, 3), np.inf), np.full((leaves * _LEAF, 3), -np.inf)
-    lows[: len(low)], highs[: len(high)] = low, high
-    return lows.reshape(leaves, _LEAF, 3).min(axis=1), highs.reshape(leaves, _LEAF, 3).max(axis=1)
-
-
-def _overlap(low: F64, high: F64, one: I64, other: I64) -> Mask:
-    meets = np.ones(len(one), np.bool_)
-    for axis in range(3):
-        below, above = low[:, axis], high[:, axis]
-        meets &= (below[one] <= above[other]) & (below[other] <= above[one])
-    return meets
 
 
 def _met(corners: F64, rows: I64, one: I64, other: I64, near: float) -> Mask:
