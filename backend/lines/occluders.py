@@ -6,9 +6,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ..contract import F64, I32
+from ..contract import F32, F64, I32
+from .block import WIDE
 from .model import View
-from .tree import LEAF, bounds, fill_leaves, fill_tree, in_order, morton_codes
+from .tree import bounds, fill_levels, fill_triangles, in_order, morton_codes
 from .view import in_blocks
 
 _PAD = 1e-4  # mm on paper: boxes reach further than any triangle with its tolerance does
@@ -18,14 +19,14 @@ _PAD = 1e-4  # mm on paper: boxes reach further than any triangle with its toler
 class Occluders:
     """Triangles that hide, in Morton order, and the boxes of an implicit tree over them (see `tree`).
 
-    boxes (2 n_leaves - 1, 5) float64, corners (k,9) float64 view points, labels (k,6) int32: three vertices, view face,
-    node, patch. rank (n_nodes,) int32: order of the nodes' paths, by which ties are decided.
+    boxes (q,5,8) float32, starts (levels + 1,) int32, corners (k,9) float64 view points, labels (k,6) int32: three
+    vertices, view face, node, patch. rank (n_nodes,) int32: order of the nodes' paths, by which ties are decided.
     """
 
-    boxes: F64
+    boxes: F32
+    starts: I32
     corners: F64
     labels: I32
-    n_leaves: int
     rank: I32
 
     def __len__(self) -> int:
@@ -41,8 +42,6 @@ def occluders_of(view: View, threads: int | None = None) -> Occluders:
     is_open = np.array([not node.closed for node in view.geometry.nodes], np.bool_)
     chosen = np.flatnonzero((view.facing > 0) | ((view.facing < 0) & is_open[view.face_node])).astype(np.int32)
     n = len(chosen)
-    if not n:
-        return Occluders(np.empty((0, 5)), np.empty((0, 9)), np.empty((0, 6), np.int32), 0, rank)
     box = bounds(view.points, view.faces, chosen)
     code = np.empty(n, np.uint64)
 
@@ -51,20 +50,30 @@ def occluders_of(view: View, threads: int | None = None) -> Occluders:
 
     in_blocks(encode, n, threads)
     order = in_order(code, chosen)
-    n_leaves = 1
-    while n_leaves * LEAF < n:
-        n_leaves *= 2
-    boxes, corners, labels = np.empty((2 * n_leaves - 1, 5)), np.empty((n, 9)), np.empty((n, 6), np.int32)
+    starts = _levels(n)
+    corners, labels = np.empty((n, 9)), np.empty((n, 6), np.int32)
+    boxes = np.empty((int(starts[-1]), 5, WIDE), np.float32)
+    boxes[:, (0, 1, 4)], boxes[:, (2, 3)] = np.inf, -np.inf
 
     def fill(begin: int, end: int) -> None:
-        fill_leaves(
-            view.points, view.faces, view.face_node, view.face_patch, view.facing, view.is_occluder, order, n_leaves,
-            _PAD, begin, end, boxes, corners, labels,
+        fill_triangles(
+            view.points, view.faces, view.face_node, view.face_patch, view.facing, view.is_occluder, order, _PAD,
+            begin, end, boxes, corners, labels,
         )  # fmt: skip
 
-    in_blocks(fill, n_leaves, threads, 1 << 13)
-    fill_tree(boxes, n_leaves)
-    return Occluders(boxes, corners, labels, n_leaves, rank)
+    in_blocks(fill, n, threads)
+    fill_levels(boxes, starts)
+    return Occluders(boxes, starts, corners, labels, rank)
+
+
+def _levels(n: int) -> I32:
+    """First block of each level of a tree over n boxes, and the number of all blocks."""
+    starts = [0]
+    while True:
+        n = max(1, (n + WIDE - 1) // WIDE)
+        starts.append(starts[-1] + n)
+        if n == 1:
+            return np.array(starts, np.int32)
 
 
 def _ranks(view: View) -> I32:

@@ -6,14 +6,14 @@ from typing import Any
 
 import numpy as np
 
+from .block import WIDE, lowest, meet
 from .compiled import kernel
-
-_STACK = 64
+from .tree import STACK, rounded_down
 
 
 @kernel
 def foremost(
-    boxes: Any, corners: Any, labels: Any, n_leaves: int, rank: Any, points: Any, slack: Any, is_central: bool,
+    boxes: Any, starts: Any, corners: Any, labels: Any, rank: Any, points: Any, slack: Any, is_central: bool,
     begin: int, last: int, found: Any, depth: Any,
 ) -> None:  # fmt: skip
     """Row of the foremost occluder over each of the points begin .. last, or -1, and its depth there.
@@ -21,32 +21,34 @@ def foremost(
     points (k,3): only triangles that stand before the third by more than `slack` mm count (infinity for all). Among
     those within `slack` of the foremost the node first by rank is taken, then the triangle first by face.
     """
-    stack = np.empty(_STACK, np.int32)
-    n_triangles = len(labels)
+    stack = np.empty((STACK, 2), np.int32)
+    top_level = len(starts) - 2
     for i in range(begin, last):
         x, y, far = points[i, 0], points[i, 1], points[i, 2]
         if far < np.inf:
             far -= slack * far * far if is_central else slack
+        left, top, right, bottom = rounded_down(x), rounded_down(y), -rounded_down(-x), -rounded_down(-y)
         nearest, best = far, -1
         for is_choice in range(2):
             if is_choice == 1:
                 if best < 0:
                     break
-                nearest = depth[i] + (slack * depth[i] * depth[i] if is_central else slack)
-                nearest = min(nearest, far)
-            stack[0] = 0
-            height = 1 if n_leaves > 0 else 0
+                nearest = min(far, depth[i] + (slack * depth[i] * depth[i] if is_central else slack))
+            stack[0, 0], stack[0, 1] = starts[top_level], top_level
+            height = 1
             while height > 0:
                 height -= 1
-                q = stack[height]
-                if boxes[q, 0] > x or boxes[q, 2] < x or boxes[q, 1] > y or boxes[q, 3] < y or boxes[q, 4] > nearest:
-                    continue
-                if q < n_leaves - 1:
-                    stack[height], stack[height + 1] = 2 * q + 2, 2 * q + 1
-                    height += 2
-                    continue
-                leaf = q - n_leaves + 1
-                for r in range(leaf * n_triangles // n_leaves, (leaf + 1) * n_triangles // n_leaves):
+                q, level = stack[height, 0], stack[height, 1]
+                limit = -rounded_down(-nearest) if nearest < np.inf else np.float32(np.inf)
+                met = meet(boxes, q, left, top, right, bottom, limit)
+                while met != 0:
+                    k = lowest(met)
+                    met &= met - 1
+                    r = WIDE * (q - starts[level]) + k
+                    if level > 0:
+                        stack[height, 0], stack[height, 1] = starts[level - 1] + r, level - 1
+                        height += 1
+                        continue
                     if labels[r, 5] < 0:
                         continue
                     z = _depth_at(corners, labels, r, x, y)

@@ -85,7 +85,7 @@ def _foremost(view: View, occluders: Occluders, points: F64, threads: int | None
 
     def probe(begin: int, end: int) -> None:
         foremost(
-            occluders.boxes, occluders.corners, occluders.labels, occluders.n_leaves, occluders.rank, points, slack,
+            occluders.boxes, occluders.starts, occluders.corners, occluders.labels, occluders.rank, points, slack,
             is_central, begin, end, row, depth,
         )  # fmt: skip
 

@@ -1,7 +1,8 @@
-"""Kernels of the tree over projected triangles: Morton order (Morton 1966) and an implicit binary tree of boxes.
+"""Kernels of the tree over projected triangles: Morton order (Morton 1966) and an implicit tree of boxes, eight a
+block.
 
-A tree of n leaves, a power of two, has its inner boxes at 0 .. n - 2, the children of q at 2q + 1 and 2q + 2, and its
-leaves behind them; leaf j holds an even share of the triangles in Morton order.
+Block q holds eight boxes side by side. The first level has a box for every triangle in Morton order, each further
+level one for every block of the level below, and the last level is one block, the root. A walk tests a block at once.
 """
 
 from __future__ import annotations
@@ -10,9 +11,10 @@ from typing import Any
 
 import numpy as np
 
+from .block import WIDE
 from .compiled import kernel
 
-LEAF = 4  # triangles in a leaf at most
+STACK = 128  # a walk holds at most seven blocks a level, and there are at most eleven levels
 _BITS = 22  # of each coordinate in a Morton code
 _RADIX = 11
 
@@ -78,41 +80,51 @@ def in_order(code: Any, chosen: Any) -> Any:
 
 
 @kernel
-def fill_leaves(
-    points: Any, faces: Any, face_node: Any, face_patch: Any, facing: Any, is_occluder: Any, order: Any, n_leaves: int,
-    pad: Any, begin: int, end: int, boxes: Any, corners: Any, labels: Any,
+def fill_triangles(
+    points: Any, faces: Any, face_node: Any, face_patch: Any, facing: Any, is_occluder: Any, order: Any, pad: Any,
+    begin: int, end: int, boxes: Any, corners: Any, labels: Any,
 ) -> None:  # fmt: skip
-    """Boxes of the leaves begin .. end, and their triangles side by side.
+    """Triangles begin .. end of the order side by side, and their boxes.
 
-    boxes (2n-1,5): least x, y, greatest x, y, least depth. corners (k,9): x, y, depth of three corners that turn left
-    on the page (y down: against the clock as printed). labels (k,6) int32: their vertices, face, node, and patch, the
-    patch as -1 - patch where the triangle hides only its own part.
+    boxes (q,5,8) float32: least x, y, greatest x, y, least depth, rounded outward. corners (k,9): x, y, depth of three
+    corners that turn left on the page (y down: against the clock as printed). labels (k,6) int32: their vertices,
+    face, node, and patch, the patch as -1 - patch where the triangle hides only its own part.
     """
-    n = len(order)
-    for leaf in range(begin, end):
+    for i in range(begin, end):
+        t = order[i]
         left, top, right, bottom, near = np.inf, np.inf, -np.inf, -np.inf, np.inf
-        for i in range(leaf * n // n_leaves, (leaf + 1) * n // n_leaves):
-            t = order[i]
-            for k in range(3):
-                # A triangle seen from its back is turned over.
-                v = faces[t, k] if facing[t] > 0 else faces[t, 2 - k]
-                labels[i, k] = v
-                x, y, z = points[v, 0], points[v, 1], points[v, 2]
-                corners[i, 3 * k], corners[i, 3 * k + 1], corners[i, 3 * k + 2] = x, y, z
-                left, right = min(left, x), max(right, x)
-                top, bottom = min(top, y), max(bottom, y)
-                near = min(near, z)
-            labels[i, 3], labels[i, 4] = t, face_node[t]
-            labels[i, 5] = face_patch[t] if is_occluder[t] else -1 - face_patch[t]
-        q = n_leaves - 1 + leaf
-        boxes[q, 0], boxes[q, 1], boxes[q, 2], boxes[q, 3] = left - pad, top - pad, right + pad, bottom + pad
-        boxes[q, 4] = near
+        for k in range(3):
+            # A triangle seen from its back is turned over.
+            v = faces[t, k] if facing[t] > 0 else faces[t, 2 - k]
+            labels[i, k] = v
+            x, y, z = points[v, 0], points[v, 1], points[v, 2]
+            corners[i, 3 * k], corners[i, 3 * k + 1], corners[i, 3 * k + 2] = x, y, z
+            left, right = min(left, x), max(right, x)
+            top, bottom = min(top, y), max(bottom, y)
+            near = min(near, z)
+        labels[i, 3], labels[i, 4] = t, face_node[t]
+        labels[i, 5] = face_patch[t] if is_occluder[t] else -1 - face_patch[t]
+        q, k = i // WIDE, i % WIDE
+        boxes[q, 0, k], boxes[q, 1, k] = rounded_down(left - pad), rounded_down(top - pad)
+        boxes[q, 2, k], boxes[q, 3, k] = -rounded_down(-right - pad), -rounded_down(-bottom - pad)
+        boxes[q, 4, k] = rounded_down(near)
 
 
 @kernel
-def fill_tree(boxes: Any, n_leaves: int) -> None:
-    """Boxes of the inner nodes from those of the leaves."""
-    for q in range(n_leaves - 2, -1, -1):
-        a, b = 2 * q + 1, 2 * q + 2
-        for k in range(5):
-            boxes[q, k] = max(boxes[a, k], boxes[b, k]) if k == 2 or k == 3 else min(boxes[a, k], boxes[b, k])
+def rounded_down(value: Any) -> Any:
+    """A float32 not above a float64."""
+    return np.float32(value - abs(value) * 1.2e-7)
+
+
+@kernel
+def fill_levels(boxes: Any, starts: Any) -> None:
+    """Boxes of the blocks of all further levels. starts (levels + 1,): the first block of each level."""
+    for level in range(1, len(starts) - 1):
+        for i in range(starts[level - 1], starts[level]):
+            q, k = starts[level] + (i - starts[level - 1]) // WIDE, (i - starts[level - 1]) % WIDE
+            for side in range(5):
+                found = boxes[i, side, 0]
+                for j in range(1, WIDE):
+                    other = boxes[i, side, j]
+                    found = max(found, other) if side == 2 or side == 3 else min(found, other)
+                boxes[q, side, k] = found

@@ -28,8 +28,8 @@ def cut(view: View, candidates: Candidates, threads: int | None = None, occluder
 
     def work(begin: int, end: int) -> tuple[I32, F64]:
         found: tuple[I32, F64] = cut_segments(
-            tree.boxes, tree.corners, tree.labels, tree.n_leaves, candidates.start, candidates.end,
-            candidates.vertices, candidates.faces, candidates.node, candidates.patch, candidates.allowance, treat,
+            tree.boxes, tree.starts, tree.corners, tree.labels, candidates.start, candidates.end,
+            candidates.faces, candidates.node, candidates.patch, candidates.allowance, treat,
             view.tolerance.depth_mm, view.tolerance.sideways_mm, is_central, begin, end,
         )  # fmt: skip
         return found
