@@ -25,7 +25,7 @@ from .projections import standard
 from .readings import LATER, expression, optional
 from .scope import Scope, did_you_mean
 from .section_reading import read_cuts, read_details, read_interruptions
-from .specs import Spec
+from .specs import Exploded, Spec
 from .styles import read_manner
 from .subjects import find_subject
 from .values import Proportion, kind_of
@@ -146,7 +146,7 @@ class _Reading:
             case "margin":
                 return {"margin": positive_length(expression(head, "margin"), self.scope, "margin", zero=True)}
             case "exploded":
-                return {"exploded": self._factor(optional(head, "factor"))}
+                return {"exploded": Exploded(self._factor(optional(head, "factor")), head.span)}
             case "files":
                 return {"files": self._files(head)}
             case "title" | "alt" | "description":

@@ -102,19 +102,17 @@ class _Planner:
 
     def _explosion(self) -> Explosion | None:
         """How things are moved; None where nothing is, so that the figure is the assembled one."""
-        spec = self.spec
-        if not spec.exploded:
+        exploded, path = self.spec.exploded, self.spec.path
+        if exploded is None or not exploded.factor:
             return None
-        explosion = explode(walked(spec.subject, spec.path)[0], spec.exploded)
+        explosion = explode(walked(self.spec.subject, path)[0], exploded.factor)
         if not explosion.moves:
-            sentence = f"nothing in `{spec.path}` explodes, so the figure shows it assembled"
-            self.problems.warn(
-                "no-effect", spec.span, sentence, "give placed things `explodes`, such as `explodes 40 mm`"
-            )
+            sentence = f"nothing in `{path}` explodes, so the figure shows it assembled"
+            self.problems.warn("no-effect", exploded.span, sentence, "write `explodes 40 mm` behind what is placed")
             return None
         if len(explosion.moves) > limits.TRACES:
             sentence = f"{len(explosion.moves):,} things explode by themselves; {limits.TRACES:,} is the limit"
-            raise mistake("too-much", spec.span, sentence, "let what holds them explode as one")
+            raise mistake("too-much", exploded.span, sentence, "let what holds them explode as one")
         return explosion
 
     def _vertices(self, shot: _Shot) -> F64:

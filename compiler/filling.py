@@ -10,7 +10,7 @@ from . import layout
 from .frames import Frame, content, standard_below
 from .layout import Box
 from .mistakes import Problems
-from .projections import Central, standard, standard_names, unit_projection
+from .projections import Central, is_pictorial, standard, standard_names, unit_projection
 from .specs import Spec
 
 FULL = 0.85
@@ -22,21 +22,21 @@ _NAMED = 5
 def report_filling(spec: Spec, boxes: Sequence[Box], frame: Frame, points: F64, problems: Problems) -> None:
     """A note where a standard scale leaves much of the stated page free, with projections that would leave less.
 
-    Only for one view, of world points (n,3), on a page whose size is stated. Cost: a pass over the points for each
-    standard projection.
+    Only for one pictorial view, of world points (n,3), on a page whose size is stated: which side an orthographic view
+    shows is no matter of paper. Cost: a pass over the points for each pictorial projection.
     """
-    if spec.scale != "standard" or len(boxes) != 1 or isinstance(spec.viewpoint, Central):
+    viewpoint = spec.viewpoint
+    if spec.scale != "standard" or len(boxes) != 1 or isinstance(viewpoint, Central) or not is_pictorial(viewpoint):
         return
     filled = _filled(spec, boxes[0], frame.scale)
     if filled is None or filled >= FULL:
         return
     better: list[tuple[float, str]] = []
     for name in standard_names():
-        viewpoint = standard(name)
-        assert viewpoint is not None
-        if viewpoint == spec.viewpoint:
+        other = standard(name)
+        if other is None or other == viewpoint or not is_pictorial(other):
             continue
-        low, high, _ = content(unit_projection(viewpoint, 1.0, spec.true_projection), points)
+        low, high, _ = content(unit_projection(other, 1.0, spec.true_projection), points)
         box = Box(low, high)
         room = spec.height if spec.height is not None else spec.at_most
         free_tall = None if room is None else room - 2 * spec.margin

@@ -29,10 +29,17 @@ class Detail(Struct, frozen=True):
     span: Span
 
 
+class Exploded(Struct, frozen=True):
+    """How far everything is moved, in parts of its `explodes`."""
+
+    factor: float
+    span: Span
+
+
 class Spec(Struct, frozen=True):
     """One figure. Lengths are mm on paper.
 
-    `uncut` are paths of what sections leave whole, with all below it. `exploded` is the factor on every `explodes`.
+    `uncut` are paths of what sections leave whole, with all below it.
     """
 
     name: str
@@ -54,7 +61,7 @@ class Spec(Struct, frozen=True):
     description: str = ""
     cuts: tuple[Cut, ...] = ()
     uncut: tuple[str, ...] = ()
-    exploded: float | None = None
+    exploded: Exploded | None = None
     stresses: tuple[Stress, ...] = ()
     view_set: ViewSet | None = None
     looks: tuple[Look, ...] = ()
