@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import posixpath
 from collections.abc import Callable, Iterator, Mapping
-from importlib import resources
 
 from msgspec import Struct
 from platewright.lang import tree
@@ -64,6 +63,8 @@ LIBRARY = "library:/"
 
 def read_library(name: str) -> bytes | Refusal:
     """A file of a library that comes with the program, or why there is none."""
+    from importlib import resources
+
     folder = resources.files(__package__).joinpath("library")
     known = {each.name: each for each in folder.iterdir()}
     found = known.get(name.removeprefix(LIBRARY))

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import functools
+import pkgutil
 from collections.abc import Iterator
-from importlib import resources
 from typing import Any
 
 from lark import Lark
@@ -48,9 +48,11 @@ class _Handed(Lexer):
 @functools.cache
 def value_parser() -> Lark:
     """The LALR tables of the grammar, made once a process (about 10 ms): a pure function of the grammar file."""
-    grammar = resources.files(__package__).joinpath("grammar.lark").read_text(encoding="utf-8")
+    # lark has `pkgutil` at hand; `importlib.resources` would import what reads archives.
+    grammar = pkgutil.get_data(__package__, "grammar.lark")
+    assert grammar is not None
     return Lark(
-        grammar,
+        grammar.decode(),
         parser="lalr",
         lexer=_Handed,
         transformer=_Builder(),

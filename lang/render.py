@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 from collections.abc import Iterable, Mapping
 from typing import Any
 
@@ -62,6 +61,8 @@ def _excerpt(span: Span, sources: Mapping[str, list[str]]) -> list[str]:
 
 def render_json(problems: Iterable[Problem]) -> str:
     """Problems as a JSON document: `{"schema": 1, "problems": [...]}`, lines and columns from 1, ends exclusive."""
+    import json
+
     document = {"schema": JSON_SCHEMA_NUMBER, "problems": [_json(problem) for problem in problems]}
     return json.dumps(document, indent=2) + "\n"
 
@@ -94,6 +95,8 @@ def render_sarif(problems: Iterable[Problem], version: str = "", codes: Mapping[
     `version` is the version of platewright, left out if empty; `codes` gives each code its sentence. Columns count code
     points from 1.
     """
+    import json
+
     results = [_result(problem) for problem in problems]
     used = sorted({result["ruleId"] for result in results})
     for result in results:
