@@ -166,6 +166,9 @@ class _Planner:
             held = held_frame(self.spec, main, boxes[0])
             if held is not None:
                 return held
+            if main.shift != (0.0, 0.0):
+                sentence = "the viewpoint's `shift` changes nothing, for the picture is fitted to its content"
+                self.problems.warn("no-effect", self.spec.span, sentence, "state a `lens` or an `angle of view`")
         frame = frame_of(self.spec, boxes)
         view_set = self.spec.view_set
         if view_set is None or symbol_of(view_set.method, boxes, frame, self.spec.margin) is not None:
