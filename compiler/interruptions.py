@@ -18,7 +18,7 @@ GAP_SHARE = 0.03
 """The gap that is left where a stretch goes, over the length that stays."""
 
 _N_WAVE = 48
-_WAVE_SHARE = 0.02  # amplitude of the break over the size of the subject
+_WAVE_SHARE = 0.05  # amplitude of the break over the width of what is broken
 _BREAK = int(FaceOrigin.BREAK)
 
 
@@ -68,18 +68,25 @@ def _cutter(each: Interruption, sight: Point, vertices: F64) -> Cutter:
         across = across - axis * float((across * axis).sum())
     w = across / np.sqrt((across**2).sum())
     v = np.cross(w, axis)
+    # The waves follow what is broken: its width across the axis, as the view shows it.
+    aside = _along(vertices, v)
+    width = float(np.ptp(aside))
     low, high = vertices.min(axis=0), vertices.max(axis=0)
-    middle, size = (low + high) / 2.0, float(np.sqrt(((high - low) ** 2).sum()))
-    middle = middle - axis * float((middle * axis).sum())
-    reach, height = 1.5 * size + 1.0, min(_WAVE_SHARE * size, 0.25 * (each.high - each.low))
+    deep = float(np.sqrt(((high - low) ** 2).sum())) + 1.0
+    middle = v * float(aside.min() + width / 2.0) + w * float(_along(vertices, w).mean())
+    reach, height = 0.6 * width + 1e-3, min(_WAVE_SHARE * width, 0.25 * (each.high - each.low))
     ups = [reach * (2.0 * k / _N_WAVE - 1.0) for k in range(_N_WAVE + 1)]
-    waves = [height * (0.7 * sin(9.0 * up / reach * 1.5) + 0.3 * sin(23.0 * up / reach + 1.3)) for up in ups]
+    waves = [height * (0.75 * sin(5.2 * up / reach) + 0.25 * sin(11.0 * up / reach + 1.3)) for up in ups]
     far = [(each.high + wave, up) for up, wave in zip(ups, waves, strict=True)]
     near = [(each.low + wave, up) for up, wave in zip(ups, waves, strict=True)]
     profile = (*far, *reversed(near))
     x, y, z = (float(a) for a in middle)
     vx, vy, vz = (float(a) for a in v)
-    return Cutter(profile, (x, y, z), each.axis, (vx, vy, vz), -reach, reach, (_BREAK,) * (len(profile) + 2))
+    return Cutter(profile, (x, y, z), each.axis, (vx, vy, vz), -deep, deep, (_BREAK,) * (len(profile) + 2))
+
+
+def _along(points: F64, unit: F64) -> F64:
+    return np.asarray(points[:, 0] * unit[0] + points[:, 1] * unit[1] + points[:, 2] * unit[2])
 
 
 def _moved_up(mesh: Mesh, placement: F64, each: Interruption, gap: float) -> Mesh:
@@ -88,7 +95,7 @@ def _moved_up(mesh: Mesh, placement: F64, each: Interruption, gap: float) -> Mes
     linear = placement[:3, :3]
     local = linear[0] * axis[0] + linear[1] * axis[1] + linear[2] * axis[2]
     offset = float((placement[:3, 3] * axis).sum())
-    at = mesh.vertices[:, 0] * local[0] + mesh.vertices[:, 1] * local[1] + mesh.vertices[:, 2] * local[2] + offset
+    at = _along(mesh.vertices, local) + offset
     is_beyond = at > (each.low + each.high) / 2.0
     if not is_beyond.any():
         return mesh

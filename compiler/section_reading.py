@@ -6,11 +6,13 @@ from collections.abc import Sequence
 from itertools import pairwise
 
 from platewright.lang import tree
+from platewright.lang.problems import Related
 from platewright.lang.units import LENGTH, NUMBER
 
 from .expressions import evaluate, quantity
 from .extent import box_corners
 from .graph import Point, Thing
+from .interruptions import Interruption
 from .mistakes import Problems, mistake
 from .paths import Placed, follow
 from .placement import AXES, direction, point, positive_length
@@ -54,6 +56,24 @@ def read_details(
     return tuple(found)
 
 
+def read_interruptions(
+    lines: Sequence[tree.Line], subject: Thing, scope: Scope, problems: Problems
+) -> tuple[Interruption, ...]:
+    """The stretches that a figure leaves out, in the order of its lines."""
+    found: list[Interruption] = []
+    for line in lines:
+        if line.head.row == "interrupted along":
+            with problems.collecting():
+                each = _Reader(line.head, subject, scope).interruption()
+                for other in found:
+                    parallel = abs(sum(a * b for a, b in zip(other.axis, each.axis, strict=True))) > 1 - 1e-9
+                    if not parallel or (each.low < other.high and other.low < each.high) or other.axis != each.axis:
+                        sentence = "the stretches that a figure leaves out lie apart along one axis"
+                        raise mistake("wrong-form", each.span, sentence, "", (Related(other.span, "another one"),))
+                found.append(each)
+    return tuple(found)
+
+
 class _Reader:
     """Reads one line that cuts."""
 
@@ -92,6 +112,13 @@ class _Reader:
             corners, _ = box_corners(self.subject, name)
             diameter = float((corners.max(axis=0) - corners.min(axis=0)).max()) * DETAIL_SHARE
         return Detail(centre, diameter, times, head.span)
+
+    def interruption(self) -> Interruption:
+        axis = self._direction("axis")
+        low, high = (sum(a * b for a, b in zip(self._place(slot, axis), axis, strict=True)) for slot in ("low", "high"))
+        if high - low < 1e-6:
+            raise mistake("out-of-range", self.head.span, "the stretch left out ends before it begins")
+        return Interruption(axis, low, high, self.head.span)
 
     def _plane(self) -> Plane:
         normal = self._direction("plane")
