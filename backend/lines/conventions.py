@@ -29,9 +29,9 @@ def conventions_of(view: View, style: Style, occluders: Occluders | None = None)
 def curves_of(view: View, curves: Sequence[SpaceCurve]) -> Candidates:
     """Space curves as candidates, each a chain of its own; in central projection cut `near.NEAR` mm before the eye."""
     found = []
-    for chain, curve in enumerate(curves):
+    for curve in curves:
         start, end = _before_eye(view, curve.points)
-        more = {"node": curve.node, "chain": chain, "is_plain": not curve.is_hidden_by_parts}
+        more = {"node": curve.node, "chain": 0, "is_plain": not curve.is_hidden_by_parts}
         found.append(placed(view, start, end, curve.line_class, **more))
     return joined(tuple(found)) if found else none()
 

@@ -220,14 +220,13 @@ def _limit(view: View, of: _Threaded, height: float) -> list[Candidates]:
     None where it would be a circle over the circle of the cylinder.
     """
     centre = of.origin + height * of.axis
-    v = unit(along_sight(view.projection, centre[None])[0])
-    if float(length(np.cross(v, of.axis))) < _EDGE_ON:
-        return []
-    x = unit(of.wall.corners[0, 0] - of.wall.heights[0, 0] * of.axis)
-    y, between = np.cross(of.axis, x), (height, height)
-    radii = (of.crest, of.root) if of.is_internal else (of.crest,)
-    ways = centre, x, y, (0.0, 360.0)
-    return [arc for radius in radii for arc in _arc(view, of, *ways, radius, between, LineClass.THREAD_CREST)]
+    found = []
+    for radius in (of.crest, of.root) if of.is_internal else (of.crest,):
+        # From where it is touched, so that it reaches the outline exactly.
+        for x in touching_directions(view, of.origin, of.axis, radius)[:1]:
+            ways = centre, x, np.cross(of.axis, x), (0.0, 360.0)
+            found += _arc(view, of, *ways, radius, (height, height), LineClass.THREAD_CREST)
+    return found
 
 
 def _arc(
@@ -236,7 +235,7 @@ def _arc(
 ) -> list[Candidates]:  # fmt: skip
     """Chords of a circle about the axis, where the crest stands at some height between two."""
     turn = radians(ends[1] - ends[0])
-    n = int(np.clip(np.ceil(turn / np.sqrt(8.0 * CHORD_MM / (radius * view.projection.scale))), 12, 360))
+    n = 4 * int(np.clip(np.ceil(turn / np.sqrt(8.0 * CHORD_MM / (radius * view.projection.scale)) / 4.0), 3, 90))
     angle = radians(ends[0]) + turn * np.arange(2 * n + 1) / (2 * n)
     directions = np.cos(angle)[:, None] * x + np.sin(angle)[:, None] * y
     is_there = is_covered(of.wall, directions[1::2], *between)
