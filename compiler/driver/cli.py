@@ -164,7 +164,7 @@ def _add_draw(commands: _Commands) -> None:
     choice.add_argument("--all-variants", action="store_true", help=everyone)
     _add_settings(parser)
     kinds = "the kind of file, instead of those the figure states; may be repeated"
-    parser.add_argument("--kind", choices=("png", "tiff"), action="append", default=[], help=kinds)
+    parser.add_argument("--kind", choices=("svg", "pdf", "eps", "png", "tiff"), action="append", default=[], help=kinds)
     parser.add_argument("--out", metavar="DIR", type=Path, help="the folder to write to (`figures` beside the scene)")
     resolution = "dots per inch, instead of what the figure states"
     parser.add_argument("--resolution", metavar="DPI", type=_resolution, help=resolution)

@@ -17,7 +17,7 @@ from .session import Session, chosen_figures, chosen_variants, open_session, tit
 if TYPE_CHECKING:
     from platewright.compiler.scene import Model, Setting, Variant
 
-KINDS = ("png", "tiff")
+KINDS = ("svg", "pdf", "eps", "png", "tiff")
 """Kinds of file that a figure can be drawn to."""
 
 
@@ -111,12 +111,12 @@ def _unit(model: Model, figure: str, variant: Variant | None, run: _Run, steps: 
     run.session.findings.add(problems, variant)
     if job is None or any(map(is_error, problems)):
         return None
-    kinds = run.wanted.kinds or tuple(kind for kind in job.sheet.files if kind in KINDS) or KINDS[:1]
+    kinds = run.wanted.kinds or job.sheet.files
     with warm.compiling_told(run.report):
-        drawing = sheet.draw(job, kinds, progress=steps.share)
-    content = {f"{figure}.{kind}": sheet.encode(drawing, job, kind) for kind in dict.fromkeys(kinds)}
+        drawn = sheet.draw(job, kinds, progress=steps.share)
+    content = {f"{figure}.{kind}": sheet.encode(drawn, job, kind) for kind in dict.fromkeys(kinds)}
     if run.wanted.record:
-        content[f"{figure}.record.json"] = record_bytes(job, drawing.measures)
+        content[f"{figure}.record.json"] = record_bytes(job, drawn.measures)
     folder = run.out if variant is None else run.out / variant.name
     return {folder / name: encoded for name, encoded in content.items()}
 
