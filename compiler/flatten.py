@@ -165,9 +165,12 @@ def _meshes(
 
 
 def _meshed(solid: Solid, rung: float, mesher: Mesher) -> tuple[Mesh | None, tuple[Flaw, ...]]:
-    """The mesh of a solid at a rung and its flaws, with a warning where it stays coarser."""
+    """The mesh of a solid at a rung and its flaws, those among them that a coarser rung does not show."""
+    coarse = coarse_surfaces(solid.recipe, rung)
+    if any(flaw.is_error for flaw in coarse):
+        return None, coarse
     mesh, flaws = mesher(solid.recipe, rung)
-    return mesh, flaws if mesh is None else (*flaws, *coarse_surfaces(solid.recipe, rung))
+    return mesh, (*flaws, *coarse)
 
 
 def _altered(
@@ -454,9 +457,9 @@ def prove(things: Sequence[Thing], sources: Sequence[Span], prover: Prover) -> t
     problems: dict[Problem, None] = {}
     for solid in _solids(things):
         rung = proof_rung(solid.recipe, prover)
-        flaws = prover.flaws(solid.recipe, rung)
+        flaws = coarse_surfaces(solid.recipe, rung)
         if not any(flaw.is_error for flaw in flaws):
-            flaws = (*flaws, *coarse_surfaces(solid.recipe, rung))
+            flaws = (*prover.flaws(solid.recipe, rung), *flaws)
         problems.update((problem_of(flaw, solid, sources), None) for flaw in flaws)
     return tuple(problems)
 

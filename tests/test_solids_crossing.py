@@ -8,6 +8,7 @@ from itertools import combinations
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+from platewright.compiler import scene
 from platewright.compiler.solids.coarse import coarse_surfaces
 from platewright.compiler.solids.crossing import crossing
 from platewright.compiler.solids.recipe import (
@@ -23,8 +24,9 @@ from platewright.compiler.solids.recipe import (
 from platewright.compiler.solids.sheets import MOST_CELLS, sheet, sheet_flaws, strays
 from platewright.compiler.solids.transform import scale
 from platewright.compiler.solids.transition import transition, transition_flaws
+from platewright.lang.problems import Severity
 from support.recipes import add
-from support.scenes import checked
+from support.scenes import built, checked
 
 F64 = NDArray[np.float64]
 Exact = list[int]
@@ -217,3 +219,20 @@ def test_coarse_reliefs_are_warned_of_at_their_line() -> None:
     assert run.codes == ["coarse-surface"]
     assert run.problems[0].span.line == 2
     assert "strays up to 1.5 mm" in run.problems[0].sentence
+
+
+@pytest.mark.parametrize(
+    ("function", "code"),
+    [
+        ("root((x / 1 mm - 0.15)^2 - 0.001)", "no-value"),  # no value within 0.03 of 0.15, where no sample lies
+        ("root(abs(x / 1 mm - 0.15)) - 1.3", "no-wall"),  # below the base within 0.09 of it
+    ],
+)
+def test_what_only_a_fine_division_meets_is_a_problem_then(function: str, code: str) -> None:
+    run = built(f"part p\n    add relief z = 1 mm + 1 mm * ({function}) over (20 mm, 20 mm)\n")
+    assert run.model is not None and run.errors == []
+    coarse, problems = scene.geometry(run.model, "p", run.meshes, 1.0)
+    assert coarse is not None and not any(problem.severity is Severity.ERROR for problem in problems)
+    fine, problems = scene.geometry(run.model, "p", run.meshes, 0.0005)
+    assert fine is None
+    assert [(problem.code, problem.span.line) for problem in problems] == [(code, 2)]

@@ -6,18 +6,23 @@ from collections.abc import Iterator
 
 from .flaw import Flaw
 from .recipe import Envelope, ParametricSurface, Placed, Recipe, Relief
-from .sheets import MOST_CELLS, strays
+from .sheets import MOST_CELLS, finer_flaws, strays
 from .transform import largest_scale
 
 
 def coarse_surfaces(recipe: Recipe, rung: float) -> tuple[Flaw, ...]:
-    """Warnings for reliefs and sheets whose triangles lie further than `rung` mm from their functions.
+    """Warnings for reliefs and sheets whose triangles lie further than `rung` mm from their functions, and errors for
+    those whose functions have no value, or sink to the base, where only so fine a division looks.
 
-    The shapes are those of recipes that are sound. Cost: the division of each such shape; a walk where there are none.
+    Cost: the division of each such shape; a walk where there are none.
     """
     found: dict[Flaw, None] = {}
     for placed, grown in _surfaces(recipe, 1.0, set()):
         assert isinstance(placed.shape, Relief | ParametricSurface)
+        wrong = finer_flaws(placed.shape, rung / grown)
+        if wrong:
+            found.update((Flaw(w.code, placed.source, w.sentence, w.hint), None) for w in wrong)
+            continue
         off = strays(placed.shape, rung / grown) * grown
         if off > rung * (1.0 + 1e-9):
             what = "relief" if isinstance(placed.shape, Relief) else "surface"

@@ -65,16 +65,9 @@ def surface_of(shape: Relief | ParametricSurface) -> Surface:
 def sheet_flaws(shape: Relief | ParametricSurface) -> tuple[OutlineFlaw, ...]:
     """What can be wrong with a function, judged on a fixed grid."""
     points = _grid(surface_of(shape), PROBES - 1, PROBES - 1)
-    if not np.isfinite(points).all():
-        sentence = "the function of this surface has no value everywhere in its ranges"
-        return (OutlineFlaw("no-value", sentence, "keep clear of divisions by 0 and of roots below 0"),)
-    if isinstance(shape, Relief):
-        low = np.unravel_index(int(points[..., 2].argmin()), points.shape[:2])
-        x, y, z = points[low].tolist()
-        if z > 0.0:
-            return ()
-        sentence = f"the relief sinks to {z:.6g} mm at ({x:.6g} mm, {y:.6g} mm); it stands on z = 0 and must stay above"
-        return (OutlineFlaw("no-wall", sentence, "add a constant height"),)
+    wrong = _value_flaws(shape, points)
+    if wrong or isinstance(shape, Relief):
+        return wrong
     normals = _normals(shape, PROBES - 1, PROBES - 1)
     if (normals == 0.0).all(axis=-1).any():
         sentence = "this surface has a point, or a line, without a direction: its sides shrink to nothing there"
@@ -99,6 +92,26 @@ def sheet_flaws(shape: Relief | ParametricSurface) -> tuple[OutlineFlaw, ...]:
         sentence = f"this sheet would cut itself near {spelled(met)}, where far stretches of it meet"
         return (OutlineFlaw("cuts-itself", sentence, "make it thinner, or lead it further round"),)
     return ()
+
+
+def finer_flaws(shape: Relief | ParametricSurface, rung: float) -> tuple[OutlineFlaw, ...]:
+    """What is wrong with the function where triangles at `rung` mm lie, and not at the samples of `sheet_flaws`."""
+    if _value_flaws(shape, _grid(surface_of(shape), PROBES - 1, PROBES - 1)):
+        return ()
+    n, m, _ = _divisions(shape, rung)
+    return _value_flaws(shape, _grid(surface_of(shape), 2 * n, 2 * m))
+
+
+def _value_flaws(shape: Relief | ParametricSurface, points: F64) -> tuple[OutlineFlaw, ...]:
+    if not np.isfinite(points).all():
+        sentence = "the function of this surface has no value everywhere in its ranges"
+        return (OutlineFlaw("no-value", sentence, "keep clear of divisions by 0 and of roots below 0"),)
+    low = np.unravel_index(int(points[..., 2].argmin()), points.shape[:2])
+    x, y, z = points[low].tolist()
+    if z > 0.0 or not isinstance(shape, Relief):
+        return ()
+    sentence = f"the relief sinks to {z:.6g} mm at ({x:.6g} mm, {y:.6g} mm); it stands on z = 0 and must stay above"
+    return (OutlineFlaw("no-wall", sentence, "add a constant height"),)
 
 
 def _crossing(shape: ParametricSurface, size: float) -> F64 | None:
