@@ -22,7 +22,7 @@ from ..drawing import WHITE, Fill, Lines, Path, Stroke
 from .fills import outline_path
 from .model import Region
 from .regions import polygon_of, rings_of
-from .scanlines import spans
+from .scanlines import stretches
 
 CLEAR_DEG = 15.0
 """Least angle between hatching and outlines or axes; the roundings of directions are forgiven by `_FORGIVEN_DEG`."""
@@ -126,18 +126,8 @@ def hatching_of(
 
 def hatch_lines(rings: Sequence[F64], hatch: Hatch, clear_of: Sequence[F64] = ()) -> F64:
     """Return the stretches of the hatch's lines inside the rings and outside the polygons, (k,4) x0 y0 x1 y1 mm."""
-    turn = math.radians(hatch.angle)
-    along, across = np.array([math.cos(turn), -math.sin(turn)]), np.array([math.sin(turn), math.cos(turn)])
-    frame = np.stack([along, across])
-    low, high = rings[0].min(axis=0), rings[0].max(axis=0)
-    holes = [ring for ring in clear_of if (ring.max(axis=0) > low).all() and (ring.min(axis=0) < high).all()]
-    row, start, end = spans(
-        [_turned(ring, frame) for ring in rings], [_turned(ring, frame) for ring in holes], hatch.pitch, hatch.offset
-    )
-    kept = end - start > _LEAST_STROKE_MM
-    height = (hatch.offset + row[kept] * hatch.pitch)[:, None]
-    first, last = start[kept, None] * along + height * across, end[kept, None] * along + height * across
-    return np.concatenate([first, last], axis=1)
+    _, ends = stretches(rings, clear_of, hatch.angle, hatch.pitch, hatch.offset)
+    return ends[np.hypot(ends[:, 2] - ends[:, 0], ends[:, 3] - ends[:, 1]) > _LEAST_STROKE_MM]
 
 
 def pitch_of(area: float, perimeter: float) -> float:
@@ -168,11 +158,6 @@ def straight_directions(rings: Sequence[F64]) -> F64:
 
 def _is_cap(region: Region) -> bool:
     return region.is_cap
-
-
-def _turned(ring: F64, frame: F64) -> F64:
-    """Coordinates along and across the lines; sums spelt out, as matrix products differ between machines."""
-    return np.stack([ring[:, 0] * axis[0] + ring[:, 1] * axis[1] for axis in frame], axis=1)
 
 
 def _lengths(ring: F64) -> F64:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 
 import numpy as np
@@ -10,6 +11,28 @@ from numpy.typing import NDArray
 from ..contract import F64
 
 I64 = NDArray[np.int64]
+
+
+def stretches(
+    rings: Sequence[F64], holes: Sequence[F64], angle: float, pitch: float, offset: float = 0.0
+) -> tuple[I64, F64]:
+    """Return what of lines at `angle` degrees (45 rises to the right) lies inside the rings and in none of the holes.
+
+    The lines are `pitch` apart, line 0 `offset` from the page's left top corner; positions therefore do not depend on
+    the polygons. Returns row (s,) int64 and ends (s,4) float64, x0 y0 x1 y1 in mm. For the rest see `spans`.
+    """
+    turn = math.radians(angle)
+    along, across = np.array([math.cos(turn), -math.sin(turn)]), np.array([math.sin(turn), math.cos(turn)])
+    low, high = rings[0].min(axis=0), rings[0].max(axis=0)
+    near = [ring for ring in holes if (ring.max(axis=0) > low).all() and (ring.min(axis=0) < high).all()]
+
+    def turned(ring: F64) -> F64:
+        # Sums spelt out, as matrix products differ between machines.
+        return np.stack([ring[:, 0] * axis[0] + ring[:, 1] * axis[1] for axis in (along, across)], axis=1)
+
+    row, start, end = spans([turned(ring) for ring in rings], [turned(ring) for ring in near], pitch, offset)
+    height = (offset + row * pitch)[:, None] * across
+    return row, np.concatenate([start[:, None] * along + height, end[:, None] * along + height], axis=1)
 
 
 def spans(rings: Sequence[F64], holes: Sequence[F64], pitch: float, offset: float) -> tuple[I64, F64, F64]:
