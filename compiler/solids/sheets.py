@@ -80,8 +80,17 @@ def sheet_flaws(shape: Relief | ParametricSurface) -> tuple[OutlineFlaw, ...]:
         if np.abs(ends[0] - ends[1]).max() <= CLOSES * size and (sides[0] * sides[1]).sum(axis=-1).min() < 0.0:
             sentence = "this surface closes on itself turned over, so that it has no two sides"
             return (OutlineFlaw("no-value", sentence, "leave a small gap where it would close"),)
+    return _cut_flaws(shape, size)
+
+
+def _cut_flaws(shape: ParametricSurface, size: float) -> tuple[OutlineFlaw, ...]:
+    """Where a sheet of a size would cut itself: by its own bends, or further on."""
     for n, m in ((MOST_CELLS, _LINES), (_LINES, MOST_CELLS)):
-        fold = _fold(_grid(surface_of(shape), n, m), _normals(shape, n, m), shape.thickness)
+        fine = _grid(surface_of(shape), n, m)
+        wrong = _value_flaws(shape, fine)
+        if wrong:
+            return wrong
+        fold = _fold(fine, _normals(shape, n, m), shape.thickness)
         if fold is not None:
             sentence = (
                 f"this sheet would cut itself near {spelled(fold)}, where it bends tighter than half its thickness"
@@ -115,11 +124,14 @@ def _value_flaws(shape: Relief | ParametricSurface, points: F64) -> tuple[Outlin
 
 
 def _crossing(shape: ParametricSurface, size: float) -> F64 | None:
-    """Where the sides and rims of a sheet cross, at a chord error that follows from its size and thickness."""
+    """Where the sides and rims of a sheet cross, at a chord error that follows from its size and thickness.
+
+    None where its function has no value at so fine a division, which `finer_flaws` says where it matters.
+    """
     n, m, _ = _divisions(shape, min(size / 200.0, shape.thickness / 4.0))
     over = max(1.0, math.sqrt(4.0 * n * m / _JUDGED))
     made = _sheet(shape, math.ceil(n / over), math.ceil(m / over))
-    return crossing(made.vertices, made.faces)
+    return crossing(made.vertices, made.faces) if np.isfinite(made.vertices).all() else None
 
 
 def strays(shape: Relief | ParametricSurface, rung: float) -> float:
