@@ -28,9 +28,10 @@ from .interruptions import Interrupting
 from .layout import Box
 from .lightings import lights_for
 from .mistakes import Mistake, Problems, confined, mistake
+from .overhang import NONE, Around, larger, past_arrows, past_centre_lines
 from .projections import Central, Parallel, is_pictorial, unit_projection
 from .sections import Opening, away_of, cutter_of, facing, letter_of, trace_of
-from .signs import paper_for_arrows, strip_for_symbol, symbol_of, view_arrow
+from .signs import check_arrows, strip_for_symbol, symbol_of, view_arrow
 from .solids.ladder import COARSEST, first_at_most
 from .specs import Spec
 from .styles import style_of
@@ -38,6 +39,8 @@ from .views import View, cuts_of, views_of
 
 ERROR_ON_PAPER_MM = 0.02
 """The chord error on paper that a figure's rung keeps to, at its nearest point."""
+
+_OVERHANG_ROUNDS = 3
 
 TITLE_SHARE = 2.0
 """Paper that a view's title takes above it, over the height of its letters."""
@@ -78,6 +81,7 @@ class _Planner:
     def __init__(self, model: Model, spec: Spec, mesher: Mesher, problems: Problems) -> None:
         self.model, self.spec, self.mesher, self.problems = model, spec, mesher, problems
         self.shapes: dict[tuple[float, tuple[int, ...], Point | None], Flattened] = {}
+        self.overhangs: dict[str, Around] = {}
         self.sights: dict[int, tuple[float, float, float]] = {}
         self.corners, owners = box_corners(spec.subject, spec.path)
         self.explosion = self._explosion()
@@ -98,7 +102,34 @@ class _Planner:
         if [shot.rung for shot in finer] != [shot.rung for shot in shots]:
             shots = finer
             frame = self._frame(shots, self._vertices)
-        return self._sheet(shots, frame, resolution, measures)
+        return self._sheet(shots, self._with_overhangs(shots, frame), resolution, measures)
+
+    def _with_overhangs(self, shots: Sequence[_Shot], frame: Frame) -> Frame:
+        """The page with room for what stands past the content, which depends on the scale."""
+        for _ in range(_OVERHANG_ROUNDS):
+            self.overhangs = {
+                shot.view.name: self._overhang(shot, camera.enlarged(shot.unit, frame.scale, spot.origin), frame)
+                for shot, spot in zip(shots, frame.spots, strict=True)
+            }
+            if all(each == NONE for each in self.overhangs.values()):
+                return frame
+            frame = self._frame(shots, self._vertices)
+        return frame
+
+    def _overhang(self, shot: _Shot, projection: contract.Projection, frame: Frame) -> Around:
+        if shot.view.window is not None:
+            return NONE
+        vertices = self._vertices(shot)
+        style = style_of(self.spec.manner, frame.width, is_pictorial(shot.view.viewpoint))
+        found = past_centre_lines(self._shape(shot).geometry, vertices, projection, style)
+        if not shot.view.is_main:
+            return found
+        arrows = self._arrows(shot, projection, frame)
+        return larger(found, past_arrows(arrows, vertices, projection, title_height(frame.width)))
+
+    def _arrows(self, shot: _Shot, projection: contract.Projection, frame: Frame) -> tuple[contract.ViewArrow, ...]:
+        height, vertices = title_height(frame.width), self._vertices(shot)
+        return tuple(view_arrow(look, projection, vertices, height) for look in self.spec.looks)
 
     def _explosion(self) -> Explosion | None:
         """How things are moved; None where nothing is, so that the figure is the assembled one."""
@@ -212,8 +243,8 @@ class _Planner:
             aside, upright = max(aside, across * TRACE_FREE_MM), max(upright, up * TRACE_FREE_MM)
         free = (aside, upright, aside, upright)
         if view.is_main:
-            arrows = paper_for_arrows(self.spec.looks, unit, title_height(self.spec.width or WIDTH_MM))
-            free = (max(aside, arrows[0]), max(upright, arrows[1]), max(aside, arrows[2]), max(upright, arrows[3]))
+            check_arrows(self.spec.looks, unit)
+        free = larger(free, self.overhangs.get(view.name, NONE))
         return (free[0], free[1] + above, free[2], free[3])
 
     def _rung(self, shot: _Shot, frame: Frame, points: F64) -> float:
@@ -249,10 +280,7 @@ class _Planner:
         panels[0] = replace(
             panels[0],
             detail_frames=self._detail_frames(shots, panels[0].projection),
-            arrows=tuple(
-                view_arrow(look, panels[0].projection, self._vertices(shots[0]), title_height(frame.width))
-                for look in spec.looks
-            ),
+            arrows=self._arrows(shots[0], panels[0].projection, frame),
         )
         boxes = self._boxes(shots, self._vertices)
         symbol = None if spec.view_set is None else symbol_of(spec.view_set.method, boxes, frame, spec.margin)

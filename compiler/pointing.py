@@ -36,6 +36,19 @@ def direction_in(written: tree.Expression, subject: Thing, scope: Scope) -> Poin
     return (x, y, z)
 
 
+def sight_in(written: tree.Expression, subject: Thing, scope: Scope) -> tuple[Point, Point | None]:
+    """A unit direction of sight, and the point it is aimed at if any.
+
+    A mark or feature is looked at along its axis from outside, against the way the axis points. Raises Mistake.
+    """
+    if not isinstance(written, tree.Path) or (len(written.steps) == 1 and written.steps[0].name in AXES):
+        return direction(written, scope), None
+    last = written.steps[-1].span
+    axis = tree.Path((*written.steps, tree.Step("axis", None, last)), written.span)
+    x, y, z = direction_in(axis, subject, scope)
+    return (-x, -y, -z), point_in(written, subject, scope)
+
+
 def _below(written: tree.Path, subject: Thing, scope: Scope) -> Value:
     value = follow(subject, written.steps, scope)
     if isinstance(value, Placed):

@@ -12,8 +12,10 @@ from .layout import Box
 from .mistakes import mistake
 from .view_sets import Look, Method
 
-ARROW_CLEAR, ARROW_REACH = 1.2, 6.2
-"""How far off the content the tip of a reference arrow stays, and its letter ends, over the height of letters."""
+ARROW_CLEAR = 0.8
+"""How far off the content the tip of a reference arrow stays, over the height of letters."""
+
+_N_SIDES = 72
 
 END_ON = 0.05
 """A direction is seen end-on where a unit along it is drawn shorter than this, at a scale of 1."""
@@ -29,34 +31,46 @@ def letter_height(width: float) -> float:
     return 2.5 if width <= 100.0 else 3.5
 
 
-def paper_for_arrows(looks: Sequence[Look], unit: Projection, height: float) -> tuple[float, float, float, float]:
-    """Paper in mm that reference arrows need on the left of a view, above, on its right and below. Raises Mistake."""
-    left = above = right = below = 0.0
+def check_arrows(looks: Sequence[Look], unit: Projection) -> None:
+    """Raises Mistake where a reference arrow cannot be shown in a view."""
     for look in looks:
-        x, y = _drawn(look, unit)
-        size = (x * x + y * y) ** 0.5
-        reach = ARROW_REACH * height
-        left, right = max(left, reach * x / size), max(right, -reach * x / size)
-        above, below = max(above, reach * y / size), max(below, -reach * y / size)
-    return left, above, right, below
+        _drawn(look, unit)
 
 
 def view_arrow(look: Look, projection: Projection, points: F64, height: float) -> ViewArrow:
     """The reference arrow of a view, in a parallel view of world points (n,3).
 
-    It points at the middle of what is looked at and stays clear of everything shown.
+    It points at what is looked at: a stated point, the middle of the window, else the middle of everything; its tip
+    stays clear of the convex outline of all that is shown.
     """
     matrix = projection.world_to_page
-    page = points @ matrix[:2, :3].T + matrix[:2, 3]
-    middle = (points.min(axis=0) + points.max(axis=0)) / 2 if look.window is None else np.array(look.window[0])
-    at, along = matrix[:2, :3] @ middle + matrix[:2, 3], np.array(_drawn(look, projection))
-    low, high = page.min(axis=0) - ARROW_CLEAR * height, page.max(axis=0) + ARROW_CLEAR * height
-    # Backwards along the sight until the tip leaves the box round the content.
-    back = min(
-        float((at[k] - (low[k] if along[k] > 0 else high[k])) / along[k]) for k in (0, 1) if abs(along[k]) > 1e-12
-    )
-    x, y, z = (float(a - back * b) for a, b in zip(middle, look.viewpoint.axes.sight, strict=True))
+    aim = look.aim
+    if aim is None:
+        aim = look.window[0] if look.window is not None else _middle(points)
+    at, along = matrix[:2, :3] @ np.array(aim) + matrix[:2, 3], np.array(_drawn(look, projection))
+    back = _way_out(points @ matrix[:2, :3].T + matrix[:2, 3], at, -along) + ARROW_CLEAR * height
+    steps = max(back, 0.0) / np.sqrt(float(along @ along))
+    x, y, z = (float(a - steps * b) for a, b in zip(aim, look.viewpoint.axes.sight, strict=True))
     return ViewArrow((x, y, z), look.viewpoint.axes.sight, look.letter)
+
+
+def _middle(points: F64) -> tuple[float, float, float]:
+    x, y, z = ((a + b) / 2 for a, b in zip(points.min(axis=0).tolist(), points.max(axis=0).tolist(), strict=True))
+    return (x, y, z)
+
+
+def _way_out(page: F64, start: F64, along: F64) -> float:
+    """Mm from `start` along a direction to where a line leaves the convex outline of page points (n,2).
+
+    The outline is taken from outside, as the least polygon with `_N_SIDES` sides of evenly spread directions.
+    """
+    unit = along / np.sqrt(float(along @ along))
+    turns = 2 * np.pi * np.arange(_N_SIDES) / _N_SIDES
+    normals = np.column_stack((np.cos(turns), np.sin(turns)))
+    supports = np.array([float((page @ normal).max()) for normal in normals])
+    speeds = normals @ unit
+    leaving = speeds > 1e-9
+    return float(((supports - normals @ start)[leaving] / speeds[leaving]).min())
 
 
 def _drawn(look: Look, projection: Projection) -> tuple[float, float]:

@@ -14,7 +14,7 @@ from .graph import Thing
 from .mistakes import Mistake, Problems, mistake
 from .modules import find_kind
 from .placement import positive_length
-from .pointing import direction_in, point_in
+from .pointing import point_in, sight_in
 from .projections import Viewpoint, square_to, standard, standard_names
 from .readings import expression, listed, name, optional
 from .scope import Scope, did_you_mean
@@ -104,12 +104,12 @@ def _look(head: tree.Reading, subject: Thing, scope: Scope) -> Look:
     if not letter.text.isupper() or len(letter.text) > 2:
         sentence = f"a view is named by a capital letter, found `{letter.text}`"
         raise mistake("wrong-form", letter.span, sentence, "such as `A`")
-    sight = direction_in(expression(head, "direction"), subject, scope)
+    sight, aim = sight_in(expression(head, "direction"), subject, scope)
     mark, across = optional(head, "mark"), optional(head, "diameter")
     window = None
     if mark is not None and across is not None:
         window = (point_in(mark, subject, scope), positive_length(across, scope, "diameter"))
-    return Look(letter.text, square_to(sight), window, head.span)
+    return Look(letter.text, square_to(sight), window, head.span, aim)
 
 
 def _report_letter_twice(look: Look, looks: Sequence[Look], problems: Problems) -> None:

@@ -25,12 +25,16 @@ class Placed(Struct, frozen=True):
 
 
 class Look(Struct, frozen=True):
-    """A view by reference arrow and letter (ISO 128-3); its window is the middle, world mm, and diameter of a piece."""
+    """A view by reference arrow and letter (ISO 128-3); its window is the middle, world mm, and diameter of a piece.
+
+    Its arrow points at `aim` where there is one.
+    """
 
     letter: str
     viewpoint: Parallel
     window: tuple[tuple[float, float, float], float] | None
     span: Span
+    aim: tuple[float, float, float] | None = None
 
 
 class ViewSet(Struct, frozen=True):

@@ -212,10 +212,16 @@ def test_a_view_by_reference_arrow_looks_along_it_and_has_its_letter() -> None:
 
 def test_an_auxiliary_view_shows_an_inclined_face_in_its_true_shape() -> None:
     part = "part ramp\n    add wedge (60 mm, 30 mm, 40 mm)\n    mark slope at (0, 0, 20 mm) along (2, 0, 3)\n"
-    text = part + "figure f\n    show ramp from front\n    view along (-2, 0, -3) as A\n    scale 1:1\n"
+    text = part + "figure f\n    show ramp from front\n    view along slope as A\n    scale 1:1\n"
     job = planned(text, "f")
     corners = np.array([(-30, -15, 40), (-30, 15, 40), (30, -15, 0)], np.float64)
     page, _ = camera.to_page(job.sheet.panels[1].projection, corners)
+    main, sight = job.sheet.panels[0], job.sheet.panels[1].projection.sight
+    assert sight == pytest.approx(np.array((-2, 0, -3)) / math.sqrt(13))
+    # The arrow points at the mark.
+    tip, mark = camera.to_page(main.projection, np.array([main.arrows[0].tip, (0.0, 0, 20)]))[0]
+    assert (mark - tip) / math.dist(mark, tip) == pytest.approx(np.array((-2, 3)) / math.sqrt(13))
+    assert math.dist(mark, tip) < 20
     assert math.dist(page[0], page[1]) == pytest.approx(30)
     assert math.dist(page[0], page[2]) == pytest.approx(math.hypot(60, 40))
 
@@ -228,6 +234,30 @@ def test_a_local_view_is_clipped_to_its_circle() -> None:
     radii = np.linalg.norm(view.clip - centre, axis=1)
     assert radii == pytest.approx(10, abs=0.05)
     assert job.sheet.links == ()
+
+
+def test_there_is_room_on_the_page_for_arrows_and_their_letters() -> None:
+    for line in ("view along -x as A", "view along x as A", "view along z as A", "view along (1, 0, -1) as A"):
+        for size in ("width 84 mm", "size 150 mm by 100 mm", "scale 1:1"):
+            job = figure("show box from front", line, size)
+            main = job.sheet.panels[0]
+            (arrow,) = main.arrows
+            tip, other = camera.to_page(main.projection, np.array([arrow.tip, np.add(arrow.tip, arrow.sight)]))[0]
+            height = job.sheet.inscriptions[0].height
+            tail = tip - (other - tip) / math.dist(tip, other) * 3 * height
+            for point in (tip, tail):
+                assert (point >= 2).all() and (point <= (main.place[2] + main.place[0], job.sheet.page.height)).all()
+
+
+def test_there_is_room_on_the_page_for_centre_lines() -> None:
+    part = "part rod\n    add cylinder diameter 20 mm length 50 mm\n"
+    for line, margin in (("drawn as lines", 4), ("drawn as tone", 2), ("centre lines off\n    drawn as lines", 2)):
+        job = figure("show rod from front", "width 84 mm", line, part=part)
+        low, high = box_of(job, job.sheet.panels[0])
+        assert (low[1], job.sheet.page.height - high[1]) == pytest.approx((margin, margin), abs=0.1)
+    plate = "part plate\n    add block (60 mm, 40 mm, 4 mm)\n    cut cylinder diameter 6 mm length 4 mm\n"
+    job = figure("show plate from top", "width 84 mm", "drawn as lines", part=plate)
+    assert box_of(job, job.sheet.panels[0])[0] == pytest.approx((2, 2), abs=0.1)
 
 
 # --- styles
