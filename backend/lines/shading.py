@@ -15,8 +15,8 @@ from ..contract import F64, I32, Emphasis, FaceOrigin, LineClass, Panel, PatchKi
 from ..drawing import BLACK, Arc, Fill, Group, Lines, Path, Stroke
 from .dots import SIDE, scatter
 from .model import Bools, Candidates, Pieces, Region, View
-from .occluders import Occluders
 from .near import NEAR
+from .occluders import Occluders
 from .queries import front_face, page_points
 from .regions import borders_of, polygon_of, rings_of
 from .scanlines import I64, stretches
