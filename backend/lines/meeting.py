@@ -135,13 +135,10 @@ def _through_plane(world: F64, faces: I32, f: int, height: F64, points: F64, key
 
 @kernel
 def _meet(world: F64, faces: I32, f: int, g: int, normals: F64, near: float, heights: F64, ends: F64, keys: I32) -> int:
-    """The segment in which faces f and g cross: which two of the four points `ends` (4,3) it runs between, as a number
-    4 * first + second, or -1. Points 0 and 1 are on sides of f, 2 and 3 on sides of g; `keys` (4,2) are those sides.
+    """The segment in which faces f and g cross, each of which straddles the plane of the other: which two of the four
+    points `ends` (4,3) it runs between, as a number 4 * first + second, or -1. Points 0 and 1 are on sides of f, 2 and
+    3 on sides of g; `keys` (4,2) are those sides.
     """
-    if not _straddles(world, faces, f, g, normals[1], near, heights[0]):
-        return -1
-    if not _straddles(world, faces, g, f, normals[0], near, heights[1]):
-        return -1
     a, b = normals[0], normals[1]
     x, y, z = a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0]
     size = np.sqrt(x * x + y * y + z * z)
@@ -229,7 +226,12 @@ def crossings(
                 for r2 in range(first + (at - leaves) * LEAF, min(last, first + (at - leaves + 1) * LEAF)):
                     g = rows[r2]
                     pg = face_patch[g]
+                    # The cheaper test first: most triangles that come near lie on one side of this one's plane.
+                    if not _straddles(world, faces, g, f, normals[0], near, heights[1]):
+                        continue
                     if not _normal(world, faces, g, kinds[pg] == 0, frames[pg, 3], normals[1]):
+                        continue
+                    if not _straddles(world, faces, f, g, normals[1], near, heights[0]):
                         continue
                     run = _meet(world, faces, f, g, normals, near, heights, ends, keys)
                     if run < 0:
