@@ -24,7 +24,7 @@ from .placement import positive_length
 from .projections import standard
 from .readings import LATER, expression, optional
 from .scope import Scope, did_you_mean
-from .section_reading import read_cuts, read_details, read_interruptions
+from .section_reading import read_cuts, read_details, read_interruptions, read_uncut
 from .specs import Exploded, Spec
 from .styles import read_manner
 from .subjects import find_subject
@@ -92,6 +92,7 @@ class _Reading:
         if found is not None:
             changes["cuts"] = read_cuts(self.line.lines, found.subject, self.scope, self.problems)
             changes["interruptions"] = read_interruptions(self.line.lines, found.subject, self.scope, self.problems)
+            changes["uncut"] = read_uncut(self.line.lines, found.subject, found.path, self.scope, self.problems)
             changes["details"] = read_details(self.line.lines, found.subject, found.path, self.scope, self.problems)
             changes["stresses"] = read_stresses(self.line.lines, found.subject, found.path, self.scope, self.problems)
             views = read_views(self.model, self.line.lines, found.subject, self.problems)

@@ -52,5 +52,6 @@ def sight_in(written: tree.Expression, subject: Thing, scope: Scope) -> tuple[Po
 def _below(written: tree.Path, subject: Thing, scope: Scope) -> Value:
     value = follow(subject, written.steps, scope)
     if isinstance(value, Placed):
+        # A placed thing stands for its own origin.
         return Vector(tuple(row[3] for row in value.placement), LENGTH)
     return value

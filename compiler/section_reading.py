@@ -14,11 +14,12 @@ from .extent import box_corners
 from .graph import Point, Thing
 from .interruptions import Interruption
 from .mistakes import Problems, mistake
-from .paths import Placed, follow
-from .placement import AXES, direction, point, positive_length
+from .placement import direction, positive_length
+from .pointing import direction_in, point_in
 from .readings import expression, listed, optional
 from .scope import Scope
 from .sections import Cut, Plane
+from .selection import parts_named
 from .specs import Detail
 from .values import Quantity, Vector, kind_of
 
@@ -72,6 +73,19 @@ def read_interruptions(
                         raise mistake("wrong-form", each.span, sentence, "", (Related(other.span, "another one"),))
                 found.append(each)
     return tuple(found)
+
+
+def read_uncut(
+    lines: Sequence[tree.Line], subject: Thing, path: str, scope: Scope, problems: Problems
+) -> tuple[str, ...]:
+    """The paths of what a figure's sections leave whole."""
+    found: list[str] = []
+    for line in lines:
+        if line.head.row == "uncut":
+            for written in listed(line.head, "parts"):
+                with problems.collecting():
+                    found += parts_named(written, subject, path, scope)
+    return tuple(dict.fromkeys(found))
 
 
 class _Reader:
@@ -134,16 +148,7 @@ class _Reader:
         return Cut("local", Plane(n, on_plane), self.head.span, None, (), diameter, kept)
 
     def _direction(self, slot: str) -> Point:
-        """An axis, a direction, or a mark's or feature's axis."""
-        written = expression(self.head, slot)
-        if isinstance(written, tree.Path) and not (len(written.steps) == 1 and written.steps[0].name in AXES):
-            value = self._below(written)
-            if not (isinstance(value, Vector) and value.dimension != LENGTH):
-                hint = "a mark set `along` something, and a feature, have an `axis`"
-                raise mistake("wrong-kind", written.span, f"`{written.dotted}` is no direction", hint)
-            x, y, z = value.components
-            return (x, y, z)
-        return direction(written, self.scope)
+        return direction_in(expression(self.head, slot), self.subject, self.scope)
 
     def _place(self, slot: str, along: Point) -> Point:
         """A point of the plane: a mark's, or a length along its normal from the origin."""
@@ -161,20 +166,7 @@ class _Reader:
         return (along[0] * value.value, along[1] * value.value, along[2] * value.value)
 
     def _point(self, written: tree.Expression) -> Point:
-        if not isinstance(written, tree.Path) or self.scope.find(written.steps[0].name) is not None:
-            return point(written, self.scope)
-        value = self._below(written)
-        if not (isinstance(value, Vector) and value.dimension == LENGTH):
-            raise mistake("wrong-kind", written.span, f"`{written.dotted}` is no point", "name a mark or a feature")
-        x, y, z = value.components
-        return (x, y, z)
-
-    def _below(self, written: tree.Path) -> object:
-        value = follow(self.subject, written.steps, self.scope)
-        if isinstance(value, Placed):
-            # A placed thing stands for its own origin.
-            return Vector(tuple(row[3] for row in value.placement), LENGTH)
-        return value
+        return point_in(written, self.subject, self.scope)
 
     def _corners(self, axis: Point) -> tuple[Point, ...]:
         points = tuple(self._point(each) for each in listed(self.head, "corners"))
