@@ -29,8 +29,20 @@ from .layout import Box
 from .lightings import lights_for
 from .mistakes import Mistake, Problems, confined, mistake
 from .overhang import NONE, Around, larger, past_arrows, past_centre_lines
+from .panels import (
+    check_shown,
+    clip_of,
+    frame_round,
+    frames_of_details,
+    links_of,
+    measured,
+    section_of,
+    title_height,
+    title_of,
+    traces_of,
+)
 from .projections import Central, Parallel, is_pictorial, unit_projection
-from .sections import Opening, away_of, cutter_of, facing, letter_of, trace_of
+from .sections import Opening, away_of, cutter_of, facing
 from .signs import check_arrows, strip_for_symbol, symbol_of, view_arrow
 from .solids.ladder import COARSEST, first_at_most
 from .specs import Spec
@@ -44,9 +56,6 @@ _OVERHANG_ROUNDS = 3
 
 TITLE_SHARE = 2.0
 """Paper that a view's title takes above it, over the height of its letters."""
-
-TRACE_PAST_MM = 6.0
-"""How far on paper a cutting-plane line runs past what it cuts."""
 
 TRACE_FREE_MM = 13.0
 """Paper that the end of a cutting-plane line takes, with its letter."""
@@ -266,6 +275,7 @@ class _Planner:
             sentence = f"{columns:,} x {rows:,} pixels are more than {limits.PIXELS:,}, the limit"
             raise mistake("too-much", spec.span, sentence, "a smaller size or a lower resolution")
         shapes = list({id(each): each for each in map(self._shape, shots)}.values())
+        views = [shot.view for shot in shots]
         panels: list[contract.Panel] = []
         inscriptions: list[contract.Inscription] = []
         for shot, spot in zip(shots, frame.spots, strict=True):
@@ -276,22 +286,22 @@ class _Planner:
                 self._seen(projection, spot.place, vertices)
             panels.append(self._panel(shot.view, projection, spot.place, shape.geometry, shapes.index(shape), frame))
             if shot.view.title:
-                inscriptions.append(self._title(shot.view, projection, vertices, frame))
+                inscriptions.append(title_of(spec, shot.view, projection, vertices, frame))
         panels[0] = replace(
             panels[0],
-            detail_frames=self._detail_frames(shots, panels[0].projection),
+            detail_frames=frames_of_details(views, panels[0].projection),
             arrows=self._arrows(shots[0], panels[0].projection, frame),
         )
         boxes = self._boxes(shots, self._vertices)
         symbol = None if spec.view_set is None else symbol_of(spec.view_set.method, boxes, frame, spec.margin)
         report_filling(spec, boxes, frame, self._vertices(shots[0]), self.problems)
-        wanted = _measured(shapes[0].geometry) if measures else ()
+        wanted = measured(shapes[0].geometry) if measures else ()
         sheet = contract.Sheet(
             spec.name,
             page,
             tuple(panels),
             spec.files,
-            self._links(shots),
+            links_of(views),
             spec.title,
             spec.alt,
             spec.description,
@@ -315,7 +325,7 @@ class _Planner:
         emphasis = emphasis_of(
             spec.stresses, [node.path for node in geometry.nodes], [node.parent for node in geometry.nodes]
         )
-        self._shown(geometry, emphasis)
+        check_shown(spec, geometry, emphasis)
         curves = trace_lines(self.explosion, geometry, emphasis) if self.explosion is not None else ()
         middle = (geometry.vertices.min(axis=0) + geometry.vertices.max(axis=0)) / 2
         target = (float(middle[0]), float(middle[1]), float(middle[2]))
@@ -331,84 +341,11 @@ class _Planner:
             displacement=self.explosion.shifts if self.explosion is not None else None,
             emphasis=emphasis,
             curves=curves,
-            section=self._section(view, projection, geometry),
-            clip=_circle(projection, view),
-            detail_frames=_frame_round(projection, view),
-            cutting_planes=self._traces(view, projection, geometry),
+            section=section_of(spec, view, projection, geometry),
+            clip=clip_of(view, projection),
+            detail_frames=frame_round(view, projection),
+            cutting_planes=traces_of(spec, view, projection, geometry.vertices, self.sights),
         )
-
-    def _shown(self, geometry: contract.Geometry, emphasis: contract.U8 | None) -> None:
-        """Raises Mistake where everything is hidden."""
-        if emphasis is None:
-            return
-        shown = emphasis[[row for row, node in enumerate(geometry.nodes) if node.mesh >= 0]]
-        if len(shown) and bool((shown == contract.Emphasis.HIDE).all()):
-            span = self.spec.stresses[-1].span
-            raise mistake("nothing-to-show", span, f"everything in `{self.spec.path}` is hidden", "hide less")
-
-    def _links(self, shots: Sequence[_Shot]) -> tuple[contract.Link, ...]:
-        """Which panel is the parent of which section or detail."""
-        found: list[contract.Link] = []
-        for child, shot in enumerate(shots):
-            if shot.view.window is not None and shot.view.window.letter:
-                found.append(contract.Link("detail", 0, child, shot.view.window.letter))
-                continue
-            for number in shot.view.cuts:
-                parents = [row for row, other in enumerate(shots) if number in other.view.traces]
-                found += [contract.Link("section", parent, child, letter_of(number)) for parent in parents]
-        return tuple(found)
-
-    def _detail_frames(
-        self, shots: Sequence[_Shot], projection: contract.Projection
-    ) -> tuple[contract.DetailFrame, ...]:
-        windows = [each.view.window for each in shots if each.view.window is not None and each.view.window.letter]
-        return tuple(
-            contract.DetailFrame(each.centre, each.diameter * projection.scale, each.letter) for each in windows
-        )
-
-    def _title(self, view: View, projection: contract.Projection, vertices: F64, frame: Frame) -> contract.Inscription:
-        """The name of a view, above its content; that of a detail with its scale."""
-        text, window = view.title, view.window
-        if window is not None:
-            middle, _ = camera.to_page(projection, np.array([window.centre]))
-            across, top = float(middle[0, 0]), float(middle[0, 1]) - window.diameter / 2 * projection.scale
-            text += f" ({self._scale_text(view, frame)})" if window.letter else ""
-        else:
-            low, high, _ = content(projection, vertices)
-            across, top = (low[0] + high[0]) / 2, low[1]
-        height = title_height(frame.width)
-        return contract.Inscription(text, (across, top - height * 0.8), height)
-
-    def _scale_text(self, view: View, frame: Frame) -> str:
-        """A scale as ISO 5455 writes it where the figure states one, else how many times the view is enlarged."""
-        if self.spec.scale is None:
-            return f"{view.factor:g}×"
-        scale = frame.scale * view.factor
-        return f"{scale:.4g}:1" if scale >= 1 else f"1:{1 / scale:.4g}"
-
-    def _section(
-        self, view: View, projection: contract.Projection, geometry: contract.Geometry
-    ) -> contract.Section | None:
-        """What is said of a view's first section."""
-        if not view.cuts:
-            return None
-        cut = self.spec.cuts[view.cuts[0]]
-        away, opening = away_of(cut, projection.sight), Opening((), frozenset(self.spec.uncut))
-        uncut = tuple(row for row, node in enumerate(geometry.nodes) if opening.is_whole(node.path))
-        return contract.Section(cut.plane.through, away, uncut, letter_of(view.cuts[0]))
-
-    def _traces(
-        self, view: View, projection: contract.Projection, geometry: contract.Geometry
-    ) -> tuple[contract.CuttingPlaneLine, ...]:
-        """Cutting-plane lines of the sections that other views show."""
-        found: list[contract.CuttingPlaneLine] = []
-        for number in view.traces:
-            cut = self.spec.cuts[number]
-            away = away_of(cut, self.sights[number])
-            points = trace_of(cut, away, projection.sight, geometry.vertices, TRACE_PAST_MM / projection.scale)
-            seen = (-away[0], -away[1], -away[2])
-            found.append(contract.CuttingPlaneLine(points, seen, letter_of(number)))
-        return tuple(found)
 
     def _seen(self, projection: contract.Projection, place: tuple[float, float, float, float], vertices: F64) -> None:
         """A view with nothing in it is a problem; one whose subject leaves its place says so."""
@@ -429,33 +366,3 @@ class _Planner:
             sentence = "the subject reaches past the edge of the page"
             hint = "a shorter lens, a wider angle of view, or an eye further off"
             self.problems.warn("cropped", self.spec.span, sentence, hint)
-
-
-def title_height(width: float) -> float:
-    """Height in mm of the letters that name views on a page of this width: one step of ISO 3098 above its letters."""
-    return 3.5 if width <= 100.0 else 5.0
-
-
-def _frame_round(projection: contract.Projection, view: View) -> tuple[contract.DetailFrame, ...]:
-    """The circle round a detail itself, which needs no letter."""
-    if view.window is None:
-        return ()
-    return (contract.DetailFrame(view.window.centre, view.window.diameter * projection.scale, ""),)
-
-
-_N_CLIP = 96
-
-
-def _circle(projection: contract.Projection, view: View) -> F64 | None:
-    """The circle on the page that a detail is cut to, as a polygon."""
-    if view.window is None:
-        return None
-    middle, _ = camera.to_page(projection, np.array([view.window.centre]))
-    radius = view.window.diameter / 2 * projection.scale
-    turn = np.radians(np.arange(_N_CLIP) * (360.0 / _N_CLIP))
-    return np.asarray(middle[0] + radius * np.stack((np.cos(turn), np.sin(turn)), axis=1))
-
-
-def _measured(geometry: contract.Geometry) -> tuple[contract.MeasureWanted, ...]:
-    """The subject and everything placed directly in it."""
-    return tuple(contract.MeasureWanted(0, row) for row, node in enumerate(geometry.nodes) if node.parent <= 0)
