@@ -8,12 +8,13 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from .contract import F64, U8, Emphasis, Job, LineClass, Panel, Style
-from .drawing import BLACK, Colour, Drawing, Group, Image, Mark, Words
+from .drawing import BLACK, Colour, Drawing, Group, Image, Lines, Mark, Words
 from .lettering.type import Lettering
 
 if TYPE_CHECKING:
@@ -130,7 +131,7 @@ def _panel_groups(
 
     panel = job.sheet.panels[lines.panel]
     nodes, regions = job.geometries[panel.geometry].nodes, lines.seen.regions
-    signs = notation_of(panel, lettering, height)
+    signs = notation_of(panel, lettering, height, _inked(lines))
     groups: list[Group] = []
     fills = fills_of(regions, nodes, job.materials, panel.style, panel.emphasis)
     if fills:
@@ -141,8 +142,45 @@ def _panel_groups(
         if marks:
             groups.append(Group("class", LineClass.HATCHING.value, marks, panel.clip))
     groups += _shading(panel, lines)
-    groups += groups_of(lines.chains, nodes, panel.style, colours=_colours(panel))
+    groups += groups_of(_beside_traces(lines.chains, panel), nodes, panel.style, colours=_colours(panel))
     return (*groups, *signs)
+
+
+def _inked(lines: PanelLines) -> F64:
+    """Stretches on the page that are drawn, (k,2,2) mm, so that words may keep clear of them."""
+    pieces, candidates = lines.seen.pieces, lines.seen.candidates
+    rows = np.flatnonzero(pieces.is_visible & candidates.is_drawn[pieces.segment])
+    return np.stack((pieces.start[rows, :2], pieces.end[rows, :2]), axis=1)
+
+
+_SAME_LINE_MM = 0.05
+
+
+def _beside_traces(chains: Sequence[Chain], panel: Panel) -> tuple[Chain, ...]:
+    """Lines without the centre lines that a cutting-plane line runs along: one of two patterns is enough."""
+    from .lines.notation import to_page
+
+    traces = [to_page(panel.projection, plane.points) for plane in panel.cutting_planes]
+    if not traces:
+        return tuple(chains)
+    return tuple(
+        chain
+        for chain in chains
+        if chain.line_class is not LineClass.CENTRE_LINE or not any(_runs_along(chain, trace) for trace in traces)
+    )
+
+
+def _runs_along(chain: Chain, trace: F64) -> bool:
+    pieces = [piece for piece in chain.path.pieces if isinstance(piece, Lines)]
+    if len(pieces) != len(chain.path.pieces):
+        return False
+    points = np.concatenate([np.array([chain.path.start]), *(piece.points for piece in pieces)])
+    for a, b in pairwise(trace):
+        along = (b - a) / np.hypot(*(b - a))
+        off = (points[:, 0] - a[0]) * along[1] - (points[:, 1] - a[1]) * along[0]
+        if (np.abs(off) < _SAME_LINE_MM).all():
+            return True
+    return False
 
 
 def _shading(panel: Panel, lines: PanelLines) -> tuple[Group, ...]:

@@ -28,15 +28,18 @@ HEAD_ANGLE = 30.0
 """Degrees between the sides of an arrow head: a filled one of 30° (common practice within ISO 129-1's 15° to 90°)."""
 
 
-def notation_of(panel: Panel, lettering: Lettering, height: float) -> tuple[Group, ...]:
-    """Signs of one panel, capitals `height` mm high. Page mm; cost: a handful of strokes each."""
+def notation_of(panel: Panel, lettering: Lettering, height: float, inked: F64) -> tuple[Group, ...]:
+    """Signs of one panel, capitals `height` mm high. Page mm; cost: a pass over the lines for each frame of a detail.
+
+    `inked` (k,2,2) are the stretches of lines that words keep clear of where they can.
+    """
     items: list[Mark] = []
     for plane in panel.cutting_planes:
         items += _cutting_plane(plane, panel.projection, panel.style, lettering, height)
     for arrow in panel.arrows:
         items += _view_arrow(arrow, panel.projection, panel.style, lettering, height)
     for frame in panel.detail_frames:
-        items += _detail_frame(frame, panel.projection, panel.style, lettering, height)
+        items += _detail_frame(frame, panel.projection, panel.style, lettering, height, inked)
     return (Group("words", f"signs of {panel.name}", tuple(items)),) if items else ()
 
 
@@ -154,15 +157,36 @@ def _view_arrow(
 
 
 def _detail_frame(
-    frame: DetailFrame, projection: Projection, style: Style, lettering: Lettering, height: float
+    frame: DetailFrame, projection: Projection, style: Style, lettering: Lettering, height: float, inked: F64
 ) -> list[Mark]:
     centre = to_page(projection, np.array([frame.centre]))[0]
     radius = frame.diameter / 2
     found: list[Mark] = [Stroke(circle(_point(centre), radius), style.narrow, LineClass.DETAIL_FRAME)]
     if frame.letter:
-        aside = np.array((cos(radians(-45.0)), sin(radians(-45.0))))
-        found.append(_letter(frame.letter, centre + aside * (radius + height * 0.95), lettering, height))
+        half = np.array((lettering.width_of(frame.letter, height), height)) / 2 + 0.2 * height
+        turns = [radians(angle) for angle in _ASIDE]
+        middles = [centre + np.array((cos(turn), -sin(turn))) * (radius + height * 0.95) for turn in turns]
+        middle = min(middles, key=lambda at: _crossed(inked, at - half, at + half))
+        found.append(_letter(frame.letter, middle, lettering, height))
     return found
+
+
+_ASIDE = (45.0, 135.0, -45.0, -135.0, 0.0, 180.0, 90.0, -90.0)
+"""Directions in degrees, counter-clockwise on the page, in which a frame's letter is put, the first that is clear."""
+
+
+def _crossed(segments: F64, low: F64, high: F64) -> float:
+    """Length in mm of segments (k,2,2) within a box."""
+    start, along = segments[:, 0], segments[:, 1] - segments[:, 0]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        first, last = (low - start) / along, (high - start) / along
+    enter, leave = np.minimum(first, last), np.maximum(first, last)
+    level = along == 0.0
+    is_inside = (start >= low) & (start <= high)
+    enter = np.where(level, np.where(is_inside, -np.inf, np.inf), enter)
+    leave = np.where(level, np.where(is_inside, np.inf, -np.inf), leave)
+    share = np.minimum(leave.min(axis=1), 1.0) - np.maximum(enter.max(axis=1), 0.0)
+    return float((np.maximum(share, 0.0) * np.hypot(along[:, 0], along[:, 1])).sum())
 
 
 def _letter(text: str, middle: F64, lettering: Lettering, height: float) -> Words:

@@ -6,12 +6,12 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from ..contract import F64, FaceOrigin, Geometry, Page, Panel
+from ..contract import F64, FaceOrigin, Geometry, LineClass, Page, Panel
 from .clipping import clipped, near
 from .contours import contours_of
 from .conventions import conventions_of, curves_of
 from .edges import edges_of
-from .model import Candidates, Pieces, Region, View, joined
+from .model import Candidates, Pieces, Region, View, joined, number_of
 from .occluders import Occluders, occluders_of
 from .penetrations import penetrations_of
 from .regions import regions_of
@@ -59,10 +59,30 @@ def see(
         candidates = near(candidates, panel.clip, _CLIP_MARGIN_MM)
     occluders = occluders_of(view)
     pieces = cut(view, candidates, threads, occluders=occluders)
+    if panel.clip is not None:
+        candidates, pieces = _closed_by(panel.clip, candidates, pieces)
     regions = regions_of(view, pieces, candidates, occluders) if with_regions else ()
     if panel.clip is not None:
         pieces = clipped(pieces, panel.clip)
     return Seen(view, _sectioned(candidates, view), pieces, occluders, regions)
+
+
+def _closed_by(polygon: F64, candidates: Candidates, pieces: Pieces) -> tuple[Candidates, Pieces]:
+    """Lines with the sides of a polygon among them, which are not drawn but close the areas that it cuts."""
+    n, following = len(polygon), np.roll(polygon, -1, axis=0)
+    start, end = (np.column_stack((points, np.zeros(n))) for points in (polygon, following))
+    none, two = np.full(n, -1, np.int32), np.full((n, 2), -1, np.int32)
+    off, edge = np.zeros(n, np.bool_), number_of(LineClass.VISIBLE_EDGE)
+    sides = Candidates(start, end, np.full(n, edge, np.uint8), none, none, two, two, none, np.zeros(n), off, off)
+    rows = np.arange(len(candidates), len(candidates) + n, dtype=np.int32)
+    more = Pieces(
+        np.concatenate((pieces.segment, rows)),
+        np.concatenate((pieces.span, np.tile((0.0, 1.0), (n, 1)))),
+        np.concatenate((pieces.is_visible, ~off)),
+        np.concatenate((pieces.start, start)),
+        np.concatenate((pieces.end, end)),
+    )
+    return joined((candidates, sides)), more
 
 
 def _sectioned(candidates: Candidates, view: View) -> Candidates:
