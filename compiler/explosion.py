@@ -35,12 +35,18 @@ class Move(Struct, frozen=True):
 class Explosion(Struct, frozen=True, eq=False):
     """How an exploded figure moves its subject.
 
-    `shifts` (n,3) float64 are world mm for each entry of the walked tree, nested ones added; `moves` those of which
-    each adds to what holds it.
+    `shifts` (n,3) float64 are world mm for each entry of the walked tree, nested ones added, `rows` its rows by path;
+    `moves` are those of which each adds to what holds it.
     """
 
     shifts: F64
     moves: tuple[Move, ...]
+    rows: dict[str, int]
+
+    def carry(self, point: Point, path: str) -> Point:
+        """Where a point of what goes by a path comes to."""
+        x, y, z = (float(a + b) for a, b in zip(point, self.shifts[self.rows[path]], strict=True))
+        return (x, y, z)
 
 
 def explode(entries: Sequence[Entry], factor: float) -> Explosion:
@@ -53,7 +59,7 @@ def explode(entries: Sequence[Entry], factor: float) -> Explosion:
         shifts[row] = shifts[entry.parent] + way
         if any(way):
             moves.append(Move(row, entry.parent, way, tuple(_marked(entry, way))))
-    return Explosion(shifts, tuple(moves))
+    return Explosion(shifts, tuple(moves), {entry.path: row for row, entry in enumerate(entries)})
 
 
 def _ways(entry: Entry, factor: float) -> Iterator[Point]:

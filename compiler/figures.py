@@ -30,6 +30,7 @@ from .lightings import lights_for
 from .mistakes import Mistake, Problems, confined, mistake
 from .overhang import NONE, Around, larger, past_arrows, past_centre_lines
 from .panels import (
+    carried,
     check_shown,
     clip_of,
     frame_round,
@@ -94,6 +95,8 @@ class _Planner:
         self.sights: dict[int, tuple[float, float, float]] = {}
         self.corners, owners = box_corners(spec.subject, spec.path)
         self.explosion = self._explosion()
+        if self.explosion is not None:
+            self.spec = carried(spec, self.explosion)
         self.reach = self.corners if self.explosion is None else self.corners + self.explosion.shifts[owners]
 
     def job(self, resolution: float, measures: bool) -> contract.Job:

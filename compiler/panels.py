@@ -5,9 +5,11 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+from msgspec import structs
 from platewright.backend import camera, contract
 from platewright.backend.contract import F64
 
+from .explosion import Explosion
 from .frames import Frame, content
 from .graph import Point
 from .mistakes import mistake
@@ -19,6 +21,25 @@ TRACE_PAST_MM = 6.0
 """How far on paper a cutting-plane line runs past what it cuts."""
 
 _N_CLIP = 96
+
+
+def carried(spec: Spec, explosion: Explosion) -> Spec:
+    """A figure whose details and views by arrow look where the marks they name have been moved to."""
+
+    def place(holder: str) -> str:
+        return f"{spec.path}.{holder}" if holder else spec.path
+
+    details = tuple(
+        structs.replace(each, centre=explosion.carry(each.centre, place(each.holder))) for each in spec.details
+    )
+    looks = []
+    for look in spec.looks:
+        window, path = look.window, place(look.holder)
+        if window is not None:
+            window = (explosion.carry(window[0], path), window[1])
+        aim = None if look.aim is None else explosion.carry(look.aim, path)
+        looks.append(structs.replace(look, window=window, aim=aim))
+    return structs.replace(spec, details=details, looks=tuple(looks))
 
 
 def title_height(width: float) -> float:

@@ -49,6 +49,19 @@ def sight_in(written: tree.Expression, subject: Thing, scope: Scope) -> tuple[Po
     return (-x, -y, -z), point_in(written, subject, scope)
 
 
+def holder_of(written: tree.Expression, subject: Thing, scope: Scope) -> str:
+    """The path, within the subject, of the placed thing that holds a mark; `""` for the subject and for values."""
+    if not isinstance(written, tree.Path) or scope.find(written.steps[0].name) is not None:
+        return ""
+    path = ""
+    for length in range(1, len(written.steps) + 1):
+        value = follow(subject, written.steps[:length], scope)
+        if not isinstance(value, Placed):
+            break
+        path = value.path
+    return path
+
+
 def _below(written: tree.Path, subject: Thing, scope: Scope) -> Value:
     value = follow(subject, written.steps, scope)
     if isinstance(value, Placed):

@@ -15,7 +15,7 @@ from .graph import Point, Thing
 from .interruptions import Interruption
 from .mistakes import Problems, mistake
 from .placement import direction, positive_length
-from .pointing import direction_in, point_in
+from .pointing import direction_in, holder_of, point_in
 from .readings import expression, listed, optional
 from .scope import Scope
 from .sections import Cut, Plane
@@ -125,7 +125,8 @@ class _Reader:
         else:
             corners, _ = box_corners(self.subject, name)
             diameter = float((corners.max(axis=0) - corners.min(axis=0)).max()) * DETAIL_SHARE
-        return Detail(centre, diameter, times, head.span)
+        holder = holder_of(expression(head, "mark"), self.subject, self.scope)
+        return Detail(centre, diameter, times, head.span, holder)
 
     def interruption(self) -> Interruption:
         axis = self._direction("axis")

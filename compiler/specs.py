@@ -21,12 +21,16 @@ MARGIN_MM = 2.0
 
 
 class Detail(Struct, frozen=True):
-    """What one detail shows, enlarged by `times`: a circle in the view's plane, world mm."""
+    """What one detail shows, enlarged by `times`: a circle in the view's plane, world mm.
+
+    `holder` is the path within the subject of what the centre is a mark of, and moves with; empty for the subject.
+    """
 
     centre: tuple[float, float, float]
     diameter: float
     times: float
     span: Span
+    holder: str = ""
 
 
 class Exploded(Struct, frozen=True):

@@ -14,7 +14,7 @@ from .graph import Thing
 from .mistakes import Mistake, Problems, mistake
 from .modules import find_kind
 from .placement import positive_length
-from .pointing import point_in, sight_in
+from .pointing import holder_of, point_in, sight_in
 from .projections import Viewpoint, square_to, standard, standard_names
 from .readings import expression, listed, name, optional
 from .scope import Scope, did_you_mean
@@ -106,10 +106,11 @@ def _look(head: tree.Reading, subject: Thing, scope: Scope) -> Look:
         raise mistake("wrong-form", letter.span, sentence, "such as `A`")
     sight, aim = sight_in(expression(head, "direction"), subject, scope)
     mark, across = optional(head, "mark"), optional(head, "diameter")
-    window = None
+    window, holder = None, holder_of(expression(head, "direction"), subject, scope) if aim is not None else ""
     if mark is not None and across is not None:
+        holder = holder_of(mark, subject, scope)
         window = (point_in(mark, subject, scope), positive_length(across, scope, "diameter"))
-    return Look(letter.text, square_to(sight), window, head.span, aim)
+    return Look(letter.text, square_to(sight), window, head.span, aim, holder)
 
 
 def _report_letter_twice(look: Look, looks: Sequence[Look], problems: Problems) -> None:

@@ -27,7 +27,7 @@ class Placed(Struct, frozen=True):
 class Look(Struct, frozen=True):
     """A view by reference arrow and letter (ISO 128-3); its window is the middle, world mm, and diameter of a piece.
 
-    Its arrow points at `aim` where there is one.
+    Its arrow points at `aim` where there is one. `holder` is the path within the subject of what both are marks of.
     """
 
     letter: str
@@ -35,6 +35,7 @@ class Look(Struct, frozen=True):
     window: tuple[tuple[float, float, float], float] | None
     span: Span
     aim: tuple[float, float, float] | None = None
+    holder: str = ""
 
 
 class ViewSet(Struct, frozen=True):

@@ -132,6 +132,18 @@ def test_a_subject_within_an_assembly_explodes_in_its_own_frame() -> None:
     assert shift_of(job, "drum.cover.screws[1]") == pytest.approx((0, 0, 15))
 
 
+def test_details_and_local_views_go_where_their_marks_go() -> None:
+    model = DRUM.replace(
+        "    cut cylinder diameter 5 mm", "    mark edge at (30 mm, 0, 0) along x\n    cut cylinder diameter 5 mm"
+    )
+    lines = ("detail of cover.lid.edge enlarged 2 diameter 8 mm", "view along cover.lid.edge as C", "width 150 mm")
+    for factor in (0.0, 1.0, 1.5):
+        job = figure(f"exploded {factor:g}", *lines, model=model, show="show drum from front")
+        main = job.sheet.panels[0]
+        assert main.detail_frames[0].centre == pytest.approx((30, 0, 50 + 40 * factor))
+        assert main.arrows[0].tip[2] == pytest.approx(50 + 40 * factor) and main.arrows[0].tip[0] > 30
+
+
 def test_an_exploded_view_set_moves_alike_in_all_views() -> None:
     job = figure("exploded", "third angle front, top, right", "width 120 mm")
     first, *others = (panel.displacement for panel in job.sheet.panels)
