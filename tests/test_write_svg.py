@@ -168,7 +168,7 @@ def test_a_clip_is_told_with_its_group() -> None:
     assert sorted(used) == sorted(f"url(#{each})" for each in clips)
     polygon = clipped().groups[0].clip
     assert polygon is not None
-    assert np.allclose(flattened(clips["panel.A.clip"])[0][:4], polygon)
+    assert np.allclose(flattened(clips["panel.A_clip"])[0][:4], polygon)
 
 
 def test_a_picture_stands_in_the_file_pixel_by_pixel() -> None:

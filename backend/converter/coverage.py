@@ -445,8 +445,12 @@ def paint_strip(
         for row in range(rows):
             y = top + row
             n_active = _turn_over(tile, active, n_active, y, heads[row], waiting, xs)
-            if n_active > 0:
-                _row(tile, active, n_active, y, rules, inks, sums, wound, xs, order, cuts, change)
+            if n_active == 0:
+                for column in range(left, left + width):
+                    for channel in range(len(paper)):
+                        out[row, column, channel] = paper[channel]
+                continue
+            _row(tile, active, n_active, y, rules, inks, sums, wound, xs, order, cuts, change)
             _finish(sums, paper, images, image_pixels, image_first, image_shape, image_place, left, y, out, row, width)
 
 

@@ -88,8 +88,9 @@ class _Writer:
         head = f'g id="{identity}"' + (f" data-name={_quoted(group.name)}" if group.name else "")
         if group.clip is not None:
             clip = Path((float(group.clip[0, 0]), float(group.clip[0, 1])), (Lines(group.clip[1:]),), True)
-            yield f'<clipPath id="{identity}.clip"><path d="{self._data(clip)}"/></clipPath>'
-            head += f' clip-path="url(#{identity}.clip)"'
+            clip_identity = self._unique(f"{identity}_clip")
+            yield f'<clipPath id="{clip_identity}"><path d="{self._data(clip)}"/></clipPath>'
+            head += f' clip-path="url(#{clip_identity})"'
         found = list(runs(group.items))
         marks = [mark for mark in group.items if not isinstance(mark, Group)]
         if len(found) == 1 and marks and (attributes := self._attributes(marks[0], group.kind == "fills")):
@@ -102,7 +103,9 @@ class _Writer:
 
     def _identity(self, group: Group, parent: str) -> str:
         own = f"{group.kind}.{group.name}" if group.name else group.kind
-        base = _NOT_IN_ID.sub("-", f"{parent}_{own}" if parent else own).strip("-")
+        return self._unique(_NOT_IN_ID.sub("-", f"{parent}_{own}" if parent else own).strip("-"))
+
+    def _unique(self, base: str) -> str:
         identity, number = base, 1
         while identity in self.ids:
             number += 1

@@ -99,10 +99,19 @@ def test_two_values_are_ink_where_more_than_half_is_covered() -> None:
     assert np.array_equal(np.unpackbits(bits.rows, axis=1)[:, : bits.columns] == 1, grey < 128)
 
 
+def test_group_4_is_read_alike_by_opencv() -> None:
+    """OpenCV reads TIFF by a libtiff of its own: ink is black, paper white."""
+    import cv2
+
+    bits = converter.bits(wording(), 600.0)
+    read = cv2.imdecode(np.frombuffer(group4_bytes(bits, 600.0), np.uint8), cv2.IMREAD_GRAYSCALE)
+    ink = np.unpackbits(bits.rows, axis=1)[:, : bits.columns]
+    assert ink.any() and np.array_equal(read, np.where(ink == 1, 0, 255))
+
+
 def test_group_4_is_read_alike_by_another_decoder() -> None:
     """tifffile unpacks with imagecodecs' own T.6 decoder; white is zero, so ink is one (TIFF 6.0, section 8)."""
-    import tifffile
-
+    tifffile = pytest.importorskip("tifffile")
     pytest.importorskip("imagecodecs", reason="imagecodecs unpacks Group 4 for tifffile")
     bits = converter.bits(wording(), 600.0)
     with tifffile.TiffFile(io.BytesIO(group4_bytes(bits, 600.0))) as file:
