@@ -116,6 +116,15 @@ def test_a_twist_along_a_closed_path_takes_whole_turns(twist: float, closes: boo
     assert problems_of(Sweep(STRIP, HOSE, twist)) == ()
 
 
+def test_a_twist_does_not_go_round_a_mitred_corner() -> None:
+    """Stations close behind a mitre would lie within what leans over it: a fold at fine rungs, none at coarse ones."""
+    corners = ((0.0, 0.0, 0.0), (0.0, 0.0, 60.0), (50.0, 0.0, 20.0))
+    (found,) = problems_of(Sweep(STRIP, bent(*corners), 90.0))
+    assert found.code == "twisted-corner" and "(0 mm, 0 mm, 60 mm)" in found.sentence
+    assert problems_of(Sweep(STRIP, bent(*corners), 0.0)) == ()
+    assert problems_of(Sweep(STRIP, bent(*corners, radius=12.0), 90.0)) == ()
+
+
 @pytest.mark.parametrize("rung", [0.1, 0.01])
 def test_triangles_of_twisted_sweeps_are_not_counted_many_times_over(rung: float) -> None:
     shape = Sweep(STRIP, SpacePath((10.0, 0.0, 0.0), (Helix(20.0, 12.0, 3.0),)), 90.0)

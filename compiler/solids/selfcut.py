@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 
 from .outline import OutlineFlaw, Polyline, count_chords, faults, flatten, oriented
 from .recipe import Bellows, Spring, Sweep, Tube
-from .spine import Arc, PathFlaw, Trace, spelled
+from .spine import SMOOTH_WITHIN, Arc, PathFlaw, Trace, spelled
 from .stations import Stations, affordable, stations
 from .sweep import bellows_outline, divisions_in_common, parts_of, reach_from_path, rings
 
@@ -63,6 +63,10 @@ def flaws_along(shape: Sweep | Tube | Spring | Bellows) -> tuple[OutlineFlaw, ..
     if len(along.points) * sum(len(loop.points) for loop in loops) > 4 * _MOST_POINTS:
         sentence = f"it is judged by more than {4 * _MOST_POINTS} points, the limit named `points`"
         return (OutlineFlaw("too-large", sentence, "give its path fewer turns or its section fewer curves"),)
+    if isinstance(shape, Sweep) and shape.twist:
+        wrong = _twisted_corner(along)
+        if wrong:
+            return wrong
     points = rings(loops, along)
     tight = _tight(points, along)
     if tight is not None:
@@ -86,6 +90,16 @@ def _does_not_close(shape: Sweep, found: Trace) -> tuple[OutlineFlaw, ...]:
         return ()
     sentence = f"a twist of {shape.twist:.6g} deg does not bring the section back onto itself where the path closes"
     return (OutlineFlaw("twist-does-not-close", sentence, "twist it by whole turns, `360 deg`, or open the path"),)
+
+
+def _twisted_corner(along: Stations) -> tuple[OutlineFlaw, ...]:
+    """The first mitre, in whose plane twisted stretches do not meet: they have no section in common there."""
+    ahead = (along.before[:, :, 2] * along.after[:, :, 2]).sum(axis=1)
+    corners = np.flatnonzero(ahead < math.cos(math.radians(SMOOTH_WITHIN)))
+    if not len(corners):
+        return ()
+    sentence = f"a twist does not go round the mitred corner at {spelled(along.points[corners[0]])}"
+    return (OutlineFlaw("twisted-corner", sentence, "give the corners of its path a bend"),)
 
 
 def _bellows_flaws(shape: Bellows) -> tuple[OutlineFlaw, ...]:
