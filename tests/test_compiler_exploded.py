@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from platewright.backend import camera, contract
+from platewright.backend import camera, contract, sheet
 from platewright.backend.contract import LineClass
 from platewright.compiler import explosion, limits, scene
 from platewright.lang.problems import Severity
@@ -81,6 +81,15 @@ def test_exploded_0_is_the_assembled_figure() -> None:
     assert (one.place, one.style, one.lighting) == (other.place, other.style, other.lighting)
     assert assembled.sheet.page == exploded.sheet.page
     assert assembled.geometries[0].key == exploded.geometries[0].key
+
+
+@pytest.mark.parametrize(("style", "kind"), [("lines", "svg"), ("tone", "png")])
+def test_exploded_0_gives_the_same_bytes(style: str, kind: str) -> None:
+    files = []
+    for lines in ((), ("exploded 0",), ("exploded 0.5",)):
+        job = figure(*lines, "width 30 mm", f"drawn as {style}")
+        files.append(sheet.encode(sheet.draw(job, (kind,)), job, kind))
+    assert files[0] == files[1] != files[2]
 
 
 def test_every_moved_thing_has_a_trace_along_its_way_from_where_it_sat() -> None:
