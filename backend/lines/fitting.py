@@ -27,7 +27,7 @@ BULGE = 0.03
 LINE, ARC, CUBIC = 0, 1, 2
 _FIT = 0.002  # mm by which points may lie off a circle or ellipse: the ends of arcs then keep within ERROR
 _STRAIGHT = 0.001  # mm by which points may lie off a straight line
-_LONG = 2.0  # mm: a shorter straight stretch of a smooth run is not told from its curve
+_LONG = 5.0  # mm: a shorter straight stretch of a smooth run is not told from its curve
 _STEEP = 0.5  # cosine of the greatest turn of a smooth run at a point
 _ARC_TURN = np.pi / 4  # least turn of a circle that is only a stretch of a run
 _ELLIPSE_TURN = np.pi / 2  # the same for an ellipse, which fits nearly any short stretch
@@ -245,16 +245,28 @@ def _arc_reach(p: F64, left: int, right: int, free: int) -> tuple[int, F64]:
 
 @kernel
 def _ellipse_of(p: F64, left: int, right: int, free: int) -> F64:
-    """The circle or ellipse that points left to right lie on, or zeros for none.
+    """The circle or ellipse that points left to right lie on, else all but free ends, or zeros for none.
 
     Seven numbers: 1, centre x, half axis, other half axis, centre y, turn of the first axis in radians, sweep from
     the first to the last point, positive when clockwise on the page.
     """
-    low = left + (free & _FIRST)
-    high = right - (1 if free & (_LAST | _RING) else 0)
+    high = right - (free & _RING) // _RING
+    shape = _ellipse_by(p, left, right, left, high, 0)
+    if shape[0] == 0 and free & (_FIRST | _LAST):
+        low, high = left + (free & _FIRST), high - (free & _LAST) // _LAST
+        shape = _ellipse_by(p, left, right, low, high, 1)
+    return shape
+
+
+@kernel
+def _ellipse_by(p: F64, left: int, right: int, low: int, high: int, spare: int) -> F64:
+    """The shape of the points low to high, if those left to right do not contradict it.
+
+    One point more than fixes the shape must bear it out, and `spare` more.
+    """
     none = np.zeros(7)
     count = high - low + 1
-    if count < 4:
+    if count < 4 + spare:
         return none
     mid_x, mid_y, size = 0.0, 0.0, 0.0
     for k in range(low, high + 1):
@@ -268,7 +280,7 @@ def _ellipse_of(p: F64, left: int, right: int, free: int) -> F64:
     m, v = np.zeros((5, 5)), np.zeros(5)
     f = np.empty(5)
     for n_unknown in (3, 5):
-        if n_unknown == 5 and count < 6:
+        if n_unknown == 5 and count < 6 + spare:
             return none
         for i in range(5):
             v[i] = 0.0
@@ -354,15 +366,18 @@ def _passes(p: F64, left: int, right: int, low: int, high: int, shape: F64) -> b
     cosine, sine = np.cos(shape[5]), np.sin(shape[5])
     long, short = shape[2], shape[3]
     sweep, before_u, before_w = 0.0, 0.0, 0.0
+    first_away, last_away, first_bulge, last_bulge = 0.0, 0.0, 0.0, 0.0
     for k in range(left, right + 1):
         dx, dy = p[k, 0] - shape[1], p[k, 1] - shape[4]
         u, w = (dx * cosine + dy * sine) / long, (dy * cosine - dx * sine) / short
         value = u * u + w * w
         slope = 2 * np.sqrt(u * u / (long * long) + w * w / (short * short))
         # Distance to first order (Sampson 1982); exact enough as the half axes are at least ten times the tolerance.
-        allowed = _FIT if low <= k <= high else BULGE
-        if slope == 0 or abs(value - 1) > allowed * slope:
+        if slope == 0 or value - 1 > _FIT * slope or (1 - value > _FIT * slope and low <= k <= high):
             return False
+        if k == left:
+            first_away = (1 - value) / slope
+        last_away = (1 - value) / slope
         if k > left:
             step = np.arctan2(before_u * w - before_w * u, before_u * u + before_w * w)
             mid_u, mid_w = (before_u + u) / 2, (before_w + w) / 2
@@ -371,7 +386,14 @@ def _passes(p: F64, left: int, right: int, low: int, high: int, shape: F64) -> b
             if step * sweep < 0 or step == 0 or abs(step) > 2 or bulge > BULGE:
                 return False
             sweep += step
+            if k == low + 1:
+                first_bulge = bulge
+            if k == high:
+                last_bulge = bulge
         before_u, before_w = u, w
+    # A free end may lie within, where a chord like its neighbour runs.
+    if first_away > 1.5 * first_bulge + _FIT or last_away > 1.5 * last_bulge + _FIT:
+        return False
     shape[6] = sweep
     return abs(sweep) < 2 * np.pi + 1e-6
 

@@ -17,7 +17,8 @@ from ..drawing import Arc, Cubics, Lines, Path, Piece, Point
 
 CORNER = math.cos(math.radians(20.0))
 """Cosine of the least turn that makes a corner."""
-_STEPS = 64  # steps in which a curve is measured; of an arc of 100 degrees its length is then right to 0.003 %
+_POINT = 1e-9  # mm: a shorter part has no direction
+_STEPS = 64  # steps in which a cubic or a quarter of an ellipse is measured: right to 0.003 %
 
 
 @dataclass(frozen=True, slots=True)
@@ -111,9 +112,9 @@ class Track:
 
 def track_of(path: Path) -> Track:
     """Measure a path. Cost: linear in its pieces."""
-    parts = [part for part in _parts(path) if not (isinstance(part, _Segment) and part.start == part.end)]
-    tables = [_table(part) for part in parts]
-    sizes = [_size(part, table) for part, table in zip(parts, tables, strict=True)]
+    measured = [(part, table, _size(part, table)) for part in _parts(path) for table in (_table(part),)]
+    long = [row for row in measured if row[2] > _POINT]
+    parts, tables, sizes = [row[0] for row in long], [row[1] for row in long], [row[2] for row in long]
     begins = [0.0]
     for size in sizes:
         begins.append(begins[-1] + size)
@@ -133,7 +134,8 @@ def _parts(path: Path) -> list[_Part]:
                     parts.append(_Segment(here, (x, y)))
                     here = (x, y)
             case Arc():
-                parts.append(_sweep(here, piece))
+                if piece.end != here:  # such an arc is left out (SVG 1.1, F.6.2)
+                    parts.append(_sweep(here, piece))
                 here = piece.end
             case Cubics(points):
                 for rows in points.reshape(-1, 3, 2):
@@ -199,9 +201,22 @@ def _table(part: _Part) -> F64 | None:
     """Length up to equal steps of the parameter, None where the two go together."""
     if isinstance(part, _Segment) or (isinstance(part, _Sweep) and part.half_axes[0] == part.half_axes[1]):
         return None
-    points = np.array([part.at(k / _STEPS) for k in range(_STEPS + 1)])
+    points = _sampled(part)
     step = np.diff(points, axis=0)
     return np.concatenate([[0.0], np.cumsum(np.sqrt(step[:, 0] ** 2 + step[:, 1] ** 2))])
+
+
+def _sampled(part: _Sweep | _Bezier) -> F64:
+    """Points of a curve at equal steps of its parameter; of an arc in its own axes."""
+    if isinstance(part, _Sweep):
+        quarters = max(1, math.ceil(abs(part.sweep) / (math.pi / 2)))
+        angle = part.begin + part.sweep * np.linspace(0.0, 1.0, quarters * _STEPS + 1)
+        return np.column_stack([part.half_axes[0] * np.cos(angle), part.half_axes[1] * np.sin(angle)])
+    t = np.linspace(0.0, 1.0, _STEPS + 1)[:, None]
+    s = 1 - t
+    a, b, c, d = part.points
+    points: F64 = s * s * s * a + 3 * s * s * t * b + 3 * s * t * t * c + t * t * t * d
+    return points
 
 
 def _size(part: _Part, table: F64 | None) -> float:
