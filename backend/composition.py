@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from .contract import F64, U8, Emphasis, Job, LineClass, Panel, Style
+from .contract import F64, U8, Emphasis, Job, LineClass, Panel
 from .drawing import BLACK, Colour, Drawing, Group, Image, Lines, Mark, Words
 from .lettering.type import Lettering
 
@@ -21,9 +21,6 @@ if TYPE_CHECKING:
     from .lines.hatching import Hatch
     from .lines.joining import Chain
     from .lines.panel import Seen
-
-LINE_STYLES = ("lines", "tints", "lines and tone", "stipple")
-"""Manners of drawing that are made of lines."""
 
 MUTED: Colour = (150, 150, 150)
 """Lines of parts that are held back: as dark as a line of 0.18 mm must be to survive a copier (common practice)."""
@@ -48,18 +45,13 @@ class Composed:
     panels: tuple[PanelLines, ...]
 
 
-def is_lines(style: Style) -> bool:
-    """Whether a style is made of lines."""
-    return style.drawn_as in LINE_STYLES
-
-
 def compose(job: Job, tone: U8 | None, lettering: Lettering, threads: int | None = None) -> Composed:
     """Compose a job's sheet. `tone` is the picture of all that lies under lines, (rows, columns, 3) of the whole page.
 
     The result does not depend on `threads`. Cost: that of `lines.panel.see` for each panel drawn in lines.
     """
     sheet = job.sheet
-    found = {row: _lines_of(job, row, threads) for row, panel in enumerate(sheet.panels) if is_lines(panel.style)}
+    found = {row: _lines_of(job, row, threads) for row, panel in enumerate(sheet.panels) if panel.style.is_of_lines}
     hatches = _hatches(job, found)
     groups: list[Group] = []
     if tone is not None:

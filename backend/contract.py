@@ -301,6 +301,11 @@ class Style:
     shade_lines: bool = False
 
     @property
+    def is_of_lines(self) -> bool:
+        """Whether lines are drawn at all."""
+        return self.drawn_as in ("lines", "tints", "lines and tone", "stipple")
+
+    @property
     def narrow(self) -> float:
         """Width in mm of the narrow line."""
         return NARROW.get(self.wide, self.wide / 2)

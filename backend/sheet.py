@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from .composition import compose, is_lines
+from .composition import compose
 from .contract import U8, ContractError, Job, Measure, Panel, verify
 from .drawing import Drawing, Group, Image
 from .lettering.type import Lettering
@@ -57,7 +57,7 @@ def draw(job: Job, kinds: tuple[str, ...], threads: int | None = None, progress:
     """
     verify(job)
     sheet = job.sheet
-    of_lines = any(is_lines(panel.style) for panel in sheet.panels)
+    of_lines = any(panel.style.is_of_lines for panel in sheet.panels)
     pictures, vectors = (any(kind in kinds for kind in known) for known in (PICTURES, VECTORS))
     image = _tone(job, sheet.page.resolution, threads, progress) if pictures else None
     drawing, bits = None, None

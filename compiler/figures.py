@@ -129,11 +129,13 @@ class _Planner:
         return frame
 
     def _overhang(self, shot: _Shot, projection: contract.Projection, frame: Frame) -> Around:
-        if shot.view.window is not None:
-            return NONE
-        vertices = self._vertices(shot)
         style = style_of(self.spec.manner, frame.width, is_pictorial(shot.view.viewpoint))
-        found = past_centre_lines(self._shape(shot).geometry, vertices, projection, style)
+        # Half of an outline lies outside what it is the outline of.
+        ink = style.wide / 2 if style.is_of_lines else 0.0
+        if shot.view.window is not None:
+            return (ink, ink, ink, ink)
+        vertices = self._vertices(shot)
+        found = larger((ink, ink, ink, ink), past_centre_lines(self._shape(shot).geometry, vertices, projection, style))
         if not shot.view.is_main:
             return found
         arrows = self._arrows(shot, projection, frame)
@@ -168,7 +170,7 @@ class _Planner:
         """What a view shows, as triangles. Raises Mistake, without a problem of its own, where a part has none."""
         key = (shot.rung, shot.view.cuts, shot.unit.sight if self.spec.interruptions or shot.view.cuts else None)
         if key not in self.shapes:
-            spec, opening = self.spec, self._opening(shot)
+            spec, opening = self.spec, self._opening(shot.view, shot.unit.sight)
             interrupting = Interrupting(spec.interruptions, shot.unit.sight, self.corners)
 
             def alter(entry: Entry, placement: F64, mesh: contract.Mesh) -> contract.Mesh | None:
@@ -194,10 +196,15 @@ class _Planner:
             self.shapes[key] = flattened
         return self.shapes[key]
 
-    def _opening(self, shot: _Shot) -> Opening:
-        cuts, sight = cuts_of(shot.view, self.spec), shot.unit.sight
-        cutters = tuple(cutter_of(cut, away_of(cut, sight), self.corners) for cut in cuts)
-        return Opening(cutters, frozenset(self.spec.uncut))
+    def _opening(self, view: View, sight: Point) -> Opening:
+        cuts = cuts_of(view, self.spec)
+        aways = tuple(away_of(cut, sight) for cut in cuts)
+        cutters = tuple(cutter_of(cut, away, self.corners) for cut, away in zip(cuts, aways, strict=True))
+        return Opening(cutters, aways, frozenset(self.spec.uncut))
+
+    def _uncut(self, view: View, sight: Point) -> tuple[int, ...]:
+        """Rows of what the sections of a view leave whole."""
+        return self._opening(view, sight).rows_whole(*walked(self.spec.subject, self.spec.path)) if view.cuts else ()
 
     def _finer(self, shots: Sequence[_Shot], frame: Frame, points: Callable[[_Shot], F64]) -> list[_Shot]:
         return [_Shot(each.view, each.unit, min(each.rung, self._rung(each, frame, points(each)))) for each in shots]
@@ -205,6 +212,11 @@ class _Planner:
     def _frame(self, shots: Sequence[_Shot], points: Callable[[_Shot], F64]) -> Frame:
         boxes = self._boxes(shots, points)
         main = shots[0].view.viewpoint
+        if isinstance(main, Central) and main.is_held and len(shots) > 1:
+            sentence = (
+                "the viewpoint's field of view says what the page takes in, which leaves no room for further views"
+            )
+            raise mistake("does-not-fit", self.spec.span, sentence, "leave out the `lens` or `angle of view`")
         if isinstance(main, Central) and len(shots) == 1:
             held = held_frame(self.spec, main, boxes[0])
             if held is not None:
@@ -344,7 +356,7 @@ class _Planner:
             displacement=self.explosion.shifts if self.explosion is not None else None,
             emphasis=emphasis,
             curves=curves,
-            section=section_of(spec, view, projection, geometry),
+            section=section_of(spec, view, projection, self._uncut(view, projection.sight)),
             clip=clip_of(view, projection),
             detail_frames=frame_round(view, projection),
             cutting_planes=traces_of(spec, view, projection, geometry.vertices, self.sights),

@@ -16,7 +16,7 @@ from .mistakes import Problems, mistake
 from .readings import expression, optional, word
 from .scope import Scope
 
-DEFAULT_STYLE: DrawnAs = "tone"
+DEFAULT_STYLE: DrawnAs = "lines"
 """The manner of drawing of a figure that names none."""
 
 GAP_MM = 0.7

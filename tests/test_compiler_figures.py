@@ -30,9 +30,11 @@ def content(job: contract.Job) -> tuple[float, float, float, float]:
 
 
 def margins(job: contract.Job) -> tuple[float, float, float, float]:
+    """Paper free on the left, above, on the right and below, round the ink: half of an outline lies outside."""
     left, top, right, bottom = content(job)
-    page = job.sheet.page
-    return left, top, page.width - right, page.height - bottom
+    page, style = job.sheet.page, job.sheet.panels[0].style
+    ink = style.wide / 2 if style.is_of_lines else 0.0
+    return left - ink, top - ink, page.width - right - ink, page.height - bottom - ink
 
 
 def on_page(job: contract.Job, *points: tuple[float, float, float]) -> np.ndarray:
@@ -55,7 +57,7 @@ def test_a_figure_that_says_nothing_is_fitted_to_84_mm_with_2_mm_round_it() -> N
     job = figure(show="")
     assert job.sheet.page.width == 84.0
     assert margins(job) == pytest.approx((2, 2, 2, 2), abs=0.1)
-    assert job.sheet.panels[0].style.drawn_as == "tone"
+    assert job.sheet.panels[0].style.drawn_as == "lines"
     assert job.sheet.files == ("png",)
 
 
@@ -75,7 +77,7 @@ def test_a_figure_that_says_nothing_is_fitted_to_84_mm_with_2_mm_round_it() -> N
 def test_the_content_fills_the_limiting_side_and_stands_in_the_middle(
     lines: tuple[str, ...], page: tuple[float, float | None], limiting: str, view: str
 ) -> None:
-    job = figure(*lines, show=f"show box from {view}")
+    job = figure(*lines, "drawn as tone", show=f"show box from {view}")
     margin = {"margin 0 mm": 0.0, "margin 7.5 mm": 7.5}.get(lines[-1], 2.0)
     assert job.sheet.page.width == page[0]
     if page[1] is not None:
@@ -127,16 +129,16 @@ def test_isometric_views_from_all_eight_corners_show_the_side_they_name() -> Non
 
 
 def test_a_scale_makes_the_page_unless_the_page_is_stated() -> None:
-    job = figure("scale 1:4", "margin 3 mm", show="show box from front")
+    job = figure("scale 1:4", "margin 3 mm", "drawn as tone", show="show box from front")
     assert (job.sheet.page.width, job.sheet.page.height) == pytest.approx((31, 16))
-    job = figure("scale 1:4", "size 80 mm by 50 mm", show="show box from front")
+    job = figure("scale 1:4", "size 80 mm by 50 mm", "drawn as tone", show="show box from front")
     assert (job.sheet.page.width, job.sheet.page.height) == pytest.approx((80, 50))
     assert margins(job) == pytest.approx((27.5, 20, 27.5, 20))
 
 
 @pytest.mark.parametrize(("width", "scale"), [(84, 1 / 2), (104, 1), (103, 1 / 2), (53, 1 / 5), (204, 2), (24, 1 / 5)])
 def test_a_standard_scale_is_the_largest_of_the_series_that_fits(width: int, scale: float) -> None:
-    job = figure("scale standard", f"width {width} mm", show="show box from front")
+    job = figure("scale standard", f"width {width} mm", "drawn as tone", show="show box from front")
     assert job.sheet.panels[0].projection.scale == pytest.approx(scale)
 
 
@@ -211,6 +213,7 @@ def test_a_figure_shows_what_is_placed_in_an_assembly_in_its_own_frame() -> None
 def test_a_figure_shows_a_thing_with_values_of_its_own() -> None:
     text = "part rod(d)\n    add cylinder diameter d length 2 * d\n    cut sphere diameter d / 2\n"
     text += "figure f\n    show rod(d = 30 mm) from front\n    scale 1:1\n    margin 0 mm\n"
+    text += "    drawn as tone\n"
     job = planned(text, "f")
     assert (job.sheet.page.width, job.sheet.page.height) == pytest.approx((30, 60))
     sources = {job.geometries[0].sources[row].line for row in np.unique(job.geometries[0].face_source)}
