@@ -204,7 +204,7 @@ def test_a_parallel_view_along_any_direction() -> None:
 def test_a_figure_shows_what_is_placed_in_an_assembly_in_its_own_frame() -> None:
     text = BOX + "part lid\n    add block (50 mm, 20 mm, 4 mm)\nassembly a\n    place box\n"
     text += "    place lid at (0, 0, 40 mm) turn 90 deg ring 1\nfigure f\n    show a.lid[1] from top\n"
-    text += "    scale 1:1\n    margin 0 mm\n"
+    text += "    scale 1:1\n    margin 0 mm\n    drawn as tone\n"
     job = planned(text, "f")
     assert (job.sheet.page.width, job.sheet.page.height) == pytest.approx((50, 20))
     assert [node.path for node in job.geometries[0].nodes] == ["a.lid[1]"]
