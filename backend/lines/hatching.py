@@ -131,11 +131,11 @@ def hatch_lines(rings: Sequence[F64], hatch: Hatch, clear_of: Sequence[F64] = ()
 
 
 def pitch_of(area: float, perimeter: float) -> float:
-    """Pitch in mm for a cut face: 0.5 + sqrt(area) / 25, from 0.7 to 4, in tenths.
+    """Pitch in mm for a cut face: 0.7 + sqrt(area) / 25, at most 4, in tenths.
 
     In a strip it is no more than the strip's width, 2 area / perimeter, so that several lines cross it.
     """
-    wanted = min(0.5 + math.sqrt(area) / 25.0, max(2.0 * area / perimeter, LEAST_PITCH_MM))
+    wanted = min(LEAST_PITCH_MM + math.sqrt(area) / 25.0, max(2.0 * area / perimeter, LEAST_PITCH_MM))
     return round(min(max(wanted, LEAST_PITCH_MM), MOST_PITCH_MM), 1)
 
 
@@ -189,7 +189,7 @@ def _neighbours(requests: Sequence[HatchRequest]) -> dict[str, set[str]]:
     pairs: dict[str, set[str]] = {}
     for request in requests:
         caps = [region for region in request.regions if region.is_cap]
-        shapes = [polygon_of(region) for region in caps]
+        shapes = np.array([polygon_of(region) for region in caps], object)
         paths = [request.nodes[region.node].path for region in caps]
         for one, other in shapely.STRtree(shapes).query(shapes, predicate="dwithin", distance=NEAR_MM).T.tolist():
             if paths[one] != paths[other]:
@@ -243,7 +243,7 @@ def _solid(thin: Sequence[Region], clear_of: Sequence[F64]) -> tuple[tuple[Fill,
     """Thin sections in black, and the white between those of different parts."""
     import shapely
 
-    shapes = [polygon_of(region) for region in thin]
+    shapes = np.array([polygon_of(region) for region in thin], object)
     words = shapely.union_all([shapely.Polygon(ring) for ring in clear_of])
     tree = shapely.STRtree(shapes)
     solids, gaps = [], []
