@@ -14,7 +14,7 @@ from platewright.backend.lines.joining import PRECEDENCE, Chain, chains_of
 from platewright.backend.lines.model import number_of
 from platewright.backend.lines.noding import near, snapped, sorted_rows, split
 from support.flattened import farthest, flattened, length
-from support.line_pieces import TOLERANCE, Sheet
+from support.line_pieces import TOLERANCE, Sheet, hidden_after
 
 C = LineClass
 STYLE = Style()
@@ -150,17 +150,36 @@ def test_a_line_is_one_path_through_points_where_others_end() -> None:
 
 
 def test_a_cut_end_behind_a_nearer_line_is_told() -> None:
-    """The first line dives under the upright one; the second ends on it at its own depth; the third ends free."""
+    """By height: behind; at the depth of the line it ends on; ends there; ends free; hidden only for a hair."""
+    sheet = Sheet()
+    sheet.line([(5, -9, 0), (5, 11, 0)], C.VISIBLE_OUTLINE, 1)
+    for y, x, depth in ((0, 5, 3), (2, 5, 0), (4, 5, 3), (6, 4, 3), (8, 5, 3)):
+        sheet.line([(0, y, depth), (x, y, depth)])
+    pieces, candidates = sheet.pieces()
+    for row, end in ((5, (5.1, 8, 3)), (4, (9, 6, 3)), (2, (9, 2, 0)), (1, (9, 0, 3))):
+        pieces = hidden_after(pieces, row, end)
+    chains = chains_of(pieces, candidates, TOLERANCE, Style(gap=0.7))
+    behind = {round(chain.path.start[1]): chain.is_behind for chain in chains if chain.node == 0}
+    never = (False, False)
+    assert behind == {0: (False, True), 2: never, 4: never, 6: never, 8: never}
+    assert not any(any(chain.is_behind) for chain in chains_of(pieces, candidates, TOLERANCE, STYLE))
+
+
+def test_a_curve_in_short_pieces_passes_behind_too() -> None:
     sheet = Sheet()
     sheet.line([(5, -9, 0), (5, 9, 0)], C.VISIBLE_OUTLINE, 1)
-    sheet.line([(0, 0, 3), (5, 0, 3)], span=(0.0, 0.5))
-    sheet.line([(0, 2, 0), (5, 2, 0)], span=(0.0, 0.5))
-    sheet.line([(0, 4, 3), (5, 4, 3)], span=(0.0, 1.0))
-    sheet.line([(0, 6, 3), (4, 6, 3)], span=(0.0, 0.5))
-    chains = joined(sheet, Style(gap=0.7))
-    behind = {round(chain.path.start[1]): chain.is_behind for chain in chains if chain.node == 0}
-    assert behind == {0: (False, True), 2: (False, False), 4: (False, False), 6: (False, False)}
-    assert not any(any(chain.is_behind) for chain in joined(sheet))
+    x = np.arange(0, 5.01, 0.25)
+    sheet.line(np.column_stack([x, 0.02 * x**2, 3 + 0 * x]), is_curve=True)
+    sheet.line(np.column_stack([x + 5.1, 0.02 * (x + 5.1) ** 2, 3 + 0 * x]), is_curve=True, is_visible=False)
+    pieces, candidates = sheet.pieces()
+    last = len(x) - 1
+    chain = candidates.chain.copy()
+    chain[last + 1 :] = chain[last]
+    pieces = hidden_after(pieces, last, tuple(candidates.start[last + 1]))
+    (curve,) = (
+        c for c in chains_of(pieces, replace(candidates, chain=chain), TOLERANCE, Style(gap=0.7)) if c.node == 0
+    )
+    assert curve.is_behind == (False, True)
 
 
 def test_imaginary_lines_keep_clear() -> None:

@@ -17,7 +17,7 @@ from platewright.backend.lines.pen import groups_of, strokes_of
 from platewright.backend.lines.tracks import track_of
 from platewright.backend.lines.weights import DASHED, LONG_DASHED_DOTTED, LONG_DASHED_DOUBLE_DOTTED, Pattern, weight_of
 from support.flattened import farthest, flattened, length
-from support.line_pieces import TOLERANCE, Sheet
+from support.line_pieces import TOLERANCE, Sheet, hidden_after
 
 C = LineClass
 STYLE = Style(hidden=True)
@@ -183,11 +183,12 @@ def test_parts_have_their_colours() -> None:
 def test_a_gap_stays_white_where_a_line_passes_behind() -> None:
     sheet = Sheet()
     sheet.line([(20, -9, 0), (20, 9, 0)], C.VISIBLE_OUTLINE, 1)
-    sheet.line([(0, 0, 3), (20, 0, 3)], span=(0.0, 0.5))
-    sheet.line([(20, 0, 3), (40, 0, 3)], span=(0.5, 1.0), is_visible=False)
+    sheet.line([(0, 0, 3), (20, 0, 3)])
+    pieces, candidates = sheet.pieces()
+    pieces = hidden_after(pieces, 1, (40, 0, 3))
     for gap in (0.0, 0.5, 1.0):
         style = Style(gap=gap)
-        strokes = strokes_of(chains_of(*sheet.pieces(), TOLERANCE, style), style)
+        strokes = strokes_of(chains_of(pieces, candidates, TOLERANCE, style), style)
         behind = next(stroke for stroke in strokes if stroke.line_class is C.VISIBLE_EDGE)
         end = max(flattened(behind.path)[:, 0])
         white = 20 - style.wide / 2 - (end + behind.width / 2)

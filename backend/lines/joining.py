@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from ..contract import F64, LineClass, PatchKind, Style
 from ..drawing import Path
 from .compiled import kernel
+from .crossings import goes_on
 from .fitting import paths_of
 from .imaginary import spaced
 from .model import CLASSES, Candidates, Pieces, Tolerance, View, number_of
@@ -137,7 +138,8 @@ def chains_of(
     walks = _taken(walks, ~(is_free & (length < tolerance.shortest_mm)))
     behind = np.zeros((len(walks.segment), 2), bool)
     if style.gap > 0:
-        behind = _behind(lines, walks, pieces, tolerance, style, view)
+        is_cut = goes_on(pieces, candidates, _curves(candidates, view))
+        behind = _behind(lines, walks, pieces, is_cut, tolerance, style, view)
     points, first, curve, closed, source = _with_imaginary_spaced(lines, walks)
     paths, lengths = paths_of(points, first, closed, curve)
     segment = walks.segment[source]
@@ -296,9 +298,9 @@ def _with_imaginary_spaced(lines: _Lines, walks: _Walks) -> tuple[F64, I64, I64,
 
 
 def _behind(
-    lines: _Lines, walks: _Walks, pieces: Pieces, tolerance: Tolerance, style: Style, view: View | None
+    lines: _Lines, walks: _Walks, pieces: Pieces, is_cut: Bools, tolerance: Tolerance, style: Style, view: View | None
 ) -> Bools:
-    """Of both ends of each chain: whether visibility ended it there at a visible line that is nearer.
+    """Of both ends of each chain: whether it goes on hidden there behind a visible line that is nearer.
 
     Depth of central projection is -1/distance, so a difference of distance there is one of depth over depth squared.
     """
@@ -309,7 +311,7 @@ def _behind(
     start, end = lines.points[lines.ends[is_seen, 0]], lines.points[lines.ends[is_seen, 1]]
     line, here = near(xy, start, end, style.narrow / 2)
     own = np.concatenate([walks.segment, walks.segment]).take(here)
-    depth = _end_depth(lines, pieces, ends, walks)
+    depth = _end_depth(lines, pieces, is_cut, ends, walks)
     other = _depth_at(pieces, lines.row.take(is_seen.take(line)), xy.take(here, 0))
     allowed = np.full(len(here), _BEHIND * tolerance.depth_mm)
     if view is not None and view.projection.kind == "central":
@@ -321,9 +323,8 @@ def _behind(
     return result.reshape(2, -1).T & ~walks.is_closed[:, None]
 
 
-def _end_depth(lines: _Lines, pieces: Pieces, ends: I64, walks: _Walks) -> F64:
-    """Depth of the lines at the ends of chains that visibility cut off, NaN for other ends."""
-    is_cut = np.column_stack([pieces.span[:, 0] > 0, pieces.span[:, 1] < 1])
+def _end_depth(lines: _Lines, pieces: Pieces, is_cut: Bools, ends: I64, walks: _Walks) -> F64:
+    """Depth of the lines at the ends of chains that go on hidden, NaN for other ends."""
     segment = _end_segments(lines, walks)
     row = lines.row.take(segment)
     xy = lines.points.take(ends, 0)

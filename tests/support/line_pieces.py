@@ -15,12 +15,11 @@ TOLERANCE = Tolerance(depth_mm=1e-4, sideways_mm=1e-5)
 
 @dataclass
 class Sheet:
-    """Lines put down one after another: visible or hidden stretches of polylines."""
+    """Lines put down one after another: visible or hidden polylines, each segment a candidate of one piece."""
 
     start: list[F64] = field(default_factory=list)
     end: list[F64] = field(default_factory=list)
     rows: list[tuple[int, int, int, bool, bool]] = field(default_factory=list)
-    spans: list[tuple[float, float]] = field(default_factory=list)
     n_curves: int = 0
 
     def line(
@@ -32,9 +31,8 @@ class Sheet:
         is_curve: bool = False,
         is_visible: bool = True,
         is_drawn: bool = True,
-        span: tuple[float, float] = (0.0, 1.0),
     ) -> None:
-        """A polyline of points (k,2) or (k,3), a segment a piece; `span` is that of each in its candidate."""
+        """A polyline of points (k,2) or (k,3)."""
         xyz = np.array(points, dtype=np.float64)
         if xyz.shape[1] == 2:
             xyz = np.column_stack([xyz, np.zeros(len(xyz))])
@@ -44,7 +42,6 @@ class Sheet:
             self.start.append(a)
             self.end.append(b)
             self.rows.append((number_of(line_class), node, curve, is_visible, is_drawn))
-            self.spans.append(span)
 
     def pieces(self, order: Sequence[int] | None = None) -> tuple[Pieces, Candidates]:
         """What was put down, in the order asked for."""
@@ -66,5 +63,22 @@ class Sheet:
             is_drawn=rows[:, 4].astype(bool),
             is_plain=np.zeros(n, dtype=bool),
         )
-        spans = np.array(self.spans, dtype=np.float64).reshape(n, 2)[order]
+        spans = np.tile([0.0, 1.0], (n, 1))
         return Pieces(np.arange(n, dtype=np.int32), spans, rows[:, 3].astype(bool), start, end), candidates
+
+
+def hidden_after(pieces: Pieces, row: int, end: Sequence[float]) -> Pieces:
+    """Let the candidate of one piece go on hidden to a point (3,); the piece is then the first part of it."""
+    end_xyz = np.array(end, dtype=np.float64)
+    size = np.linalg.norm(pieces.end[row] - pieces.start[row])
+    share = float(size / np.linalg.norm(end_xyz - pieces.start[row]))
+    span = pieces.span.copy()
+    span[row, 1] = share
+    at = row + 1
+    return Pieces(
+        np.insert(pieces.segment, at, pieces.segment[row]),
+        np.insert(span, at, [share, 1.0], axis=0),
+        np.insert(pieces.is_visible, at, False),
+        np.insert(pieces.start, at, pieces.end[row], axis=0),
+        np.insert(pieces.end, at, end_xyz, axis=0),
+    )
