@@ -24,7 +24,6 @@ _NO = 1.0, 0.0
 _SPECK = (
     1e-4  # mm on paper: hidden stretches shorter than this, and gaps between them shorter than twice this, are none
 )
-_ROUNDING = 1e-9  # of a segment's length
 
 
 @kernel
@@ -189,7 +188,7 @@ def cut_segments(
             if k < n_hidden:
                 if high - low < 0.5 * gap:
                     continue
-                low, high = (0.0 if low < _ROUNDING else low), (1.0 if high > 1.0 - _ROUNDING else high)
+                low, high = (0.0 if low < gap else low), (1.0 if high > 1.0 - gap else high)
             if low > at:
                 label[n, 0], label[n, 1], span[n, 0], span[n, 1] = s, 1, at, low
                 n += 1

@@ -43,12 +43,14 @@ def edges_of(view: View, style: Style, threads: int | None = None) -> Candidates
 def _judged(view: View, style: Style, threads: int | None) -> tuple[I32, U8]:
     origin = view.geometry.face_origin[view.face_row]
     is_open = np.array([not node.closed for node in view.geometry.nodes], np.bool_)
+    is_level = np.ones(len(view.geometry.patches.kind), np.bool_)
+    is_level[view.face_patch[view.facing != 0]] = False
     cosine = np.float32(math.cos(math.radians(style.sharp_angle)))
 
     def judge(begin: int, end: int) -> tuple[I32, U8]:
         found: tuple[I32, U8] = judge_sides(
             view.points, view.world, view.faces, view.neighbour, view.facing, view.edge_kind, view.corner_normals,
-            view.face_patch, view.face_node, origin, is_open, cosine, style.tangent, style.hidden, begin, end,
+            view.face_patch, view.face_node, origin, is_open, is_level, cosine, style.tangent, style.hidden, begin, end,
         )  # fmt: skip
         return found
 

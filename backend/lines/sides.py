@@ -28,12 +28,14 @@ _MOST_AT_A_POINT = 64  # more ends than this at a vertex are not strung together
 @kernel
 def judge_sides(
     points: Any, world: Any, faces: Any, neighbour: Any, facing: Any, edge_kind: Any, normals: Any, face_patch: Any,
-    face_node: Any, origin: Any, is_open: Any, cosine: Any, with_tangent: bool, with_hidden: bool, begin: int, end: int,
+    face_node: Any, origin: Any, is_open: Any, is_level: Any, cosine: Any, with_tangent: bool, with_hidden: bool,
+    begin: int, end: int,
 ) -> Any:  # fmt: skip
     """Sides of the triangles begin .. end that may be lines: side 3 face + corner (k,) int32 and class (k,) uint8.
 
-    origin (m,) uint8 `FaceOrigin` of the view's faces; cosine: of the least angle between the normals at an edge. Every
-    side is judged once, at its first triangle. `_CLOSING` is added to the class of a side that only closes regions.
+    origin (m,) uint8 `FaceOrigin` of the view's faces; is_level (p,) bool: patches seen edge-on throughout; cosine: of
+    the least angle between the normals at an edge. Every side is judged once, at its first triangle. `_CLOSING` is
+    added to the class of a side that only closes regions.
     """
     side = np.empty(3 * (end - begin), np.int32)
     line_class = np.empty(3 * (end - begin), np.uint8)
@@ -59,7 +61,7 @@ def judge_sides(
                 if faces[g, (i + 1) % 3] != a:
                     continue
                 found = _judged(
-                    world, faces, facing, normals, face_patch, origin, is_open[face_node[f]], kind, cosine,
+                    world, faces, facing, normals, face_patch, origin, is_open[face_node[f]], is_level, kind, cosine,
                     with_tangent, with_hidden, f, k, j, g, i, a, b,
                 )  # fmt: skip
             if found >= 0:
@@ -71,8 +73,9 @@ def judge_sides(
 
 @kernel
 def _judged(
-    world: Any, faces: Any, facing: Any, normals: Any, face_patch: Any, origin: Any, is_open: Any, kind: Any,
-    cosine: Any, with_tangent: bool, with_hidden: bool, f: Any, k: Any, j: Any, g: Any, i: Any, a: Any, b: Any,
+    world: Any, faces: Any, facing: Any, normals: Any, face_patch: Any, origin: Any, is_open: Any, is_level: Any,
+    kind: Any, cosine: Any, with_tangent: bool, with_hidden: bool, f: Any, k: Any, j: Any, g: Any, i: Any, a: Any,
+    b: Any,
 ) -> int:  # fmt: skip
     """Class of the side from a (corner k of f, i + 1 of g) to b (corner j of f, i of g), or `_NONE`."""
     sees_f = facing[f] > 0 or (is_open and facing[f] != 0)
@@ -109,7 +112,7 @@ def _judged(
         if (origin[f] == _CAP and sees_f) or (origin[g] == _CAP and sees_g):
             return _SECTION
     if is_contour:
-        is_flat_on = kind == _TANGENT and (facing[f] == 0 or facing[g] == 0)
+        is_flat_on = kind == _TANGENT and (is_level[face_patch[f]] or is_level[face_patch[g]])
         return _OUTLINE if kind == _SHARP or is_flat_on else _OUTLINE + _CLOSING
     if is_one_sharp:
         return _EDGE

@@ -20,9 +20,7 @@ from .topology import Topology, neighbours, topology_of
 _T = TypeVar("_T")
 _BLOCK = 1 << 15
 
-PAPER_DEPTH = (
-    2e-4  # mm on paper: nothing that stands out by less can be told from the paper's grain at any width of line
-)
+PAPER_DEPTH = 1e-4  # mm on paper: no eye and no printer tells apart what stands out by less
 PART_DEPTH = 1e-6  # of the diagonal of what is shown: what float32 data round away
 SIDEWAYS = 1e-5  # mm on paper: flush parts of data rounded to float32 gape by no more at 100 mm print size
 ROUNDING = 2.0**-46  # of the largest coordinate: 64 units in the last place of a float64

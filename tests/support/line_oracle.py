@@ -1,7 +1,8 @@
-"""An oracle of visibility that shares nothing with the engine: rays in world space against every triangle, both sides.
+"""An oracle of visibility that shares nothing with the engine: rays in world space against all triangles, both sides.
 
-Moeller and Trumbore 1997, float64, no tree, no projection, no topology. Four rays a sample, turned by 3e-6 rad about the
-sight; where they disagree the line grazes something exactly, and the sample is set apart as ambiguous.
+Moeller and Trumbore 1997, float64, no tree, no projection, no topology. Four rays a sample, turned by 3e-6 rad off the
+sight and moved sideways by the stated tolerance of the view; where they disagree the line grazes something, and it
+is set apart as ambiguous.
 """
 
 from __future__ import annotations
@@ -84,8 +85,10 @@ def world_points(projection: Projection, page: F64) -> F64:
     return np.asarray(homogeneous[:, :3] / homogeneous[:, 3:])
 
 
-def verdicts(triangles: Triangles, projection: Projection, world: F64, offset: float) -> np.ndarray:
-    """1 where a point is seen, 0 where it is hidden, -1 where its rays disagree."""
+def verdicts(
+    triangles: Triangles, projection: Projection, world: F64, offset: float, sideways: float = 0.0
+) -> np.ndarray:
+    """1 where a point is seen, 0 where it is hidden, -1 where its rays disagree. `sideways` is in mm on paper."""
     n = len(world)
     if projection.eye is None:
         sight = np.linalg.inv(projection.world_to_page)[:3, 2]  # the world direction of growing depth at one page point
@@ -98,9 +101,10 @@ def verdicts(triangles: Triangles, projection: Projection, world: F64, offset: f
     right, up = np.asarray(projection.right), np.asarray(projection.up)
     votes = np.zeros(n, np.int64)
     for i, j in ((1.0, 0.31), (-0.31, 1.0), (-1.0, -0.31), (0.31, -1.0)):
-        ray = toward + TURN * (i * right + j * up)
+        aside = i * right + j * up
+        ray = toward + TURN * aside
         ray /= np.linalg.norm(ray, axis=1, keepdims=True)
-        votes += hits(triangles, world, ray, reach, offset)
+        votes += hits(triangles, world + (sideways / projection.scale) * aside, ray, reach, offset)
     return np.where(votes == 0, 1, np.where(votes == 4, 0, -1))
 
 
@@ -171,7 +175,7 @@ def status(candidates: Candidates, pieces: Pieces, segment: np.ndarray, share: F
 def _judged(view: View, candidates: Candidates, triangles: Triangles, segment: np.ndarray, share: F64) -> np.ndarray:
     start, end = candidates.start[segment], candidates.end[segment]
     world = world_points(view.projection, start + (end - start) * share[:, None])
-    return verdicts(triangles, view.projection, world, view.tolerance.depth_mm)
+    return verdicts(triangles, view.projection, world, view.tolerance.depth_mm, view.tolerance.sideways_mm)
 
 
 def _longest_run(
