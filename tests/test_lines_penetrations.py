@@ -157,5 +157,31 @@ def test_in_a_scene_of_many_flush_parts_only_the_sunk_ball_has_a_line():
     assert kinds == [{PatchKind.PLANE, PatchKind.CYLINDER}, {PatchKind.SPHERE}]
 
 
+SOLIDS = (BALL, SLAB, PIN, DRILLED, made(add(Torus(40.0, 12.0))), made(add(Prism(6, 30.0, 40.0))))
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_lines_of_closed_parts_are_closed_and_lie_on_both(seed):
+    random = np.random.default_rng(seed)
+    nodes = []
+    for k in range(5):
+        turn = np.linalg.qr(random.normal(size=(3, 3)))[0]
+        turn *= np.sign(np.linalg.det(turn))
+        nodes.append(
+            leaf(f"part_{k}", -1, int(random.integers(len(SOLIDS))), 0, shifted(*random.uniform(-20, 20, 3), turn))
+        )
+    geometry = flattened(nodes, SOLIDS)
+    found = penetrations_of(view_of(geometry, PROJECTION))
+    assert len(found) > 50
+    assert all(np.array_equal(run[0], run[-1]) for run in runs_of(found))
+    inverse = np.linalg.inv(PROJECTION.world_to_page)
+    middle = (np.column_stack((0.5 * (found.start + found.end), np.ones(len(found)))) @ inverse.T)[:, :3]
+    for side in range(2):
+        corners = geometry.vertices[geometry.faces[found.faces[:, side]]]
+        normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
+        normal /= np.linalg.norm(normal, axis=1)[:, None]
+        assert np.abs(((middle - corners[:, 0]) * normal).sum(axis=1)).max() < 1e-6
+
+
 def test_nothing_and_one_part_have_no_lines():
     assert len(penetrations((BALL, np.eye(4)))) == 0

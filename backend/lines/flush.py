@@ -25,20 +25,41 @@ def is_flush(view: View, faces: I32, points: F64, near: float) -> Bools:
     """
     result = np.zeros(len(faces), np.bool_)
     sides = view.face_patch[faces].astype(np.int64)
-    shift = shifts(view)
+    shift, faces_of = shifts(view), _FacesOf(view, faces)
     _, of_pair = np.unique(sides[:, 0] * len(view.geometry.patches.kind) + sides[:, 1], return_inverse=True)
     order = np.argsort(of_pair, kind="stable")
     for rows in np.split(order, np.flatnonzero(np.diff(of_pair[order])) + 1):
         first, middle = int(rows[0]), points[rows].mean(axis=1)
-        for own, other in ((0, 1), (1, 0)):
-            p, r = int(sides[first, own]), int(sides[first, other])
-            own_node, other_node = view.face_node[faces[first, [own, other]]]
-            some = _patches_of(view, int(other_node))
-            gap = _gap(view, p, some, shift[other_node] - shift[own_node])
-            result[rows] |= bool(_is_offset(view, p, some, gap, near)[some == r].any())
-            for q in some[_is_same(view, p, some, gap, near)]:
-                result[rows] |= _is_along(view, r, int(q), middle, _slack(view, p), near)
+        one, two = view.face_node[faces[first]]
+        off = shift[two] - shift[one]
+        a, b = (int(patch) for patch in sides[first])
+        alone = np.array((b,), np.int32)
+        if _is_offset(view, a, alone, _gap(view, a, alone, off), near)[0]:
+            result[rows] = True
+            continue
+        for p, r, node, way in ((a, b, two, off), (b, a, one, -off)):
+            some = _patches_of(view, int(node))
+            for q in some[_is_same(view, p, some, _gap(view, p, some, way), near)]:
+                edges = _shared_sides(view, faces_of.patch(r), faces_of.patch(int(q)))
+                result[rows] |= _is_along(view, edges, middle, _slack(view, p), near)
     return result
+
+
+class _FacesOf:
+    """The faces of patches of the nodes that faces (k,2) belong to."""
+
+    def __init__(self, view: View, faces: I32) -> None:
+        is_asked = np.zeros(len(view.geometry.nodes), np.bool_)
+        is_asked[view.face_node[faces]] = True
+        rows = np.flatnonzero(is_asked[view.face_node])
+        order = np.argsort(view.face_patch[rows], kind="stable")
+        self._faces = view.faces[rows[order]]
+        counts = np.bincount(view.face_patch[rows], minlength=len(view.geometry.patches.kind))
+        self._starts = np.concatenate(([0], np.cumsum(counts)))
+
+    def patch(self, patch: int) -> I32:
+        """Triangles (m,3) of one patch."""
+        return self._faces[self._starts[patch] : self._starts[patch + 1]]
 
 
 def _patches_of(view: View, node: int) -> I32:
@@ -105,9 +126,8 @@ def _slack(view: View, patch: int) -> float:
     return _SAGITTA / float(size[1] if kind == PatchKind.TORUS else size[0])
 
 
-def _is_along(view: View, patch: int, other: int, middle: F64, slack: float, near: float) -> Bools:
-    """Whether points (k,3) lie on sides that two patches share, within what chords leave."""
-    edges = _shared_sides(view, patch, other)
+def _is_along(view: View, edges: I32, middle: F64, slack: float, near: float) -> Bools:
+    """Whether points (k,3) lie on sides (n,2), within what chords leave."""
     if not len(edges):
         return np.zeros(len(middle), np.bool_)
     start, along = view.world[edges[:, 0]], view.world[edges[:, 1]] - view.world[edges[:, 0]]
@@ -118,11 +138,11 @@ def _is_along(view: View, patch: int, other: int, middle: F64, slack: float, nea
     return np.asarray((off <= 4.0 * near + slack * square).any(axis=1))
 
 
-def _shared_sides(view: View, patch: int, other: int) -> I32:
-    """Sides (k,2) of triangles in which two patches meet."""
-    own, others = (_sides(view.faces[view.face_patch == row]) for row in (patch, other))
-    key, its = (sides[:, 0].astype(np.int64) * len(view.points) + sides[:, 1] for sides in (own, others))
-    return own[np.isin(key, its)]
+def _shared_sides(view: View, faces: I32, others: I32) -> I32:
+    """Sides (k,2) in which triangles (m,3) of two patches meet."""
+    own, its = _sides(faces), _sides(others)
+    key, other = (sides[:, 0].astype(np.int64) * len(view.points) + sides[:, 1] for sides in (own, its))
+    return own[np.isin(key, other)]
 
 
 def _sides(faces: I32) -> I32:
