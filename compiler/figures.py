@@ -119,12 +119,13 @@ class _Planner:
     def _with_overhangs(self, shots: Sequence[_Shot], frame: Frame) -> Frame:
         """The page with room for what stands past the content, which depends on the scale."""
         for _ in range(_OVERHANG_ROUNDS):
-            self.overhangs = {
+            found = {
                 shot.view.name: self._overhang(shot, camera.enlarged(shot.unit, frame.scale, spot.origin), frame)
                 for shot, spot in zip(shots, frame.spots, strict=True)
             }
-            if all(each == NONE for each in self.overhangs.values()):
+            if all(each == self.overhangs.get(name, NONE) for name, each in found.items()):
                 return frame
+            self.overhangs = found
             frame = self._frame(shots, self._vertices)
         return frame
 

@@ -15,7 +15,7 @@ from .mistakes import Mistake, Problems, mistake
 from .modules import find_kind
 from .placement import positive_length
 from .pointing import holder_of, point_in, sight_in
-from .projections import Viewpoint, square_to, standard, standard_names
+from .projections import Central, Viewpoint, square_to, standard, standard_names
 from .readings import expression, listed, name, optional
 from .scope import Scope, did_you_mean
 from .view_sets import Look, Method, ViewSet, arranged
@@ -92,6 +92,9 @@ def _view_set(model: Model, head: tree.Reading, problems: Problems) -> ViewSet:
             related = (Related(found[each.dotted][1].span, "first here"),)
             sentence = f"the view `{each.dotted}` stands twice in this set"
             raise mistake("said-twice", each.span, sentence, "leave one out", related)
+        if isinstance(viewpoint, Central) and viewpoint.is_held:
+            sentence = f"the field of view of `{each.dotted}` says what a page takes in, and a set shares its page"
+            raise mistake("does-not-fit", each.span, sentence, "leave out its `lens` or `angle of view`")
         found[each.dotted] = (viewpoint, each)
     if "front" not in found:
         sentence = "a set of views stands round its front view, which is not among these"

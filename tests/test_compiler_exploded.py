@@ -64,7 +64,7 @@ def test_a_length_goes_along_the_things_own_axis_and_a_vector_along_what_holds_i
 
 
 def test_the_page_takes_in_what_is_moved() -> None:
-    job = figure("exploded 2", "width 60 mm")
+    job = figure("exploded 2", "width 60 mm", "drawn as tone")
     points = explosion.moved(job.geometries[0], job.sheet.panels[0].displacement)
     page, _ = camera.to_page(job.sheet.panels[0].projection, points)
     assert page.min(axis=0) == pytest.approx((2, 2), abs=0.1)
@@ -162,7 +162,7 @@ def test_an_exploded_view_set_moves_alike_in_all_views() -> None:
 
 def test_central_projection_takes_in_what_is_moved() -> None:
     model = DRUM + "viewpoint v\n    eye (-300 mm, -500 mm, 300 mm) toward (0, 0, 50 mm)\n"
-    job = figure("exploded", model=model, show="show drum from v")
+    job = figure("exploded", "drawn as tone", model=model, show="show drum from v")
     page, _ = camera.to_page(
         job.sheet.panels[0].projection, explosion.moved(job.geometries[0], job.sheet.panels[0].displacement)
     )

@@ -55,7 +55,7 @@ def test_100_mm_along_an_axis_measure_50_mm_at_1_to_2(view: str, shares: tuple[f
 
 def test_fitted_oblique_views_fill_their_page() -> None:
     for view in ("cavalier", "cabinet", "planometric", "dimetric"):
-        job = figure(view, "width 70 mm")
+        job = figure(view, "width 70 mm", "drawn as tone")
         page, _ = camera.to_page(job.sheet.panels[0].projection, job.geometries[0].vertices)
         assert page.min(axis=0) == pytest.approx((2, 2), abs=0.01)
         assert page.max(axis=0) == pytest.approx((68, job.sheet.page.height - 2), abs=0.01)

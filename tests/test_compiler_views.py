@@ -81,7 +81,9 @@ def test_every_point_lies_over_and_beside_itself() -> None:
 
 def test_neighbouring_views_show_the_edges_they_share_as_the_method_wants() -> None:
     # Third angle: what lies next to the front view is the object's front; first angle: its rear.
-    third, first = (figure("show box", f"{each} angle front, top", "width 80 mm") for each in ("third", "first"))
+    third, first = (
+        figure("show box", f"{each} angle front, top", "width 80 mm", "drawn as tone") for each in ("third", "first")
+    )
     near, far = (0.0, -30.0, 40.0), (0.0, 30.0, 40.0)
     for job, nearest, other in ((third, near, far), (first, far, near)):
         front = box_of(job, panel(job, "front"))
@@ -93,7 +95,7 @@ def test_neighbouring_views_show_the_edges_they_share_as_the_method_wants() -> N
 
 
 def test_a_set_fills_its_page_and_panels_do_not_overlap() -> None:
-    job = figure("show box", "third angle front, top, right", "width 120 mm")
+    job = figure("show box", "third angle front, top, right", "width 120 mm", "drawn as tone")
     boxes = [box_of(job, each) for each in job.sheet.panels]
     low, high = np.min([each[0] for each in boxes], axis=0), np.max([each[1] for each in boxes], axis=0)
     page = job.sheet.page
@@ -184,6 +186,18 @@ def test_mistakes_in_sets_are_located_problems(lines: tuple[str, ...], code: str
     assert problem.hint or code in ("said-twice", "unknown-name")
 
 
+EYE = "viewpoint near\n    eye (-300 mm, -500 mm, 260 mm) toward (0, 0, 20 mm)\n    lens 50 mm\n"
+
+
+@pytest.mark.parametrize(
+    "lines", [("third angle front, near",), ("show box from near", "detail of corner enlarged 3 diameter 10 mm")]
+)
+def test_a_view_that_says_what_its_page_takes_in_shares_it_with_none(lines: tuple[str, ...]) -> None:
+    problem = the_problem(*lines, part=BOX + EYE)
+    assert problem.code == "does-not-fit" and "field of view" in problem.sentence and "lens" in problem.hint
+    assert problems_of(*lines, part=BOX + EYE.replace("    lens 50 mm\n", "")) == []
+
+
 # --- views by reference arrow
 
 
@@ -249,15 +263,15 @@ def test_there_is_room_on_the_page_for_arrows_and_their_letters() -> None:
                 assert (point >= 2).all() and (point <= (main.place[2] + main.place[0], job.sheet.page.height)).all()
 
 
-def test_there_is_room_on_the_page_for_centre_lines() -> None:
+def test_there_is_room_on_the_page_for_centre_lines_and_for_half_an_outline() -> None:
     part = "part rod\n    add cylinder diameter 20 mm length 50 mm\n"
-    for line, margin in (("drawn as lines", 4), ("drawn as tone", 2), ("centre lines off\n    drawn as lines", 2)):
+    for line, margin in (("drawn as lines", 4), ("drawn as tone", 2), ("centre lines off\n    drawn as lines", 2.175)):
         job = figure("show rod from front", "width 84 mm", line, part=part)
         low, high = box_of(job, job.sheet.panels[0])
-        assert (low[1], job.sheet.page.height - high[1]) == pytest.approx((margin, margin), abs=0.1)
+        assert (low[1], job.sheet.page.height - high[1]) == pytest.approx((margin, margin), abs=0.01)
     plate = "part plate\n    add block (60 mm, 40 mm, 4 mm)\n    cut cylinder diameter 6 mm length 4 mm\n"
     job = figure("show plate from top", "width 84 mm", "drawn as lines", part=plate)
-    assert box_of(job, job.sheet.panels[0])[0] == pytest.approx((2, 2), abs=0.1)
+    assert box_of(job, job.sheet.panels[0])[0] == pytest.approx((2.175, 2.175), abs=0.01)
 
 
 # --- styles
