@@ -61,6 +61,12 @@ class Thread(Struct, frozen=True):
     left: bool
 
 
+class Uncut(Struct, frozen=True):
+    """Says that sections leave a part whole; with an `axis` of its own frame, only those that run along it."""
+
+    axis: Point | None = None
+
+
 class Solid(Struct, frozen=True, eq=False):
     """A part with its parameters fixed.
 
@@ -76,6 +82,7 @@ class Solid(Struct, frozen=True, eq=False):
     n_shapes: int = field(default=1)
     n_levels: int = field(default=1)
     threads: tuple[Thread, ...] = ()
+    uncut: Uncut | None = None
 
 
 class Copy(Struct, frozen=True):

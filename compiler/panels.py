@@ -13,7 +13,7 @@ from .explosion import Explosion
 from .frames import Frame, content
 from .graph import Point
 from .mistakes import mistake
-from .sections import Opening, away_of, letter_of, trace_of
+from .sections import away_of, letter_of, trace_of
 from .specs import Spec
 from .views import View
 
@@ -72,15 +72,16 @@ def _scale_text(spec: Spec, view: View, frame: Frame) -> str:
 
 
 def section_of(
-    spec: Spec, view: View, projection: contract.Projection, geometry: contract.Geometry
+    spec: Spec, view: View, projection: contract.Projection, uncut: tuple[int, ...]
 ) -> contract.Section | None:
-    """What is said of a view's first section. Raises Mistake where that is seen edge-on."""
+    """What is said of a view's first section, `uncut` being rows of nodes left whole.
+
+    Raises Mistake where it is seen edge-on.
+    """
     if not view.cuts:
         return None
     cut = spec.cuts[view.cuts[0]]
-    away, opening = away_of(cut, projection.sight), Opening((), frozenset(spec.uncut))
-    uncut = tuple(row for row, node in enumerate(geometry.nodes) if opening.is_whole(node.path))
-    return contract.Section(cut.plane.through, away, uncut, letter_of(view.cuts[0]))
+    return contract.Section(cut.plane.through, away_of(cut, projection.sight), uncut, letter_of(view.cuts[0]))
 
 
 def traces_of(

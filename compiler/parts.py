@@ -13,13 +13,13 @@ from platewright.lang.problems import Related
 from . import limits
 from .along import WORDS, ends_of, read_along
 from .coincidence import coincide, shared_lines, symmetry
-from .graph import Feature, FeatureCopy, Solid
+from .graph import Feature, FeatureCopy, Solid, Uncut
 from .marks import OwnNames, axes_of, read_marks
 from .materials import PLAIN
 from .mistakes import Mistake, mistake
 from .modules import Declaration, Module, find_kind
-from .placement import Marks
-from .readings import LATER, expression, name
+from .placement import Marks, direction
+from .readings import LATER, expression, name, optional
 from .scope import Scope
 from .shapes import OUTLINED, diameter, height, read_shape, with_edges
 from .sheets import SHEETS, read_sheet
@@ -77,10 +77,16 @@ class _Part:
                     assert isinstance(path, tree.Path)
                     material = find_kind(self.things.modules, self.module, path, ("material",))
                     surface = self.things.surface(*material)
+        uncut: Uncut | None = None
+        for line in lines:
+            if line.head.row == "part uncut":
+                with problems.collecting():
+                    axis = optional(line.head, "axis")
+                    uncut = Uncut(direction(axis, self.scope) if axis is not None else None)
         recipe, span = Recipe(tuple(self.steps)), self.declaration.span
         features = tuple(self.features)
         size = (self.n_shapes, self.n_levels)
-        return Solid(self.declaration.name, recipe, surface, marks, features, span, *size, threads_of(recipe))
+        return Solid(self.declaration.name, recipe, surface, marks, features, span, *size, threads_of(recipe), uncut)
 
     def _begins_with_add(self) -> None:
         declaration, problems = self.declaration, self.things.problems

@@ -6,7 +6,7 @@ The side toward the eye goes unless `keeping` says otherwise. Whatever the secti
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterator
+from collections.abc import Collection, Iterator, Sequence
 from itertools import pairwise
 from math import cos, pi, sin
 from typing import Literal
@@ -16,9 +16,12 @@ from msgspec import Struct
 from platewright.backend.contract import F64, FaceOrigin, Mesh
 from platewright.lang.source import Span
 
-from .graph import Entry, Point
+from .graph import Entry, Point, Solid
 from .mistakes import Problems, mistake
 from .solids.cut import Cutter, cut_mesh, half_space
+
+LENGTHWISE = 0.5
+"""A cut runs along an axis where its unit normal and the axis have a product below this: at less than 30 degrees."""
 
 EDGE_ON = 1e-6
 """A plane is seen edge-on where its unit normal and the line of sight have a product below this."""
@@ -88,30 +91,50 @@ def cutter_of(cut: Cut, away: Point, vertices: F64) -> Cutter:
 class Opening:
     """Cuts copies open while a scene is flattened, and notes what became of them.
 
-    `whole` are the paths of what stays whole, with all below it; `open` are parts that have no inside to cut.
+    `aways` are the directions into what goes, one for each of `cutters`. `whole` are the paths of what stays whole,
+    with all below it, besides parts that say so of themselves; `open` are parts that have no inside to cut.
     """
 
-    def __init__(self, cutters: tuple[Cutter, ...], whole: Collection[str]) -> None:
-        self.cutters, self.whole = cutters, whole
+    def __init__(self, cutters: tuple[Cutter, ...], aways: tuple[Point, ...], whole: Collection[str]) -> None:
+        self.cutters, self.aways, self.whole = cutters, aways, whole
         self.n_cut = self.n_left = 0
         self.open: list[Entry] = []
 
     def alter(self, entry: Entry, placement: F64, mesh: Mesh) -> Mesh | None:
         """The mesh that is left of one copy; see `flatten.Alter`."""
-        left: Mesh | None = mesh
-        if not self.is_whole(entry.path):
-            if not mesh.closed:
+        is_whole = self.is_whole(entry, placement)
+        if not mesh.closed:
+            if not is_whole:
                 self.open.append(entry)
-                return mesh
-            for cutter in self.cutters:
-                left = cut_mesh(left, placement, cutter) if left is not None else None
+            return mesh
+        left: Mesh | None = mesh
+        for cutter in self.cutters:
+            left = cut_mesh(left, placement, cutter) if left is not None else None
+        if is_whole and left is not None:
+            # What lies in front of the cut altogether goes with the rest of it.
+            left = mesh
         self.n_cut += left is not None and bool((left.face_origin == FaceOrigin.SECTION_CAP).any())
         self.n_left += left is not None
         return left
 
-    def is_whole(self, path: str) -> bool:
-        """Whether what stands at a path stays whole: it, or something it is in, is listed."""
-        return any(each in self.whole for each in _and_above(path))
+    def is_whole(self, entry: Entry, placement: F64) -> bool:
+        """Whether a copy stays whole: it, or something it is in, is listed, or its part says so.
+
+        A part that is itself the figure's subject is cut whatever it says.
+        """
+        if any(each in self.whole for each in _and_above(entry.path)):
+            return True
+        if not isinstance(entry.thing, Solid) or entry.thing.uncut is None or entry.parent < 0:
+            return False
+        axis = entry.thing.uncut.axis
+        if axis is None:
+            return True
+        a, b, c = (float(row[0] * axis[0] + row[1] * axis[1] + row[2] * axis[2]) for row in placement[:3])
+        return all(abs(_dot(_unit((a, b, c)), away)) < LENGTHWISE for away in self.aways)
+
+    def rows_whole(self, entries: Sequence[Entry], placements: F64) -> tuple[int, ...]:
+        """Rows of the entries that stay whole; placements (n,4,4)."""
+        return tuple(row for row, entry in enumerate(entries) if self.is_whole(entry, placements[row]))
 
     def judge(self, cuts: tuple[Cut, ...], problems: Problems) -> None:
         """Report what came of the cuts: nothing left, nothing met, or parts that could not be cut."""

@@ -400,6 +400,14 @@ CURVE_ROWS: tuple[Row, ...] = (
 )
 
 PART_ROWS: tuple[Row, ...] = (
+    Row(
+        "part uncut",
+        "uncut [along <axis:direction>]",
+        ("part",),
+        "sections leave the part whole; with an axis only those that run along it, as for shafts and fasteners",
+        "uncut along z",
+        is_once=True,
+    ),
     Row("made of", "made of <material:path>", ("part",), "the material of the part", "made of brass", is_once=True),
     Row(
         "add",
