@@ -21,7 +21,10 @@ TILE_WIDTH, TILE_ROWS = 128, 32
 WHOLE = 1 << 30
 EVEN_ODD = 1
 MOST_SLABS = 512
-"""A row with more ends of edges is cut into equal slabs instead, in which edges are ordered by their middles."""
+MOST_VISITS = 50_000
+"""Most slabs of a row, and visits of edges in the slabs of a row of a tile: beyond, slabs are of equal height, edges in
+them are ordered by their middles, and areas are no longer exact where edges begin, end or cross.
+"""
 
 _NEAR = 1e-7  # pixels: edges nearer than this over a whole slab are not said to cross
 
@@ -278,18 +281,18 @@ def _across(tile: F64, active: I64, n: int, top: float, bottom: float, xs: F64, 
 
 
 @inner
-def _ends(tile: F64, active: I64, n: int, y: float, cuts: F64) -> int:
-    """Heights within row y to y + 1 at which edges begin or end, and its two sides; equal steps if too many."""
+def _ends(tile: F64, active: I64, n: int, y: float, most: int, cuts: F64) -> int:
+    """Heights within row y to y + 1 at which edges begin or end, and its two sides; equal steps if over `most`."""
     n_cuts = 2
     cuts[0], cuts[1] = y, y + 1.0
     for k in range(n):
         for end in (tile[active[k], 1], tile[active[k], 3]):
             if y < end < y + 1.0:
-                if n_cuts < len(cuts):
+                if n_cuts < most:
                     cuts[n_cuts] = end
                 n_cuts += 1
-    if n_cuts > len(cuts):
-        n_cuts = len(cuts)
+    if n_cuts > most:
+        n_cuts = most
         for k in range(n_cuts):
             cuts[k] = y + k / (n_cuts - 1)
     _sort_values(cuts, n_cuts)
@@ -312,9 +315,10 @@ def _row(
     change: I64,
 ) -> None:
     """Add the row of pixels from y to y + 1 of a tile with n `active` edges. `cuts` (2, c) is room for heights."""
-    n_ends = _ends(tile, active, n, y, cuts[0])
+    most = min(MOST_SLABS, max(16, MOST_VISITS // n))
+    n_ends = _ends(tile, active, n, y, most, cuts[0])
     finer = cuts[1]
-    most = min(len(finer) - 2, 2 + 2 * MOST_SLABS // n_ends)
+    most = 2 + most // n_ends
     for slab in range(n_ends - 1):
         top, bottom = cuts[0, slab], cuts[0, slab + 1]
         if np.rint((bottom - y) * WHOLE) == np.rint((top - y) * WHOLE):
