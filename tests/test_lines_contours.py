@@ -230,3 +230,14 @@ def test_the_drawing_stage_takes_outlines_as_they_are():
     view = see_view(geometry_of(made(add(Sphere(40.0)))), line_panel(GENERAL), PAGE)
     plain = contours_of(view_of(view.geometry, GENERAL))
     assert np.array_equal(contours_of(view).start, plain.start)
+
+
+@pytest.mark.parametrize("eye", [(20.0, 0.0, 0.0), (26.0001, 0.0, 0.0), (5.0, 5.0, 5.0)])
+def test_an_eye_in_the_middle_of_things_gives_outlines_before_it_alone(eye):
+    geometry = geometry_of(made(add(Torus(40.0, 12.0))), made(add(Sphere(30.0))), made(add(Cylinder(60.0, 80.0))))
+    toward = np.add(eye, (0.3, 1.0, 0.1))
+    view = see_view(geometry, line_panel(camera.central(eye, toward, 100.0, (60.0, 60.0))), PAGE)
+    found = contours_of(view)
+    ends = np.concatenate((found.start, found.end))
+    assert len(found) > 100 and np.isfinite(ends).all() and (ends[:, 2] < 0.0).all()
+    assert np.abs(ends[:, :2]).max() <= np.abs(view.points[np.unique(view.faces), :2]).max()

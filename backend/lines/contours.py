@@ -17,7 +17,8 @@ from ..contract import F32, F64, I32, U8, EdgeKind, LineClass, PatchKind
 from .chaining import walked
 from .compiled import kernel
 from .model import Bools, Candidates, View
-from .segments import along_sight, candidates, dot, fixed, length, none, shifts, to_view
+from .near import NEAR
+from .segments import along_sight, candidates, dot, fixed, length, none, shifts, to_view, weight
 from .tangency import Surfaces, bends_away, chord_crossing, lifted, surfaces_of, turning
 
 CHORD_MM = 0.004
@@ -188,7 +189,7 @@ def _crossings(view: View, surfaces: Surfaces, turns: _Turns) -> tuple[_Crossing
     is_end = np.bincount(joint) == 1
     sides_of = low[first], high[first], at_low[first], at_high[first], is_end
     chord = _on_chords(view, surfaces, patch[first], *sides_of)
-    exact = lifted(surfaces, patch[first], chord)
+    exact = _on_outline(view, surfaces, patch[first], chord)
     crossings = _Crossings(low[first].astype(np.int32), high[first].astype(np.int32), chord, exact)
     return crossings, np.ascontiguousarray(joint.reshape(2, n).T, np.int32)
 
@@ -233,7 +234,7 @@ def _drawn(view: View, surfaces: Surfaces, turns: _Turns, crossings: _Crossings,
     rows = np.repeat(np.arange(len(first)), number)
     step = np.arange(len(rows)) - np.repeat(np.cumsum(number) - number, number)
     patch = turns.patch[first[rows]]
-    along = _between(surfaces, patch, start[rows], end[rows], step / number[rows])
+    along = _between(view, surfaces, patch, start[rows], end[rows], step / number[rows])
     beyond = np.where((step + 1 == number[rows])[:, None], end[rows], np.roll(along, -1, axis=0))
     vertices = np.stack((vertex[ends[first, 0]][rows], vertex[ends[last, 1]][rows]), axis=1)
     vertices[step > 0, 0], vertices[step + 1 < number[rows], 1] = -1, -1
@@ -262,18 +263,26 @@ def _runs(chain: I32, goes_straight_on: Bools) -> NDArray[np.intp]:
 def _chords(view: View, surfaces: Surfaces, patch: I32, start: F64, end: F64) -> NDArray[np.intp]:
     """Into how many chords (k,) each piece goes: the sagitta falls with their square."""
     middle = 0.5 * (start + end)
-    off = to_view(view.projection, lifted(surfaces, patch, middle)) - to_view(view.projection, middle)
+    off = to_view(view.projection, _on_outline(view, surfaces, patch, middle)) - to_view(view.projection, middle)
     sagitta = np.sqrt(off[:, 0] * off[:, 0] + off[:, 1] * off[:, 1])
     return np.clip(np.ceil(np.sqrt(sagitta / CHORD_MM)), 1, _MOST_CHORDS).astype(np.intp)
 
 
-def _between(surfaces: Surfaces, patch: I32, start: F64, end: F64, share: F64) -> F64:
+def _between(view: View, surfaces: Surfaces, patch: I32, start: F64, end: F64, share: F64) -> F64:
     """Points of outlines at a share of the way; at 0 the start itself."""
     points = start + share[:, None] * (end - start)
     rows = np.flatnonzero(share > 0.0)
     if len(rows):
-        points[rows] = lifted(surfaces, patch[rows], points[rows])
+        points[rows] = _on_outline(view, surfaces, patch[rows], points[rows])
     return points
+
+
+def _on_outline(view: View, surfaces: Surfaces, patch: I32, points: F64) -> F64:
+    """Points lifted onto the exact outline, but for those that would come too near the eye: they stay on the chord."""
+    exact = lifted(surfaces, patch, points)
+    if view.projection.eye is None:
+        return exact
+    return np.where((weight(view.projection, exact) >= 0.5 * NEAR)[:, None], exact, points)
 
 
 def _depths(view: View, surfaces: Surfaces, patch: I32, faces: I32, middle: F64) -> tuple[F64, F64]:
