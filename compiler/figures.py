@@ -22,13 +22,13 @@ from .explosion import Explosion, explode, moved, trace_lines
 from .extent import box_corners
 from .filling import report_filling
 from .flatten import Flattened, Mesher, flatten, walked
-from .frames import RESOLUTION_DPI, WIDTH_MM, Frame, content, frame_of, held_frame
+from .frames import RESOLUTION_DPI, WIDTH_MM, Content, Frame, content, frame_of, held_frame
 from .graph import Entry, Point
 from .interruptions import Interrupting
 from .layout import Box
 from .lightings import lights_for
 from .mistakes import Mistake, Problems, confined, mistake
-from .overhang import NONE, Around, larger, past_arrows, past_centre_lines
+from .overhang import NONE, Around, Extent, larger, past_arrows, past_centre_lines, round_extent
 from .panels import (
     carried,
     check_shown,
@@ -91,6 +91,8 @@ class _Planner:
     def __init__(self, model: Model, spec: Spec, mesher: Mesher, problems: Problems) -> None:
         self.model, self.spec, self.mesher, self.problems = model, spec, mesher, problems
         self.shapes: dict[tuple[float, tuple[int, ...], Point | None], Flattened] = {}
+        self.contents: dict[tuple[str, float], Content] = {}
+        self.round_contents: dict[tuple[str, float], Extent | None] = {}
         self.overhangs: dict[str, Around] = {}
         self.sights: dict[int, tuple[float, float, float]] = {}
         self.corners, owners = box_corners(spec.subject, spec.path)
@@ -107,13 +109,13 @@ class _Planner:
             for view in views_of(spec)
         ]
         self.sights = {number: shot.unit.sight for shot in shots for number in shot.view.cuts}
-        frame = self._frame(shots, lambda shot: corners)
+        frame = self._frame(shots, lambda shot: content(shot.unit, corners))
         shots = self._finer(shots, frame, lambda shot: corners)
-        frame = self._frame(shots, self._vertices)
+        frame = self._frame(shots, self._content)
         finer = self._finer(shots, frame, self._vertices)
         if [shot.rung for shot in finer] != [shot.rung for shot in shots]:
             shots = finer
-            frame = self._frame(shots, self._vertices)
+            frame = self._frame(shots, self._content)
         return self._sheet(shots, self._with_overhangs(shots, frame), resolution, measures)
 
     def _with_overhangs(self, shots: Sequence[_Shot], frame: Frame) -> Frame:
@@ -126,7 +128,7 @@ class _Planner:
             if all(each == self.overhangs.get(name, NONE) for name, each in found.items()):
                 return frame
             self.overhangs = found
-            frame = self._frame(shots, self._vertices)
+            frame = self._frame(shots, self._content)
         return frame
 
     def _overhang(self, shot: _Shot, projection: contract.Projection, frame: Frame) -> Around:
@@ -135,12 +137,29 @@ class _Planner:
         ink = style.wide / 2 if style.is_of_lines else 0.0
         if shot.view.window is not None:
             return (ink, ink, ink, ink)
-        vertices = self._vertices(shot)
-        found = larger((ink, ink, ink, ink), past_centre_lines(self._shape(shot).geometry, vertices, projection, style))
-        if not shot.view.is_main:
+        low, high, _ = self._content(shot)
+        found: Around = (ink, ink, ink, ink)
+        of_round = self._round_content(shot) if style.is_of_lines and style.centre_lines else None
+        if of_round is not None:
+            found = larger(found, past_centre_lines((low, high), of_round, frame.scale))
+        if not shot.view.is_main or not self.spec.looks:
             return found
+        low, high, _ = content(projection, self._vertices(shot))
         arrows = self._arrows(shot, projection, frame)
-        return larger(found, past_arrows(arrows, vertices, projection, title_height(frame.width)))
+        return larger(found, past_arrows(arrows, (low, high), projection, title_height(frame.width)))
+
+    def _content(self, shot: _Shot) -> Content:
+        """The page box of a view's triangles at a sheet scale of 1."""
+        key = (shot.view.name, shot.rung)
+        if key not in self.contents:
+            self.contents[key] = content(shot.unit, self._vertices(shot))
+        return self.contents[key]
+
+    def _round_content(self, shot: _Shot) -> Extent | None:
+        key = (shot.view.name, shot.rung)
+        if key not in self.round_contents:
+            self.round_contents[key] = round_extent(self._shape(shot).geometry, self._vertices(shot), shot.unit)
+        return self.round_contents[key]
 
     def _arrows(self, shot: _Shot, projection: contract.Projection, frame: Frame) -> tuple[contract.ViewArrow, ...]:
         height, vertices = title_height(frame.width), self._vertices(shot)
@@ -210,8 +229,8 @@ class _Planner:
     def _finer(self, shots: Sequence[_Shot], frame: Frame, points: Callable[[_Shot], F64]) -> list[_Shot]:
         return [_Shot(each.view, each.unit, min(each.rung, self._rung(each, frame, points(each)))) for each in shots]
 
-    def _frame(self, shots: Sequence[_Shot], points: Callable[[_Shot], F64]) -> Frame:
-        boxes = self._boxes(shots, points)
+    def _frame(self, shots: Sequence[_Shot], contents: Callable[[_Shot], Content]) -> Frame:
+        boxes = self._boxes(shots, contents)
         main = shots[0].view.viewpoint
         if isinstance(main, Central) and main.is_held and len(shots) > 1:
             sentence = (
@@ -236,12 +255,12 @@ class _Planner:
         ]
         return frame_of(self.spec, boxes)
 
-    def _boxes(self, shots: Sequence[_Shot], points: Callable[[_Shot], F64]) -> list[Box]:
-        return [self._box(shot.view, shot.unit, points(shot)) for shot in shots]
+    def _boxes(self, shots: Sequence[_Shot], contents: Callable[[_Shot], Content]) -> list[Box]:
+        return [self._box(shot.view, shot.unit, contents(shot)) for shot in shots]
 
-    def _box(self, view: View, unit: contract.Projection, points: F64) -> Box:
+    def _box(self, view: View, unit: contract.Projection, within: Content) -> Box:
         """The box of a view. Raises Mistake for a subject behind the eye to which the view would be fitted."""
-        low, high, is_ahead = content(unit, points)
+        low, high, is_ahead = within
         viewpoint = view.viewpoint
         if not np.isfinite(low[0]):
             raise mistake("nothing-in-view", self.spec.span, "the subject lies behind the eye")
@@ -308,7 +327,7 @@ class _Planner:
             detail_frames=frames_of_details(views, panels[0].projection),
             arrows=self._arrows(shots[0], panels[0].projection, frame),
         )
-        boxes = self._boxes(shots, self._vertices)
+        boxes = self._boxes(shots, self._content)
         symbol = None if spec.view_set is None else symbol_of(spec.view_set.method, boxes, frame, spec.margin)
         report_filling(spec, boxes, frame, self._vertices(shots[0]), self.problems)
         wanted = measured(shapes[0].geometry) if measures else ()

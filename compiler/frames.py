@@ -103,7 +103,11 @@ def standard_below(limit: float) -> float | None:
     return next((each for each in STANDARD_SCALES if each <= limit * (1 + 1e-12)), None)
 
 
-def content(projection: Projection, points: F64) -> tuple[tuple[float, float], tuple[float, float], bool]:
+Content = tuple[tuple[float, float], tuple[float, float], bool]
+"""Least and greatest coordinates on the page, and whether all lies in front of the eye."""
+
+
+def content(projection: Projection, points: F64) -> Content:
     """Least and greatest page coordinates of world points (n,3) in front of the eye, and whether all of them are.
 
     NaN where none is. Cost: one pass.

@@ -5,12 +5,15 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
-from platewright.backend.contract import F64, Geometry, PatchKind, Projection, Style, ViewArrow
+from platewright.backend.contract import F64, Geometry, PatchKind, Projection, ViewArrow
 
 from .frames import content
 
 Around = tuple[float, float, float, float]
 """Paper in mm on the left, above, on the right and below."""
+
+Extent = tuple[tuple[float, float], tuple[float, float]]
+"""Least and greatest coordinates on the page."""
 
 NONE: Around = (0.0, 0.0, 0.0, 0.0)
 
@@ -23,28 +26,28 @@ ARROW_LONG, ARROW_LETTER = 3.0, 1.5
 _ROUND = (PatchKind.CYLINDER, PatchKind.CONE, PatchKind.SPHERE, PatchKind.TORUS)
 
 
-def past_centre_lines(geometry: Geometry, vertices: F64, projection: Projection, style: Style) -> Around:
-    """How far the centre lines of round surfaces reach past the content, world vertices (n,3).
-
-    Cost: a pass over the triangles.
-    """
-    if not style.centre_lines or style.drawn_as == "tone" or style.drawn_as.startswith("survey"):
-        return NONE
+def round_extent(geometry: Geometry, vertices: F64, projection: Projection) -> Extent | None:
+    """Page box of all round surfaces, world vertices (n,3); None where there are none. Cost: a pass over triangles."""
     is_round = np.isin(geometry.patches.kind[geometry.face_patch], _ROUND)
     if not is_round.any():
-        return NONE
-    low, high, _ = content(projection, vertices)
-    round_low, round_high, _ = content(projection, vertices[np.unique(geometry.faces[is_round])])
+        return None
+    is_on_one = np.zeros(len(vertices), np.bool_)
+    is_on_one[geometry.faces[is_round]] = True
+    low, high, _ = content(projection, vertices[is_on_one])
+    return low, high
+
+
+def past_centre_lines(extent: Extent, of_round: Extent, scale: float) -> Around:
+    """How far the centre lines of round surfaces reach past a view's content, both boxes at a scale of 1."""
+    (low, high), (round_low, round_high) = extent, of_round
     gaps = (round_low[0] - low[0], round_low[1] - low[1], high[0] - round_high[0], high[1] - round_high[1])
-    left, above, right, below = (max(0.0, CENTRE_PAST_MM - gap) for gap in gaps)
+    left, above, right, below = (max(0.0, CENTRE_PAST_MM - scale * gap) for gap in gaps)
     return (left, above, right, below)
 
 
-def past_arrows(arrows: Sequence[ViewArrow], vertices: F64, projection: Projection, height: float) -> Around:
-    """How far reference arrows and their letters, `height` mm high, reach past the content of a parallel view."""
-    if not arrows:
-        return NONE
-    low, high, _ = content(projection, vertices)
+def past_arrows(arrows: Sequence[ViewArrow], extent: Extent, projection: Projection, height: float) -> Around:
+    """How far reference arrows and their letters, `height` mm high, reach past a content's box on the page."""
+    low, high = extent
     matrix = projection.world_to_page
     found = list(NONE)
     for arrow in arrows:
