@@ -145,9 +145,9 @@ def test_what_is_seen_of_a_torus_is_what_the_quartic_says(azimuth, elevation):
     rows = np.flatnonzero((found.chain[1:] == found.chain[:-1]) & (ends[:-1] == begins[1:])) + 1
     wrong = [row for row in rows if is_hidden_at(origins[row], sight[row], found.start[row, 2]) == bool(begins[row])]
     assert len(rows) > 300
-    # At a cusp the mesh hides a line a little early or late: by less than one side of its triangles, about 1.4 mm.
+    # No wrong run longer than 0.2 mm is the goal of line drawings; here all wrong ones together are shorter.
     length = np.linalg.norm((found.end - found.start)[:, :2], axis=1)
-    assert length[wrong].sum() < 1.0
+    assert length[wrong].sum() < 0.2
 
 
 def test_a_drilled_ball_from_an_eye_shows_one_outline_and_no_wall():
