@@ -15,7 +15,7 @@ import numpy as np
 
 from .block import WIDE, lowest, meet
 from .compiled import kernel
-from .tree import STACK, rounded_down
+from .tree import rounded_down
 
 NORMAL, PLAIN, HIDDEN = 0, 1, 2
 """Ways to treat a segment: look for what hides it, draw it whole, take it as hidden."""
@@ -105,16 +105,6 @@ def _add(spans: Any, n: int, low: Any, high: Any, gap: Any) -> int:
 
 
 @kernel
-def _wider(rows: Any, room: int) -> Any:
-    """The rows (n,k) with room for more."""
-    wider = np.empty((room, rows.shape[1]), rows.dtype)
-    for i in range(rows.shape[0]):
-        for k in range(rows.shape[1]):
-            wider[i, k] = rows[i, k]
-    return wider
-
-
-@kernel
 def _is_beside(boxes: Any, q: int, k: int, x0: Any, y0: Any, dx: Any, dy: Any) -> bool:
     """Whether box k of block q lies wholly on one side of the line through (x0, y0) along (dx, dy)."""
     left, top, right, bottom = boxes[q, 0, k], boxes[q, 1, k], boxes[q, 2, k], boxes[q, 3, k]
@@ -126,11 +116,13 @@ def _is_beside(boxes: Any, q: int, k: int, x0: Any, y0: Any, dx: Any, dy: Any) -
 def cut_segments(
     boxes: Any, starts: Any, corners: Any, labels: Any, start: Any, end: Any, faces: Any, node: Any, patch: Any,
     allowance: Any, treat: Any, depth_mm: Any, sideways_mm: Any, is_central: bool, begin: int, last: int,
-) -> Any:  # fmt: skip
-    """Pieces of the segments begin .. last in their order: segment and 1 if seen (p,2) int32, span (p,2) float64."""
-    span = np.empty((2 * (last - begin) + 64, 2))
-    label = np.empty((len(span), 2), np.int32)
-    spans, stack = np.empty((64, 2)), np.empty((STACK, 2), np.int32)
+    stack: Any, spans: Any, label: Any, span: Any,
+) -> int:  # fmt: skip
+    """Pieces of the segments begin .. last in their order; returns their number, or -1 if there is not enough room.
+
+    Written are label (p,2) int32: segment, and 1 if seen; span (p,2) float64. stack (STACK,2) int32 and spans (k,2) are
+    scratch.
+    """
     n, top_level = 0, len(starts) - 2
     for s in range(begin, last):
         x0, y0, z0 = start[s, 0], start[s, 1], start[s, 2]
@@ -174,14 +166,13 @@ def cut_segments(
                 low, high = hidden_by(corners, labels, r, x0, y0, z0, x1, y1, z1, slack, reach, is_central)
                 if low < high:
                     if n_hidden == len(spans):
-                        spans = _wider(spans, 2 * n_hidden)
+                        return -1
                     n_hidden = _add(spans, n_hidden, low, high, gap)
                     if n_hidden == 1 and spans[0, 0] <= 0.0 and spans[0, 1] >= 1.0:
                         height = 0
                         break
         if n + 2 * n_hidden + 1 > len(span):
-            span = _wider(span, 2 * (n + 2 * n_hidden + 1))
-            label = _wider(label, len(span))
+            return -1
         at = 0.0
         for k in range(n_hidden + 1):
             low, high = (spans[k, 0], spans[k, 1]) if k < n_hidden else (1.0, 1.0)
@@ -196,4 +187,4 @@ def cut_segments(
                 label[n, 0], label[n, 1], span[n, 0], span[n, 1] = s, 0, low, high
                 n += 1
             at = high
-    return label[:n].copy(), span[:n].copy()
+    return n

@@ -48,11 +48,13 @@ def _judged(view: View, style: Style, threads: int | None) -> tuple[I32, U8]:
     cosine = np.float32(math.cos(math.radians(style.sharp_angle)))
 
     def judge(begin: int, end: int) -> tuple[I32, U8]:
-        found: tuple[I32, U8] = judge_sides(
+        side, code = np.empty(3 * (end - begin), np.int32), np.empty(3 * (end - begin), np.uint8)
+        n = judge_sides(
             view.points, view.world, view.faces, view.neighbour, view.facing, view.edge_kind, view.corner_normals,
             view.face_patch, view.face_node, origin, is_open, is_level, cosine, style.tangent, style.hidden, begin, end,
+            side, code,
         )  # fmt: skip
-        return found
+        return side[:n], code[:n]
 
     found = in_blocks(judge, len(view.faces), threads, _BLOCK)
     if not found:

@@ -71,9 +71,8 @@ def _facing(nx: Any, ny: Any, nz: Any, size: Any, px: Any, py: Any, pz: Any, eye
 
 
 @kernel
-def face_patches(normals: Any, moments: Any, eye: Any) -> Any:
-    """Facing (p,) int8 of the planar patches from their sums."""
-    found = np.zeros(len(normals), np.int8)
+def face_patches(normals: Any, moments: Any, eye: Any, found: Any) -> None:
+    """Facing (p,) int8 of the planar patches from their sums; others stay as they are."""
     for p in range(len(normals)):
         weight = moments[p, 3]
         if weight > 0.0:
@@ -81,7 +80,6 @@ def face_patches(normals: Any, moments: Any, eye: Any) -> Any:
             size = np.sqrt(nx * nx + ny * ny + nz * nz)
             x, y, z = moments[p, 0] / weight, moments[p, 1] / weight, moments[p, 2] / weight
             found[p] = _facing(nx, ny, nz, size, x, y, z, eye)
-    return found
 
 
 @kernel

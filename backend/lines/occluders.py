@@ -42,7 +42,8 @@ def occluders_of(view: View, threads: int | None = None) -> Occluders:
     is_open = np.array([not node.closed for node in view.geometry.nodes], np.bool_)
     chosen = np.flatnonzero((view.facing > 0) | ((view.facing < 0) & is_open[view.face_node])).astype(np.int32)
     n = len(chosen)
-    box = bounds(view.points, view.faces, chosen)
+    box = np.array([np.inf, np.inf, -np.inf, -np.inf])
+    bounds(view.points, view.faces, chosen, box)
     code = np.empty(n, np.uint64)
 
     def encode(begin: int, end: int) -> None:

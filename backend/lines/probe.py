@@ -8,20 +8,20 @@ import numpy as np
 
 from .block import WIDE, lowest, meet
 from .compiled import kernel
-from .tree import STACK, rounded_down
+from .tree import rounded_down
 
 
 @kernel
 def foremost(
     boxes: Any, starts: Any, corners: Any, labels: Any, rank: Any, points: Any, slack: Any, is_central: bool,
-    begin: int, last: int, found: Any, depth: Any,
+    begin: int, last: int, stack: Any, found: Any, depth: Any,
 ) -> None:  # fmt: skip
     """Row of the foremost occluder over each of the points begin .. last, or -1, and its depth there.
 
     points (k,3): only triangles that stand before the third by more than `slack` mm count (infinity for all). Among
-    those within `slack` of the foremost the node first by rank is taken, then the triangle first by face.
+    those within `slack` of the foremost the node first by rank is taken, then the triangle first by face. stack
+    (STACK,2) int32 is scratch.
     """
-    stack = np.empty((STACK, 2), np.int32)
     top_level = len(starts) - 2
     for i in range(begin, last):
         x, y, far = points[i, 0], points[i, 1], points[i, 2]

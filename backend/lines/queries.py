@@ -9,6 +9,7 @@ from .model import Candidates, View
 from .near import NEAR
 from .occluders import Occluders
 from .probe import foremost
+from .tree import STACK
 from .view import in_blocks
 from .visibility import cut
 
@@ -86,7 +87,7 @@ def _foremost(view: View, occluders: Occluders, points: F64, threads: int | None
     def probe(begin: int, end: int) -> None:
         foremost(
             occluders.boxes, occluders.starts, occluders.corners, occluders.labels, occluders.rank, points, slack,
-            is_central, begin, end, row, depth,
+            is_central, begin, end, np.empty((STACK, 2), np.int32), row, depth,
         )  # fmt: skip
 
     in_blocks(probe, len(points), threads, _BLOCK)

@@ -5,8 +5,9 @@ from __future__ import annotations
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
-from ..contract import EdgeKind, FaceOrigin, LineClass
+from ..contract import I32, EdgeKind, FaceOrigin, LineClass
 from .compiled import kernel
 from .model import number_of
 
@@ -29,16 +30,15 @@ _MOST_AT_A_POINT = 64  # more ends than this at a vertex are not strung together
 def judge_sides(
     points: Any, world: Any, faces: Any, neighbour: Any, facing: Any, edge_kind: Any, normals: Any, face_patch: Any,
     face_node: Any, origin: Any, is_open: Any, is_level: Any, cosine: Any, with_tangent: bool, with_hidden: bool,
-    begin: int, end: int,
-) -> Any:  # fmt: skip
-    """Sides of the triangles begin .. end that may be lines: side 3 face + corner (k,) int32 and class (k,) uint8.
+    begin: int, end: int, side: Any, line_class: Any,
+) -> int:  # fmt: skip
+    """Write sides of the triangles begin .. end that may be lines; returns their number, 3 a triangle at most.
 
+    side (k,) int32: 3 face + corner; line_class (k,) uint8.
     origin (m,) uint8 `FaceOrigin` of the view's faces; is_level (p,) bool: patches seen edge-on throughout; cosine: of
     the least angle between the normals at an edge. Every side is judged once, at its first triangle. `_CLOSING` is
     added to the class of a side that only closes regions.
     """
-    side = np.empty(3 * (end - begin), np.int32)
-    line_class = np.empty(3 * (end - begin), np.uint8)
     n = 0
     for f in range(begin, end):
         for k in range(3):
@@ -68,7 +68,7 @@ def judge_sides(
                 side[n] = 3 * f + k
                 line_class[n] = found
                 n += 1
-    return side[:n].copy(), line_class[:n].copy()
+    return n
 
 
 @kernel
@@ -129,22 +129,31 @@ def _height(world: Any, faces: Any, f: Any, apex: Any) -> Any:
     return wx * (uy * vz - uz * vy) + wy * (uz * vx - ux * vz) + wz * (ux * vy - uy * vx)
 
 
-@kernel
-def string(ends: Any, low: Any, high: Any, n_vertices: int) -> Any:
+def string(ends: I32, low: I32, high: I32, n_vertices: int) -> tuple[I32, NDArray[np.bool_], I32]:
     """Order (s,) int32 of segments, which of them run backwards (s,) bool, and their chains (s,) int32 or -1.
 
     ends (s,2) int32 are vertices; segments are of one chain if low and high (s,) int32 agree and exactly two such end
     at a vertex. Chains come in the order of their first segments, and start at a loose end where they have one.
     """
     n = len(ends)
-    first = np.full(n_vertices, -1, np.int32)
-    after = np.empty(2 * n, np.int32)
+    first, after = np.full(n_vertices, -1, np.int32), np.empty(2 * n, np.int32)
+    joined, used = np.full(2 * n, -1, np.int32), np.zeros(n, np.bool_)
+    order, backward, chain = np.empty(n, np.int32), np.empty(n, np.bool_), np.empty(n, np.int32)
+    _string(ends, low, high, first, after, joined, used, order, backward, chain)
+    return order, backward, chain
+
+
+@kernel
+def _string(
+    ends: Any, low: Any, high: Any, first: Any, after: Any, joined: Any, used: Any, order: Any, backward: Any,
+    chain: Any,
+) -> None:  # fmt: skip
+    n = len(ends)
     for q in range(2 * n - 1, -1, -1):
         v = ends[q >> 1, q & 1]
         after[q] = first[v]
         first[v] = q
-    joined = np.full(2 * n, -1, np.int32)
-    for v in range(n_vertices):
+    for v in range(len(first)):
         count = 0
         q = first[v]
         while q >= 0:
@@ -163,8 +172,6 @@ def string(ends: Any, low: Any, high: Any, n_vertices: int) -> Any:
             if n_mates == 1:
                 joined[q] = mate
             q = after[q]
-    order, backward, chain = np.empty(n, np.int32), np.empty(n, np.bool_), np.empty(n, np.int32)
-    used = np.zeros(n, np.bool_)
     n_placed, n_chains = 0, 0
     for s in range(n):
         if used[s]:
@@ -190,4 +197,3 @@ def string(ends: Any, low: Any, high: Any, n_vertices: int) -> Any:
             chain[begin] = -1
         else:
             n_chains += 1
-    return order, backward, chain

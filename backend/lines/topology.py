@@ -23,40 +23,45 @@ def topology_of(geometry: Geometry) -> Topology:
     return Topology(neighbours(geometry.faces, len(geometry.vertices)))
 
 
-@kernel
-def neighbours(faces: Any, n_vertices: int) -> Any:
+def neighbours(faces: I32, n_vertices: int) -> I32:
     """The face across each side (m,3) int32, or -1: two sides meet that join the same vertices the other way round.
 
-    Sides are put in buckets by their smaller vertex. Of several that could meet, the first free one in order of faces
-    is taken.
+    Of several that could meet, the first free one in order of faces is taken.
     """
-    m = len(faces)
-    first = np.zeros(n_vertices + 1, np.int32)
-    for t in range(m):
+    found = np.full((len(faces), 3), -1, np.int32)
+    first, place = np.zeros(n_vertices + 1, np.int32), np.empty(n_vertices + 1, np.int32)
+    _match(faces, first, place, np.empty((3 * len(faces), 2), np.int32), found)
+    return found
+
+
+@kernel
+def _match(faces: Any, first: Any, place: Any, waiting: Any, found: Any) -> None:
+    """Put sides in buckets by their smaller vertex, and match each with one that waits there.
+
+    first, place (n+1,) int32: zeros, and scratch; waiting (3m,2) int32: other end (negative if it runs down) and side.
+    """
+    for t in range(len(faces)):
         for k in range(3):
             first[min(faces[t, k], faces[t, (k + 1) % 3]) + 1] += 1
-    for v in range(n_vertices):
+    for v in range(len(first) - 1):
         first[v + 1] += first[v]
-    place = first[:-1].copy()
-    other = np.empty(3 * m, np.int32)
-    side = np.empty(3 * m, np.int32)
-    found = np.full((m, 3), -1, np.int32)
-    for t in range(m):
+        place[v] = first[v]
+    for t in range(len(faces)):
         for k in range(3):
             a, b = faces[t, k], faces[t, (k + 1) % 3]
             low, high = min(a, b), max(a, b)
             signed = high if a < b else -1 - high
+            last = place[low]
             is_met = False
-            for q in range(first[low], place[low]):
-                if other[q] == -1 - signed:
-                    u = side[q] // 3
-                    found[t, k] = u
-                    found[u, side[q] - 3 * u] = t
-                    place[low] -= 1
-                    other[q], side[q] = other[place[low]], side[place[low]]
+            for q in range(first[low], last):
+                if waiting[q, 0] == -1 - signed:
+                    side = waiting[q, 1]
+                    found[t, k] = side // 3
+                    found[side // 3, side % 3] = t
+                    waiting[q, 0], waiting[q, 1] = waiting[last - 1, 0], waiting[last - 1, 1]
+                    place[low] = last - 1
                     is_met = True
                     break
             if not is_met:
-                other[place[low]], side[place[low]] = signed, 3 * t + k
-                place[low] += 1
-    return found
+                waiting[last, 0], waiting[last, 1] = signed, 3 * t + k
+                place[low] = last + 1

@@ -10,7 +10,9 @@ from __future__ import annotations
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
+from ..contract import I32
 from .block import WIDE
 from .compiled import kernel
 
@@ -20,9 +22,8 @@ _RADIX = 11
 
 
 @kernel
-def bounds(points: Any, faces: Any, chosen: Any) -> Any:
-    """Least x, y and greatest x, y (4,) of the middles of the boxes of the chosen faces."""
-    found = np.array([np.inf, np.inf, -np.inf, -np.inf])
+def bounds(points: Any, faces: Any, chosen: Any, found: Any) -> None:
+    """Widen least x, y and greatest x, y (4,) by the middles of the boxes of the chosen faces."""
     for i in range(len(chosen)):
         a, b, c = faces[chosen[i], 0], faces[chosen[i], 1], faces[chosen[i], 2]
         for k in range(2):
@@ -30,7 +31,6 @@ def bounds(points: Any, faces: Any, chosen: Any) -> Any:
             middle = 0.5 * (min(p, min(q, r)) + max(p, max(q, r)))
             found[k] = min(found[k], middle)
             found[2 + k] = max(found[2 + k], middle)
-    return found
 
 
 @kernel
@@ -54,19 +54,24 @@ def morton_codes(points: Any, faces: Any, chosen: Any, box: Any, begin: int, end
         code[i] = interleaved
 
 
+def in_order(code: NDArray[np.uint64], chosen: I32) -> I32:
+    """The chosen faces in rising order of their codes (overwritten), equal ones as they were."""
+    n_passes = (2 * _BITS + _RADIX - 1) // _RADIX  # an even number, so that the result ends where it began
+    count = np.zeros((n_passes, (1 << _RADIX) + 1), np.int32)
+    faces = chosen.copy()
+    _sort(code, np.empty_like(code), faces, np.empty_like(faces), count)
+    return faces
+
+
 @kernel
-def in_order(code: Any, chosen: Any) -> Any:
-    """The chosen faces in rising order of their codes, equal ones as they were (least significant digit first)."""
-    n = len(code)
-    n_passes = (2 * _BITS + _RADIX - 1) // _RADIX
-    codes, spare_codes = code, np.empty_like(code)
-    faces, spare = chosen.copy(), np.empty_like(chosen)
-    count = np.zeros((n_passes, (1 << _RADIX) + 1), np.int64)
+def _sort(codes: Any, spare_codes: Any, faces: Any, spare: Any, count: Any) -> None:
+    """Radix sort, least significant digit first."""
+    n = len(codes)
     mask = np.uint64((1 << _RADIX) - 1)
     for i in range(n):
-        for p in range(n_passes):
+        for p in range(len(count)):
             count[p, ((codes[i] >> np.uint64(_RADIX * p)) & mask) + np.uint64(1)] += 1
-    for p in range(n_passes):
+    for p in range(len(count)):
         for d in range(1 << _RADIX):
             count[p, d + 1] += count[p, d]
         for i in range(n):
@@ -76,7 +81,6 @@ def in_order(code: Any, chosen: Any) -> Any:
             spare_codes[q], spare[q] = codes[i], faces[i]
         codes, spare_codes = spare_codes, codes
         faces, spare = spare, faces
-    return faces
 
 
 @kernel

@@ -156,7 +156,8 @@ def _facing(
     is_open = np.array([not node.closed for node in geometry.nodes], np.bool_)
     emphasis = np.zeros(len(geometry.nodes), np.uint8) if panel.emphasis is None else panel.emphasis
     is_ghost = emphasis == Emphasis.GHOST
-    of_patch = face_patches(normals, moments, eye)
+    of_patch = np.zeros(n_patches, np.int8)
+    face_patches(normals, moments, eye, of_patch)
 
     def finish(begin: int, end: int) -> None:
         settle(face_patch, face_node, is_planar, of_patch, is_open, is_ghost, begin, end, facing, is_occluder)

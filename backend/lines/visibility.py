@@ -9,6 +9,7 @@ from .clip import HIDDEN, NORMAL, PLAIN, cut_segments
 from .model import Candidates, Pieces, View, number_of
 from .occluders import Occluders as Occluders
 from .occluders import occluders_of
+from .tree import STACK
 from .view import in_blocks
 
 _BLOCK = 512
@@ -27,12 +28,17 @@ def cut(view: View, candidates: Candidates, threads: int | None = None, occluder
     is_central = view.projection.kind == "central"
 
     def work(begin: int, end: int) -> tuple[I32, F64]:
-        found: tuple[I32, F64] = cut_segments(
-            tree.boxes, tree.starts, tree.corners, tree.labels, candidates.start, candidates.end,
-            candidates.faces, candidates.node, candidates.patch, candidates.allowance, treat,
-            view.tolerance.depth_mm, view.tolerance.sideways_mm, is_central, begin, end,
-        )  # fmt: skip
-        return found
+        stack, room = np.empty((STACK, 2), np.int32), 4 * (end - begin) + 64
+        while True:
+            spans, label, span = np.empty((room, 2)), np.empty((room, 2), np.int32), np.empty((room, 2))
+            n = cut_segments(
+                tree.boxes, tree.starts, tree.corners, tree.labels, candidates.start, candidates.end, candidates.faces,
+                candidates.node, candidates.patch, candidates.allowance, treat, view.tolerance.depth_mm,
+                view.tolerance.sideways_mm, is_central, begin, end, stack, spans, label, span,
+            )  # fmt: skip
+            if n >= 0:
+                return label[:n], span[:n]
+            room *= 4
 
     found = in_blocks(work, len(candidates), threads, _BLOCK)
     if not found:
