@@ -15,7 +15,7 @@ from .joining import PRECEDENCE, Chain
 from .tracks import track_of
 from .weights import Weight, weight_of
 
-_LEAST = 0.2  # mm: what a gap leaves of a line must be longer
+_LEAST = 2.0  # what gaps leave of a line must be longer than so many of its widths, or it would be a dot
 
 
 def strokes_of(chains: Iterable[Chain], style: Style, *, colours: Sequence[Colour] | None = None) -> tuple[Stroke, ...]:
@@ -84,6 +84,6 @@ def _cut_back(chain: Chain, weight: Weight, style: Style) -> Path | None:
     track = track_of(chain.path)
     back = style.gap + style.wide / 2 + (weight.width / 2 if weight.line_type is None else 0.0)
     low, high = (back if is_behind else 0.0 for is_behind in chain.is_behind)
-    if track.length - low - high < _LEAST:
+    if track.length - low - high < _LEAST * weight.width:
         return None
     return track.stretch(low, track.length - high)
