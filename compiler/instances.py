@@ -6,6 +6,7 @@ from collections.abc import Callable, Mapping
 from typing import TypeVar
 
 from msgspec import Struct, field
+from platewright.backend.lettering.type import Lettering
 from platewright.lang import tree
 from platewright.lang.problems import Related
 from platewright.lang.source import Span
@@ -41,6 +42,7 @@ class Instances(Struct):
     problems: Problems
     placed: set[tuple[str, str]] = field(default_factory=set)
     sources: list[Span] = field(default_factory=list)
+    lettering: Lettering = field(default_factory=Lettering)
     _source_rows: dict[Span, int] = field(default_factory=dict)
     _things: dict[_Key, Thing | None] = field(default_factory=dict)
     _outlines: dict[_Key, Outline | None] = field(default_factory=dict)

@@ -14,6 +14,7 @@ from . import limits
 from .along import WORDS, ends_of, read_along
 from .coincidence import coincide, shared_lines, symmetry
 from .graph import Feature, FeatureCopy, Solid, Uncut
+from .lettering import read_lettering
 from .marks import OwnNames, axes_of, read_marks
 from .materials import PLAIN
 from .mistakes import Mistake, mistake
@@ -171,7 +172,16 @@ class _Part:
     ) -> Placed:
         if reading.row in LATER:
             raise Mistake(None)
-        shape, own, n_shapes, n_levels = self._made(reading, scope, is_cut)
+        centred = any(clause.word == "centred" for clause in line.clauses)
+        shape: Primitive | Recipe
+        own: Marks = {}
+        n_levels = 0
+        if reading.word == "lettering":
+            source = self.things.source(line.span)
+            shape, n_shapes = read_lettering(reading, scope, self.things.lettering, source, centred)
+            centred = False
+        else:
+            shape, own, n_shapes, n_levels = self._made(reading, scope, is_cut)
         shape = with_edges(shape, line.clauses, scope)
         self._sharp(shape, line)
         places = placements(line, scope, self.axes, own)
@@ -180,7 +190,6 @@ class _Part:
             places = tuple([compose(a, b) for a in outer for b in places])
         if coincide(places, symmetry(shape)):
             raise mistake("coincident-copies", line.span, "two copies of this shape lie in one place")
-        centred = any(clause.word == "centred" for clause in line.clauses)
         if centred and isinstance(shape, Recipe):
             clause = next(each for each in line.clauses if each.word == "centred")
             raise mistake("wrong-form", clause.span, "`centred` goes with shapes; a part stands where its lines put it")

@@ -87,6 +87,7 @@ CODES: Mapping[str, str] = MappingProxyType(
         "cuts-itself": "a body along a path would cut itself",
         "twist-does-not-close": "a twisted section does not meet itself where its path closes",
         "twisted-corner": "a twisted section comes to a mitred corner of its path",
+        "missing-letter": "a text has a letter that no font at hand has",
         "no-value": "the function of a surface has no value or no direction somewhere",
         "no-wall": "a bore leaves no wall",
         "hole-without-partner": "an outline with holes is to pass into another",

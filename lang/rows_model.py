@@ -584,7 +584,6 @@ SHAPE_ROWS: tuple[Row, ...] = (
         ("shape",),
         "letters as a solid, by the height of their capitals",
         'lettering "OPEN" capitals 5 mm depth 0.5 mm',
-        later=True,
     ),
     Row(
         "relief",

@@ -21,7 +21,9 @@ ROOT = Path(__file__).parents[1]
 NAMESPACE = "platewright"
 FOLDERS = ("lang", "compiler", "backend")
 DRIVER = "compiler.driver"
-DOOR = ("backend.contract", "backend.camera")  # what of the backend the compiler may name: values and their makers
+# What of the backend the compiler may name: values and their makers, and the letters, for those that are made as solids
+# are the same as those that are drawn.
+DOOR = ("backend.contract", "backend.camera", "backend.lettering.type")
 KERNELS = ("backend.raster.", "backend.lines.", "backend.converter.")
 HEAVY_FOR_LANG = ("numpy", "PIL", "numba", "manifold3d", "rich")
 SHIPPED_WITH = {"PIL": "pillow", "llvmlite": "numba", "fontTools": "fonttools"}

@@ -571,7 +571,7 @@ SCENES = [
     ),
     Hostile(
         "a shape not drawn yet",
-        part('add lettering "OPEN" capitals 5 mm depth 0.5 mm'),
+        part('add mesh "casting.stl" unit mm'),
         ("not-drawn-yet",),
     ),
     Hostile(

@@ -63,6 +63,18 @@ class Lettering:
         """Letters of `text` that can not be drawn, each once, in their order."""
         return tuple(dict.fromkeys(each for each in text if self._letter(each, face) is None))
 
+    def contours(self, text: str, height: float, face: FaceName = "sans") -> tuple[Contour, ...]:
+        """Closed contours of a text in mm, y up, otherwise as `outlines`."""
+        found: list[Contour] = []
+        at = 0.0
+        for letter in self._set(text, face):
+            aside = np.array((at, 0.0))
+            for each in letter.contours:
+                runs = tuple((kind, points * height + aside) for kind, points in each.runs)
+                found.append(Contour(each.start * height + aside, runs))
+            at += letter.advance * height
+        return tuple(found)
+
     def outlines(self, text: str, height: float, face: FaceName = "sans") -> tuple[Path, ...]:
         """Closed paths of a text in mm, y down, its base line starting at (0, 0), filled by the nonzero rule.
 

@@ -17,7 +17,7 @@ from .curve import Curve, area_beside, divided, full_turn, reached, reverse
 from .curve import count_chords as count_curve_chords
 from .curve import sweep as sweep
 from .flaw import SolidError
-from .recipe import ArcTo, EllipseTo, Loop, Outline, Point2, SplineTo, Stretch
+from .recipe import ArcTo, BezierTo, EllipseTo, Loop, Outline, Point2, SplineTo, Stretch
 
 F64 = NDArray[np.float64]
 
@@ -135,7 +135,7 @@ def faults(outline: Outline, turned: bool) -> tuple[OutlineFlaw, ...]:
 
 
 def _count(stretch: Stretch) -> int:
-    return len(stretch.points) if isinstance(stretch, SplineTo) else 1
+    return len(stretch.points) if isinstance(stretch, SplineTo | BezierTo) else 1
 
 
 def _is_on_a_line(loop: tuple[Curve, ...], size: float) -> bool:
@@ -237,6 +237,11 @@ def _curves(loop: Loop) -> list[Curve]:
     for stretch in loop.stretches:
         if isinstance(stretch, SplineTo):
             curves.append(_spline(at, stretch))
+        elif isinstance(stretch, BezierTo):
+            knots = (at, *stretch.points)
+            ends = zip(knots[:-1:3], knots[1::3], knots[2::3], knots[3::3], strict=True)
+            pieces = tuple((a, b, c, d) for a, b, c, d in ends)
+            curves.append(Curve(at, stretch.end, pieces=pieces))
         elif isinstance(stretch, EllipseTo):
             oval = (*stretch.axes, stretch.turn)
             curves.append(Curve(at, stretch.end, stretch.centre, 0.0, stretch.left, oval))

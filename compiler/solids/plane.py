@@ -19,7 +19,7 @@ from ..trigonometry import cos_deg, sin_deg
 from .cubic import bezier_pieces
 from .curve import Curve, angle, divided, end_tangents, fraction_points, sweep, unit
 from .outline import Polyline, area, closed, contact, oriented, polyline
-from .recipe import ArcTo, EllipseTo, LineTo, Loop, Outline, Point2, SplineTo, Stretch
+from .recipe import ArcTo, BezierTo, EllipseTo, LineTo, Loop, Outline, Point2, SplineTo, Stretch
 
 F64 = NDArray[np.float64]
 
@@ -149,6 +149,8 @@ def mirrored(stretches: Sequence[Stretch], start: Point2, axis: Literal["x", "y"
                     for t in (stretch.end_tangent, stretch.tangent)
                 )
                 found.append(SplineTo(points, first, last))
+            case BezierTo():
+                found.append(BezierTo(tuple(over(point) for point in reversed((ends[k], *stretch.points[:-1])))))
             case _:
                 found.append(LineTo(end))
     return tuple(found)
@@ -161,7 +163,7 @@ def turned(stretches: Sequence[Stretch], degrees: float) -> tuple[Stretch, ...]:
 
 def ending_at(stretch: Stretch, end: Point2) -> Stretch:
     """The stretch with its end set to a point that differs by rounding alone."""
-    if isinstance(stretch, SplineTo):
+    if isinstance(stretch, SplineTo | BezierTo):
         return structs.replace(stretch, points=(*stretch.points[:-1], end))
     return structs.replace(stretch, end=end)
 
@@ -245,10 +247,7 @@ def _stretch(curve: Curve) -> Stretch:
     if curve.oval:
         return EllipseTo(curve.end, curve.centre, curve.oval[:2], curve.oval[2], curve.left)
     if curve.pieces:
-        first, last = (tuple(each.tolist()) for each in end_tangents(curve))
-        whole = curve.start == curve.end
-        points = tuple(piece[3] for piece in curve.pieces)
-        return SplineTo(points) if whole else SplineTo(points, (first[0], first[1]), (last[0], last[1]))
+        return BezierTo(tuple(point for piece in curve.pieces for point in piece[1:]))
     return LineTo(curve.end)
 
 
@@ -266,6 +265,8 @@ def _turned(stretch: Stretch, degrees: float) -> Stretch:
         case SplineTo():
             tangents = [None if t is None else over(t) for t in (stretch.tangent, stretch.end_tangent)]
             return SplineTo(tuple(over(point) for point in stretch.points), *tangents)
+        case BezierTo():
+            return BezierTo(tuple(over(point) for point in stretch.points))
     return LineTo(over(stretch.end))
 
 

@@ -58,7 +58,18 @@ class EllipseTo(Struct, frozen=True):
     left: bool
 
 
-Stretch = LineTo | ArcTo | SplineTo | EllipseTo
+class BezierTo(Struct, frozen=True):
+    """Cubic Bezier curves that go on smoothly, two control points and an end each: 3k points."""
+
+    points: tuple[Point2, ...]
+
+    @property
+    def end(self) -> Point2:
+        """The last point."""
+        return self.points[-1]
+
+
+Stretch = LineTo | ArcTo | SplineTo | EllipseTo | BezierTo
 
 
 class Loop(Struct, frozen=True):
