@@ -83,7 +83,7 @@ def main() -> None:
     converter.pixels(page(10), 100.0)
     compare(n, 300.0, 3)
     compare(n, 600.0, 3)
-    compare(n // 5, 1200.0, 1)
+    compare(n, 1200.0, 1)
     drawing = page(n)
     bits = converter.bits(drawing, 1200.0)
     print(f"Group 4 of A4 at 1200 dpi: {seconds(lambda: group4_bytes(bits, 1200.0)) * 1e3:.0f} ms")
