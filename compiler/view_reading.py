@@ -33,10 +33,13 @@ class Views(Struct, frozen=True):
 def find_viewpoint(model: Model, path: tree.Path, problems: Problems) -> Viewpoint:
     """The viewpoint of a name: a declared one, else a standard one. Raises Mistake."""
     module = model.module
-    if len(path.steps) == 1 and path.dotted not in module.names:
+    declared_here = module.names.get(path.dotted)
+    # Other things may be called `top` or `left`: only a viewpoint of that name goes before the standard one.
+    if declared_here is None or declared_here.kind != "viewpoint":
         found = standard(path.dotted)
         if found is not None:
             return found
+    if len(path.steps) == 1 and declared_here is None:
         if path.dotted in module.broken:
             raise Mistake(None)
         declared = (each for each, declaration in module.names.items() if declaration.kind == "viewpoint")

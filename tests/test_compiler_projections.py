@@ -176,6 +176,14 @@ def test_standard_viewpoints_stand_for_all_corners_and_none_else() -> None:
     assert all(standard(name) is None for name in names)
 
 
+def test_a_value_or_part_called_like_a_standard_view_hides_it_not_and_a_viewpoint_does() -> None:
+    text = "derived\n    top = 40 mm\npart left\n    add block (100 mm, 60 mm, top)\n"
+    lines = "figure f\n    show left\n    third angle front, top, left\n    width 90 mm\n"
+    assert [panel.name for panel in planned(text + lines, "f").sheet.panels] == ["left front", "left top", "left left"]
+    own = BOX + "viewpoint top\n    orthographic from bottom\nfigure f\n    show box from top\n"
+    assert planned(own, "f").sheet.panels[0].projection.sight == (0, 0, 1)
+
+
 def test_an_unknown_view_names_the_nearest() -> None:
     (problem,) = checked(BOX + "figure f\n    show box from cabnet\n").problems
     assert (problem.code, problem.hint) == ("unknown-name", "did you mean `cabinet`?")
