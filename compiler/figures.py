@@ -48,6 +48,7 @@ from .signs import check_arrows, strip_for_symbol, symbol_of, view_arrow
 from .solids.ladder import COARSEST, first_at_most
 from .specs import Spec
 from .styles import style_of
+from .threads import by_convention
 from .views import View, cuts_of, views_of
 
 ERROR_ON_PAPER_MM = 0.02
@@ -89,6 +90,9 @@ class _Planner:
     """Fits one figure. `shapes` keeps the triangles already made, by what is shown of the subject and rung."""
 
     def __init__(self, model: Model, spec: Spec, mesher: Mesher, problems: Problems) -> None:
+        # A picture of tone shows what is there; a drawing shows a thread as ISO 6410-1 has it.
+        if spec.manner.is_of_lines and not spec.manner.real_threads:
+            spec = structs.replace(spec, subject=by_convention(spec.subject))
         self.model, self.spec, self.mesher, self.problems = model, spec, mesher, problems
         self.shapes: dict[tuple[float, tuple[int, ...], Point | None], Flattened] = {}
         self.contents: dict[tuple[str, float], Content] = {}

@@ -27,7 +27,16 @@ SMALL_PAGE_MM = 100.0
 LINE_GROUPS = (0.35, 0.5)
 """Line groups of figures up to `SMALL_PAGE_MM` wide and above (common practice)."""
 
-LINE_WORDS = ("hidden edges", "centre lines", "line group", "tangent edges", "edges from", "gaps", "shade lines")
+LINE_WORDS = (
+    "hidden edges",
+    "centre lines",
+    "line group",
+    "tangent edges",
+    "edges from",
+    "gaps",
+    "shade lines",
+    "drawn threads",
+)
 """Lines of a figure that only line drawings heed."""
 
 
@@ -42,6 +51,12 @@ class Manner(Struct, frozen=True):
     tangent: bool = True
     gap: float = 0.0
     shade_lines: bool = False
+    real_threads: bool = False
+
+    @property
+    def is_of_lines(self) -> bool:
+        """Whether lines are drawn at all."""
+        return Style(self.drawn_as).is_of_lines
 
 
 def read_manner(lines: Sequence[tree.Line], scope: Scope, problems: Problems) -> Manner:
@@ -75,6 +90,8 @@ def _with(manner: Manner, head: tree.Reading, scope: Scope) -> Manner:
             return replace(manner, sharp_angle=_sharp(expression(head, "angle"), scope))
         case "gaps":
             return replace(manner, gap=_gap(optional(head, "width"), scope))
+        case "drawn threads":
+            return replace(manner, real_threads=word(head, "drawn") == "real")
         case "shade lines":
             return replace(manner, shade_lines=True)
     return manner

@@ -6,10 +6,11 @@ import re
 from collections.abc import Iterator, Mapping
 from types import MappingProxyType
 
+from msgspec.structs import replace
 from platewright.lang import tree
 
 from .expressions import text
-from .graph import Thread
+from .graph import Assembly, Solid, Thing, Thread
 from .mistakes import mistake
 from .readings import expression, word
 from .scope import Scope
@@ -108,6 +109,62 @@ def _threads(made: Recipe, outer: Affine) -> Iterator[Thread]:
                     yield from _threads(placed.shape, whole)
                 elif isinstance(placed.shape, recipe.Thread):
                     yield _placed(placed.shape, whole, -placed.shape.length / 2 if placed.centred else 0.0)
+
+
+def by_convention(thing: Thing) -> Thing:
+    """A thing whose real threads, and those of all below it, are drawn by convention (ISO 6410-1); itself if none are.
+
+    Copies that shared a thing share it still. Cost: one walk over the things, not over their copies.
+    """
+    return _Conventional().of(thing)
+
+
+class _Conventional:
+    """Remembers what has become of each thing and each recipe."""
+
+    def __init__(self) -> None:
+        self.things: dict[int, Thing] = {}
+        self.recipes: dict[int, Recipe] = {}
+
+    def of(self, thing: Thing) -> Thing:
+        if id(thing) not in self.things:
+            self.things[id(thing)] = self._solid(thing) if isinstance(thing, Solid) else self._assembly(thing)
+        return self.things[id(thing)]
+
+    def _solid(self, solid: Solid) -> Solid:
+        made = self._recipe(solid.recipe)
+        return solid if made is solid.recipe else replace(solid, recipe=made, threads=threads_of(made))
+
+    def _assembly(self, assembly: Assembly) -> Assembly:
+        occurrences = tuple(
+            replace(each, copies=tuple(replace(copy, thing=self.of(copy.thing)) for copy in each.copies))
+            for each in assembly.occurrences
+        )
+        before = [copy.thing for each in assembly.occurrences for copy in each.copies]
+        after = [copy.thing for each in occurrences for copy in each.copies]
+        is_same = all(one is other for one, other in zip(before, after, strict=True))
+        return assembly if is_same else replace(assembly, occurrences=occurrences)
+
+    def _recipe(self, made: Recipe) -> Recipe:
+        if id(made) not in self.recipes:
+            self.recipes[id(made)] = self._made(made)
+        return self.recipes[id(made)]
+
+    def _made(self, made: Recipe) -> Recipe:
+        steps = tuple(replace(step, placed=tuple(map(self._placed, step.placed))) for step in made.steps)
+        pairs = (
+            (a, b)
+            for old, new in zip(made.steps, steps, strict=True)
+            for a, b in zip(old.placed, new.placed, strict=True)
+        )
+        return made if all(a is b for a, b in pairs) else replace(made, steps=steps)
+
+    def _placed(self, placed: recipe.Placed) -> recipe.Placed:
+        if isinstance(placed.shape, Recipe):
+            return replace(placed, shape=self._recipe(placed.shape))
+        if isinstance(placed.shape, recipe.Thread) and placed.shape.real:
+            return replace(placed, shape=replace(placed.shape, real=False))
+        return placed
 
 
 def _has_threads(shape: recipe.Primitive | Recipe) -> bool:

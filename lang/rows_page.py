@@ -286,6 +286,14 @@ FIGURE_ROWS: tuple[Row, ...] = (
         is_once=True,
     ),
     Row(
+        "drawn threads",
+        "threads <drawn:by convention|real>",
+        _SHEET,
+        "whether line drawings show real threads as they are, or by convention as they do when nothing is said",
+        "threads real",
+        is_once=True,
+    ),
+    Row(
         "line group",
         "line group <wide:length>",
         _SHEET,

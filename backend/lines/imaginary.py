@@ -19,7 +19,7 @@ SHORT_OF = 1.0
 """mm by which an imaginary line stops short of the line it runs up to."""
 CLEAR = 0.7
 """mm that stay between an imaginary line and any other line."""
-SHORTEST = 1.0
+SHORTEST = 2.0
 """mm: shorter stretches that remain are left out."""
 _STEP = 0.1  # mm between the places at which the distance is looked at
 

@@ -45,19 +45,19 @@ def see(
 
     Cost: linear in triangles, and in lines times the logarithm of triangles; `regions` near linear in what is seen.
     """
-    view = see_view(geometry, panel, page, topology)
+    view = see_view(geometry, panel, page, topology, threads)
+    occluders = occluders_of(view, threads)
     candidates = joined(
         (
-            edges_of(view, panel.style),
+            edges_of(view, panel.style, threads),
             contours_of(view),
-            penetrations_of(view),
-            conventions_of(view, panel.style),
+            penetrations_of(view, threads),
+            conventions_of(view, panel.style, occluders),
             curves_of(view, panel.curves),
         )
     )
     if panel.clip is not None:
         candidates = near(candidates, panel.clip, _CLIP_MARGIN_MM)
-    occluders = occluders_of(view)
     pieces = cut(view, candidates, threads, occluders=occluders)
     if panel.clip is not None:
         candidates, pieces = _closed_by(panel.clip, candidates, pieces)
