@@ -1,6 +1,6 @@
 """The areas of the page on which each part is seen: the planar arrangement of the visible lines, each face labelled.
 
-Lines that close areas, drawn or not, are extended by a hair where they end free, noded, and made into faces; the part
+Lines that close areas, drawn or not, are extended by a hair where they end, noded, and made into faces; the part
 under one point of a face is the part of the whole face. Areas of one patch become one outline; a border that two
 regions share has the same points in both, so fills meet without a seam. Clean curves of smooth outlines take no part:
 the outline of the triangles stands for them, so that areas close and agree with what hides what.
@@ -27,7 +27,7 @@ Rings: TypeAlias = tuple[F64, ...]
 FacesUnder: TypeAlias = Callable[[F64], I32]
 
 EXTENSION_MM = 0.01
-"""How far a line that ends free runs on, past the line that hides the rest of it."""
+"""How far a line runs on where it ends, past the line that hides the rest of it."""
 LEAST_AREA_MM2 = 1e-3
 """Faces of the arrangement smaller than this go to a neighbour."""
 SIMPLIFY_MM = 5e-3
@@ -36,6 +36,7 @@ outlines of machine parts then move by less than 0.002 mm."""
 _STEPS_PER_MM = 2.0**20  # points lie on this lattice before they are noded, so equal points are equal bits
 _ROW = 1 << 32
 _STUB_MM, _BAR_MM = 1e-3, 1e-3
+_SMOOTH = -0.9  # cosine between two segments that make one line
 _PRUNINGS = 2  # the bars, then what they stand on
 _BORDERS = tuple(
     number_of(line_class)
@@ -67,15 +68,16 @@ def regions_of(view: View, pieces: Pieces, candidates: Candidates, occluders: Oc
 
 
 def borders_of(pieces: Pieces, candidates: Candidates) -> Polylines:
-    """Return the visible pieces that bound areas, put together where just two meet, free ends extended."""
+    """Return the visible pieces that bound areas, put together where just two meet, their ends extended."""
     is_border = np.isin(candidates.line_class, _BORDERS) & (candidates.patch < 0) & ~candidates.is_plain
     rows = np.flatnonzero(pieces.is_visible & is_border[pieces.segment])
     ends = np.stack([pieces.start[rows, :2], pieces.end[rows, :2]], axis=1)
     lattice = np.rint(ends * _STEPS_PER_MM).astype(np.int64)
     long = (lattice[:, 0] != lattice[:, 1]).any(axis=1)
     rows, lattice = rows[long], lattice[long]
+    is_drawn = candidates.is_drawn[pieces.segment[rows]]
     is_cut = np.stack([pieces.span[rows, 0] > 0.0, pieces.span[rows, 1] < 1.0], axis=1)
-    return _polylines(lattice, is_cut)
+    return _polylines(lattice, is_cut, is_drawn)
 
 
 def regions_within(view: View, borders: Polylines, faces_under: FacesUnder) -> tuple[Region, ...]:
@@ -129,26 +131,45 @@ def rings_of(polygon: Any) -> Rings:
     return tuple(np.ascontiguousarray(shapely.get_coordinates(ring)[:-1]) for ring in rings)
 
 
-def _polylines(lattice: I64, is_cut: Bools) -> Polylines:
-    """Join segments (k,2,2) on the lattice at points where two ends meet, but not where visibility cut them off."""
+def _polylines(lattice: I64, is_cut: Bools, is_drawn: Bools) -> Polylines:
+    """Join segments (k,2,2) on the lattice where just two meet smoothly, and extend what does not close in itself.
+
+    Corners of drawn lines are extended too: those of two flush parts may miss each other by a rounding.
+    """
     keys = (lattice[..., 0] * _ROW + lattice[..., 1]).reshape(-1)
     joint = np.unique(keys, return_inverse=True)[1].reshape(-1)
-    cut = np.flatnonzero(is_cut.reshape(-1))
+    apart = np.flatnonzero(is_cut.reshape(-1) | (_is_corner(lattice, joint) & np.repeat(is_drawn, 2)))
+    joint[apart] = int(joint.max(initial=-1)) + 1 + np.arange(len(apart))
     n_joints = int(joint.max(initial=-1)) + 1
-    meeting = np.bincount(np.delete(joint, cut), minlength=n_joints)
-    is_free = (is_cut.reshape(-1) | (meeting[joint] == 1)).reshape(-1, 2)
-    joint[cut] = n_joints + np.arange(len(cut))
-    order, turned, chain = walked(joint.reshape(-1, 2).astype(np.int32), n_joints + len(cut))
-    ends, is_free = (lattice / _STEPS_PER_MM)[order], is_free[order]
-    ends[turned], is_free[turned] = ends[turned, ::-1], is_free[turned, ::-1]
+    joints = joint.reshape(-1, 2).astype(np.int32)
+    order, turned, chain = walked(joints, n_joints)
+    ends, joints = (lattice / _STEPS_PER_MM)[order], joints[order]
+    ends[turned], joints[turned] = ends[turned, ::-1], joints[turned, ::-1]
     first = np.flatnonzero(np.diff(chain, prepend=-1))
     last = np.append(first[1:], len(chain)) - 1
+    is_loop = (joints[first, 0] == joints[last, 1]) & (np.bincount(joint, minlength=n_joints)[joints[first, 0]] == 2)
     lines = Polylines(np.insert(ends[:, 1], first, ends[first, 0], axis=0), np.insert(chain, first, chain[first]))
-    return _extended(lines, is_free[first, 0], is_free[last, 1])
+    return _extended(lines, ~is_loop)
 
 
-def _extended(lines: Polylines, starts_free: Bools, ends_free: Bools) -> Polylines:
-    """Lines with their free ends moved on, and a short bar across each new end, for lines nearly along this one.
+def _is_corner(lattice: I64, joint: I64) -> Bools:
+    """Whether a segment's end (2k,) is one of just two that meet there, at an angle."""
+    along = (lattice[:, 1] - lattice[:, 0]) / _STEPS_PER_MM
+    along /= np.hypot(along[:, 0], along[:, 1])[:, None]
+    inward = np.stack([along, -along], axis=1).reshape(-1, 2)
+    order = np.argsort(joint, kind="stable")
+    count = np.bincount(joint)
+    first = (np.cumsum(count) - count)[count == 2]
+    one, other = order[first], order[first + 1]
+    straight = inward[one, 0] * inward[other, 0] + inward[one, 1] * inward[other, 1]
+    is_corner = np.zeros(len(joint), np.bool_)
+    bent = straight > _SMOOTH
+    is_corner[one[bent]] = is_corner[other[bent]] = True
+    return is_corner
+
+
+def _extended(lines: Polylines, is_open: Bools) -> Polylines:
+    """Lines, the open ones with their ends moved on, and a short bar across each new end for lines nearly parallel.
 
     The direction is that of the last `_STUB_MM` or more: visibility may have left a stub of any direction.
     """
@@ -159,7 +180,7 @@ def _extended(lines: Polylines, starts_free: Bools, ends_free: Bools) -> Polylin
     inner = np.minimum(np.searchsorted(run, run[first] + _STUB_MM), last)
     outer = np.maximum(np.searchsorted(run, run[last] - _STUB_MM, side="right") - 1, first)
     at, back = np.concatenate([first, last]), np.concatenate([inner, outer])
-    is_moved = np.concatenate([starts_free, ends_free]) & (points[at] != points[back]).any(axis=1)
+    is_moved = np.tile(is_open, 2) & (points[at] != points[back]).any(axis=1)
     at, along = at[is_moved], (points[at] - points[back])[is_moved]
     along /= np.hypot(along[:, 0], along[:, 1])[:, None]
     moved = points.copy()
