@@ -1,8 +1,8 @@
 """Times of line drawings beside a yardstick from the same run: `python tests/bench/bench_lines.py [scene ...]`.
 
 The yardstick is the time embreex takes to build a scene of the same triangles. Ours and the yardstick alternate, and
-medians of five are compared. `edges` and `visibility` (the tree of occluders and the cutting) are one view; topology
-(once a geometry) and the mapping to the page have columns of their own. Scenes are 100 mm large on paper, isometric.
+medians of five are compared. The total is that of one view: edges, tree of occluders, cutting, chains; topology (once a
+geometry) and the mapping to the page have columns of their own. Scenes are 100 mm large on paper, isometric.
 """
 
 from __future__ import annotations
@@ -15,6 +15,7 @@ from pathlib import Path
 import numpy as np
 from platewright.backend.contract import Geometry, Style
 from platewright.backend.lines.edges import edges_of
+from platewright.backend.lines.joining import chains_of
 from platewright.backend.lines.occluders import occluders_of
 from platewright.backend.lines.topology import topology_of
 from platewright.backend.lines.view import see_view
@@ -63,7 +64,7 @@ def measure(geometry: Geometry) -> dict[str, float]:
     near = geometry.nodes[-1].path == "floor"
     projection = fitted(mechanical(3, 4) if near else geometry, VIEWS["isometric"])
     panel, style = line_panel(projection), Style()
-    times: dict[str, list[float]] = {k: [] for k in ("topology", "view", "edges", "tree", "cut", "yardstick")}
+    times: dict[str, list[float]] = {k: [] for k in ("topology", "view", "edges", "tree", "cut", "chains", "yardstick")}
     counts = {}
     for _ in range(ROUNDS):
         topology, seconds = timed(lambda: topology_of(geometry))
@@ -76,8 +77,10 @@ def measure(geometry: Geometry) -> dict[str, float]:
         times["tree"].append(seconds)
         pieces, seconds = timed(lambda s=view, c=candidates, t=tree: cut(s, c, occluders=t))
         times["cut"].append(seconds)
+        chains, seconds = timed(lambda p=pieces, c=candidates, v=view: chains_of(p, c, v.tolerance, style))
+        times["chains"].append(seconds)
         times["yardstick"].append(yardstick(geometry))
-        counts = {"candidates": len(candidates), "pieces": len(pieces.segment)}
+        counts = {"candidates": len(candidates), "chains_found": len(chains)}
     return {**{k: float(np.median(v)) for k, v in times.items()}, **counts}
 
 
@@ -85,13 +88,16 @@ def main() -> None:
     chosen = sys.argv[1:] or list(SCENES)
     totals: dict[str, tuple[int, float]] = {}
     measure(mechanical())
-    print(f"{'scene':18} {'triangles':>9} {'candid.':>8} topology  view edges  tree   cut | total ms  embreex  ratio  must")
+    print(
+        f"{'scene':18} {'triangles':>9} {'candid.':>8} topology  view edges  tree   cut chains"
+        " | total ms  embreex  ratio  must"
+    )
     for name in chosen:
         geometry = SCENES[name]()
         found = measure(geometry)
-        total = found["edges"] + found["tree"] + found["cut"]
+        total = sum(found[k] for k in ("edges", "tree", "cut", "chains"))
         totals[name] = len(geometry.faces), total
-        ms = " ".join(f"{1e3 * found[k]:5.1f}" for k in ("view", "edges", "tree", "cut"))
+        ms = " ".join(f"{1e3 * found[k]:5.1f}" for k in ("view", "edges", "tree", "cut", "chains"))
         print(
             f"{name:18} {len(geometry.faces):9} {found['candidates']:8.0f} {1e3 * found['topology']:8.1f} {ms} |"
             f" {1e3 * total:8.1f} {1e3 * found['yardstick']:8.1f} {total / found['yardstick']:6.2f}"
