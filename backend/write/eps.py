@@ -26,7 +26,7 @@ _PROLOG = """\
 
 
 def eps_bytes(drawing: Drawing, letters: Letters | None = None) -> bytes:
-    """The drawing as one EPS program. Letters are outlines. Cost: about 1 us a number."""
+    """The drawing as one EPS program. Letters are outlines. Cost: about 5 us a number."""
     operators = Operators(letters or standard_letters(), _place_image, lambda text: ("", ""))
     width, height = drawing.width * POINTS_A_MM, drawing.height * POINTS_A_MM
     body = operators.of(drawing)

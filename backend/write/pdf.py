@@ -29,7 +29,7 @@ _UP = 2  # the PNG filter that tells a row by its difference to the one above
 def pdf_bytes(drawing: Drawing, letters: Letters | None = None) -> bytes:
     """The drawing as one PDF page of its own size, language, title and alternative text included.
 
-    Greys are DeviceGray; colours are sRGB by a profile that the file carries. Cost: about 2 us a number.
+    Greys are DeviceGray; colours are sRGB by a profile that the file carries. Cost: about 5 us a number.
     """
     import pikepdf
 
