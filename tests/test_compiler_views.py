@@ -368,6 +368,15 @@ def test_a_standard_scale_that_leaves_much_of_the_page_free_names_projections_th
     assert f"{job_height / 80:.0%}" in found.sentence and "1:2" in found.sentence
 
 
+def test_a_note_can_be_accepted_in_its_figure() -> None:
+    slim = "part rod\n    add cylinder diameter 10 mm length 90 mm\n"
+    text = slim + 'figure f\n    show rod\n    size 60 mm by 84 mm\n    scale standard\n    accept "page-half-empty"\n'
+    run = checked(text)
+    assert run.project is not None
+    (note,), (acceptance,) = run.problems, run.project.acceptances
+    assert note.severity is Severity.NOTE and acceptance.covers(note)
+
+
 def test_projections_that_are_named_do_fill_the_page_better() -> None:
     flat = "part plate\n    add block (200 mm, 120 mm, 4 mm)\n"
     found = note("show plate", "size 84 mm by 60 mm", "scale standard", part=flat)

@@ -24,7 +24,7 @@ STAGES: tuple[Stage, ...] = ("tree", "graph", "triangles")
 EXPORTS = ("csv", "stl", "ply", "obj", "glb")
 """Kinds of triangle list, each the suffix of its file."""
 
-_OF_FIGURES = ("cropped",)
+_OF_FIGURES = ("cropped", "page-half-empty")
 """Codes of warnings that come only from laying a figure out."""
 
 _NOT_READ = {
@@ -89,7 +89,7 @@ def _report_unused(session: Session, figures: bool) -> None:
     """Warn of what is accepted and never came up; of figures' warnings only where figures were laid out."""
     from platewright.compiler.scene import unused
 
-    wanted = [each for each in session.findings.acceptances if figures or each.code not in _OF_FIGURES]
+    wanted = [each for each in session.findings.acceptances if figures or not (each.figure or each.code in _OF_FIGURES)]
     session.findings.add(unused(wanted, session.findings.used))
 
 
