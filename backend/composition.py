@@ -86,7 +86,11 @@ def _lines_of(job: Job, row: int, threads: int | None) -> PanelLines:
 
     panel = job.sheet.panels[row]
     seen = see(job.geometries[panel.geometry], panel, job.sheet.page, threads)
-    chains = chains_of(seen.pieces, seen.candidates, seen.view.tolerance, panel.style, view=seen.view)
+    # Of two parts with one line the first by its path has it, in whatever order they are declared.
+    paths = [node.path for node in job.geometries[panel.geometry].nodes]
+    rank = np.argsort(np.argsort(np.array(paths), kind="stable"), kind="stable")
+    tolerance = seen.view.tolerance
+    chains = chains_of(seen.pieces, seen.candidates, tolerance, panel.style, view=seen.view, rank=rank)
     return PanelLines(row, seen, chains)
 
 

@@ -15,6 +15,7 @@ from .drawing import Drawing, Group, Image
 from .lettering.type import Lettering
 from .raster import Progress, measure, paint, survey
 from .write import png, tiff
+from .write.record import DrawnLine
 
 if TYPE_CHECKING:
     from .composition import PanelLines
@@ -45,6 +46,17 @@ class Drawn:
     lines: tuple[PanelLines, ...]
     measures: tuple[Measure, ...]
     thin: tuple[tuple[float, float], ...] = ()
+
+
+def line_list(drawn: Drawn, job: Job) -> tuple[DrawnLine, ...]:
+    """Every line of the panels drawn in lines, in the order they were joined in."""
+    found: list[DrawnLine] = []
+    for lines in drawn.lines:
+        nodes = job.geometries[job.sheet.panels[lines.panel].geometry].nodes
+        for chain in lines.chains:
+            path = nodes[chain.node].path if chain.node >= 0 else ""
+            found.append(DrawnLine(lines.panel, path, chain.line_class, chain.is_visible, chain.length))
+    return tuple(found)
 
 
 def draw(job: Job, kinds: tuple[str, ...], threads: int | None = None, progress: Progress | None = None) -> Drawn:

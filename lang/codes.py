@@ -111,6 +111,7 @@ CODES: Mapping[str, str] = MappingProxyType(
         "nothing-to-show": "a figure has no subject",
         "nothing-in-view": "nothing of a figure's subject is in view",
         "edge-on-section": "a section of which no view shows the cut face",
+        "thin-lines": "lines of a picture in two values that are under four pixels wide",
         "section-misses": "a section that cuts no part",
         "open-part": "a section through a part that is not closed",
         "edge-on-view": "a view whose reference arrow the main view cannot show",

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from ..contract import Job, Measure, Panel, Projection
+from dataclasses import dataclass
+
+from ..contract import Job, LineClass, Measure, Panel, Projection
 from .numbers import JsonValue, json_text
 
 SCHEMA = 1
@@ -10,11 +12,25 @@ _PAPER_DECIMALS = 4
 _PERCENT_DECIMALS = 2
 
 
-def record_bytes(job: Job, measures: tuple[Measure, ...], schema: int = SCHEMA) -> bytes:
+@dataclass(frozen=True, slots=True)
+class DrawnLine:
+    """One line of a drawing: its panel, the path of its part (empty for none), class, whether it is seen, mm long."""
+
+    panel: int
+    part: str
+    line_class: LineClass
+    is_visible: bool
+    length: float
+
+
+def record_bytes(
+    job: Job, measures: tuple[Measure, ...], lines: tuple[DrawnLine, ...] = (), schema: int = SCHEMA
+) -> bytes:
     """One JSON object, a line, UTF-8; `record.schema.json` describes it and README.md explains it.
 
     `measures` are the answers to `job.sheet.measures`, kept in order within each panel. Paper lengths and areas are
-    rounded to four decimals, per cents to two, the view is exact. Raises ValueError on a schema number it cannot write.
+    rounded to four decimals, per cents to two, the view is exact. `lines` are those of panels drawn in lines, in
+    painting order. Raises ValueError on a schema number it cannot write.
     """
     if schema != SCHEMA:
         raise ValueError(f"record schema {schema}, this writer knows {SCHEMA}")
@@ -33,18 +49,28 @@ def record_bytes(job: Job, measures: tuple[Measure, ...], schema: int = SCHEMA) 
             "columns": columns,
             "rows": rows,
         },
-        "panels": [_panel(job, row, panel, measures) for row, panel in enumerate(sheet.panels)],
+        "panels": [_panel(job, row, panel, measures, lines) for row, panel in enumerate(sheet.panels)],
     }
     return (json_text(record) + "\n").encode()
 
 
-def _panel(job: Job, row: int, panel: Panel, measures: tuple[Measure, ...]) -> JsonValue:
+def _panel(job: Job, row: int, panel: Panel, measures: tuple[Measure, ...], lines: tuple[DrawnLine, ...]) -> JsonValue:
     nodes = job.geometries[panel.geometry].nodes
     return {
         "name": panel.name,
         "place_mm": panel.place,
         "view": _view(panel.projection),
         "parts": [_part(nodes[measure.node].path, measure) for measure in measures if measure.panel == row],
+        "lines": [_line(line) for line in lines if line.panel == row],
+    }
+
+
+def _line(line: DrawnLine) -> JsonValue:
+    return {
+        "part": line.part,
+        "class": line.line_class.value,
+        "visible": line.is_visible,
+        "length_mm": round(line.length, _PAPER_DECIMALS),
     }
 
 

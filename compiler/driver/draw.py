@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from platewright.lang.problems import is_error
+from platewright.lang.problems import Problem, Severity, is_error
 
 from . import files, warm
 from .crash import Trace
@@ -116,9 +116,20 @@ def _unit(model: Model, figure: str, variant: Variant | None, run: _Run, steps: 
         drawn = sheet.draw(job, kinds, progress=steps.share)
     content = {f"{figure}.{kind}": sheet.encode(drawn, job, kind) for kind in dict.fromkeys(kinds)}
     if run.wanted.record:
-        content[f"{figure}.record.json"] = record_bytes(job, drawn.measures)
+        content[f"{figure}.record.json"] = record_bytes(job, drawn.measures, sheet.line_list(drawn, job))
+    if drawn.thin:
+        run.session.findings.add((_too_thin(model, figure, drawn.thin, job.sheet.page.resolution),), variant)
     folder = run.out if variant is None else run.out / variant.name
     return {folder / name: encoded for name, encoded in content.items()}
+
+
+def _too_thin(model: Model, figure: str, thin: tuple[tuple[float, float], ...], resolution: float) -> Problem:
+    """A warning that lines of a picture in two values are too few pixels wide to keep their weight."""
+    span = next(each.span for each in model.figures if each.name == figure)
+    width, n_pixels = thin[0]
+    sentence = f"at {resolution:g} pixels to the inch a line of {width:g} mm is {n_pixels:.1f} pixels wide in the TIFF"
+    hint = f"{4.0 * 25.4 / width:.0f} or more keep four pixels"
+    return Problem("thin-lines", Severity.WARNING, span, sentence, hint, (), figure)
 
 
 def _write(content: Mapping[Path, bytes], run: _Run) -> bool:
