@@ -30,11 +30,12 @@ _CLEAR_MM = 1.0
 
 @dataclass(frozen=True, eq=False, slots=True)
 class PanelLines:
-    """What was found in one panel: its number, what is seen, and the joined lines."""
+    """What was found in one panel: its number, what is seen, the joined lines, and those of each extreme position."""
 
     panel: int
     seen: Seen
     chains: tuple[Chain, ...]
+    extremes: tuple[tuple[Chain, ...], ...] = ()
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -81,17 +82,18 @@ def letter_height(width: float) -> float:
 
 
 def _lines_of(job: Job, row: int, threads: int | None) -> PanelLines:
+    from .lines.apart import extreme_chains, set_apart
     from .lines.joining import chains_of
     from .lines.panel import see
 
     panel = job.sheet.panels[row]
-    seen = see(job.geometries[panel.geometry], panel, job.sheet.page, threads)
+    seen = set_apart(see(job.geometries[panel.geometry], panel, job.sheet.page, threads), panel)
     # Of two parts with one line the first by its path has it, in whatever order they are declared.
     paths = [node.path for node in job.geometries[panel.geometry].nodes]
     rank = np.argsort(np.argsort(np.array(paths), kind="stable"), kind="stable")
     tolerance = seen.view.tolerance
     chains = chains_of(seen.pieces, seen.candidates, tolerance, panel.style, view=seen.view, rank=rank)
-    return PanelLines(row, seen, chains)
+    return PanelLines(row, seen, chains, tuple(extreme_chains(job, panel, each, threads) for each in panel.extremes))
 
 
 def _hatches(job: Job, found: Mapping[int, PanelLines]) -> Mapping[str, Hatch]:
@@ -139,6 +141,8 @@ def _panel_groups(
             groups.append(Group("class", LineClass.HATCHING.value, marks, panel.clip))
     groups += _shading(panel, lines)
     groups += groups_of(_beside_traces(lines.chains, panel), nodes, panel.style, colours=_colours(panel))
+    for extreme, chains in zip(panel.extremes, lines.extremes, strict=True):
+        groups += groups_of(chains, job.geometries[extreme.geometry].nodes, panel.style)
     return (*groups, *signs)
 
 

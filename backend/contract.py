@@ -272,6 +272,8 @@ class LineClass(StrEnum):
     DIMENSION = "dimension-line"
     EXTENSION = "extension-line"
     SHADING = "shading"  # strokes and dots that stand for tone
+    PART_SEEN_THROUGH = "part-seen-through"  # a line of a part that is drawn as a ghost
+    REVOLVED_SECTION = "outline-of-revolved-section"
 
 
 DrawnAs = Literal["lines", "tints", "lines and tone", "stipple", "tone", "survey part", "survey depth", "survey facing"]
@@ -330,12 +332,14 @@ class Section:
     """A cutting plane: the side its normal points to is gone. `uncut` are rows of `Geometry.nodes` left whole.
 
     The geometry has been cut already; its cut faces are `FaceOrigin.SECTION_CAP`, one patch for each plane of the cut.
+    Of a removed section they alone are drawn; so of a revolved one, in narrow lines over another panel (ISO 128-3).
     """
 
     point: tuple[float, float, float]
     normal: tuple[float, float, float]
     uncut: tuple[int, ...] = ()
     letter: str = ""
+    drawn: Literal["all", "removed", "revolved"] = "all"
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -392,6 +396,17 @@ class ViewArrow:
     letter: str
 
 
+@dataclass(frozen=True, slots=True)
+class ExtremePosition:
+    """Parts drawn once more as another setting has them: `nodes` of another geometry, a row of `Job.geometries`.
+
+    They are hidden by nothing but themselves and hide nothing.
+    """
+
+    geometry: int
+    nodes: tuple[int, ...]
+
+
 @dataclass(frozen=True, eq=False, slots=True)
 class Panel:
     """One view on the sheet.
@@ -418,6 +433,7 @@ class Panel:
     cutting_planes: tuple[CuttingPlaneLine, ...] = ()
     detail_frames: tuple[DetailFrame, ...] = ()
     arrows: tuple[ViewArrow, ...] = ()
+    extremes: tuple[ExtremePosition, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -586,6 +602,10 @@ def _verify_panel(panel: Panel, job: Job) -> None:
         _array(panel.emphasis, np.uint8, (len(geometry.nodes),), "emphasis")
     if panel.clip is not None:
         _array(panel.clip, np.float64, (None, 2), "clip")
+    for extreme in panel.extremes:
+        other = _row(job.geometries, extreme.geometry, f"extreme position's geometry in panel {panel.name}")
+        for node in extreme.nodes:
+            _row(other.nodes, node, "extreme position's node")
     for curve in panel.curves:
         _array(curve.points, np.float64, (None, 3), "curve")
     for plane in panel.cutting_planes:

@@ -52,10 +52,15 @@ def line_list(drawn: Drawn, job: Job) -> tuple[DrawnLine, ...]:
     """Every line of the panels drawn in lines, in the order they were joined in."""
     found: list[DrawnLine] = []
     for lines in drawn.lines:
-        nodes = job.geometries[job.sheet.panels[lines.panel].geometry].nodes
-        for chain in lines.chains:
-            path = nodes[chain.node].path if chain.node >= 0 else ""
-            found.append(DrawnLine(lines.panel, path, chain.line_class, chain.is_visible, chain.length))
+        panel = job.sheet.panels[lines.panel]
+        for row, chains in (
+            (panel.geometry, lines.chains),
+            *((extreme.geometry, each) for extreme, each in zip(panel.extremes, lines.extremes, strict=True)),
+        ):
+            nodes = job.geometries[row].nodes
+            for chain in chains:
+                path = nodes[chain.node].path if chain.node >= 0 else ""
+                found.append(DrawnLine(lines.panel, path, chain.line_class, chain.is_visible, chain.length))
     return tuple(found)
 
 

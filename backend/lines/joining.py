@@ -32,6 +32,8 @@ PRECEDENCE = (
     LineClass.THREAD_CREST,
     LineClass.VISIBLE_EDGE,
     LineClass.THREAD_ROOT,
+    LineClass.REVOLVED_SECTION,
+    LineClass.PART_SEEN_THROUGH,
     LineClass.IMAGINARY_INTERSECTION,
     LineClass.HIDDEN_OUTLINE,
     LineClass.HIDDEN_EDGE,

@@ -36,7 +36,8 @@ light are heavier is common practice."""
 _WIDE, _NARROW = True, False
 # Applications of ISO 128-2 (formerly ISO 128-24 table 1). A cutting plane is 04.1 with wide ends. A trace line of an
 # exploded view is long-dashed dotted so that it is not taken for an edge (common practice). A break line is continuous,
-# its zigzag or free hand being part of its path.
+# its zigzag or free hand being part of its path. What is
+# drawn as if seen through is narrow and continuous, as patent offices ask of what stands behind something clear.
 _TYPES: dict[LineClass, tuple[bool, LineType]] = {
     LineClass.VISIBLE_OUTLINE: (_WIDE, None),
     LineClass.VISIBLE_EDGE: (_WIDE, None),
@@ -58,6 +59,8 @@ _TYPES: dict[LineClass, tuple[bool, LineType]] = {
     LineClass.DIMENSION: (_NARROW, None),
     LineClass.EXTENSION: (_NARROW, None),
     LineClass.SHADING: (_NARROW, None),
+    LineClass.PART_SEEN_THROUGH: (_NARROW, None),
+    LineClass.REVOLVED_SECTION: (_NARROW, None),
 }
 
 
