@@ -1,8 +1,8 @@
 """An oracle of visibility that shares nothing with the engine: rays in world space against all triangles, both sides.
 
-Moeller and Trumbore 1997, float64, no tree, no projection, no topology. Four rays a sample, turned by 3e-6 rad off the
-sight and moved sideways by the stated tolerance of the view; where they disagree the line grazes something, and it
-is set apart as ambiguous.
+Moeller and Trumbore 1997, float64, no tree, no projection, no topology. Five rays a sample: one as it is, four turned
+by 3e-6 rad off the sight and moved sideways by the stated tolerance of the view. Where they disagree the line grazes
+something, or shows through a gap no wider, and the sample is set apart as ambiguous.
 """
 
 from __future__ import annotations
@@ -17,6 +17,7 @@ from platewright.backend.lines.model import Candidates, Pieces, View
 
 TURN = 3e-6
 _BATCH = 256
+_ASIDE = ((0.0, 0.0), (1.0, 0.31), (-0.31, 1.0), (-1.0, -0.31), (0.31, -1.0))
 
 
 @numba.njit(nogil=True, cache=True, error_model="numpy")
@@ -100,12 +101,12 @@ def verdicts(
         toward = toward / reach[:, None]
     right, up = np.asarray(projection.right), np.asarray(projection.up)
     votes = np.zeros(n, np.int64)
-    for i, j in ((1.0, 0.31), (-0.31, 1.0), (-1.0, -0.31), (0.31, -1.0)):
+    for i, j in _ASIDE:
         aside = i * right + j * up
         ray = toward + TURN * aside
         ray /= np.linalg.norm(ray, axis=1, keepdims=True)
         votes += hits(triangles, world + (sideways / projection.scale) * aside, ray, reach, offset)
-    return np.where(votes == 0, 1, np.where(votes == 4, 0, -1))
+    return np.where(votes == 0, 1, np.where(votes == len(_ASIDE), 0, -1))
 
 
 @dataclass(frozen=True, eq=False, slots=True)
