@@ -180,7 +180,7 @@ FRAME = [(0.0, 0.0), (10.0, 0.0), (10.0, 10.0), (0.0, 10.0), (0.0, 0.0)]
 
 
 def test_a_line_that_stops_short_is_carried_on(plain: Arranged) -> None:
-    short = [(5.0, 0.004), (5.0, 9.994)]
+    short = [(5.0, 0.004), (5.0, 9.985)]
     assert two_faces(plain, lines(FRAME, short)) == [100.0]
     assert two_faces(plain, moved_on(FRAME, short)) == [50.0, 50.0]
 

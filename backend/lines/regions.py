@@ -26,7 +26,7 @@ Polygons: TypeAlias = NDArray[np.object_]
 Rings: TypeAlias = tuple[F64, ...]
 FacesUnder: TypeAlias = Callable[[F64], I32]
 
-EXTENSION_MM = 0.01
+EXTENSION_MM = 0.02
 """How far a line runs on where it ends, past the line that hides the rest of it."""
 LEAST_AREA_MM2 = 1e-3
 """Faces of the arrangement smaller than this go to a neighbour."""
@@ -36,7 +36,7 @@ outlines of machine parts then move by less than 0.002 mm."""
 _STEPS_PER_MM = 2.0**20  # points lie on this lattice before they are noded, so equal points are equal bits
 _ROW = 1 << 32
 _STUB_MM, _BAR_MM = 1e-3, 1e-3
-_SMOOTH = -0.9  # cosine between two segments that make one line
+_SMOOTH = -0.6  # cosine between two segments that make one line
 _PRUNINGS = 2  # the bars, then what they stand on
 _BORDERS = tuple(
     number_of(line_class)
