@@ -57,7 +57,7 @@ def compose(job: Job, tone: U8 | None, lettering: Lettering, threads: int | None
     groups: list[Group] = []
     if tone is not None:
         groups.append(Group("image", "tone", (Image(tone, (0.0, 0.0, sheet.page.width, sheet.page.height)),)))
-    height = letter_height(sheet.page.width)
+    height = sheet.letters
     for row, panel in enumerate(sheet.panels):
         parts = _panel_groups(job, found[row], hatches, lettering, height) if row in found else ()
         if parts:
@@ -74,11 +74,6 @@ def compose(job: Job, tone: U8 | None, lettering: Lettering, threads: int | None
         sheet.language,
     )
     return Composed(drawing, tuple(found.values()))
-
-
-def letter_height(width: float) -> float:
-    """Height in mm of letters that name views: one step of ISO 3098 above 2.5 mm up to 100 mm wide, else above 3.5."""
-    return 3.5 if width <= 100.0 else 5.0
 
 
 def _lines_of(job: Job, row: int, threads: int | None) -> PanelLines:

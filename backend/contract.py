@@ -241,12 +241,22 @@ class Light:
     power: tuple[float, float, float]
 
 
+Pair = tuple[float, float, float, float, float, float]
+
+
 @dataclass(frozen=True, slots=True)
 class Lighting:
-    """All sources and the exposure: the number that linear colour is multiplied by before encoding."""
+    """All sources and the exposure: the number that linear colour is multiplied by before encoding.
+
+    `pairs` says what each material sends back of each light, where their spectra are known: rows as `lights`, in each
+    one entry for each of `Job.materials`, of six numbers. They stand for the products of `Light.power` with
+    `Material.colour` and `Material.normal_reflectance`, linear RGB each, which three channels give only nearly.
+    Empty: the products themselves.
+    """
 
     lights: tuple[Light, ...]
     exposure: float = 1.0
+    pairs: tuple[tuple[Pair, ...], ...] = ()
 
 
 class LineClass(StrEnum):
@@ -515,7 +525,10 @@ class Measure:
 
 @dataclass(frozen=True, slots=True)
 class Sheet:
-    """One deliverable: the page, its panels in painting order, the ties between them, the words that go with it."""
+    """One deliverable: the page, its panels in painting order, the ties between them, the words that go with it.
+
+    `letters` is the height in mm of the capitals that name sections, details and views.
+    """
 
     name: str
     page: Page
@@ -527,6 +540,7 @@ class Sheet:
     description: str = ""
     language: str = ""
     measures: tuple[MeasureWanted, ...] = ()
+    letters: float = 3.5
     inscriptions: tuple[Inscription, ...] = ()
     symbols: tuple[ProjectionSymbol, ...] = ()
 
@@ -598,6 +612,9 @@ def _verify_panel(panel: Panel, job: Job) -> None:
         raise ContractError("world_to_page: not finite")
     if panel.displacement is not None:
         _array(panel.displacement, np.float64, (len(geometry.nodes), 3), "displacement")
+    lighting = panel.lighting
+    if lighting.pairs and [len(row) for row in lighting.pairs] != [len(job.materials)] * len(lighting.lights):
+        raise ContractError(f"pairs: expected {len(lighting.lights)} x {len(job.materials)}")
     if panel.emphasis is not None:
         _array(panel.emphasis, np.uint8, (len(geometry.nodes),), "emphasis")
     if panel.clip is not None:

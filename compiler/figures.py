@@ -20,6 +20,7 @@ from .build import Model
 from .emphasis import emphasis_of
 from .explosion import Explosion, explode, moved, trace_lines
 from .extent import box_corners
+from .extremes import Moved, moved_by, renumbered
 from .filling import report_filling
 from .flatten import Flattened, Mesher, flatten, walked
 from .frames import RESOLUTION_DPI, WIDTH_MM, Content, Frame, content, frame_of, held_frame
@@ -92,8 +93,10 @@ class _Planner:
     def __init__(self, model: Model, spec: Spec, mesher: Mesher, problems: Problems) -> None:
         # A picture of tone shows what is there; a drawing shows a thread as ISO 6410-1 has it.
         if spec.manner.is_of_lines and not spec.manner.real_threads:
-            spec = structs.replace(spec, subject=by_convention(spec.subject))
+            extremes = tuple(structs.replace(each, thing=by_convention(each.thing)) for each in spec.extremes)
+            spec = structs.replace(spec, subject=by_convention(spec.subject), extremes=extremes)
         self.model, self.spec, self.mesher, self.problems = model, spec, mesher, problems
+        self.extremes: dict[tuple[float, int], Moved] = {}
         self.shapes: dict[tuple[float, tuple[int, ...], Point | None], Flattened] = {}
         self.contents: dict[tuple[str, float], Content] = {}
         self.round_contents: dict[tuple[str, float], Extent | None] = {}
@@ -156,7 +159,7 @@ class _Planner:
         """The page box of a view's triangles at a sheet scale of 1."""
         key = (shot.view.name, shot.rung)
         if key not in self.contents:
-            self.contents[key] = content(shot.unit, self._vertices(shot))
+            self.contents[key] = content(shot.unit, self._reached(shot))
         return self.contents[key]
 
     def _round_content(self, shot: _Shot) -> Extent | None:
@@ -183,6 +186,27 @@ class _Planner:
             sentence = f"{len(explosion.moves):,} things explode by themselves; {limits.TRACES:,} is the limit"
             raise mistake("too-much", exploded.span, sentence, "let what holds them explode as one")
         return explosion
+
+    def _reached(self, shot: _Shot) -> F64:
+        """World points of all that a view shows, extreme positions with it."""
+        return np.concatenate((self._vertices(shot), *(each.vertices for each in self._extremes(shot))))
+
+    def _extremes(self, shot: _Shot) -> tuple[Moved, ...]:
+        """What other values move or change. Raises Mistake where that cannot be shown, or is nothing."""
+        spec, found = self.spec, []
+        for number, extreme in enumerate(spec.extremes):
+            if self.explosion is not None or spec.interruptions:
+                what = "an exploded figure" if self.explosion is not None else "a figure that leaves out a stretch"
+                hint = "show it in a figure of its own"
+                raise mistake("wrong-form", extreme.span, f"{what} shows no extreme position", hint)
+            key = (shot.rung, number)
+            if key not in self.extremes:
+                usual = self._shape(_Shot(structs.replace(shot.view, cuts=()), shot.unit, shot.rung)).geometry
+                self.extremes[key] = moved_by(
+                    extreme, spec.path, spec.stresses, usual, shot.rung, self.mesher, self.problems
+                )
+            found.append(self.extremes[key])
+        return tuple(found)
 
     def _vertices(self, shot: _Shot) -> F64:
         return self._moved(self._shape(shot).geometry)
@@ -314,16 +338,21 @@ class _Planner:
             sentence = f"{columns:,} x {rows:,} pixels are more than {limits.PIXELS:,}, the limit"
             raise mistake("too-much", spec.span, sentence, "a smaller size or a lower resolution")
         shapes = list({id(each): each for each in map(self._shape, shots)}.values())
+        others = list({id(each): each for shot in shots for each in self._extremes(shot)}.values())
         views = [shot.view for shot in shots]
         panels: list[contract.Panel] = []
         inscriptions: list[contract.Inscription] = []
         for shot, spot in zip(shots, frame.spots, strict=True):
             shape = self._shape(shot)
             projection = camera.enlarged(shot.unit, frame.scale, spot.origin)
-            vertices = self._moved(shape.geometry)
+            vertices = self._reached(shot)
             if shot.view.window is None:
                 self._seen(projection, spot.place, vertices)
-            panels.append(self._panel(shot.view, projection, spot.place, shape.geometry, shapes.index(shape), frame))
+            panel = self._panel(shot.view, projection, spot.place, shape.geometry, shapes.index(shape), frame)
+            extremes = tuple(
+                contract.ExtremePosition(len(shapes) + others.index(each), each.rows) for each in self._extremes(shot)
+            )
+            panels.append(replace(panel, extremes=extremes))
             if shot.view.title:
                 inscriptions.append(title_of(spec, shot.view, projection, vertices, frame))
         panels[0] = replace(
@@ -346,10 +375,18 @@ class _Planner:
             spec.description,
             "",
             wanted,
+            title_height(page.width),
             tuple(inscriptions),
             () if symbol is None else (symbol,),
         )
-        return contract.Job(tuple(shape.geometry for shape in shapes), shapes[0].materials, sheet)
+        geometries, materials = [shape.geometry for shape in shapes], shapes[0].materials
+        for other in others:
+            geometries.append(renumbered(other.flattened.geometry, len(materials)))
+            materials += other.flattened.materials
+        if others and not spec.manner.is_of_lines:
+            sentence = "an extreme position is drawn in lines, which this figure has none of"
+            self.problems.warn("no-effect", spec.extremes[0].span, sentence, "say `drawn as lines and tone`")
+        return contract.Job(tuple(geometries), materials, sheet)
 
     def _panel(
         self,
