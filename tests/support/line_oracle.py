@@ -138,17 +138,24 @@ class Score:
         )
 
 
-def score(view: View, candidates: Candidates, pieces: Pieces, n: int = 20_000, seed: int = 1) -> Score:
-    """Judge n points spread evenly over the length of all candidates that lie on sides of triangles."""
+def score(
+    view: View, candidates: Candidates, pieces: Pieces, n: int = 20_000, seed: int = 1, side: float = np.inf
+) -> Score:
+    """Judge n points spread evenly over the length of all candidates that lie on sides of triangles.
+
+    Of a candidate only what lies in a square page of this side is judged.
+    """
     rows = np.flatnonzero((candidates.vertices >= 0).all(axis=1))
-    lengths = np.hypot(*(candidates.end - candidates.start)[rows, :2].T)
+    low, high = _within(candidates.start[rows, :2], candidates.end[rows, :2], side)
+    lengths = np.hypot(*(candidates.end - candidates.start)[rows, :2].T) * np.maximum(high - low, 0.0)
     sums = np.cumsum(lengths)
     if not len(rows) or sums[-1] <= 0.0:
         nothing = np.empty(0)
         return Score(0, 0, nothing.astype(int), nothing, nothing.astype(bool), nothing, 0.0)
     place = (np.arange(n) + np.random.default_rng(seed).random(n)) / n * sums[-1]
     which = np.minimum(np.searchsorted(sums, place), len(rows) - 1)
-    share = np.clip(1.0 - (sums[which] - place) / np.maximum(lengths[which], 1e-300), 0.0, 1.0)
+    along = np.clip(1.0 - (sums[which] - place) / np.maximum(lengths[which], 1e-300), 0.0, 1.0)
+    share = low[which] + along * (high - low)[which]
     triangles = triangles_of(view.world, view.faces)
     verdict = _judged(view, candidates, triangles, rows[which], share)
     drawn, from_end = status(candidates, pieces, rows[which], share)
@@ -156,6 +163,22 @@ def score(view: View, candidates: Candidates, pieces: Pieces, n: int = 20_000, s
     segment = rows[which[wrong]]
     run = _longest_run(view, candidates, pieces, triangles, np.unique(segment)[:200])
     return Score(n, int((verdict < 0).sum()), segment, share[wrong], drawn[wrong], from_end[wrong], run)
+
+
+def _within(start: F64, end: F64, side: float) -> tuple[F64, F64]:
+    """From what share to what share segments lie in the square from (0, 0) to (side, side); all of it for infinity."""
+    low, high = np.zeros(len(start)), np.ones(len(start))
+    if np.isinf(side):
+        return low, high
+    for axis in (0, 1):
+        step = end[:, axis] - start[:, axis]
+        safe = np.where(step == 0.0, 1.0, step)
+        at = np.sort(np.stack([-start[:, axis] / safe, (side - start[:, axis]) / safe]), axis=0)
+        is_level = step == 0.0
+        is_out = is_level & ((start[:, axis] < 0.0) | (start[:, axis] > side))
+        low = np.maximum(low, np.where(is_level, 0.0, at[0]))
+        high = np.where(is_out, 0.0, np.minimum(high, np.where(is_level, 1.0, at[1])))
+    return low, high
 
 
 def status(candidates: Candidates, pieces: Pieces, segment: np.ndarray, share: F64) -> tuple[np.ndarray, F64]:
