@@ -129,13 +129,17 @@ def _panel_groups(
     fills = fills_of(regions, nodes, job.materials, panel.style, panel.emphasis)
     if fills:
         groups.append(Group("fills", "fills", fills, panel.clip))
+    gaps: tuple[Mark, ...] = ()
     if panel.section is not None:
         hatching = hatching_of(regions, nodes, hatches, panel.style, _surrounds(signs, lettering))
-        marks: tuple[Mark, ...] = (*hatching.solids, *hatching.gaps, *hatching.strokes)
+        marks: tuple[Mark, ...] = (*hatching.solids, *hatching.strokes)
+        gaps = hatching.gaps
         if marks:
             groups.append(Group("class", LineClass.HATCHING.value, marks, panel.clip))
     groups += _shading(panel, lines)
     groups += groups_of(_beside_traces(lines.chains, panel), nodes, panel.style, colours=_colours(panel))
+    # The white between thin sections cuts through their outlines, which would close it.
+    groups += [Group("class", "between-thin-sections", gaps, panel.clip)] if gaps else []
     for extreme, chains in zip(panel.extremes, lines.extremes, strict=True):
         groups += groups_of(chains, job.geometries[extreme.geometry].nodes, panel.style)
     return (*groups, *signs)
