@@ -44,6 +44,16 @@ def read_figure(model: Model, line: tree.Line, name: str) -> tuple[Spec | None, 
     return (None if reading.problems.has_errors else spec), found
 
 
+def thing_shown(model: Model, line: tree.Line, problems: Problems) -> Thing:
+    """The thing that a figure shows, in a model of other values. Raises Mistake."""
+    show = next((each for each in line.lines if each.head.row == "show"), None)
+    if show is None:
+        return only_root(model, line.head.span)[1]
+    written = expression(show.head, "subject")
+    assert isinstance(written, (tree.Path, tree.Call))
+    return find_subject(model, written, problems).thing
+
+
 def default_figure(model: Model, span: Span) -> tuple[Spec | None, tuple[Problem, ...]]:
     """The figure of a scene that declares none: its one unplaced thing, named after it."""
     problems = Problems()

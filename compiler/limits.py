@@ -8,6 +8,9 @@ from __future__ import annotations
 TRACES = 5_000
 """Things of one exploded figure that move by themselves, each with a trace line."""
 
+EXTREMES = 20
+"""Extreme positions of one figure, each of which builds the scene once more."""
+
 TURNS = 500
 """Turns of a helix or a spring."""
 

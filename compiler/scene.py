@@ -5,15 +5,16 @@ All of it is pure: files come from a loader, meshes from a mesher that may keep 
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence, Set
 
-from msgspec import Struct
+from msgspec import Struct, structs
 from platewright.backend import contract
 from platewright.lang import tree
 from platewright.lang.problems import Problem, Related, Severity, is_error
 from platewright.lang.reader import read_value
 from platewright.lang.source import Span
 
+from . import limits
 from .acceptance import Acceptance, read_acceptances, unused
 from .build import Model as Built
 from .build import build_model
@@ -21,7 +22,8 @@ from .contacts import Leaves, check_contacts, check_sizes
 from .dump import dump_graph, dump_tree, dump_triangles
 from .expect import judge_facts
 from .expressions import evaluate
-from .figure_reading import default_figure, read_figure
+from .extremes import Extreme
+from .figure_reading import default_figure, read_figure, thing_shown
 from .figures import plan_figure
 from .flatten import Mesher, Prover, flatten
 from .flatten import prove as prove_things
@@ -289,27 +291,67 @@ def _figure(
 ) -> tuple[Built, Spec] | None:
     """A figure's spec and the model it shows: its own where it sets parameters."""
     own = Problems()
-    more: list[Assigned] = []
-    for each in declaration.line.lines:
-        if each.word == "with":
-            for setting in settings(each.head):
-                with own.collecting():
-                    value = evaluate(setting.value, built.scope)
-                    more.append(Assigned(setting.name, value, setting.span))
-    chosen = _chosen((), more, own)
+    known = {(each.code, each.span) for each in problems.all()}
+    lines = declaration.line.lines
+    chosen = _assigned([line for line in lines if line.head.row == "with"], built, own)
     if chosen and not own.n_mistakes:
-        names = {each.name for each in chosen}
-        kept = tuple(each for each in given if each.name not in names)
-        before = {(each.code, each.span) for each in problems.all()}
-        built, found = build_model(project.files, project.modules, (*kept, *chosen))
-        own.extend(tuple(each for each in found if (each.code, each.span) not in before))
+        given = _over(given, chosen)
+        built, found = build_model(project.files, project.modules, given)
+        own.extend(tuple(each for each in found if (each.code, each.span) not in known))
     spec, found = read_figure(built, declaration.line, declaration.name)
     own.extend(found)
+    if spec is not None and not own.n_mistakes:
+        known |= {(each.code, each.span) for each in own.all()}
+        wanted = [line for line in lines if line.head.row == "extreme position"]
+        if len(wanted) > limits.EXTREMES:
+            own.error("too-much", wanted[-1].span, f"more than {limits.EXTREMES} extreme positions, the limit")
+        extremes = [
+            _extreme(project, built, given, declaration.line, line, known, own) for line in wanted[: limits.EXTREMES]
+        ]
+        spec = structs.replace(spec, extremes=tuple(each for each in extremes if each is not None))
     for problem in own.all():
         if problem.severity is Severity.ERROR or not chosen or problem.within:
             problems.add(_within(problem, declaration.name))
     is_sound = built.is_whole and not own.n_mistakes and not declaration.is_faulty
     return (built, spec) if is_sound and spec is not None else None
+
+
+def _extreme(
+    project: Project,
+    built: Built,
+    given: tuple[Assigned, ...],
+    figure: tree.Line,
+    line: tree.Line,
+    known: Set[tuple[str, Span]],
+    problems: Problems,
+) -> Extreme | None:
+    """What a figure shows at the values of one of its extreme positions; None where they cannot be taken."""
+    before = problems.n_mistakes
+    chosen = _assigned([line], built, problems)
+    if problems.n_mistakes != before:
+        return None
+    model, found = build_model(project.files, project.modules, _over(given, chosen))
+    problems.extend(tuple(each for each in found if is_error(each) and (each.code, each.span) not in known))
+    with problems.collecting():
+        if model.is_whole:
+            return Extreme(thing_shown(model, figure, problems), model.sources, line.span)
+    return None
+
+
+def _assigned(lines: Sequence[tree.Line], built: Built, problems: Problems) -> tuple[Assigned, ...]:
+    """What lines of a figure set, each parameter once."""
+    found: list[Assigned] = []
+    for line in lines:
+        for setting in settings(line.head):
+            with problems.collecting():
+                found.append(Assigned(setting.name, evaluate(setting.value, built.scope), setting.span))
+    return _chosen((), found, problems)
+
+
+def _over(given: Sequence[Assigned], chosen: Sequence[Assigned]) -> tuple[Assigned, ...]:
+    """Settings with others in the place of those of the same names."""
+    names = {each.name for each in chosen}
+    return (*(each for each in given if each.name not in names), *chosen)
 
 
 def _chosen(base: Sequence[Assigned], more: Sequence[Assigned], problems: Problems) -> tuple[Assigned, ...]:

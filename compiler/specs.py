@@ -9,6 +9,7 @@ from platewright.backend.contract import FileKind
 from platewright.lang.source import Span
 
 from .emphasis import Stress
+from .extremes import Extreme
 from .graph import Thing
 from .interruptions import Interruption
 from .lightings import Sources
@@ -71,3 +72,4 @@ class Spec(Struct, frozen=True):
     looks: tuple[Look, ...] = ()
     details: tuple[Detail, ...] = ()
     interruptions: tuple[Interruption, ...] = ()
+    extremes: tuple[Extreme, ...] = ()
