@@ -236,6 +236,13 @@ FIGURE_ROWS: tuple[Row, ...] = (
     ),
     Row("with", "with <settings:settings>", _SHEET, "sets parameters for this figure", "with opened = yes"),
     Row(
+        "extreme position",
+        "extreme position with <settings:settings>",
+        ("figure",),
+        "draws what moves or changes with other values a second time, in long-dashed double-dotted lines",
+        "extreme position with tilt = 25 deg",
+    ),
+    Row(
         "files",
         "files <files:names>",
         ("figure", "sequence", "receiver"),
