@@ -224,3 +224,29 @@ def test_normals_are_interpolated_in_perspective() -> None:
     coarse, fine = (painted(strip(n), drawn, (MATT,)).astype(int) for n in (1, 60))
     assert np.ptp(coarse[coarse < 255]) > 30
     assert np.abs(coarse - fine).max() <= 2
+
+
+def test_pairs_of_light_and_material_stand_for_the_products_of_their_channels() -> None:
+    """Pairs equal to the products change nothing; others tint what each light gives to each material, and only that."""
+    materials = (GLOSS, STEEL)
+    lights = (
+        Light("directional", (-0.6, 0.0, 0.8), (0.5, 0.4, 0.3)), Light("ambient", NOWHERE, (0.3, 0.3, 0.4)),
+        Light("lamp", (30.0, -40.0, 50.0), (0.002, 0.002, 0.001)),
+    )  # fmt: skip
+    products = tuple(
+        tuple(
+            tuple(np.tile(light.power, 2) * (*each.colour, *each.normal_reflectance)) for each in materials
+        )
+        for light in lights
+    )  # fmt: skip
+    balls = assemble([sphere("a", 4.0, (-5, 0, 0), 48), sphere("b", 4.0, (5, 0, 0), 48, material=1)])
+    drawn = panel(ball_view(0.0, 35.0), PAGE, 1, lighting=Lighting(lights))
+    plain = painted(balls, drawn, materials).astype(int)
+    same = painted(balls, replace(drawn, lighting=Lighting(lights, 1.0, products)), materials).astype(int)
+    assert np.abs(plain - same).max() <= 1 and (plain < 250).any()
+    dark = (0.0,) * 6
+    off = tuple((dark, row[1]) for row in products)
+    changed = painted(balls, replace(drawn, lighting=Lighting(lights, 1.0, off)), materials).astype(int)
+    left, right = np.s_[:, :100], np.s_[:, 100:]
+    assert np.abs(changed[right] - same[right]).max() == 0
+    assert (changed[left][plain[left] < 200] < plain[left][plain[left] < 200]).mean() > 0.9

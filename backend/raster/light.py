@@ -15,7 +15,7 @@ from .compiled import fast_kernel
 from .reflectance import CONTRAST, DEGREE
 
 WIDTH = 16
-NORMAL, VIEW, PLACE, COSINE, MASK, RESULT, DIFFUSE = 0, 3, 6, 9, 10, 11, 14
+NORMAL, VIEW, PLACE, COSINE, MASK, RESULT, LEFT = 0, 3, 6, 9, 10, 11, 14
 FIELDS = 17
 BLOCK = FIELDS * WIDTH
 
@@ -23,16 +23,17 @@ _ZERO, _ONE, _TWO, _HALF = np.float32(0), np.float32(1), np.float32(2), np.float
 _TINY, _LEAST_COSINE, _AWAY = np.float32(1e-20), np.float32(1e-3), np.float32(-0.2)
 _CONTRAST = np.float32(CONTRAST)
 _SQUARE_METRE = np.float32(1e6)
-_B = 8 + DEGREE + 1
+_B = 5 + DEGREE + 1
 
 
 @fast_kernel
 def _begin(jobs: Any, m: Any, ambient: Any, axis: Any) -> None:
     """Unit normals and directions; start the result with what the surround gives."""
-    r0, r1, r2, f0, f1, f2, a2, width = m[0], m[1], m[2], m[3], m[4], m[5], m[6], m[7]
-    p0, p1, p2, p3, p4, p5, p6 = m[8], m[9], m[10], m[11], m[12], m[13], m[14]
+    f0, f1, f2, a2, width = m[0], m[1], m[2], m[3], m[4]
+    p0, p1, p2, p3, p4, p5, p6 = m[5], m[6], m[7], m[8], m[9], m[10], m[11]
     q0, q1, q2, q3, q4, q5, q6 = m[_B], m[_B + 1], m[_B + 2], m[_B + 3], m[_B + 4], m[_B + 5], m[_B + 6]
-    e0, e1, e2, ax, ay, az = ambient[0], ambient[1], ambient[2], axis[0], axis[1], axis[2]
+    r0, r1, r2, s0, s1, s2 = ambient[3], ambient[4], ambient[5], ambient[6], ambient[7], ambient[8]
+    e0, e1, e2, ax, ay, az = ambient[9], ambient[10], ambient[11], axis[0], axis[1], axis[2]
     rest, spread = _ONE - a2, width * width
     for i in range(WIDTH):
         x, y, z = jobs[i], jobs[i + 16], jobs[i + 32]
@@ -54,13 +55,12 @@ def _begin(jobs: Any, m: Any, ambient: Any, axis: Any) -> None:
         bias = q0 + c * (q1 + c * (q2 + c * (q3 + c * (q4 + c * (q5 + c * q6)))))
         t = _TWO * cosine * (x * ax + y * ay + z * az) - (vx * ax + vy * ay + vz * az)
         seen = _ONE + _CONTRAST * t / math.sqrt(t * t + spread)
-        g0, g1, g2 = f0 * scale + bias, f1 * scale + bias, f2 * scale + bias
-        d0, d1, d2 = r0 * (_ONE - g0), r1 * (_ONE - g1), r2 * (_ONE - g2)
-        jobs[i + 224], jobs[i + 240], jobs[i + 256] = d0, d1, d2
+        left0, left1, left2 = _ONE - f0 * scale - bias, _ONE - f1 * scale - bias, _ONE - f2 * scale - bias
+        jobs[i + 224], jobs[i + 240], jobs[i + 256] = left0, left1, left2
         even = _ONE + _CONTRAST * (x * ax + y * ay + z * az)
-        jobs[i + 176] = e0 * (d0 * even + g0 * seen)
-        jobs[i + 192] = e1 * (d1 * even + g1 * seen)
-        jobs[i + 208] = e2 * (d2 * even + g2 * seen)
+        jobs[i + 176] = r0 * left0 * even + (s0 * scale + e0 * bias) * seen
+        jobs[i + 192] = r1 * left1 * even + (s1 * scale + e1 * bias) * seen
+        jobs[i + 208] = r2 * left2 * even + (s2 * scale + e2 * bias) * seen
 
 
 @fast_kernel
@@ -88,24 +88,26 @@ def _reflected(
 
 @fast_kernel
 def _add_far(jobs: Any, m: Any, light: Any) -> None:
-    """Add a directional light, a row of vector and power."""
-    f0, f1, f2, a2 = m[3], m[4], m[5], m[6]
-    lx, ly, lz, k0, k1, k2 = light[0], light[1], light[2], light[3], light[4], light[5]
+    """Add a directional light, a row of `reflectance.light_rows`."""
+    a2 = m[3]
+    lx, ly, lz, r0, r1, r2 = light[0], light[1], light[2], light[3], light[4], light[5]
+    f0, f1, f2, k0, k1, k2 = light[6], light[7], light[8], light[9], light[10], light[11]
     for i in range(WIDTH):
         n, shine, grazing = _reflected(
             jobs[i], jobs[i + 16], jobs[i + 32], jobs[i + 48], jobs[i + 64], jobs[i + 80], jobs[i + 144], jobs[i + 160],
             lx, ly, lz, a2,
         )  # fmt: skip
-        jobs[i + 176] += k0 * (jobs[i + 224] * n + f0 * shine + grazing)
-        jobs[i + 192] += k1 * (jobs[i + 240] * n + f1 * shine + grazing)
-        jobs[i + 208] += k2 * (jobs[i + 256] * n + f2 * shine + grazing)
+        jobs[i + 176] += r0 * jobs[i + 224] * n + f0 * shine + k0 * grazing
+        jobs[i + 192] += r1 * jobs[i + 240] * n + f1 * shine + k1 * grazing
+        jobs[i + 208] += r2 * jobs[i + 256] * n + f2 * shine + k2 * grazing
 
 
 @fast_kernel
 def _add_near(jobs: Any, m: Any, light: Any) -> None:
-    """Add a lamp, a row of place in mm and power at 1 m, which falls with the square of the distance."""
-    f0, f1, f2, a2 = m[3], m[4], m[5], m[6]
-    px, py, pz, k0, k1, k2 = light[0], light[1], light[2], light[3], light[4], light[5]
+    """Add a lamp, a row of `reflectance.light_rows`; its light falls with the square of the distance."""
+    a2 = m[3]
+    px, py, pz, r0, r1, r2 = light[0], light[1], light[2], light[3], light[4], light[5]
+    f0, f1, f2, k0, k1, k2 = light[6], light[7], light[8], light[9], light[10], light[11]
     for i in range(WIDTH):
         lx, ly, lz = px - jobs[i + 96], py - jobs[i + 112], pz - jobs[i + 128]
         square = lx * lx + ly * ly + lz * lz + _TINY
@@ -115,9 +117,9 @@ def _add_near(jobs: Any, m: Any, light: Any) -> None:
             jobs[i], jobs[i + 16], jobs[i + 32], jobs[i + 48], jobs[i + 64], jobs[i + 80], jobs[i + 144], jobs[i + 160],
             lx * s, ly * s, lz * s, a2,
         )  # fmt: skip
-        jobs[i + 176] += k0 * power * (jobs[i + 224] * n + f0 * shine + grazing)
-        jobs[i + 192] += k1 * power * (jobs[i + 240] * n + f1 * shine + grazing)
-        jobs[i + 208] += k2 * power * (jobs[i + 256] * n + f2 * shine + grazing)
+        jobs[i + 176] += power * (r0 * jobs[i + 224] * n + f0 * shine + k0 * grazing)
+        jobs[i + 192] += power * (r1 * jobs[i + 240] * n + f1 * shine + k1 * grazing)
+        jobs[i + 208] += power * (r2 * jobs[i + 256] * n + f2 * shine + k2 * grazing)
 
 
 @fast_kernel
@@ -127,9 +129,10 @@ def light_blocks(
     """Shade blocks 0 .. n_blocks: the fields from RESULT on become linear RGB, not yet clamped."""
     for block in range(n_blocks):
         block_jobs = jobs[block * BLOCK : (block + 1) * BLOCK]
-        material = materials[block_material[block]]
-        _begin(block_jobs, material, ambient, axis)
-        for k in range(len(far)):
-            _add_far(block_jobs, material, far[k])
-        for k in range(len(near)):
-            _add_near(block_jobs, material, near[k])
+        row = block_material[block]
+        material = materials[row]
+        _begin(block_jobs, material, ambient[row], axis)
+        for k in range(far.shape[1]):
+            _add_far(block_jobs, material, far[row, k])
+        for k in range(near.shape[1]):
+            _add_near(block_jobs, material, near[row, k])

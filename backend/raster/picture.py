@@ -245,7 +245,7 @@ def _tones(scene: Scene, materials: Sequence[Material]) -> tuple[Any, Any, Any]:
         geometry.vertices, geometry.faces, geometry.corner_normals, geometry.face_node, scene.node_shift, moved,
         node_material, node_open, scene.to_pixel, _sight(scene),
     )  # fmt: skip
-    lights = light_rows(panel.lighting)
+    lights = light_rows(panel.lighting, materials)
     edges = colour.thresholds()
     encoding = (edges, colour.first_guess(edges, _GUESS_STEPS), np.float32(_GUESS_STEPS))
     return surface, (surround_axis(panel.projection), material_rows(materials), *lights), encoding

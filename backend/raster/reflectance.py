@@ -15,7 +15,8 @@ import numpy as np
 from ..contract import F32, F64, Lighting, Material, Projection
 
 DEGREE = 6  # of the polynomials in n.v that stand for the directional albedo
-ROW = 8 + 2 * (DEGREE + 1)
+ROW = 5 + 2 * (DEGREE + 1)
+LIGHT = 12
 LEAST_ALPHA = 0.01  # a smoother surface would show the point that a directional light is
 
 # The surround that ambient light stands for: radiance 1 + CONTRAST * s(d . axis), s(t) = t / sqrt(t^2 + width^2), whose
@@ -25,7 +26,7 @@ CONTRAST, SHARPEST = 0.65, 0.12
 
 
 def material_rows(materials: Sequence[Material]) -> F32:
-    """Rows (n, ROW) float32: colour 3, normal reflectance 3, alpha squared, width of the surround, albedo A and B."""
+    """Rows (n, ROW) float32: normal reflectance 3, alpha squared, width of the surround, albedo A and B."""
     table = np.zeros((len(materials), ROW), np.float32)
     albedos: dict[float, tuple[F64, F64]] = {}
     for row, material in enumerate(materials):
@@ -34,7 +35,7 @@ def material_rows(materials: Sequence[Material]) -> F32:
         if alpha not in albedos:
             albedos[alpha] = albedo(alpha)
         scale, bias = albedos[alpha]
-        table[row] = (*material.colour, *material.normal_reflectance, alpha**2, width, *scale, *bias)
+        table[row] = (*material.normal_reflectance, alpha**2, width, *scale, *bias)
     return table
 
 
@@ -77,16 +78,24 @@ def _visible_normals(cosine: F64, alpha: float) -> tuple[F64, F64]:
     return half_x / length, half_z / length
 
 
-def light_rows(lighting: Lighting) -> tuple[F32, F32, F32]:
-    """Directional lights and lamps, rows (k,6) float32 of vector and power, and the sum of ambient power (3,).
+def light_rows(lighting: Lighting, materials: Sequence[Material]) -> tuple[F32, F32, F32]:
+    """What each material meets: directional lights and lamps (n,k,LIGHT), the sum of ambient light (n,LIGHT), float32.
 
-    The exposure is multiplied in. Lamp vectors are world mm, their power is at 1 m.
+    A row holds the vector, then linear RGB that the material sends back evenly, that it sends back as gloss at normal
+    incidence, and that shines on it. The exposure is multiplied in. Lamp vectors are world mm, their power is at 1 m.
     """
-    sums = {"directional": [], "lamp": [], "ambient": [np.zeros(6)]}  # type: dict[str, list[F64]]
-    for light in lighting.lights:
-        sums[light.kind].append(np.array([*light.vector, *(p * lighting.exposure for p in light.power)]))
-    far, near = (np.array(sums[kind], np.float32).reshape(-1, 6) for kind in ("directional", "lamp"))
-    return far, near, np.sum(sums["ambient"], axis=0)[3:].astype(np.float32)
+    answers = np.array([(*each.colour, *each.normal_reflectance) for each in materials]).reshape(-1, 6)
+    rows = {kind: [np.zeros((len(materials), LIGHT))] for kind in ("directional", "lamp", "ambient")}
+    for k, light in enumerate(lighting.lights):
+        power = np.array(light.power)
+        row = np.empty((len(materials), LIGHT))
+        row[:, :3], row[:, 9:] = light.vector, power
+        row[:, 3:9] = lighting.pairs[k] if lighting.pairs else answers * np.tile(power, 2)
+        row[:, 3:] *= lighting.exposure
+        rows[light.kind].append(row)
+    far, near = (np.stack(rows[kind], axis=1)[:, 1:] for kind in ("directional", "lamp"))
+    ambient = np.sum(rows["ambient"], axis=0)
+    return tuple(np.ascontiguousarray(each, np.float32) for each in (far, near, ambient))  # type: ignore[return-value]
 
 
 def surround_axis(projection: Projection) -> F32:

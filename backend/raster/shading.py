@@ -58,7 +58,7 @@ def shade_tile(
         sight_0[r] = np.float32(sight[r, 0] * left + sight[r, 1] * top + sight[r, 2])
     sx0, sx1, sx2, sy0, sy1, sy2 = sight_x[0], sight_x[1], sight_x[2], sight_y[0], sight_y[1], sight_y[2]
     s00, s01, s02 = sight_0[0], sight_0[1], sight_0[2]
-    has_lamps = len(near) > 0
+    has_lamps = near.shape[1] > 0
     corner = np.empty((3, 3))
     place = np.zeros((3, 3), np.float32)
     n_blocks, last, is_seen, material = 0, -1, False, 0

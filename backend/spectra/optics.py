@@ -35,12 +35,12 @@ def normal_reflectance(index: ArrayLike) -> F64:
     return np.asarray(np.abs((n - 1.0) / (n + 1.0)) ** 2)
 
 
-def diffuse_reflectance(index: float, n_nodes: int = 96) -> float:
+def diffuse_reflectance(index: float, n_nodes: int = 48) -> float:
     """Share of even light from a half-space that the surface of a clear body reflects, by Gauss-Legendre quadrature."""
     nodes, weights = np.polynomial.legendre.leggauss(n_nodes)
-    square = (nodes + 1.0) / 2.0  # sin2 of the angle of incidence; the roots at its ends are met half-way only
-    s, p = fresnel(np.sqrt(1.0 - square), index)
-    return float(weights @ (s + p)) / 4.0
+    cosine = (nodes + 1.0) / 2.0
+    s, p = fresnel(cosine, index)
+    return float(weights @ ((s + p) * cosine)) / 2.0
 
 
 def metal_index(name: str) -> NDArray[np.complex128]:
