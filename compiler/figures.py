@@ -34,6 +34,7 @@ from .panels import (
     carried,
     check_shown,
     clip_of,
+    faces_alone,
     frame_round,
     frames_of_details,
     links_of,
@@ -42,9 +43,10 @@ from .panels import (
     title_height,
     title_of,
     traces_of,
+    turned_into,
 )
 from .projections import Central, Parallel, is_pictorial, unit_projection
-from .sections import Opening, away_of, cutter_of, facing
+from .sections import Cut, Opening, away_of, cutter_of, facing
 from .signs import check_arrows, strip_for_symbol, symbol_of, view_arrow
 from .solids.ladder import COARSEST, first_at_most
 from .specs import Spec
@@ -189,12 +191,14 @@ class _Planner:
 
     def _reached(self, shot: _Shot) -> F64:
         """World points of all that a view shows, extreme positions with it."""
+        if shot.view.shows != "all":
+            return faces_alone(self._shape(shot).geometry, self._vertices(shot))
         return np.concatenate((self._vertices(shot), *(each.vertices for each in self._extremes(shot))))
 
     def _extremes(self, shot: _Shot) -> tuple[Moved, ...]:
         """What other values move or change. Raises Mistake where that cannot be shown, or is nothing."""
         spec, found = self.spec, []
-        for number, extreme in enumerate(spec.extremes):
+        for number, extreme in enumerate(spec.extremes if shot.view.shows == "all" else ()):
             if self.explosion is not None or spec.interruptions:
                 what = "an exploded figure" if self.explosion is not None else "a figure that leaves out a stretch"
                 hint = "show it in a figure of its own"
@@ -210,6 +214,16 @@ class _Planner:
 
     def _vertices(self, shot: _Shot) -> F64:
         return self._moved(self._shape(shot).geometry)
+
+    def _revolved(self, main: _Shot) -> list[_Shot]:
+        """Views of cut faces turned into the plane of the main one."""
+        found: list[_Shot] = []
+        for number, cut in enumerate(self.spec.cuts):
+            if cut.shown == "revolved":
+                name = f"{self.spec.path} revolved section {len(found) + 1}"
+                view = View(name, main.view.viewpoint, cuts=(number,), shows="revolved")
+                found.append(_Shot(view, turned_into(main.unit, cut), main.rung))
+        return found
 
     def _moved(self, geometry: contract.Geometry) -> F64:
         return geometry.vertices if self.explosion is None else moved(geometry, self.explosion.shifts)
@@ -337,7 +351,8 @@ class _Planner:
         if columns * rows > limits.PIXELS:
             sentence = f"{columns:,} x {rows:,} pixels are more than {limits.PIXELS:,}, the limit"
             raise mistake("too-much", spec.span, sentence, "a smaller size or a lower resolution")
-        shapes = list({id(each): each for each in map(self._shape, shots)}.values())
+        revolved = self._revolved(shots[0])
+        shapes = list({id(each): each for each in map(self._shape, (*shots, *revolved))}.values())
         others = list({id(each): each for shot in shots for each in self._extremes(shot)}.values())
         views = [shot.view for shot in shots]
         panels: list[contract.Panel] = []
@@ -360,6 +375,11 @@ class _Planner:
             detail_frames=frames_of_details(views, panels[0].projection),
             arrows=self._arrows(shots[0], panels[0].projection, frame),
         )
+        for shot in revolved:
+            (number,), shape = shot.view.cuts, self._shape(shot)
+            projection = turned_into(panels[0].projection, spec.cuts[number], self._reached(shot))
+            place = panels[0].place
+            panels.append(self._panel(shot.view, projection, place, shape.geometry, shapes.index(shape), frame))
         boxes = self._boxes(shots, self._content)
         symbol = None if spec.view_set is None else symbol_of(spec.view_set.method, boxes, frame, spec.margin)
         report_filling(spec, boxes, frame, self._vertices(shots[0]), self.problems)
@@ -406,6 +426,8 @@ class _Planner:
         middle = (geometry.vertices.min(axis=0) + geometry.vertices.max(axis=0)) / 2
         target = (float(middle[0]), float(middle[1]), float(middle[2]))
         style = style_of(spec.manner, frame.width, is_pictorial(view.viewpoint))
+        if view.shows != "all":
+            style = self._flat(style, spec.cuts[view.cuts[0]])
         lighting = lights_for(spec.sources, projection, target)
         return contract.Panel(
             view.name,
@@ -422,6 +444,13 @@ class _Planner:
             detail_frames=frame_round(view, projection),
             cutting_planes=traces_of(spec, view, projection, geometry.vertices, self.sights),
         )
+
+    def _flat(self, style: contract.Style, cut: Cut) -> contract.Style:
+        """The style of a cut face alone, which has no tone. Raises Mistake in a figure without lines."""
+        if not style.is_of_lines:
+            sentence = f"a {cut.shown} section is drawn in lines, which this figure has none of"
+            raise mistake("wrong-form", cut.span, sentence, "say `drawn as lines`")
+        return style if style.drawn_as == "tints" else replace(style, drawn_as="lines")
 
     def _seen(self, projection: contract.Projection, place: tuple[float, float, float, float], vertices: F64) -> None:
         """A view with nothing in it is a problem; one whose subject leaves its place says so."""

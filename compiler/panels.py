@@ -13,7 +13,7 @@ from .explosion import Explosion
 from .frames import Frame, content
 from .graph import Point
 from .mistakes import mistake
-from .sections import away_of, letter_of, trace_of
+from .sections import EDGE_ON, Cut, away_of, letter_of, trace_of
 from .specs import Spec
 from .views import View
 
@@ -81,7 +81,54 @@ def section_of(
     if not view.cuts:
         return None
     cut = spec.cuts[view.cuts[0]]
-    return contract.Section(cut.plane.through, away_of(cut, projection.sight), uncut, letter_of(view.cuts[0]))
+    letter = "" if view.shows == "revolved" else letter_of(view.cuts[0])
+    return contract.Section(cut.plane.through, away_of(cut, projection.sight), uncut, letter, view.shows)
+
+
+def faces_alone(geometry: contract.Geometry, points: F64) -> F64:
+    """Those of the vertices' points (n,3) that cut faces have."""
+    is_cut = geometry.face_origin == contract.FaceOrigin.SECTION_CAP
+    found: F64 = points[np.unique(geometry.faces[is_cut])]
+    return found
+
+
+def turned_into(projection: contract.Projection, cut: Cut, points: F64 | None = None) -> contract.Projection:
+    """The view of a cut face turned into the picture plane of a view that sees it edge-on, about its own middle.
+
+    `points` (n,3) are those of the cut face; without them it turns about the plane's point. Raises Mistake where the
+    plane is not seen edge-on.
+    """
+    normal, sight = np.array(cut.plane.normal), np.array(projection.sight)
+    if projection.kind != "parallel" or abs(float((normal * sight).sum())) > EDGE_ON:
+        sentence = (
+            "a revolved section is turned into the plane of a view that sees it edge-on, and the main view does not"
+        )
+        raise mistake("edge-on-section", cut.span, sentence, "take another view, or a `removed section`")
+    along = np.cross(sight, normal)
+    middle = np.array(cut.plane.through)
+    if points is not None:
+        deep = points @ sight
+        middle = middle + sight * ((float(deep.min()) + float(deep.max())) / 2 - float((middle * sight).sum()))
+    right, up = np.array(projection.right), np.array(projection.up)
+    # What lies deeper is turned to the side that the normal points to, or that which is looked at from where it stays.
+    side = 1.0
+    for _ in range(2):
+        turned = [
+            along * float((along * axis).sum()) + side * sight * float((normal * axis).sum()) for axis in (right, up)
+        ]
+        seen = np.cross(turned[1], turned[0])
+        if cut.keeping is None or float((seen * np.array(cut.keeping)).sum()) > 0:
+            break
+        side = -side
+    axes = camera.Axes(_point(turned[0]), _point(turned[1]), _point(seen))
+    origin, _ = camera.to_page(projection, middle[None])
+    at = (float(origin[0, 0]), float(origin[0, 1]))
+    return camera.parallel(axes, camera.magnification(projection), at, middle, projection.scale)
+
+
+def _point(array: F64) -> Point:
+    x, y, z = (float(each) + 0.0 for each in array)
+    return (x, y, z)
 
 
 def traces_of(

@@ -18,12 +18,15 @@ from .placement import direction, positive_length
 from .pointing import direction_in, holder_of, point_in
 from .readings import expression, listed, optional
 from .scope import Scope
-from .sections import Cut, Plane
+from .sections import Cut, Plane, Shown
 from .selection import parts_named
 from .specs import Detail
 from .values import Quantity, Vector, kind_of
 
-ROWS = ("section across", "half section across", "stepped section along", "local section across")
+ALONE: dict[str, Shown] = {"removed section across": "removed", "revolved section across": "revolved"}
+"""Rows of sections of which the cut face is drawn alone."""
+
+ROWS = ("section across", "half section across", "stepped section along", "local section across", *ALONE)
 """Rows of the vocabulary that each make one cut."""
 
 _ORIGIN = (0.0, 0.0, 0.0)
@@ -36,13 +39,16 @@ DETAIL_SHARE = 0.15
 
 
 def read_cuts(lines: Sequence[tree.Line], subject: Thing, scope: Scope, problems: Problems) -> tuple[Cut, ...]:
-    """The cuts among a figure's lines, in their order. Paths begin in the subject."""
+    """The cuts among a figure's lines, in their order, but revolved ones, which have no letter, last.
+
+    Paths begin in the subject.
+    """
     found: list[Cut] = []
     for line in lines:
         if line.head.row in ROWS:
             with problems.collecting():
                 found.append(_Reader(line.head, subject, scope).cut())
-    return tuple(found)
+    return tuple(sorted(found, key=lambda cut: cut.shown == "revolved"))
 
 
 def read_details(
@@ -109,7 +115,7 @@ class _Reader:
             case "local section across":
                 return self._local(kept)
             case _:
-                return Cut("full", self._plane(), head.span, None, (), 0.0, kept)
+                return Cut("full", self._plane(), head.span, None, (), 0.0, kept, ALONE.get(head.row, "in view"))
 
     def detail(self, name: str) -> Detail:
         head = self.head

@@ -32,6 +32,9 @@ LETTERS = "ABCDEFGHJKLMNPRSTUVWXYZ"
 _CAP, _BREAK, _STEP = int(FaceOrigin.SECTION_CAP), int(FaceOrigin.BREAK), int(FaceOrigin.STEP)
 
 
+Shown = Literal["in view", "removed", "revolved"]
+
+
 class Plane(Struct, frozen=True):
     """A plane by its unit normal and a point of it, mm in the frame of the figure's subject."""
 
@@ -44,7 +47,8 @@ class Cut(Struct, frozen=True):
 
     full: `plane`. half: what also lies on the side of `beside` that its normal points to. stepped: planes through
     `corners` along the axis `plane.normal`. local: within `diameter` of `plane.through`. `keeping` is the direction of
-    the side that stays, where it is stated.
+    the side that stays, where it is stated. `shown` tells whether a view is cut open, or the cut face is drawn alone:
+    in a view of its own, or turned into the plane of the main view.
     """
 
     kind: Literal["full", "half", "stepped", "local"]
@@ -54,6 +58,7 @@ class Cut(Struct, frozen=True):
     corners: tuple[Point, ...] = ()
     diameter: float = 0.0
     keeping: Point | None = None
+    shown: Shown = "in view"
 
 
 def letter_of(number: int) -> str:

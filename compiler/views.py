@@ -2,15 +2,20 @@
 
 from __future__ import annotations
 
+from typing import Literal
+
 from msgspec import Struct
 from msgspec.structs import replace
 
 from .mistakes import mistake
-from .projections import Viewpoint, unit_projection
+from .projections import Viewpoint, square_to, unit_projection
 from .sections import EDGE_ON, LETTERS, Cut, facing, letter_of
 from .specs import Spec
 
 Point = tuple[float, float, float]
+
+
+_UPRIGHT = 0.5  # a normal steeper than 30 degrees is looked along from above
 
 
 class Window(Struct, frozen=True):
@@ -26,7 +31,8 @@ class View(Struct, frozen=True):
 
     `factor` is its scale over the sheet's. `column` and `row` place it beside the others: the main view stands at 0
     and 0, negative numbers left of it and above. With a `window` no more than that is shown. `title` stands above it.
-    `cuts` are rows of the spec's cuts that open what it shows, `traces` those whose cutting-plane line it has.
+    `cuts` are rows of the spec's cuts that open what it shows, `traces` those whose cutting-plane line it has. Of a
+    removed or revolved section it `shows` the cut faces alone.
     """
 
     name: str
@@ -39,6 +45,7 @@ class View(Struct, frozen=True):
     is_main: bool = False
     cuts: tuple[int, ...] = ()
     traces: tuple[int, ...] = ()
+    shows: Literal["all", "removed", "revolved"] = "all"
 
 
 def views_of(spec: Spec) -> tuple[View, ...]:
@@ -60,7 +67,7 @@ def _looks(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
     """Views by reference arrow, to the right of the others, each under its letter."""
     column = max(view.column for view in views) + 1
     found: list[View] = []
-    taken = {letter_of(number) for number in range(len(spec.cuts))}
+    taken = {letter_of(number) for number, cut in enumerate(spec.cuts) if cut.shown != "revolved"}
     taken |= {detail_letter(number) for number in range(len(spec.details))}
     for number, look in enumerate(spec.looks):
         if look.letter in taken:
@@ -102,16 +109,18 @@ def detail_letter(number: int) -> str:
 
 
 def sectioned(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
-    """Views with a figure's sections dealt out to them.
+    """Views with a figure's sections dealt out to them, and those of removed sections to their right.
 
     A view alone is cut by all. Of several, the one that looks along a cut's normal is cut, under the cut's letters, and
     the first that sees it edge-on has its cutting-plane line. Raises Mistake where no view looks along it.
     """
+    in_view = tuple(number for number, cut in enumerate(spec.cuts) if cut.shown == "in view")
     if len(views) == 1:
-        return (replace(views[0], cuts=tuple(range(len(spec.cuts)))),)
+        return _with_removed((replace(views[0], cuts=in_view),), spec)
     found = list(views)
     sights = [unit_projection(view.viewpoint, 1.0, False).sight for view in views]
-    for number, cut in enumerate(spec.cuts):
+    for number in in_view:
+        cut = spec.cuts[number]
         products = [abs(sum(a * b for a, b in zip(facing(cut), sight, strict=True))) for sight in sights]
         if max(products) < 1.0 - EDGE_ON:
             hint = "a view along its normal shows it; or give it a figure of one view"
@@ -123,7 +132,35 @@ def sectioned(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
         parents = [row for row, product in enumerate(products) if product < EDGE_ON]
         if parents:
             found[parents[0]] = replace(found[parents[0]], traces=(*found[parents[0]].traces, number))
+    return _with_removed(tuple(found), spec)
+
+
+def _with_removed(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
+    """Views and, to their right, one for each removed section; the first that sees it edge-on has its line."""
+    found, column = list(views), max(view.column for view in views) + 1
+    sights = [unit_projection(view.viewpoint, 1.0, False).sight for view in views]
+    for number, cut in enumerate(spec.cuts):
+        if cut.shown != "removed":
+            continue
+        letter, viewpoint = letter_of(number), square_to(_looking(cut))
+        name, title = f"{spec.path} {letter}", f"{letter}\u2013{letter}"
+        found.append(View(name, viewpoint, column, 0, title=title, cuts=(number,), shows="removed"))
+        column += 1
+        normal = facing(cut)
+        for row, sight in enumerate(sights):
+            if abs(sum(a * b for a, b in zip(normal, sight, strict=True))) < EDGE_ON:
+                found[row] = replace(found[row], traces=(*found[row].traces, number))
+                break
     return tuple(found)
+
+
+def _looking(cut: Cut) -> Point:
+    """The direction in which a removed section is looked at: to the side that stays, or along its axis, from above."""
+    x, y, z = cut.plane.normal
+    toward = z if cut.keeping is None and abs(z) > _UPRIGHT else 0.0
+    if cut.keeping is not None:
+        toward = -(x * cut.keeping[0] + y * cut.keeping[1] + z * cut.keeping[2])
+    return (-x, -y, -z) if toward > 0 else (x, y, z)
 
 
 def cuts_of(view: View, spec: Spec) -> tuple[Cut, ...]:

@@ -386,6 +386,20 @@ FIGURE_ROWS: tuple[Row, ...] = (
         "local section across y at 0 round (0, 0, 40 mm) diameter 30 mm",
     ),
     Row(
+        "removed section across",
+        "removed section across <plane:axis> [at <at:any>] [keeping <keeping:direction>]",
+        ("figure",),
+        "draws the cut faces of a plane alone, beside the views, with letters and cutting-plane line",
+        "removed section across x at 40 mm",
+    ),
+    Row(
+        "revolved section across",
+        "revolved section across <plane:axis> [at <at:any>] [keeping <keeping:direction>]",
+        ("figure",),
+        "draws the cut faces of a plane turned into the plane of the first view, in narrow lines over it",
+        "revolved section across x at 60 mm",
+    ),
+    Row(
         "uncut",
         "uncut <parts:list>",
         ("figure",),
