@@ -6,7 +6,7 @@ sunk into the plate; `smooth` is one dense bumpy body. Sizes are in mm.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -17,7 +17,7 @@ from platewright.backend.lines.model import Candidates, Pieces, View
 from platewright.backend.lines.topology import neighbours
 from platewright.backend.lines.view import see_view
 from platewright.backend.lines.visibility import cut
-from platewright.compiler.solids.recipe import Block, Cylinder, Prism, Sphere, Torus
+from platewright.compiler.solids.recipe import Block, Cone, Cylinder, Prism, Sphere, Torus
 from platewright.compiler.solids.transform import translate
 from support.geometries import flattened, leaf, shifted
 from support.raster_models import free_patch, panel
@@ -110,7 +110,9 @@ def fitted(geometry: Geometry, sight: Sequence[float], size: float = 100.0) -> P
     return camera.parallel(view, magnification, (PAGE.width / 2, PAGE.height / 2), anchor)
 
 
-def fitted_central(geometry: Geometry, sight: Sequence[float], distance: float = 1.5, size: float = 100.0) -> Projection:
+def fitted_central(
+    geometry: Geometry, sight: Sequence[float], distance: float = 1.5, size: float = 100.0
+) -> Projection:
     """A central projection along `sight` from `distance` diagonals away, the geometry about `size` mm large."""
     low, high = geometry.vertices.min(axis=0), geometry.vertices.max(axis=0)
     diagonal = float(np.linalg.norm(high - low))
@@ -141,7 +143,9 @@ def holed_plate(side: float, thickness: float, holes: int, diameter: float, rung
 
 
 def nut(across: float, bore: float, height: float, rung: float) -> Mesh:
-    return made(add(Prism(6, across, height)), cut_away(Cylinder(bore, 4 * height), translate((0, 0, -height))), rung=rung)
+    return made(
+        add(Prism(6, across, height)), cut_away(Cylinder(bore, 4 * height), translate((0, 0, -height))), rung=rung
+    )
 
 
 def mechanical(columns: int = 1, rows: int = 1, rung: float = 0.05, seed: int = 0) -> Geometry:
@@ -172,7 +176,7 @@ def mechanical_parts(columns: int = 1, rows: int = 1, rung: float = 0.05, seed: 
                 if k >= 17:
                     turn = turned_about(random.normal(size=3), random.uniform(0, 360))
                     lift = random.uniform(20.0, 50.0) if k < 24 else 3.1
-                parts.append((f"{name}.part[{k + 1}]", mesh, placed_at(*(base + (x, y, lift)), turn)))
+                parts.append((f"{name}.part[{k + 1}]", mesh, placed_at(*(base + np.array((x, y, lift))), turn)))
     return parts
 
 
@@ -191,8 +195,12 @@ def smooth(n_triangles: int, seed: int = 3) -> Geometry:
     sharpness, height = random.uniform(6, 30, 40), random.uniform(-0.22, 0.3, 40)
     rings = round(np.sqrt(n_triangles / 4))
     around = 2 * rings
-    polar, azimuth = np.meshgrid(np.pi * np.arange(1, rings) / rings, 2 * np.pi * np.arange(around) / around, indexing="ij")
-    unit = np.stack([np.sin(polar) * np.cos(azimuth), np.sin(polar) * np.sin(azimuth), np.cos(polar)], -1).reshape(-1, 3)
+    polar, azimuth = np.meshgrid(
+        np.pi * np.arange(1, rings) / rings, 2 * np.pi * np.arange(around) / around, indexing="ij"
+    )
+    unit = np.stack([np.sin(polar) * np.cos(azimuth), np.sin(polar) * np.sin(azimuth), np.cos(polar)], -1).reshape(
+        -1, 3
+    )
     unit = np.concatenate([unit, [[0.0, 0.0, 1.0], [0.0, 0.0, -1.0]]])
     radius = np.full(len(unit), 50.0)
     for k in range(40):
@@ -225,3 +233,106 @@ def free_mesh(key: str, vertices: F64, faces: np.ndarray, closed: bool = True) -
         key, vertices, faces, normals[faces].astype(np.float32), np.zeros(n, np.int32), np.zeros(n, np.uint8),
         np.full(n, -1, np.int32), kinds, free_patch(), closed,
     )  # fmt: skip
+
+
+# --- traps: contact, penetration, thin sheets, many holes
+
+
+def touching_cubes() -> Geometry:
+    """Six cubes that touch by faces, one of them by part of a face, and one that stands alone."""
+    cube = made(add(Block((20.0, 20.0, 20.0))))
+    corners = ((0, 0, 0), (20, 0, 0), (0, 20, 0), (0, 0, 20), (33, 27, 0), (20, -5, 20))
+    return scene([(f"cube[{k + 1}]", cube, placed_at(*at)) for k, at in enumerate(corners)])
+
+
+def flush_pins(rung: float = 0.02) -> Geometry:
+    """A plate with nine holes, filled by pins that share its facets; every other one stands out."""
+    plate = holed_plate(60.0, 10.0, 3, 10.0, rung)
+    pins = [made(add(Cylinder(10.0, length)), rung=rung) for length in (25.0, 10.0)]
+    spots = [(10.0 + 20.0 * (k // 3), 10.0 + 20.0 * (k % 3)) for k in range(9)]
+    filled = [(f"pin[{k + 1}]", pins[k % 2], placed_at(x, y, -10.0)) for k, (x, y) in enumerate(spots)]
+    return scene([("plate", plate, placed_at(0, 0, 0)), *filled])
+
+
+def fastened(rung: float = 0.02) -> Geometry:
+    """A bolt through two washers and a plate with a nut on it, all flush."""
+    washer = made(add(Cylinder(24.0, 2.0)), cut_away(Cylinder(10.0, 8.0), translate((0, 0, -3.0))), rung=rung)
+    bolt = made(add(Cylinder(10.0, 40.0)), add(Prism(6, 16.0, 7.0), translate((0, 0, -7.0))), rung=rung)
+    return scene([
+        ("plate", holed_plate(40.0, 8.0, 1, 10.0, rung), placed_at(-20, -20, 8)),
+        ("lower", washer, placed_at(0, 0, -2)),
+        ("bolt", bolt, placed_at(0, 0, -2)),
+        ("upper", washer, placed_at(0, 0, 8)),
+        ("nut", nut(16.0, 10.0, 8.0, rung), placed_at(0, 0, 10)),
+    ])  # fmt: skip
+
+
+def penetrating(seed: int = 5, n: int = 10, rung: float = 0.05) -> Geometry:
+    """Blocks, cylinders, prisms, spheres and cones at random, most of them in others."""
+    random = np.random.default_rng(seed)
+    shapes = (
+        Block((30.0, 20.0, 10.0)),
+        Cylinder(12.0, 40.0),
+        Prism(6, 14.0, 30.0),
+        Sphere(22.0),
+        Cone(20.0, 6.0, 30.0),
+    )
+    meshes = [made(add(shape), rung=rung) for shape in shapes]
+    return scene([
+        (
+            f"part[{k + 1}]", meshes[k % 5],
+            placed_at(*random.uniform(-20, 20, 3), turned_about(random.normal(size=3), random.uniform(0, 360))),
+        )
+        for k in range(n)
+    ])  # fmt: skip
+
+
+def thin_sheets() -> Geometry:
+    """Eight sheets 0.05 mm thick, 0.05 mm apart, each turned a little."""
+    sheet = made(add(Block((40.0, 30.0, 0.05))))
+    return scene([
+        (f"sheet[{k + 1}]", sheet, placed_at(3.0 * k, 2.0 * k, 0.1 * k, turned_about((0, 0, 1), 7.0 * k)))
+        for k in range(8)
+    ])  # fmt: skip
+
+
+def holed_lids(rung: float = 0.02) -> Geometry:
+    """Lids 60 mm across with 6, 12 and 24 holes on a circle of 48 mm."""
+
+    def lid(n: int) -> Mesh:
+        angles = 0.1 + 2.0 * np.pi * np.arange(n) / n
+        at = [translate((24.0 * float(np.cos(a)), 24.0 * float(np.sin(a)), -4.0)) for a in angles]
+        return made(add(Cylinder(60.0, 4.0)), cut_away(Cylinder(4.0, 12.0), *at), rung=rung)
+
+    return scene([
+        (f"lid[{k + 1}]", lid(n), placed_at(62.0 * k, 0, 0, turned_about((0, 0, 1), 11.0 * k)))
+        for k, n in enumerate((6, 12, 24))
+    ])  # fmt: skip
+
+
+TRAPS: dict[str, Callable[[], Geometry]] = {
+    "touching cubes": touching_cubes,
+    "flush pins": flush_pins,
+    "fastened": fastened,
+    "penetrating": penetrating,
+    "thin sheets": thin_sheets,
+    "holed lids": holed_lids,
+}
+
+FORMS = ("as built", "central", "rotated", "rotated, float32", "float32", "far off")
+_TURN = (0.3, -0.5, 0.81), 37.0
+_HELD_OUT_TURN = (-0.62, 0.27, 0.4), 118.0
+
+
+def trap(name: str, form: str, sight: Sequence[float], is_held_out: bool = False) -> tuple[Geometry, Projection]:
+    """A trap in one of `FORMS`, and a projection that sees it from the same side in all of them."""
+    geometry, direction = TRAPS[name](), np.asarray(sight, float)
+    if form.startswith("rotated"):
+        turn = turned_about(*(_HELD_OUT_TURN if is_held_out else _TURN))
+        geometry, direction = moved(geometry, turn), turn @ direction
+    if form == "far off":
+        geometry = moved(geometry, shift=(3.4e5, -2.1e5, 1.7e5))
+    if form.endswith("float32"):
+        geometry = rounded_to_float32(geometry)
+    fit = fitted_central if form == "central" else fitted
+    return geometry, fit(geometry, tuple(direction))
