@@ -109,6 +109,7 @@ class Opening:
         """The mesh that is left of one copy; see `flatten.Alter`."""
         is_whole = self.is_whole(entry, placement)
         if not mesh.closed:
+            self.n_left += 1
             if not is_whole:
                 self.open.append(entry)
             return mesh
@@ -155,6 +156,13 @@ class Opening:
             problems.error("section-misses", cuts[-1].span, sentence, "move it, or look at what is `uncut`")
 
 
+def is_edge_on(cut: Cut, sight: Point) -> bool:
+    """Whether a view along a unit direction sees the cut as a line: of a stepped one, with its steps."""
+    if cut.kind == "stepped":
+        return abs(_dot(cut.plane.normal, sight)) > 1.0 - EDGE_ON
+    return abs(_dot(facing(cut), sight)) < EDGE_ON
+
+
 def trace_of(cut: Cut, away: Point, sight: Point, vertices: F64, past: float) -> F64:
     """World points (k,3) of the cutting-plane line in a view along `sight` that sees the cut edge-on.
 
@@ -167,7 +175,7 @@ def trace_of(cut: Cut, away: Point, sight: Point, vertices: F64, past: float) ->
     first, last = (corners[0], corners[-1])
     if _dot(first, along) > _dot(last, along):
         first, last, corners = last, first, corners[::-1]
-    ends = (_slid(first, along, low), *(corners if len(corners) > 1 else ()), _slid(last, along, high))
+    ends = (_slid(first, along, low), *corners[1:-1], _slid(last, along, high))
     return np.array(ends, np.float64)
 
 

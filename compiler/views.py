@@ -9,7 +9,7 @@ from msgspec.structs import replace
 
 from .mistakes import mistake
 from .projections import Viewpoint, square_to, unit_projection
-from .sections import EDGE_ON, LETTERS, Cut, facing, letter_of
+from .sections import EDGE_ON, LETTERS, Cut, facing, is_edge_on, letter_of
 from .specs import Spec
 
 Point = tuple[float, float, float]
@@ -129,7 +129,7 @@ def sectioned(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
         letter = letter_of(number)
         title = f"{letter}\u2013{letter}"
         found[shown] = replace(found[shown], cuts=(*found[shown].cuts, number), title=found[shown].title or title)
-        parents = [row for row, product in enumerate(products) if product < EDGE_ON]
+        parents = [row for row, sight in enumerate(sights) if is_edge_on(cut, sight)]
         if parents:
             found[parents[0]] = replace(found[parents[0]], traces=(*found[parents[0]].traces, number))
     return _with_removed(tuple(found), spec)
@@ -146,11 +146,9 @@ def _with_removed(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
         name, title = f"{spec.path} {letter}", f"{letter}\u2013{letter}"
         found.append(View(name, viewpoint, column, 0, title=title, cuts=(number,), shows="removed"))
         column += 1
-        normal = facing(cut)
-        for row, sight in enumerate(sights):
-            if abs(sum(a * b for a, b in zip(normal, sight, strict=True))) < EDGE_ON:
-                found[row] = replace(found[row], traces=(*found[row].traces, number))
-                break
+        parents = [row for row, sight in enumerate(sights) if is_edge_on(cut, sight)]
+        if parents:
+            found[parents[0]] = replace(found[parents[0]], traces=(*found[parents[0]].traces, number))
     return tuple(found)
 
 
