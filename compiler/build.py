@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
+from functools import partial
 from typing import Generic, TypeVar
 
 from msgspec import Struct
@@ -19,7 +20,7 @@ from .parameters import Setting, module_scope, outermost
 from .project import Files
 from .projections import Viewpoint
 from .readings import parameters
-from .records import Tables
+from .records import Tables, table_of
 from .scope import Scope
 from .viewpoints import read_viewpoint
 
@@ -86,7 +87,8 @@ def build_model(files: Files, modules: Modules, settings: tuple[Setting, ...]) -
             elif declaration.kind == "viewpoint":
                 viewpoints[key] = _described(read_viewpoint, declaration, scope)
             elif declaration.kind == "lighting":
-                lightings[key] = _described(read_lighting, declaration, scope)
+                read = partial(_lighting, files.tables, module.file)
+                lightings[key] = _described(read, declaration, scope)
             elif _has_defaults(declaration):
                 with problems.collecting():
                     if declaration.kind == "outline":
@@ -110,6 +112,10 @@ def build_model(files: Files, modules: Modules, settings: tuple[Setting, ...]) -
     sources = instances.sources
     model = Model(files, modules, scopes, things, roots, viewpoints, lightings, is_whole, sources, instantiate)
     return model, problems.all()
+
+
+def _lighting(tables: Tables, file: str, line: tree.Line, scope: Scope, problems: Problems) -> Sources:
+    return read_lighting(line, scope, lambda reading: table_of(reading, tables, file), problems)
 
 
 def _described(

@@ -18,6 +18,7 @@ from platewright.lang.problems import Problem, is_error
 from . import limits
 from .build import Model
 from .emphasis import emphasis_of
+from .enclosure import enclosing
 from .explosion import Explosion, explode, moved, trace_lines
 from .extent import box_corners
 from .extremes import Moved, moved_by, renumbered
@@ -27,7 +28,7 @@ from .frames import RESOLUTION_DPI, WIDTH_MM, Content, Frame, content, frame_of,
 from .graph import Entry, Point
 from .interruptions import Interrupting
 from .layout import Box
-from .lightings import lights_for
+from .lightings import lights_for, paired
 from .mistakes import Mistake, Problems, confined, mistake
 from .overhang import NONE, Around, Extent, larger, past_arrows, past_centre_lines, round_extent
 from .panels import (
@@ -364,6 +365,7 @@ class _Planner:
             if shot.view.window is None:
                 self._seen(projection, spot.place, vertices)
             panel = self._panel(shot.view, projection, spot.place, shape.geometry, shapes.index(shape), frame)
+            self._looks_from_outside(panel, shape.geometry)
             extremes = tuple(
                 contract.ExtremePosition(len(shapes) + others.index(each), each.rows) for each in self._extremes(shot)
             )
@@ -400,13 +402,14 @@ class _Planner:
             () if symbol is None else (symbol,),
         )
         geometries, materials = [shape.geometry for shape in shapes], shapes[0].materials
+        surfaces = (*shapes[0].surfaces, *(surface for other in others for surface in other.flattened.surfaces))
         for other in others:
             geometries.append(renumbered(other.flattened.geometry, len(materials)))
             materials += other.flattened.materials
         if others and not spec.manner.is_of_lines:
             sentence = "an extreme position is drawn in lines, which this figure has none of"
             self.problems.warn("no-effect", spec.extremes[0].span, sentence, "say `drawn as lines and tone`")
-        return contract.Job(tuple(geometries), materials, sheet)
+        return contract.Job(tuple(geometries), materials, paired(sheet, spec.sources, surfaces))
 
     def _panel(
         self,
@@ -451,6 +454,17 @@ class _Planner:
             sentence = f"a {cut.shown} section is drawn in lines, which this figure has none of"
             raise mistake("wrong-form", cut.span, sentence, "say `drawn as lines`")
         return style if style.drawn_as == "tints" else replace(style, drawn_as="lines")
+
+    def _looks_from_outside(self, panel: contract.Panel, geometry: contract.Geometry) -> None:
+        """An eye within a solid that is shown is a problem: nothing of it, and little else, could be seen."""
+        if panel.projection.eye is None:
+            return
+        hidden = np.flatnonzero(panel.emphasis == contract.Emphasis.HIDE) if panel.emphasis is not None else ()
+        row = enclosing(geometry, panel.projection.eye, frozenset(int(each) for each in hidden))
+        if row is not None:
+            sentence = f"the eye stands inside `{geometry.nodes[row].path}`"
+            hint = "move it out, cut the part open with a section, or `hide` it"
+            raise mistake("eye-inside", self.spec.span, sentence, hint)
 
     def _seen(self, projection: contract.Projection, place: tuple[float, float, float, float], vertices: F64) -> None:
         """A view with nothing in it is a problem; one whose subject leaves its place says so."""

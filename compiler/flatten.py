@@ -52,10 +52,11 @@ PROOF_PARTS = 200.0
 
 
 class Flattened(Struct, frozen=True, eq=False):
-    """World-space triangles and the materials their nodes refer to."""
+    """World-space triangles, the materials their nodes refer to, and the surfaces that these were made from."""
 
     geometry: Geometry
     materials: tuple[Material, ...]
+    surfaces: tuple[Surface, ...]
 
 
 def flatten(
@@ -82,7 +83,7 @@ def flatten(
     surfaces = list(dict.fromkeys(entry.thing.surface for entry in entries if isinstance(entry.thing, Solid)))
     nodes = _nodes(entries, placements, meshes, of_entry, surfaces)
     geometry = _placed(nodes, placements, meshes, of_entry, sources)
-    return Flattened(geometry, tuple(material_of(surface) for surface in surfaces)), problems
+    return Flattened(geometry, tuple(map(material_of, surfaces)), tuple(surfaces)), problems
 
 
 def material_of(surface: Surface) -> Material:

@@ -54,7 +54,12 @@ class Instances(Struct):
         """The surface of a material."""
         key = (module.file, declaration.name)
         if key not in self._surfaces:
-            self._surfaces[key] = read_material(declaration.line, self.scopes[module.file], self.problems)
+            self._surfaces[key] = read_material(
+                declaration.line,
+                self.scopes[module.file],
+                lambda reading: table_of(reading, self.tables, module.file),
+                self.problems,
+            )
         return self._surfaces[key]
 
     def resolve(self, module: Module, written: tree.Path | tree.Call, scope: Scope) -> Thing:

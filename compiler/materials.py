@@ -7,6 +7,7 @@ n and k; sources beside the table.
 from __future__ import annotations
 
 import re
+from typing import TYPE_CHECKING
 
 from msgspec import Struct
 from platewright.lang import tree
@@ -14,9 +15,12 @@ from platewright.lang.units import DENSITY, NUMBER
 
 from .expressions import quantity, text
 from .mistakes import Problems, mistake
-from .readings import expression, name, word
+from .readings import LATER, expression, name, word
 from .scope import Scope
 from .values import shortened
+
+if TYPE_CHECKING:
+    from .spectra import Tabled
 
 RGB = tuple[float, float, float]
 
@@ -24,7 +28,8 @@ RGB = tuple[float, float, float]
 class Surface(Struct, frozen=True):
     """A material with its values fixed. `colour` is 8-bit sRGB, `reflectance` linear RGB at normal incidence.
 
-    gloss runs from 0, matt, to 1, a mirror; density in g/cm3, 0 where none is stated.
+    gloss runs from 0, matt, to 1, a mirror; density in g/cm3, 0 where none is stated. `metal` is the name of a bare
+    metal; `spectrum` a measured reflectance by nm from 360 to 830, empty where there is none.
     """
 
     name: str
@@ -33,6 +38,8 @@ class Surface(Struct, frozen=True):
     gloss: float
     is_metal: bool
     density: float
+    metal: str = ""
+    spectrum: tuple[float, ...] = ()
 
 
 DIELECTRIC: RGB = (0.04, 0.04, 0.04)
@@ -42,10 +49,10 @@ PLAIN = Surface("", (255, 255, 255), DIELECTRIC, 0.4, False, 0.0)
 """What a part is made of when nothing is said: plain white, 40 % gloss."""
 
 
-def read_material(line: tree.Line, scope: Scope, problems: Problems) -> Surface:
+def read_material(line: tree.Line, scope: Scope, tabled: Tabled, problems: Problems) -> Surface:
     """The surface a `material` declaration describes; what is wrong in it is reported and left at its default."""
     colour: tuple[int, int, int] | None = None
-    metal = ""
+    metal, spectrum = "", ()  # type: str, tuple[float, ...]
     gloss, density = PLAIN.gloss, 0.0
     for below in line.lines:
         with problems.collecting():
@@ -54,18 +61,26 @@ def read_material(line: tree.Line, scope: Scope, problems: Problems) -> Surface:
                     colour = _colour(expression(below.head, "colour"), scope)
                 case "metal":
                     metal = word(below.head, "metal")
+                case "reflectance" if below.head.row not in LATER:
+                    from . import spectra  # loads tables and what reads them, which few scenes need
+
+                    spectrum = spectra.tabulated(tabled(below.head), True, problems)
                 case "gloss":
                     gloss = _share(expression(below.head, "gloss"), scope)
                 case "density":
                     density = _density(expression(below.head, "density"), scope)
     named = name(line.head).text
-    if not metal:
-        return Surface(named, colour or PLAIN.colour, DIELECTRIC, gloss, False, density)
-    for below in line.lines:
-        if below.word == "colour":
-            sentence = "a metal takes its colour from its measured reflectance; `colour` has no effect beside `metal`"
-            problems.warn("no-effect", below.span, sentence, "leave one of the two out")
-    return Surface(named, _encoded(METALS[metal]), METALS[metal], gloss, True, density)
+    if metal or spectrum:
+        owner = "metal" if metal else "reflectance"
+        for below in line.lines:
+            if below.word == "colour" or (metal and below.word == "reflectance"):
+                sentence = f"`{owner}` gives the colour by what was measured; `{below.word}` has no effect beside it"
+                problems.warn("no-effect", below.span, sentence, "leave one of the two out")
+    if metal:
+        return Surface(named, _encoded(METALS[metal]), METALS[metal], gloss, True, density, metal)
+    if spectrum:
+        colour = _encoded(spectra.daylight_colour(spectrum))
+    return Surface(named, colour or PLAIN.colour, DIELECTRIC, gloss, False, density, "", spectrum)
 
 
 def linear(colour: tuple[int, int, int]) -> RGB:

@@ -43,8 +43,8 @@ class Files(Struct, frozen=True):
     is_readable: bool = True
 
 
-POINT_TABLES = ("points over", "curve over", "relief")
-"""Words whose table holds points, so that its first column need not name the rows."""
+POINT_TABLES = ("points over", "curve over", "relief", "reflectance", "light from", "lamp", "ambient")
+"""Words whose table holds points or a spectrum, so that its first column need not name the rows."""
 
 _REASONS = {
     "missing": "there is no file `{name}`",

@@ -104,8 +104,11 @@ CODES: Mapping[str, str] = MappingProxyType(
         "torus-meets-itself": "the tube of a torus is thicker than its ring",
         # --- figures, light, facts
         "no-projection": "a viewpoint states no projection, or two",
+        "eye-inside": "an eye stands inside a solid",
+        "many-lines": "a line drawing has more lines than can be told apart",
         "eye-on-target": "an eye stands on what it looks at",
         "no-light": "a lighting has no source",
+        "coarse-spectrum": "a measured spectrum leaves wide gaps",
         "no-effect": "something is stated that changes nothing",
         "does-not-fit": "a figure's content does not fit its page",
         "nothing-to-show": "a figure has no subject",

@@ -204,7 +204,6 @@ MATERIAL_ROWS: tuple[Row, ...] = (
         ("material",),
         "the reflectance by wavelength, over a table",
         'reflectance over "paint.csv"',
-        later=True,
         is_once=True,
     ),
     Row(

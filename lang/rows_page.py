@@ -4,30 +4,32 @@ from __future__ import annotations
 
 from .row import Row
 
+_RADIATED = "{temperature <temperature:temperature> / illuminant <illuminant:text> / spectrum over <table:text>}"
 _CORNERS = "upper left|upper right|lower left|lower right|left|right|above|eye"
 
 LIGHT_ROWS: tuple[Row, ...] = (
     Row(
         "light from",
-        f"light from <corner:{_CORNERS}> [illuminance <illuminance:illuminance>]",
+        f"light from <corner:{_CORNERS}> [illuminance <illuminance:illuminance>] [{_RADIATED}]",
         ("lighting",),
         "a distant light that keeps its place in the picture",
         "light from upper left",
     ),
     Row(
         "sun",
-        "sun elevation <elevation:angle> azimuth <azimuth:angle> [illuminance <illuminance:illuminance>]",
+        "sun elevation <elevation:angle> azimuth <azimuth:angle> [turbidity <turbidity:number>] "
+        "[illuminance <illuminance:illuminance>]",
         ("lighting",),
         "the sun; azimuth clockwise from north, which is +y",
         "sun elevation 40 deg azimuth 200 deg",
     ),
     Row(
         "sun on",
-        "sun on <date:date> at <clock:clock> place <latitude:latitude> <longitude:longitude>",
+        "sun on <date:date> at <clock:clock> place <latitude:latitude> <longitude:longitude> "
+        "[turbidity <turbidity:number>] [illuminance <illuminance:illuminance>]",
         ("lighting",),
         "the sun by date, time of day in UTC, and place",
         "sun on 2026-06-21 at 12:30 place 52.5 degN 13.4 degE",
-        later=True,
     ),
     Row(
         "sky",
@@ -35,14 +37,13 @@ LIGHT_ROWS: tuple[Row, ...] = (
         ("lighting",),
         "light from the whole sky",
         "sky overcast illuminance 8 klx",
-        later=True,
     ),
     Row(
         "lamp",
-        "lamp at <point:point> flux <flux:flux>",
+        f"lamp at <point:point> flux <flux:flux> [{_RADIATED}]",
         ("lighting",),
         "a small lamp that shines all round",
-        "lamp at (0, -300 mm, 500 mm) flux 800 lm",
+        "lamp at (0, -300 mm, 500 mm) flux 800 lm temperature 3000 K",
     ),
     Row(
         "panel",
@@ -53,14 +54,19 @@ LIGHT_ROWS: tuple[Row, ...] = (
         "panel at (0, 0, 900 mm) facing (0, 0, -1) size 600 mm by 600 mm luminance 5000 cd/m2",
         later=True,
     ),
-    Row("ambient", "ambient <illuminance:illuminance>", ("lighting",), "even light from all round", "ambient 200 lx"),
+    Row(
+        "ambient",
+        f"ambient <illuminance:illuminance> [{_RADIATED}]",
+        ("lighting",),
+        "even light from all round",
+        "ambient 200 lx",
+    ),
     Row(
         "white point",
         "white point <temperature:temperature>",
         ("lighting",),
         "the light that counts as white, by its correlated colour temperature",
         "white point 5600 K",
-        later=True,
         is_once=True,
     ),
     Row(

@@ -23,7 +23,10 @@ FOLDERS = ("lang", "compiler", "backend")
 DRIVER = "compiler.driver"
 # What of the backend the compiler may name: values and their makers, and the letters, for those that are made as solids
 # are the same as those that are drawn.
-DOOR = ("backend.contract", "backend.camera", "backend.lettering.type")
+SPECTRA = ("air", "grid", "illuminants", "optics", "sky", "sun", "tristimulus", "upsampling")
+DOOR = (
+    "backend.contract", "backend.camera", "backend.lettering.type", *(f"backend.spectra.{each}" for each in SPECTRA),
+)  # fmt: skip
 KERNELS = ("backend.raster.", "backend.lines.", "backend.converter.")
 HEAVY_FOR_LANG = ("numpy", "PIL", "numba", "manifold3d", "rich")
 SHIPPED_WITH = {"PIL": "pillow", "llvmlite": "numba", "fontTools": "fonttools"}

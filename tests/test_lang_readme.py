@@ -24,6 +24,7 @@ BESIDE = {
     "fasteners.plate": "platewright 1\n\npart screw(d = 5 mm)\n    add cylinder diameter d length 3 * d\n",
     "holes.csv": "name,outside mm,bore mm\nsmall,20,5\nlarge,30,8.4\n",
     "heights.csv": "x mm,y mm,z mm\n0,0,2\n20,0,4\n40,0,3\n0,30,5\n20,30,2\n40,30,6\n",
+    "paint.csv": "wavelength nm,reflectance %\n" + "".join(f"{nm},{nm // 10}\n" for nm in range(380, 781, 20)),
     "sizes.csv": "name,rim mm,opened\nsmall,120,no\nlarge,300,yes\n",
     "route.csv": "x mm,y mm,z mm\n0,0,0\n40,0,0\n40,30,0\n40,30,40\n80,30,40\n",
     "profile.csv": "x mm,y mm\n12,0\n5,10\n-9,8\n-9,-8\n5,-10\n12,0\n",
