@@ -47,6 +47,11 @@ class Drawn:
     measures: tuple[Measure, ...]
     thin: tuple[tuple[float, float], ...] = ()
 
+    @property
+    def n_lines(self) -> int:
+        """How many straight stretches of lines there were to be judged, in all panels."""
+        return sum(len(each.seen.candidates) for each in self.lines)
+
 
 def line_list(drawn: Drawn, job: Job) -> tuple[DrawnLine, ...]:
     """Every line of the panels drawn in lines, in the order they were joined in."""

@@ -21,6 +21,10 @@ KINDS = ("svg", "pdf", "eps", "png", "tiff")
 """Kinds of file that a figure can be drawn to."""
 
 
+MOST_LINES = 1_000_000
+"""Lines a drawing may be made of without a warning, hidden ones with them."""
+
+
 @dataclass(frozen=True, slots=True)
 class Wanted:
     """What a draw is asked for. `out` None stands for the folder `figures` beside the scene."""
@@ -117,10 +121,19 @@ def _unit(model: Model, figure: str, variant: Variant | None, run: _Run, steps: 
     content = {f"{figure}.{kind}": sheet.encode(drawn, job, kind) for kind in dict.fromkeys(kinds)}
     if run.wanted.record:
         content[f"{figure}.record.json"] = record_bytes(job, drawn.measures, sheet.line_list(drawn, job))
+    if drawn.n_lines > MOST_LINES:
+        run.session.findings.add((_too_many(model, figure, drawn.n_lines),), variant)
     if drawn.thin:
         run.session.findings.add((_too_thin(model, figure, drawn.thin, job.sheet.page.resolution),), variant)
     folder = run.out if variant is None else run.out / variant.name
     return {folder / name: encoded for name, encoded in content.items()}
+
+
+def _too_many(model: Model, figure: str, n_lines: int) -> Problem:
+    """A warning that a drawing has more lines than a page can show."""
+    span = next(each.span for each in model.figures if each.name == figure)
+    sentence = f"{n_lines:,} lines may be drawn in this figure, more than {MOST_LINES:,}"
+    return Problem("many-lines", Severity.WARNING, span, sentence, "draw less of it, or draw it as tone", (), figure)
 
 
 def _too_thin(model: Model, figure: str, thin: tuple[tuple[float, float], ...], resolution: float) -> Problem:
