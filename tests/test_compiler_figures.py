@@ -380,3 +380,21 @@ def test_the_series_of_standard_scales_is_that_of_the_standard() -> None:
         assert any(abs(each - scale) < 1e-12 for scale in STANDARD_SCALES), each
     assert list(STANDARD_SCALES) == sorted(STANDARD_SCALES, reverse=True)
     assert built(BOX).problems == []
+
+
+def test_an_eye_inside_a_solid_is_a_problem_unless_the_solid_is_hidden_or_hollow_there() -> None:
+    text = (
+        "part shell\n    add block (40 mm, 40 mm, 40 mm)\n    cut block (30 mm, 30 mm, 30 mm) at (0, 0, 5 mm)\n"
+        "part post\n    add block (4 mm, 4 mm, 10 mm)\n"
+        "assembly a\n    place shell\n    place post at (0, 0, 10 mm)\n"
+        "viewpoint wall\n    eye (18 mm, 0, 20 mm) toward (0, 0, 20 mm)\n    angle of view 60 deg\n"
+        "viewpoint hollow\n    eye (12 mm, 0, 15 mm) toward (0, 0, 15 mm)\n    angle of view 60 deg\n"
+        "figure f\n    show a from {}\n    size 60 mm by 60 mm\n{}"
+    )
+
+    def problems(viewpoint: str, line: str) -> list[str]:
+        return [f"{each.code}: {each.sentence}" for each in checked(text.format(viewpoint, line)).problems]
+
+    assert problems("wall", "")[-1] == "eye-inside: the eye stands inside `a.shell`"
+    for viewpoint, line in (("hollow", ""), ("wall", "    hide shell\n")):
+        assert not [each for each in problems(viewpoint, line) if each.startswith("eye-inside")]
