@@ -20,7 +20,6 @@ from .build import Model
 from .emphasis import emphasis_of
 from .enclosure import enclosing
 from .explosion import Explosion, explode, moved, trace_lines
-from .enclosure import enclosing
 from .extent import box_corners
 from .extremes import Moved, moved_by, renumbered
 from .filling import report_filling
@@ -367,7 +366,6 @@ class _Planner:
                 self._seen(projection, spot.place, vertices)
             panel = self._panel(shot.view, projection, spot.place, shape.geometry, shapes.index(shape), frame)
             self._looks_from_outside(panel, shape.geometry)
-            self._looks_from_outside(panel, shape.geometry)
             extremes = tuple(
                 contract.ExtremePosition(len(shapes) + others.index(each), each.rows) for each in self._extremes(shot)
             )
@@ -456,17 +454,6 @@ class _Planner:
             sentence = f"a {cut.shown} section is drawn in lines, which this figure has none of"
             raise mistake("wrong-form", cut.span, sentence, "say `drawn as lines`")
         return style if style.drawn_as == "tints" else replace(style, drawn_as="lines")
-
-    def _looks_from_outside(self, panel: contract.Panel, geometry: contract.Geometry) -> None:
-        """An eye within a solid that is shown is a problem: nothing of it, and little else, could be seen."""
-        if panel.projection.eye is None:
-            return
-        hidden = np.flatnonzero(panel.emphasis == contract.Emphasis.HIDE) if panel.emphasis is not None else ()
-        row = enclosing(geometry, panel.projection.eye, frozenset(int(each) for each in hidden))
-        if row is not None:
-            sentence = f"the eye stands inside `{geometry.nodes[row].path}`"
-            hint = "move it out, cut the part open with a section, or `hide` it"
-            raise mistake("eye-inside", self.spec.span, sentence, hint)
 
     def _looks_from_outside(self, panel: contract.Panel, geometry: contract.Geometry) -> None:
         """An eye within a solid that is shown is a problem: nothing of it, and little else, could be seen."""
