@@ -58,6 +58,25 @@ def test_hidden_lines_of_ghosts_are_not_drawn() -> None:
     assert LineClass.HIDDEN_OUTLINE in lengths(lines, "pot.foot")
 
 
+def test_edges_that_face_away_are_drawn_as_hidden_ones() -> None:
+    model = "part b\n    add block (40 mm, 30 mm, 20 mm)\n"
+    pocket = "    cut block (14 mm, 10 mm, 8 mm) at (0, 12 mm, 6 mm)\n"
+    rest = "figure f\n    show b from front\n    scale 1:1\n    hidden edges dashed\n"
+    job = planned(model + pocket + rest, "f")
+    lines = sheet.line_list(sheet.draw(job, ("svg",)), job)
+    # A pocket in the back: its rim of 14 mm by 8 mm, its floor straight before it.
+    hidden = [each.length for each in lines if each.line_class is LineClass.HIDDEN_EDGE]
+    assert sum(hidden) == pytest.approx(44, abs=1e-6) and not any(
+        each.is_visible for each in lines if each.line_class is LineClass.HIDDEN_EDGE
+    )
+    plain = planned(model + rest.replace("from front", ""), "f")
+    cube = sheet.line_list(sheet.draw(plain, ("svg",)), plain)
+    scale = plain.sheet.panels[0].projection.scale
+    back = [each.length for each in cube if each.line_class is LineClass.HIDDEN_EDGE]
+    # In an isometric view the three edges at the far corner, along the axes at the scale stated.
+    assert sum(back) == pytest.approx((40 + 30 + 20) * scale, abs=1e-6)
+
+
 @pytest.mark.parametrize("is_pictorial", [False, True])
 def test_lines_apart_are_narrow_and_continuous(is_pictorial: bool) -> None:
     style = Style(wide=0.5, is_pictorial=is_pictorial)

@@ -19,6 +19,8 @@ _OF_THINGS = (
     LineClass.THREAD_ROOT,
     LineClass.SECTION_OUTLINE,
     LineClass.BREAK_LINE,
+    LineClass.HIDDEN_OUTLINE,
+    LineClass.HIDDEN_EDGE,
 )
 """Classes of the lines of the things themselves."""
 

@@ -59,6 +59,8 @@ HIDDEN_AS = {
     LineClass.VISIBLE_EDGE: LineClass.HIDDEN_EDGE,
     LineClass.THREAD_CREST: LineClass.HIDDEN_EDGE,
     LineClass.THREAD_ROOT: LineClass.HIDDEN_EDGE,
+    LineClass.HIDDEN_OUTLINE: LineClass.HIDDEN_OUTLINE,
+    LineClass.HIDDEN_EDGE: LineClass.HIDDEN_EDGE,
 }
 """The class of what is hidden of a line; hidden stretches of other classes are never drawn. Hidden threads are dashed
 for crest and root alike (ISO 6410-1, from memory)."""
