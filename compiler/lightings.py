@@ -29,6 +29,9 @@ Point = tuple[float, float, float]
 KEY_LUX, AMBIENT_LUX = 1000.0, 600.0
 """Illuminance where none is stated: our own choice. That of the sun and of the sky follows from the sun's elevation."""
 
+SURROUND = 1.65
+"""By how much even light is brighter on what faces the upper left of the picture than on the average."""
+
 UNSEEN_SUN = 45.0
 """Elevation in degrees of the sun that lights a clear sky where the lighting has no sun."""
 
@@ -156,7 +159,7 @@ def _colours(sources: Sources) -> list[RGB]:
 def _white(sources: Sources) -> F64:
     from . import spectra
 
-    return spectra.white_matrix(sources.white_point, any(each.kind in ("sun", "sky") for each in sources.sources))
+    return spectra.white_matrix(sources.white_point, any(each.kind == "sun" for each in sources.sources))
 
 
 def _strongest(lights: list[Light], target: Point) -> float:
@@ -175,8 +178,9 @@ def _strongest_in(channel: int, lights: list[Light], target: Point) -> float:
             distance = max(sum(each * each for each in away) ** 0.5, 1.0)
             x, y, z = (each / distance for each in away)
             aimed.append(((x, y, z), light.power[channel] * (1000.0 / distance) ** 2))
-    best = max((_facing(direction, aimed) for direction, _ in aimed), default=0.0)
-    return max(ambient + best, 1e-9)
+    if not aimed:
+        return max(ambient * SURROUND, 1e-9)
+    return max(ambient + max(_facing(direction, aimed) for direction, _ in aimed), 1e-9)
 
 
 def _facing(normal: Point, aimed: list[tuple[Point, float]]) -> float:

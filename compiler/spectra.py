@@ -1,7 +1,7 @@
 """Spectra in a scene: what sources radiate, what surfaces reflect, and the colours that both have together.
 
-White is what the lighting's white point says; without one daylight of 5 500 K where the sun or the sky shines, as
-daylight photographs are balanced (ISO 7589), else D65. A source of which no spectrum is stated shines white. Colours
+White is what the lighting's white point says; without one daylight of 5 500 K where the sun shines, as daylight
+photographs are balanced (ISO 7589), else D65. A source of which no spectrum is stated shines white. Colours
 outside the gamut move toward the grey of their luminance (`backend.spectra.tristimulus`).
 """
 
@@ -119,16 +119,16 @@ def skylight(is_clear: bool, elevation: float, haze: float) -> Radiation:
     """Light of the whole sky without the sun: a clear one by the sun's elevation, an overcast one like D65."""
     if not is_clear:
         return Radiation(_frozen(illuminants.illuminant("D65")), OVERCAST_LUX)
-    lux, spectrum = sky.clear_skylight(haze, elevation)
-    return Radiation(_frozen(spectrum), lux)
+    light = air.diffuse_skylight(air.air_of(haze), elevation)
+    return Radiation(_frozen(light), tristimulus.illuminance_of(light, tristimulus.observer()))
 
 
-def white_matrix(white_point: float, has_daylight: bool) -> F64:
+def white_matrix(white_point: float, has_sun: bool) -> F64:
     """The matrix from tristimulus values to linear RGB in which white is (1, 1, 1); a white point of 0 is unstated."""
     if white_point:
         white = illuminants.reference(white_point)
     else:
-        white = illuminants.illuminant("D55" if has_daylight else "D65")
+        white = illuminants.illuminant("D55" if has_sun else "D65")
     return tristimulus.rgb_under(white @ tristimulus.observer())
 
 

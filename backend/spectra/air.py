@@ -1,7 +1,8 @@
 """Sunlight on its way through clear air: scattered by molecules and haze, absorbed by ozone, water vapour and oxygen.
 
 Sources: Bodhaine et al. 1999 (Rayleigh, equations 29 and 30), Angstrom 1929 (haze), Preetham, Shirley and Smits 1999
-(haze by turbidity), Kasten and Young 1989 (path through the air), Bird and Riordan 1986 (gases, equations 4 to 12).
+(haze by turbidity), Kasten and Young 1989 (path through the air), Bird and Riordan 1984 (SERI/TR-215-2436: absorption
+by the gases, 2-8 to 2-11, and the light of the clear sky, 3-1 to 3-15).
 """
 
 from __future__ import annotations
@@ -58,21 +59,43 @@ def air_mass(elevation: float) -> float:
     return 1.0 / (sin(radians(elevation)) + 0.50572 * exp(-1.6364 * log(elevation + 6.07995)))
 
 
-def transmittance(air: Air, elevation: float) -> F64:
-    """Share of sunlight (471,) that comes straight through the air at an elevation as seen in degrees, from 0."""
+@dataclass(frozen=True, eq=False, slots=True)
+class _Layers:
+    """Shares of light (471,) that each constituent of the air lets through: molecules, haze that scatters, haze that
+    absorbs, and the gases."""
+
+    molecules: F64
+    scattering: F64
+    absorbing: F64
+    gases: F64
+
+
+def _layers(air: Air, mass: float, ozone_mass: float) -> _Layers:
     um = wavelengths() / 1000.0
-    mass = air_mass(elevation)
     _, rows = table("absorption")
     water, ozone, mixed = on_grid(rows[:, 0], rows[:, 1:]).T
-    height = 22.0 / 6370.0
-    ozone_mass = (1.0 + height) / sqrt(sin(radians(elevation)) ** 2 + 2.0 * height)
-    depth = rayleigh_depth(um, air.pressure) * mass + air.haze * um**-air.exponent * mass
-    depth += ozone * air.ozone * ozone_mass
-    wet = water * air.water * mass
+    wet, dense = water * air.water * mass, mixed * mass * (air.pressure / SEA_LEVEL)
+    depth = ozone * air.ozone * ozone_mass
     depth += 0.2385 * wet / (1.0 + 20.07 * wet) ** 0.45
-    dense = mixed * mass * (air.pressure / SEA_LEVEL)
     depth += 1.41 * dense / (1.0 + 118.3 * dense) ** 0.45
-    return np.asarray(np.exp(-depth))
+    haze, scattered = air.haze * um**-air.exponent * mass, 0.945 * np.exp(-0.095 * np.log(um / 0.4) ** 2)
+    return _Layers(
+        np.exp(-rayleigh_depth(um, air.pressure) * mass),
+        np.exp(-scattered * haze),
+        np.exp((scattered - 1.0) * haze),
+        np.exp(-depth),
+    )
+
+
+def _ozone_mass(elevation: float) -> float:
+    height = 22.0 / 6370.0
+    return (1.0 + height) / sqrt(sin(radians(elevation)) ** 2 + 2.0 * height)
+
+
+def transmittance(air: Air, elevation: float) -> F64:
+    """Share of sunlight (471,) that comes straight through the air at an elevation as seen in degrees, from 0."""
+    layers = _layers(air, air_mass(elevation), _ozone_mass(elevation))
+    return np.asarray(layers.molecules * layers.scattering * layers.absorbing * layers.gases)
 
 
 def sunlight(distance: float = 1.0) -> F64:
@@ -83,3 +106,30 @@ def sunlight(distance: float = 1.0) -> F64:
 def direct_sunlight(air: Air, elevation: float, distance: float = 1.0) -> F64:
     """Spectral irradiance (471,) of a surface that faces the sun, by its direct light, W m-2 nm-1."""
     return np.asarray(sunlight(distance) * transmittance(air, elevation))
+
+
+def diffuse_skylight(air: Air, elevation: float, distance: float = 1.0, ground: float = 0.2) -> F64:
+    """Spectral irradiance (471,) of a level plane by the whole clear sky without the sun, W m-2 nm-1.
+
+    `ground` is the reflectance of the land around. Light scattered more than once enters by the model's own factors.
+    """
+    layers = _layers(air, air_mass(elevation), _ozone_mass(elevation))
+    level = sin(radians(elevation))
+    arriving = sunlight(distance) * level * layers.gases
+    molecules = arriving * layers.absorbing * (1.0 - layers.molecules**0.95) * 0.5
+    haze = arriving * layers.absorbing * layers.molecules**1.5 * (1.0 - layers.scattering) * _forward(level)
+    direct = arriving * layers.molecules * layers.scattering * layers.absorbing
+    back = _layers(air, 1.8, 1.8)
+    upward = 0.5 * (1.0 - back.molecules) + (1.0 - _forward(1.0 / 1.8)) * back.molecules * (1.0 - back.scattering)
+    mirrored = ground * back.gases * back.absorbing * upward
+    um = wavelengths() / 1000.0
+    blue = np.where(um <= 0.45, (um + 0.55) ** 1.8, 1.0)
+    return np.asarray((molecules + haze + (direct + molecules + haze) * mirrored / (1.0 - mirrored)) * blue)
+
+
+def _forward(level: float) -> float:
+    """Share of what haze scatters that goes downward, the sun's sine of elevation being `level` (3-11 to 3-15)."""
+    asymmetry = log(1.0 - 0.65)
+    a = asymmetry * (1.459 + asymmetry * (0.1595 + asymmetry * 0.4129))
+    b = asymmetry * (0.0783 + asymmetry * (-0.3824 - asymmetry * 0.5874))
+    return 1.0 - 0.5 * exp((a + b * level) * level)

@@ -1,6 +1,7 @@
 """Luminance and colour of the sky: the fifteen skies of CIE S 011 (ISO 15469), and the clear sky of Preetham 1999.
 
-Angles in degrees. A direction of the sky is its angle from the zenith and its angle from the sun.
+Angles in degrees. A direction of the sky is its angle from the zenith and its angle from the sun. These say how light
+is spread over the sky; how much of it there is, and its spectrum as a whole, says `air.diffuse_skylight`.
 """
 
 from __future__ import annotations
@@ -11,8 +12,6 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from ..contract import F64
-from .illuminants import daylight_of
-from .tristimulus import chromaticity_of
 
 GRADATION = ((4.0, -0.7), (1.1, -0.8), (0.0, -1.0), (-1.0, -0.55), (-1.0, -0.32), (-1.0, -0.15))
 INDICATRIX = (
@@ -97,19 +96,3 @@ def over_the_sky(seen: Callable[[F64, F64], F64], sun_zenith_angle: float, n: in
     values = seen(np.degrees(zenith).ravel(), np.degrees(np.arccos(np.clip(cosine, -1.0, 1.0))).ravel())
     share = (weights[:, None] * (np.pi / 4) * (np.pi / n) * np.sin(zenith) * np.cos(zenith)).ravel()
     return np.asarray(np.tensordot(share, values, axes=1))
-
-
-def clear_skylight(turbidity: float, sun_elevation: float) -> tuple[float, F64]:
-    """Illuminance in lux of a level plane by the clear sky without the sun, and the relative spectrum (471,) of it.
-
-    The spectrum is the daylight of its chromaticity. The model was fitted for turbidities from 2 to 10.
-    """
-    sun = 90.0 - sun_elevation
-
-    def seen(zenith: F64, away: F64) -> F64:
-        bright, x, y = clear_sky(turbidity, zenith, away, sun).T
-        return np.stack([x / y * bright, bright, (1.0 - x - y) / y * bright], axis=1)
-
-    xyz = over_the_sky(seen, sun)
-    x, y = chromaticity_of(xyz)
-    return float(xyz[1]) * 1000.0, daylight_of(float(x), float(y))

@@ -101,8 +101,32 @@ def test_the_low_sun_is_redder_and_dimmer_than_the_high_one_and_the_sky_bluer_th
     assert 80_000 < lux[0] < 105_000 and lux[3] < 10_000
     assert reds[0] == pytest.approx(0.342, abs=0.003) and reds[3] == pytest.approx(0.479, abs=0.01)
     for elevation, light in zip(elevations[:4], lights[:4], strict=True):
-        skylight = sky.clear_skylight(3.0, elevation)[1]
+        skylight = air.diffuse_skylight(through, elevation)
         assert _xy(skylight)[0] < _xy(light)[0] - 0.05 and _xy(skylight)[1] < _xy(light)[1] - 0.02
+
+
+def test_the_clear_sky_shines_as_the_simple_spectral_model_has_it() -> None:
+    """Shares of the sunlight outside the air on a level plane, by pvlib 0.13, which has the same model (`spectrl2`).
+
+    Bird and Riordan 1984: zenith angle 48.23 deg, 0.084 of aerosol at 500 nm with exponent 1.14, 1.4164 cm of water,
+    0.3438 atm cm of ozone, ground 0.2. It takes an older formula for the molecules, which is worth 1 %.
+    """
+    at = np.array([400, 450, 500, 550, 610, 710]) - grid.FIRST
+    through = air.Air(0.084 * 0.5**1.14, 1.14, 0.3438, 1.4164)
+    diffuse = (air.diffuse_skylight(through, 41.77) / air.sunlight())[at]
+    np.testing.assert_allclose(diffuse, (0.17783, 0.15278, 0.12051, 0.09582, 0.07608, 0.05926), rtol=0.0135)
+    direct = air.transmittance(through, 41.77)[at]
+    np.testing.assert_allclose(direct, (0.49236, 0.61939, 0.69840, 0.73783, 0.77201, 0.85971), rtol=0.0075)
+
+
+def test_sun_and_sky_together_look_like_daylight() -> None:
+    # Typical daylight is of 5 500 to 6 500 K (CIE 15): x from 0.3127 to 0.3324, near the daylight locus.
+    for elevation in (60.0, 40.0, 20.0):
+        through = air.air_of(3.0)
+        level = np.sin(np.radians(elevation))
+        whole = air.direct_sunlight(through, elevation) * level + air.diffuse_skylight(through, elevation)
+        x, y = _xy(whole)
+        assert 0.3127 < x < 0.3335 and abs(y - (-3 * x * x + 2.87 * x - 0.275)) < 0.006
 
 
 def test_haze_reddens_and_dims_the_sun() -> None:
