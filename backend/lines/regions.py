@@ -28,6 +28,9 @@ FacesUnder: TypeAlias = Callable[[F64], I32]
 
 EXTENSION_MM = 0.02
 """How far a line runs on where it ends, past the line that hides the rest of it."""
+BRIDGE_MM = 0.05
+"""A hidden stretch shorter than this, with the same line seen on both sides, is taken as seen: it bounds an area still.
+"""
 LEAST_AREA_MM2 = 1e-3
 """Faces of the arrangement smaller than this go to a neighbour."""
 SIMPLIFY_MM = 5e-3
@@ -70,7 +73,8 @@ def regions_of(view: View, pieces: Pieces, candidates: Candidates, occluders: Oc
 def borders_of(pieces: Pieces, candidates: Candidates) -> Polylines:
     """Return the visible pieces that bound areas, put together where just two meet, their ends extended."""
     is_border = np.isin(candidates.line_class, _BORDERS) & (candidates.patch < 0) & ~candidates.is_plain
-    rows = np.flatnonzero(pieces.is_visible & is_border[pieces.segment])
+    seen = pieces.is_visible | _is_bridge(pieces, candidates)
+    rows = np.flatnonzero(seen & is_border[pieces.segment])
     ends = np.stack([pieces.start[rows, :2], pieces.end[rows, :2]], axis=1)
     lattice = np.rint(ends * _STEPS_PER_MM).astype(np.int64)
     long = (lattice[:, 0] != lattice[:, 1]).any(axis=1)
@@ -78,6 +82,23 @@ def borders_of(pieces: Pieces, candidates: Candidates) -> Polylines:
     is_drawn = candidates.is_drawn[pieces.segment[rows]]
     is_cut = np.stack([pieces.span[rows, 0] > 0.0, pieces.span[rows, 1] < 1.0], axis=1)
     return _polylines(lattice, is_cut, is_drawn)
+
+
+def _is_bridge(pieces: Pieces, candidates: Candidates) -> Bools:
+    """Hidden pieces too short to be told from an error, between two seen ones of the same line: they leave no gap."""
+    found = np.zeros(len(pieces.segment), np.bool_)
+    if len(found) < 3:
+        return found
+    run = np.hypot(*(pieces.end[:, :2] - pieces.start[:, :2]).T)
+    segment, chain = pieces.segment, candidates.chain[pieces.segment]
+    before, after = slice(None, -2), slice(2, None)
+
+    def goes_on(other: slice) -> Bools:
+        alike = (chain[1:-1] >= 0) & (chain[other] == chain[1:-1])
+        return np.asarray(pieces.is_visible[other] & (alike | (segment[other] == segment[1:-1])))
+
+    found[1:-1] = ~pieces.is_visible[1:-1] & (run[1:-1] < BRIDGE_MM) & goes_on(before) & goes_on(after)
+    return found
 
 
 def regions_within(view: View, borders: Polylines, faces_under: FacesUnder) -> tuple[Region, ...]:
