@@ -305,7 +305,7 @@ def test_the_exposure_shows_white_that_faces_the_strongest_light_just_short_of_p
     for lighting, brightest in (
         ("light from eye illuminance 700 lx", 700.0),
         ("light from eye illuminance 700 lx; ambient 300 lx", 1000.0),
-        ("sun elevation 90 deg azimuth 0 deg illuminance 90 klx", 90000.0),
+        ("light from above illuminance 90 klx", 90000.0),
     ):
         found = lights(lighting)
         assert found.exposure * brightest == pytest.approx(WHITE)
