@@ -122,8 +122,8 @@ def lights_for(sources: Sources, projection: contract.Projection, target: Point)
     """
     lights: list[Light] = []
     for source, colour in zip(sources.sources, _colours(sources), strict=True):
-        red, green, blue = (source.strength * each for each in colour)
-        power = (red, green, blue)
+        red, green, blue = (_steady(source.strength * each) for each in colour)
+        power = (red, green, blue) if source.spectrum else (source.strength,) * 3
         match source.kind:
             case "picture":
                 lights.append(Light("directional", _in_world(source.vector, projection), power))
@@ -154,6 +154,11 @@ def _colours(sources: Sources) -> list[RGB]:
 
     to_rgb = _white(sources)
     return [spectra.colour_of(source.spectrum, to_rgb) for source in sources.sources]
+
+
+def _steady(value: float) -> float:
+    """A value without the last digits, in which sums over a spectrum differ between processors."""
+    return float(f"{value:.7g}")
 
 
 def _white(sources: Sources) -> F64:
@@ -252,7 +257,7 @@ def _sun_on(reading: tree.Reading, scope: Scope) -> Source:
     if found.elevation <= 0:
         sentence = f"the sun stands {-found.elevation:.1f} deg below the horizon at that time"
         raise mistake("out-of-range", clock.span, sentence, "the time of day is UTC")
-    return _shining(reading, scope, found.elevation, found.azimuth, found.distance)
+    return _shining(reading, scope, round(found.elevation, 6), round(found.azimuth, 6), found.distance)
 
 
 def _shining(reading: tree.Reading, scope: Scope, elevation: float, azimuth: float, distance: float = 1.0) -> Source:

@@ -131,12 +131,13 @@ METALS: dict[str, RGB] = {
     "chromium": (0.5496, 0.5561, 0.5541),  # Johnson and Christy 1974
     "copper": (0.9316, 0.6228, 0.5222),  # Johnson and Christy 1972
     "copper_zinc": (0.9096, 0.7784, 0.4227),  # Querry 1985, 70 % copper and 30 % zinc
-    "gold": (1.0375, 0.7285, 0.3645),  # Johnson and Christy 1972; red lies outside sRGB
+    "gold": (1.0, 0.7339, 0.4208),  # Johnson and Christy 1972; from (1.0375, 0.7284, 0.3646), outside sRGB
     "iron": (0.5296, 0.5133, 0.4941),  # Johnson and Christy 1974
     "nickel": (0.6970, 0.6406, 0.5631),  # Johnson and Christy 1974
     "silver": (0.9892, 0.9841, 0.9776),  # Johnson and Christy 1972
     "titanium": (0.6186, 0.5794, 0.5424),  # Johnson and Christy 1974
 }
-"""n and k from the refractiveindex.info database (CC0), under D65 from 380 to 780 nm in steps of 5 nm, white at Y
-= 1.
+"""n and k from the refractiveindex.info database (CC0), under D65 from 380 to 780 nm in steps of 5 nm, white at Y = 1.
+
+A colour outside 0 .. 1 is moved toward the grey of its luminance, so that no metal gives back more than it gets.
 """

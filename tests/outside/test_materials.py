@@ -9,6 +9,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from platewright.backend.spectra import grid, illuminants, optics, tristimulus
+from platewright.compiler.materials import METALS as METALS_OF_SCENES
 
 MATCHING = tristimulus.observer()
 
@@ -55,6 +56,16 @@ def test_metals_reflect_as_measured(name: str) -> None:
     to_rgb = tristimulus.rgb_under(source @ MATCHING / (source @ MATCHING[:, 1]))
     found = tristimulus.pair_colour(source, spectrum, MATCHING, to_rgb)
     np.testing.assert_allclose(found, METALS[name][1], atol=3e-4)
+
+
+def test_the_metals_of_the_language_are_those_of_the_data() -> None:
+    source = illuminants.illuminant("D65")
+    to_rgb = tristimulus.rgb_under(source @ MATCHING)
+    assert sorted(METALS_OF_SCENES) == sorted(optics.METALS)
+    for name, expected in METALS_OF_SCENES.items():
+        spectrum = optics.normal_reflectance(optics.metal_index(name))
+        found = tristimulus.into_gamut(tristimulus.pair_colour(source, spectrum, MATCHING, to_rgb), 1.0)
+        np.testing.assert_allclose(found, expected, atol=3e-4)
 
 
 def test_gold_at_60_degrees() -> None:
