@@ -7,6 +7,7 @@ import math
 import numpy as np
 import pytest
 from platewright.backend import colour, contract
+from platewright.backend.spectra import grid, illuminants, tristimulus
 from platewright.compiler.lightings import SURROUND, WHITE
 from support.scenes import checked, planned
 
@@ -142,6 +143,37 @@ def test_a_measured_reflectance_is_read_and_gives_its_colour() -> None:
     assert job("ambient 100 lx", MEASURED, paint=percent).materials == (flat,)
     pair = lit("light from left temperature 3000 K; white point 3000 K", MEASURED, paint=FLAT).pairs[0][0]
     np.testing.assert_allclose(pair[:3], 400.0, rtol=1e-6)
+
+
+def metamer() -> str:
+    """A table of a reflectance that looks like `FLAT` under D65: the grey and what D65 does not show."""
+    seen = illuminants.illuminant("D65")[:, None] * tristimulus.observer()
+    wave = np.cos(np.arange(grid.N) * (2 * np.pi / 110.0))
+    black = wave - seen @ np.linalg.lstsq(seen.T @ seen, seen.T @ wave, rcond=None)[0]
+    other = 0.4 + 0.35 * black / np.abs(black).max()
+    rows = zip(grid.wavelengths().astype(int), other.tolist(), strict=True)
+    return "wavelength nm,reflectance\n" + "".join(f"{nm},{share:.7f}\n" for nm, share in rows)
+
+
+def test_two_paints_that_match_in_daylight_differ_in_lamplight() -> None:
+    """From the tables to the pairs that are drawn; in CIELAB, whose unit is about the least difference seen."""
+    found_pairs = {}
+    for name in ("D65", "A"):
+        light = f'light from left illuminant "{name}"; white point {6504 if name == "D65" else 2856} K'
+        found_pairs[name] = [
+            np.array(lit(light, MEASURED, paint=table).pairs[0][0][:3]) / 1000.0 for table in (FLAT, metamer())
+        ]
+    assert np.abs(np.subtract(*found_pairs["D65"])).max() < 1e-3
+    grey, tinted = found_pairs["A"]
+    apart = lab(grey) - lab(tinted)
+    assert np.sqrt(apart @ apart) > 5
+
+
+def lab(rgb: np.ndarray) -> np.ndarray:
+    """CIELAB of linear sRGB under its own white (CIE 15, 8.2.1)."""
+    to_xyz = np.linalg.inv(tristimulus.xyz_to_rgb())
+    x, y, z = np.cbrt(to_xyz @ rgb / (to_xyz @ np.ones(3)))
+    return np.array([116 * y - 16, 500 * (x - y), 200 * (y - z)])
 
 
 def test_lines_need_no_pairs() -> None:
