@@ -9,9 +9,9 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 from platewright.backend import camera
+from platewright.backend.compiled import kernel
 from platewright.backend.contract import Emphasis, Geometry, LineClass, Mesh, Projection, Style
 from platewright.backend.lines.block import lowest, meet, plain_meet
-from platewright.backend.lines.compiled import kernel
 from platewright.backend.lines.edges import edges_of
 from platewright.backend.lines.model import CLASSES, Pieces, number_of
 from platewright.backend.lines.occluders import occluders_of

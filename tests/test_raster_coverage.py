@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -26,8 +27,8 @@ def pixel_points(xy: np.ndarray, z: np.ndarray | float = 0.0) -> np.ndarray:
 
 @pytest.mark.parametrize("samples", [1, 4])
 def test_vector_block_equals_the_plain_loop(samples: int) -> None:
+    from platewright.backend.compiled import kernel
     from platewright.backend.raster.block import LANES, cover_1, cover_4, plain_cover
-    from platewright.backend.raster.compiled import kernel
 
     vector = cover_4 if samples == 4 else cover_1
 
@@ -271,14 +272,15 @@ def test_degenerate_triangles_and_empty_panels() -> None:
 
 
 def test_stored_code_is_dropped_when_any_kernel_changes() -> None:
-    from platewright.backend.raster.bins import tile_starts
-    from platewright.backend.raster.compiled import sources_digest
+    from platewright.backend.compiled import sources_digest
+    from platewright.backend.raster import bins
 
-    tile_starts(np.zeros((1, 1), np.int32), np.zeros(2, np.int64))
-    stored = tile_starts._cache._cache_file
-    assert stored._source_stamp == sources_digest() and stored._load_index()
+    digest = sources_digest(Path(bins.__file__).parent)
+    bins.tile_starts(np.zeros((1, 1), np.int32), np.zeros(2, np.int64))
+    stored = bins.tile_starts._cache._cache_file
+    assert stored._source_stamp == digest and stored._load_index()
     stored._source_stamp = "another digest"
     try:
         assert not stored._load_index()
     finally:
-        stored._source_stamp = sources_digest()
+        stored._source_stamp = digest

@@ -9,8 +9,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from ..compiled import inner, kernel
 from ..contract import F64, I32, U8
-from .compiled import inner, kernel
 
 I64 = NDArray[np.int64]
 

@@ -9,7 +9,7 @@ from numba import types
 from numba.core import cgutils
 from numba.extending import intrinsic
 
-from .compiled import kernel
+from ..compiled import kernel
 
 WIDE = 8
 

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
+from ..compiled import kernel
 from ..contract import I32
-from .compiled import kernel
 from .model import Bools
 
 

@@ -13,8 +13,8 @@ from typing import Any
 
 import numpy as np
 
+from ..compiled import inner, kernel
 from .block import WIDE, lowest, meet
-from .compiled import kernel
 from .tree import rounded_down
 
 NORMAL, PLAIN, HIDDEN = 0, 1, 2
@@ -26,7 +26,7 @@ _SPECK = (
 )
 
 
-@kernel
+@inner
 def hidden_by(
     c: Any, labels: Any, r: int, x0: Any, y0: Any, z0: Any, x1: Any, y1: Any, z1: Any, slack: Any, reach: Any,
     is_central: bool,
@@ -84,7 +84,7 @@ def hidden_by(
     return low, high
 
 
-@kernel
+@inner
 def _add(spans: Any, n: int, low: Any, high: Any, gap: Any) -> int:
     """Put low .. high among n sorted stretches, joining those nearer than `gap`; there is room for one more."""
     i = 0
@@ -104,7 +104,7 @@ def _add(spans: Any, n: int, low: Any, high: Any, gap: Any) -> int:
     return n + 1 - (j - i)
 
 
-@kernel
+@inner
 def _is_beside(boxes: Any, q: int, k: int, x0: Any, y0: Any, dx: Any, dy: Any) -> bool:
     """Whether box k of block q lies wholly on one side of the line through (x0, y0) along (dx, dy)."""
     left, top, right, bottom = boxes[q, 0, k], boxes[q, 1, k], boxes[q, 2, k], boxes[q, 3, k]

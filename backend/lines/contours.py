@@ -13,9 +13,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from ..compiled import kernel
 from ..contract import F32, F64, I32, U8, EdgeKind, LineClass, PatchKind
 from .chaining import walked
-from .compiled import kernel
 from .model import Bools, Candidates, View
 from .near import NEAR
 from .segments import along_sight, candidates, dot, fixed, length, none, shifts, to_view, weight

@@ -6,7 +6,7 @@ from typing import Any
 
 import numpy as np
 
-from .compiled import kernel
+from ..compiled import inner, kernel
 
 EDGE_ON = 1e-5
 """A surface is seen edge-on where the sine of the angle between it and the sight is below this.
@@ -60,7 +60,7 @@ def tilt_faces(
             facing[t] = _facing(nx, ny, nz, size, ax, ay, az, eye)
 
 
-@kernel
+@inner
 def _facing(nx: Any, ny: Any, nz: Any, size: Any, px: Any, py: Any, pz: Any, eye: Any) -> int:
     dx, dy, dz = eye[0] - eye[3] * px, eye[1] - eye[3] * py, eye[2] - eye[3] * pz
     sine = nx * dx + ny * dy + nz * dz

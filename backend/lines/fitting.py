@@ -12,9 +12,9 @@ from typing import TypeAlias
 import numpy as np
 from numpy.typing import NDArray
 
+from ..compiled import inner, kernel
 from ..contract import F64
 from ..drawing import Arc, Cubics, Lines, Path, Piece
-from .compiled import kernel
 
 I64: TypeAlias = NDArray[np.int64]
 Bools: TypeAlias = NDArray[np.bool_]
@@ -123,12 +123,12 @@ def _fit(points: F64, first: I64, is_closed: Bools, curve: I64) -> tuple[F64, I6
     return begin, row, kind[:at], number[:at], length
 
 
-@kernel
+@inner
 def _is_smooth_at(points: F64, curve: I64, low: int, count: int, place: int) -> bool:
     return _is_smooth(points, curve, low + (place + count - 1) % count, low + place, low + (place + 1) % count)
 
 
-@kernel
+@inner
 def _is_smooth(points: F64, curve: I64, before: int, here: int, after: int) -> bool:
     """Whether a curve through three points may keep within BULGE of both chords."""
     ax, ay = points[here, 0] - points[before, 0], points[here, 1] - points[before, 1]
@@ -142,7 +142,7 @@ def _is_smooth(points: F64, curve: I64, before: int, here: int, after: int) -> b
     return bool(bulge <= BULGE and (cosine >= _STEEP or same))
 
 
-@kernel
+@inner
 def _run(p: F64, left: int, right: int, free: int, begin: F64, kind: I64, number: F64, at: int) -> int:
     """Write a run without corners."""
     if right == left + 1 or _is_straight(p, left, right):
@@ -174,19 +174,19 @@ def _run(p: F64, left: int, right: int, free: int, begin: F64, kind: I64, number
     return _put_cubics(p, left, right, waiting, right, free, kind, number, at)
 
 
-@kernel
+@inner
 def _ends(free: int, left: int, right: int, begin: int, stop: int) -> int:
     """Which ends of a stretch of the run left to right are free."""
     return (free & _FIRST if begin == left else 0) | (free & _LAST if stop == right else 0)
 
 
-@kernel
+@inner
 def _put_line(p: F64, end: int, kind: I64, number: F64, at: int) -> int:
     kind[at], number[at, 0], number[at, 1] = LINE, p[end, 0], p[end, 1]
     return at + 1
 
 
-@kernel
+@inner
 def _is_straight(p: F64, left: int, right: int) -> bool:
     dx, dy = p[right, 0] - p[left, 0], p[right, 1] - p[left, 1]
     length = np.sqrt(dx * dx + dy * dy)
@@ -202,7 +202,7 @@ def _is_straight(p: F64, left: int, right: int) -> bool:
     return True
 
 
-@kernel
+@inner
 def _straight_reach(p: F64, left: int, right: int) -> int:
     """The last point of a long straight stretch from `left`, or `left` if there is none."""
     reach, step = left, 2
@@ -218,7 +218,7 @@ def _straight_reach(p: F64, left: int, right: int) -> int:
     return reach if dx * dx + dy * dy >= _LONG * _LONG else left
 
 
-@kernel
+@inner
 def _arc_reach(p: F64, left: int, right: int, free: int) -> tuple[int, F64]:
     """The last point of the longest circle, else ellipse, that begins at `left`, and its shape."""
     best, best_shape = left, np.zeros(7)
@@ -243,7 +243,7 @@ def _arc_reach(p: F64, left: int, right: int, free: int) -> tuple[int, F64]:
     return best, best_shape
 
 
-@kernel
+@inner
 def _ellipse_of(p: F64, left: int, right: int, free: int) -> F64:
     """The circle or ellipse that points left to right lie on, else all but free ends, or zeros for none.
 
@@ -258,7 +258,7 @@ def _ellipse_of(p: F64, left: int, right: int, free: int) -> F64:
     return shape
 
 
-@kernel
+@inner
 def _ellipse_by(p: F64, left: int, right: int, low: int, high: int, spare: int) -> F64:
     """The shape of the points low to high, if those left to right do not contradict it.
 
@@ -302,7 +302,7 @@ def _ellipse_by(p: F64, left: int, right: int, low: int, high: int, spare: int) 
     return none
 
 
-@kernel
+@inner
 def _solve(m: F64, v: F64, n: int) -> bool:
     """Solve n equations in place by elimination with pivots; False if they are singular."""
     for k in range(n):
@@ -328,7 +328,7 @@ def _solve(m: F64, v: F64, n: int) -> bool:
     return True
 
 
-@kernel
+@inner
 def _shape(v: F64, n_unknown: int, mid_x: float, mid_y: float, size: float) -> F64:
     """Centre, half axes and turn of (x2 + y2)/2 + v4 (x2 - y2) + v3 x y + v0 x + v1 y + v2 = 0, or zeros."""
     none = np.zeros(7)
@@ -351,7 +351,7 @@ def _shape(v: F64, n_unknown: int, mid_x: float, mid_y: float, size: float) -> F
     return np.array([1.0, x * size + mid_x, long, short, y * size + mid_y, turn, 0.0])
 
 
-@kernel
+@inner
 def _angle(shape: F64, x: float, y: float) -> float:
     """The angle of a point in the ellipse's own measure."""
     cosine, sine = np.cos(shape[5]), np.sin(shape[5])
@@ -360,7 +360,7 @@ def _angle(shape: F64, x: float, y: float) -> float:
     return angle
 
 
-@kernel
+@inner
 def _passes(p: F64, left: int, right: int, low: int, high: int, shape: F64) -> bool:
     """Whether the shape passes all points, in order and never far from a chord; its sweep is written into it."""
     cosine, sine = np.cos(shape[5]), np.sin(shape[5])
@@ -398,7 +398,7 @@ def _passes(p: F64, left: int, right: int, low: int, high: int, shape: F64) -> b
     return abs(sweep) < 2 * np.pi + 1e-6
 
 
-@kernel
+@inner
 def _whole(shape: F64, begin: F64, kind: I64, number: F64, at: int) -> int:
     """A whole circle or ellipse as two arcs from one end of its long axis, the leftmost or else upper one."""
     dx, dy = shape[2] * np.cos(shape[5]), shape[2] * np.sin(shape[5])
@@ -416,7 +416,7 @@ def _whole(shape: F64, begin: F64, kind: I64, number: F64, at: int) -> int:
     return at
 
 
-@kernel
+@inner
 def _degrees(turn: float) -> float:
     """An angle of an axis in degrees from -90, not included, to 90."""
     degrees = turn * 180 / np.pi
@@ -427,7 +427,7 @@ def _degrees(turn: float) -> float:
     return degrees
 
 
-@kernel
+@inner
 def _put_arcs(p: F64, left: int, right: int, free: int, shape: F64, begin: F64, kind: I64, number: F64, at: int) -> int:
     """Arcs from point left to point right; a free end goes onto the shape."""
     cosine, sine = np.cos(shape[5]), np.sin(shape[5])
@@ -449,7 +449,7 @@ def _put_arcs(p: F64, left: int, right: int, free: int, shape: F64, begin: F64, 
     return at
 
 
-@kernel
+@inner
 def _direction(p: F64, left: int, right: int, k: int, free: int) -> tuple[float, float]:
     """The unit tangent at point k of a run: that of the circle through it and its neighbours."""
     middle = k
@@ -472,7 +472,7 @@ def _direction(p: F64, left: int, right: int, k: int, free: int) -> tuple[float,
     return x, y
 
 
-@kernel
+@inner
 def _put_cubics(
     p: F64, left: int, right: int, begin: int, stop: int, free: int, kind: I64, number: F64, at: int
 ) -> int:
@@ -508,7 +508,7 @@ def _put_cubics(
     return at
 
 
-@kernel
+@inner
 def _cubic(p: F64, begin: int, end: int, ax: float, ay: float, bx: float, by: float, handles: F64) -> int:
     """Fit one cubic with the unit end tangents a and b into `handles`: -1 if it keeps its error, else the worst point.
 
@@ -569,7 +569,7 @@ def _cubic(p: F64, begin: int, end: int, ax: float, ay: float, bx: float, by: fl
     return worst
 
 
-@kernel
+@inner
 def _strays(p: F64, begin: int, place: F64, x1: float, y1: float, x2: float, y2: float) -> int:
     """-1 if the cubic keeps near the chords of the points that stand at the places, else the point before the worst."""
     end = begin + len(place) - 1
@@ -588,7 +588,7 @@ def _strays(p: F64, begin: int, place: F64, x1: float, y1: float, x2: float, y2:
     return -1
 
 
-@kernel
+@inner
 def _length(begin: F64, kind: I64, number: F64, low: int, high: int) -> float:
     """Length of a path; curves by the rule of Simpson."""
     total, x, y = 0.0, begin[0], begin[1]
@@ -611,7 +611,7 @@ def _length(begin: F64, kind: I64, number: F64, low: int, high: int) -> float:
     return total
 
 
-@kernel
+@inner
 def _arc_length(number: F64, x: float, y: float) -> float:
     long, short, turn = number[2], number[3], number[4] * np.pi / 180
     cosine, sine = np.cos(turn), np.sin(turn)

@@ -13,9 +13,9 @@ from typing import TypeAlias
 import numpy as np
 from numpy.typing import NDArray
 
+from ..compiled import kernel
 from ..contract import F64, LineClass, PatchKind, Style
 from ..drawing import Path
-from .compiled import kernel
 from .crossings import goes_on
 from .fitting import paths_of
 from .imaginary import spaced

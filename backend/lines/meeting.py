@@ -10,8 +10,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from ..compiled import inner, kernel
 from ..contract import F64, I32, U8
-from .compiled import kernel
 
 LEAF = 4
 """Triangles in a leaf of a tree."""
@@ -69,7 +69,7 @@ def tree(world: F64, faces: I32, rows: I32, boxes: F64) -> None:
             boxes[i, axis + 3] = max(boxes[2 * i, axis + 3], boxes[2 * i + 1, axis + 3])
 
 
-@kernel
+@inner
 def _normal(world: F64, faces: I32, f: int, is_plane: bool, plane_normal: F64, result: F64) -> bool:
     """Unit normal of a face: of a plane patch that of the patch, so that slivers of one plane agree."""
     if is_plane:
@@ -87,7 +87,7 @@ def _normal(world: F64, faces: I32, f: int, is_plane: bool, plane_normal: F64, r
     return True
 
 
-@kernel
+@inner
 def _straddles(world: F64, faces: I32, f: int, g: int, normal: F64, near: float, height: F64) -> bool:
     """Whether face f lies on both sides of the plane of face g; fills the heights (3,) of its corners above it."""
     a = faces[g, 0]
@@ -104,7 +104,7 @@ def _straddles(world: F64, faces: I32, f: int, g: int, normal: F64, near: float,
     return n_out == 1 or n_out == 2
 
 
-@kernel
+@inner
 def _through_plane(world: F64, faces: I32, f: int, height: F64, points: F64, keys: I32) -> None:
     """The two points (2,3) where sides of face f pass through a plane, and the vertices (2,2) of those sides.
 
@@ -133,7 +133,7 @@ def _through_plane(world: F64, faces: I32, f: int, height: F64, points: F64, key
         keys[i, 0], keys[i, 1] = low, high
 
 
-@kernel
+@inner
 def _meet(world: F64, faces: I32, f: int, g: int, normals: F64, near: float, heights: F64, ends: F64, keys: I32) -> int:
     """The segment in which faces f and g cross, each of which straddles the plane of the other: which two of the four
     points `ends` (4,3) it runs between, as a number 4 * first + second, or -1. Points 0 and 1 are on sides of f, 2 and

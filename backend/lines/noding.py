@@ -10,8 +10,8 @@ from typing import TypeAlias
 import numpy as np
 from numpy.typing import NDArray
 
+from ..compiled import inner, kernel
 from ..contract import F64
-from .compiled import kernel
 
 I64: TypeAlias = NDArray[np.int64]
 
@@ -250,7 +250,7 @@ def _levels(points: F64, height: float) -> I64:
     return levels
 
 
-@kernel
+@inner
 def _column(bounds: F64, x: float) -> int:
     low, count = 0, len(bounds)
     while count > 0:

@@ -6,8 +6,8 @@ from typing import Any
 
 import numpy as np
 
+from ..compiled import inner, kernel
 from .block import WIDE, lowest, meet
-from .compiled import kernel
 from .tree import rounded_down
 
 
@@ -63,7 +63,7 @@ def foremost(
         found[i] = best
 
 
-@kernel
+@inner
 def _depth_at(c: Any, labels: Any, r: int, x: Any, y: Any) -> Any:
     """Depth of triangle r at a point of the page, infinity outside of it; its sides belong to it."""
     total, sum_of_depths = 0.0, 0.0

@@ -7,8 +7,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from ..compiled import inner, kernel
 from ..contract import I32, EdgeKind, FaceOrigin, LineClass
-from .compiled import kernel
 from .model import number_of
 
 _INSIDE, _TANGENT, _SHARP = int(EdgeKind.INSIDE), int(EdgeKind.TANGENT), int(EdgeKind.SHARP)
@@ -71,7 +71,7 @@ def judge_sides(
     return n
 
 
-@kernel
+@inner
 def _judged(
     world: Any, faces: Any, facing: Any, normals: Any, face_patch: Any, origin: Any, is_open: Any, is_level: Any,
     kind: Any, cosine: Any, with_tangent: bool, with_hidden: bool, f: Any, k: Any, j: Any, g: Any, i: Any, a: Any,
@@ -119,7 +119,7 @@ def _judged(
     return _IMAGINARY if kind == _TANGENT and with_tangent else _NONE
 
 
-@kernel
+@inner
 def _height(world: Any, faces: Any, f: Any, apex: Any) -> Any:
     """How far a vertex stands before the plane of face f, times twice the area of f."""
     a, b, c = faces[f, 0], faces[f, 1], faces[f, 2]

@@ -7,8 +7,8 @@ from typing import Any
 
 import numpy as np
 
+from ..compiled import kernel
 from ..contract import I32, Geometry
-from .compiled import kernel
 
 
 @dataclass(frozen=True, eq=False, slots=True)

@@ -12,9 +12,9 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from ..compiled import inner, kernel
 from ..contract import I32
 from .block import WIDE
-from .compiled import kernel
 
 STACK = 128  # a walk holds at most seven blocks a level, and there are at most eleven levels
 _BITS = 22  # of each coordinate in a Morton code
@@ -114,7 +114,7 @@ def fill_triangles(
         boxes[q, 4, k] = rounded_down(near)
 
 
-@kernel
+@inner
 def rounded_down(value: Any) -> Any:
     """A float32 not above a float64."""
     return np.float32(value - abs(value) * 1.2e-7)

@@ -11,13 +11,13 @@ from typing import Any
 
 import numpy as np
 
-from .compiled import kernel
+from ..compiled import inner, kernel
 
 TILE = 32
 NOTHING, WIDE, CLIPPED = np.uint32(0xFFFFFFFF), np.uint32(0xFFFFFFFE), np.uint32(0xFFFFFFFD)
 
 
-@kernel
+@inner
 def _pixel_box(
     x: Any, y: Any, a: int, b: int, c: int, columns: int, rows: int, samples: int
 ) -> tuple[int, int, int, int]:
@@ -34,7 +34,7 @@ def _pixel_box(
     return max(x0, 0), min(x1, columns - 1), max(y0, 0), min(y1, rows - 1)
 
 
-@kernel
+@inner
 def _box(x: Any, y: Any, a: int, b: int, c: int, columns: int, rows: int, samples: int) -> Any:
     x0, x1, y0, y1 = _pixel_box(x, y, a, b, c, columns, rows, samples)
     if x1 < x0 or y1 < y0:
@@ -71,7 +71,7 @@ def box_pieces(pieces: Any, x: Any, y: Any, columns: int, rows: int, samples: in
         boxes[k] = _box(x, y, pieces[k, 0], pieces[k, 1], pieces[k, 2], columns, rows, samples)
 
 
-@kernel
+@inner
 def _visit(
     box: Any, tag: Any, a: Any, b: Any, c: Any, x: Any, y: Any, columns: int, rows: int, samples: int,
     top: int, bottom: int, n_columns: int, at: Any, entries: Any,

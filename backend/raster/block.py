@@ -15,7 +15,7 @@ from numba import types
 from numba.core import cgutils
 from numba.extending import intrinsic
 
-from .compiled import kernel
+from ..compiled import kernel
 
 LANES = 8
 SAMPLE_X, SAMPLE_Y = (6, 14, 2, 10), (2, 6, 10, 14)

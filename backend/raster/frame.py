@@ -6,8 +6,8 @@ from typing import Any
 
 import numpy as np
 
+from ..compiled import inner, kernel
 from .bins import TILE
-from .compiled import kernel
 from .light import BLOCK, WIDTH
 from .shading import N_BLOCKS, encode_tile, shade_tile
 from .tiles import raster_tile
@@ -68,7 +68,7 @@ def shade_tiles(
         _paint(surface, lighting, encoding, size, scratch, tile_face, left, top, corner, image, 0, 0)
 
 
-@kernel
+@inner
 def _draw(
     raster: Any, tile: int, left: int, top: int, columns: int, rows: int, samples: int,
     depth: Any, face: Any, farthest: Any,
@@ -81,7 +81,7 @@ def _draw(
     )  # fmt: skip
 
 
-@kernel
+@inner
 def _scratch(n_materials: int) -> Any:
     jobs = np.zeros(N_BLOCKS * BLOCK, np.float32)
     pixel, share = np.empty(N_BLOCKS * WIDTH, np.int32), np.empty(N_BLOCKS * WIDTH, np.float32)
@@ -97,7 +97,7 @@ def _scratch(n_materials: int) -> Any:
     )
 
 
-@kernel
+@inner
 def _paint(
     surface: Any, lighting: Any, encoding: Any, size: Any, scratch: Any, face: Any, left: int, top: int, corner: Any,
     image: Any, first_row: int, first_column: int,

@@ -11,7 +11,7 @@ from typing import Any
 
 import numpy as np
 
-from .compiled import fast_kernel
+from ..compiled import fast_inner
 from .reflectance import CONTRAST, DEGREE
 
 WIDTH = 16
@@ -26,7 +26,7 @@ _SQUARE_METRE = np.float32(1e6)
 _B = 5 + DEGREE + 1
 
 
-@fast_kernel
+@fast_inner
 def _begin(jobs: Any, m: Any, ambient: Any, axis: Any) -> None:
     """Unit normals and directions; start the result with what the surround gives."""
     f0, f1, f2, a2, width = m[0], m[1], m[2], m[3], m[4]
@@ -63,7 +63,7 @@ def _begin(jobs: Any, m: Any, ambient: Any, axis: Any) -> None:
         jobs[i + 208] = r2 * left2 * even + (s2 * scale + e2 * bias) * seen
 
 
-@fast_kernel
+@fast_inner
 def _reflected(
     x: Any, y: Any, z: Any, vx: Any, vy: Any, vz: Any, cosine: Any, mask: Any, lx: Any, ly: Any, lz: Any, a2: Any
 ) -> Any:
@@ -86,7 +86,7 @@ def _reflected(
     return n, shine - grazing, grazing
 
 
-@fast_kernel
+@fast_inner
 def _add_far(jobs: Any, m: Any, light: Any) -> None:
     """Add a directional light, a row of `reflectance.light_rows`."""
     a2 = m[3]
@@ -102,7 +102,7 @@ def _add_far(jobs: Any, m: Any, light: Any) -> None:
         jobs[i + 208] += r2 * jobs[i + 256] * n + f2 * shine + k2 * grazing
 
 
-@fast_kernel
+@fast_inner
 def _add_near(jobs: Any, m: Any, light: Any) -> None:
     """Add a lamp, a row of `reflectance.light_rows`; its light falls with the square of the distance."""
     a2 = m[3]
@@ -122,7 +122,7 @@ def _add_near(jobs: Any, m: Any, light: Any) -> None:
         jobs[i + 208] += power * (r2 * jobs[i + 256] * n + f2 * shine + k2 * grazing)
 
 
-@fast_kernel
+@fast_inner
 def light_blocks(
     jobs: Any, block_material: Any, n_blocks: int, materials: Any, far: Any, near: Any, ambient: Any, axis: Any
 ) -> None:

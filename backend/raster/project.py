@@ -11,7 +11,7 @@ from typing import Any
 
 import numpy as np
 
-from .compiled import kernel
+from ..compiled import kernel
 
 SUBPIXELS = 256
 NEAR = 0.01  # mm: nothing nearer to the plane of the projection centre is drawn

@@ -12,8 +12,8 @@ from typing import Any
 
 import numpy as np
 
+from ..compiled import fast_inner, inner
 from .bins import TILE
-from .compiled import fast_kernel, kernel
 from .light import BLOCK, RESULT, WIDTH, light_blocks
 
 # Blocks are lit after the row of pixels that fills ENOUGH of them, to stay in the nearest cache; a row adds at most one
@@ -24,7 +24,7 @@ _ZERO, _ONE, _HALF = np.float32(0), np.float32(1), np.float32(0.5)
 _RESULT = RESULT * WIDTH
 
 
-@fast_kernel
+@fast_inner
 def _deposit(jobs: Any, fills: Any, n_blocks: int, pixel: Any, share: Any, light: Any) -> None:
     """Clamp the shaded jobs and add them to their pixels."""
     for block in range(n_blocks):
@@ -37,7 +37,7 @@ def _deposit(jobs: Any, fills: Any, n_blocks: int, pixel: Any, share: Any, light
                 light[p * 3 + channel] += w * (value if value < _ONE else _ONE)
 
 
-@fast_kernel
+@fast_inner
 def shade_tile(
     face: Any, left: int, top: int, width: int, height: int, samples: int,
     points: Any, faces: Any, normals: Any, face_node: Any, node_shift: Any, node_move: Any, node_material: Any,
@@ -165,7 +165,7 @@ def shade_tile(
     return is_seen
 
 
-@kernel
+@inner
 def encode_tile(
     light: Any, width: int, height: int, image: Any, row: int, column: int, edges: Any, guess: Any, steps: Any
 ) -> None:

@@ -11,15 +11,15 @@ from typing import Any
 
 import numpy as np
 
+from ..compiled import inner
 from .bins import TILE
 from .block import LANES, cover_1, cover_4
-from .compiled import kernel
 
 _LONG = 1 << 22  # 1/256 px: a triangle this long may overflow 32 bits outside single blocks
 _OUTERMOST = np.float32(np.inf)
 
 
-@kernel
+@inner
 def _edge(ax: Any, ay: Any, bx: Any, by: Any) -> Any:
     """Edge function E = a x + b y + c in lattice units, at least 0 inside; the top-left rule is in c."""
     a, b = ay - by, bx - ax
@@ -29,7 +29,7 @@ def _edge(ax: Any, ay: Any, bx: Any, by: Any) -> Any:
     return a, b, c >> 4
 
 
-@kernel
+@inner
 def _cover(
     samples: int, depth: Any, face: Any, o: int, e: Any, a: Any, b: Any, z: Any, zx: Any, zy: Any, t: Any
 ) -> None:
@@ -40,7 +40,7 @@ def _cover(
         cover_1(depth, face, o, e0, e1, e2, a[0], a[1], a[2], b[0], b[1], b[2], np.float32(z), zx, zy, t)
 
 
-@kernel
+@inner
 def raster_tile(
     faces: Any, pieces: Any, piece_face: Any, x: Any, y: Any, z: Any, face_patch: Any, patch_plane: Any, planes: Any,
     entries: Any, begin: int, end: int, left: Any, top: Any, columns: Any, rows: Any, corner: Any,
