@@ -28,9 +28,10 @@ FacesUnder: TypeAlias = Callable[[F64], I32]
 
 EXTENSION_MM = 0.02
 """How far a line runs on where it ends, past the line that hides the rest of it."""
-BRIDGE_MM = 0.05
-"""A hidden stretch shorter than this, with the same line seen on both sides, is taken as seen: it bounds an area still.
-"""
+BRIDGE_MM = 0.3
+"""A hidden stretch shorter than this, with the same line seen on both sides, is taken as seen: where a line of
+penetration runs along a silhouette it may dip behind a facet. A border too many parts nothing, as both sides of it are
+told by what is seen there."""
 LEAST_AREA_MM2 = 1e-3
 """Faces of the arrangement smaller than this go to a neighbour."""
 SIMPLIFY_MM = 5e-3
@@ -85,7 +86,7 @@ def borders_of(pieces: Pieces, candidates: Candidates) -> Polylines:
 
 
 def _is_bridge(pieces: Pieces, candidates: Candidates) -> Bools:
-    """Hidden pieces too short to be told from an error, between two seen ones of the same line: they leave no gap."""
+    """Short hidden pieces between two seen ones of the same line: they leave no gap."""
     found = np.zeros(len(pieces.segment), np.bool_)
     if len(found) < 3:
         return found
