@@ -150,6 +150,7 @@ BOLTS = (
 
 def test_copies_made_from_a_table_are_named_by_its_first_column_everywhere() -> None:
     text = BOLTS + "figure f\n    show rack.bolts[M6] from front\n    scale 1:1\n    margin 0 mm\n"
+    text += "    drawn as tone\n"
     text += "expect rack\n    distance(bolts[M4].head, bolts[M6].head) = 20 mm\n    width(bolts[8]) = 8 mm\n"
     text += '    height(bolts["M4"]) = 10 mm\n    distance(rack.bolts[M4].head, bolts[8].head) = 40 mm\n'
     run = clean(text, {"bolts.csv": TABLE})
