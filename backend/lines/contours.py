@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 from ..compiled import kernel
 from ..contract import F32, F64, I32, U8, EdgeKind, LineClass, PatchKind
 from .chaining import walked
-from .model import Bools, Candidates, View
+from .model import Bools, Candidates, View, joined
 from .near import NEAR
 from .segments import along_sight, candidates, dot, fixed, length, none, shifts, to_view, weight
 from .tangency import Surfaces, bends_away, chord_crossing, lifted, surfaces_of, turning
@@ -68,6 +68,8 @@ def contours_of(view: View) -> Candidates:
     that the solid does not hide at the touch may have its own patch before it by the longest side of the triangle it
     runs in, or by any length on a quadric. Where a torus bends the other way, so that the touch is inside the solid,
     the outline stands that much deeper instead and its own surface hides it for certain.
+    Where an outline ends on a rim, the rim is seen from there on, but its edges only from a corner of the triangle on:
+    the stretch between is given with the outlines.
     Cost: one pass over the corner normals, then linear in the triangles that outlines run in.
     """
     surfaces = _surfaces(view)
@@ -83,7 +85,9 @@ def contours_of(view: View) -> Candidates:
     order, turned, chain = walked(fixed(ends), len(crossings.low))
     turns, ends = turns.take(order), ends[order]
     ends = np.where(turned[:, None], ends[:, ::-1], ends)
-    return _drawn(view, surfaces, turns, crossings, ends, chain)
+    return joined(
+        (_drawn(view, surfaces, turns, crossings, ends, chain), _rims(view, surfaces, turns, crossings, ends))
+    )
 
 
 # --- which triangles
@@ -251,6 +255,45 @@ def _drawn(view: View, surfaces: Surfaces, turns: _Turns, crossings: _Crossings,
         patch=patch,
         allowance=allowance,
     )
+
+
+def _rims(view: View, surfaces: Surfaces, turns: _Turns, crossings: _Crossings, ends: I32) -> Candidates:
+    """Stretches of rims from where an outline ends to the near corner of its triangle, where no edge is given."""
+    is_end = (np.bincount(ends.ravel(), minlength=len(crossings.low)) == 1) & (crossings.low != crossings.high)
+    piece, slot = np.nonzero(is_end[ends])
+    crossing, face = ends[piece, slot], turns.face[piece]
+    low, high = crossings.low[crossing], crossings.high[crossing]
+    corners = view.faces[face]
+    following = np.roll(corners, -1, axis=1)
+    is_side = ((corners == low[:, None]) & (following == high[:, None])) | (
+        (corners == high[:, None]) & (following == low[:, None])
+    )
+    side = np.argmax(is_side, axis=1)
+    kind, other = view.edge_kind[face, side], view.neighbour[face, side]
+    is_open = np.array([not node.closed for node in view.geometry.nodes], np.bool_)[view.face_node[face]]
+    gives = np.stack([_gives_edge(view.facing[each], is_open) & (each >= 0) for each in (face, other)]).any(axis=0)
+    kept = np.flatnonzero(((kind == EdgeKind.SHARP) | (kind == EdgeKind.BORDER)) & ~gives)
+    piece, crossing, face, low, high = piece[kept], crossing[kept], face[kept], low[kept], high[kept]
+    # The corner at which the surface faces the viewer.
+    is_low = (turns.corner[piece] == low[:, None]) & (turns.value[piece] < 0.0)
+    near = np.where(is_low.any(axis=1), low, high).astype(np.int32)
+    unknown, patch, point = np.full(len(kept), -1, np.int32), view.face_patch[face], crossings.chord[crossing]
+    depth, allowance = _depths(view, surfaces, patch, face, point)
+    return candidates(
+        _seen(view, point, unknown, depth),
+        _seen(view, view.world[near], unknown, depth),
+        LineClass.VISIBLE_OUTLINE,
+        node=view.face_node[face],
+        faces=np.stack((face, unknown), axis=1),
+        vertices=np.stack((unknown, near), axis=1),
+        patch=patch,
+        allowance=allowance,
+    )
+
+
+def _gives_edge(facing: NDArray[np.int8], is_open: Bools) -> Bools:
+    """Whether a triangle on one side of an edge is enough for it to be given; see `edges.edges_of`."""
+    return np.asarray((facing > 0) | (is_open & (facing != 0)))
 
 
 def _runs(chain: I32, goes_straight_on: Bools) -> NDArray[np.intp]:
