@@ -7,9 +7,9 @@ import numpy as np
 from ..compiled import kernel
 from ..contract import I32
 from .model import Bools
+from .segments import fixed
 
 
-@kernel
 def walked(ends: I32, n_joints: int) -> tuple[I32, Bools, I32]:
     """Segments in order along curves: (order, is_reversed, chain), each (k,).
 
@@ -17,6 +17,11 @@ def walked(ends: I32, n_joints: int) -> tuple[I32, Bools, I32]:
     segments. Open curves come first; each starts at its end of the lowest row, a closed one at its lowest row.
     Cost: linear.
     """
+    return _walked(fixed(ends), n_joints)
+
+
+@kernel
+def _walked(ends: I32, n_joints: int) -> tuple[I32, Bools, I32]:
     k = len(ends)
     count = np.zeros(n_joints, np.int32)
     at = np.full((n_joints, 2), -1, np.int32)

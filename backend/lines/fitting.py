@@ -251,10 +251,13 @@ def _ellipse_of(p: F64, left: int, right: int, free: int) -> F64:
     the first to the last point, positive when clockwise on the page.
     """
     high = right - (free & _RING) // _RING
-    shape = _ellipse_by(p, left, right, left, high, 0)
-    if shape[0] == 0 and free & (_FIRST | _LAST):
-        low, high = left + (free & _FIRST), high - (free & _LAST) // _LAST
-        shape = _ellipse_by(p, left, right, low, high, 1)
+    shape = np.zeros(7)
+    # A loop, as numba would compile what is called once more for every number written out.
+    for spare in range(2 if free & (_FIRST | _LAST) else 1):
+        first, last = left + spare * (free & _FIRST), high - spare * (free & _LAST) // _LAST
+        shape = _ellipse_by(p, left, right, first, last, spare)
+        if shape[0] > 0:
+            break
     return shape
 
 

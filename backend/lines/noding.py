@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from ..compiled import inner, kernel
 from ..contract import F64
+from .segments import fixed
 
 I64: TypeAlias = NDArray[np.int64]
 
@@ -52,6 +53,7 @@ def near(points: F64, start: F64, end: F64, reach: float, ends: I64 | None = Non
         return np.zeros(0, np.int64), np.zeros(0, np.int64)
     if ends is None:
         ends = np.full((len(start), 2), -1)
+    start, end, ends = fixed(start), fixed(end), fixed(ends)
     bounds = _bounds(points)
     down = _sorted_rows(_levels(points, reach))
     first, order, along = _columns(points, down, bounds)
@@ -99,12 +101,12 @@ def ends_at(ends: I64, n_points: int) -> tuple[I64, I64]:
 
     An end is 2 s or 2 s + 1 for the first or second end of segment s. Cost: linear.
     """
-    return _ends_at(np.ascontiguousarray(ends), n_points)
+    return _ends_at(fixed(ends), n_points)
 
 
 def _lie_along(ends: I64, points: F64, reach: float, segment: I64, point: I64) -> NDArray[np.bool_]:
     """Of pairs of a segment and a point on it: whether a segment that ends in the point runs on along the first."""
-    first, at = _ends_at(ends, len(points))
+    first, at = _ends_at(fixed(ends), len(points))
     count = first[point + 1] - first[point]
     pair = np.repeat(np.arange(len(point)), count)
     other = at[np.arange(len(pair)) - np.repeat(np.cumsum(count) - count, count) + first[point][pair]] >> 1

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gc
 from collections.abc import Iterator
 from contextlib import contextmanager
 from typing import TYPE_CHECKING
@@ -14,11 +15,30 @@ if TYPE_CHECKING:
     from platewright.compiler.scene import Refusal
 
 _NAME = "warm-up.plate"
+_SELDOM = (100_000, 20, 20)
 _SCENE = """\
 platewright 1
 
 part post
     add cylinder diameter 20 mm length 30 mm
+    add block (26 mm, 8 mm, 10 mm) at (1 mm, 0, 12 mm)
+    cut cylinder diameter 6 mm length 40 mm at (0, 0, -1 mm)
+
+part bead
+    add sphere diameter 12 mm
+    add torus diameter 14 mm tube 3 mm
+
+part bolt
+    add thread M6 length 20 mm
+
+part bar
+    add block (30 mm, 5 mm, 5 mm)
+
+assembly all
+    place post
+    place bead at (3 mm, -2 mm, 33 mm)
+    place bolt at (0, 0, 20 mm) facing (1, -2, 1)
+    place bar at (0, 0, 8 mm) facing (1, 1, 3)
 
 viewpoint near
     eye (60 mm, -90 mm, 60 mm) toward (0, 0, 15 mm)
@@ -47,25 +67,67 @@ figure facing
     show post
     drawn as survey facing
     width 10 mm
+
+figure lines
+    show all
+    drawn as lines
+    hidden edges dashed
+    width 30 mm
+
+figure near_lines
+    show all from near
+    drawn as lines
+    threads real
+    width 30 mm
+
+figure lines_over_tone
+    show all from near
+    drawn as lines and tone
+    width 30 mm
+
+figure section
+    show all from front
+    section across y at 0
+    drawn as lines
+    width 30 mm
+
+figure tints
+    show all
+    drawn as tints
+    width 30 mm
+
+figure stipple
+    show all
+    drawn as stipple
+    width 30 mm
 """
 
 
 @contextmanager
 def compiling_told(report: Report) -> Iterator[None]:
-    """Within the block, say when kernels have to be compiled before something is drawn. Imports numba."""
+    """Within the block, say when kernels have to be compiled before something is drawn. Imports numba.
+
+    From the first of them to the end of the block garbage is collected seldom: compiling makes much that stays, and
+    going through it again and again would cost a sixth of the wait.
+    """
     from numba.core.event import Event, Listener, install_listener
 
     class Notice(Listener):
         """Kernels that are read from numba's cache cause no event."""
 
         def on_start(self, event: Event) -> None:
+            gc.set_threshold(*_SELDOM)
             report.message_once("compiling the drawing kernels for this machine, which happens once")
 
         def on_end(self, event: Event) -> None:
             pass
 
-    with install_listener("numba:compile", Notice()):
-        yield
+    usual = gc.get_threshold()
+    try:
+        with install_listener("numba:compile", Notice()):
+            yield
+    finally:
+        gc.set_threshold(*usual)
 
 
 def warm_up(trace: Trace, report: Report) -> int:
@@ -87,6 +149,6 @@ def warm_up(trace: Trace, report: Report) -> int:
             job, problems = plan(model, figure.name, KeptMeshes(), resolution=100.0, measures=True)
             if job is None:
                 raise AssertionError(f"the warm-up scene does not draw: {problems}")
-            sheet.draw(job, ("png",))
+            sheet.draw(job, ("svg", "png", "tiff"))
     report.message("the drawing kernels are ready")
     return 0
