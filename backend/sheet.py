@@ -14,7 +14,6 @@ from .contract import U8, ContractError, Job, Measure, Panel, verify
 from .drawing import Drawing, Group, Image
 from .lettering.type import Lettering
 from .raster import Progress, measure, paint, survey
-from .write import png, tiff
 from .write.record import DrawnLine
 
 if TYPE_CHECKING:
@@ -124,7 +123,11 @@ def encode(drawn: Drawn, job: Job, kind: str) -> bytes:
     if drawn.image is None or kind not in PICTURES:
         raise ContractError(f"no picture to write as {kind}")
     if kind == "tiff":
+        from .write import tiff
+
         return tiff.tiff_bytes(drawn.image, sheet.page.resolution)
+    from .write import png
+
     # Keywords of the PNG standard: the short alternative is the description, the long one the comment.
     words = (("Title", sheet.title), ("Description", sheet.alt), ("Comment", sheet.description))
     text = tuple((key, value) for key, value in words if value)

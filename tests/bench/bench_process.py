@@ -52,6 +52,19 @@ figure knob_seen
     drawn as tone
     width 40 mm
 """
+_LINES = """\
+platewright 1
+
+part knob
+    add cylinder diameter 30 mm length 12 mm
+    add sphere diameter 24 mm at (0, 0, 12 mm)
+    cut cylinder diameter 6 mm length 40 mm at (0, 0, -5 mm)
+
+figure knob_seen
+    show knob
+    drawn as lines
+    width 40 mm
+"""
 
 
 def scene_of_200_lines() -> str:
@@ -80,23 +93,33 @@ def measure(sides: Mapping[str, Sequence[str]], rounds: int) -> dict[str, float]
 
 
 def main(rounds: int) -> None:
-    """Print both rows."""
+    """Print all rows."""
     with tempfile.TemporaryDirectory() as folder:
         long, small = Path(folder, "long.plate"), Path(folder, "small.plate")
         long.write_text(scene_of_200_lines(), encoding="utf-8")
         small.write_text(_SMALL, encoding="utf-8")
+        lines = Path(folder, "lines.plate")
+        lines.write_text(_LINES, encoding="utf-8")
         check = [*COMMAND, "check", str(long)]
         draw = [*COMMAND, "draw", str(small), "--out", folder]
         seconds(check)
+        ink = [*COMMAND, "draw", str(lines), "--kind", "svg", "--out", folder]
         seconds(draw)
+        seconds(ink)
         sides = {
             "check, 200 lines": check,
             "import lark, numpy": [sys.executable, "-c", "import lark, numpy"],
             "draw, small and warm": draw,
+            "draw, small, warm, of lines to svg": ink,
             "import numba": [sys.executable, "-c", "import numba"],
         }
         medians = measure(sides, rounds)
-    for ours, yardstick in (("check, 200 lines", "import lark, numpy"), ("draw, small and warm", "import numba")):
+    rows = (
+        ("check, 200 lines", "import lark, numpy"),
+        ("draw, small and warm", "import numba"),
+        ("draw, small, warm, of lines to svg", "import numba"),
+    )
+    for ours, yardstick in rows:
         ratio = medians[ours] / medians[yardstick]
         print(f"{ours}: {medians[ours]:.3f} s; bare {yardstick}: {medians[yardstick]:.3f} s; ratio {ratio:.2f}")
 
