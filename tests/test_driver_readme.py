@@ -34,7 +34,7 @@ def test_the_tour_draws_what_it_says(drum: Path, capsys: pytest.CaptureFixture[s
     assert capsys.readouterr().err.replace(COMPILING, "") == ""
     figures = drum.parent / "figures"
     made = {path.relative_to(figures).as_posix(): path.read_bytes() for path in figures.rglob("*.png")}
-    names = [f"{variant}/{figure}.png" for variant in ("large", "small") for figure in ("from_front", "overview")]
+    names = [f"{variant}/{figure}.png" for variant in ("large", "small") for figure in ("cut_open", "parts")]
     assert sorted(made) == names
     text = drum.read_text(encoding="utf-8")
     assert text.count("flange length 5 mm\n") == 1
@@ -50,10 +50,10 @@ def test_the_first_scene_is_that_of_the_picture_beside_it(tmp_path: Path, capsys
     assert path.read_bytes() == (ROOT / "examples" / "drum" / "drum.plate").read_bytes()
     assert main(["draw", str(path), "--resolution", "200"]) == 0
     out, err = capsys.readouterr()
-    assert out == f"{tmp_path / 'figures' / 'overview.png'}\n"
+    assert out == f"{tmp_path / 'figures' / 'parts.png'}\n"
     assert err.replace(COMPILING, "") == ""
     drawn, shown = (
-        np.asarray(Image.open(picture)) for picture in (Path(out.strip()), ROOT / "examples/drum/overview.png")
+        np.asarray(Image.open(picture)) for picture in (Path(out.strip()), ROOT / "examples/drum/parts.png")
     )
     assert drawn.shape == shown.shape
     stale = "draw it again: platewright draw examples/drum/drum.plate --resolution 200 --out examples/drum"
