@@ -27,7 +27,7 @@ SPECTRA = ("air", "grid", "illuminants", "optics", "sky", "sun", "tristimulus", 
 DOOR = (
     "backend.contract", "backend.camera", "backend.lettering.type", *(f"backend.spectra.{each}" for each in SPECTRA),
 )  # fmt: skip
-KERNELS = ("backend.compiled", "backend.raster.", "backend.lines.", "backend.converter.")
+KERNELS = ("backend.compiled", "backend.raster.", "backend.lines.", "backend.converter.", "backend.rays.")
 HEAVY_FOR_LANG = ("numpy", "PIL", "numba", "manifold3d", "rich")
 SHIPPED_WITH = {"PIL": "pillow", "llvmlite": "numba", "fontTools": "fonttools"}
 
