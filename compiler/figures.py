@@ -26,7 +26,7 @@ from .filling import report_filling
 from .flatten import Flattened, Mesher, flatten, walked
 from .frames import RESOLUTION_DPI, WIDTH_MM, Content, Frame, content, frame_of, held_frame
 from .graph import Entry, Point
-from .interruptions import Interrupting
+from .interruptions import Interrupting, shown_by
 from .layout import Box
 from .lightings import lights_for, paired
 from .mistakes import Mistake, Problems, confined, mistake
@@ -119,6 +119,7 @@ class _Planner:
             for view in views_of(spec)
         ]
         self.sights = {number: shot.unit.sight for shot in shots for number in shot.view.cuts}
+        shots = [self._following(shot, shots[0]) for shot in shots]
         frame = self._frame(shots, lambda shot: content(shot.unit, corners))
         shots = self._finer(shots, frame, lambda shot: corners)
         frame = self._frame(shots, self._content)
@@ -213,6 +214,15 @@ class _Planner:
             found.append(self.extremes[key])
         return tuple(found)
 
+    def _following(self, shot: _Shot, main: _Shot) -> _Shot:
+        """A detail that looks where the mark it names has gone to with the rest of an interrupted view."""
+        window = shot.view.window
+        if window is None or not self.spec.interruptions:
+            return shot
+        centre = self._interrupting(main.view, main.unit.sight).carry(window.centre)
+        view = structs.replace(shot.view, window=structs.replace(window, centre=centre))
+        return _Shot(view, shot.unit, shot.rung)
+
     def _vertices(self, shot: _Shot) -> F64:
         return self._moved(self._shape(shot).geometry)
 
@@ -234,7 +244,7 @@ class _Planner:
         key = (shot.rung, shot.view.cuts, shot.unit.sight if self.spec.interruptions or shot.view.cuts else None)
         if key not in self.shapes:
             spec, opening = self.spec, self._opening(shot.view, shot.unit.sight)
-            interrupting = Interrupting(spec.interruptions, shot.unit.sight, self.corners)
+            interrupting = self._interrupting(shot.view, shot.unit.sight)
 
             def alter(entry: Entry, placement: F64, mesh: contract.Mesh) -> contract.Mesh | None:
                 left = opening.alter(entry, placement, mesh) if opening.cutters else mesh
@@ -246,18 +256,35 @@ class _Planner:
                 shot.rung,
                 self.model.sources,
                 self.mesher,
-                alter if opening.cutters or spec.interruptions else None,
+                alter if opening.cutters or interrupting.steps else None,
             )
             # Warnings about parts are the scene's, and `prove` has given them.
             self.problems.extend(tuple(problem for problem in problems if is_error(problem)))
             opening.judge(cuts_of(shot.view, spec), self.problems)
-            for each, n_broken in zip(spec.interruptions, interrupting.n_broken, strict=True):
-                if not n_broken:
-                    self.problems.error("section-misses", each.span, "no part reaches through the stretch left out")
+            if shot.view.is_main:
+                self._judge_interruptions(interrupting)
             if flattened is None or self.problems.has_errors:
                 raise Mistake(None)
+            if interrupting.steps:
+                nodes = tuple(map(interrupting.carried, flattened.geometry.nodes))
+                flattened = structs.replace(flattened, geometry=replace(flattened.geometry, nodes=nodes))
             self.shapes[key] = flattened
         return self.shapes[key]
+
+    def _interrupting(self, view: View, sight: Point) -> Interrupting:
+        """The stretches that a view leaves out; a cut face alone is shown whole."""
+        shown = shown_by(self.spec.interruptions, sight) if view.shows == "all" else ()
+        return Interrupting(shown, sight, self.corners)
+
+    def _judge_interruptions(self, interrupting: Interrupting) -> None:
+        broken = {each.span for number, each, _ in interrupting.steps if interrupting.n_broken[number]}
+        seen = {each.span for _, each, _ in interrupting.steps}
+        for each in self.spec.interruptions:
+            if each.span not in seen:
+                hint = "take a view from the side"
+                self.problems.error("edge-on-section", each.span, "the view looks along the stretch left out", hint)
+            elif each.span not in broken:
+                self.problems.error("section-misses", each.span, "no part reaches through the stretch left out")
 
     def _opening(self, view: View, sight: Point) -> Opening:
         cuts = cuts_of(view, self.spec)

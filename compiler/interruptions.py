@@ -8,7 +8,7 @@ from math import sin
 
 import numpy as np
 from msgspec import Struct
-from platewright.backend.contract import F64, FaceOrigin, Mesh, Patches
+from platewright.backend.contract import F64, FaceOrigin, Mesh, Node, Patches, Thread
 from platewright.lang.source import Span
 
 from .graph import Entry, Point
@@ -16,6 +16,9 @@ from .solids.cut import Cutter, cut_mesh
 
 GAP_SHARE = 0.03
 """The gap that is left where a stretch goes, over the length that stays."""
+
+ALONG = 1e-6
+"""A view looks along a stretch where the product of the unit directions is nearer to 1 than this."""
 
 _N_WAVE = 48
 _WAVE_SHARE = 0.05  # amplitude of the break over the width of what is broken
@@ -55,8 +58,38 @@ class Interrupting:
                 left = _moved_up(left, placement, each, self._gap(each))
         return left
 
+    def carry(self, point: Point) -> Point:
+        """Where a world point goes with what stands beyond the stretches."""
+        x, y, z = point
+        for _, each, _ in self.steps:
+            a, b, c = each.axis
+            if x * a + y * b + z * c > (each.low + each.high) / 2.0:
+                by = each.high - each.low - self._gap(each)
+                x, y, z = x - by * a, y - by * b, z - by * c
+        return (x, y, z)
+
+    def carried(self, node: Node) -> Node:
+        """A node whose marks and threads follow what they belong to."""
+        marks = tuple(replace(mark, point=self.carry(mark.point)) for mark in node.marks)
+        return replace(node, marks=marks, threads=tuple(map(self._thread, node.threads)))
+
+    def _thread(self, thread: Thread) -> Thread:
+        x, y, z = thread.start
+        a, b, c = thread.axis
+        end = self.carry((x + a * thread.length, y + b * thread.length, z + c * thread.length))
+        start = self.carry(thread.start)
+        length = sum((q - p) * along for p, q, along in zip(start, end, thread.axis, strict=True))
+        return replace(thread, start=start, length=max(length, 0.0))
+
     def _gap(self, each: Interruption) -> float:
         return min(GAP_SHARE * max(self.size - (each.high - each.low), 0.0), 0.5 * (each.high - each.low))
+
+
+def shown_by(interruptions: tuple[Interruption, ...], sight: Point) -> tuple[Interruption, ...]:
+    """Those that a view shows: none whose stretch it looks along."""
+    return tuple(
+        each for each in interruptions if abs(sum(a * b for a, b in zip(each.axis, sight, strict=True))) < 1.0 - ALONG
+    )
 
 
 def _cutter(each: Interruption, sight: Point, vertices: F64) -> Cutter:

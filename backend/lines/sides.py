@@ -101,7 +101,9 @@ def _judged(
         ux * vx + uy * vy + uz * vz <= cosine * np.sqrt((ux * ux + uy * uy + uz * uz) * (vx * vx + vy * vy + vz * vz))
     )
     if is_concave or not (sees_f or sees_g):
-        return _HIDDEN if with_hidden and is_one_sharp else _NONE
+        # Risers and broken faces are where the drawing is cut, not edges of the thing.
+        is_made_up = origin[f] == _STEP or origin[g] == _STEP or origin[f] == _BREAK or origin[g] == _BREAK
+        return _HIDDEN if with_hidden and is_one_sharp and not is_made_up else _NONE
     if kind == _INSIDE:
         return _OUTLINE + _CLOSING if is_contour else _NONE
     if origin[f] != origin[g]:
