@@ -321,8 +321,22 @@ def _united_by(areas: Polygons, labels: I64) -> tuple[Polygons, I64]:
     keys, group = np.unique(labels, axis=0, return_inverse=True)
     order = np.argsort(group.reshape(-1), kind="stable")
     members = np.split(areas[order], np.cumsum(np.bincount(group.reshape(-1)))[:-1])
-    united = [each if len(each) == 1 else shapely.get_parts(shapely.coverage_union_all(each)) for each in members]
+    united = [each if len(each) == 1 else shapely.get_parts(_whole_of(each)) for each in members]
     return np.concatenate(united), np.repeat(keys, [len(each) for each in united], axis=0)
+
+
+def _whole_of(areas: Sequence[Any] | Polygons) -> Any:
+    """What areas that touch cover together.
+
+    Their borders have points in common unless noding has rounded two lines to the same place; then the slower union,
+    which finds the points itself, is taken.
+    """
+    import shapely
+
+    try:
+        return shapely.coverage_union_all(areas)
+    except shapely.errors.GEOSException:
+        return shapely.union_all(areas)
 
 
 def _of_neighbours(areas: Polygons, labels: I64) -> I64:
@@ -376,6 +390,6 @@ def _united(regions: Sequence[Region]) -> Iterator[tuple[Rings, float]]:
         return
     import shapely
 
-    whole = shapely.coverage_union_all([polygon_of(region) for region in regions])
+    whole = _whole_of([polygon_of(region) for region in regions])
     for polygon in shapely.get_parts(shapely.normalize(whole)):
         yield rings_of(polygon), float(polygon.area)
