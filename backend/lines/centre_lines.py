@@ -18,6 +18,9 @@ from .queries import hiders
 from .segments import along_sight, candidates, dot, length, shifts, to_view, unit, weight
 from .walls import joined_stretches
 
+FAR_APART = 12.0
+"""Round surfaces on one axis with more than this many radii between them have centre lines of their own."""
+
 BEYOND_MM = 2.0
 """A centre line passes the outline by this on paper, mm."""
 SMALLEST_MM = 1.5
@@ -110,8 +113,31 @@ def _rounds_of(view: View, node: int, patches: list[I32], shift: F64) -> list[_R
             alone.append((centre, some))
         else:
             known[2].append(some)
-    turned = [_turned(view, node, origin, axis, np.concatenate(some)) for origin, axis, some in axes]
+    turned = [
+        _turned(view, node, origin, axis, np.concatenate(group))
+        for origin, axis, some in axes
+        for group in _apart(view, origin, axis, some)
+    ]
     return [each for each in (*turned, *(_ball(view, node, *ball) for ball in alone)) if each is not None]
+
+
+def _apart(view: View, origin: F64, axis: F64, patches: list[I32]) -> list[list[I32]]:
+    """Surfaces on one axis in groups: what is far from the next along it has a line of its own."""
+    places = []
+    for some in patches:
+        off = view.world[view.faces[some]].reshape(-1, 3) - origin
+        height = dot(off, axis)
+        places.append((float(height.min()), float(height.max()), float(length(off - height[:, None] * axis).max())))
+    groups: list[list[I32]] = []
+    reach, radius = 0.0, 0.0
+    for row in sorted(range(len(patches)), key=lambda k: (places[k][0], k)):
+        low, high, wide = places[row]
+        if not groups or low - reach > FAR_APART * max(radius, wide):
+            groups.append([])
+            reach, radius = high, wide
+        groups[-1].append(patches[row])
+        reach, radius = max(reach, high), max(radius, wide)
+    return groups
 
 
 def _is_on(known: tuple[F64, F64, list[I32]], point: F64) -> bool:
