@@ -114,12 +114,13 @@ def _is_beside(boxes: Any, q: int, k: int, x0: Any, y0: Any, dx: Any, dy: Any) -
 
 @kernel
 def cut_segments(
-    boxes: Any, starts: Any, corners: Any, labels: Any, start: Any, end: Any, faces: Any, node: Any, patch: Any,
+    boxes: Any, starts: Any, corners: Any, labels: Any, start: Any, end: Any, faces: Any, parts: Any, patch: Any,
     allowance: Any, treat: Any, depth_mm: Any, sideways_mm: Any, is_central: bool, begin: int, last: int,
     stack: Any, spans: Any, label: Any, span: Any,
 ) -> int:  # fmt: skip
     """Pieces of the segments begin .. last in their order; returns their number, or -1 if there is not enough room.
 
+    parts (s,2) int32 are the parts a segment belongs to, which hide no further than they reach; the same twice for one.
     Written are label (p,2) int32: segment, and 1 if seen; span (p,2) float64. stack (STACK,2) int32 and spans (k,2) are
     scratch.
     """
@@ -157,7 +158,7 @@ def cut_segments(
                     continue
                 slack, reach = depth_mm, 0.0
                 of_patch = labels[r, 5]
-                if labels[r, 4] != node[s]:
+                if labels[r, 4] != parts[s, 0] and labels[r, 4] != parts[s, 1]:
                     if of_patch < 0:
                         continue
                     reach = sideways_mm

@@ -51,7 +51,7 @@ def see(
         (
             edges_of(view, panel.style, threads),
             contours_of(view),
-            penetrations_of(view, threads),
+            _owned(penetrations_of(view, threads), view),
             conventions_of(view, panel.style, occluders),
             curves_of(view, panel.curves),
         )
@@ -65,6 +65,17 @@ def see(
     if panel.clip is not None:
         pieces = clipped(pieces, panel.clip)
     return Seen(view, _sectioned(candidates, view), pieces, occluders, regions)
+
+
+def _owned(penetrations: Candidates, view: View) -> Candidates:
+    """Lines of penetration as those of the part whose path sorts first, in whatever order the two are declared."""
+    if not len(penetrations):
+        return penetrations
+    paths = [node.path for node in view.geometry.nodes]
+    rank = np.argsort(np.argsort(np.array(paths), kind="stable"), kind="stable")
+    nodes = view.face_node[penetrations.faces]
+    first = rank[nodes[:, 0]] <= rank[nodes[:, 1]]
+    return replace(penetrations, node=np.where(first, nodes[:, 0], nodes[:, 1]).astype(np.int32))
 
 
 def _closed_by(polygon: F64, candidates: Candidates, pieces: Pieces) -> tuple[Candidates, Pieces]:

@@ -24,7 +24,7 @@ def cut(view: View, candidates: Candidates, threads: int | None = None, occluder
     known already. Cost: O(log n) and the triangles before it for each segment.
     """
     tree = occluders_of(view, threads) if occluders is None else occluders
-    treat = _treatment(candidates)
+    treat, parts = _treatment(candidates), _parts(view, candidates)
     is_central = view.projection.kind == "central"
 
     def work(begin: int, end: int) -> tuple[I32, F64]:
@@ -33,7 +33,7 @@ def cut(view: View, candidates: Candidates, threads: int | None = None, occluder
             spans, label, span = np.empty((room, 2)), np.empty((room, 2), np.int32), np.empty((room, 2))
             n = cut_segments(
                 tree.boxes, tree.starts, tree.corners, tree.labels, candidates.start, candidates.end, candidates.faces,
-                candidates.node, candidates.patch, candidates.allowance, treat, view.tolerance.depth_mm,
+                parts, candidates.patch, candidates.allowance, treat, view.tolerance.depth_mm,
                 view.tolerance.sideways_mm, is_central, begin, end, stack, spans, label, span,
             )  # fmt: skip
             if n >= 0:
@@ -62,6 +62,14 @@ def between(start: F64, end: F64, share: F64) -> F64:
     is_last = share == 1.0
     points[is_last] = end[is_last]
     return points
+
+
+def _parts(view: View, candidates: Candidates) -> I32:
+    """The two parts (s,2) whose faces meet in each candidate; its own twice where they are of one part."""
+    of_face = np.append(view.face_node, -1)
+    own = np.where(candidates.faces >= 0, of_face[candidates.faces], candidates.node[:, None])
+    other = np.where(own[:, 0] != candidates.node, own[:, 0], own[:, 1])
+    return np.ascontiguousarray(np.stack([candidates.node, other], axis=1), np.int32)
 
 
 def _treatment(candidates: Candidates) -> U8:
