@@ -63,6 +63,9 @@ _OVERHANG_ROUNDS = 3
 TITLE_SHARE = 2.0
 """Paper that a view's title takes above it, over the height of its letters."""
 
+CAPTION_LETTERS, LETTER_WIDTH = 10, 0.75
+"""Letters of the longest caption of a detail that is common, and their width over the height of capitals."""
+
 TRACE_FREE_MM = 13.0
 """Paper that the end of a cutting-plane line takes, with its letter."""
 
@@ -146,8 +149,12 @@ class _Planner:
         style = style_of(self.spec.manner, frame.width, is_pictorial(shot.view.viewpoint))
         # Half of an outline lies outside what it is the outline of.
         ink = style.wide / 2 if style.is_of_lines else 0.0
-        if shot.view.window is not None:
-            return (ink, ink, ink, ink)
+        window = shot.view.window
+        if window is not None:
+            # A caption that is wider than the circle below it.
+            caption = CAPTION_LETTERS * LETTER_WIDTH * title_height(frame.width) if window.letter else 0.0
+            aside = max(ink, (caption - window.diameter * projection.scale) / 2)
+            return (aside, ink, aside, ink)
         low, high, _ = self._content(shot)
         found: Around = (ink, ink, ink, ink)
         of_round = self._round_content(shot) if style.is_of_lines and style.centre_lines else None
@@ -391,6 +398,8 @@ class _Planner:
             vertices = self._reached(shot)
             if shot.view.window is None:
                 self._seen(projection, spot.place, vertices)
+            else:
+                self._finds(shot.view, projection, vertices)
             panel = self._panel(shot.view, projection, spot.place, shape.geometry, shapes.index(shape), frame)
             self._looks_from_outside(panel, shape.geometry)
             extremes = tuple(
@@ -481,6 +490,17 @@ class _Planner:
             sentence = f"a {cut.shown} section is drawn in lines, which this figure has none of"
             raise mistake("wrong-form", cut.span, sentence, "say `drawn as lines`")
         return style if style.drawn_as == "tints" else replace(style, drawn_as="lines")
+
+    def _finds(self, view: View, projection: contract.Projection, vertices: F64) -> None:
+        """A detail, or a round view, of a place where nothing is, is a problem."""
+        assert view.window is not None
+        low, high, _ = content(projection, vertices)
+        middle, _ = camera.to_page(projection, np.array([view.window.centre]))
+        reach = view.window.diameter / 2 * projection.scale
+        at = (float(middle[0, 0]), float(middle[0, 1]))
+        if any(at[k] + reach < low[k] or at[k] - reach > high[k] for k in (0, 1)):
+            span = next((each.span for each in self.spec.details if each.centre == view.window.centre), self.spec.span)
+            raise mistake("nothing-in-view", span, "nothing of the subject lies within this circle", "move it")
 
     def _looks_from_outside(self, panel: contract.Panel, geometry: contract.Geometry) -> None:
         """An eye within a solid that is shown is a problem: nothing of it, and little else, could be seen."""

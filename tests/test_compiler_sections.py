@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 from platewright.backend import camera, contract, sheet
 from platewright.backend.contract import FaceOrigin, LineClass
+from platewright.backend.lettering.type import Lettering
 from platewright.compiler.graph import Entry
 from platewright.compiler.mistakes import Problems
 from platewright.compiler.sections import Cut, Opening, Plane, letter_of
@@ -448,3 +449,34 @@ def test_a_revolved_section_turns_into_the_view_about_its_middle() -> None:
 def test_a_revolved_section_takes_no_letter() -> None:
     job = figure("revolved section across x at 5 mm", "removed section across x at 10 mm", "view along x as B")
     assert [each.text for each in job.sheet.inscriptions] == ["A–A", "B"]
+
+
+def test_a_detail_of_a_place_where_nothing_is_is_a_problem_at_its_line() -> None:
+    problem = problem_of("detail of (300 mm, 0, 0) enlarged 2 diameter 10 mm")
+    assert (problem.code, problem.severity) == ("nothing-in-view", Severity.ERROR)
+    assert problem.span.line == text_of().count("\n") + 1
+
+
+def test_the_caption_of_a_small_detail_has_room_on_the_page() -> None:
+    job = figure("detail of plate.side enlarged 2 diameter 4 mm", "scale 1:3", "width 120 mm")
+    (caption,) = [each for each in job.sheet.inscriptions if each.text.startswith("Z")]
+    half = Lettering().width_of(caption.text, caption.height) / 2
+    assert half <= caption.place[0] <= job.sheet.page.width - half
+
+
+def test_an_interruption_takes_marks_threads_and_details_with_it_and_not_along_the_sight() -> None:
+    model = (
+        "part stud\n    add cylinder diameter 20 mm length 40 mm\n"
+        '    add thread "M12" length 20 mm at (0, 0, 40 mm)\n    mark tip at (0, 0, 60 mm)\n'
+    )
+    lines = ("interrupted along z from 10 mm to 30 mm", "detail of tip enlarged 2 diameter 8 mm")
+    job = figure(*lines, show="show stud from front", model=model)
+    node = geometry_of(job).nodes[0]
+    top = float(geometry_of(job).vertices[:, 2].max())
+    assert 40.0 < top < 45.0
+    assert node.marks[0].point[2] == pytest.approx(top)
+    (thread,) = node.threads
+    assert thread.start[2] == pytest.approx(top - 20.0) and thread.length == pytest.approx(20.0)
+    assert job.sheet.panels[0].detail_frames[0].centre[2] == pytest.approx(top)
+    problem = problem_of(lines[0], show="show stud from top", model=model)
+    assert (problem.code, problem.sentence) == ("edge-on-section", "the view looks along the stretch left out")

@@ -39,7 +39,7 @@ def notation_of(panel: Panel, lettering: Lettering, height: float, inked: F64) -
     for arrow in panel.arrows:
         items += _view_arrow(arrow, panel.projection, panel.style, lettering, height)
     for frame in panel.detail_frames:
-        items += _detail_frame(frame, panel.projection, panel.style, lettering, height, inked)
+        items += _detail_frame(frame, panel.projection, panel.style, lettering, height, inked, panel.place)
     return (Group("words", f"signs of {panel.name}", tuple(items)),) if items else ()
 
 
@@ -157,7 +157,13 @@ def _view_arrow(
 
 
 def _detail_frame(
-    frame: DetailFrame, projection: Projection, style: Style, lettering: Lettering, height: float, inked: F64
+    frame: DetailFrame,
+    projection: Projection,
+    style: Style,
+    lettering: Lettering,
+    height: float,
+    inked: F64,
+    place: tuple[float, float, float, float],
 ) -> list[Mark]:
     centre = to_page(projection, np.array([frame.centre]))[0]
     radius = frame.diameter / 2
@@ -166,7 +172,14 @@ def _detail_frame(
         half = np.array((lettering.width_of(frame.letter, height), height)) / 2 + 0.2 * height
         turns = [radians(angle) for angle in _ASIDE]
         middles = [centre + np.array((cos(turn), -sin(turn))) * (radius + height * 0.95) for turn in turns]
-        middle = min(middles, key=lambda at: _crossed(inked, at - half, at + half))
+        corner, size = np.array(place[:2]), np.array(place[2:])
+
+        def cost(at: F64) -> tuple[float, float]:
+            """How far a letter would leave the panel, then how much of lines it would cover."""
+            past = np.maximum(corner - (at - half), at + half - corner - size).max()
+            return max(round(float(past), 6), 0.0), _crossed(inked, at - half, at + half)
+
+        middle = min(middles, key=cost)
         found.append(_letter(frame.letter, middle, lettering, height))
     return found
 
