@@ -172,7 +172,8 @@ def test_a_figure_with_settings_shows_a_model_of_its_own() -> None:
         given("d = 4 mm", "wide = no") + "part p\n    add block (d, d, d)\n    add block (9 mm, 1 mm, 1 mm) when wide\n"
     )
     text += "figure a\n    show p from front\n    scale 1:1\n    margin 0 mm\n    drawn as tone\n"
-    text += "figure b\n    show p from front\n    scale 1:1\n    margin 0 mm\n    drawn as tone\n    with d = 2 * d, wide = yes\n"
+    text += "figure b\n    show p from front\n    scale 1:1\n    margin 0 mm\n    drawn as tone\n"
+    text += "    with d = 2 * d, wide = yes\n"
     for figure, size in (("a", (4.0, 4.0)), ("b", (9.0, 8.0))):
         page = planned(text, figure).sheet.page
         assert (page.width, page.height) == pytest.approx(size)
