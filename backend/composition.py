@@ -84,9 +84,7 @@ def _lines_of(job: Job, row: int, threads: int | None) -> PanelLines:
     panel = job.sheet.panels[row]
     seen = set_apart(see(job.geometries[panel.geometry], panel, job.sheet.page, threads), panel)
     # Of two parts with one line the first by its path has it, in whatever order they are declared.
-    paths = [node.path for node in job.geometries[panel.geometry].nodes]
-    rank = np.argsort(np.argsort(np.array(paths), kind="stable"), kind="stable")
-    tolerance = seen.view.tolerance
+    rank, tolerance = seen.occluders.rank.astype(np.int64), seen.view.tolerance
     chains = chains_of(seen.pieces, seen.candidates, tolerance, panel.style, view=seen.view, rank=rank)
     return PanelLines(row, seen, chains, tuple(extreme_chains(job, panel, each, threads) for each in panel.extremes))
 
@@ -157,9 +155,9 @@ _SAME_LINE_MM = 0.05
 
 def _beside_traces(chains: Sequence[Chain], panel: Panel) -> tuple[Chain, ...]:
     """Lines without the centre lines that a cutting-plane line runs along: one of two patterns is enough."""
-    from .lines.notation import to_page
+    from .lines.segments import on_page
 
-    traces = [to_page(panel.projection, plane.points) for plane in panel.cutting_planes]
+    traces = [on_page(panel.projection, plane.points) for plane in panel.cutting_planes]
     if not traces:
         return tuple(chains)
     return tuple(

@@ -23,6 +23,7 @@ from ..contract import (
 )
 from ..drawing import Arc, Fill, Group, Lines, Mark, Path, Point, Stroke, Words
 from ..lettering.type import Lettering
+from .segments import on_page
 
 HEAD_ANGLE = 30.0
 """Degrees between the sides of an arrow head: a filled one of 30° (common practice within ISO 129-1's 15° to 90°)."""
@@ -124,7 +125,7 @@ def _cutting_plane(
 ) -> list[Mark]:
     from .dashes import chain_line
 
-    points = to_page(projection, plane.points)
+    points = on_page(projection, plane.points)
     items: list[Mark] = list(chain_line(Path(_point(points[0]), (Lines(points[1:]),)), style, LineClass.CUTTING_PLANE))
     end_length, corner_length = 2.0 * height, height
     for k in range(len(points)):
@@ -146,7 +147,7 @@ def _cutting_plane(
 def _view_arrow(
     sign: ViewArrow, projection: Projection, style: Style, lettering: Lettering, height: float
 ) -> list[Mark]:
-    tip = to_page(projection, np.array([sign.tip]))[0]
+    tip = on_page(projection, np.array([sign.tip]))[0]
     sight = _direction(projection, np.array(sign.tip), sign.sight)
     tail = tip - sight * height * 3.0
     beside = np.array((sight[1], -sight[0]))
@@ -165,7 +166,7 @@ def _detail_frame(
     inked: F64,
     place: tuple[float, float, float, float],
 ) -> list[Mark]:
-    centre = to_page(projection, np.array([frame.centre]))[0]
+    centre = on_page(projection, np.array([frame.centre]))[0]
     radius = frame.diameter / 2
     found: list[Mark] = [Stroke(circle(_point(centre), radius), style.narrow, LineClass.DETAIL_FRAME)]
     if frame.letter:
@@ -220,21 +221,13 @@ def _toward(start: F64, end: F64, length: float) -> Point:
 
 def _direction(projection: Projection, at: F64, along: tuple[float, float, float]) -> F64:
     """The unit direction on the page of a world direction at a world point; down where it is seen end-on."""
-    ends = to_page(projection, np.stack((at, at + np.asarray(along))))
+    ends = on_page(projection, np.stack((at, at + np.asarray(along))))
     x, y = (float(each) for each in ends[1] - ends[0])
     if hypot(x, y) < 1e-9:
         return np.array((0.0, 1.0))
     # An arrow along an axis is exactly level or upright, whatever the last digit says.
     size = hypot(x, y)
     return np.array([round(each / size, 9) for each in (x, y)])
-
-
-def to_page(projection: Projection, points: F64) -> F64:
-    """Page mm (k,2) of world points (k,3), sums spelt out so that their order is the same everywhere."""
-    m = projection.world_to_page
-    x, y, z = points[:, 0], points[:, 1], points[:, 2]
-    rows = [m[k, 0] * x + m[k, 1] * y + m[k, 2] * z + m[k, 3] for k in (0, 1, 3)]
-    return np.stack((rows[0] / rows[2], rows[1] / rows[2]), axis=1)
 
 
 def _point(at: F64) -> Point:

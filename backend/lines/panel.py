@@ -6,15 +6,16 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from ..contract import F64, FaceOrigin, Geometry, LineClass, Page, Panel
+from ..contract import F64, I32, FaceOrigin, Geometry, LineClass, Page, Panel
 from .clipping import clipped, near
 from .contours import contours_of
 from .conventions import conventions_of, curves_of
 from .edges import edges_of
-from .model import Candidates, Pieces, Region, View, joined, number_of
+from .model import Candidates, Pieces, Region, View, joined
 from .occluders import Occluders, occluders_of
 from .penetrations import penetrations_of
 from .regions import regions_of
+from .segments import candidates as drawn
 from .topology import Topology
 from .view import see_view
 from .visibility import cut
@@ -51,7 +52,7 @@ def see(
         (
             edges_of(view, panel.style, threads),
             contours_of(view),
-            _owned(penetrations_of(view, threads), view),
+            _owned(penetrations_of(view, threads), view, occluders.rank),
             conventions_of(view, panel.style, occluders),
             curves_of(view, panel.curves),
         )
@@ -67,12 +68,10 @@ def see(
     return Seen(view, _sectioned(candidates, view), pieces, occluders, regions)
 
 
-def _owned(penetrations: Candidates, view: View) -> Candidates:
+def _owned(penetrations: Candidates, view: View, rank: I32) -> Candidates:
     """Lines of penetration as those of the part whose path sorts first, in whatever order the two are declared."""
     if not len(penetrations):
         return penetrations
-    paths = [node.path for node in view.geometry.nodes]
-    rank = np.argsort(np.argsort(np.array(paths), kind="stable"), kind="stable")
     nodes = view.face_node[penetrations.faces]
     first = rank[nodes[:, 0]] <= rank[nodes[:, 1]]
     return replace(penetrations, node=np.where(first, nodes[:, 0], nodes[:, 1]).astype(np.int32))
@@ -82,14 +81,12 @@ def _closed_by(polygon: F64, candidates: Candidates, pieces: Pieces) -> tuple[Ca
     """Lines with the sides of a polygon among them, which are not drawn but close the areas that it cuts."""
     n, following = len(polygon), np.roll(polygon, -1, axis=0)
     start, end = (np.column_stack((points, np.zeros(n))) for points in (polygon, following))
-    none, two = np.full(n, -1, np.int32), np.full((n, 2), -1, np.int32)
-    off, edge = np.zeros(n, np.bool_), number_of(LineClass.VISIBLE_EDGE)
-    sides = Candidates(start, end, np.full(n, edge, np.uint8), none, none, two, two, none, np.zeros(n), off, off)
+    sides = replace(drawn(start, end, LineClass.VISIBLE_EDGE), is_drawn=np.zeros(n, np.bool_))
     rows = np.arange(len(candidates), len(candidates) + n, dtype=np.int32)
     more = Pieces(
         np.concatenate((pieces.segment, rows)),
         np.concatenate((pieces.span, np.tile((0.0, 1.0), (n, 1)))),
-        np.concatenate((pieces.is_visible, ~off)),
+        np.concatenate((pieces.is_visible, np.ones(n, np.bool_))),
         np.concatenate((pieces.start, start)),
         np.concatenate((pieces.end, end)),
     )
@@ -105,9 +102,3 @@ def _sectioned(candidates: Candidates, view: View) -> Candidates:
     is_cap = has_face & (origin[candidates.faces] == FaceOrigin.SECTION_CAP)
     edge_on = is_cap & (view.facing[candidates.faces] == 0)
     return replace(candidates, is_drawn=candidates.is_drawn & ~edge_on.any(axis=1))
-
-
-def polygon_of(place: tuple[float, float, float, float]) -> F64:
-    """The corners (4,2) of a rectangle (left, top, width, height)."""
-    left, top, width, height = place
-    return np.array(((left, top), (left + width, top), (left + width, top + height), (left, top + height)))

@@ -29,6 +29,11 @@ def to_view(projection: Projection, world: F64) -> F64:
     return np.stack([row / rows[3] for row in rows[:3]], axis=1)
 
 
+def on_page(projection: Projection, world: F64) -> F64:
+    """Page points (k,2) mm of world points (k,3) mm, all in front of the eye."""
+    return to_view(projection, world)[:, :2]
+
+
 def weight(projection: Projection, world: F64) -> F64:
     """W of `contract.Projection` (k,) of world points (k,3): in central projection mm before the eye, else 1."""
     row = projection.world_to_page[3]

@@ -17,10 +17,6 @@ from .session import Session, chosen_figures, chosen_variants, open_session, tit
 if TYPE_CHECKING:
     from platewright.compiler.scene import Model, Setting, Variant
 
-KINDS = ("svg", "pdf", "eps", "png", "tiff")
-"""Kinds of file that a figure can be drawn to."""
-
-
 MOST_LINES = 1_000_000
 """Lines a drawing may be made of without a warning, hidden ones with them."""
 
