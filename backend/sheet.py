@@ -19,6 +19,7 @@ from .write.record import DrawnLine
 if TYPE_CHECKING:
     from .composition import PanelLines
     from .converter import Bits
+    from .outlines import Letters
 
 PICTURES = ("png", "tiff")
 VECTORS = ("svg", "pdf", "eps")
@@ -35,8 +36,8 @@ class Drawn:
     """What drawing a sheet gives.
 
     image (rows, columns, 3) uint8, sRGB over white, and bits the same in two values, where a kind wanted them;
-    drawing with all panels for vector kinds; lines of each panel that is drawn in lines; `thin` are widths in mm, and
-    what they are in pixels, that are too few in two values; measures in the order asked.
+    drawing with all panels for vector kinds, and the letters of its words; lines of each panel that is drawn in lines;
+    `thin` are widths in mm, and what they are in pixels, that are too few in two values; measures in the order asked.
     """
 
     image: U8 | None
@@ -44,6 +45,7 @@ class Drawn:
     drawing: Drawing | None
     lines: tuple[PanelLines, ...]
     measures: tuple[Measure, ...]
+    letters: Letters
     thin: tuple[tuple[float, float], ...] = ()
 
     @property
@@ -84,9 +86,11 @@ def draw(job: Job, kinds: tuple[str, ...], threads: int | None = None, progress:
     drawing, bits = None, None
     lines: tuple[PanelLines, ...] = ()
     thin: tuple[tuple[float, float], ...] = ()
+    lettering = Lettering()
     if vectors or (of_lines and kinds):
-        lettering = Lettering()
-        tone = _tone(job, min(TONE_RESOLUTION_DPI, sheet.page.resolution), threads, None) if vectors else image
+        resolution = min(TONE_RESOLUTION_DPI, sheet.page.resolution)
+        is_painted = pictures and (resolution == sheet.page.resolution or not vectors)
+        tone = image if is_painted else _tone(job, resolution, threads, None)
         composed = compose(job, tone, lettering, threads)
         drawing, lines = composed.drawing, composed.panels
         if of_lines and pictures:
@@ -98,7 +102,7 @@ def draw(job: Job, kinds: tuple[str, ...], threads: int | None = None, progress:
             if "tiff" in kinds and is_two_valued(job):
                 bits = converter.bits(whole, sheet.page.resolution, lettering.outlines, threads=threads)
                 thin = converter.thin_weights(whole, sheet.page.resolution)
-    return Drawn(image, bits, drawing, lines, _measured(job, threads), thin)
+    return Drawn(image, bits, drawing, lines, _measured(job, threads), lettering.outlines, thin)
 
 
 def is_two_valued(job: Job) -> bool:
@@ -115,7 +119,7 @@ def encode(drawn: Drawn, job: Job, kind: str) -> bytes:
     if kind in VECTORS:
         if drawn.drawing is None:
             raise ContractError(f"no drawing to write as {kind}")
-        return _vector(drawn.drawing, kind)
+        return _vector(drawn.drawing, kind, drawn.letters)
     if kind == "tiff" and drawn.bits is not None:
         from .write.bilevel import group4_bytes
 
@@ -134,8 +138,7 @@ def encode(drawn: Drawn, job: Job, kind: str) -> bytes:
     return png.png_bytes(drawn.image, sheet.page.resolution, text)
 
 
-def _vector(drawing: Drawing, kind: str) -> bytes:
-    letters = Lettering().outlines
+def _vector(drawing: Drawing, kind: str, letters: Letters) -> bytes:
     match kind:
         case "svg":
             from .write.svg import svg_bytes
