@@ -13,6 +13,7 @@ from platewright.lang.source import Span
 
 from .graph import Entry, Point
 from .solids.cut import Cutter, cut_mesh
+from .solids.transform import dot, heights
 
 GAP_SHARE = 0.03
 """The gap that is left where a stretch goes, over the length that stays."""
@@ -78,7 +79,7 @@ class Interrupting:
         a, b, c = thread.axis
         end = self.carry((x + a * thread.length, y + b * thread.length, z + c * thread.length))
         start = self.carry(thread.start)
-        length = sum((q - p) * along for p, q, along in zip(start, end, thread.axis, strict=True))
+        length = dot((end[0] - start[0], end[1] - start[1], end[2] - start[2]), thread.axis)
         return replace(thread, start=start, length=max(length, 0.0))
 
     def _gap(self, each: Interruption) -> float:
@@ -87,26 +88,24 @@ class Interrupting:
 
 def shown_by(interruptions: tuple[Interruption, ...], sight: Point) -> tuple[Interruption, ...]:
     """Those that a view shows: none whose stretch it looks along."""
-    return tuple(
-        each for each in interruptions if abs(sum(a * b for a, b in zip(each.axis, sight, strict=True))) < 1.0 - ALONG
-    )
+    return tuple(each for each in interruptions if abs(dot(each.axis, sight)) < 1.0 - ALONG)
 
 
 def _cutter(each: Interruption, sight: Point, vertices: F64) -> Cutter:
     """A slab with wavy ends, the waves drawn as they look along the line of sight."""
     axis = np.array(each.axis)
-    across = np.array(sight) - axis * float(sum(a * b for a, b in zip(sight, each.axis, strict=True)))
+    across = np.array(sight) - axis * dot(sight, each.axis)
     if float((across**2).sum()) < 1e-12:
         across = np.array((0.0, 0.0, 1.0) if abs(each.axis[2]) < 0.9 else (0.0, 1.0, 0.0))
         across = across - axis * float((across * axis).sum())
     w = across / np.sqrt((across**2).sum())
     v = np.cross(w, axis)
     # The waves follow what is broken: its width across the axis, as the view shows it.
-    aside = _along(vertices, v)
+    aside = heights(vertices, v)
     width = float(np.ptp(aside))
     low, high = vertices.min(axis=0), vertices.max(axis=0)
     deep = float(np.sqrt(((high - low) ** 2).sum())) + 1.0
-    middle = v * float(aside.min() + width / 2.0) + w * float(_along(vertices, w).mean())
+    middle = v * float(aside.min() + width / 2.0) + w * float(heights(vertices, w).mean())
     reach, height = 0.6 * width + 1e-3, min(_WAVE_SHARE * width, 0.25 * (each.high - each.low))
     ups = [reach * (2.0 * k / _N_WAVE - 1.0) for k in range(_N_WAVE + 1)]
     waves = [height * (0.75 * sin(5.2 * up / reach) + 0.25 * sin(11.0 * up / reach + 1.3)) for up in ups]
@@ -118,17 +117,13 @@ def _cutter(each: Interruption, sight: Point, vertices: F64) -> Cutter:
     return Cutter(profile, (x, y, z), each.axis, (vx, vy, vz), -deep, deep, (_BREAK,) * (len(profile) + 2))
 
 
-def _along(points: F64, unit: F64) -> F64:
-    return np.asarray(points[:, 0] * unit[0] + points[:, 1] * unit[1] + points[:, 2] * unit[2])
-
-
 def _moved_up(mesh: Mesh, placement: F64, each: Interruption, gap: float) -> Mesh:
     """What lies beyond the stretch moved back along it, its patches with it."""
     axis = np.array(each.axis)
     linear = placement[:3, :3]
     local = linear[0] * axis[0] + linear[1] * axis[1] + linear[2] * axis[2]
     offset = float((placement[:3, 3] * axis).sum())
-    at = _along(mesh.vertices, local) + offset
+    at = heights(mesh.vertices, local) + offset
     is_beyond = at > (each.low + each.high) / 2.0
     if not is_beyond.any():
         return mesh

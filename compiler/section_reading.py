@@ -20,6 +20,7 @@ from .readings import expression, listed, optional
 from .scope import Scope
 from .sections import Cut, Plane, Shown
 from .selection import parts_named
+from .solids.transform import dot
 from .specs import Detail
 from .values import Quantity, Vector, kind_of
 
@@ -73,7 +74,7 @@ def read_interruptions(
             with problems.collecting():
                 each = _Reader(line.head, subject, scope).interruption()
                 for other in found:
-                    parallel = abs(sum(a * b for a, b in zip(other.axis, each.axis, strict=True))) > 1 - 1e-9
+                    parallel = abs(dot(other.axis, each.axis)) > 1 - 1e-9
                     if not parallel or (each.low < other.high and other.low < each.high) or other.axis != each.axis:
                         sentence = "the stretches that a figure leaves out lie apart along one axis"
                         raise mistake("wrong-form", each.span, sentence, "", (Related(other.span, "another one"),))
@@ -136,7 +137,7 @@ class _Reader:
 
     def interruption(self) -> Interruption:
         axis = self._direction("axis")
-        low, high = (sum(a * b for a, b in zip(self._place(slot, axis), axis, strict=True)) for slot in ("low", "high"))
+        low, high = (dot(self._place(slot, axis), axis) for slot in ("low", "high"))
         if high - low < 1e-6:
             raise mistake("out-of-range", self.head.span, "the stretch left out ends before it begins")
         return Interruption(axis, low, high, self.head.span)

@@ -19,6 +19,8 @@ from platewright.lang.source import Span
 from .graph import Entry, Point, Solid
 from .mistakes import Problems, mistake
 from .solids.cut import Cutter, cut_mesh, half_space
+from .solids.surfaces import cross
+from .solids.transform import dot, heights
 
 LENGTHWISE = 0.5
 """A cut runs along an axis where its unit normal and the axis have a product below this: at less than 30 degrees."""
@@ -70,7 +72,7 @@ def letter_of(number: int) -> str:
 def away_of(cut: Cut, sight: Point) -> Point:
     """The unit direction from the cut into what goes, for a unit direction of sight. Raises Mistake if edge-on."""
     normal = facing(cut)
-    toward = -_dot(normal, sight) if cut.keeping is None else -_dot(normal, cut.keeping)
+    toward = -dot(normal, sight) if cut.keeping is None else -dot(normal, cut.keeping)
     if abs(toward) < EDGE_ON:
         seen = "seen edge-on" if cut.keeping is None else "square to the side to be kept"
         hint = "say which side stays, such as `keeping y`, or take another viewpoint"
@@ -84,7 +86,7 @@ def cutter_of(cut: Cut, away: Point, vertices: F64) -> Cutter:
     middle, reach = (low + high) / 2.0, float(np.sqrt(((high - low) ** 2).sum())) + 1.0
     match cut.kind:
         case "full":
-            return half_space(away, _dot(away, cut.plane.through), middle, reach)
+            return half_space(away, dot(away, cut.plane.through), middle, reach)
         case "half":
             return _quarter(cut, away, middle, reach)
         case "stepped":
@@ -136,7 +138,7 @@ class Opening:
         if axis is None:
             return True
         a, b, c = (float(row[0] * axis[0] + row[1] * axis[1] + row[2] * axis[2]) for row in placement[:3])
-        return all(abs(_dot(_unit((a, b, c)), away)) < LENGTHWISE for away in self.aways)
+        return all(abs(dot(_unit((a, b, c)), away)) < LENGTHWISE for away in self.aways)
 
     def rows_whole(self, entries: Sequence[Entry], placements: F64) -> tuple[int, ...]:
         """Rows of the entries that stay whole; placements (n,4,4)."""
@@ -159,8 +161,8 @@ class Opening:
 def is_edge_on(cut: Cut, sight: Point) -> bool:
     """Whether a view along a unit direction sees the cut as a line: of a stepped one, with its steps."""
     if cut.kind == "stepped":
-        return abs(_dot(cut.plane.normal, sight)) > 1.0 - EDGE_ON
-    return abs(_dot(facing(cut), sight)) < EDGE_ON
+        return abs(dot(cut.plane.normal, sight)) > 1.0 - EDGE_ON
+    return abs(dot(facing(cut), sight)) < EDGE_ON
 
 
 def trace_of(cut: Cut, away: Point, sight: Point, vertices: F64, past: float) -> F64:
@@ -168,12 +170,12 @@ def trace_of(cut: Cut, away: Point, sight: Point, vertices: F64, past: float) ->
 
     It runs `past` mm beyond all vertices (n,3) at either end.
     """
-    along = _unit(_cross(away, sight))
-    reach = _times(vertices, along)
+    along = _unit(cross(away, sight))
+    reach = heights(vertices, along)
     low, high = float(reach.min()) - past, float(reach.max()) + past
     corners = cut.corners or (cut.plane.through,)
     first, last = (corners[0], corners[-1])
-    if _dot(first, along) > _dot(last, along):
+    if dot(first, along) > dot(last, along):
         first, last, corners = last, first, corners[::-1]
     ends = (_slid(first, along, low), *corners[1:-1], _slid(last, along, high))
     return np.array(ends, np.float64)
@@ -192,9 +194,9 @@ def _and_above(path: str) -> Iterator[str]:
 def _quarter(cut: Cut, away: Point, middle: F64, reach: float) -> Cutter:
     assert cut.beside is not None
     side = cut.beside.normal
-    if abs(_dot(side, away)) > EDGE_ON:
+    if abs(dot(side, away)) > EDGE_ON:
         raise mistake("wrong-form", cut.span, "the two planes of a half section stand square to each other")
-    corner = _met(cut.plane, cut.beside, _cross(side, away), middle)
+    corner = _met(cut.plane, cut.beside, cross(side, away), middle)
     wide = 2.0 * reach + float(np.abs(middle - corner).max())
     x, y, z = (float(each) for each in corner)
     profile = ((0.0, 0.0), (wide, 0.0), (wide, wide), (0.0, wide))
@@ -205,7 +207,7 @@ def _met(one: Plane, other: Plane, along: Point, near: F64) -> F64:
     """The point nearest to `near` of the line in which two planes meet."""
     rows = np.array((one.normal, other.normal, along), np.float64)
     x, y, z = (float(each) for each in near)
-    right = np.array((_dot(one.normal, one.through), _dot(other.normal, other.through), _dot(along, (x, y, z))))
+    right = np.array((dot(one.normal, one.through), dot(other.normal, other.through), dot(along, (x, y, z))))
     crosses = np.stack((np.cross(rows[1], rows[2]), np.cross(rows[2], rows[0]), np.cross(rows[0], rows[1])))
     size = float((rows[0] * crosses[0]).sum())
     return np.asarray((right[:, None] * crosses).sum(axis=0) / size)
@@ -213,9 +215,9 @@ def _met(one: Plane, other: Plane, along: Point, near: F64) -> F64:
 
 def _stepped(cut: Cut, away: Point, middle: F64, reach: float) -> Cutter:
     axis = cut.plane.normal
-    u = _unit(_cross(away, axis))
+    u = _unit(cross(away, axis))
     x, y, z = (float(each) for each in middle)
-    flat = [(_dot(_minus(each, (x, y, z)), u), _dot(_minus(each, (x, y, z)), away)) for each in cut.corners]
+    flat = [(dot(_minus(each, (x, y, z)), u), dot(_minus(each, (x, y, z)), away)) for each in cut.corners]
     if flat[0][0] > flat[-1][0]:
         flat.reverse()
     if any(b[0] < a[0] - 1e-9 for a, b in pairwise(flat)):
@@ -233,8 +235,8 @@ _N_FREEHAND = 96
 
 def _patch(cut: Cut, away: Point, reach: float) -> Cutter:
     """Material broken out within an outline that looks drawn by hand, the same every time."""
-    u = _unit(_cross(away, (1.0, 0.0, 0.0) if abs(away[0]) < 0.9 else (0.0, 1.0, 0.0)))
-    v = _cross(away, u)
+    u = _unit(cross(away, (1.0, 0.0, 0.0) if abs(away[0]) < 0.9 else (0.0, 1.0, 0.0)))
+    v = cross(away, u)
     profile = []
     for k in range(_N_FREEHAND):
         angle = 2.0 * pi * k / _N_FREEHAND
@@ -250,31 +252,19 @@ def facing(cut: Cut) -> Point:
     if cut.kind != "stepped":
         return cut.plane.normal
     first, second = cut.corners[0], cut.corners[1]
-    return _unit(_cross(_minus(second, first), cut.plane.normal))
-
-
-def _dot(a: Point, b: Point) -> float:
-    return a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
+    return _unit(cross(_minus(second, first), cut.plane.normal))
 
 
 def _minus(a: Point, b: Point) -> Point:
     return (a[0] - b[0], a[1] - b[1], a[2] - b[2])
 
 
-def _cross(a: Point, b: Point) -> Point:
-    return (a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0])
-
-
 def _unit(a: Point) -> Point:
-    size = _dot(a, a) ** 0.5
+    size = dot(a, a) ** 0.5
     return (a[0] / size, a[1] / size, a[2] / size)
-
-
-def _times(points: F64, along: Point) -> F64:
-    return np.asarray(points[:, 0] * along[0] + points[:, 1] * along[1] + points[:, 2] * along[2])
 
 
 def _slid(point: Point, along: Point, to: float) -> Point:
     """The point moved along a unit direction until its coordinate along it is `to`."""
-    by = to - _dot(point, along)
+    by = to - dot(point, along)
     return (point[0] + by * along[0], point[1] + by * along[1], point[2] + by * along[2])

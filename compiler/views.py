@@ -10,6 +10,7 @@ from msgspec.structs import replace
 from .mistakes import mistake
 from .projections import Viewpoint, square_to, unit_projection
 from .sections import EDGE_ON, LETTERS, Cut, facing, is_edge_on, letter_of
+from .solids.transform import dot
 from .specs import Spec
 
 Point = tuple[float, float, float]
@@ -121,7 +122,7 @@ def sectioned(views: tuple[View, ...], spec: Spec) -> tuple[View, ...]:
     sights = [unit_projection(view.viewpoint, 1.0, False).sight for view in views]
     for number in in_view:
         cut = spec.cuts[number]
-        products = [abs(sum(a * b for a, b in zip(facing(cut), sight, strict=True))) for sight in sights]
+        products = [abs(dot(facing(cut), sight)) for sight in sights]
         if max(products) < 1.0 - EDGE_ON:
             hint = "a view along its normal shows it; or give it a figure of one view"
             raise mistake("edge-on-section", cut.span, "no view of this figure looks squarely at this section", hint)

@@ -17,6 +17,7 @@ from platewright.backend.contract import F32, F64, I32, FaceOrigin, Mesh, Patche
 
 from .finish import edge_kinds
 from .topology import paired_sides
+from .transform import heights
 
 CUT_VERSION = 1
 """Part of the key of every cut mesh; changes when the same cut gives other triangles."""
@@ -123,11 +124,11 @@ def _prism(cutter: Cutter, placement: F64) -> tuple[tuple[F64, I32, I32], F64]:
     )
     if determinant < 0.0:
         faces = np.ascontiguousarray(faces[:, ::-1])
-    along = profile[following] - profile
-    along = along / np.sqrt((along**2).sum(axis=1))[:, None]
-    x_axes = np.concatenate((along[:, :1] * u + along[:, 1:] * v, [u], [u]))
+    way = profile[following] - profile
+    way = way / np.sqrt((way**2).sum(axis=1))[:, None]
+    x_axes = np.concatenate((way[:, :1] * u + way[:, 1:] * v, [u], [u]))
     # Out of the material is into the cutter: left of a side, up from its lower end.
-    z_axes = np.concatenate((-along[:, 1:] * u + along[:, :1] * v, [w], [-w]))
+    z_axes = np.concatenate((-way[:, 1:] * u + way[:, :1] * v, [w], [-w]))
     origins = np.concatenate((flat, [flat[0] + cutter.low * w], [flat[0] + cutter.high * w]))
     frames = np.stack(
         (_times(inverse, origins - placement[:3, 3]), _units(inverse, x_axes), np.zeros_like(x_axes), z_axes), axis=1
@@ -166,16 +167,12 @@ def _meets(vertices: F64, prism: tuple[F64, I32, I32]) -> bool:
     a, b, c = corners[faces[:, 0]], corners[faces[:, 1]], corners[faces[:, 2]]
     normal = np.cross(b - a, c - a)
     for k in range(len(faces)):
-        ours = (_along(normal[k], vertices) - _along(normal[k], a[k : k + 1])).min()
-        theirs = (_along(normal[k], corners) - _along(normal[k], a[k : k + 1])).max()
+        ours = (heights(vertices, normal[k]) - heights(a[k : k + 1], normal[k])).min()
+        theirs = (heights(corners, normal[k]) - heights(a[k : k + 1], normal[k])).max()
         # The face separates the two only where it bounds the whole prism.
         if ours >= 0.0 and theirs <= 1e-9 * abs(normal[k]).max():
             return False
     return True
-
-
-def _along(normal: F64, points: F64) -> F64:
-    return np.asarray(points[:, 0] * normal[0] + points[:, 1] * normal[1] + points[:, 2] * normal[2])
 
 
 def _imported(vertices: F64, faces: I32, face_id: NDArray[np.integer], number: int) -> Manifold:

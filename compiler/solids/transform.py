@@ -136,6 +136,16 @@ def _product(outer: Affine, inner: Affine) -> Affine:
     return (_row(rows[0]), _row(rows[1]), _row(rows[2]))
 
 
+def dot(a: Point3, b: Point3) -> float:
+    """The inner product of two vectors, summed in the order x, y, z."""
+    return a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
+
+
+def heights(points: NDArray[np.float64], way: Sequence[float] | NDArray[np.float64]) -> NDArray[np.float64]:
+    """Inner products (n,) of points (n,3) with one vector, summed so that their order is the same everywhere."""
+    return np.asarray(points[:, 0] * way[0] + points[:, 1] * way[1] + points[:, 2] * way[2])
+
+
 def _row(values: Sequence[float]) -> tuple[float, float, float, float]:
     a, b, c, d = values
     return (a + 0.0, b + 0.0, c + 0.0, d + 0.0)
