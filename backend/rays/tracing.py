@@ -255,6 +255,26 @@ def walk(
         node = stack[n_waiting]
 
 
+@inner
+def _cast(
+    nodes: Any, links: Any, corners: Any, numbers: Any, frame: Any, origins: Any, directions: Any, reaches: Any, i: Any,
+    is_any: bool, stack: Any, entered: Any, near: Any, found: Any,
+) -> tuple[Any, Any, Any, Any, Any]:  # fmt: skip
+    """Row that ray i meets or -1, how far along it the model begins, and where that is in the model's own frame."""
+    ox, oy, oz = origins[i, 0], origins[i, 1], origins[i, 2]
+    dx, dy, dz = directions[i, 0], directions[i, 1], directions[i, 2]
+    start = approach(frame, ox, oy, oz, dx, dy, dz, reaches[i])
+    x, y, z = ox + start * dx - frame[6], oy + start * dy - frame[7], oz + start * dz - frame[8]
+    if start < 0.0:
+        return np.int32(-1), start, x, y, z
+    ray = (np.float32(x), np.float32(y), np.float32(z), np.float32(dx), np.float32(dy), np.float32(dz))
+    row = walk(
+        nodes, links, corners, numbers, frame[9] * FACE_PAD, ray, np.float32(reaches[i] - start), is_any,
+        stack, entered, near, found,
+    )  # fmt: skip
+    return row, start, x, y, z
+
+
 @kernel
 def trace_nearest(
     nodes: Any, links: Any, corners: Any, numbers: Any, frame: Any, origins: Any, directions: Any, reaches: Any,
@@ -264,20 +284,14 @@ def trace_nearest(
     stack, entered, near = np.empty(STACK, np.int32), np.empty(STACK, np.float32), np.empty(WIDE, np.float32)
     found = np.empty(2)
     for i in range(begin, end):
-        ox, oy, oz = origins[i, 0], origins[i, 1], origins[i, 2]
-        dx, dy, dz = directions[i, 0], directions[i, 1], directions[i, 2]
-        start = approach(frame, ox, oy, oz, dx, dy, dz, reaches[i])
-        if start < 0.0:
-            continue
-        x, y, z = ox + start * dx - frame[6], oy + start * dy - frame[7], oz + start * dz - frame[8]
-        ray = (np.float32(x), np.float32(y), np.float32(z), np.float32(dx), np.float32(dy), np.float32(dz))
-        row = walk(
-            nodes, links, corners, numbers, frame[9] * FACE_PAD, ray, np.float32(reaches[i] - start), False,
-            stack, entered, near, found,
+        row, start, x, y, z = _cast(
+            nodes, links, corners, numbers, frame, origins, directions, reaches, i, False, stack, entered, near,
+            found,
         )  # fmt: skip
         if row >= 0:
-            face[i], distance[i] = row, start + found[0]
             t = found[0]
+            face[i], distance[i] = row, start + t
+            dx, dy, dz = directions[i, 0], directions[i, 1], directions[i, 2]
             second, third = _weights(corners, int(found[1]), x + t * dx, y + t * dy, z + t * dz)
             barycentric[i, 0], barycentric[i, 1] = second, third
 
@@ -291,15 +305,8 @@ def trace_any(
     stack, entered, near = np.empty(STACK, np.int32), np.empty(STACK, np.float32), np.empty(WIDE, np.float32)
     found = np.empty(2)
     for i in range(begin, end):
-        ox, oy, oz = origins[i, 0], origins[i, 1], origins[i, 2]
-        dx, dy, dz = directions[i, 0], directions[i, 1], directions[i, 2]
-        start = approach(frame, ox, oy, oz, dx, dy, dz, reaches[i])
-        if start < 0.0:
-            continue
-        x, y, z = ox + start * dx - frame[6], oy + start * dy - frame[7], oz + start * dz - frame[8]
-        ray = (np.float32(x), np.float32(y), np.float32(z), np.float32(dx), np.float32(dy), np.float32(dz))
-        row = walk(
-            nodes, links, corners, numbers, frame[9] * FACE_PAD, ray, np.float32(reaches[i] - start), True,
-            stack, entered, near, found,
+        row, _, _, _, _ = _cast(
+            nodes, links, corners, numbers, frame, origins, directions, reaches, i, True, stack, entered, near,
+            found,
         )  # fmt: skip
         stopped[i] = row >= 0
