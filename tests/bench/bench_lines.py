@@ -8,7 +8,6 @@ geometry) and the mapping to the page have columns of their own. Scenes are 100 
 from __future__ import annotations
 
 import sys
-import time
 from collections.abc import Callable
 from pathlib import Path
 
@@ -22,8 +21,7 @@ from platewright.backend.lines.view import see_view
 from platewright.backend.lines.visibility import cut
 
 sys.path.insert(0, str(Path(__file__).resolve().parents[1]))
-from embreex.mesh_construction import TriangleMesh
-from embreex.rtcore_scene import EmbreeScene
+from embree import timed, yardstick
 from support.line_scenes import PAGE, VIEWS, fitted, line_panel, mechanical, smooth, tiny_in_huge
 
 ROUNDS = 5
@@ -37,25 +35,6 @@ SCENES: dict[str, Callable[[], Geometry]] = {
     "tiny in huge 250k": lambda: tiny_in_huge(),
 }
 MUST = {"mechanical 250k": 0.15, "mechanical 1M": 0.6, "smooth 250k": 0.15, "smooth 1M": 0.6}  # seconds
-
-
-def timed(work: Callable[[], object]) -> tuple[object, float]:
-    begin = time.perf_counter()
-    result = work()
-    return result, time.perf_counter() - begin
-
-
-def yardstick(geometry: Geometry) -> float:
-    """Seconds to build an embreex scene of the geometry's triangles."""
-    vertices, faces = geometry.vertices.astype(np.float32), geometry.faces
-    origin, ray = np.zeros((1, 3), np.float32), np.array([[0.0, 0.0, 1.0]], np.float32)
-
-    def build() -> None:
-        scene = EmbreeScene()
-        TriangleMesh(scene, vertices, faces)
-        scene.run(origin, ray)  # the scene is built at its first ray
-
-    return timed(build)[1]
 
 
 def measure(geometry: Geometry) -> dict[str, float]:

@@ -8,7 +8,6 @@ the smooth bodies penetrate each other deeply. Scenes are 100 mm large on paper.
 from __future__ import annotations
 
 import sys
-import time
 from collections.abc import Callable
 from pathlib import Path
 
@@ -19,8 +18,7 @@ from platewright.backend.lines.penetrations import penetrations_of
 from platewright.backend.lines.view import see_view
 
 sys.path.insert(0, str(Path(__file__).resolve().parents[1]))
-from embreex.mesh_construction import TriangleMesh
-from embreex.rtcore_scene import EmbreeScene
+from embree import timed, yardstick
 from support.line_scenes import (
     PAGE,
     VIEWS,
@@ -54,25 +52,6 @@ SCENES: dict[str, Callable[[], Geometry]] = {
     "smooth 1M": lambda: smooth(1_000_000),
 }
 MUST = 0.3  # seconds for lines of penetration, 250 k triangles with touching parts
-
-
-def timed(work: Callable[[], object]) -> tuple[object, float]:
-    begin = time.perf_counter()
-    result = work()
-    return result, time.perf_counter() - begin
-
-
-def yardstick(geometry: Geometry) -> float:
-    """Seconds to build an embreex scene of the geometry's triangles."""
-    vertices, faces = geometry.vertices.astype(np.float32), geometry.faces
-    origin, ray = np.zeros((1, 3), np.float32), np.array([[0.0, 0.0, 1.0]], np.float32)
-
-    def build() -> None:
-        scene = EmbreeScene()
-        TriangleMesh(scene, vertices, faces)
-        scene.run(origin, ray)  # the scene is built at its first ray
-
-    return timed(build)[1]
 
 
 def measure(geometry: Geometry) -> tuple[dict[str, float], dict[str, int]]:

@@ -52,19 +52,7 @@ figure knob_seen
     drawn as tone
     width 40 mm
 """
-_LINES = """\
-platewright 1
-
-part knob
-    add cylinder diameter 30 mm length 12 mm
-    add sphere diameter 24 mm at (0, 0, 12 mm)
-    cut cylinder diameter 6 mm length 40 mm at (0, 0, -5 mm)
-
-figure knob_seen
-    show knob
-    drawn as lines
-    width 40 mm
-"""
+_LINES = _SMALL.replace("drawn as tone", "drawn as lines")
 
 
 def scene_of_200_lines() -> str:
